@@ -1,0 +1,20 @@
+# SPDX-License-Identifier: GPL-3.0-or-later
+# The libraries we stand on; the Debian packages are listed in ./setup.
+find_package(PkgConfig REQUIRED)
+pkg_check_modules(YAML REQUIRED IMPORTED_TARGET yaml-0.1)
+pkg_check_modules(JANSSON REQUIRED IMPORTED_TARGET jansson)
+pkg_check_modules(MD REQUIRED IMPORTED_TARGET libmd)
+pkg_check_modules(OPENBLAS REQUIRED IMPORTED_TARGET openblas)
+
+find_library(LAPACKE_LIBRARY lapacke REQUIRED)
+find_path(LAPACKE_INCLUDE lapacke.h REQUIRED)
+add_library(mho_linear_algebra INTERFACE)
+target_include_directories(mho_linear_algebra SYSTEM INTERFACE ${LAPACKE_INCLUDE})
+target_link_libraries(mho_linear_algebra INTERFACE ${LAPACKE_LIBRARY} PkgConfig::OPENBLAS)
+
+# GSL without its cblas, whose names would capture OpenBLAS's.
+find_library(GSL_LIBRARY gsl REQUIRED)
+find_path(GSL_INCLUDE gsl/gsl_integration.h REQUIRED)
+add_library(mho_gsl INTERFACE)
+target_include_directories(mho_gsl SYSTEM INTERFACE ${GSL_INCLUDE})
+target_link_libraries(mho_gsl INTERFACE ${GSL_LIBRARY} PkgConfig::OPENBLAS m)

@@ -1,0 +1,99 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * A molecule as the model sees it: pi sites, bonds, electrons and the two
+ * contacts.  Readers fill it, mho_junction_build turns it into numbers.
+ */
+#ifndef MHOLECULE_MOLECULE_H
+#define MHOLECULE_MOLECULE_H
+
+#include <mho/parameters.h>
+#include <mho/status.h>
+
+#define MHO_DEFAULT_BETA_EV (-2.7)
+#define MHO_DEFAULT_TEMPERATURE_K 300.0
+#define MHO_DEFAULT_COUPLING_EV 0.5
+
+enum { MHO_ID_SIZE = 64, MHO_SITE_LIMIT = 5000 };
+
+typedef struct {
+  char id[MHO_ID_SIZE];
+  int row;              /* of the parameter set; -1 for an explicit energy only */
+  bool explicit_onsite; /* onsite_ev overrides h*beta */
+  double onsite_ev;
+  int electrons; /* that the site brings; 0 for an explicit energy only */
+} mho_site;
+
+typedef struct {
+  int site[2];
+  double strength;       /* factor on k of the table: bond alternation; usually 1 */
+  bool explicit_hopping; /* hopping_ev overrides strength*k*beta */
+  double hopping_ev;     /* untwisted */
+  double twist_deg;      /* always multiplies: t = hopping * cos(twist) */
+  bool rotatable;
+} mho_bond;
+
+typedef enum {
+  MHO_CHANNELS_INDEPENDENT, /* Gamma_ij = coupling * delta_ij on the sites */
+  MHO_CHANNELS_ONE          /* Gamma = coupling * v v^T, v = amplitudes */
+} mho_channels;
+
+/* Wide-band contact: Sigma = (shift - i/2) Gamma-shaped on its sites. */
+typedef struct {
+  int count;         /* sites; 0 while the molecule has no such contact */
+  int *site;         /* [count] */
+  double *amplitude; /* [count], used by MHO_CHANNELS_ONE */
+  double coupling_ev; /* Gamma, the full width */
+  double shift_ev;    /* real part of the self-energy */
+  mho_channels channels;
+} mho_contact;
+
+typedef enum {
+  MHO_FERMI_ENERGY, /* offset_ev on the scale of alpha */
+  MHO_FERMI_MIDGAP, /* centre of the frontier gap, offset_ev = 0 */
+  MHO_FERMI_HOMO,   /* HOMO + offset_ev */
+  MHO_FERMI_LUMO    /* LUMO + offset_ev */
+} mho_fermi_kind;
+
+typedef struct {
+  mho_fermi_kind kind;
+  double offset_ev;
+} mho_fermi;
+
+enum { MHO_LEFT, MHO_RIGHT };
+
+typedef struct {
+  char *name;
+  const mho_parameter_set *parameters;
+  double beta_ev;
+  double temperature_k;
+  int site_count, bond_count;
+  mho_site *site;
+  mho_bond *bond;
+  bool explicit_electrons;
+  int electrons; /* in the pi system */
+  int charge;
+  mho_contact contact[2]; /* MHO_LEFT, MHO_RIGHT */
+  mho_fermi fermi;
+} mho_molecule;
+
+MHO_BEGIN_DECLARATIONS
+
+/* An empty molecule with the defaults of this header; clear frees what it
+ * owns and may be called on an empty one. */
+MHO_API void mho_molecule_init(mho_molecule *molecule);
+MHO_API void mho_molecule_clear(mho_molecule *molecule);
+
+/* Index of a site, or -1. */
+MHO_API int mho_molecule_find_site(const mho_molecule *molecule,
+                                   const char *id);
+
+/* Energy of a site, and hopping of a bond with its twist, in eV. */
+MHO_API double mho_molecule_onsite_ev(const mho_molecule *molecule, int site);
+MHO_API double mho_molecule_hopping_ev(const mho_molecule *molecule, int bond);
+
+/* cos of an angle in degrees, exact at multiples of 90 and 60 degrees. */
+MHO_API double mho_cos_deg(double angle_deg);
+
+MHO_END_DECLARATIONS
+
+#endif

@@ -1,0 +1,72 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "base/lapack.h"
+
+#include <math.h>
+
+#define lapack_complex_float float complex
+#define lapack_complex_double double complex
+#include <lapacke.h>
+
+/* From OpenBLAS's cblas.h, declared here because Debian's headers of that name
+ * may belong to another BLAS. */
+void openblas_set_num_threads(int threads);
+int openblas_get_parallel(void);
+char *openblas_get_config(void);
+
+enum { OPENBLAS_SERIAL = 0 };
+
+mho_status mho_lapack_check(mho_error *error)
+{
+  if (openblas_get_parallel() == OPENBLAS_SERIAL)
+    return mho_fail(error, MHO_ERR_LINEAR_ALGEBRA, "base", NULL,
+                    "the serial build of OpenBLAS gives wrong results under "
+                    "threads; install libopenblas0-pthread");
+  openblas_set_num_threads(1);
+  return MHO_OK;
+}
+
+const char *mho_lapack_description(void) { return openblas_get_config(); }
+
+static mho_status finish(const char *routine, lapack_int info,
+                         mho_error *error)
+{
+  if (info == 0) return MHO_OK;
+  if (info == LAPACK_WORK_MEMORY_ERROR)
+    return mho_fail(error, MHO_ERR_MEMORY, "base", NULL, "out of memory in %s",
+                    routine);
+  return mho_fail(error, MHO_ERR_LINEAR_ALGEBRA, "base", NULL,
+                  "%s failed with info %d", routine, (int)info);
+}
+
+mho_status mho_eigen_symmetric(int n, double *matrix, double *eigenvalues,
+                               mho_error *error)
+{
+  mho_status status = mho_lapack_check(error);
+  if (status != MHO_OK) return status;
+  lapack_int info =
+      LAPACKE_dsyevd(LAPACK_COL_MAJOR, 'V', 'L', n, matrix, n, eigenvalues);
+  status = finish("dsyevd", info, error);
+  for (int i = 0; status == MHO_OK && i < n; i++)
+    if (!isfinite(eigenvalues[i]))
+      status = mho_fail(error, MHO_ERR_NOT_FINITE, "base", NULL,
+                        "dsyevd gave a level that is not finite");
+  return status;
+}
+
+mho_status mho_eigenvalues_complex(int n, double complex *matrix,
+                                   double complex *eigenvalues,
+                                   mho_error *error)
+{
+  mho_status status = mho_lapack_check(error);
+  if (status != MHO_OK) return status;
+  double complex unused = 0;
+  lapack_int info =
+      LAPACKE_zgeev(LAPACK_COL_MAJOR, 'N', 'N', n, matrix, n, eigenvalues,
+                    &unused, 1, &unused, 1);
+  status = finish("zgeev", info, error);
+  for (int i = 0; status == MHO_OK && i < n; i++)
+    if (!isfinite(creal(eigenvalues[i])) || !isfinite(cimag(eigenvalues[i])))
+      status = mho_fail(error, MHO_ERR_NOT_FINITE, "base", NULL,
+                        "zgeev gave a pole that is not finite");
+  return status;
+}

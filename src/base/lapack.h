@@ -1,0 +1,35 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * The few dense routines we need, over LAPACKE and OpenBLAS.
+ *
+ * OpenBLAS is pinned to one thread (parallelism is ours, over molecules), and
+ * its serial build is refused: it gives wrong results when several threads of
+ * one program call it.  Matrices are square, column-major.
+ */
+#ifndef MHOLECULE_BASE_LAPACK_H
+#define MHOLECULE_BASE_LAPACK_H
+
+#include <complex.h>
+
+#include <mho/status.h>
+
+/* Checks the variant and pins the threads.  Cheap; every routine below calls
+ * it.  Errors: MHO_ERR_LINEAR_ALGEBRA. */
+MHO_MUST_USE mho_status mho_lapack_check(mho_error *error);
+
+/* Eigenvalues (ascending, n) and orthonormal eigenvectors (columns, replacing
+ * matrix[n*n]) of a real symmetric matrix.
+ * Errors: MHO_ERR_LINEAR_ALGEBRA, MHO_ERR_NOT_FINITE. */
+MHO_MUST_USE mho_status mho_eigen_symmetric(int n, double *matrix,
+                                            double *eigenvalues,
+                                            mho_error *error);
+
+/* Eigenvalues of a general complex matrix[n*n], which is destroyed. */
+MHO_MUST_USE mho_status mho_eigenvalues_complex(int n, double complex *matrix,
+                                                double complex *eigenvalues,
+                                                mho_error *error);
+
+/* One line that names the linear algebra in use, for `mho --version`. */
+const char *mho_lapack_description(void);
+
+#endif
