@@ -123,7 +123,8 @@ def compare_transmission(checks, program, file, matrices, molecule, found):
     for energy, t, log in rows:
         what = '%s at %g eV: ' % (label, energy)
         checks.that(log is None if t == 0
-                    else abs(log - math.log10(t)) < 1e-12, what + 'log10 T')
+                    else log is not None and abs(log - math.log10(t)) < 1e-12,
+                    what + 'log10 T')
         for matrix in matrices:
             want = math.sqrt(outside.transmission(
                 matrix, left, right, gamma, found['fermi_eV'] + energy))
