@@ -52,6 +52,10 @@ class Checks:
         sys.exit(0 if self.count and not self.failed else 1)
 
 
+class Refused(Exception):
+    """The program did not answer."""
+
+
 class Program:
     """The command line under test; JSON with all digits."""
 
@@ -64,7 +68,7 @@ class Program:
         done = subprocess.run([self.path, *arguments], timeout=60,
                               stdout=subprocess.PIPE, stderr=subprocess.PIPE)
         if done.returncode:
-            raise RuntimeError('mho %s: exit %d: %s' % (
+            raise Refused('mho %s: exit %d: %s' % (
                 ' '.join(arguments), done.returncode,
                 done.stderr.decode('utf-8', 'replace').strip()))
         return json.loads(done.stdout)
