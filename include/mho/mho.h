@@ -9,8 +9,10 @@
 #include <mho/constants.h>
 #include <mho/junction.h>
 #include <mho/molecule.h>
+#include <mho/molecule_file.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
+#include <mho/settings.h>
 #include <mho/status.h>
 #include <mho/transmission.h>
 #include <mho/version.h>
