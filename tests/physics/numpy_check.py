@@ -291,12 +291,18 @@ def carboxylates(checks, program):
 
 
 def single_level(checks, program):
-    """Breit-Wigner form, by hand; both contacts on one site."""
+    """Breit-Wigner form by hand, its thermal average by trigamma outside this
+    project; both contacts on one site."""
     level = {'name': 'level', 'electrons': 2, 'bonds': [],
              'sites': [{'id': 'a', 'onsite': '-0.5 eV'}]}
     file = program.write(contacted(level, 'a', 'a', (0.02, 0.05)))
     checks.near(program.at(file), 0.0039804956, 5.1e-11, 'level at 0.5 eV')
     checks.near(program.at(file, -0.5), 0.81632653, 5.1e-9, 'level at 0')
+    checks.near(program.conductance(file), 0.0040915293, 5.1e-11,
+                'level at 0.5 eV, 300 K')
+    file = program.write(dict(load(file), fermi='-0.5 eV'))
+    checks.near(program.conductance(file), 0.48151537, 5.1e-9,
+                'level at 0, 300 K')
 
 
 def oligophenyls(checks, program):

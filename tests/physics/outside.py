@@ -90,6 +90,12 @@ class Program:
         """T at one energy: the first of two samples."""
         return self.transmission(file, energy, energy + 0.125, 2)[0][1]
 
+    def conductance(self, file):
+        """Thermal conductance at E_F in G0."""
+        table = self.run('conductance', file, '--json', '--exact')
+        table = table['tables']['conductance']
+        return table['rows'][0][table['columns'].index('conductance_G0')]
+
     def write(self, molecule):
         """A molecule file in the scratch folder, from its mapping."""
         self.written += 1
