@@ -5,11 +5,15 @@
 #ifndef MHOLECULE_MHO_H
 #define MHOLECULE_MHO_H
 
+#include <mho/conductance.h>
 #include <mho/constants.h>
+#include <mho/junction.h>
 #include <mho/molecule.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
 #include <mho/status.h>
+#include <mho/transmission.h>
 #include <mho/version.h>
+#include <mho/warning.h>
 
 #endif

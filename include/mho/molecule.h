@@ -57,12 +57,14 @@ typedef enum {
 typedef struct {
   mho_fermi_kind kind;
   double offset_ev;
+  long line, column; /* where the file says so; 0 elsewhere */
 } mho_fermi;
 
 enum { MHO_LEFT, MHO_RIGHT };
 
 typedef struct {
   char *name;
+  char *source; /* file it was read from, or NULL */
   const mho_parameter_set *parameters;
   double beta_ev;
   double temperature_k;

@@ -46,8 +46,9 @@ MHO_API MHO_MUST_USE mho_status mho_quantity_read(const char *text,
                                                   double *value, char *reason,
                                                   size_t reason_size);
 
-/* `energy`, `angle` ...; and the units that are understood, e.g. `eV, meV`. */
+/* `energy`, `angle` ...; its base unit; and the units that are understood. */
 MHO_API const char *mho_dimension_name(mho_dimension dimension);
+MHO_API const char *mho_dimension_base_unit(mho_dimension dimension);
 MHO_API const char *mho_dimension_units(mho_dimension dimension);
 
 MHO_END_DECLARATIONS

@@ -68,14 +68,14 @@ static const unit units[] = {
 enum { UNIT_COUNT = sizeof units / sizeof *units };
 
 static const struct {
-  const char *name, *article, *units, *example;
+  const char *name, *article, *units, *base;
 } dimensions[MHO_DIMENSIONS] = {
     [MHO_ENERGY] = {"energy", "an", "eV or meV", "eV"},
     [MHO_ANGLE] = {"angle", "an", "deg or rad", "deg"},
     [MHO_LENGTH] = {"length", "a", "nm, angstrom or pm", "nm"},
     [MHO_TEMPERATURE] = {"temperature", "a", "K or mK", "K"},
     [MHO_VOLTAGE] = {"voltage", "a", "V or mV", "V"},
-    [MHO_CURRENT] = {"current", "a", "A, mA, uA, nA or pA", "nA"},
+    [MHO_CURRENT] = {"current", "a", "A, mA, uA, nA or pA", "A"},
     [MHO_CONDUCTANCE] = {"conductance", "a", "G0, S, mS, uS, nS or pS", "G0"},
     [MHO_SEEBECK] = {"Seebeck coefficient", "a", "uV/K or mV/K", "uV/K"},
     [MHO_DECADES] = {"spread", "a", "decades", "decades"},
@@ -92,6 +92,11 @@ const char *mho_dimension_name(mho_dimension dimension)
 const char *mho_dimension_units(mho_dimension dimension)
 {
   return dimensions[dimension].units;
+}
+
+const char *mho_dimension_base_unit(mho_dimension dimension)
+{
+  return dimensions[dimension].base;
 }
 
 static bool is_blank(char c) { return c == ' ' || c == '\t'; }
@@ -148,7 +153,7 @@ mho_status mho_quantity_read(const char *text, mho_dimension dimension,
              "'%.40s' is not a number with a unit; write %s %s in %s, "
              "such as '0.3 %s'",
              text, dimensions[dimension].article, dimensions[dimension].name,
-             dimensions[dimension].units, dimensions[dimension].example);
+             dimensions[dimension].units, dimensions[dimension].base);
     return MHO_ERR_SYNTAX;
   }
   const char *number_text_end = end;
@@ -159,7 +164,7 @@ mho_status mho_quantity_read(const char *text, mho_dimension dimension,
   if (length == 0) {
     snprintf(reason, reason_size, "'%.40s' has no unit; write '%.*s %s' (%s)",
              s, (int)(number_text_end - s > 30 ? 30 : number_text_end - s), s,
-             dimensions[dimension].example, dimensions[dimension].units);
+             dimensions[dimension].base, dimensions[dimension].units);
     return MHO_ERR_UNIT;
   }
   snprintf(symbol, sizeof symbol, "%.*s", (int)(length < 31 ? length : 31), end);

@@ -20,6 +20,7 @@ void mho_molecule_init(mho_molecule *molecule)
 void mho_molecule_clear(mho_molecule *molecule)
 {
   free(molecule->name);
+  free(molecule->source);
   free(molecule->site);
   free(molecule->bond);
   for (int side = 0; side < 2; side++) {

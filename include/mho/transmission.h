@@ -1,0 +1,81 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Transmission of a junction,
+ *   T(E) = Tr[Gamma_L G Gamma_R G^dagger],
+ *   G(E) = (E - H - Sigma_L - Sigma_R)^-1,
+ * for the doubles H, Gamma and E that the program holds.
+ */
+#ifndef MHOLECULE_TRANSMISSION_H
+#define MHOLECULE_TRANSMISSION_H
+
+#include <mho/junction.h>
+#include <mho/status.h>
+
+typedef struct mho_plan mho_plan;
+
+/* How a value was found; later methods are slower and more exact. */
+typedef enum {
+  MHO_METHOD_NO_PATH,     /* no hopping joins the contacts: T = 0 */
+  MHO_METHOD_SPECTRUM,    /* sums over the levels of the bare molecule */
+  MHO_METHOD_ELIMINATION, /* Gaussian elimination in double precision */
+  MHO_METHOD_EXTENDED     /* the same in 113 bits */
+} mho_method;
+
+typedef struct {
+  double transmission;       /* 0 <= T <= channels; may underflow to 0 */
+  double log10_transmission; /* also where T underflows; 0 if node */
+  double relative_error;     /* bound on the error of T; 0 if node */
+  bool node;                 /* T is zero as far as 113 bits can tell */
+  bool unresolved;           /* relative_error exceeds 1e-10 all the same */
+  mho_method method;
+} mho_point;
+
+/* Where the junction has its resonances: eigenvalues of H + Sigma. */
+typedef struct {
+  double energy_ev; /* real part */
+  double width_ev;  /* full width at half maximum, -2 Im */
+} mho_pole;
+
+MHO_BEGIN_DECLARATIONS
+
+/* Prepares a junction for many energies.  The junction may be cleared
+ * afterwards.  The plan is not changed by its use: many threads may share it.
+ * Errors: MHO_ERR_CONTACTS, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
+MHO_API MHO_MUST_USE mho_status mho_plan_create(const mho_junction *junction,
+                                                mho_plan **plan,
+                                                mho_error *error);
+MHO_API void mho_plan_free(mho_plan *plan);
+
+/* T at energy_ev[count] (relative to alpha) into point[count].
+ *
+ * Three methods are tried in turn, each with a bound on its own error; the
+ * first that keeps max(1e-12, 64 u kappa) <= 1e-10 is taken, where kappa is
+ * the relative condition of T.  States that no contact sees do not matter:
+ * where E - H is singular through them alone, the finite limit is returned.
+ * Errors: MHO_ERR_NOT_FINITE (an energy is not finite), MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,
+                                                       size_t count,
+                                                       const double *energy_ev,
+                                                       mho_point *point,
+                                                       mho_error *error);
+
+/* All poles, by ascending energy; pole[] has room for one a site. */
+MHO_API MHO_MUST_USE mho_status mho_poles(const mho_plan *plan, mho_pole *pole,
+                                          mho_error *error);
+MHO_API int mho_plan_sites(const mho_plan *plan);
+
+/* Most that T can be: the smaller number of channels of the two contacts. */
+MHO_API int mho_plan_channels(const mho_plan *plan);
+
+/* Energies for a plot from low to high: an even grid of `even` points, and
+ * around every pole points as dense as its width asks for.  The caller frees
+ * *energy_ev.  Errors: MHO_ERR_RANGE, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
+MHO_API MHO_MUST_USE mho_status mho_energy_grid(const mho_plan *plan,
+                                                double low_ev, double high_ev,
+                                                int even, double **energy_ev,
+                                                size_t *count,
+                                                mho_error *error);
+
+MHO_END_DECLARATIONS
+
+#endif

@@ -1,0 +1,154 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <mho/conductance.h>
+#include <mho/constants.h>
+#include <mho/warning.h>
+
+#include <math.h>
+#include <stdlib.h>
+
+#include "analysis/thermal.h"
+
+enum { WINDOW_SAMPLES = 401 };
+
+/* Below this kT the Fermi function is a step for every width we resolve. */
+#define COLD_EV 1e-7
+
+#define NEAR_DEGENERATE_EV 0.2
+#define STRONG_TWIST_DEG 70.0
+
+/* A pole counts as being at the Fermi level within half its width + 3 kT, and
+ * a node if T rises fourfold within 2 kT on both sides. */
+#define NEAR_POLE_KT 3.0
+#define NEAR_NODE_KT 2.0
+#define NEAR_NODE_RISE 4.0
+
+mho_conductance_options mho_conductance_defaults(void)
+{
+  return (mho_conductance_options){.window_ev = MHO_DEFAULT_WINDOW_EV};
+}
+
+static int compare_doubles(const void *a, const void *b)
+{
+  double x = *(const double *)a, y = *(const double *)b;
+  return (x > y) - (x < y);
+}
+
+/* Quantile of ascending values by linear interpolation. */
+static double quantile(const double *value, size_t count, double p)
+{
+  double place = p * (double)(count - 1);
+  size_t below = (size_t)place;
+  if (below + 1 >= count) return value[count - 1];
+  if (value[below] == -INFINITY) return -INFINITY;
+  double fraction = place - (double)below;
+  return value[below] + fraction * (value[below + 1] - value[below]);
+}
+
+/* log10 of the conductance at each Fermi level. */
+static mho_status conductances(const mho_plan *plan, const double *fermi_ev, size_t count,
+                               double kt_ev, double *log10_g0, mho_error *error)
+{
+  if (kt_ev < COLD_EV) {
+    mho_point *point = malloc(count * sizeof *point);
+    if (!point) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+    mho_status status = mho_transmission_sweep(plan, count, fermi_ev, point, error);
+    for (size_t i = 0; status == MHO_OK && i < count; i++)
+      log10_g0[i] = point[i].node ? -INFINITY : point[i].log10_transmission;
+    free(point);
+    return status;
+  }
+  mho_thermal_grid grid;
+  mho_status status = mho_thermal_grid_build(plan, fermi_ev, count, kt_ev, &grid, error);
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    log10_g0[i] = mho_thermal_average_log10(&grid, fermi_ev[i], kt_ev);
+  mho_thermal_grid_clear(&grid);
+  return status;
+}
+
+static mho_status fermi_warnings(const mho_plan *plan, double kt_ev,
+                                 mho_conductance *result, mho_error *error)
+{
+  double fermi = result->fermi_ev;
+  if (result->at_fermi.method == MHO_METHOD_NO_PATH) {
+    result->warnings |= MHO_WARN_NO_PI_PATH;
+    return MHO_OK;
+  }
+  int n = mho_plan_sites(plan);
+  mho_pole *pole = malloc((size_t)n * sizeof *pole);
+  if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+  mho_status status = mho_poles(plan, pole, error);
+  for (int k = 0; status == MHO_OK && k < n; k++) {
+    double reach = 0.5 * pole[k].width_ev + NEAR_POLE_KT * kt_ev;
+    bool seen = pole[k].width_ev > 1e-12;
+    if (seen && fabs(pole[k].energy_ev - fermi) <= reach)
+      result->warnings |= MHO_WARN_NEAR_POLE;
+  }
+  free(pole);
+  if (status != MHO_OK) return status;
+  double beside = fmax(NEAR_NODE_KT * kt_ev, 1e-6);
+  double energy[2] = {fermi - beside, fermi + beside};
+  mho_point point[2];
+  status = mho_transmission_sweep(plan, 2, energy, point, error);
+  if (status != MHO_OK) return status;
+  double rise = log10(NEAR_NODE_RISE) + result->at_fermi.log10_transmission;
+  bool rises = !point[0].node && !point[1].node &&
+               point[0].log10_transmission > rise && point[1].log10_transmission > rise;
+  if (result->at_fermi.node || rises) result->warnings |= MHO_WARN_NEAR_NODE;
+  return MHO_OK;
+}
+
+static void set_conductance(mho_conductance *result, double log10_g0)
+{
+  result->has_log = log10_g0 > -INFINITY;
+  if (!result->has_log) return;
+  result->log10_g0 = log10_g0;
+  result->conductance_g0 = pow(10.0, log10_g0);
+  result->conductance_s = result->conductance_g0 * MHO_CONDUCTANCE_QUANTUM_S;
+}
+
+mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
+                                   double temperature_k,
+                                   const mho_conductance_options *options,
+                                   mho_conductance *result, mho_error *error)
+{
+  *result = (mho_conductance){.fermi_ev = fermi_ev, .temperature_k = temperature_k};
+  double window = options ? options->window_ev : MHO_DEFAULT_WINDOW_EV;
+  if (!(window >= 0.0 && window <= 10.0))
+    return mho_fail(error, MHO_ERR_RANGE, "analysis", "window",
+                    "the alignment window must lie between 0 eV and 10 eV");
+  double kt = MHO_BOLTZMANN_EV_PER_K * temperature_k;
+  mho_status status =
+      mho_transmission_sweep(plan, 1, &fermi_ev, &result->at_fermi, error);
+  double log10_g0 = 0, fermi[WINDOW_SAMPLES], value[WINDOW_SAMPLES];
+  for (int i = 0; i < WINDOW_SAMPLES; i++)
+    fermi[i] = fermi_ev + window * (2.0 * i / (WINDOW_SAMPLES - 1) - 1.0);
+  if (status == MHO_OK)
+    status = conductances(plan, fermi, WINDOW_SAMPLES, kt, value, error);
+  if (status != MHO_OK) return status;
+  log10_g0 = value[WINDOW_SAMPLES / 2];
+  set_conductance(result, log10_g0);
+  qsort(value, WINDOW_SAMPLES, sizeof *value, compare_doubles);
+  result->window_low_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_LOW_QUANTILE);
+  result->window_high_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_HIGH_QUANTILE);
+  result->has_window_low = result->window_low_log10_g0 > -INFINITY;
+  result->has_window_high = result->window_high_log10_g0 > -INFINITY;
+  if (!result->has_window_low) result->window_low_log10_g0 = 0;
+  if (!result->has_window_high) result->window_high_log10_g0 = 0;
+  return fermi_warnings(plan, kt, result, error);
+}
+
+unsigned mho_molecule_warnings(const mho_molecule *molecule,
+                               const mho_junction *junction)
+{
+  unsigned warnings = 0;
+  if (molecule->charge != 0) warnings |= MHO_WARN_CHARGED;
+  if (junction->open_shell) warnings |= MHO_WARN_OPEN_SHELL;
+  if (!junction->open_shell && junction->has_homo && junction->has_lumo &&
+      junction->lumo_ev - junction->homo_ev < NEAR_DEGENERATE_EV)
+    warnings |= MHO_WARN_NEAR_DEGENERATE_FRONTIER;
+  double largest_cos = cos(STRONG_TWIST_DEG * 3.14159265358979324 / 180.0);
+  for (int b = 0; b < molecule->bond_count; b++)
+    if (fabs(mho_cos_deg(molecule->bond[b].twist_deg)) < largest_cos)
+      warnings |= MHO_WARN_STRONG_TWIST;
+  return warnings;
+}

@@ -1,0 +1,168 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Typed values out of a YAML document, with one clear line for each mistake.
+ */
+#include <errno.h>
+#include <stdarg.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "base/text.h"
+#include "input/yaml.h"
+
+void mho_yaml_fail(const mho_yaml *document, const mho_yaml_node *node,
+                   mho_status status, const char *field, const char *format, ...)
+{
+  char message[480];
+  va_list arguments;
+  va_start(arguments, format);
+  vsnprintf(message, sizeof message, format, arguments);
+  va_end(arguments);
+  mho_fail_at(document->error, status, "input", document->file, node->line, node->column,
+              field, "%s", message);
+}
+
+const mho_yaml_node *mho_yaml_find(const mho_yaml_node *mapping, const char *key)
+{
+  for (size_t i = 0; i < mapping->count; i++)
+    if (!strcmp(mapping->key[i]->text, key)) return mapping->item[i];
+  return NULL;
+}
+
+const mho_yaml_node *mho_yaml_require(const mho_yaml *document,
+                                      const mho_yaml_node *mapping, const char *key)
+{
+  const mho_yaml_node *node = mho_yaml_find(mapping, key);
+  if (!node)
+    mho_yaml_fail(document, mapping, MHO_ERR_KEY, key, "key '%s' is missing here", key);
+  return node;
+}
+
+void mho_yaml_check_keys(const mho_yaml *document, const mho_yaml_node *mapping,
+                         const char *const *known, size_t count)
+{
+  for (size_t i = 0; i < mapping->count; i++) {
+    const mho_yaml_node *key = mapping->key[i];
+    bool found = false;
+    for (size_t k = 0; k < count && !found; k++) found = !strcmp(known[k], key->text);
+    if (found) continue;
+    const char *nearest = mho_nearest_word(key->text, known, count);
+    char list[320];
+    if (nearest)
+      mho_yaml_fail(document, key, MHO_ERR_KEY, key->text,
+                    "key '%.40s' is not known; did you mean '%s'?", key->text, nearest);
+    else
+      mho_yaml_fail(document, key, MHO_ERR_KEY, key->text,
+                    "key '%.40s' is not known; allowed here: %s", key->text,
+                    mho_join_words(known, count, list, sizeof list));
+  }
+}
+
+bool mho_yaml_is(const mho_yaml *document, const mho_yaml_node *node,
+                 mho_yaml_kind kind, const char *field)
+{
+  static const char *const kind_name[] = {"a single value", "a list", "a mapping"};
+  static const char *const example[] = {"", " such as [a, b]", " such as {key: value}"};
+  if (!node) return false;
+  if (node->kind == kind) return true;
+  mho_yaml_fail(document, node, MHO_ERR_SYNTAX, field, "%s needs %s%s, not %s", field,
+                kind_name[kind], example[kind], kind_name[node->kind]);
+  return false;
+}
+
+bool mho_yaml_get_text(const mho_yaml *document, const mho_yaml_node *node,
+                       const char *field, const char **text)
+{
+  if (!mho_yaml_is(document, node, MHO_YAML_TEXT, field)) return false;
+  if (node->text[0] == '\0') {
+    mho_yaml_fail(document, node, MHO_ERR_SYNTAX, field, "%s is empty", field);
+    return false;
+  }
+  *text = node->text;
+  return true;
+}
+
+bool mho_yaml_get_quantity(const mho_yaml *document, const mho_yaml_node *node,
+                           const char *field, mho_dimension dimension, double low,
+                           double high, double *value)
+{
+  if (!mho_yaml_is(document, node, MHO_YAML_TEXT, field)) return false;
+  char reason[320];
+  double read;
+  mho_status status = mho_quantity_read(node->text, dimension, &read, reason, sizeof reason);
+  if (status != MHO_OK) {
+    mho_yaml_fail(document, node, status, field, "%s: %s", field, reason);
+    return false;
+  }
+  if (!(read >= low && read <= high)) {
+    const char *base = mho_dimension_base_unit(dimension);
+    mho_yaml_fail(document, node, MHO_ERR_RANGE, field,
+                  "%s: '%.40s' is out of range; allowed are %g %s to %g %s", field,
+                  node->text, low, base, high, base);
+    return false;
+  }
+  *value = read;
+  return true;
+}
+
+bool mho_yaml_get_number(const mho_yaml *document, const mho_yaml_node *node,
+                         const char *field, double low, double high, double *value)
+{
+  if (!mho_yaml_is(document, node, MHO_YAML_TEXT, field)) return false;
+  const char *end;
+  double read;
+  if (!mho_number_read(node->text, &end, &read) || *end) {
+    mho_yaml_fail(document, node, MHO_ERR_SYNTAX, field, "%s: '%.40s' is not a plain number",
+                  field, node->text);
+    return false;
+  }
+  if (!(read >= low && read <= high)) {
+    mho_yaml_fail(document, node, MHO_ERR_RANGE, field,
+                  "%s: '%.40s' is out of range; allowed are %g to %g", field, node->text, low,
+                  high);
+    return false;
+  }
+  *value = read;
+  return true;
+}
+
+bool mho_yaml_get_integer(const mho_yaml *document, const mho_yaml_node *node,
+                          const char *field, long low, long high, long *value)
+{
+  if (!mho_yaml_is(document, node, MHO_YAML_TEXT, field)) return false;
+  char *end;
+  errno = 0;
+  long read = strtol(node->text, &end, 10);
+  bool number = node->text[0] && strspn(node->text, "+-0123456789") == strlen(node->text);
+  if (!number || *end || errno || read < low || read > high) {
+    mho_yaml_fail(document, node, MHO_ERR_RANGE, field,
+                  "%s: '%.40s' is not allowed; a whole number from %ld to %ld is", field,
+                  node->text, low, high);
+    return false;
+  }
+  *value = read;
+  return true;
+}
+
+bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
+                         const char *field, const char *const *choices,
+                         size_t count, size_t *index)
+{
+  if (!mho_yaml_is(document, node, MHO_YAML_TEXT, field)) return false;
+  for (size_t i = 0; i < count; i++)
+    if (!strcmp(choices[i], node->text)) {
+      *index = i;
+      return true;
+    }
+  const char *nearest = mho_nearest_word(node->text, choices, count);
+  char list[320];
+  if (nearest)
+    mho_yaml_fail(document, node, MHO_ERR_REFERENCE, field,
+                  "%s: '%.40s' is not known; did you mean '%s'?", field, node->text, nearest);
+  else
+    mho_yaml_fail(document, node, MHO_ERR_REFERENCE, field,
+                  "%s: '%.40s' is not known; allowed are %s", field, node->text,
+                  mho_join_words(choices, count, list, sizeof list));
+  return false;
+}

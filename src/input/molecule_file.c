@@ -1,0 +1,398 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * A molecule file: keys that are settings, and the pi sites themselves.
+ */
+#include <mho/molecule_file.h>
+
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "base/text.h"
+#include "input/yaml.h"
+
+#define ENERGY_LIMIT_EV 100.0
+#define COUPLING_LOW_EV 1e-9
+#define COUPLING_HIGH_EV 10.0
+
+enum { CHARGE_LIMIT = 20, ROWS_MAX = 128 };
+
+typedef struct {
+  mho_yaml yaml;
+  mho_molecule *molecule;
+  const mho_settings *overrides;
+  bool explicit_energy; /* some site has an explicit onsite only */
+} reader;
+
+static bool fail_memory(const reader *r)
+{
+  mho_fail_at(r->yaml.error, MHO_ERR_MEMORY, "input", r->yaml.file, 0, 0, NULL,
+              "out of memory");
+  return false;
+}
+
+static bool is_id(const char *text)
+{
+  static const char *const letters = "abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZ";
+  static const char *const others =
+      "abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZ0123456789_";
+  return *text && strchr(letters, *text) && strspn(text, others) == strlen(text) &&
+         strlen(text) < MHO_ID_SIZE;
+}
+
+static void read_settings(reader *r)
+{
+  size_t count;
+  const char *const *name = mho_settings_names(&count);
+  mho_settings settings = {0};
+  for (size_t i = 0; i < count; i++) {
+    const mho_yaml_node *node = mho_yaml_find(r->yaml.root, name[i]);
+    if (!mho_yaml_is(&r->yaml, node, MHO_YAML_TEXT, name[i])) continue;
+    char reason[320];
+    mho_status status =
+        mho_settings_read(&settings, name[i], node->text, reason, sizeof reason);
+    if (status != MHO_OK)
+      mho_yaml_fail(&r->yaml, node, status, name[i], "%s: %s", name[i], reason);
+    else if (!strcmp(name[i], "fermi")) {
+      settings.fermi.line = node->line;
+      settings.fermi.column = node->column;
+    }
+  }
+  mho_settings_apply(&settings, r->molecule);
+  /* Rows are looked up while reading, so this override cannot wait. */
+  if (r->overrides && r->overrides->parameters)
+    r->molecule->parameters = r->overrides->parameters;
+}
+
+static void read_name(reader *r)
+{
+  const char *text, *path = r->yaml.file;
+  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "name");
+  if (mho_yaml_get_text(&r->yaml, node, "name", &text)) {
+    r->molecule->name = mho_copy_text(text);
+  } else {
+    const char *slash = strrchr(path, '/'), *stem = slash ? slash + 1 : path;
+    const char *dot = strrchr(stem, '.');
+    size_t length = dot && dot > stem ? (size_t)(dot - stem) : strlen(stem);
+    r->molecule->name = mho_print_text("%.*s", (int)length, stem);
+  }
+  if (!r->molecule->name) fail_memory(r);
+}
+
+/* Row of the parameter set that a site names. */
+static void read_element(reader *r, const mho_yaml_node *node, mho_site *site)
+{
+  const mho_parameter_set *set = r->molecule->parameters;
+  const char *text;
+  if (!mho_yaml_get_text(&r->yaml, node, "element", &text)) return;
+  site->row = mho_parameters_find(set, text);
+  if (site->row >= 0) {
+    site->electrons = mho_parameters_electrons(set, site->row);
+    return;
+  }
+  const char *row[ROWS_MAX];
+  size_t count = 0;
+  for (int i = 0; i < mho_parameters_count(set) && count < ROWS_MAX; i++)
+    row[count++] = mho_parameters_row_name(set, i);
+  const char *nearest = mho_nearest_word(text, row, count);
+  char list[320];
+  if (nearest)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
+                  "element: '%.40s' is not a row of %s; did you mean '%s'?", text,
+                  mho_parameters_name(set), nearest);
+  else
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
+                  "element: '%.40s' is not a row of %s; allowed are %s", text,
+                  mho_parameters_name(set), mho_join_words(row, count, list, sizeof list));
+}
+
+static void read_site(reader *r, const mho_yaml_node *node, mho_site *site)
+{
+  static const char *const keys[] = {"id", "element", "onsite"};
+  *site = (mho_site){.row = -1};
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "a site")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, 3);
+  const mho_yaml_node *id = mho_yaml_require(&r->yaml, node, "id");
+  const char *text;
+  if (mho_yaml_get_text(&r->yaml, id, "id", &text)) {
+    if (!is_id(text))
+      mho_yaml_fail(&r->yaml, id, MHO_ERR_SYNTAX, "id",
+                    "id: '%.40s' is not allowed; write a letter, then letters, digits or _, "
+                    "at most %d characters",
+                    text, MHO_ID_SIZE - 1);
+    else if (mho_molecule_find_site(r->molecule, text) >= 0)
+      mho_yaml_fail(&r->yaml, id, MHO_ERR_KEY, "id", "id: site '%s' exists already", text);
+    else
+      snprintf(site->id, sizeof site->id, "%s", text);
+  }
+  const mho_yaml_node *element = mho_yaml_find(node, "element");
+  const mho_yaml_node *onsite = mho_yaml_find(node, "onsite");
+  if (!element && !onsite)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "element",
+                  "a site needs an 'element' such as C or an 'onsite' energy");
+  read_element(r, element, site);
+  site->explicit_onsite =
+      mho_yaml_get_quantity(&r->yaml, onsite, "onsite", MHO_ENERGY, -ENERGY_LIMIT_EV,
+                            ENERGY_LIMIT_EV, &site->onsite_ev);
+  if (onsite) r->explicit_energy = true;
+}
+
+static void read_sites(reader *r)
+{
+  const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "sites");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "sites")) return;
+  if (list->count < 1 || list->count > MHO_SITE_LIMIT) {
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_LIMIT, "sites",
+                  "sites: %zu are given; allowed are 1 to %d", list->count, MHO_SITE_LIMIT);
+    return;
+  }
+  r->molecule->site = calloc(list->count, sizeof *r->molecule->site);
+  if (!r->molecule->site) {
+    fail_memory(r);
+    return;
+  }
+  for (size_t i = 0; i < list->count; i++) {
+    read_site(r, list->item[i], &r->molecule->site[i]);
+    r->molecule->site_count++;
+  }
+}
+
+/* Index of the site that a text names; a dangling name is an error. */
+static bool read_site_name(reader *r, const mho_yaml_node *node, const char *field, int *site)
+{
+  const char *text;
+  if (!mho_yaml_get_text(&r->yaml, node, field, &text)) return false;
+  *site = mho_molecule_find_site(r->molecule, text);
+  if (*site >= 0) return true;
+  const char *nearest = NULL, **id = malloc((size_t)(r->molecule->site_count + 1) * sizeof *id);
+  if (id) {
+    for (int i = 0; i < r->molecule->site_count; i++) id[i] = r->molecule->site[i].id;
+    nearest = mho_nearest_word(text, id, (size_t)r->molecule->site_count);
+  }
+  mho_yaml_fail(&r->yaml, node, MHO_ERR_REFERENCE, field,
+                nearest ? "%s: there is no site '%.40s'; did you mean '%s'?"
+                        : "%s: there is no site '%.40s' under 'sites'",
+                field, text, nearest);
+  free(id);
+  return false;
+}
+
+static bool read_ends(reader *r, const mho_yaml_node *node, mho_bond *bond)
+{
+  const mho_yaml_node *between = mho_yaml_require(&r->yaml, node, "between");
+  if (!mho_yaml_is(&r->yaml, between, MHO_YAML_LIST, "between")) return false;
+  if (between->count != 2) {
+    mho_yaml_fail(&r->yaml, between, MHO_ERR_SYNTAX, "between",
+                  "between: %zu sites are given; a bond joins two, such as [a1, a2]",
+                  between->count);
+    return false;
+  }
+  bool first = read_site_name(r, between->item[0], "between", &bond->site[0]);
+  bool second = read_site_name(r, between->item[1], "between", &bond->site[1]);
+  if (!first || !second) return false;
+  if (bond->site[0] == bond->site[1]) {
+    mho_yaml_fail(&r->yaml, between, MHO_ERR_REFERENCE, "between",
+                  "between: site '%s' is bonded to itself; a bond joins two sites",
+                  between->item[0]->text);
+    return false;
+  }
+  for (int b = 0; b < r->molecule->bond_count; b++) {
+    const int *other = r->molecule->bond[b].site;
+    if ((other[0] == bond->site[0] && other[1] == bond->site[1]) ||
+        (other[0] == bond->site[1] && other[1] == bond->site[0])) {
+      mho_yaml_fail(&r->yaml, between, MHO_ERR_KEY, "between",
+                    "between: the bond %s-%s is given twice", between->item[0]->text,
+                    between->item[1]->text);
+      return false;
+    }
+  }
+  return true;
+}
+
+static void read_bond(reader *r, const mho_yaml_node *node)
+{
+  static const char *const keys[] = {"between", "hopping", "twist"};
+  mho_bond bond = {.strength = 1.0};
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "a bond")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, 3);
+  bool ends = read_ends(r, node, &bond);
+  const mho_yaml_node *hopping = mho_yaml_find(node, "hopping");
+  bond.explicit_hopping =
+      mho_yaml_get_quantity(&r->yaml, hopping, "hopping", MHO_ENERGY, -ENERGY_LIMIT_EV,
+                            ENERGY_LIMIT_EV, &bond.hopping_ev);
+  const mho_yaml_node *twist = mho_yaml_find(node, "twist");
+  bond.rotatable = twist != NULL;
+  mho_yaml_get_quantity(&r->yaml, twist, "twist", MHO_ANGLE, -360.0, 360.0, &bond.twist_deg);
+  if (!ends) return;
+  for (int end = 0; !hopping && end < 2; end++) {
+    const mho_site *site = &r->molecule->site[bond.site[end]];
+    if (site->row < 0 && site->explicit_onsite) {
+      mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "hopping",
+                    "key 'hopping' is missing here: site '%s' has no element to take it from",
+                    site->id);
+      break;
+    }
+  }
+  r->molecule->bond[r->molecule->bond_count++] = bond;
+}
+
+static void read_bonds(reader *r)
+{
+  const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "bonds");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "bonds")) return;
+  r->molecule->bond = calloc(list->count + 1, sizeof *r->molecule->bond);
+  if (!r->molecule->bond) {
+    fail_memory(r);
+    return;
+  }
+  for (size_t i = 0; i < list->count; i++) read_bond(r, list->item[i]);
+}
+
+static void read_electrons(reader *r)
+{
+  mho_molecule *m = r->molecule;
+  const mho_yaml_node *electrons = mho_yaml_find(r->yaml.root, "electrons");
+  long charge = 0, count = 0;
+  mho_yaml_get_integer(&r->yaml, mho_yaml_find(r->yaml.root, "charge"), "charge",
+                       -CHARGE_LIMIT, CHARGE_LIMIT, &charge);
+  m->charge = (int)charge;
+  m->explicit_electrons = mho_yaml_get_integer(&r->yaml, electrons, "electrons", 0,
+                                               2L * m->site_count, &count);
+  if (m->explicit_electrons) m->electrons = (int)count;
+  if (electrons) return;
+  if (r->explicit_energy) {
+    mho_yaml_fail(&r->yaml, r->yaml.root, MHO_ERR_KEY, "electrons",
+                  "key 'electrons' is missing here: it is needed where a site has an explicit "
+                  "'onsite'");
+    return;
+  }
+  m->electrons = -m->charge;
+  for (int i = 0; i < m->site_count; i++) m->electrons += m->site[i].electrons;
+  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "charge");
+  if (node && (m->electrons < 0 || m->electrons > 2 * m->site_count))
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_RANGE, "charge",
+                  "charge: it leaves %d electrons; allowed are 0 to %d", m->electrons,
+                  2 * m->site_count);
+}
+
+static void read_contact_sites(reader *r, const mho_yaml_node *node, mho_contact *contact)
+{
+  const mho_yaml_node *list = mho_yaml_require(&r->yaml, node, "sites");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "sites")) return;
+  if (list->count < 1) {
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_LIMIT, "sites", "sites: a contact needs a site");
+    return;
+  }
+  contact->site = calloc(list->count, sizeof *contact->site);
+  contact->amplitude = calloc(list->count, sizeof *contact->amplitude);
+  if (!contact->site || !contact->amplitude) {
+    fail_memory(r);
+    return;
+  }
+  for (size_t i = 0; i < list->count; i++) {
+    int site;
+    if (!read_site_name(r, list->item[i], "sites", &site)) continue;
+    for (int k = 0; k < contact->count; k++)
+      if (contact->site[k] == site)
+        mho_yaml_fail(&r->yaml, list->item[i], MHO_ERR_KEY, "sites",
+                      "sites: '%s' is given twice in one contact", list->item[i]->text);
+    contact->site[contact->count] = site;
+    contact->amplitude[contact->count++] = 1.0;
+  }
+}
+
+static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *contact)
+{
+  const mho_yaml_node *list = mho_yaml_find(node, "amplitude");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "amplitude")) return;
+  if (contact->channels != MHO_CHANNELS_ONE) {
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_KEY, "amplitude",
+                  "amplitude: it belongs to 'channels: one', where it is coherent");
+    return;
+  }
+  if (list->count != (size_t)contact->count) {
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_SIZE, "amplitude",
+                  "amplitude: %zu values for %d sites; one a site is needed", list->count,
+                  contact->count);
+    return;
+  }
+  bool all_zero = true;
+  for (size_t i = 0; i < list->count; i++) {
+    mho_yaml_get_number(&r->yaml, list->item[i], "amplitude", -100.0, 100.0,
+                        &contact->amplitude[i]);
+    if (contact->amplitude[i] != 0.0) all_zero = false;
+  }
+  if (all_zero)
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_RANGE, "amplitude",
+                  "amplitude: all are zero, so the contact touches nothing");
+}
+
+static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
+                         mho_contact *contact)
+{
+  static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift"};
+  static const char *const channels[] = {"independent", "one"};
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, field)) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, sizeof keys / sizeof *keys);
+  read_contact_sites(r, node, contact);
+  mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, "coupling"), "coupling", MHO_ENERGY,
+                        COUPLING_LOW_EV, COUPLING_HIGH_EV, &contact->coupling_ev);
+  mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, "shift"), "shift", MHO_ENERGY, -10.0,
+                        10.0, &contact->shift_ev);
+  size_t choice = 0;
+  if (mho_yaml_get_choice(&r->yaml, mho_yaml_find(node, "channels"), "channels", channels, 2,
+                          &choice))
+    contact->channels = choice == 1 ? MHO_CHANNELS_ONE : MHO_CHANNELS_INDEPENDENT;
+  read_amplitudes(r, node, contact);
+}
+
+static void read_electrodes(reader *r)
+{
+  static const char *const keys[] = {"left", "right"};
+  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "electrodes");
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "electrodes")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, 2);
+  for (int side = 0; side < 2; side++)
+    read_contact(r, mho_yaml_require(&r->yaml, node, keys[side]), keys[side],
+                 &r->molecule->contact[side]);
+}
+
+static void read_molecule(reader *r)
+{
+  static const char *const keys[] = {"name",       "sites",       "bonds",    "electrons",
+                                     "charge",     "electrodes",  "fermi",    "parameters",
+                                     "beta",       "temperature", "coupling"};
+  mho_yaml_check_keys(&r->yaml, r->yaml.root, keys, sizeof keys / sizeof *keys);
+  read_settings(r);
+  read_name(r);
+  read_sites(r);
+  read_bonds(r);
+  read_electrons(r);
+  read_electrodes(r);
+}
+
+mho_status mho_molecule_read(const char *path, const mho_settings *defaults,
+                             const mho_settings *overrides, mho_molecule *molecule,
+                             mho_error *error)
+{
+  mho_error own;
+  if (!error) {
+    mho_error_init(&own);
+    error = &own;
+  }
+  mho_molecule_init(molecule);
+  reader r = {.molecule = molecule, .overrides = overrides};
+  int before = error->count;
+  mho_status status = mho_yaml_read(path, &r.yaml, error);
+  /* A key given twice does not stop the search for further mistakes. */
+  if (status == MHO_OK || (status == MHO_ERR_KEY && r.yaml.root)) {
+    molecule->source = mho_copy_text(path);
+    if (!molecule->source) fail_memory(&r);
+    mho_settings_apply(defaults, molecule);
+    read_molecule(&r);
+    mho_settings_apply(overrides, molecule);
+  }
+  mho_yaml_clear(&r.yaml);
+  if (error->count > before) return error->cause[before].status;
+  return status;
+}

@@ -1,0 +1,23 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Pieces of JSON that several writers share.  The functions return new
+ * objects; jansson refuses numbers that are not finite.
+ */
+#ifndef MHOLECULE_REPORT_JSON_H
+#define MHOLECULE_REPORT_JSON_H
+
+#include <jansson.h>
+
+#include "report/table.h"
+
+#define MHO_JSON_SCHEMA "mholecule-1"
+
+json_t *mho_json_tables(const mho_output *output);
+json_t *mho_json_warnings(const mho_output *output);
+json_t *mho_json_warning_words(unsigned warnings);
+json_t *mho_json_notes(const mho_output *output);
+
+/* Appends the text of an object, which it takes over, to the buffer. */
+MHO_MUST_USE mho_status mho_json_write(json_t *object, mho_buffer *buffer, mho_error *error);
+
+#endif

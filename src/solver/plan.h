@@ -1,0 +1,70 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * What a plan holds, and the ladder of methods that evaluate it.
+ *
+ * Every method gives T and a bound on its own relative error, so the caller
+ * takes the first that is good enough and no method needs to be robust alone.
+ * Channels are numbered through both leads: 0..left-1 are those of the left
+ * contact, left..left+right-1 those of the right one.
+ */
+#ifndef MHOLECULE_SOLVER_PLAN_H
+#define MHOLECULE_SOLVER_PLAN_H
+
+#include <float.h>
+
+#include <mho/transmission.h>
+
+typedef struct {
+  int i, j; /* i <= j */
+  double value_ev;
+} mho_entry;
+
+struct mho_plan {
+  int sites, left, right, channels; /* channels = left + right */
+  bool connected;
+  double norm_ev; /* 2-norm of H */
+  mho_entry *entry; /* non-zeros of H, upper triangle with the diagonal */
+  size_t entries;
+  double *coupling_ev, *shift_ev; /* [channels] */
+  double *vector;                 /* [channels][sites] */
+  double *level_ev;               /* [sites] */
+  double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
+};
+
+/* Unit roundoff of a double. */
+#define UNIT_ROUNDOFF (0.5 * DBL_EPSILON)
+
+/* Up to here the sum over levels is worth its bookkeeping. */
+enum { SPECTRUM_CHANNELS_MAX = 8 };
+
+/* A value with what is known of its error.  `kappa` is a lower bound of the
+ * condition of ln T: the part that comes from H and E. */
+typedef struct {
+  double transmission, log10_transmission;
+  double relative_error; /* to first order; INFINITY: the method cannot tell */
+  bool first_order;      /* false: too near to singular to trust that bound */
+  double kappa;
+} mho_estimate;
+
+/* Sum over the levels of the bare molecule; spectrum.c. */
+void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
+                           mho_estimate *estimate);
+
+/* Gaussian elimination in double and in 113 bits; elimination.inc.  The
+ * workspace belongs to one thread; create returns NULL without memory. */
+typedef struct mho_elimination_double mho_elimination_double;
+typedef struct mho_elimination_quad mho_elimination_quad;
+
+mho_elimination_double *mho_elimination_create_double(const mho_plan *plan);
+void mho_elimination_free_double(mho_elimination_double *workspace);
+void mho_elimination_evaluate_double(const mho_plan *plan,
+                                     mho_elimination_double *workspace,
+                                     double energy_ev, mho_estimate *estimate);
+
+mho_elimination_quad *mho_elimination_create_quad(const mho_plan *plan);
+void mho_elimination_free_quad(mho_elimination_quad *workspace);
+void mho_elimination_evaluate_quad(const mho_plan *plan,
+                                   mho_elimination_quad *workspace,
+                                   double energy_ev, mho_estimate *estimate);
+
+#endif

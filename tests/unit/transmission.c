@@ -1,0 +1,240 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * T(E) against 60 digits on random junctions (tests/physics/junctions.json,
+ * made by tests/physics/reference.py with mpmath), and its properties.
+ */
+#include "check.h"
+
+#include <mho/transmission.h>
+
+#include <jansson.h>
+#include <stdlib.h>
+
+#include "solver/plan.h"
+
+#ifndef MHO_TEST_JUNCTIONS
+#error "path of junctions.json is needed"
+#endif
+
+typedef struct {
+  int sites;
+  double *h;
+  mho_lead lead[2];
+} raw;
+
+static double *read_numbers(const json_t *array)
+{
+  size_t n = json_array_size(array);
+  double *value = malloc((n ? n : 1) * sizeof(double));
+  for (size_t i = 0; i < n; i++) value[i] = json_number_value(json_array_get(array, i));
+  return value;
+}
+
+static void read_lead(const json_t *channels, int sites, mho_lead *lead)
+{
+  size_t m = json_array_size(channels);
+  lead->channels = (int)m;
+  lead->coupling_ev = calloc(m, sizeof(double));
+  lead->shift_ev = calloc(m, sizeof(double));
+  lead->vector = calloc(m * (size_t)sites, sizeof(double));
+  for (size_t c = 0; c < m; c++) {
+    const json_t *channel = json_array_get(channels, c);
+    lead->coupling_ev[c] = json_number_value(json_object_get(channel, "coupling"));
+    double *vector = read_numbers(json_object_get(channel, "vector"));
+    memcpy(lead->vector + c * (size_t)sites, vector, (size_t)sites * sizeof(double));
+    free(vector);
+  }
+}
+
+static void raw_read(const json_t *entry, raw *r)
+{
+  r->sites = (int)json_integer_value(json_object_get(entry, "n"));
+  size_t n = (size_t)r->sites;
+  r->h = malloc(n * n * sizeof(double));
+  for (size_t i = 0; i < n; i++) {
+    double *row = read_numbers(json_array_get(json_object_get(entry, "H"), i));
+    memcpy(r->h + i * n, row, n * sizeof(double));
+    free(row);
+  }
+  read_lead(json_object_get(entry, "left"), r->sites, &r->lead[0]);
+  read_lead(json_object_get(entry, "right"), r->sites, &r->lead[1]);
+}
+
+static void raw_clear(raw *r)
+{
+  free(r->h);
+  for (int side = 0; side < 2; side++) {
+    free(r->lead[side].coupling_ev);
+    free(r->lead[side].shift_ev);
+    free(r->lead[side].vector);
+  }
+}
+
+static mho_plan *plan_of(const raw *r, bool exchanged)
+{
+  mho_junction junction;
+  mho_plan *plan = NULL;
+  mho_error error;
+  mho_error_init(&error);
+  mho_status status = mho_junction_from_hamiltonian(
+      r->sites, r->h, 0, 0.0, &r->lead[exchanged], &r->lead[!exchanged], &junction, &error);
+  if (status == MHO_OK) status = mho_plan_create(&junction, &plan, &error);
+  mho_junction_clear(&junction);
+  if (status != MHO_OK) fail_msg("%s", error.cause[0].message);
+  return plan;
+}
+
+static mho_point at(const mho_plan *plan, double energy)
+{
+  mho_point point;
+  assert_int_equal(mho_transmission_sweep(plan, 1, &energy, &point, NULL), MHO_OK);
+  return point;
+}
+
+/* The same junction with its sites in reverse order. */
+static void raw_reverse(const raw *from, raw *to)
+{
+  size_t n = (size_t)from->sites;
+  to->sites = from->sites;
+  to->h = malloc(n * n * sizeof(double));
+  for (size_t i = 0; i < n; i++)
+    for (size_t j = 0; j < n; j++) to->h[(n - 1 - i) * n + n - 1 - j] = from->h[i * n + j];
+  for (int side = 0; side < 2; side++) {
+    const mho_lead *source = &from->lead[side];
+    size_t m = (size_t)source->channels;
+    mho_lead *lead = &to->lead[side];
+    lead->channels = source->channels;
+    lead->coupling_ev = malloc(m * sizeof(double));
+    lead->shift_ev = calloc(m, sizeof(double));
+    lead->vector = malloc(m * n * sizeof(double));
+    memcpy(lead->coupling_ev, source->coupling_ev, m * sizeof(double));
+    for (size_t c = 0; c < m; c++)
+      for (size_t i = 0; i < n; i++)
+        lead->vector[c * n + n - 1 - i] = source->vector[c * n + i];
+  }
+}
+
+/* What the accuracy contract allows at a point of condition kappa. */
+static double allowed_error(double kappa)
+{
+  double contract = fmax(1e-12, 64 * UNIT_ROUNDOFF * kappa);
+  return contract > 1e-10 ? 1e-10 : contract;
+}
+
+static double relative_difference(double log10_a, double log10_b, double a, double b)
+{
+  if (b > 1e-290) return fabs(a - b) / b;
+  return fabs(log10_a - log10_b) * 2.302585092994046;
+}
+
+/* log10 of a decimal text that may lie below the range of a double. */
+static double log10_of_text(const char *text)
+{
+  long double value = strtold(text, NULL);
+  return value > 0 ? (double)log10l(value) : -INFINITY;
+}
+
+typedef struct {
+  int points, nodes, beyond, method[4];
+  double worst_fraction;
+} tally;
+
+static void compare_point(const mho_plan *plan, const mho_plan *exchanged,
+                          const mho_plan *reversed, const json_t *entry, size_t index,
+                          double beta_scale, tally *count)
+{
+  double energy = json_number_value(json_object_get(entry, "E"));
+  const char *text = json_string_value(json_object_get(entry, "T"));
+  double exact = strtod(text, NULL), kappa = json_number_value(json_object_get(entry, "kappa"));
+  mho_point point = at(plan, energy);
+  count->points++;
+  count->method[point.method]++;
+  assert_true(isfinite(point.transmission) && isfinite(point.log10_transmission));
+  assert_true(point.transmission >= 0 && point.transmission <= mho_plan_channels(plan));
+  if (strtold(text, NULL) == 0 || point.node) {
+    count->nodes++;
+    if (!(point.transmission <= 1e-28 * beta_scale) || !(exact <= 1e-28 * beta_scale))
+      fail_msg("junction %zu E %.17g: node %d, T %g, exact %s", index, energy, point.node,
+               point.transmission, text);
+    return;
+  }
+  if (!(kappa < 1e20)) {
+    count->beyond++;
+    return;
+  }
+  double difference = relative_difference(point.log10_transmission, log10_of_text(text),
+                                          point.transmission, exact);
+  double allowed = allowed_error(kappa);
+  if (!(difference <= allowed))
+    fail_msg("junction %zu E %.17g method %d: T %.17g, exact %s, off by %.3g, allowed %.3g, "
+             "claimed %.3g, kappa %.3g",
+             index, energy, point.method, point.transmission, text, difference, allowed,
+             point.relative_error, kappa);
+  if (difference > point.relative_error + 4e-16)
+    fail_msg("junction %zu E %.17g method %d: off by %.3g, bound says %.3g", index, energy,
+             point.method, difference, point.relative_error);
+  count->worst_fraction = fmax(count->worst_fraction, difference / allowed);
+  mho_point other[] = {at(exchanged, energy), at(reversed, energy)};
+  for (int k = 0; k < 2; k++) {
+    double change = relative_difference(other[k].log10_transmission, point.log10_transmission,
+                                        other[k].transmission, point.transmission);
+    if (!(change <= 2 * allowed))
+      fail_msg("junction %zu E %.17g: %s changes T by %.3g", index, energy,
+               k ? "renumbering" : "exchange of contacts", change);
+  }
+}
+
+static double coupling_product(const raw *r)
+{
+  double product = 1;
+  for (int side = 0; side < 2; side++) {
+    double sum = 0;
+    for (int c = 0; c < r->lead[side].channels; c++) sum += r->lead[side].coupling_ev[c];
+    product *= sum;
+  }
+  return product;
+}
+
+static void transmission_keeps_the_accuracy_contract(void **state)
+{
+  (void)state;
+  json_error_t problem;
+  json_t *root = json_load_file(MHO_TEST_JUNCTIONS, 0, &problem);
+  if (!root) fail_msg("%s", problem.text);
+  json_t *list = json_object_get(root, "junctions");
+  tally count = {0};
+  size_t index;
+  json_t *entry;
+  json_array_foreach(list, index, entry)
+  {
+    raw r, turned;
+    raw_read(entry, &r);
+    raw_reverse(&r, &turned);
+    mho_plan *plan = plan_of(&r, false), *exchanged = plan_of(&r, true);
+    mho_plan *reversed = plan_of(&turned, false);
+    size_t k;
+    json_t *point;
+    json_array_foreach(json_object_get(entry, "points"), k, point)
+        compare_point(plan, exchanged, reversed, point, index, coupling_product(&r), &count);
+    mho_plan_free(plan);
+    mho_plan_free(exchanged);
+    mho_plan_free(reversed);
+    raw_clear(&r);
+    raw_clear(&turned);
+  }
+  json_decref(root);
+  print_message("%d points: spectrum %d, elimination %d, extended %d; %d nodes, %d with kappa "
+                "> 1e20; worst %.2g of what is allowed\n",
+                count.points, count.method[1], count.method[2], count.method[3], count.nodes,
+                count.beyond, count.worst_fraction);
+  assert_true(count.points > 1000 && count.beyond * 20 < count.points);
+  for (int method = 1; method < 4; method++) assert_true(count.method[method] > 20);
+}
+
+int main(void)
+{
+  const struct CMUnitTest tests[] = {
+      cmocka_unit_test(transmission_keeps_the_accuracy_contract),
+  };
+  return cmocka_run_group_tests(tests, NULL, NULL);
+}
