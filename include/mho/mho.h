@@ -7,11 +7,14 @@
 
 #include <mho/conductance.h>
 #include <mho/constants.h>
+#include <mho/graph.h>
 #include <mho/junction.h>
+#include <mho/linker.h>
 #include <mho/molecule.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
 #include <mho/status.h>
+#include <mho/structure.h>
 #include <mho/transmission.h>
 #include <mho/version.h>
 #include <mho/warning.h>

@@ -13,7 +13,9 @@ typedef struct mho_parameter_set mho_parameter_set;
 MHO_BEGIN_DECLARATIONS
 
 /* A built-in set by its name, or NULL.  `van-catledge` is the default:
- * F. A. Van-Catledge, J. Org. Chem. 45, 4801 (1980). */
+ * F. A. Van-Catledge, J. Org. Chem. 45, 4801 (1980).  `streitwieser`:
+ * A. Streitwieser, Molecular Orbital Theory for Organic Chemists (1961); it
+ * has no rows for S, P and Si. */
 MHO_API const mho_parameter_set *mho_parameters_builtin(const char *name);
 
 /* Names of the built-in sets, *count of them. */
@@ -35,6 +37,10 @@ MHO_API double mho_parameters_h(const mho_parameter_set *set, int row);
 MHO_API double mho_parameters_k(const mho_parameter_set *set, int row,
                                 int other);
 MHO_API int mho_parameters_electrons(const mho_parameter_set *set, int row);
+
+/* True where a set gives no k for the pair and k_XY = k_CX k_CY stands in. */
+MHO_API bool mho_parameters_k_is_product(const mho_parameter_set *set, int row,
+                                         int other);
 
 MHO_END_DECLARATIONS
 

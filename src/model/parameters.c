@@ -4,6 +4,10 @@
  * overlap and ionisation data, checked against two agreeing transcriptions.
  * In the paper's notation a dot is a pi electron: N., O., S., P. bring one
  * (pyridine, carbonyl, thione), N:, O:, S:, P: two (pyrrole, furan ...).
+ *
+ * A. Streitwieser, Molecular Orbital Theory for Organic Chemists (1961), p.
+ * 135, read second-hand; it gives k to carbon only, so that two heteroatoms
+ * have the product of theirs (a rule of ours).
  */
 #include <mho/parameters.h>
 
@@ -17,7 +21,7 @@ struct mho_parameter_set {
   const char *row[ROWS];
   int electrons[ROWS];
   double h[ROWS];
-  double k[ROWS][ROWS]; /* upper triangle */
+  double k[ROWS][ROWS]; /* upper triangle; 0 where the product rule holds */
 };
 
 static const mho_parameter_set van_catledge = {
@@ -45,8 +49,20 @@ static const mho_parameter_set van_catledge = {
         {0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0, 0.68},
     }};
 
-static const mho_parameter_set *const builtin[] = {&van_catledge};
-static const char *const builtin_name[] = {"van-catledge"};
+static const mho_parameter_set streitwieser = {
+    .name = "streitwieser",
+    .source = "A. Streitwieser, Molecular Orbital Theory for Organic Chemists "
+              "(1961), p. 135, second-hand",
+    .count = 9,
+    .row = {"C", "B", "N-pyridine", "N-pyrrole", "O-carbonyl", "O-furan", "F",
+            "Cl", "Br"},
+    .electrons = {1, 0, 1, 2, 1, 2, 2, 2, 2},
+    .h = {0, -1.0, 0.5, 1.5, 1.0, 2.0, 3.0, 2.0, 1.5},
+    .k = {{1.0, 0.7, 1.0, 0.8, 1.0, 0.8, 0.7, 0.4, 0.3}},
+};
+
+static const mho_parameter_set *const builtin[] = {&van_catledge, &streitwieser};
+static const char *const builtin_name[] = {"van-catledge", "streitwieser"};
 
 enum { BUILTIN_COUNT = sizeof builtin / sizeof *builtin };
 
@@ -92,8 +108,16 @@ double mho_parameters_h(const mho_parameter_set *set, int row)
   return set->h[row];
 }
 
+bool mho_parameters_k_is_product(const mho_parameter_set *set, int row,
+                                 int other)
+{
+  return (row <= other ? set->k[row][other] : set->k[other][row]) == 0.0;
+}
+
 double mho_parameters_k(const mho_parameter_set *set, int row, int other)
 {
+  if (mho_parameters_k_is_product(set, row, other))
+    return set->k[0][row] * set->k[0][other];
   return row <= other ? set->k[row][other] : set->k[other][row];
 }
 

@@ -10,7 +10,6 @@
  * Plummer, Matching Theory, 1986, chapter 3) that is the case exactly if one
  * of its atoms is missed by some maximum matching.
  */
-#include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -18,12 +17,11 @@
 #include "molecule/graph.h"
 #include "molecule/matching.h"
 #include "molecule/pi.h"
-#include "molecule/texts.h"
 
 #define SINGLE_STRENGTH 0.9
 #define DOUBLE_STRENGTH 1.1
 
-enum { RING_SIZE_LIMIT = 8, RING_WALK_LIMIT = 512, NAME_SIZE = 24 };
+enum { RING_SIZE_LIMIT = 8, RING_WALK_LIMIT = 512 };
 
 typedef struct {
   const mho_graph *graph;
@@ -181,31 +179,23 @@ static double strength_of(const bond_finder *f, const mho_pi_bond *bond,
   return aryl ? 1.0 : SINGLE_STRENGTH;
 }
 
-static mho_status describe(bond_finder *f, mho_texts *notes)
+static void describe(bond_finder *f)
 {
   for (int b = 0; b < f->pi->bond_count; b++) {
     mho_pi_bond *bond = &f->pi->bond[b];
-    formal_order order = order_of(f, bond);
     if (f->graph->bond[bond->bond].ring) continue;
+    formal_order order = order_of(f, bond);
     bond->strength = strength_of(f, bond, order);
     bond->rotatable = order == ORDER_SINGLE && can_turn(f, bond->site[0]) &&
                       can_turn(f, bond->site[1]);
-    if (!bond->rotatable) continue;
-    const char *reason;
-    char name[2][NAME_SIZE];
-    const int *ends = f->graph->bond[bond->bond].atom;
-    bond->twist_deg = mho_torsion_estimate(f->graph, f->pi, ends, &reason);
-    for (int end = 0; end < 2; end++)
-      mho_graph_atom_name(f->graph, ends[end], name[end], NAME_SIZE);
-    if (mho_texts_add(notes, "twist %s-%s: %g deg, an estimate (%s)", name[0],
-                      name[1], bond->twist_deg, reason) != MHO_OK)
-      return MHO_ERR_MEMORY;
+    if (bond->rotatable)
+      bond->twist_deg = mho_torsion_estimate(
+          f->graph, f->pi, f->graph->bond[bond->bond].atom, &bond->reason);
   }
-  return MHO_OK;
 }
 
 mho_status mho_pi_find_bonds(const mho_graph *graph, mho_pi *pi,
-                             mho_texts *notes, mho_error *error)
+                             mho_error *error)
 {
   size_t n = (size_t)pi->site_count, m = (size_t)pi->bond_count;
   int *memory = malloc((5 * n + 1 + 2 * m) * sizeof *memory + 1);
@@ -220,7 +210,7 @@ mho_status mho_pi_find_bonds(const mho_graph *graph, mho_pi *pi,
     status = match_sites(&f);
     if (status == MHO_OK) {
       find_parts(&f);
-      status = describe(&f, notes);
+      describe(&f);
     }
   }
   free(memory);

@@ -21,7 +21,8 @@ typedef struct {
   int bond;         /* of the graph */
   double strength;  /* formal alternation: 0.9, 1 or 1.1 */
   bool rotatable;
-  double twist_deg; /* estimate */
+  double twist_deg; /* estimate, and what it rests on */
+  const char *reason;
 } mho_pi_bond;
 
 typedef struct {
@@ -43,10 +44,10 @@ MHO_MUST_USE mho_status mho_pi_perceive(const mho_graph *graph,
                                         mho_texts *notes, mho_error *error);
 void mho_pi_clear(mho_pi *pi);
 
-/* Fills strength, rotatable and twist_deg of the bonds; notes name the
- * estimates.  Errors: MHO_ERR_MEMORY. */
+/* Fills strength, rotatable, twist_deg and reason of the bonds.
+ * Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_pi_find_bonds(const mho_graph *graph, mho_pi *pi,
-                                          mho_texts *notes, mho_error *error);
+                                          mho_error *error);
 
 /* Size of the smallest ring (up to 8) through an atom whose atoms all carry p
  * orbitals, 0 if there is none. */
