@@ -11,8 +11,10 @@
 #include <mho/junction.h>
 #include <mho/linker.h>
 #include <mho/molecule.h>
+#include <mho/molecule_file.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
+#include <mho/settings.h>
 #include <mho/status.h>
 #include <mho/structure.h>
 #include <mho/transmission.h>

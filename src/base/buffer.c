@@ -4,6 +4,7 @@
 #include <mho/quantity.h>
 
 #include <errno.h>
+#include <stdint.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>

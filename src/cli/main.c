@@ -1,10 +1,322 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-#include <mho/mho.h>
-
+#include <errno.h>
+#include <getopt.h>
+#include <stdarg.h>
 #include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
 
-int main(void)
+#include "base/lapack.h"
+#include "base/text.h"
+#include "cli/command.h"
+
+enum { CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8 };
+enum { TABLES = CONDUCTANCE | TRANSMISSION, MOLECULES = CHECK | TABLES, ALL = MOLECULES | RUN };
+
+typedef struct {
+  int bit;
+  const char *name, *arguments, *summary, *details;
+  verb_function *run;
+} verb;
+
+static const verb verbs[] = {
+    {CHECK, "check", "FILE...", "say what was understood of a molecule",
+     "Sites, bonds, electrons, levels, contacts and warnings of each molecule.\n"
+     "Needs no contacts.",
+     command_check},
+    {CONDUCTANCE, "conductance", "FILE...",
+     "conductance at the Fermi level and how far it may be off",
+     "Thermal zero-bias conductance of each molecule at its Fermi level, and its\n"
+     "5 % and 95 % quantiles while the Fermi level moves over the alignment window.",
+     command_conductance},
+    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), and its resonances",
+     "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
+     "follow the resonances, so that none is missed.",
+     command_transmission},
+    {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
+     "Reads a study file and writes a results folder: report.html, results.json,\n"
+     "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
+     "STUDY-results beside the study unless -o says otherwise; an earlier results\n"
+     "folder is replaced only by a complete new one.",
+     command_run},
+};
+
+typedef struct {
+  int verbs;
+  const char *name;
+  char letter; /* of a short form, or 0 */
+  const char *argument; /* NULL for a flag */
+  const char *help;
+} option_row;
+
+enum {
+  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WINDOW, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_QUIET, OPT_HELP, OPTION_COUNT
+};
+
+static const option_row options[OPTION_COUNT] = {
+    [OPT_ENERGIES] = {TRANSMISSION, "energies", 0, "'LOW, HIGH'",
+                      "range above the Fermi level (default '-3 eV, 3 eV')"},
+    [OPT_SAMPLES] = {TRANSMISSION, "samples", 0, "N", "that many even steps, both ends included"},
+    [OPT_AT] = {TRANSMISSION, "at", 0, "ENERGY", "one row, at this energy above the Fermi level"},
+    [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
+    [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
+                    "half width of the alignment window (default '0.5 eV')"},
+    [OPT_FERMI] = {ALL, "fermi", 0, "LEVEL",
+                   "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
+    [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
+    [OPT_COUPLING] = {ALL, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
+    [OPT_BETA] = {ALL, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
+    [OPT_PARAMETERS] = {ALL, "parameters", 0, "SET", "parameter set (default van-catledge)"},
+    [OPT_CSV] = {TABLES, "csv", 0, NULL, "write CSV"},
+    [OPT_JSON] = {MOLECULES, "json", 0, NULL, "write JSON"},
+    [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
+    [OPT_OUTPUT] = {ALL, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_QUIET] = {ALL, "quiet", 0, NULL, "no progress and no remarks"},
+    [OPT_HELP] = {ALL, "help", 'h', NULL, "this help"},
+};
+
+enum { VERB_COUNT = sizeof verbs / sizeof *verbs };
+
+int exit_of(mho_status status)
 {
-  printf("mho %s\n", mho_version());
-  return 0;
+  if (status == MHO_OK) return EXIT_DONE;
+  return mho_status_is_input(status) ? EXIT_INPUT : EXIT_RUNTIME;
 }
+
+int usage_error(const char *verb_name, const char *format, ...)
+{
+  fprintf(stderr, "mho%s%s: ", verb_name ? " " : "", verb_name ? verb_name : "");
+  va_list arguments;
+  va_start(arguments, format);
+  vfprintf(stderr, format, arguments);
+  va_end(arguments);
+  fprintf(stderr, "\n");
+  return EXIT_INPUT;
+}
+
+static void print_help(void)
+{
+  printf("mho - conductance of single-molecule junctions from a tight-binding model\n\n"
+         "usage: mho VERB [options] FILE...\n\n");
+  for (int i = 0; i < VERB_COUNT; i++)
+    printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
+  printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
+         "\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
+         "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
+}
+
+static void print_verb_help(const verb *v)
+{
+  printf("usage: mho %s [options] %s\n\n%s\n\n", v->name, v->arguments, v->details);
+  for (int i = 0; i < OPTION_COUNT; i++) {
+    if (!(options[i].verbs & v->bit)) continue;
+    char left[48];
+    const char *argument = options[i].argument;
+    snprintf(left, sizeof left, "%s--%s%s%s", options[i].letter == 'o' ? "-o, " : options[i].letter == 'h' ? "-h, " : "    ",
+             options[i].name, argument ? " " : "", argument ? argument : "");
+    printf("  %-28s %s\n", left, options[i].help);
+  }
+}
+
+static void print_version(void)
+{
+  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\n"
+         "licence: GPL-3.0-or-later\n",
+         mho_version(), mho_lapack_description());
+}
+
+/* Reads a quantity of an option; prints what is wrong. */
+static int read_quantity(const char *verb_name, const char *option, const char *text,
+                         mho_dimension dimension, double low, double high, double *value)
+{
+  char reason[320];
+  if (mho_quantity_read(text, dimension, value, reason, sizeof reason) != MHO_OK)
+    return usage_error(verb_name, "--%s: %s", option, reason);
+  const char *unit = mho_dimension_base_unit(dimension);
+  if (!(*value >= low && *value <= high))
+    return usage_error(verb_name, "--%s: '%s' is out of range; allowed are %g %s to %g %s",
+                       option, text, low, unit, high, unit);
+  return EXIT_DONE;
+}
+
+/* `LOW, HIGH` */
+static int read_energies(command *cmd, const char *text)
+{
+  const char *comma = strchr(text, ',');
+  if (!comma || strchr(comma + 1, ','))
+    return usage_error(cmd->verb,
+                       "--energies: '%s' is not a range; write '-3 eV, 3 eV'", text);
+  char *low = mho_print_text("%.*s", (int)(comma - text), text);
+  if (!low) return usage_error(cmd->verb, "out of memory");
+  int code = read_quantity(cmd->verb, "energies", low, MHO_ENERGY, -1000, 1000,
+                           &cmd->energy_low_ev);
+  free(low);
+  if (code == EXIT_DONE)
+    code = read_quantity(cmd->verb, "energies", comma + 1, MHO_ENERGY, -1000, 1000,
+                         &cmd->energy_high_ev);
+  if (code == EXIT_DONE && !(cmd->energy_low_ev < cmd->energy_high_ev))
+    return usage_error(cmd->verb,
+                       "--energies: '%s' runs downwards; the lower end comes first", text);
+  cmd->has_energies = true;
+  return code;
+}
+
+static int read_samples(command *cmd, const char *text)
+{
+  enum { SAMPLES_MAX = 1000000 };
+  char *end;
+  errno = 0;
+  cmd->samples = strtol(text, &end, 10);
+  if (errno || *end || end == text || cmd->samples < 2 || cmd->samples > SAMPLES_MAX)
+    return usage_error(cmd->verb, "--samples: '%s' is not allowed; a whole number from 2 to %d is",
+                       text, SAMPLES_MAX);
+  cmd->has_samples = true;
+  return EXIT_DONE;
+}
+
+static int read_option(command *cmd, int which, const char *text)
+{
+  char reason[320];
+  switch (which) {
+  case OPT_ENERGIES: return read_energies(cmd, text);
+  case OPT_SAMPLES: return read_samples(cmd, text);
+  case OPT_AT:
+    cmd->has_at = true;
+    return read_quantity(cmd->verb, "at", text, MHO_ENERGY, -1000, 1000, &cmd->at_ev);
+  case OPT_WINDOW:
+    return read_quantity(cmd->verb, "window", text, MHO_ENERGY, 0, 10, &cmd->window_ev);
+  case OPT_POLES: cmd->poles = true; return EXIT_DONE;
+  case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
+  case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
+  case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
+  case OPT_CSV:
+  case OPT_JSON:
+    if (cmd->format != FORMAT_SCREEN && cmd->format != (which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON))
+      return usage_error(cmd->verb, "--csv and --json exclude each other");
+    cmd->format = which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON;
+    return EXIT_DONE;
+  default:
+    if (mho_settings_read(&cmd->overrides, options[which].name, text, reason, sizeof reason) !=
+        MHO_OK)
+      return usage_error(cmd->verb, "--%s: %s", options[which].name, reason);
+    return EXIT_DONE;
+  }
+}
+
+/* What getopt could not place: an unknown option or a missing argument. */
+static int refuse_option(const verb *v, char *const *argv, int code)
+{
+  const char *text = argv[optind - 1];
+  if (code == ':')
+    return usage_error(v->name, "option '%s' needs a value; see mho %s --help", text, v->name);
+  const char *known[OPTION_COUNT];
+  size_t count = 0;
+  for (int i = 0; i < OPTION_COUNT; i++)
+    if (options[i].verbs & v->bit) known[count++] = options[i].name;
+  char word[64];
+  snprintf(word, sizeof word, "%.*s", (int)strcspn(text + strspn(text, "-"), "="),
+           text + strspn(text, "-"));
+  const char *nearest = mho_nearest_word(word, known, count);
+  if (nearest && !strcmp(nearest, word))
+    return usage_error(v->name, "option '--%s' takes no value", word);
+  if (nearest)
+    return usage_error(v->name, "option '%s' is not known; did you mean '--%s'?", text, nearest);
+  return usage_error(v->name, "option '%s' is not known; see mho %s --help", text, v->name);
+}
+
+static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
+{
+  struct option table[OPTION_COUNT + 1];
+  int count = 0;
+  for (int i = 0; i < OPTION_COUNT; i++)
+    if (options[i].verbs & v->bit)
+      table[count++] = (struct option){
+          options[i].name, options[i].argument ? required_argument : no_argument, NULL, 256 + i};
+  table[count] = (struct option){0};
+  *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV};
+  opterr = 0;
+  int code;
+  while ((code = getopt_long(argc, argv, ":ho:", table, NULL)) != -1) {
+    if (code == 'h') code = 256 + OPT_HELP;
+    if (code == 'o') code = 256 + OPT_OUTPUT;
+    if (code < 256) return refuse_option(v, argv, code);
+    if (code == 256 + OPT_HELP) {
+      *help = true;
+      return EXIT_DONE;
+    }
+    int status = read_option(cmd, code - 256, optarg);
+    if (status != EXIT_DONE) return status;
+  }
+  cmd->files = argc - optind;
+  cmd->file = argv + optind;
+  if (cmd->files == 0)
+    return usage_error(v->name, "%s is missing; see mho %s --help", v->arguments, v->name);
+  return EXIT_DONE;
+}
+
+static void print_causes(const command *cmd, const mho_error *error)
+{
+  for (int i = 0; i < error->count; i++) {
+    char line[1400];
+    mho_cause_format(&error->cause[i], line, sizeof line);
+    if (error->cause[i].file[0]) fprintf(stderr, "%s\n", line);
+    else fprintf(stderr, "mho %s: %s\n", cmd->verb, line);
+  }
+  if (error->suppressed)
+    fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
+}
+
+static int run_verb(const verb *v, int argc, char **argv)
+{
+  command cmd;
+  bool help = false;
+  int code = parse(v, argc, argv, &cmd, &help);
+  if (help) print_verb_help(v);
+  else if (code == EXIT_DONE) {
+    mho_error error;
+    mho_error_init(&error);
+    code = v->run(&cmd, &error);
+    print_causes(&cmd, &error);
+  }
+  return code;
+}
+
+/* stdout may be a full disk: closing it is the last chance to notice. */
+static int close_stdout(int code)
+{
+  if (fflush(stdout) == 0 && !ferror(stdout)) return code;
+  if (errno == EPIPE) return code;
+  fprintf(stderr, "mho: the output cannot be written: %s\n", strerror(errno));
+  return code == EXIT_DONE ? EXIT_RUNTIME : code;
+}
+
+static int dispatch(int argc, char **argv)
+{
+  const char *word = argc > 1 ? argv[1] : NULL;
+  if (!word) {
+    print_help();
+    return EXIT_INPUT;
+  }
+  if (!strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help")) {
+    print_help();
+    return EXIT_DONE;
+  }
+  if (!strcmp(word, "--version")) {
+    print_version();
+    return EXIT_DONE;
+  }
+  const char *names[VERB_COUNT];
+  for (int i = 0; i < VERB_COUNT; i++) {
+    names[i] = verbs[i].name;
+    if (!strcmp(verbs[i].name, word)) return run_verb(&verbs[i], argc - 1, argv + 1);
+  }
+  const char *nearest = mho_nearest_word(word, names, VERB_COUNT);
+  char list[200];
+  if (nearest) return usage_error(NULL, "verb '%s' is not known; did you mean '%s'?", word, nearest);
+  return usage_error(NULL, "verb '%s' is not known; allowed are %s", word,
+                     mho_join_words(names, VERB_COUNT, list, sizeof list));
+}
+
+int main(int argc, char **argv) { return close_stdout(dispatch(argc, argv)); }

@@ -1,0 +1,28 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <stdlib.h>
+
+#include "cli/command.h"
+#include "report/stages.h"
+
+int command_check(const command *cmd, mho_error *error)
+{
+  subject *list;
+  mho_status status = subjects_read(cmd, false, &list, error);
+  mho_checked *checked = calloc((size_t)cmd->files, sizeof *checked);
+  if (status == MHO_OK && !checked)
+    status = mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  mho_buffer buffer = {0};
+  if (status == MHO_OK) {
+    size_t count = (size_t)cmd->files;
+    for (size_t i = 0; i < count; i++)
+      checked[i] = (mho_checked){&list[i].molecule, &list[i].junction, list[i].warnings};
+    status = cmd->format == FORMAT_JSON
+                 ? mho_write_check_json(checked, count, &buffer, error)
+                 : mho_write_check_screen(checked, count, digits_of(cmd), &buffer, error);
+  }
+  if (status == MHO_OK) status = text_write(cmd, &buffer, error);
+  mho_buffer_clear(&buffer);
+  free(checked);
+  subjects_free(list, cmd->files);
+  return exit_of(status);
+}

@@ -1,0 +1,67 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * The command line: one table of verbs and one of options give parsing,
+ * dispatch and help.
+ */
+#ifndef MHOLECULE_CLI_COMMAND_H
+#define MHOLECULE_CLI_COMMAND_H
+
+#include <mho/mho.h>
+
+#include "report/table.h"
+
+enum { EXIT_DONE = 0, EXIT_RUNTIME = 1, EXIT_INPUT = 2 };
+
+typedef enum { FORMAT_SCREEN, FORMAT_CSV, FORMAT_JSON } output_format;
+
+/* Everything that options can say; each verb uses its part. */
+typedef struct {
+  const char *verb;
+  mho_settings overrides;
+  output_format format;
+  bool exact, quiet, poles;
+  const char *output; /* -o, or NULL */
+  bool has_energies, has_samples, has_at;
+  double energy_low_ev, energy_high_ev, at_ev;
+  long samples;
+  double window_ev;
+  int files;
+  char **file;
+} command;
+
+/* A verb returns the exit status; causes are in error. */
+typedef int verb_function(const command *cmd, mho_error *error);
+
+verb_function command_check, command_conductance, command_transmission, command_run;
+
+/* Exit status that belongs to a status. */
+int exit_of(mho_status status);
+
+/* `mho VERB: message` on stderr for a mistake of the command line; returns 2. */
+int usage_error(const char *verb, const char *format, ...) MHO_PRINTF(2, 3);
+
+/* A molecule, its numbers and its warnings, as every verb needs them. */
+typedef struct {
+  mho_molecule molecule;
+  mho_junction junction;
+  unsigned warnings;
+} subject;
+
+/* Reads every FILE of the command; names must differ.  With need_contacts a
+ * molecule without two contacts is an error.  The caller frees with
+ * subjects_free, also after a failure (*list may be NULL then). */
+MHO_MUST_USE mho_status subjects_read(const command *cmd, bool need_contacts,
+                                      subject **list, mho_error *error);
+void subjects_free(subject *list, int count);
+
+/* Writes an output in the chosen form to stdout or to -o PATH. */
+MHO_MUST_USE mho_status output_write(const command *cmd, const mho_output *output,
+                                     mho_error *error);
+MHO_MUST_USE mho_status text_write(const command *cmd, const mho_buffer *buffer,
+                                   mho_error *error);
+int digits_of(const command *cmd);
+
+/* True if the text ends like a file that holds a molecule. */
+bool has_molecule_extension(const char *text);
+
+#endif

@@ -1,0 +1,41 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "cli/command.h"
+#include "report/stages.h"
+
+static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
+                               mho_table *table, mho_error *error)
+{
+  mho_plan *plan = NULL;
+  mho_conductance result;
+  mho_conductance_options options = {.window_ev = cmd->window_ev};
+  mho_status status = mho_plan_create(&s->junction, &plan, error);
+  if (status == MHO_OK)
+    status = mho_conductance_compute(plan, s->junction.fermi_ev, s->junction.temperature_k,
+                                     &options, &result, error);
+  mho_plan_free(plan);
+  if (status != MHO_OK) return status;
+  unsigned warnings = s->warnings | result.warnings;
+  mho_conductance_row(table, s->molecule.name, &result, warnings);
+  mho_output_warn(output, s->molecule.name, warnings);
+  if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
+  return MHO_OK;
+}
+
+int command_conductance(const command *cmd, mho_error *error)
+{
+  subject *list;
+  mho_output output = {0};
+  mho_status status = subjects_read(cmd, true, &list, error);
+  mho_table *table = mho_conductance_table(&output);
+  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
+    status = add_molecule(cmd, &list[i], &output, table, error);
+  if (!cmd->quiet)
+    mho_output_note(&output,
+                    "conductance is the thermal value at the Fermi level; the window values are "
+                    "its 5 %% and 95 %% quantiles over +-%g eV around it",
+                    cmd->window_ev);
+  if (status == MHO_OK) status = output_write(cmd, &output, error);
+  mho_output_clear(&output);
+  subjects_free(list, cmd->files);
+  return exit_of(status);
+}

@@ -1,0 +1,114 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <stdlib.h>
+
+#include "cli/command.h"
+#include "report/stages.h"
+
+#define DEFAULT_REACH_EV 3.0
+
+enum { EVEN_POINTS = 601 };
+
+/* Energies above the Fermi level; the caller frees them. */
+static mho_status choose_energies(const command *cmd, const subject *s, const mho_plan *plan,
+                                  double **energy, size_t *count, mho_error *error)
+{
+  double low = cmd->has_energies ? cmd->energy_low_ev : -DEFAULT_REACH_EV;
+  double high = cmd->has_energies ? cmd->energy_high_ev : DEFAULT_REACH_EV;
+  double fermi = s->junction.fermi_ev;
+  if (!cmd->has_samples && !cmd->has_at) {
+    mho_status status =
+        mho_energy_grid(plan, fermi + low, fermi + high, EVEN_POINTS, energy, count, error);
+    for (size_t i = 0; status == MHO_OK && i < *count; i++) (*energy)[i] -= fermi;
+    return status;
+  }
+  *count = cmd->has_at ? 1 : (size_t)cmd->samples;
+  *energy = malloc(*count * sizeof **energy);
+  if (!*energy) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  if (cmd->has_at) (*energy)[0] = cmd->at_ev;
+  for (size_t i = 0; !cmd->has_at && i < *count; i++)
+    (*energy)[i] = i + 1 == *count
+                       ? high
+                       : low + (high - low) * (double)i / (double)(*count - 1);
+  return MHO_OK;
+}
+
+static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan,
+                            mho_table *table, mho_error *error)
+{
+  double *relative = NULL, *energy = NULL;
+  mho_point *point = NULL;
+  size_t count = 0;
+  mho_status status = choose_energies(cmd, s, plan, &relative, &count, error);
+  if (status == MHO_OK) {
+    energy = malloc(count * sizeof *energy);
+    point = malloc(count * sizeof *point);
+    if (!energy || !point)
+      status = mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  }
+  if (status == MHO_OK) {
+    for (size_t i = 0; i < count; i++) energy[i] = s->junction.fermi_ev + relative[i];
+    status = mho_transmission_sweep(plan, count, energy, point, error);
+  }
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    mho_transmission_row(table, s->molecule.name, relative[i], &point[i]);
+  free(relative);
+  free(energy);
+  free(point);
+  return status;
+}
+
+static mho_status add_poles(const subject *s, const mho_plan *plan, mho_table *table,
+                            mho_error *error)
+{
+  int count = mho_plan_sites(plan);
+  mho_pole *pole = malloc((size_t)count * sizeof *pole);
+  if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  mho_status status = mho_poles(plan, pole, error);
+  for (int k = 0; status == MHO_OK && k < count; k++)
+    mho_poles_row(table, s->molecule.name, s->junction.fermi_ev, &pole[k]);
+  free(pole);
+  return status;
+}
+
+static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
+                               mho_table *table, mho_error *error)
+{
+  mho_plan *plan = NULL;
+  mho_status status = mho_plan_create(&s->junction, &plan, error);
+  if (status == MHO_OK)
+    status = cmd->poles ? add_poles(s, plan, table, error)
+                        : add_sweep(cmd, s, plan, table, error);
+  mho_plan_free(plan);
+  unsigned warnings = s->warnings;
+  if (!mho_junction_is_connected(&s->junction)) warnings |= MHO_WARN_NO_PI_PATH;
+  mho_output_warn(output, s->molecule.name, warnings);
+  if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
+  return status;
+}
+
+static int check_options(const command *cmd)
+{
+  if (cmd->has_at && (cmd->has_samples || cmd->has_energies))
+    return usage_error(cmd->verb, "--at gives one row; it excludes --energies and --samples");
+  if (cmd->poles && (cmd->has_at || cmd->has_samples || cmd->has_energies))
+    return usage_error(cmd->verb,
+                       "--poles lists every resonance; it excludes --at, --energies and --samples");
+  return EXIT_DONE;
+}
+
+int command_transmission(const command *cmd, mho_error *error)
+{
+  int code = check_options(cmd);
+  if (code != EXIT_DONE) return code;
+  subject *list;
+  mho_output output = {0};
+  mho_status status = subjects_read(cmd, true, &list, error);
+  mho_table *table =
+      cmd->poles ? mho_poles_table(&output) : mho_transmission_table(&output);
+  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
+    status = add_molecule(cmd, &list[i], &output, table, error);
+  if (status == MHO_OK) status = output_write(cmd, &output, error);
+  mho_output_clear(&output);
+  subjects_free(list, cmd->files);
+  return exit_of(status);
+}

@@ -1,0 +1,94 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "report/stages.h"
+
+#include <mho/quantity.h>
+#include <mho/settings.h>
+
+#include <stdio.h>
+#include <string.h>
+
+#define COUNT(array) (sizeof(array) / sizeof *(array))
+
+static void add_warning_words(mho_table *table, unsigned warnings)
+{
+  mho_buffer words = {0};
+  mho_write_warning_words(&words, warnings);
+  mho_table_text(table, words.data);
+  mho_buffer_clear(&words);
+}
+
+mho_table *mho_conductance_table(mho_output *output)
+{
+  static const char *const columns[] = {
+      "molecule", "fermi_eV", "transmission", "conductance_G0", "conductance_S",
+      "log10_G0", "window_low_log10_G0", "window_high_log10_G0", "warnings"};
+  return mho_output_table(output, "conductance", columns, COUNT(columns));
+}
+
+void mho_conductance_row(mho_table *table, const char *molecule,
+                         const mho_conductance *g, unsigned warnings)
+{
+  mho_table_text(table, molecule);
+  mho_table_number(table, g->fermi_ev);
+  if (g->at_fermi.node) mho_table_node(table);
+  else mho_table_number(table, g->at_fermi.transmission);
+  if (g->has_log) {
+    mho_table_number(table, g->conductance_g0);
+    mho_table_number(table, g->conductance_s);
+  } else {
+    mho_table_node(table);
+    mho_table_node(table);
+  }
+  mho_table_optional(table, g->has_log, g->log10_g0);
+  mho_table_optional(table, g->has_window_low, g->window_low_log10_g0);
+  mho_table_optional(table, g->has_window_high, g->window_high_log10_g0);
+  add_warning_words(table, warnings);
+}
+
+mho_table *mho_transmission_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "energy_eV", "transmission",
+                                        "log10_transmission"};
+  return mho_output_table(output, "transmission", columns, COUNT(columns));
+}
+
+void mho_transmission_row(mho_table *table, const char *molecule, double relative_energy_ev,
+                          const mho_point *point)
+{
+  mho_table_text(table, molecule);
+  mho_table_number(table, relative_energy_ev);
+  if (point->node) mho_table_node(table);
+  else mho_table_number(table, point->transmission);
+  mho_table_optional(table, !point->node, point->log10_transmission);
+}
+
+mho_table *mho_poles_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "energy_eV", "width_eV"};
+  return mho_output_table(output, "poles", columns, COUNT(columns));
+}
+
+void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_pole *pole)
+{
+  mho_table_text(table, molecule);
+  mho_table_number(table, pole->energy_ev - fermi_ev);
+  mho_table_number(table, pole->width_ev);
+}
+
+void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
+                         const mho_junction *junction)
+{
+  char fermi[64], beta[32], temperature[32], at[32], left[32], right[32];
+  mho_number_write(beta, sizeof beta, 6, molecule->beta_ev);
+  mho_number_write(temperature, sizeof temperature, 6, molecule->temperature_k);
+  mho_number_write(at, sizeof at, 6, junction->fermi_ev);
+  mho_number_write(left, sizeof left, 6, molecule->contact[MHO_LEFT].coupling_ev);
+  mho_number_write(right, sizeof right, 6, molecule->contact[MHO_RIGHT].coupling_ev);
+  mho_fermi_write(&molecule->fermi, fermi, sizeof fermi);
+  mho_output_note(output,
+                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s "
+                  "(%s eV above alpha), %s K",
+                  molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
+                  fermi, at, temperature);
+}

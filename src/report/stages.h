@@ -1,0 +1,45 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Each stage's result as rows of its table.  A *_table function opens the
+ * table in an output, a *_row function adds to it.
+ */
+#ifndef MHOLECULE_REPORT_STAGES_H
+#define MHOLECULE_REPORT_STAGES_H
+
+#include <mho/conductance.h>
+#include <mho/molecule.h>
+#include <mho/transmission.h>
+
+#include "report/table.h"
+
+mho_table *mho_conductance_table(mho_output *output);
+void mho_conductance_row(mho_table *table, const char *molecule,
+                         const mho_conductance *conductance, unsigned warnings);
+
+/* energy_ev is absolute; the table has it relative to fermi_ev. */
+mho_table *mho_transmission_table(mho_output *output);
+void mho_transmission_row(mho_table *table, const char *molecule, double relative_energy_ev,
+                          const mho_point *point);
+
+mho_table *mho_poles_table(mho_output *output);
+void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_pole *pole);
+
+/* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
+void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
+                         const mho_junction *junction);
+
+/* What `mho check` says about a molecule. */
+typedef struct {
+  const mho_molecule *molecule;
+  const mho_junction *junction;
+  unsigned warnings;
+} mho_checked;
+
+MHO_MUST_USE mho_status mho_write_check_json(const mho_checked *checked, size_t count,
+                                             mho_buffer *buffer, mho_error *error);
+MHO_MUST_USE mho_status mho_write_check_screen(const mho_checked *checked, size_t count,
+                                               int digits, mho_buffer *buffer,
+                                               mho_error *error);
+
+#endif
