@@ -26,6 +26,24 @@ static int used_valence(const mho_graph *graph, int atom)
   return used;
 }
 
+/* Usual valence of an atom for its bonds.  Five bonds at a neutral nitrogen
+ * are how some write a nitro group, an N-oxide, an azide or a diazo group;
+ * without N=O or N#N they are a mistake. */
+static int valence_of(const mho_graph *graph, int atom, int used)
+{
+  const mho_graph_atom *a = &graph->atom[atom];
+  if (a->element == ELEMENT_N && a->charge == 0 && used > 3) {
+    bool five = false;
+    for (int i = graph->start[atom]; i < graph->start[atom + 1]; i++) {
+      int order = graph->bond[graph->link[i].bond].order;
+      int element = graph->atom[graph->link[i].atom].element;
+      five |= (order == 2 && element == ELEMENT_O) || (order == 3 && element == ELEMENT_N);
+    }
+    if (!five || a->hydrogens) return -1;
+  }
+  return mho_element_valence(a->element, a->charge, used);
+}
+
 static mho_status fail_valence(const mho_graph *graph, int atom, int used,
                                const mho_place *place, mho_error *error)
 {
@@ -34,8 +52,7 @@ static mho_status fail_valence(const mho_graph *graph, int atom, int used,
   const mho_graph_atom *a = &graph->atom[atom];
   int most = 0;
   for (int v = 0; v <= used; v++)
-    if (mho_element_valence(a->element, a->charge, v) > most)
-      most = mho_element_valence(a->element, a->charge, v);
+    if (valence_of(graph, atom, v) > most) most = valence_of(graph, atom, v);
   return mho_fail_column(error, MHO_ERR_SYNTAX, place, a->column,
                          "%s has %d bonds; %s with charge %+d forms at most %d",
                          name, used, mho_element_symbol(a->element), a->charge,
@@ -46,9 +63,8 @@ static mho_status fail_valence(const mho_graph *graph, int atom, int used,
  * many already. */
 static int open_valence(const mho_graph *graph, int atom)
 {
-  const mho_graph_atom *a = &graph->atom[atom];
   int used = used_valence(graph, atom);
-  int valence = mho_element_valence(a->element, a->charge, used);
+  int valence = valence_of(graph, atom, used);
   return valence < 0 ? -1 : valence - used;
 }
 
@@ -136,7 +152,7 @@ static mho_status count_hydrogens(mho_graph *graph, const mho_place *place,
   for (int a = 0; a < graph->atom_count; a++) {
     mho_graph_atom *atom = &graph->atom[a];
     int used = used_valence(graph, a);
-    int valence = mho_element_valence(atom->element, atom->charge, used);
+    int valence = valence_of(graph, a, used);
     if (valence < 0) return fail_valence(graph, a, used, place, error);
     if (atom->bracket) atom->radical = valence - used;
     else if (!(atom->aromatic && atom->element != ELEMENT_C &&
