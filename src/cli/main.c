@@ -268,18 +268,32 @@ static void print_causes(const command *cmd, const mho_error *error)
     fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
 }
 
+/* The command line as one text, arguments with blanks in quotes. */
+static void join_arguments(int argc, char **argv, mho_buffer *line)
+{
+  mho_buffer_add(line, "mho");
+  for (int i = 0; i < argc; i++) {
+    const char *quote = argv[i][0] == '\0' || strpbrk(argv[i], " \t'\"$*?[](){}<>|&;") ? "'" : "";
+    mho_buffer_print(line, " %s%s%s", quote, argv[i], quote);
+  }
+}
+
 static int run_verb(const verb *v, int argc, char **argv)
 {
   command cmd;
   bool help = false;
+  mho_buffer line = {0};
+  join_arguments(argc, argv, &line); /* before getopt reorders them */
   int code = parse(v, argc, argv, &cmd, &help);
   if (help) print_verb_help(v);
   else if (code == EXIT_DONE) {
     mho_error error;
     mho_error_init(&error);
+    cmd.line = line.data;
     code = v->run(&cmd, &error);
     print_causes(&cmd, &error);
   }
+  mho_buffer_clear(&line);
   return code;
 }
 

@@ -103,13 +103,19 @@ static json_t *json_molecule(const mho_checked *checked)
   return object;
 }
 
+json_t *mho_json_molecules(const mho_checked *checked, size_t count)
+{
+  json_t *list = json_array();
+  for (size_t i = 0; i < count; i++) json_array_append_new(list, json_molecule(&checked[i]));
+  return list;
+}
+
 mho_status mho_write_check_json(const mho_checked *checked, size_t count, mho_buffer *buffer,
                                 mho_error *error)
 {
-  json_t *list = json_array(), *object = json_object();
-  for (size_t i = 0; i < count; i++) json_array_append_new(list, json_molecule(&checked[i]));
+  json_t *object = json_object();
   json_object_set_new(object, "schema", json_string(MHO_JSON_SCHEMA));
-  json_object_set_new(object, "molecules", list);
+  json_object_set_new(object, "molecules", mho_json_molecules(checked, count));
   return mho_json_write(object, buffer, error);
 }
 

@@ -8,6 +8,7 @@
 
 #include <jansson.h>
 
+#include "report/stages.h"
 #include "report/table.h"
 
 #define MHO_JSON_SCHEMA "mholecule-1"
@@ -16,6 +17,9 @@ json_t *mho_json_tables(const mho_output *output);
 json_t *mho_json_warnings(const mho_output *output);
 json_t *mho_json_warning_words(unsigned warnings);
 json_t *mho_json_notes(const mho_output *output);
+
+/* What was understood of molecules, as in `mho check --json`. */
+json_t *mho_json_molecules(const mho_checked *checked, size_t count);
 
 /* Appends the text of an object, which it takes over, to the buffer. */
 MHO_MUST_USE mho_status mho_json_write(json_t *object, mho_buffer *buffer, mho_error *error);

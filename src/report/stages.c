@@ -76,6 +76,29 @@ void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
   mho_table_number(table, pole->width_ev);
 }
 
+mho_table *mho_compare_table(mho_output *output)
+{
+  static const char *const columns[] = {
+      "molecule", "computed_log10_G0", "computed_low", "computed_high", "measured_log10_G0",
+      "measured_low", "measured_high", "ratio_computed", "ratio_measured",
+      "deviation_decades"};
+  return mho_output_table(output, "compare", columns, COUNT(columns));
+}
+
+void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *c)
+{
+  mho_table_text(table, molecule);
+  mho_table_optional(table, c->has_computed, c->computed_log10_g0);
+  mho_table_optional(table, c->has_low, c->computed_low);
+  mho_table_optional(table, c->has_high, c->computed_high);
+  mho_table_optional(table, c->has_measured, c->measured_log10_g0);
+  mho_table_optional(table, c->has_spread, c->measured_low);
+  mho_table_optional(table, c->has_spread, c->measured_high);
+  mho_table_optional(table, c->has_ratio, c->ratio_computed);
+  mho_table_optional(table, c->has_ratio, c->ratio_measured);
+  mho_table_optional(table, c->has_ratio, c->deviation_decades);
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {
