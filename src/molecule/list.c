@@ -105,13 +105,13 @@ static bool unquote(mho_list *list, char **at, csv_field *field)
     }
     if (*from == '"') from++;
     if (*from == '\n') list->line++;
-    *to++ = *from;
+    *to++ = *from ? *from : ' ';
   }
   return false;
 }
 
 /* Splits the next row into at most `room` fields; returns their number, -1
- * after a quote that is never closed. */
+ * where a quote is never closed or text follows it (field[0] says where). */
 static int split_row(mho_list *list, csv_field *field, int room)
 {
   char *at = list->at, *line_start = at;
@@ -124,7 +124,14 @@ static int split_row(mho_list *list, csv_field *field, int room)
       field[0] = next;
       return -1;
     }
-    char *stop = at;
+    char *stop = at + (quoted ? strspn(at, " \r") : 0);
+    if (quoted && stop < list->end && *stop != list->separator && *stop != '\n') {
+      char *rest = memchr(stop, '\n', (size_t)(list->end - stop));
+      list->at = rest ? rest + 1 : list->end;
+      list->line++;
+      field[0] = next;
+      return -1;
+    }
     while (stop < list->end && *stop != list->separator && *stop != '\n') stop++;
     char ended_by = stop < list->end ? *stop : '\n';
     if (!quoted) {
@@ -159,7 +166,8 @@ static mho_status next_record(mho_list *list, mho_list_row *row,
     }
     int count = split_row(list, field, COLUMN_LIMIT);
     if (count < 0)
-      return fail_at(list, error, line, field[0].column - 1, "'\"' is never closed");
+      return fail_at(list, error, line, field[0].column - 1,
+                     "'\"' is never closed, or text follows the closing one");
     if (count == 1 && field[0].text[0] == '\0') continue;
     if (count != list->columns)
       return mho_fail_at(error, MHO_ERR_SYNTAX, MOLECULE_STAGE, list->path, line, 1,
@@ -168,9 +176,10 @@ static mho_status next_record(mho_list *list, mho_list_row *row,
     const csv_field *smiles = &field[list->smiles_column];
     if (!smiles->text[0])
       return fail_at(list, error, smiles->line, smiles->column, "the row has no SMILES");
-    *row = (mho_list_row){smiles->text,
-                          list->name_column < 0 ? "" : field[list->name_column].text,
-                          {list->path, smiles->line, smiles->column}};
+    const char *name = list->name_column < 0 ? "" : field[list->name_column].text;
+    status = check_text(list, error, name, strlen(name), line);
+    if (status != MHO_OK) return status;
+    *row = (mho_list_row){smiles->text, name, {list->path, smiles->line, smiles->column}};
     return MHO_OK;
   }
   return MHO_OK;
