@@ -40,6 +40,7 @@ typedef struct {
   int twist_count;
   const mho_twist_setting *twist;
   bool contacts_optional; /* without two linkers: no contacts, a note */
+  bool quiet;             /* no notes, for long lists */
   mho_place place;        /* of the text, for messages */
 } mho_structure_options;
 

@@ -75,7 +75,8 @@ mho_status mho_alkyl_apply(const mho_pi *pi, const bool *removed,
     return mho_fail(error, MHO_ERR_LIMIT, "model", "alkyl",
                     "%d sites with the alkyl groups; at most %d are allowed",
                     molecule->site_count, MHO_SITE_LIMIT);
-  if (groups && mho_texts_add(&structure->notes, "alkyl groups on the pi system (%d) %s",
+  if (groups && !options->quiet &&
+      mho_texts_add(&structure->notes, "alkyl groups on the pi system (%d) %s",
                               groups, choice[options->alkyl]) != MHO_OK)
     return mho_fail(error, MHO_ERR_MEMORY, "model", NULL, "out of memory");
   return MHO_OK;

@@ -50,9 +50,10 @@ static mho_status no_memory(mho_error *error)
   return mho_fail(error, MHO_ERR_MEMORY, "model", NULL, "out of memory");
 }
 
-#define NOTE(c, ...)                                                \
-  (mho_texts_add(&(c)->structure->notes, __VA_ARGS__) == MHO_OK     \
-       ? MHO_OK                                                     \
+#define NOTE(c, ...)                                                   \
+  ((c)->options->quiet ||                                              \
+           mho_texts_add(&(c)->structure->notes, __VA_ARGS__) == MHO_OK \
+       ? MHO_OK                                                        \
        : no_memory((c)->error))
 
 static mho_status perceive(conversion *c)
@@ -70,7 +71,8 @@ static mho_status perceive(conversion *c)
     for (int i = 0; i < c->contact[side].count; i++)
       forced[c->contact[side].atom[i]] = true;
   status = mho_pi_perceive(graph, c->linkers.removed, forced, place, &c->pi,
-                           &c->structure->notes, c->error);
+                           c->options->quiet ? NULL : &c->structure->notes,
+                           c->error);
   free(forced);
   return status == MHO_OK ? mho_pi_find_bonds(graph, &c->pi, c->error) : status;
 }

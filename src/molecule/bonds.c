@@ -23,10 +23,13 @@
 
 enum { RING_SIZE_LIMIT = 8, RING_WALK_LIMIT = 512 };
 
+typedef enum { ORDER_OPEN, ORDER_SINGLE, ORDER_DOUBLE } formal_order;
+
 typedef struct {
   const mho_graph *graph;
   mho_pi *pi;
   int *mate, *start, *next;
+  char *order; /* [bonds] formal_order */
   int *part;   /* union-find: atoms that turn as one */
   int *size;   /* sites of a part, at its root */
   int *joints; /* single bonds that leave a part, at its root */
@@ -84,8 +87,6 @@ static mho_status match_sites(bond_finder *f)
   mho_match_graph sites = {n, f->start, f->next};
   return mho_match_maximum(&sites, f->mate, f->missed);
 }
-
-typedef enum { ORDER_OPEN, ORDER_SINGLE, ORDER_DOUBLE } formal_order;
 
 /* Order that a bond has in every Kekule structure; open in rings. */
 static formal_order order_of(const bond_finder *f, const mho_pi_bond *bond)
@@ -156,13 +157,14 @@ static void find_parts(bond_finder *f)
   }
   for (int b = 0; b < pi->bond_count; b++) {
     const int *s = pi->bond[b].site;
-    if (order_of(f, &pi->bond[b]) != ORDER_SINGLE)
+    f->order[b] = (char)order_of(f, &pi->bond[b]);
+    if (f->order[b] != ORDER_SINGLE)
       f->part[root_of(f->part, s[0])] = root_of(f->part, s[1]);
   }
   for (int s = 0; s < pi->site_count; s++) f->size[root_of(f->part, s)]++;
   for (int b = 0; b < pi->bond_count; b++)
     for (int end = 0; end < 2; end++)
-      if (order_of(f, &pi->bond[b]) == ORDER_SINGLE)
+      if (f->order[b] == ORDER_SINGLE)
         f->joints[root_of(f->part, pi->bond[b].site[end])]++;
 }
 
@@ -184,7 +186,7 @@ static void describe(bond_finder *f)
   for (int b = 0; b < f->pi->bond_count; b++) {
     mho_pi_bond *bond = &f->pi->bond[b];
     if (f->graph->bond[bond->bond].ring) continue;
-    formal_order order = order_of(f, bond);
+    formal_order order = (formal_order)f->order[b];
     bond->strength = strength_of(f, bond, order);
     bond->rotatable = order == ORDER_SINGLE && can_turn(f, bond->site[0]) &&
                       can_turn(f, bond->site[1]);
@@ -199,14 +201,14 @@ mho_status mho_pi_find_bonds(const mho_graph *graph, mho_pi *pi,
 {
   size_t n = (size_t)pi->site_count, m = (size_t)pi->bond_count;
   int *memory = malloc((5 * n + 1 + 2 * m) * sizeof *memory + 1);
-  bool *flags = malloc(2 * n + 1);
+  bool *flags = malloc(2 * n + m + 1);
   mho_status status = memory && flags ? MHO_OK : MHO_ERR_MEMORY;
   if (status == MHO_OK) {
     bond_finder f = {.graph = graph, .pi = pi, .mate = memory,
                      .part = memory + n, .size = memory + 2 * n,
                      .joints = memory + 3 * n, .start = memory + 4 * n,
                      .next = memory + 5 * n + 1, .shares = flags,
-                     .missed = flags + n};
+                     .missed = flags + n, .order = (char *)(flags + 2 * n)};
     status = match_sites(&f);
     if (status == MHO_OK) {
       find_parts(&f);

@@ -114,8 +114,18 @@ mho_status mho_graph_complete(mho_graph *graph, const mho_place *place,
 int mho_graph_atom_name(const mho_graph *graph, int atom, char *buffer,
                         size_t size)
 {
-  return snprintf(buffer, size, "%s%d",
-                  mho_element_symbol(graph->atom[atom].element), atom + 1);
+  char name[16], digit[12];
+  int length = 0, digits = 0;
+  for (const char *c = mho_element_symbol(graph->atom[atom].element); *c; c++)
+    name[length++] = *c;
+  for (int number = atom + 1; number; number /= 10)
+    digit[digits++] = (char)('0' + number % 10);
+  while (digits) name[length++] = digit[--digits];
+  if (size == 0) return length;
+  size_t copied = (size_t)length < size ? (size_t)length : size - 1;
+  memcpy(buffer, name, copied);
+  buffer[copied] = '\0';
+  return length;
 }
 
 int mho_graph_hydrogens(const mho_graph *graph, int atom)

@@ -172,6 +172,7 @@ static bool is_bound(const mho_orbital *o) { return o->bound; }
 
 static mho_status take_notes(perception *p)
 {
+  if (!p->notes) return MHO_OK;
   mho_status status = note_second_system(p);
   if (status == MHO_OK)
     status = note_rule(p, is_dative, "the N-O pair is counted without its "

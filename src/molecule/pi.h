@@ -35,9 +35,9 @@ typedef struct {
 
 /* Sites and bonds with strength 1 and no twist.  Atoms in `removed` do not
  * exist; lone pairs of atoms in `forced` are sites even where they touch no
- * other (either may be NULL).  Notes say what was left out or counted by a
- * rule.  Errors: MHO_ERR_UNPARAMETERISED for an atom in a bonding situation
- * without a row, MHO_ERR_MEMORY. */
+ * other (either may be NULL).  Notes (or NULL) say what was left out or counted
+ * by a rule.  Errors: MHO_ERR_UNPARAMETERISED for an atom in a bonding
+ * situation without a row, MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_pi_perceive(const mho_graph *graph,
                                         const bool *removed, const bool *forced,
                                         const mho_place *place, mho_pi *pi,

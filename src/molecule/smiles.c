@@ -114,18 +114,26 @@ static mho_status add_atom(reader *r, const mho_graph_atom *atom)
 /* Element of an aromatic symbol at the reading position; -1 if none. */
 static int read_aromatic(reader *r, bool bracket)
 {
-  static const struct { char text[3]; int element; bool bare; } table[] = {
-      {"se", 34, false}, {"as", 33, false}, {"te", 52, false}, {"si", 14, false},
-      {"b", 5, true},    {"c", 6, true},    {"n", 7, true},    {"o", 8, true},
-      {"p", 15, true},   {"s", 16, true}};
-  for (size_t i = 0; i < sizeof table / sizeof *table; i++) {
-    size_t size = strlen(table[i].text);
-    if ((bracket || table[i].bare) && !strncmp(r->at, table[i].text, size)) {
-      r->at += size;
-      return table[i].element;
-    }
+  char c = *r->at, next = c && bracket ? r->at[1] : '\0';
+  int element = -1, length = 1;
+  switch (c) {
+    case 'b': element = ELEMENT_B; break;
+    case 'c': element = ELEMENT_C; break;
+    case 'n': element = ELEMENT_N; break;
+    case 'o': element = ELEMENT_O; break;
+    case 'p': element = ELEMENT_P; break;
+    case 's':
+      element = next == 'e' ? 34 : next == 'i' ? ELEMENT_SI : ELEMENT_S;
+      length += element != ELEMENT_S;
+      break;
+    case 'a': case 't':
+      element = c == 'a' && next == 's' ? 33 : c == 't' && next == 'e' ? 52 : -1;
+      length = 2;
+      break;
+    default: break;
   }
-  return -1;
+  if (element >= 0) r->at += length;
+  return element;
 }
 
 /* `@`, `@@`, `@TH1` ... `@OH30`. */
