@@ -1,8 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "molecule/element.h"
 
-#include <string.h>
-
 #include <mho/graph.h>
 
 static const char symbol[ELEMENT_LIMIT + 1][3] = {
@@ -27,10 +25,13 @@ int mho_element_read(const char *text, size_t *length)
   int best = -1;
   *length = 0;
   for (int i = 0; i <= ELEMENT_LIMIT; i++) {
-    size_t size = strlen(symbol[i]);
-    if (size > *length && !strncmp(text, symbol[i], size)) {
+    if (symbol[i][0] != text[0]) continue;
+    if (symbol[i][1] == '\0' && *length == 0) {
       best = i;
-      *length = size;
+      *length = 1;
+    } else if (symbol[i][1] && symbol[i][1] == text[1]) {
+      best = i;
+      *length = 2;
     }
   }
   return best;

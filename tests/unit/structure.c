@@ -590,6 +590,33 @@ static void streitwieser_says_where_a_rule_stands_in(void **state)
   clear_subject(&s);
 }
 
+/* A row of one's own, and no k for its pairs but carbon: invented numbers. */
+static void a_set_of_ones_own_brings_charged_rows(void **state)
+{
+  (void)state;
+  mho_parameter_set *set = mho_parameters_copy(mho_parameters_builtin("van-catledge"), "own",
+                                               "this test");
+  assert_non_null(set);
+  assert_int_equal(mho_parameters_put_row(set, "N+", 2.0, 1, 0.9, NULL), MHO_OK);
+  assert_int_equal(mho_parameters_put_k(set, "N+", "N-pyridine", 0.7, NULL), MHO_OK);
+  assert_int_equal(mho_parameters_put_k(set, "N+", "Xx", 0.7, NULL), MHO_ERR_REFERENCE);
+  assert_int_equal(mho_parameters_put_k(set, "N+", "C", NAN, NULL), MHO_ERR_RANGE);
+  assert_int_equal(mho_parameters_put_row(set, "O-", 2.0, 3, 0.9, NULL), MHO_ERR_RANGE);
+  mho_structure_options options = without_contacts();
+  options.parameters = set;
+  subject s;
+  assert_int_equal(read_subject(&s, "C[n+]1ncccc1", &options), MHO_OK);
+  assert_int_equal(s.molecule.electrons, 6);
+  assert_int_equal(s.molecule.charge, 1);
+  assert_near(mho_molecule_onsite_ev(&s.molecule, 0), 2.0 * -2.7, 1e-15);
+  assert_near(mho_molecule_hopping_ev(&s.molecule, 0), 0.7 * -2.7, 1e-15);
+  clear_subject(&s);
+  assert_int_equal(read_subject(&s, "N[n+]1ccccc1", &options), MHO_OK);
+  assert_true(has_note(&s, "k of N-pyrrole and N+ is 0.801"));
+  clear_subject(&s);
+  mho_parameters_free(set);
+}
+
 static void the_second_pi_system_is_named(void **state)
 {
   (void)state;
@@ -617,6 +644,7 @@ int main(void)
       cmocka_unit_test(alkyl_groups_follow_the_option),
       cmocka_unit_test(charge_and_coupling_are_options),
       cmocka_unit_test(streitwieser_says_where_a_rule_stands_in),
+      cmocka_unit_test(a_set_of_ones_own_brings_charged_rows),
       cmocka_unit_test(the_second_pi_system_is_named),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
