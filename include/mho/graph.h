@@ -86,9 +86,6 @@ MHO_API int mho_graph_atom_name(const mho_graph *graph, int atom, char *buffer,
 MHO_API int mho_graph_hydrogens(const mho_graph *graph, int atom);
 MHO_API int mho_graph_degree(const mho_graph *graph, int atom);
 
-/* The bond between two atoms, or -1. */
-MHO_API int mho_graph_find_bond(const mho_graph *graph, int atom, int other);
-
 /* Connected parts; independent rings (bonds - atoms + parts).  -1 without
  * memory. */
 MHO_API int mho_graph_parts(const mho_graph *graph);

@@ -36,13 +36,21 @@ void mho_structure_init(mho_structure *structure)
   memset(structure, 0, sizeof *structure);
 }
 
-void mho_structure_clear(mho_structure *structure)
+/* Forgets what was made of the graph. */
+static void reset(mho_structure *structure)
 {
-  mho_graph_clear(&structure->graph);
   free(structure->linker);
   free(structure->site_atom);
   mho_texts_clear(&structure->notes);
+  mho_graph graph = structure->graph;
   mho_structure_init(structure);
+  structure->graph = graph;
+}
+
+void mho_structure_clear(mho_structure *structure)
+{
+  mho_graph_clear(&structure->graph);
+  reset(structure);
 }
 
 static mho_status no_memory(mho_error *error)
@@ -345,8 +353,8 @@ mho_status mho_molecule_from_graph(mho_structure *structure,
                   .structure = structure, .molecule = molecule, .error = error};
   molecule->parameters = c.options->parameters;
   molecule->beta_ev = c.options->beta_ev;
+  reset(structure);
   mho_status status = convert(&c);
-  free(structure->linker);
   structure->linker = c.linkers.linker;
   structure->linker_count = c.linkers.count;
   c.linkers.linker = NULL;

@@ -144,13 +144,6 @@ int mho_graph_degree(const mho_graph *graph, int atom)
   return count;
 }
 
-int mho_graph_find_bond(const mho_graph *graph, int atom, int other)
-{
-  for (int i = graph->start[atom]; i < graph->start[atom + 1]; i++)
-    if (graph->link[i].atom == other) return graph->link[i].bond;
-  return -1;
-}
-
 int mho_graph_parts(const mho_graph *graph)
 {
   int n = graph->atom_count;

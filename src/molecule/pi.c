@@ -30,7 +30,7 @@ typedef struct {
   mho_texts *notes;
   mho_orbital *orbital; /* [atoms] */
   int *queue;           /* [atoms] */
-  char *plane;          /* [bonds] of a cumulene's double bond: 0 or 1 */
+  signed char *plane;   /* [bonds] of a cumulene's double bond: 0 or 1 */
   bool *both;           /* [atoms] sp atom whose two orbitals are sites */
 } perception;
 
@@ -100,7 +100,7 @@ static void follow_cumulene(perception *p, int end, mho_graph_link link)
   int count = 0, last = end;
   mho_graph_link step = link;
   while (step.bond >= 0 && p->plane[step.bond] < 0) {
-    p->plane[step.bond] = (char)(count++ % 2);
+    p->plane[step.bond] = (signed char)(count++ % 2);
     last = step.atom;
     step = p->orbital[last].sp ? go_on(p, last, step.bond)
                                : (mho_graph_link){-1, -1};

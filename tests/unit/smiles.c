@@ -168,9 +168,8 @@ static void an_atom_keeps_what_its_bracket_says(void **state)
   char name[16];
   mho_graph_atom_name(&graph, 4, name, sizeof name);
   assert_string_equal(name, "C5");
-  assert_false(graph.bond[mho_graph_find_bond(&graph, 1, 2)].ring);
-  assert_true(graph.bond[mho_graph_find_bond(&graph, 2, 7)].ring);
-  assert_int_equal(mho_graph_find_bond(&graph, 0, 7), -1);
+  for (int b = 0; b < graph.bond_count; b++)
+    assert_int_equal(graph.bond[b].ring, b >= 2);
   mho_graph_clear(&graph);
 }
 
