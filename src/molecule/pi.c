@@ -228,10 +228,18 @@ static void add_bonds(perception *p, mho_pi *pi)
 
 static mho_status build(perception *p, mho_pi *pi)
 {
-  size_t n = (size_t)p->graph->atom_count, m = (size_t)p->graph->bond_count;
-  pi->site = malloc((2 * n + 1) * sizeof *pi->site);
-  pi->bond = malloc((2 * m + 1) * sizeof *pi->bond);
-  pi->site_of = malloc((n + 1) * sizeof *pi->site_of);
+  const mho_graph *g = p->graph;
+  size_t sites = 0, bonds = 0;
+  for (int a = 0; a < g->atom_count; a++)
+    if (p->orbital[a].kind == ORBITAL_OWN) sites += 1 + p->both[a];
+  for (int b = 0; b < g->bond_count; b++) {
+    const int *ends = g->bond[b].atom;
+    if (p->orbital[ends[0]].kind == ORBITAL_OWN && p->orbital[ends[1]].kind == ORBITAL_OWN)
+      bonds += 1 + (p->both[ends[0]] && p->both[ends[1]]);
+  }
+  pi->site = malloc((sites + 1) * sizeof *pi->site);
+  pi->bond = malloc((bonds + 1) * sizeof *pi->bond);
+  pi->site_of = malloc(((size_t)g->atom_count + 1) * sizeof *pi->site_of);
   if (!pi->site || !pi->bond || !pi->site_of) return no_memory(p->error);
   add_sites(p, pi);
   add_bonds(p, pi);

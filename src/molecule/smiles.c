@@ -404,7 +404,7 @@ static mho_status reserve(reader *r, size_t *length)
   int atoms = 0, closures = 0, branches = 0;
   const char *c = r->text;
   for (; *c && *length <= MHO_SMILES_LIMIT; c++, ++*length) {
-    atoms += *c > '9' || *c == '*';
+    atoms += (*c >= 'A' && *c <= 'Z') || (*c >= 'a' && *c <= 'z') || *c == '*';
     closures += is_digit(*c);
     branches += *c == '(';
   }
