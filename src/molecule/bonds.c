@@ -37,28 +37,16 @@ typedef struct {
   bool *missed;
 } bond_finder;
 
-/* Carbon, or an atom with a multiple bond other than that of a nitro group or
- * an N-oxide (whose nitrogen counts as a lone pair). */
+/* Carbon, or an atom with a multiple bond.  The nitrogen of a nitro group or
+ * an N-oxide counts by its other double bond, its oxygens not at all. */
 static bool shares_pi_bonds(const mho_graph *g, const mho_pi_site *site)
 {
-  if (!strcmp(site->row, "C")) return true;
-  if (site->electrons != 1) {
-    /* The nitrogen of an N-oxide keeps the ring's double bond. */
-    if (strcmp(site->row, "N-pyrrole")) return false;
-    for (int i = g->start[site->atom]; i < g->start[site->atom + 1]; i++)
-      if (g->bond[g->link[i].bond].order > 1 &&
-          g->atom[g->link[i].atom].element != ELEMENT_O)
-        return true;
-    return false;
-  }
-  for (int i = g->start[site->atom]; i < g->start[site->atom + 1]; i++) {
-    int next = g->link[i].atom, order = g->bond[g->link[i].bond].order;
-    bool oxide = g->atom[site->atom].element == ELEMENT_O &&
-                 g->atom[next].element == ELEMENT_N &&
-                 (g->atom[next].charge == 1 ||
-                  mho_graph_degree(g, next) + mho_graph_hydrogens(g, next) == 3);
-    if (order > 1 && !oxide) return true;
-  }
+  if (g->atom[site->atom].element == ELEMENT_C) return true;
+  if (site->electrons != (site->oxide ? 2 : 1)) return false;
+  for (int i = g->start[site->atom]; i < g->start[site->atom + 1]; i++)
+    if (g->bond[g->link[i].bond].order > 1 &&
+        !(site->oxide && g->atom[g->link[i].atom].element == ELEMENT_O))
+      return true;
   return false;
 }
 
@@ -88,17 +76,16 @@ static mho_status match_sites(bond_finder *f)
   return mho_match_maximum(&sites, f->mate, f->missed);
 }
 
-/* Order that a bond has in every Kekule structure; open in rings. */
+/* Order that a bond has in every Kekule structure; open in rings and in the
+ * N-O pairs of nitro groups and N-oxides. */
 static formal_order order_of(const bond_finder *f, const mho_pi_bond *bond)
 {
   const int *s = bond->site;
   if (f->graph->bond[bond->bond].ring) return ORDER_OPEN;
   if (!f->shares[s[0]] || !f->shares[s[1]]) {
-    const mho_pi_site *site = f->pi->site;
-    bool lone_pair = f->graph->bond[bond->bond].order == 1 &&
-                     !(site[s[0]].electrons == 1 && site[s[1]].electrons == 1);
-    /* Both ends of a nitro or N-oxide pair are bound as one. */
-    bool pair = !strcmp(site[s[0]].row, "O-carbonyl") || !strcmp(site[s[1]].row, "O-carbonyl");
+    const mho_pi_site *first = &f->pi->site[s[0]], *second = &f->pi->site[s[1]];
+    bool lone_pair = first->electrons != 1 || second->electrons != 1;
+    bool pair = first->oxide && second->oxide;
     return lone_pair && !pair ? ORDER_SINGLE : ORDER_OPEN;
   }
   if (f->missed[s[0]] || f->missed[s[1]]) return ORDER_OPEN;

@@ -116,7 +116,7 @@ static mho_orbital nitrogen(const mho_graph *g, int atom, bonding b)
   const mho_graph_atom *a = &g->atom[atom];
   if (is_oxide_nitrogen(g, atom)) {
     mho_orbital orbital = row_orbital(ORBITAL_OWN, 2, "N-pyrrole");
-    orbital.dative = true;
+    orbital.oxide = true;
     return orbital;
   }
   bool unsaturated = b.doubles || b.triples;
@@ -144,6 +144,14 @@ static mho_orbital nitrogen(const mho_graph *g, int atom, bonding b)
   }
   orbital.sp = b.triples || b.doubles == 2;
   return orbital;
+}
+
+/* Oxygen of a nitro group or an N-oxide: all its bonds go to such a nitrogen. */
+static bool is_oxide_oxygen(const mho_graph *g, int oxygen)
+{
+  return g->start[oxygen + 1] == g->start[oxygen] + 1 &&
+         is_oxide_nitrogen(g, g->link[g->start[oxygen]].atom) &&
+         (g->atom[oxygen].charge == -1 || g->bond[g->link[g->start[oxygen]].bond].order == 2);
 }
 
 /* O- of a carboxylate: its carbon carries a doubly bonded oxygen. */
@@ -177,19 +185,21 @@ static mho_orbital oxygen(const mho_graph *g, int atom, bonding b)
 {
   const mho_graph_atom *a = &g->atom[atom];
   if (b.doubles && is_hypervalent_oxo(g, atom)) return (mho_orbital){ORBITAL_NONE};
+  if (is_oxide_oxygen(g, atom)) {
+    mho_orbital orbital = row_orbital(ORBITAL_OWN, 1, "O-carbonyl");
+    orbital.oxide = true;
+    return orbital;
+  }
   if (a->charge == 0) {
     if (b.doubles || a->radical == 1) return row_orbital(ORBITAL_OWN, 1, "O-carbonyl");
     return b.connections || a->hydrogens ? row_orbital(ORBITAL_LENT, 2, "O-furan")
                                          : (mho_orbital){ORBITAL_NONE};
   }
-  if (a->charge == -1 && b.connections == 1 && a->hydrogens == 0) {
-    int next = g->link[g->start[atom]].atom;
-    if (is_oxide_nitrogen(g, next)) return row_orbital(ORBITAL_OWN, 1, "O-carbonyl");
-    if (is_carboxylate(g, atom)) {
-      mho_orbital orbital = row_orbital(ORBITAL_LENT, 2, "O-furan");
-      orbital.bound = true;
-      return orbital;
-    }
+  if (a->charge == -1 && b.connections == 1 && a->hydrogens == 0 &&
+      is_carboxylate(g, atom)) {
+    mho_orbital orbital = row_orbital(ORBITAL_LENT, 2, "O-furan");
+    orbital.bound = true;
+    return orbital;
   }
   return named(g, atom, b.doubles ? ORBITAL_OWN : ORBITAL_LENT, b.doubles ? 1 : 2);
 }

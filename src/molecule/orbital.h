@@ -19,7 +19,7 @@ typedef struct {
   bool sp;            /* two orthogonal p orbitals */
   int electrons;      /* of each orbital */
   char row[MHO_ROW_SIZE];
-  bool dative;        /* row by the rule for charge-separated N-O pairs */
+  bool oxide;         /* N or O of a nitro group or an N-oxide */
   bool bound;         /* thiolate or carboxylate, counted as neutral */
   const char *reason; /* of a refusal */
 } mho_orbital;

@@ -166,7 +166,10 @@ static mho_status note_rule(perception *p, bool (*applies)(const mho_orbital *),
   return used ? mho_texts_add(p->notes, "%s: %s", list, rule) : MHO_OK;
 }
 
-static bool is_dative(const mho_orbital *o) { return o->dative; }
+static bool is_oxide(const mho_orbital *o)
+{
+  return o->oxide && o->electrons == 2;
+}
 
 static bool is_bound(const mho_orbital *o) { return o->bound; }
 
@@ -175,7 +178,7 @@ static mho_status take_notes(perception *p)
   if (!p->notes) return MHO_OK;
   mho_status status = note_second_system(p);
   if (status == MHO_OK)
-    status = note_rule(p, is_dative, "the N-O pair is counted without its "
+    status = note_rule(p, is_oxide, "the N-O pair is counted without its "
                        "charges, N as N-pyrrole and O as O-carbonyl");
   if (status == MHO_OK)
     status = note_rule(p, is_bound, "counted as bound to the electrode, without "
@@ -194,7 +197,7 @@ static void add_sites(perception *p, mho_pi *pi)
     if (!(o->bound && p->graph->atom[a].charge < 0)) pi->charge += p->graph->atom[a].charge;
     for (int orbital = 0; orbital <= p->both[a]; orbital++) {
       mho_pi_site *site = &pi->site[pi->site_count++];
-      *site = (mho_pi_site){.atom = a, .orbital = orbital, .electrons = o->electrons};
+      *site = (mho_pi_site){a, orbital, o->electrons, o->oxide, ""};
       memcpy(site->row, o->row, sizeof site->row);
     }
   }

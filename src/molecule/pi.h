@@ -13,6 +13,7 @@ typedef struct {
   int atom;
   int orbital;   /* 1 for the second p orbital of a cumulene carbon, else 0 */
   int electrons; /* that it brings, as drawn */
+  bool oxide;    /* N or O of a nitro group or an N-oxide */
   char row[MHO_ROW_SIZE]; /* of a parameter set: `N-pyridine`, `N+` ... */
 } mho_pi_site;
 
