@@ -18,14 +18,15 @@ static const char *const dash[MHO_CURVES_MAX] = {"solid", "'_'", "'.-'", "'.'"};
 #define SHADE "#eef0f3"
 
 /* Below this a node is drawn as running out of the figure. */
-#define LOWEST_LOG10 (-12.0)
+#define LOWEST_LOG10 (-9.0)
 
-/* A text in gnuplot's single quotes, where nothing is expanded. */
+/* A name in gnuplot's single quotes, where nothing is expanded.  An apostrophe
+ * in the name of a molecule is a prime, and is drawn as one. */
 static void add_quoted(mho_buffer *script, const char *text)
 {
   mho_buffer_add(script, "'");
   for (; *text; text++) {
-    if (*text == '\'') mho_buffer_add(script, "''");
+    if (*text == '\'') mho_buffer_add(script, "\xE2\x80\xB2");
     else if ((unsigned char)*text < ' ') mho_buffer_add(script, " ");
     else mho_buffer_add_bytes(script, text, 1);
   }
@@ -38,16 +39,15 @@ static void add_number(mho_buffer *script, double value)
   mho_buffer_number(script, 8, value);
 }
 
-static void begin_figure(mho_buffer *script, const char *path, int width, int height)
+static void begin_figure(mho_buffer *script, int width, int height)
 {
   mho_buffer_print(script,
                    "set encoding utf8\n"
                    "set terminal svg size %d,%d fixed enhanced font 'DejaVu Sans,13' "
-                   "background '#ffffff' linewidth 1\nset output ",
+                   "background '#ffffff' linewidth 1\n",
                    width, height);
-  add_quoted(script, path);
   mho_buffer_add(script,
-                 "\nset border 3 linecolor '" NEUTRAL "'\n"
+                 "set border 3 linecolor '" NEUTRAL "'\n"
                  "set tics nomirror out textcolor '#222222'\n"
                  "set key noenhanced outside below horizontal left samplen 3\n");
 }
@@ -69,7 +69,7 @@ static void find_range(const mho_curve *curve, int curves, double *low, double *
     *high = fmax(*high, curve[c].measured_high);
   }
   *low = fmax(floor(*low), LOWEST_LOG10);
-  *high = ceil(*high + 0.1);
+  *high = ceil(*high - 0.05) + 0.3;
   if (*high - *low < 2) *low = *high - 2;
 }
 
@@ -92,12 +92,12 @@ static void add_curve_data(mho_buffer *script, const mho_curve *curve, int index
   mho_buffer_add(script, "\nEND\n");
 }
 
-void mho_figure_transmission(mho_buffer *script, const char *path, const mho_curve *curve,
+void mho_figure_transmission(mho_buffer *script, const mho_curve *curve,
                              int curves, double window_ev)
 {
   double low, high;
   find_range(curve, curves, &low, &high);
-  begin_figure(script, path, 820, 480);
+  begin_figure(script, 820, 480);
   for (int c = 0; c < curves; c++) add_curve_data(script, &curve[c], c, low);
   mho_buffer_add(script, "set xlabel 'E − E_F (eV)'\nset ylabel 'transmission T(E)'\n"
                          "set format y '10^{%.0f}'\nset ytics 1\nset yrange [");
@@ -126,7 +126,7 @@ void mho_figure_transmission(mho_buffer *script, const char *path, const mho_cur
     if (!curve[c].has_measured) continue;
     mho_buffer_print(script,
                      ", $measured%d using 1:2:3:4 with yerrorbars linewidth 2 pointtype 12 "
-                     "pointsize 1.4 linecolor '%s' title 'measured'",
+                     "pointsize 1.4 linecolor '%s' notitle",
                      c, ink[c]);
   }
   mho_buffer_add(script, "\n");
@@ -134,13 +134,12 @@ void mho_figure_transmission(mho_buffer *script, const char *path, const mho_cur
 
 static bool is_shown(const mho_comparison *c) { return c->has_measured; }
 
-void mho_figure_comparison(mho_buffer *script, const char *path,
-                           const char *const *molecule, const mho_comparison *comparison,
+void mho_figure_comparison(mho_buffer *script, const char *const *molecule, const mho_comparison *comparison,
                            int count)
 {
   int rows = 0;
   for (int i = 0; i < count; i++) rows += is_shown(&comparison[i]);
-  begin_figure(script, path, 820, 150 + 42 * rows);
+  begin_figure(script, 820, 150 + 42 * rows);
   mho_buffer_add(script, "$computed << END\n");
   for (int i = 0, row = rows; i < count; i++) {
     const mho_comparison *c = &comparison[i];
@@ -177,13 +176,13 @@ void mho_figure_comparison(mho_buffer *script, const char *path,
                    "set offsets graph 0.04, graph 0.04, 0, 0\n"
                    "set grid xtics linecolor '" SHADE "' linetype 1\n"
                    "plot $computed using 1:2:3:4 with xerrorbars linewidth 2 pointtype 7 "
-                   "pointsize 1.1 linecolor '%s' title 'computed, bar: alignment window', "
+                   "pointsize 1.1 linecolor '%s' title 'computed (bar: window)', "
                    "$measured using 1:2:3:4 with xerrorbars linewidth 2 pointtype 12 "
-                   "pointsize 1.4 linecolor '%s' title 'measured, bar: spread'\n",
+                   "pointsize 1.4 linecolor '%s' title 'measured (bar: spread)'\n",
                    rows, ink[0], ink[1]);
 }
 
-mho_status mho_figure_render(const char *script_path, bool *available, mho_error *error)
+mho_status mho_figure_render(const char *script_path, const char *svg_path, bool *available, mho_error *error)
 {
   /* -d: no start-up file of the user, the same figure for everyone. */
   char program[] = "gnuplot", no_startup[] = "-d";
@@ -192,7 +191,7 @@ mho_status mho_figure_render(const char *script_path, bool *available, mho_error
   if (posix_spawn_file_actions_init(&actions) != 0)
     return mho_fail(error, MHO_ERR_MEMORY, "report", NULL, "out of memory");
   posix_spawn_file_actions_addopen(&actions, 0, "/dev/null", O_RDONLY, 0);
-  posix_spawn_file_actions_addopen(&actions, 1, "/dev/null", O_WRONLY, 0);
+  posix_spawn_file_actions_addopen(&actions, 1, svg_path, O_WRONLY | O_CREAT | O_TRUNC, 0666);
   posix_spawn_file_actions_addopen(&actions, 2, "/dev/null", O_WRONLY, 0);
   pid_t child;
   int code = posix_spawnp(&child, "gnuplot", &actions, NULL, arguments, environ);

@@ -24,16 +24,15 @@ typedef struct {
   double measured_log10_g0, measured_low, measured_high;
 } mho_curve;
 
-/* Scripts; `path` is where gnuplot will write the SVG. */
-void mho_figure_transmission(mho_buffer *script, const char *path, const mho_curve *curve,
-                             int curves, double window_ev);
-void mho_figure_comparison(mho_buffer *script, const char *path,
-                           const char *const *molecule, const mho_comparison *comparison,
+/* Scripts that write an SVG to standard output. */
+void mho_figure_transmission(mho_buffer *script, const mho_curve *curve, int curves,
+                             double window_ev);
+void mho_figure_comparison(mho_buffer *script, const char *const *molecule, const mho_comparison *comparison,
                            int count);
 
-/* Runs gnuplot on a script file.  *available is false, and the status MHO_OK,
+/* Runs gnuplot on a script file, its output into svg_path.  *available is false, and the status MHO_OK,
  * where there is no gnuplot.  Errors: MHO_ERR_WRITE. */
-MHO_MUST_USE mho_status mho_figure_render(const char *script_path, bool *available,
-                                          mho_error *error);
+MHO_MUST_USE mho_status mho_figure_render(const char *script_path, const char *svg_path,
+                                          bool *available, mho_error *error);
 
 #endif

@@ -39,6 +39,7 @@ static const char style[] =
     "th,td{padding:.35rem .6rem;text-align:right;border-bottom:1px solid #d8dce2;"
     "vertical-align:top}"
     "th{border-bottom:2px solid #5a6270;font-weight:600}"
+    "td.number{white-space:nowrap}"
     "th:first-child,td:first-child,td.text{text-align:left}"
     "td.node{color:#5a6270;font-style:italic}"
     "figure{margin:1rem 0}figure img{width:100%;height:auto}"
@@ -86,7 +87,7 @@ static void write_cell(const mho_cell *cell, mho_buffer *buffer)
   case MHO_CELL_NODE: mho_buffer_add(buffer, "<td class=\"node\">node: no prediction</td>"); return;
   case MHO_CELL_INTEGER: mho_buffer_print(buffer, "<td>%ld</td>", cell->integer); return;
   case MHO_CELL_NUMBER:
-    mho_buffer_add(buffer, "<td>");
+    mho_buffer_add(buffer, "<td class=\"number\">");
     mho_buffer_number(buffer, REPORT_DIGITS, cell->number);
     mho_buffer_add(buffer, "</td>");
     return;

@@ -13,6 +13,7 @@ static void add_warning_words(mho_table *table, unsigned warnings)
 {
   mho_buffer words = {0};
   mho_write_warning_words(&words, warnings);
+  if (table && words.failed) table->failed = MHO_ERR_MEMORY;
   mho_table_text(table, words.data);
   mho_buffer_clear(&words);
 }
@@ -109,9 +110,11 @@ void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
   mho_number_write(left, sizeof left, 6, molecule->contact[MHO_LEFT].coupling_ev);
   mho_number_write(right, sizeof right, 6, molecule->contact[MHO_RIGHT].coupling_ev);
   mho_fermi_write(&molecule->fermi, fermi, sizeof fermi);
+  bool relative = molecule->fermi.kind != MHO_FERMI_ENERGY;
   mho_output_note(output,
-                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s "
-                  "(%s eV above alpha), %s K",
+                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s%s%s%s, "
+                  "%s K",
                   molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
-                  fermi, at, temperature);
+                  fermi, relative ? " = " : "", relative ? at : "", relative ? " eV" : "",
+                  temperature);
 }

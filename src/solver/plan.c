@@ -80,8 +80,8 @@ mho_status mho_plan_create(const mho_junction *junction, mho_plan **result,
   plan->left = junction->lead[MHO_LEFT].channels;
   plan->right = junction->lead[MHO_RIGHT].channels;
   plan->channels = plan->left + plan->right;
-  plan->connected = mho_junction_is_connected(junction);
-  mho_status status = collect_entries(junction, plan);
+  mho_status status = mho_junction_is_connected(junction, &plan->connected, NULL);
+  if (status == MHO_OK) status = collect_entries(junction, plan);
   if (status == MHO_OK) status = collect_channels(junction, plan);
   if (status == MHO_OK) status = project_orbitals(junction, plan);
   if (status != MHO_OK) {

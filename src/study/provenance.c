@@ -20,9 +20,9 @@ static json_t *input_hashes(const mho_study *study, mho_status *status, mho_erro
       break;
     }
     json_t *item = json_object();
-    json_object_set_new(item, "file", json_string(study->input[i].name));
-    json_object_set_new(item, "sha256", json_string(digest));
-    json_array_append_new(list, item);
+    item = mho_json_with(item, "file", mho_json_text(study->input[i].name));
+    item = mho_json_with(item, "sha256", mho_json_text(digest));
+    list = mho_json_append(list, item);
   }
   return list;
 }
@@ -31,19 +31,19 @@ static json_t *molecule_parameters(const mho_molecule *molecule)
 {
   char fermi[64];
   json_t *object = json_object();
-  json_object_set_new(object, "molecule", json_string(molecule->name));
-  json_object_set_new(object, "parameters",
-                      json_string(mho_parameters_name(molecule->parameters)));
-  json_object_set_new(object, "source",
-                      json_string(mho_parameters_source(molecule->parameters)));
-  json_object_set_new(object, "beta_eV", json_real(molecule->beta_ev));
-  json_object_set_new(object, "temperature_K", json_real(molecule->temperature_k));
-  json_object_set_new(object, "coupling_left_eV",
+  object = mho_json_with(object, "molecule", mho_json_text(molecule->name));
+  object = mho_json_with(object, "parameters",
+                      mho_json_text(mho_parameters_name(molecule->parameters)));
+  object = mho_json_with(object, "source",
+                      mho_json_text(mho_parameters_source(molecule->parameters)));
+  object = mho_json_with(object, "beta_eV", json_real(molecule->beta_ev));
+  object = mho_json_with(object, "temperature_K", json_real(molecule->temperature_k));
+  object = mho_json_with(object, "coupling_left_eV",
                       json_real(molecule->contact[MHO_LEFT].coupling_ev));
-  json_object_set_new(object, "coupling_right_eV",
+  object = mho_json_with(object, "coupling_right_eV",
                       json_real(molecule->contact[MHO_RIGHT].coupling_ev));
-  json_object_set_new(object, "fermi",
-                      json_string(mho_fermi_write(&molecule->fermi, fermi, sizeof fermi)));
+  object = mho_json_with(object, "fermi",
+                      mho_json_text(mho_fermi_write(&molecule->fermi, fermi, sizeof fermi)));
   return object;
 }
 
@@ -53,14 +53,14 @@ mho_status mho_write_provenance(const mho_study *study, const char *command,
   mho_status status = MHO_OK;
   json_t *object = json_object(), *molecules = json_array();
   for (int i = 0; i < study->molecule_count; i++)
-    json_array_append_new(molecules, molecule_parameters(&study->molecule[i]));
-  json_object_set_new(object, "schema", json_string(MHO_JSON_SCHEMA));
-  json_object_set_new(object, "mholecule", json_string(mho_version()));
-  json_object_set_new(object, "command", command ? json_string(command) : json_null());
-  json_object_set_new(object, "inputs", input_hashes(study, &status, error));
-  json_object_set_new(object, "molecules", molecules);
-  json_object_set_new(object, "window_eV", json_real(study->window_ev));
-  json_object_set_new(object, "seed", json_null()); /* nothing here is random */
+    molecules = mho_json_append(molecules, molecule_parameters(&study->molecule[i]));
+  object = mho_json_with(object, "schema", mho_json_text(MHO_JSON_SCHEMA));
+  object = mho_json_with(object, "mholecule", mho_json_text(mho_version()));
+  object = mho_json_with(object, "command", command ? mho_json_text(command) : json_null());
+  object = mho_json_with(object, "inputs", input_hashes(study, &status, error));
+  object = mho_json_with(object, "molecules", molecules);
+  object = mho_json_with(object, "window_eV", json_real(study->window_ev));
+  object = mho_json_with(object, "seed", json_null()); /* nothing here is random */
   if (status != MHO_OK) {
     json_decref(object);
     return status;

@@ -232,11 +232,12 @@ static mho_status draw(run *r, const mho_buffer *script, mho_figure *figure, mho
   size_t size = 0;
   mho_status status = script_path && path ? MHO_OK : fail_memory(error);
   if (status == MHO_OK) status = mho_folder_write(&r->folder, script_name, script, error);
-  if (status == MHO_OK) status = mho_figure_render(script_path, &available, error);
+  if (status == MHO_OK) status = mho_figure_render(script_path, path, &available, error);
   if (status == MHO_OK && available)
     status = mho_read_file(path, 64 << 20, "study", &text, &size, error);
   if (status == MHO_OK && available) mho_buffer_add_bytes(&figure->svg, text, size);
   if (script_path) remove(script_path);
+  if (path && !available) remove(path);
   if (status == MHO_OK && !available) {
     r->without_gnuplot = true;
     free(figure->file);
@@ -276,12 +277,9 @@ static mho_status draw_transmission(run *r, int first, int count, mho_error *err
       &figure, error);
   if (status != MHO_OK) return status;
   mho_buffer script = {0};
-  char *path = mho_folder_path(&r->folder, figure->file);
-  if (!path) status = fail_memory(error);
-  if (path) mho_figure_transmission(&script, path, curve, count, r->study->window_ev);
-  if (status == MHO_OK) status = draw(r, &script, figure, error);
+  mho_figure_transmission(&script, curve, count, r->study->window_ev);
+  status = draw(r, &script, figure, error);
   mho_buffer_clear(&script);
-  free(path);
   return status;
 }
 
@@ -295,16 +293,13 @@ static mho_status draw_comparison(run *r, mho_error *error)
     status = add_figure(r, "comparison", mho_copy_text("compare.svg"),
                         mho_copy_text("Computed and measured conductance of each molecule."),
                         &figure, error);
-  char *path = status == MHO_OK ? mho_folder_path(&r->folder, figure->file) : NULL;
   mho_buffer script = {0};
-  if (status == MHO_OK && !path) status = fail_memory(error);
   if (status == MHO_OK) {
     for (int i = 0; i < count; i++) name[i] = r->study->molecule[i].name;
-    mho_figure_comparison(&script, path, name, r->comparison, count);
+    mho_figure_comparison(&script, name, r->comparison, count);
     status = draw(r, &script, figure, error);
   }
   mho_buffer_clear(&script);
-  free(path);
   free(name);
   return status;
 }
@@ -344,14 +339,14 @@ static json_t *json_results(const run *r)
 {
   json_t *object = json_object(), *answers = json_array(), *limits = json_array();
   for (size_t i = 0; i < r->answers; i++)
-    json_array_append_new(answers, json_string(r->answer[i]));
+    answers = mho_json_append(answers, mho_json_text(r->answer[i]));
   size_t count;
   const char *const *limit = mho_limits(&count);
-  for (size_t i = 0; i < count; i++) json_array_append_new(limits, json_string(limit[i]));
-  json_object_set_new(object, "schema", json_string(MHO_JSON_SCHEMA));
-  json_object_set_new(object, "study", json_string(r->study->title));
-  json_object_set_new(object, "answer", answers);
-  return json_object_set_new(object, "limits", limits) == 0 ? object : NULL;
+  for (size_t i = 0; i < count; i++) limits = mho_json_append(limits, mho_json_text(limit[i]));
+  object = mho_json_with(object, "schema", mho_json_text(MHO_JSON_SCHEMA));
+  object = mho_json_with(object, "study", mho_json_text(r->study->title));
+  object = mho_json_with(object, "answer", answers);
+  return mho_json_with(object, "limits", limits);
 }
 
 static mho_status write_results(run *r, mho_error *error)
@@ -364,11 +359,11 @@ static mho_status write_results(run *r, mho_error *error)
   if (status == MHO_OK) {
     for (int i = 0; i < s->molecule_count; i++)
       checked[i] = (mho_checked){&s->molecule[i], &r->outcome[i].junction, r->outcome[i].warnings};
-    json_object_set_new(object, "molecules",
+    object = mho_json_with(object, "molecules",
                         mho_json_molecules(checked, (size_t)s->molecule_count));
-    json_object_set_new(object, "tables", mho_json_tables(&r->output));
-    json_object_set_new(object, "warnings", mho_json_warnings(&r->output));
-    json_object_set_new(object, "notes", mho_json_notes(&r->output));
+    object = mho_json_with(object, "tables", mho_json_tables(&r->output));
+    object = mho_json_with(object, "warnings", mho_json_warnings(&r->output));
+    object = mho_json_with(object, "notes", mho_json_notes(&r->output));
     status = mho_json_write(object, &buffer, error);
     object = NULL;
   }
