@@ -73,15 +73,15 @@ static mho_status perceive(conversion *c)
                                           c->options->contacts_optional, place,
                                           c->contact, c->error);
   if (status != MHO_OK) return status;
-  bool *forced = calloc((size_t)graph->atom_count + 1, sizeof *forced);
-  if (!forced) return no_memory(c->error);
+  unsigned char *touched = calloc((size_t)graph->atom_count + 1, 1);
+  if (!touched) return no_memory(c->error);
   for (int side = 0; side < 2; side++)
     for (int i = 0; i < c->contact[side].count; i++)
-      forced[c->contact[side].atom[i]] = true;
-  status = mho_pi_perceive(graph, c->linkers.removed, forced, place, &c->pi,
+      touched[c->contact[side].atom[i]] |= (unsigned char)(1 << side);
+  status = mho_pi_perceive(graph, c->linkers.removed, touched, place, &c->pi,
                            c->options->quiet ? NULL : &c->structure->notes,
                            c->error);
-  free(forced);
+  free(touched);
   return status == MHO_OK ? mho_pi_find_bonds(graph, &c->pi, c->error) : status;
 }
 
@@ -138,7 +138,7 @@ static mho_status fill_sites(conversion *c)
   return status;
 }
 
-static mho_status fill_bonds(conversion *c)
+static void fill_bonds(conversion *c)
 {
   mho_molecule *m = c->molecule;
   bool formal = c->options->alternation == MHO_ALTERNATION_FORMAL;
@@ -150,7 +150,6 @@ static mho_status fill_bonds(conversion *c)
                             .rotatable = from->rotatable};
   }
   m->bond_count = c->pi.bond_count;
-  return MHO_OK;
 }
 
 /* Pairs of rows whose k is a product, each once. */
@@ -224,30 +223,38 @@ static mho_status set_twists(conversion *c)
   return MHO_OK;
 }
 
+static mho_status fail_contact(conversion *c, int side, int atom)
+{
+  char name[24];
+  mho_graph_atom_name(&c->structure->graph, atom, name, sizeof name);
+  return mho_fail_column(c->error, MHO_ERR_CONTACTS, &c->options->place,
+                         c->structure->graph.atom[atom].column,
+                         "the %s contact %s carries no p orbital; mark an atom "
+                         "of the pi system", side ? "right" : "left", name);
+}
+
+/* Every orbital of the contact's atoms, with one coupling. */
 static mho_status fill_contact(conversion *c, int side)
 {
   const mho_contact_atoms *from = &c->contact[side];
   mho_contact *to = &c->molecule->contact[side];
+  size_t room = 2 * (size_t)from->count + 1;
   free(to->site);
   free(to->amplitude);
-  to->site = malloc(((size_t)from->count + 1) * sizeof *to->site);
-  to->amplitude = malloc(((size_t)from->count + 1) * sizeof *to->amplitude);
+  to->site = malloc(room * sizeof *to->site);
+  to->amplitude = malloc(room * sizeof *to->amplitude);
   if (!to->site || !to->amplitude) return no_memory(c->error);
   to->channels = MHO_CHANNELS_INDEPENDENT;
   to->coupling_ev = c->options->coupling_ev > 0 ? c->options->coupling_ev
                                                 : mho_linker_coupling_ev(from->kind);
-  for (to->count = 0; to->count < from->count; to->count++) {
-    int atom = from->atom[to->count];
-    if (c->pi.site_of[atom] < 0) {
-      char name[24];
-      mho_graph_atom_name(&c->structure->graph, atom, name, sizeof name);
-      return mho_fail_column(c->error, MHO_ERR_CONTACTS, &c->options->place,
-                             c->structure->graph.atom[atom].column,
-                             "the %s contact %s carries no p orbital; mark an "
-                             "atom of the pi system", side ? "right" : "left", name);
+  to->count = 0;
+  for (int i = 0; i < from->count; i++) {
+    int site = c->pi.site_of[from->atom[i]];
+    if (site < 0) return fail_contact(c, side, from->atom[i]);
+    for (; site < c->pi.site_count && c->pi.site[site].atom == from->atom[i]; site++) {
+      to->site[to->count] = site;
+      to->amplitude[to->count++] = 1.0;
     }
-    to->site[to->count] = c->pi.site_of[atom];
-    to->amplitude[to->count] = 1.0;
   }
   return MHO_OK;
 }
@@ -311,9 +318,10 @@ static mho_status fill_contacts(conversion *c)
   for (int side = 0; side < 2; side++) {
     mho_status status = fill_contact(c, side);
     if (status != MHO_OK) return status;
-    if (c->contact[side].count > 1 &&
+    int count = c->molecule->contact[side].count;
+    if (count > 1 &&
         NOTE(c, "the %s contact binds by %d sites, each a channel of its own",
-             side ? "right" : "left", c->contact[side].count) != MHO_OK)
+             side ? "right" : "left", count) != MHO_OK)
       return MHO_ERR_MEMORY;
   }
   return MHO_OK;
@@ -332,8 +340,10 @@ static mho_status convert(conversion *c)
                            MHO_SITE_LIMIT);
   if (status == MHO_OK) status = allocate(c);
   if (status == MHO_OK) status = fill_sites(c);
-  if (status == MHO_OK) status = fill_bonds(c);
-  if (status == MHO_OK) status = note_products(c);
+  if (status == MHO_OK) {
+    fill_bonds(c);
+    status = note_products(c);
+  }
   if (status == MHO_OK) status = set_twists(c);
   if (status == MHO_OK)
     status = mho_alkyl_apply(&c->pi, c->linkers.removed, c->options, c->molecule,

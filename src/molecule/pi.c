@@ -4,7 +4,8 @@
  *
  * An sp atom has two orthogonal orbitals.  In an alkyne, a nitrile or a
  * polyyne the first of them joins what stands at the ends of the chain; the
- * second one sees only its like in the chain and is left out.  In a cumulene
+ * second one sees only its like in the chain and is left out, unless both
+ * contacts touch the chain, which then conducts by both.  In a cumulene
  * the double bonds lie in the two planes in turn: with an odd number of them
  * the ends share a plane and the second orbitals are again left out; with an
  * even number the ends stand in different planes and both orbitals are sites.
@@ -25,6 +26,7 @@ enum { NAME_SIZE = 24 };
 typedef struct {
   const mho_graph *graph;
   const bool *removed;
+  const unsigned char *contact;
   const mho_place *place;
   mho_error *error;
   mho_texts *notes;
@@ -46,14 +48,14 @@ static mho_status no_memory(mho_error *error)
 
 /* Lends lone pairs to what they touch, from atom to atom; a refused atom that
  * touches the pi system is an error. */
-static mho_status spread(perception *p, const bool *forced)
+static mho_status spread(perception *p)
 {
   const mho_graph *g = p->graph;
   int head = 0, tail = 0;
   for (int a = 0; a < g->atom_count; a++) {
     mho_orbital *o = &p->orbital[a];
     if (is_removed(p, a)) o->kind = ORBITAL_NONE;
-    if (o->kind == ORBITAL_LENT && forced && forced[a]) o->kind = ORBITAL_OWN;
+    if (o->kind == ORBITAL_LENT && p->contact && p->contact[a]) o->kind = ORBITAL_OWN;
     if (o->kind == ORBITAL_OWN) p->queue[tail++] = a;
   }
   while (head < tail) {
@@ -124,6 +126,44 @@ static void find_cumulenes(perception *p)
           follow_cumulene(p, a, link);
       }
     }
+}
+
+/* Marks the sp atoms of an alkyne chain that holds `first`; returns the
+ * contacts that touch it. */
+static unsigned mark_chain(perception *p, int first, int *count)
+{
+  const mho_graph *g = p->graph;
+  unsigned touched = 0;
+  int head = 0, tail = 0;
+  p->queue[tail++] = first;
+  p->both[first] = true;
+  while (head < tail) {
+    int a = p->queue[head++];
+    touched |= p->contact[a];
+    for (int i = g->start[a]; i < g->start[a + 1]; i++) {
+      int next = g->link[i].atom;
+      if (!p->orbital[next].sp || p->orbital[next].kind != ORBITAL_OWN ||
+          p->both[next] || p->plane[g->link[i].bond] >= 0)
+        continue;
+      p->both[next] = true;
+      p->queue[tail++] = next;
+    }
+  }
+  *count = tail;
+  return touched;
+}
+
+/* Chains that both contacts touch keep their second orbitals. */
+static void find_shared_chains(perception *p)
+{
+  for (int a = 0; p->contact && a < p->graph->atom_count; a++) {
+    int count;
+    if (!(p->contact[a] & 1) || !p->orbital[a].sp || p->both[a] ||
+        p->orbital[a].kind != ORBITAL_OWN)
+      continue;
+    if (mark_chain(p, a, &count) == 3) continue;
+    while (count) p->both[p->queue[--count]] = false;
+  }
 }
 
 static mho_status note_second_system(perception *p)
@@ -250,13 +290,14 @@ static mho_status build(perception *p, mho_pi *pi)
 }
 
 mho_status mho_pi_perceive(const mho_graph *graph, const bool *removed,
-                           const bool *forced, const mho_place *place,
-                           mho_pi *pi, mho_texts *notes, mho_error *error)
+                           const unsigned char *contact,
+                           const mho_place *place, mho_pi *pi,
+                           mho_texts *notes, mho_error *error)
 {
   size_t n = (size_t)graph->atom_count, m = (size_t)graph->bond_count;
   *pi = (mho_pi){0};
-  perception p = {.graph = graph, .removed = removed, .place = place,
-                  .error = error, .notes = notes};
+  perception p = {.graph = graph, .removed = removed, .contact = contact,
+                  .place = place, .error = error, .notes = notes};
   p.orbital = malloc(n * sizeof *p.orbital + 1);
   p.queue = malloc(n * sizeof *p.queue + 1);
   p.plane = malloc(m + 1);
@@ -266,10 +307,11 @@ mho_status mho_pi_perceive(const mho_graph *graph, const bool *removed,
   if (status == MHO_OK) {
     for (int a = 0; a < graph->atom_count; a++)
       p.orbital[a] = mho_orbital_of(graph, removed, a);
-    status = spread(&p, forced);
+    status = spread(&p);
   }
   if (status == MHO_OK) {
     find_cumulenes(&p);
+    find_shared_chains(&p);
     status = build(&p, pi);
   }
   free(p.orbital);

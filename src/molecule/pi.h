@@ -11,7 +11,7 @@ enum { MHO_ROW_SIZE = 12 };
 
 typedef struct {
   int atom;
-  int orbital;   /* 1 for the second p orbital of a cumulene carbon, else 0 */
+  int orbital;   /* 1 for the second p orbital of an sp atom, else 0 */
   int electrons; /* that it brings, as drawn */
   bool oxide;    /* N or O of a nitro group or an N-oxide */
   char row[MHO_ROW_SIZE]; /* of a parameter set: `N-pyridine`, `N+` ... */
@@ -35,12 +35,14 @@ typedef struct {
 } mho_pi;
 
 /* Sites and bonds with strength 1 and no twist.  Atoms in `removed` do not
- * exist; lone pairs of atoms in `forced` are sites even where they touch no
- * other (either may be NULL).  Notes (or NULL) say what was left out or counted
+ * exist; `contact` has bit 1 for atoms of the left and bit 2 for atoms of the
+ * right contact, whose lone pairs are sites even where they touch no other
+ * (either may be NULL).  Notes (or NULL) say what was left out or counted
  * by a rule.  Errors: MHO_ERR_UNPARAMETERISED for an atom in a bonding
  * situation without a row, MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_pi_perceive(const mho_graph *graph,
-                                        const bool *removed, const bool *forced,
+                                        const bool *removed,
+                                        const unsigned char *contact,
                                         const mho_place *place, mho_pi *pi,
                                         mho_texts *notes, mho_error *error);
 void mho_pi_clear(mho_pi *pi);

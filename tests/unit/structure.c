@@ -626,6 +626,45 @@ static void the_second_pi_system_is_named(void **state)
   clear_subject(&s);
 }
 
+/* The two orthogonal systems of a polyyne are equal, and their T add up. */
+static void two_systems_that_reach_both_contacts_add(void **state)
+{
+  (void)state;
+  double transmission[2];
+  static const char *const smiles[] = {"N#CC#CC#N", "N#C[C:1]#[C:2]C#N"};
+  for (int i = 0; i < 2; i++) {
+    subject s;
+    mho_junction junction;
+    mho_plan *plan;
+    mho_point point;
+    double energy = 0.3;
+    assert_int_equal(read_subject(&s, smiles[i], NULL), MHO_OK);
+    assert_int_equal(s.molecule.site_count, 12);
+    assert_int_equal(s.molecule.electrons, 12);
+    assert_int_equal(s.molecule.contact[MHO_LEFT].count, 2);
+    assert_int_equal(mho_junction_build(&s.molecule, &junction, NULL), MHO_OK);
+    assert_int_equal(mho_plan_create(&junction, &plan, NULL), MHO_OK);
+    assert_int_equal(mho_transmission_sweep(plan, 1, &energy, &point, NULL), MHO_OK);
+    transmission[0] = point.transmission;
+    mho_plan_free(plan);
+    /* One of the two systems alone. */
+    for (int side = 0; side < 2; side++) s.molecule.contact[side].count = 1;
+    mho_junction_clear(&junction);
+    assert_int_equal(mho_junction_build(&s.molecule, &junction, NULL), MHO_OK);
+    assert_int_equal(mho_plan_create(&junction, &plan, NULL), MHO_OK);
+    assert_int_equal(mho_transmission_sweep(plan, 1, &energy, &point, NULL), MHO_OK);
+    transmission[1] = point.transmission;
+    assert_close(transmission[0], 2 * transmission[1], 1e-10);
+    mho_plan_free(plan);
+    mho_junction_clear(&junction);
+    clear_subject(&s);
+  }
+  subject s; /* an aryl between them: one system only */
+  assert_int_equal(read_subject(&s, "C#Cc1ccc(C#C)cc1", NULL), MHO_OK);
+  assert_int_equal(s.molecule.site_count, 10);
+  clear_subject(&s);
+}
+
 int main(void)
 {
   const struct CMUnitTest tests[] = {
@@ -646,6 +685,7 @@ int main(void)
       cmocka_unit_test(streitwieser_says_where_a_rule_stands_in),
       cmocka_unit_test(a_set_of_ones_own_brings_charged_rows),
       cmocka_unit_test(the_second_pi_system_is_named),
+      cmocka_unit_test(two_systems_that_reach_both_contacts_add),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
 }
