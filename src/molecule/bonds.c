@@ -71,6 +71,11 @@ static mho_status match_sites(bond_finder *f)
     if (!f->shares[s[0]] || !f->shares[s[1]]) continue;
     f->next[--f->start[s[0]]] = s[1];
     f->next[--f->start[s[1]]] = s[0];
+    /* The Kekule structure at hand is the start. */
+    if (f->graph->bond[pi->bond[b].bond].order > 1 && f->mate[s[0]] < 0 && f->mate[s[1]] < 0) {
+      f->mate[s[0]] = s[1];
+      f->mate[s[1]] = s[0];
+    }
   }
   mho_match_graph sites = {n, f->start, f->next};
   return mho_match_maximum(&sites, f->mate, f->missed);

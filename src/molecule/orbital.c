@@ -9,8 +9,8 @@
  *   bonds, is counted without charges: N brings two (N-pyrrole), each O one
  *   (O-carbonyl).  The number of electrons is the same.
  * - Isonitrile: N and C bring one each, as in the nitrile.
- * - Thiolate is the thiol without its hydrogen (two electrons, S-thiophene),
- *   and a carboxylate the acid without it.
+ * - Thiolate, also written with an open valence, is the thiol without its
+ *   hydrogen (two electrons, S-thiophene), and a carboxylate the acid.
  * - C+, C- and carbon radicals are carbon with 0, 2 and 1 electrons.
  * - Every other charged atom has a row of its own: `N+`, `O-`, `S+` ...
  */
@@ -39,6 +39,11 @@ static bonding bonding_of(const mho_graph *g, const bool *removed, int atom)
     b.triples += order >= 3;
   }
   return b;
+}
+
+static mho_orbital no_orbital(void)
+{
+  return (mho_orbital){.kind = ORBITAL_NONE};
 }
 
 static mho_orbital row_orbital(mho_orbital_kind kind, int electrons,
@@ -104,7 +109,7 @@ static mho_orbital carbon(const mho_graph *g, int atom, bonding b)
     orbital.sp = b.triples || b.doubles == 2;
     return orbital;
   }
-  if (a->charge == 0 && a->radical == 0) return (mho_orbital){ORBITAL_NONE};
+  if (a->charge == 0 && a->radical == 0) return no_orbital();
   if (a->charge == 0 && a->radical == 1) return row_orbital(ORBITAL_OWN, 1, "C");
   if (a->charge == 1 && a->radical == 0) return row_orbital(ORBITAL_OWN, 0, "C");
   if (a->charge == -1 && a->radical == 0) return row_orbital(ORBITAL_OWN, 2, "C");
@@ -120,7 +125,7 @@ static mho_orbital nitrogen(const mho_graph *g, int atom, bonding b)
     return orbital;
   }
   bool unsaturated = b.doubles || b.triples;
-  mho_orbital orbital = {ORBITAL_NONE};
+  mho_orbital orbital = no_orbital();
   if (a->charge == 0 && b.valence <= 3) {
     if (unsaturated || a->radical == 1)
       orbital = row_orbital(ORBITAL_OWN, 1, "N-pyridine");
@@ -184,7 +189,7 @@ static bool is_hypervalent_oxo(const mho_graph *g, int oxygen)
 static mho_orbital oxygen(const mho_graph *g, int atom, bonding b)
 {
   const mho_graph_atom *a = &g->atom[atom];
-  if (b.doubles && is_hypervalent_oxo(g, atom)) return (mho_orbital){ORBITAL_NONE};
+  if (b.doubles && is_hypervalent_oxo(g, atom)) return no_orbital();
   if (is_oxide_oxygen(g, atom)) {
     mho_orbital orbital = row_orbital(ORBITAL_OWN, 1, "O-carbonyl");
     orbital.oxide = true;
@@ -193,7 +198,7 @@ static mho_orbital oxygen(const mho_graph *g, int atom, bonding b)
   if (a->charge == 0) {
     if (b.doubles || a->radical == 1) return row_orbital(ORBITAL_OWN, 1, "O-carbonyl");
     return b.connections || a->hydrogens ? row_orbital(ORBITAL_LENT, 2, "O-furan")
-                                         : (mho_orbital){ORBITAL_NONE};
+                                         : no_orbital();
   }
   if (a->charge == -1 && b.connections == 1 && a->hydrogens == 0 &&
       is_carboxylate(g, atom)) {
@@ -212,7 +217,7 @@ static mho_orbital sulfur(const mho_graph *g, int atom, bonding b)
     return named(g, atom, b.doubles ? ORBITAL_OWN : ORBITAL_LENT, b.doubles ? 1 : 2);
   if (b.doubles) return row_orbital(ORBITAL_OWN, 1, "S-thione");
   mho_orbital orbital = row_orbital(ORBITAL_LENT, 2, "S-thiophene");
-  orbital.bound = a->charge == -1;
+  orbital.bound = a->charge == -1 || a->radical;
   return orbital;
 }
 
@@ -222,13 +227,13 @@ static mho_orbital boron(const mho_graph *g, int atom, bonding b)
   if (a->charge == 0)
     return row_orbital(b.doubles ? ORBITAL_OWN : ORBITAL_LENT, b.doubles != 0, "B");
   if (b.doubles) return named(g, atom, ORBITAL_OWN, 1);
-  return (mho_orbital){ORBITAL_NONE}; /* borate */
+  return no_orbital(); /* borate */
 }
 
 static mho_orbital phosphorus(const mho_graph *g, int atom, bonding b)
 {
   const mho_graph_atom *a = &g->atom[atom];
-  if (a->charge == 1 && !b.doubles) return (mho_orbital){ORBITAL_NONE};
+  if (a->charge == 1 && !b.doubles) return no_orbital();
   if (a->charge) return named(g, atom, b.doubles ? ORBITAL_OWN : ORBITAL_LENT, b.doubles ? 1 : 2);
   if (b.valence > 3) return refused("a phosphorus with five bonds");
   return b.doubles || a->radical ? row_orbital(ORBITAL_OWN, 1, "P-pyridine")
@@ -241,11 +246,11 @@ static mho_orbital other(const mho_graph *g, int atom, bonding b)
 {
   const mho_graph_atom *a = &g->atom[atom];
   if (mho_element_is_metal(a->element) || b.connections == 0)
-    return (mho_orbital){ORBITAL_NONE};
+    return no_orbital();
   if (a->element == ELEMENT_SI && a->charge == 0 && (b.doubles || a->radical))
     return row_orbital(ORBITAL_OWN, 1, "Si");
   if (a->element == ELEMENT_SI || a->element == 32)
-    return b.doubles ? named(g, atom, ORBITAL_OWN, 1) : (mho_orbital){ORBITAL_NONE};
+    return b.doubles ? named(g, atom, ORBITAL_OWN, 1) : no_orbital();
   if (mho_element_valence(a->element, a->charge, 0) < b.valence)
     return refused("an atom with more bonds than usual");
   return named(g, atom, b.doubles ? ORBITAL_OWN : ORBITAL_LENT, b.doubles ? 1 : 2);
@@ -257,7 +262,7 @@ mho_orbital mho_orbital_of(const mho_graph *graph, const bool *removed,
   bonding b = bonding_of(graph, removed, atom);
   switch (graph->atom[atom].element) {
     case 0: return refused("the wildcard '*'");
-    case ELEMENT_H: return (mho_orbital){ORBITAL_NONE};
+    case ELEMENT_H: return no_orbital();
     case ELEMENT_B: return boron(graph, atom, b);
     case ELEMENT_C: return carbon(graph, atom, b);
     case ELEMENT_N: return nitrogen(graph, atom, b);

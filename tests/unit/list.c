@@ -113,6 +113,25 @@ static void csv_finds_its_columns_by_the_header(void **state)
   mho_list_close(list);
 }
 
+static void a_bad_smiles_is_reported_where_it_stands(void **state)
+{
+  (void)state;
+  static const char text[] = "name,smiles\n\xC3\xA9,c1ccc(\nx,C=C\n";
+  mho_error error;
+  mho_list *list = list_of("csv", text, sizeof text - 1, &error);
+  mho_list_row row;
+  mho_graph graph;
+  mho_graph_init(&graph);
+  assert_int_equal(mho_list_next(list, &row, NULL), MHO_OK);
+  assert_int_equal(mho_smiles_read(row.smiles, &row.place, &graph, &error), MHO_ERR_SYNTAX);
+  char line[200], expected[200];
+  mho_cause_format(&error.cause[0], line, sizeof line);
+  snprintf(expected, sizeof expected, "%s:2:8: column 6: '(' is never closed", path);
+  assert_string_equal(line, expected);
+  expect_row(list, "C=C", "x", 3, 3);
+  mho_list_close(list);
+}
+
 static void what_is_no_list_is_refused(void **state)
 {
   (void)state;
@@ -142,6 +161,7 @@ int main(void)
       cmocka_unit_test(smi_keeps_names_and_drops_line_ends),
       cmocka_unit_test(a_bad_row_does_not_stop_the_rest),
       cmocka_unit_test(csv_finds_its_columns_by_the_header),
+      cmocka_unit_test(a_bad_smiles_is_reported_where_it_stands),
       cmocka_unit_test(what_is_no_list_is_refused),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);

@@ -158,6 +158,7 @@ static void each_bonding_situation_has_its_row(void **state)
       {"C=CS", "C1:C:1 C2:C:1 S3:S-thiophene:2"},
       {"C=C[S-]", "C1:C:1 C2:C:1 S3:S-thiophene:2"},
       {"C=CSC(C)=O", "C1:C:1 C2:C:1 S3:S-thiophene:2"},
+      {"C=C[S]", "C1:C:1 C2:C:1 S3:S-thiophene:2"},
       {"[Au]SC=C", "S2:S-thiophene:2 C3:C:1 C4:C:1"},
       {"CC#N", "C2:C:1 N3:N-pyridine:1"},
       {"C=C[N+]#[C-]", "C1:C:1 C2:C:1 N3:N-pyridine:1 C4:C:1"},
