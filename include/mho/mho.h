@@ -8,13 +8,16 @@
 #include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/constants.h>
+#include <mho/graph.h>
 #include <mho/junction.h>
+#include <mho/linker.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
 #include <mho/settings.h>
 #include <mho/status.h>
+#include <mho/structure.h>
 #include <mho/study.h>
 #include <mho/transmission.h>
 #include <mho/version.h>
