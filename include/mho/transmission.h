@@ -13,6 +13,12 @@
 
 typedef struct mho_plan mho_plan;
 
+/* H_ij = H_ji of a Hamiltonian given by its non-zero entries. */
+typedef struct {
+  int i, j;
+  double value_ev;
+} mho_entry;
+
 /* How a value was found; later methods are slower and more exact. */
 typedef enum {
   MHO_METHOD_NO_PATH,     /* no hopping joins the contacts: T = 0 */
@@ -44,6 +50,15 @@ MHO_BEGIN_DECLARATIONS
 MHO_API MHO_MUST_USE mho_status mho_plan_create(const mho_junction *junction,
                                                 mho_plan **plan,
                                                 mho_error *error);
+
+/* The same from the non-zero entries of H alone, for molecules too long or
+ * large to be diagonalised: memory O(sites) for a chain.  entry[entries] has
+ * i <= j, entries of one pair add up; leads as in a junction (all copied).
+ * Errors: MHO_ERR_SIZE (a site), MHO_ERR_NOT_FINITE, MHO_ERR_CONTACTS,
+ * MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_plan_create_sparse(
+    int sites, const mho_entry *entry, size_t entries, const mho_lead *left,
+    const mho_lead *right, mho_plan **plan, mho_error *error);
 MHO_API void mho_plan_free(mho_plan *plan);
 
 /* T at energy_ev[count] (relative to alpha) into point[count].

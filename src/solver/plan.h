@@ -14,20 +14,22 @@
 
 #include <mho/transmission.h>
 
-typedef struct {
-  int i, j; /* i <= j */
-  double value_ev;
-} mho_entry;
-
 struct mho_plan {
   int sites, left, right, channels; /* channels = left + right */
   bool connected;
-  double norm_ev; /* 2-norm of H */
-  mho_entry *entry; /* non-zeros of H, upper triangle with the diagonal */
+  double norm_ev; /* 2-norm of H, or a bound on it */
+  mho_entry *entry; /* non-zeros of H, i <= j, with the diagonal */
   size_t entries;
+  size_t *neighbour_start; /* [sites + 1]: pattern of H and of Sigma, no diagonal */
+  int *neighbour;
+  int *order, *place; /* [sites]: site at a place of a narrow band, and back */
+  size_t bandwidth;   /* of H and Sigma in that order */
+  size_t band; /* to eliminate within, or 0 where full elimination is as good */
+  size_t *support_start; /* [channels + 1]: sites where v_c is not zero */
+  int *support;
   double *coupling_ev, *shift_ev; /* [channels] */
   double *vector;                 /* [channels][sites] */
-  double *level_ev;               /* [sites] */
+  double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
 };
 
@@ -45,6 +47,9 @@ typedef struct {
   bool first_order;      /* false: too near to singular to trust that bound */
   double kappa;
 } mho_estimate;
+
+/* Order that makes the band narrow, over plan->neighbour; order.c. */
+MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
 
 /* Sum over the levels of the bare molecule; spectrum.c. */
 void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
