@@ -7,6 +7,7 @@
 
 #include <mho/conductance.h>
 #include <mho/constants.h>
+#include <mho/gradient.h>
 #include <mho/junction.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>

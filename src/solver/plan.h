@@ -12,6 +12,7 @@
 
 #include <float.h>
 
+#include <mho/gradient.h>
 #include <mho/transmission.h>
 
 struct mho_plan {
@@ -56,7 +57,9 @@ void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
                            mho_estimate *estimate);
 
 /* Gaussian elimination in double and in 113 bits; elimination.inc.  The
- * workspace belongs to one thread; create returns NULL without memory. */
+ * workspace belongs to one thread; create returns NULL without memory.
+ * differentiate follows an evaluate that found T, fills all derivatives and
+ * returns an estimate of the error of the sum of all p dlnT/dp. */
 typedef struct mho_elimination_double mho_elimination_double;
 typedef struct mho_elimination_quad mho_elimination_quad;
 
@@ -66,10 +69,20 @@ void mho_elimination_evaluate_double(const mho_plan *plan,
                                      mho_elimination_double *workspace,
                                      double energy_ev, mho_estimate *estimate);
 
+double mho_elimination_differentiate_double(const mho_plan *plan,
+                                        mho_elimination_double *workspace,
+                                        double energy_ev, double relative_error,
+                                        mho_gradient *gradient);
+
 mho_elimination_quad *mho_elimination_create_quad(const mho_plan *plan);
 void mho_elimination_free_quad(mho_elimination_quad *workspace);
 void mho_elimination_evaluate_quad(const mho_plan *plan,
                                    mho_elimination_quad *workspace,
                                    double energy_ev, mho_estimate *estimate);
+
+double mho_elimination_differentiate_quad(const mho_plan *plan,
+                                        mho_elimination_quad *workspace,
+                                        double energy_ev, double relative_error,
+                                        mho_gradient *gradient);
 
 #endif

@@ -44,7 +44,7 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
                          mho_point *point)
 {
   set_point(plan, estimate, MHO_METHOD_EXTENDED, point);
-  if (estimate->relative_error > 0.5 && !(estimate->log10_transmission > -20)) {
+  if (estimate->relative_error > 0.5 && !(estimate->transmission > 1e-20)) {
     *point = (mho_point){.node = true, .method = MHO_METHOD_EXTENDED};
     return;
   }
