@@ -63,8 +63,10 @@ MHO_API MHO_MUST_USE mho_status mho_junction_require_contacts(
     const mho_junction *junction, const mho_molecule *molecule,
     mho_error *error);
 
-/* True if some chain of non-zero hoppings joins the two contacts. */
-MHO_API bool mho_junction_is_connected(const mho_junction *junction);
+/* *connected is true if some chain of non-zero hoppings joins the contacts.
+ * Errors: MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_junction_is_connected(
+    const mho_junction *junction, bool *connected, mho_error *error);
 
 MHO_END_DECLARATIONS
 

@@ -5,6 +5,7 @@
 #ifndef MHOLECULE_MHO_H
 #define MHOLECULE_MHO_H
 
+#include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/constants.h>
 #include <mho/gradient.h>
@@ -15,6 +16,7 @@
 #include <mho/quantity.h>
 #include <mho/settings.h>
 #include <mho/status.h>
+#include <mho/study.h>
 #include <mho/transmission.h>
 #include <mho/version.h>
 #include <mho/warning.h>

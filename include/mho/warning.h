@@ -25,8 +25,8 @@
     "a resonance lies at the Fermi level; conductance depends on its exact "   \
     "place")                                                                   \
   X(MHO_WARN_NEAR_NODE, "near-node",                                           \
-    "the transmission has a node at the Fermi level: no prediction of a "      \
-    "value, other paths will carry the current")                               \
+    "the transmission has a node at the energy in question: no prediction of " \
+    "a value, other paths will carry the current")                             \
   X(MHO_WARN_NEAR_DEGENERATE_FRONTIER, "near-degenerate-frontier",             \
     "HOMO and LUMO are less than 0.2 eV apart")                                \
   X(MHO_WARN_STRONG_TWIST, "strong-twist",                                     \

@@ -15,6 +15,7 @@
 #include <math.h>
 #include <stdlib.h>
 
+#include <gsl/gsl_errno.h>
 #include <gsl/gsl_integration.h>
 
 enum { GAUSS_POINTS = 16, HALVINGS_MAX = 60 };
@@ -132,6 +133,7 @@ mho_status mho_thermal_grid_build(const mho_plan *plan, const double *center_ev,
   *grid = (mho_thermal_grid){0};
   size_t n = (size_t)mho_plan_sites(plan);
   mho_pole *pole = malloc(n * sizeof *pole);
+  gsl_set_error_handler_off(); /* its default aborts the program */
   gsl_integration_glfixed_table *rule = gsl_integration_glfixed_table_alloc(GAUSS_POINTS);
   mho_status status = MHO_ERR_MEMORY;
   if (pole && rule) status = mho_poles(plan, pole, error);

@@ -17,6 +17,7 @@ typedef enum { FORMAT_SCREEN, FORMAT_CSV, FORMAT_JSON } output_format;
 /* Everything that options can say; each verb uses its part. */
 typedef struct {
   const char *verb;
+  const char *line; /* the whole command line, for provenance */
   mho_settings overrides;
   output_format format;
   bool exact, quiet, poles;

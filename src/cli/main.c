@@ -256,6 +256,19 @@ static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
   return EXIT_DONE;
 }
 
+/* The mistakes of one file in the order of its lines. */
+static void sort_causes(mho_error *error)
+{
+  for (int i = 1; i < error->count; i++)
+    for (int k = i; k > 0; k--) {
+      mho_cause *a = &error->cause[k - 1], *b = &error->cause[k], swap = *a;
+      bool later = a->line > b->line || (a->line == b->line && a->column > b->column);
+      if (strcmp(a->file, b->file) || !later) break;
+      *a = *b;
+      *b = swap;
+    }
+}
+
 static void print_causes(const command *cmd, const mho_error *error)
 {
   for (int i = 0; i < error->count; i++) {
@@ -268,18 +281,33 @@ static void print_causes(const command *cmd, const mho_error *error)
     fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
 }
 
+/* The command line as one text, arguments with blanks in quotes. */
+static void join_arguments(int argc, char **argv, mho_buffer *line)
+{
+  mho_buffer_add(line, "mho");
+  for (int i = 0; i < argc; i++) {
+    const char *quote = argv[i][0] == '\0' || strpbrk(argv[i], " \t'\"$*?[](){}<>|&;") ? "'" : "";
+    mho_buffer_print(line, " %s%s%s", quote, argv[i], quote);
+  }
+}
+
 static int run_verb(const verb *v, int argc, char **argv)
 {
   command cmd;
   bool help = false;
+  mho_buffer line = {0};
+  join_arguments(argc, argv, &line); /* before getopt reorders them */
   int code = parse(v, argc, argv, &cmd, &help);
   if (help) print_verb_help(v);
   else if (code == EXIT_DONE) {
     mho_error error;
     mho_error_init(&error);
+    cmd.line = line.data;
     code = v->run(&cmd, &error);
+    sort_causes(&error);
     print_causes(&cmd, &error);
   }
+  mho_buffer_clear(&line);
   return code;
 }
 
@@ -287,9 +315,9 @@ static int run_verb(const verb *v, int argc, char **argv)
 static int close_stdout(int code)
 {
   if (fflush(stdout) == 0 && !ferror(stdout)) return code;
-  if (errno == EPIPE) return code;
+  if (errno == EPIPE || code != EXIT_DONE) return code;
   fprintf(stderr, "mho: the output cannot be written: %s\n", strerror(errno));
-  return code == EXIT_DONE ? EXIT_RUNTIME : code;
+  return EXIT_RUNTIME;
 }
 
 static int dispatch(int argc, char **argv)

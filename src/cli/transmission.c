@@ -33,7 +33,7 @@ static mho_status choose_energies(const command *cmd, const subject *s, const mh
 }
 
 static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan,
-                            mho_table *table, mho_error *error)
+                            mho_table *table, unsigned *warnings, mho_error *error)
 {
   double *relative = NULL, *energy = NULL;
   mho_point *point = NULL;
@@ -49,8 +49,11 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
     for (size_t i = 0; i < count; i++) energy[i] = s->junction.fermi_ev + relative[i];
     status = mho_transmission_sweep(plan, count, energy, point, error);
   }
-  for (size_t i = 0; status == MHO_OK && i < count; i++)
+  for (size_t i = 0; status == MHO_OK && i < count; i++) {
     mho_transmission_row(table, s->molecule.name, relative[i], &point[i]);
+    if (point[i].method == MHO_METHOD_NO_PATH) *warnings |= MHO_WARN_NO_PI_PATH;
+    else if (point[i].node) *warnings |= MHO_WARN_NEAR_NODE;
+  }
   free(relative);
   free(energy);
   free(point);
@@ -74,13 +77,12 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
                                mho_table *table, mho_error *error)
 {
   mho_plan *plan = NULL;
+  unsigned warnings = s->warnings;
   mho_status status = mho_plan_create(&s->junction, &plan, error);
   if (status == MHO_OK)
     status = cmd->poles ? add_poles(s, plan, table, error)
-                        : add_sweep(cmd, s, plan, table, error);
+                        : add_sweep(cmd, s, plan, table, &warnings, error);
   mho_plan_free(plan);
-  unsigned warnings = s->warnings;
-  if (!mho_junction_is_connected(&s->junction)) warnings |= MHO_WARN_NO_PI_PATH;
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
   return status;

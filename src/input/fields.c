@@ -166,3 +166,23 @@ bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
                   mho_join_words(choices, count, list, sizeof list));
   return false;
 }
+
+void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mapping,
+                           mho_settings *settings)
+{
+  size_t count;
+  const char *const *name = mho_settings_names(&count);
+  for (size_t i = 0; i < count; i++) {
+    const mho_yaml_node *node = mho_yaml_find(mapping, name[i]);
+    if (!mho_yaml_is(document, node, MHO_YAML_TEXT, name[i])) continue;
+    char reason[320];
+    mho_status status =
+        mho_settings_read(settings, name[i], node->text, reason, sizeof reason);
+    if (status != MHO_OK) {
+      mho_yaml_fail(document, node, status, name[i], "%s: %s", name[i], reason);
+    } else if (!strcmp(name[i], "fermi")) {
+      settings->fermi.line = node->line;
+      settings->fermi.column = node->column;
+    }
+  }
+}

@@ -42,22 +42,8 @@ static bool is_id(const char *text)
 
 static void read_settings(reader *r)
 {
-  size_t count;
-  const char *const *name = mho_settings_names(&count);
   mho_settings settings = {0};
-  for (size_t i = 0; i < count; i++) {
-    const mho_yaml_node *node = mho_yaml_find(r->yaml.root, name[i]);
-    if (!mho_yaml_is(&r->yaml, node, MHO_YAML_TEXT, name[i])) continue;
-    char reason[320];
-    mho_status status =
-        mho_settings_read(&settings, name[i], node->text, reason, sizeof reason);
-    if (status != MHO_OK)
-      mho_yaml_fail(&r->yaml, node, status, name[i], "%s: %s", name[i], reason);
-    else if (!strcmp(name[i], "fermi")) {
-      settings.fermi.line = node->line;
-      settings.fermi.column = node->column;
-    }
-  }
+  mho_yaml_get_settings(&r->yaml, r->yaml.root, &settings);
   mho_settings_apply(&settings, r->molecule);
   /* Rows are looked up while reading, so this override cannot wait. */
   if (r->overrides && r->overrides->parameters)

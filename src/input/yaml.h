@@ -13,6 +13,7 @@
 #define MHOLECULE_INPUT_YAML_H
 
 #include <mho/quantity.h>
+#include <mho/settings.h>
 #include <mho/status.h>
 
 typedef enum { MHO_YAML_TEXT, MHO_YAML_LIST, MHO_YAML_MAPPING } mho_yaml_kind;
@@ -77,5 +78,10 @@ bool mho_yaml_get_integer(const mho_yaml *document, const mho_yaml_node *node,
 bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
                          const char *field, const char *const *choices,
                          size_t count, size_t *index);
+
+/* Every setting that the mapping has among its keys (see mho_settings_names);
+ * the Fermi level remembers its place. */
+void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mapping,
+                           mho_settings *settings);
 
 #endif

@@ -242,30 +242,32 @@ static void mark_lead(const mho_lead *lead, int sites, bool *mark)
         mark[i] = true;
 }
 
-bool mho_junction_is_connected(const mho_junction *junction)
+mho_status mho_junction_is_connected(const mho_junction *junction, bool *connected,
+                                     mho_error *error)
 {
-  size_t n = (size_t)junction->sites;
-  bool *reached = calloc(2 * n, sizeof(bool));
+  size_t n = (size_t)junction->sites, head = 0, tail = 0;
+  bool *reached = calloc(2 * n, sizeof(bool)), *target = reached + n;
   int *queue = malloc(n * sizeof(int));
-  bool connected = false;
-  if (reached && queue) {
-    bool *target = reached + n;
-    mark_lead(&junction->lead[MHO_LEFT], junction->sites, reached);
-    mark_lead(&junction->lead[MHO_RIGHT], junction->sites, target);
-    size_t head = 0, tail = 0;
-    for (size_t i = 0; i < n; i++)
-      if (reached[i]) queue[tail++] = (int)i;
-    while (head < tail && !connected) {
-      size_t i = (size_t)queue[head++];
-      connected = target[i];
-      for (size_t j = 0; j < n; j++)
-        if (!reached[j] && junction->hamiltonian_ev[i * n + j] != 0.0) {
-          reached[j] = true;
-          queue[tail++] = (int)j;
-        }
-    }
+  *connected = false;
+  if (!reached || !queue) {
+    free(reached);
+    free(queue);
+    return fail_memory(error);
+  }
+  mark_lead(&junction->lead[MHO_LEFT], junction->sites, reached);
+  mark_lead(&junction->lead[MHO_RIGHT], junction->sites, target);
+  for (size_t i = 0; i < n; i++)
+    if (reached[i]) queue[tail++] = (int)i;
+  while (head < tail && !*connected) {
+    size_t i = (size_t)queue[head++];
+    *connected = target[i];
+    for (size_t j = 0; j < n; j++)
+      if (!reached[j] && junction->hamiltonian_ev[i * n + j] != 0.0) {
+        reached[j] = true;
+        queue[tail++] = (int)j;
+      }
   }
   free(reached);
   free(queue);
-  return connected;
+  return MHO_OK;
 }

@@ -17,7 +17,7 @@ static json_t *json_id_list(const mho_molecule *molecule, const int *site, int c
 {
   json_t *list = json_array();
   for (int i = 0; i < count; i++)
-    json_array_append_new(list, json_string(molecule->site[site[i]].id));
+    list = mho_json_append(list, mho_json_text(molecule->site[site[i]].id));
   return list;
 }
 
@@ -26,12 +26,12 @@ static json_t *json_site(const mho_molecule *molecule, int index)
   const mho_site *site = &molecule->site[index];
   const char *row = mho_parameters_row_name(molecule->parameters, site->row);
   json_t *object = json_object();
-  json_object_set_new(object, "id", json_string(site->id));
-  json_object_set_new(object, "element", row ? json_string(row) : json_null());
-  json_object_set_new(object, "onsite_eV", json_real(mho_molecule_onsite_ev(molecule, index)));
-  json_object_set_new(object, "electrons", row ? json_integer(site->electrons) : json_null());
-  json_object_set_new(object, "x", json_null());
-  json_object_set_new(object, "y", json_null());
+  object = mho_json_with(object, "id", mho_json_text(site->id));
+  object = mho_json_with(object, "element", row ? mho_json_text(row) : json_null());
+  object = mho_json_with(object, "onsite_eV", json_real(mho_molecule_onsite_ev(molecule, index)));
+  object = mho_json_with(object, "electrons", row ? json_integer(site->electrons) : json_null());
+  object = mho_json_with(object, "x", json_null());
+  object = mho_json_with(object, "y", json_null());
   return object;
 }
 
@@ -39,11 +39,11 @@ static json_t *json_bond(const mho_molecule *molecule, int index)
 {
   const mho_bond *bond = &molecule->bond[index];
   json_t *object = json_object();
-  json_object_set_new(object, "between", json_id_list(molecule, bond->site, 2));
-  json_object_set_new(object, "hopping_eV",
+  object = mho_json_with(object, "between", json_id_list(molecule, bond->site, 2));
+  object = mho_json_with(object, "hopping_eV",
                       json_real(mho_molecule_hopping_ev(molecule, index)));
-  json_object_set_new(object, "twist_deg", json_real(bond->twist_deg));
-  json_object_set_new(object, "rotatable", json_boolean(bond->rotatable));
+  object = mho_json_with(object, "twist_deg", json_real(bond->twist_deg));
+  object = mho_json_with(object, "rotatable", json_boolean(bond->rotatable));
   return object;
 }
 
@@ -56,13 +56,13 @@ static json_t *json_contacts(const mho_molecule *molecule)
     bool one = contact->channels == MHO_CHANNELS_ONE;
     json_t *object = json_object(), *amplitude = json_array();
     for (int i = 0; i < contact->count; i++)
-      json_array_append_new(amplitude, json_real(one ? contact->amplitude[i] : 1.0));
-    json_object_set_new(object, "sites", json_id_list(molecule, contact->site, contact->count));
-    json_object_set_new(object, "coupling_eV", json_real(contact->coupling_ev));
-    json_object_set_new(object, "shift_eV", json_real(contact->shift_ev));
-    json_object_set_new(object, "channels", json_string(one ? "one" : "independent"));
-    json_object_set_new(object, "amplitude", amplitude);
-    json_object_set_new(contacts, side_name[side], object);
+      amplitude = mho_json_append(amplitude, json_real(one ? contact->amplitude[i] : 1.0));
+    object = mho_json_with(object, "sites", json_id_list(molecule, contact->site, contact->count));
+    object = mho_json_with(object, "coupling_eV", json_real(contact->coupling_ev));
+    object = mho_json_with(object, "shift_eV", json_real(contact->shift_ev));
+    object = mho_json_with(object, "channels", mho_json_text(one ? "one" : "independent"));
+    object = mho_json_with(object, "amplitude", amplitude);
+    contacts = mho_json_with(contacts, side_name[side], object);
   }
   return contacts;
 }
@@ -78,38 +78,44 @@ static json_t *json_molecule(const mho_checked *checked)
   const mho_junction *junction = checked->junction;
   json_t *sites = json_array(), *bonds = json_array(), *levels = json_array();
   for (int i = 0; i < molecule->site_count; i++)
-    json_array_append_new(sites, json_site(molecule, i));
+    sites = mho_json_append(sites, json_site(molecule, i));
   for (int b = 0; b < molecule->bond_count; b++)
-    json_array_append_new(bonds, json_bond(molecule, b));
+    bonds = mho_json_append(bonds, json_bond(molecule, b));
   for (int k = 0; k < junction->sites; k++)
-    json_array_append_new(levels, json_real(junction->level_ev[k]));
+    levels = mho_json_append(levels, json_real(junction->level_ev[k]));
   json_t *object = json_object();
-  json_object_set_new(object, "name", json_string(molecule->name));
-  json_object_set_new(object, "parameters",
-                      json_string(mho_parameters_name(molecule->parameters)));
-  json_object_set_new(object, "beta_eV", json_real(molecule->beta_ev));
-  json_object_set_new(object, "temperature_K", json_real(molecule->temperature_k));
-  json_object_set_new(object, "sites", sites);
-  json_object_set_new(object, "bonds", bonds);
-  json_object_set_new(object, "electrons", json_integer(molecule->electrons));
-  json_object_set_new(object, "charge", json_integer(molecule->charge));
-  json_object_set_new(object, "levels_eV", levels);
-  json_object_set_new(object, "homo_eV", json_optional(junction->has_homo, junction->homo_ev));
-  json_object_set_new(object, "lumo_eV", json_optional(junction->has_lumo, junction->lumo_ev));
-  json_object_set_new(object, "fermi_eV", json_real(junction->fermi_ev));
-  json_object_set_new(object, "linkers", json_array());
-  json_object_set_new(object, "contacts", json_contacts(molecule));
-  json_object_set_new(object, "warnings", mho_json_warning_words(checked->warnings));
+  object = mho_json_with(object, "name", mho_json_text(molecule->name));
+  object = mho_json_with(object, "parameters",
+                      mho_json_text(mho_parameters_name(molecule->parameters)));
+  object = mho_json_with(object, "beta_eV", json_real(molecule->beta_ev));
+  object = mho_json_with(object, "temperature_K", json_real(molecule->temperature_k));
+  object = mho_json_with(object, "sites", sites);
+  object = mho_json_with(object, "bonds", bonds);
+  object = mho_json_with(object, "electrons", json_integer(molecule->electrons));
+  object = mho_json_with(object, "charge", json_integer(molecule->charge));
+  object = mho_json_with(object, "levels_eV", levels);
+  object = mho_json_with(object, "homo_eV", json_optional(junction->has_homo, junction->homo_ev));
+  object = mho_json_with(object, "lumo_eV", json_optional(junction->has_lumo, junction->lumo_ev));
+  object = mho_json_with(object, "fermi_eV", json_real(junction->fermi_ev));
+  object = mho_json_with(object, "linkers", json_array());
+  object = mho_json_with(object, "contacts", json_contacts(molecule));
+  object = mho_json_with(object, "warnings", mho_json_warning_words(checked->warnings));
   return object;
+}
+
+json_t *mho_json_molecules(const mho_checked *checked, size_t count)
+{
+  json_t *list = json_array();
+  for (size_t i = 0; i < count; i++) list = mho_json_append(list, json_molecule(&checked[i]));
+  return list;
 }
 
 mho_status mho_write_check_json(const mho_checked *checked, size_t count, mho_buffer *buffer,
                                 mho_error *error)
 {
-  json_t *list = json_array(), *object = json_object();
-  for (size_t i = 0; i < count; i++) json_array_append_new(list, json_molecule(&checked[i]));
-  json_object_set_new(object, "schema", json_string(MHO_JSON_SCHEMA));
-  json_object_set_new(object, "molecules", list);
+  json_t *object = json_object();
+  object = mho_json_with(object, "schema", mho_json_text(MHO_JSON_SCHEMA));
+  object = mho_json_with(object, "molecules", mho_json_molecules(checked, count));
   return mho_json_write(object, buffer, error);
 }
 
@@ -176,12 +182,16 @@ static void write_sites(const mho_molecule *molecule, int digits, mho_buffer *bu
   }
 }
 
+static const char *plural(int count) { return count == 1 ? "" : "s"; }
+
 static void write_molecule(const mho_checked *checked, int digits, mho_buffer *buffer)
 {
   const mho_molecule *molecule = checked->molecule;
   const mho_junction *junction = checked->junction;
-  mho_buffer_print(buffer, "%s\n  %d pi sites, %d bonds, %d electrons", molecule->name,
-                   molecule->site_count, molecule->bond_count, molecule->electrons);
+  mho_buffer_print(buffer, "%s\n  %d pi site%s, %d bond%s, %d electron%s", molecule->name,
+                   molecule->site_count, plural(molecule->site_count), molecule->bond_count,
+                   plural(molecule->bond_count), molecule->electrons,
+                   plural(molecule->electrons));
   if (molecule->charge) mho_buffer_print(buffer, ", charge %+d", molecule->charge);
   mho_buffer_add(buffer, "; beta ");
   mho_buffer_number(buffer, digits, molecule->beta_ev);

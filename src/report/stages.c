@@ -13,6 +13,7 @@ static void add_warning_words(mho_table *table, unsigned warnings)
 {
   mho_buffer words = {0};
   mho_write_warning_words(&words, warnings);
+  if (table && words.failed) table->failed = MHO_ERR_MEMORY;
   mho_table_text(table, words.data);
   mho_buffer_clear(&words);
 }
@@ -76,6 +77,29 @@ void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
   mho_table_number(table, pole->width_ev);
 }
 
+mho_table *mho_compare_table(mho_output *output)
+{
+  static const char *const columns[] = {
+      "molecule", "computed_log10_G0", "computed_low", "computed_high", "measured_log10_G0",
+      "measured_low", "measured_high", "ratio_computed", "ratio_measured",
+      "deviation_decades"};
+  return mho_output_table(output, "compare", columns, COUNT(columns));
+}
+
+void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *c)
+{
+  mho_table_text(table, molecule);
+  mho_table_optional(table, c->has_computed, c->computed_log10_g0);
+  mho_table_optional(table, c->has_low, c->computed_low);
+  mho_table_optional(table, c->has_high, c->computed_high);
+  mho_table_optional(table, c->has_measured, c->measured_log10_g0);
+  mho_table_optional(table, c->has_spread, c->measured_low);
+  mho_table_optional(table, c->has_spread, c->measured_high);
+  mho_table_optional(table, c->has_ratio, c->ratio_computed);
+  mho_table_optional(table, c->has_ratio, c->ratio_measured);
+  mho_table_optional(table, c->has_ratio, c->deviation_decades);
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {
@@ -86,9 +110,11 @@ void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
   mho_number_write(left, sizeof left, 6, molecule->contact[MHO_LEFT].coupling_ev);
   mho_number_write(right, sizeof right, 6, molecule->contact[MHO_RIGHT].coupling_ev);
   mho_fermi_write(&molecule->fermi, fermi, sizeof fermi);
+  bool relative = molecule->fermi.kind != MHO_FERMI_ENERGY;
   mho_output_note(output,
-                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s "
-                  "(%s eV above alpha), %s K",
+                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s%s%s%s, "
+                  "%s K",
                   molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
-                  fermi, at, temperature);
+                  fermi, relative ? " = " : "", relative ? at : "", relative ? " eV" : "",
+                  temperature);
 }

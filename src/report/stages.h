@@ -6,6 +6,7 @@
 #ifndef MHOLECULE_REPORT_STAGES_H
 #define MHOLECULE_REPORT_STAGES_H
 
+#include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/molecule.h>
 #include <mho/transmission.h>
@@ -24,6 +25,9 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
 mho_table *mho_poles_table(mho_output *output);
 void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_pole *pole);
+
+mho_table *mho_compare_table(mho_output *output);
+void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

@@ -52,41 +52,69 @@ mho_status mho_write_csv(const mho_table *table, int digits, mho_buffer *buffer,
   return mho_buffer_check(buffer, "report", error);
 }
 
+json_t *mho_json_text(const char *text)
+{
+  size_t size = strlen(text);
+  if (mho_utf8_prefix(text, size) == size) return json_string(text);
+  char *copy = mho_copy_text(text);
+  if (!copy) return NULL;
+  for (size_t i = 0; (i += mho_utf8_prefix(copy + i, size - i)) < size;) copy[i] = '?';
+  json_t *string = json_string(copy);
+  free(copy);
+  return string;
+}
+
+json_t *mho_json_with(json_t *object, const char *key, json_t *value)
+{
+  if (object && value && json_object_set_new(object, key, value) == 0) return object;
+  if (!object) json_decref(value); /* jansson releases it otherwise */
+  json_decref(object);
+  return NULL;
+}
+
+json_t *mho_json_append(json_t *list, json_t *value)
+{
+  if (list && value && json_array_append_new(list, value) == 0) return list;
+  if (!list) json_decref(value);
+  json_decref(list);
+  return NULL;
+}
+
 static json_t *json_cell(const mho_cell *cell)
 {
   switch (cell->kind) {
   case MHO_CELL_NUMBER: return json_real(cell->number);
   case MHO_CELL_INTEGER: return json_integer(cell->integer);
-  case MHO_CELL_TEXT: return json_string(cell->text);
+  case MHO_CELL_TEXT: return mho_json_text(cell->text);
   case MHO_CELL_NODE: return json_real(0.0);
   case MHO_CELL_EMPTY: break;
   }
   return json_null();
 }
 
+static json_t *json_row(const mho_table *table, size_t first)
+{
+  json_t *row = json_array();
+  for (size_t c = 0; c < table->columns; c++)
+    row = mho_json_append(row, json_cell(&table->cell[first + c]));
+  return row;
+}
+
 static json_t *json_table(const mho_table *table)
 {
-  json_t *columns = json_array(), *rows = json_array(), *row = NULL;
+  json_t *columns = json_array(), *rows = json_array();
   for (size_t c = 0; c < table->columns; c++)
-    json_array_append_new(columns, json_string(table->column[c]));
-  for (size_t i = 0; i < table->cells; i++) {
-    if (i % table->columns == 0) {
-      row = json_array();
-      json_array_append_new(rows, row);
-    }
-    json_array_append_new(row, json_cell(&table->cell[i]));
-  }
-  json_t *object = json_object();
-  json_object_set_new(object, "columns", columns);
-  json_object_set_new(object, "rows", rows);
-  return object;
+    columns = mho_json_append(columns, mho_json_text(table->column[c]));
+  for (size_t i = 0; i + table->columns <= table->cells; i += table->columns)
+    rows = mho_json_append(rows, json_row(table, i));
+  return mho_json_with(mho_json_with(json_object(), "columns", columns), "rows", rows);
 }
 
 json_t *mho_json_tables(const mho_output *output)
 {
   json_t *tables = json_object();
   for (size_t i = 0; i < output->tables; i++)
-    json_object_set_new(tables, output->table[i].name, json_table(&output->table[i]));
+    tables = mho_json_with(tables, output->table[i].name, json_table(&output->table[i]));
   return tables;
 }
 
@@ -94,7 +122,7 @@ json_t *mho_json_warning_words(unsigned warnings)
 {
   json_t *words = json_array();
   for (int i = 0; i < MHO_WARNING_COUNT; i++)
-    if (warnings & (1u << i)) json_array_append_new(words, json_string(mho_warning_word(i)));
+    if (warnings & (1u << i)) words = mho_json_append(words, mho_json_text(mho_warning_word(i)));
   return words;
 }
 
@@ -105,10 +133,10 @@ json_t *mho_json_warnings(const mho_output *output)
     for (int k = 0; k < MHO_WARNING_COUNT; k++) {
       if (!(output->warning[i].warnings & (1u << k))) continue;
       json_t *item = json_object();
-      json_object_set_new(item, "molecule", json_string(output->warning[i].molecule));
-      json_object_set_new(item, "warning", json_string(mho_warning_word(k)));
-      json_object_set_new(item, "meaning", json_string(mho_warning_sentence(k)));
-      json_array_append_new(list, item);
+      item = mho_json_with(item, "molecule", mho_json_text(output->warning[i].molecule));
+      item = mho_json_with(item, "warning", mho_json_text(mho_warning_word(k)));
+      item = mho_json_with(item, "meaning", mho_json_text(mho_warning_sentence(k)));
+      list = mho_json_append(list, item);
     }
   return list;
 }
@@ -117,7 +145,7 @@ json_t *mho_json_notes(const mho_output *output)
 {
   json_t *notes = json_array();
   for (size_t i = 0; i < output->notes; i++)
-    json_array_append_new(notes, json_string(output->note[i]));
+    notes = mho_json_append(notes, mho_json_text(output->note[i]));
   return notes;
 }
 
@@ -136,10 +164,10 @@ mho_status mho_json_write(json_t *object, mho_buffer *buffer, mho_error *error)
 mho_status mho_write_json(const mho_output *output, mho_buffer *buffer, mho_error *error)
 {
   json_t *object = json_object();
-  json_object_set_new(object, "schema", json_string(MHO_JSON_SCHEMA));
-  json_object_set_new(object, "tables", mho_json_tables(output));
-  json_object_set_new(object, "warnings", mho_json_warnings(output));
-  json_object_set_new(object, "notes", mho_json_notes(output));
+  object = mho_json_with(object, "schema", mho_json_text(MHO_JSON_SCHEMA));
+  object = mho_json_with(object, "tables", mho_json_tables(output));
+  object = mho_json_with(object, "warnings", mho_json_warnings(output));
+  object = mho_json_with(object, "notes", mho_json_notes(output));
   return mho_json_write(object, buffer, error);
 }
 
@@ -160,6 +188,7 @@ static char *screen_text(const mho_cell *cell, int digits)
   else if (cell->kind == MHO_CELL_TEXT) mho_buffer_add(&buffer, cell->text);
   else write_csv_cell(&buffer, cell, digits);
   if (!buffer.data) mho_buffer_add(&buffer, "");
+  if (buffer.failed) mho_buffer_clear(&buffer);
   return buffer.data;
 }
 

@@ -1,7 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * Poles: eigenvalues of H + Sigma, complex symmetric, so that the general
- * eigensolver is used.  A state that no contact sees has width 0.
+ * eigensolver is used.  A state that no contact sees has width 0; so has one
+ * whose width is below the rounding of that solver.
  */
 #include <math.h>
 #include <stdlib.h>
@@ -45,8 +46,11 @@ mho_status mho_poles(const mho_plan *plan, mho_pole *pole, mho_error *error)
     effective_hamiltonian(plan, matrix);
     status = mho_eigenvalues_complex(plan->sites, matrix, value, error);
   }
-  for (size_t k = 0; status == MHO_OK && k < n; k++)
-    pole[k] = (mho_pole){creal(value[k]), fmax(0.0, -2.0 * cimag(value[k]))};
+  double rounding = 4.0 * (double)n * DBL_EPSILON * plan->norm_ev;
+  for (size_t k = 0; status == MHO_OK && k < n; k++) {
+    double width = -2.0 * cimag(value[k]);
+    pole[k] = (mho_pole){creal(value[k]), width > rounding ? width : 0.0};
+  }
   if (status == MHO_OK) qsort(pole, n, sizeof *pole, compare_poles);
   free(matrix);
   free(value);

@@ -19,7 +19,8 @@ of H), flank, node (nearest to a zero of G_lr), pivot (a leading minor of
 E - H vanishes), far, plain, or decoupled (the limit described above).
 T is text of 25 digits; "0" where the limit is exactly zero.
 kappa = sum |p dlnT/dp| over the non-zero H_ij (i <= j, changed with H_ji), the
-couplings and E; null where T is zero.  At `decoupled` it is that of the limit.
+couplings and E; null where T is zero, 0 below 1e-20 (at T = 1).  At
+`decoupled` it is that of the limit.
 """
 import json
 import os

@@ -1,0 +1,38 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Figures as gnuplot scripts, and gnuplot itself, which is run if it is there.
+ * Our style: one neutral ink for axes, four inks of different lightness with a
+ * dash pattern each, so that a figure reads in grey print and without colour
+ * vision; computed values are filled circles, measured ones open diamonds.
+ */
+#ifndef MHOLECULE_REPORT_FIGURE_H
+#define MHOLECULE_REPORT_FIGURE_H
+
+#include <mho/compare.h>
+#include <mho/transmission.h>
+
+#include "base/buffer.h"
+
+enum { MHO_CURVES_MAX = 4 };
+
+typedef struct {
+  const char *name;
+  size_t count;
+  const double *energy_ev; /* above the Fermi level */
+  const mho_point *point;
+  bool has_measured;
+  double measured_log10_g0, measured_low, measured_high;
+} mho_curve;
+
+/* Scripts that write an SVG to standard output. */
+void mho_figure_transmission(mho_buffer *script, const mho_curve *curve, int curves,
+                             double window_ev);
+void mho_figure_comparison(mho_buffer *script, const char *const *molecule, const mho_comparison *comparison,
+                           int count);
+
+/* Runs gnuplot on a script file, its output into svg_path.  *available is false, and the status MHO_OK,
+ * where there is no gnuplot.  Errors: MHO_ERR_WRITE. */
+MHO_MUST_USE mho_status mho_figure_render(const char *script_path, const char *svg_path,
+                                          bool *available, mho_error *error);
+
+#endif

@@ -1,0 +1,236 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "report/html.h"
+
+#include <mho/version.h>
+#include <mho/warning.h>
+
+#include <string.h>
+
+enum { REPORT_DIGITS = 3 };
+
+const char *const *mho_limits(size_t *count)
+{
+  static const char *const limits[] = {
+      "Only the pi system is in the model: no sigma paths, no direct coupling through space.",
+      "One-electron levels: no correlation and no charging of the molecule by the current.",
+      "The Fermi level of a real junction is not known. It is assumed, or fitted; every "
+      "prediction is therefore also given over an alignment window around it.",
+      "Trends and ratios come before absolute values: published conductances of one molecule "
+      "differ by about 3 between groups for amines and by more than 10 for thiols and pyridyls "
+      "(common practice).",
+      "At a node of the pi system other paths carry the current: the model then predicts that "
+      "the conductance is low, not how low.",
+      "These are model predictions and no statement about the handling or safety of a compound: "
+      "synthesis and measurement follow local rules and licensed practice."};
+  *count = sizeof limits / sizeof *limits;
+  return limits;
+}
+
+static const char style[] =
+    "body{font:16px/1.5 'DejaVu Sans',Verdana,sans-serif;color:#1c2028;background:#fff;"
+    "max-width:60rem;margin:2rem auto;padding:0 1rem}"
+    "h1{font-size:1.5rem;line-height:1.3;border-left:.4rem solid #14213d;padding-left:.8rem}"
+    "h2{font-size:1.15rem;margin:2.2rem 0 .6rem}"
+    ".of{color:#5a6270;margin:0 0 .2rem}"
+    "ul.answer{list-style:none;padding:0}"
+    "ul.answer li{background:#eef0f3;margin:.4rem 0;padding:.5rem .8rem}"
+    "div.wide{overflow-x:auto}"
+    "table{border-collapse:collapse;font-size:.86rem;width:100%}"
+    "th,td{padding:.35rem .6rem;text-align:right;border-bottom:1px solid #d8dce2;"
+    "vertical-align:top}"
+    "th{border-bottom:2px solid #5a6270;font-weight:600}"
+    "td.number{white-space:nowrap}"
+    "th:first-child,td:first-child,td.text{text-align:left}"
+    "td.node{color:#5a6270;font-style:italic}"
+    "figure{margin:1rem 0}figure img{width:100%;height:auto}"
+    "figcaption{color:#5a6270;font-size:.88rem}"
+    "dt{font-weight:600;margin-top:.6rem}dd{margin:0 0 0 1rem}"
+    "footer{color:#5a6270;font-size:.85rem;margin-top:3rem;border-top:1px solid #d8dce2}"
+    "@media print{body{margin:0;max-width:none;font-size:11pt}h2{break-after:avoid}"
+    "figure,tr{break-inside:avoid}}";
+
+/* Columns as people write them. */
+static const struct {
+  const char *column, *heading;
+} headings[] = {
+    {"molecule", "molecule"},
+    {"fermi_eV", "E<sub>F</sub> (eV)"},
+    {"transmission", "T(E<sub>F</sub>)"},
+    {"conductance_G0", "G (G<sub>0</sub>)"},
+    {"conductance_S", "G (S)"},
+    {"log10_G0", "log<sub>10</sub> G/G<sub>0</sub>"},
+    {"window_low_log10_G0", "window 5 %"},
+    {"window_high_log10_G0", "window 95 %"},
+    {"computed_log10_G0", "computed log<sub>10</sub>"},
+    {"computed_low", "window 5 %"},
+    {"computed_high", "window 95 %"},
+    {"measured_log10_G0", "measured log<sub>10</sub>"},
+    {"measured_low", "low"},
+    {"measured_high", "high"},
+    {"ratio_computed", "ratio computed"},
+    {"ratio_measured", "ratio measured"},
+    {"deviation_decades", "deviation (decades)"},
+    {"warnings", "warnings"},
+};
+
+static const char *heading_of(const char *column)
+{
+  for (size_t i = 0; i < sizeof headings / sizeof *headings; i++)
+    if (!strcmp(headings[i].column, column)) return headings[i].heading;
+  return column;
+}
+
+static void write_cell(const mho_cell *cell, mho_buffer *buffer)
+{
+  switch (cell->kind) {
+  case MHO_CELL_EMPTY: mho_buffer_add(buffer, "<td>–</td>"); return;
+  case MHO_CELL_NODE: mho_buffer_add(buffer, "<td class=\"node\">node: no prediction</td>"); return;
+  case MHO_CELL_INTEGER: mho_buffer_print(buffer, "<td>%ld</td>", cell->integer); return;
+  case MHO_CELL_NUMBER:
+    mho_buffer_add(buffer, "<td class=\"number\">");
+    mho_buffer_number(buffer, REPORT_DIGITS, cell->number);
+    mho_buffer_add(buffer, "</td>");
+    return;
+  case MHO_CELL_TEXT:
+    mho_buffer_add(buffer, "<td class=\"text\">");
+    mho_buffer_escape(buffer, cell->text);
+    mho_buffer_add(buffer, "</td>");
+    return;
+  }
+}
+
+static void write_table(const mho_output *output, const char *name, mho_buffer *buffer)
+{
+  const mho_table *table = NULL;
+  for (size_t i = 0; i < output->tables; i++)
+    if (!strcmp(output->table[i].name, name)) table = &output->table[i];
+  if (!table) return;
+  mho_buffer_add(buffer, "<div class=\"wide\"><table><thead><tr>");
+  for (size_t c = 0; c < table->columns; c++)
+    mho_buffer_print(buffer, "<th>%s</th>", heading_of(table->column[c]));
+  mho_buffer_add(buffer, "</tr></thead><tbody>\n");
+  for (size_t i = 0; i < table->cells; i++) {
+    if (i % table->columns == 0) mho_buffer_add(buffer, "<tr>");
+    write_cell(&table->cell[i], buffer);
+    if ((i + 1) % table->columns == 0) mho_buffer_add(buffer, "</tr>\n");
+  }
+  mho_buffer_add(buffer, "</tbody></table></div>\n");
+}
+
+static void write_base64(const mho_buffer *data, mho_buffer *buffer)
+{
+  static const char digit[] = "ABCDEFGHIJKLMNOPQRSTUVWXYZabcdefghijklmnopqrstuvwxyz0123456789+/";
+  const unsigned char *s = (const unsigned char *)data->data;
+  for (size_t i = 0; i < data->size; i += 3) {
+    size_t left = data->size - i;
+    unsigned long bits = (unsigned long)s[i] << 16 | (left > 1 ? (unsigned long)s[i + 1] << 8 : 0) |
+                         (left > 2 ? s[i + 2] : 0);
+    char out[4] = {digit[bits >> 18 & 63], digit[bits >> 12 & 63],
+                   left > 1 ? digit[bits >> 6 & 63] : '=', left > 2 ? digit[bits & 63] : '='};
+    mho_buffer_add_bytes(buffer, out, 4);
+  }
+}
+
+static void write_figures(const mho_report *report, const char *section, mho_buffer *buffer)
+{
+  for (size_t i = 0; i < report->figures; i++) {
+    const mho_figure *figure = &report->figure[i];
+    if (strcmp(figure->section, section)) continue;
+    mho_buffer_add(buffer, "<figure><img alt=\"");
+    mho_buffer_escape(buffer, figure->caption);
+    mho_buffer_add(buffer, "\" src=\"data:image/svg+xml;base64,");
+    write_base64(&figure->svg, buffer);
+    mho_buffer_add(buffer, "\"><figcaption>");
+    mho_buffer_escape(buffer, figure->caption);
+    mho_buffer_print(buffer, " <code>%s</code></figcaption></figure>\n", figure->file);
+  }
+}
+
+static void begin_section(mho_buffer *buffer, const char *id, const char *title)
+{
+  mho_buffer_print(buffer, "<section id=\"%s\"><h2>%s</h2>\n", id, title);
+}
+
+static void write_warnings(const mho_report *report, mho_buffer *buffer)
+{
+  const mho_output *output = report->output;
+  begin_section(buffer, "warnings", "Warnings");
+  if (output->warnings == 0) mho_buffer_add(buffer, "<p>None.</p>\n");
+  else mho_buffer_add(buffer, "<dl>\n");
+  for (size_t i = 0; i < output->warnings; i++) {
+    mho_buffer_add(buffer, "<dt>");
+    mho_buffer_escape(buffer, output->warning[i].molecule);
+    mho_buffer_add(buffer, "</dt>\n");
+    for (int k = 0; k < MHO_WARNING_COUNT; k++)
+      if (output->warning[i].warnings & (1u << k))
+        mho_buffer_print(buffer, "<dd><strong>%s</strong>: %s</dd>\n", mho_warning_word(k),
+                         mho_warning_sentence(k));
+  }
+  mho_buffer_add(buffer, output->warnings ? "</dl></section>\n" : "</section>\n");
+}
+
+static void write_list(mho_buffer *buffer, const char *class_name, char *const *text,
+                       size_t count)
+{
+  mho_buffer_print(buffer, "<ul%s%s%s>\n", class_name ? " class=\"" : "",
+                   class_name ? class_name : "", class_name ? "\"" : "");
+  for (size_t i = 0; i < count; i++) {
+    mho_buffer_add(buffer, "<li>");
+    mho_buffer_escape(buffer, text[i]);
+    mho_buffer_add(buffer, "</li>\n");
+  }
+  mho_buffer_add(buffer, "</ul>\n");
+}
+
+static void write_results(const mho_report *report, mho_buffer *buffer)
+{
+  bool compared = false;
+  for (size_t i = 0; i < report->output->tables; i++)
+    compared |= !strcmp(report->output->table[i].name, "compare");
+  if (compared) {
+    begin_section(buffer, "comparison", "Measured against computed");
+    write_figures(report, "comparison", buffer);
+    mho_buffer_add(buffer,
+                   "<p>Ratios are to the reference molecule; the deviation is the logarithm of "
+                   "computed over measured ratio.</p>\n");
+    write_table(report->output, "compare", buffer);
+    mho_buffer_add(buffer, "</section>\n");
+  }
+  begin_section(buffer, "predictions", "Predicted conductance");
+  write_table(report->output, "conductance", buffer);
+  mho_buffer_add(buffer, "</section>\n");
+  begin_section(buffer, "transmission", "Transmission");
+  if (report->without_gnuplot)
+    mho_buffer_add(buffer, "<p>Figures are missing because gnuplot was not found; the curves are "
+                           "in <code>transmission.csv</code>.</p>\n");
+  write_figures(report, "transmission", buffer);
+  mho_buffer_add(buffer, "</section>\n");
+}
+
+mho_status mho_write_html(const mho_report *report, mho_buffer *buffer, mho_error *error)
+{
+  mho_buffer_add(buffer, "<!DOCTYPE html>\n<html lang=\"en\"><head><meta charset=\"utf-8\">"
+                         "<meta name=\"viewport\" content=\"width=device-width\"><title>");
+  mho_buffer_escape(buffer, report->title);
+  mho_buffer_print(buffer, "</title><style>%s</style></head><body>\n", style);
+  mho_buffer_add(buffer, "<section id=\"question\"><p class=\"of\">The question</p><h1>");
+  mho_buffer_escape(buffer, report->title);
+  mho_buffer_add(buffer, "</h1>\n");
+  if (report->answers) write_list(buffer, "answer", report->answer, report->answers);
+  mho_buffer_add(buffer, "</section>\n");
+  write_results(report, buffer);
+  write_warnings(report, buffer);
+  begin_section(buffer, "assumptions", "What was assumed");
+  write_list(buffer, NULL, report->output->note, report->output->notes);
+  mho_buffer_add(buffer, "</section>\n");
+  begin_section(buffer, "limits", "What the model does not know");
+  size_t count;
+  const char *const *limits = mho_limits(&count);
+  mho_buffer_add(buffer, "<ul>\n");
+  for (size_t i = 0; i < count; i++) mho_buffer_print(buffer, "<li>%s</li>\n", limits[i]);
+  mho_buffer_print(buffer, "</ul></section>\n<footer><p>mholecule %s. All numbers of this page "
+                           "stand in results.json and the CSV files beside it.</p></footer>\n"
+                           "</body></html>\n",
+                   mho_version());
+  return mho_buffer_check(buffer, "report", error);
+}

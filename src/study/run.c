@@ -1,0 +1,468 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Runs a study: every molecule through the stages, the results as tables,
+ * figures and a report, and all of it into one folder.
+ */
+#include <mho/study.h>
+#include <mho/warning.h>
+
+#include <math.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "base/text.h"
+#include "report/figure.h"
+#include "report/html.h"
+#include "report/json.h"
+#include "report/stages.h"
+#include "study/folder.h"
+#include "study/provenance.h"
+#include "study/study.h"
+
+enum { EVEN_POINTS = 401, EXACT_DIGITS = 17, TABLE_DIGITS = 6, ANSWERS_MAX = 8, SCREEN_NAME = 80 };
+
+/* What was computed for one molecule. */
+typedef struct {
+  mho_junction junction;
+  unsigned warnings;
+  size_t count;
+  double *energy_ev; /* above the Fermi level */
+  mho_point *point;
+} outcome;
+
+typedef struct {
+  const mho_study *study;
+  const mho_run_options *options;
+  mho_folder folder;
+  outcome *outcome;
+  mho_conductance *conductance;
+  mho_comparison *comparison;
+  mho_agreement agreement;
+  mho_output output;
+  char *answer[ANSWERS_MAX];
+  size_t answers;
+  mho_figure *figure;
+  size_t figures;
+  bool without_gnuplot;
+  int steps_done, steps;
+} run;
+
+static mho_status fail_memory(mho_error *error)
+{
+  return mho_fail(error, MHO_ERR_MEMORY, "study", NULL, "out of memory");
+}
+
+/* Tells the progress; MHO_ERR_CANCELLED where the run was interrupted. */
+static mho_status step(run *r, const char *what, mho_error *error)
+{
+  const mho_run_options *o = r->options;
+  if (o->cancel && *o->cancel)
+    return mho_fail(error, MHO_ERR_CANCELLED, "study", NULL,
+                    "interrupted; nothing was written");
+  if (o->progress) o->progress(r->steps_done, r->steps, what, o->user);
+  r->steps_done++;
+  return MHO_OK;
+}
+
+static mho_status choose_energies(const mho_study *s, const mho_plan *plan, double fermi,
+                                  outcome *o, mho_error *error)
+{
+  if (s->samples == 0) {
+    mho_status status =
+        mho_energy_grid(plan, fermi + s->energy_low_ev, fermi + s->energy_high_ev, EVEN_POINTS,
+                        &o->energy_ev, &o->count, error);
+    for (size_t i = 0; status == MHO_OK && i < o->count; i++) o->energy_ev[i] -= fermi;
+    return status;
+  }
+  o->count = (size_t)s->samples;
+  o->energy_ev = malloc(o->count * sizeof *o->energy_ev);
+  if (!o->energy_ev) return fail_memory(error);
+  double width = s->energy_high_ev - s->energy_low_ev;
+  for (size_t i = 0; i < o->count; i++)
+    o->energy_ev[i] = s->energy_low_ev + width * (double)i / (double)(o->count - 1);
+  return MHO_OK;
+}
+
+static mho_status sweep(const mho_study *s, const mho_plan *plan, outcome *o, mho_error *error)
+{
+  double fermi = o->junction.fermi_ev;
+  mho_status status = choose_energies(s, plan, fermi, o, error);
+  if (status != MHO_OK) return status;
+  double *absolute = malloc(o->count * sizeof *absolute);
+  o->point = malloc(o->count * sizeof *o->point);
+  if (!absolute || !o->point) status = fail_memory(error);
+  for (size_t i = 0; status == MHO_OK && i < o->count; i++) absolute[i] = fermi + o->energy_ev[i];
+  if (status == MHO_OK)
+    status = mho_transmission_sweep(plan, o->count, absolute, o->point, error);
+  free(absolute);
+  return status;
+}
+
+static mho_status compute_molecule(run *r, int index, mho_error *error)
+{
+  const mho_study *s = r->study;
+  const mho_molecule *molecule = &s->molecule[index];
+  outcome *o = &r->outcome[index];
+  mho_conductance *g = &r->conductance[index];
+  mho_conductance_options options = {.window_ev = s->window_ev};
+  mho_plan *plan = NULL;
+  mho_status status = step(r, molecule->name, error);
+  if (status == MHO_OK) status = mho_plan_create(&o->junction, &plan, error);
+  if (status == MHO_OK)
+    status = mho_conductance_compute(plan, o->junction.fermi_ev, o->junction.temperature_k,
+                                     &options, g, error);
+  if (status == MHO_OK) status = sweep(s, plan, o, error);
+  mho_plan_free(plan);
+  if (status == MHO_OK) o->warnings = g->warnings | mho_molecule_warnings(molecule, &o->junction);
+  return status;
+}
+
+/* Every junction is built before any work, so that all mistakes come at once. */
+static mho_status build_junctions(run *r, mho_error *error)
+{
+  mho_status result = MHO_OK;
+  for (int i = 0; i < r->study->molecule_count; i++) {
+    const mho_molecule *molecule = &r->study->molecule[i];
+    mho_status status = mho_junction_build(molecule, &r->outcome[i].junction, error);
+    if (status == MHO_OK)
+      status = mho_junction_require_contacts(&r->outcome[i].junction, molecule, error);
+    if (result == MHO_OK) result = status;
+  }
+  return result;
+}
+
+static void fill_tables(run *r)
+{
+  const mho_study *s = r->study;
+  mho_table *table = mho_conductance_table(&r->output);
+  for (int i = 0; i < s->molecule_count; i++) {
+    mho_conductance_row(table, s->molecule[i].name, &r->conductance[i], r->outcome[i].warnings);
+    mho_output_warn(&r->output, s->molecule[i].name, r->outcome[i].warnings);
+    mho_assumption_note(&r->output, &s->molecule[i], &r->outcome[i].junction);
+  }
+  table = mho_transmission_table(&r->output);
+  for (int i = 0; i < s->molecule_count; i++)
+    for (size_t k = 0; k < r->outcome[i].count; k++)
+      mho_transmission_row(table, s->molecule[i].name, r->outcome[i].energy_ev[k],
+                           &r->outcome[i].point[k]);
+  mho_output_note(&r->output,
+                  "conductance is the thermal value at the Fermi level; the window values are its "
+                  "5 %% and 95 %% quantiles over +-%g eV around it",
+                  s->window_ev);
+  if (!s->compare) return;
+  table = mho_compare_table(&r->output);
+  for (int i = 0; i < s->molecule_count; i++)
+    if (r->comparison[i].has_measured)
+      mho_compare_row(table, s->molecule[i].name, &r->comparison[i]);
+}
+
+static void say(run *r, char *sentence)
+{
+  if (!sentence) r->output.failed = true;
+  else if (r->answers < ANSWERS_MAX) r->answer[r->answers++] = sentence;
+  else free(sentence);
+}
+
+static void answer_comparison(run *r)
+{
+  const mho_agreement *a = &r->agreement;
+  const mho_molecule *molecule = r->study->molecule;
+  if (a->compared > 0)
+    say(r, mho_print_text("Relative to %.*s, computed and measured ratios of %d molecule%s differ "
+                          "by %.2f decades (root mean square), a factor of %.1f; most for %.*s "
+                          "(%.2f decades).",
+                          SCREEN_NAME, molecule[a->reference].name, a->compared,
+                          a->compared > 1 ? "s" : "", a->rms_decades, pow(10, a->rms_decades),
+                          SCREEN_NAME, molecule[a->largest].name, a->largest_decades));
+  if (a->pairs > 0)
+    say(r, mho_print_text("Of the %d pairs that the measurement tells apart, the model puts %d in "
+                          "the measured order.",
+                          a->pairs, a->ordered));
+}
+
+static void answer(run *r)
+{
+  const mho_study *s = r->study;
+  int best = -1, worst = -1, nodes = 0;
+  for (int i = 0; i < s->molecule_count; i++) {
+    const mho_conductance *g = &r->conductance[i];
+    if (!g->has_log || g->warnings & (MHO_WARN_NEAR_NODE | MHO_WARN_NO_PI_PATH)) {
+      nodes++;
+      continue;
+    }
+    if (best < 0 || g->log10_g0 > r->conductance[best].log10_g0) best = i;
+    if (worst < 0 || g->log10_g0 < r->conductance[worst].log10_g0) worst = i;
+  }
+  if (best >= 0)
+    say(r, mho_print_text("Best conductor by the model: %.*s, %.2g G0.%s%.*s%s", SCREEN_NAME,
+                          s->molecule[best].name, r->conductance[best].conductance_g0,
+                          worst != best ? " Least: " : "", SCREEN_NAME,
+                          worst != best ? s->molecule[worst].name : "",
+                          worst != best ? "." : ""));
+  if (nodes > 0)
+    say(r, mho_print_text("%d of %d molecules have a node or no pi path at the Fermi level: no "
+                          "value is predicted for %s.",
+                          nodes, s->molecule_count, nodes > 1 ? "them" : "it"));
+  if (s->compare) answer_comparison(r);
+}
+
+static mho_status add_figure(run *r, const char *section, char *file, char *caption,
+                             mho_figure **figure, mho_error *error)
+{
+  mho_figure *larger = realloc(r->figure, (r->figures + 1) * sizeof *larger);
+  if (larger) r->figure = larger;
+  if (!larger || !file || !caption) {
+    free(file);
+    free(caption);
+    return fail_memory(error);
+  }
+  *figure = &r->figure[r->figures++];
+  **figure = (mho_figure){.section = section, .file = file, .caption = caption};
+  return MHO_OK;
+}
+
+/* Draws a script; the figure is dropped where gnuplot is missing. */
+static mho_status draw(run *r, const mho_buffer *script, mho_figure *figure, mho_error *error)
+{
+  static const char script_name[] = ".figure.gp";
+  bool available = false;
+  char *script_path = mho_folder_path(&r->folder, script_name);
+  char *path = mho_folder_path(&r->folder, figure->file), *text = NULL;
+  size_t size = 0;
+  mho_status status = script_path && path ? MHO_OK : fail_memory(error);
+  if (status == MHO_OK) status = mho_folder_write(&r->folder, script_name, script, error);
+  if (status == MHO_OK) status = mho_figure_render(script_path, path, &available, error);
+  if (status == MHO_OK && available)
+    status = mho_read_file(path, 64 << 20, "study", &text, &size, error);
+  if (status == MHO_OK && available) mho_buffer_add_bytes(&figure->svg, text, size);
+  if (script_path) remove(script_path);
+  if (path && !available) remove(path);
+  if (status == MHO_OK && !available) {
+    r->without_gnuplot = true;
+    free(figure->file);
+    free(figure->caption);
+    r->figures--;
+  }
+  free(text);
+  free(path);
+  free(script_path);
+  return status;
+}
+
+/* Curves first .. first+count-1 in one figure. */
+static mho_status draw_transmission(run *r, int first, int count, mho_error *error)
+{
+  mho_curve curve[MHO_CURVES_MAX] = {{0}};
+  bool measured = false;
+  for (int c = 0; c < count; c++) {
+    int i = first + c;
+    const mho_comparison *m = &r->comparison[i];
+    curve[c] = (mho_curve){.name = r->study->molecule[i].name,
+                           .count = r->outcome[i].count,
+                           .energy_ev = r->outcome[i].energy_ev,
+                           .point = r->outcome[i].point,
+                           .has_measured = r->study->compare && m->has_measured,
+                           .measured_log10_g0 = m->measured_log10_g0};
+    measured |= curve[c].has_measured;
+    curve[c].measured_low = m->has_spread ? m->measured_low : m->measured_log10_g0;
+    curve[c].measured_high = m->has_spread ? m->measured_high : m->measured_log10_g0;
+  }
+  mho_figure *figure = NULL;
+  mho_status status = add_figure(
+      r, "transmission", mho_print_text("transmission-%d.svg", first / MHO_CURVES_MAX + 1),
+      mho_print_text("Transmission against energy above the Fermi level; the shaded band is the "
+                     "alignment window%s.",
+                     measured ? ", diamonds are measured conductances in units of G0" : ""),
+      &figure, error);
+  if (status != MHO_OK) return status;
+  mho_buffer script = {0};
+  mho_figure_transmission(&script, curve, count, r->study->window_ev);
+  status = draw(r, &script, figure, error);
+  mho_buffer_clear(&script);
+  return status;
+}
+
+static mho_status draw_comparison(run *r, mho_error *error)
+{
+  int count = r->study->molecule_count;
+  const char **name = calloc((size_t)count, sizeof *name);
+  mho_figure *figure = NULL;
+  mho_status status = name ? MHO_OK : fail_memory(error);
+  if (status == MHO_OK)
+    status = add_figure(r, "comparison", mho_copy_text("compare.svg"),
+                        mho_copy_text("Computed and measured conductance of each molecule."),
+                        &figure, error);
+  mho_buffer script = {0};
+  if (status == MHO_OK) {
+    for (int i = 0; i < count; i++) name[i] = r->study->molecule[i].name;
+    mho_figure_comparison(&script, name, r->comparison, count);
+    status = draw(r, &script, figure, error);
+  }
+  mho_buffer_clear(&script);
+  free(name);
+  return status;
+}
+
+static mho_status draw_figures(run *r, mho_error *error)
+{
+  mho_status status = MHO_OK;
+  if (r->study->compare) status = draw_comparison(r, error);
+  int count = r->study->molecule_count;
+  for (int i = 0; status == MHO_OK && i < count && !r->without_gnuplot; i += MHO_CURVES_MAX) {
+    status = step(r, "figures", error);
+    int in_figure = count - i < MHO_CURVES_MAX ? count - i : MHO_CURVES_MAX;
+    if (status == MHO_OK) status = draw_transmission(r, i, in_figure, error);
+  }
+  if (status == MHO_OK && r->without_gnuplot)
+    mho_output_note(&r->output, "gnuplot was not found: figures are left out");
+  return status;
+}
+
+static mho_status write_tables(run *r, mho_error *error)
+{
+  for (size_t i = 0; i < r->output.tables; i++) {
+    mho_buffer buffer = {0};
+    char *file = mho_print_text("%s.csv", r->output.table[i].name);
+    mho_status status = file ? MHO_OK : fail_memory(error);
+    if (status == MHO_OK)
+      status = mho_write_csv(&r->output.table[i], TABLE_DIGITS, &buffer, error);
+    if (status == MHO_OK) status = mho_folder_write(&r->folder, file, &buffer, error);
+    mho_buffer_clear(&buffer);
+    free(file);
+    if (status != MHO_OK) return status;
+  }
+  return MHO_OK;
+}
+
+static json_t *json_results(const run *r)
+{
+  json_t *object = json_object(), *answers = json_array(), *limits = json_array();
+  for (size_t i = 0; i < r->answers; i++)
+    answers = mho_json_append(answers, mho_json_text(r->answer[i]));
+  size_t count;
+  const char *const *limit = mho_limits(&count);
+  for (size_t i = 0; i < count; i++) limits = mho_json_append(limits, mho_json_text(limit[i]));
+  object = mho_json_with(object, "schema", mho_json_text(MHO_JSON_SCHEMA));
+  object = mho_json_with(object, "study", mho_json_text(r->study->title));
+  object = mho_json_with(object, "answer", answers);
+  return mho_json_with(object, "limits", limits);
+}
+
+static mho_status write_results(run *r, mho_error *error)
+{
+  const mho_study *s = r->study;
+  mho_checked *checked = calloc((size_t)s->molecule_count, sizeof *checked);
+  json_t *object = json_results(r);
+  mho_buffer buffer = {0};
+  mho_status status = checked && object ? MHO_OK : fail_memory(error);
+  if (status == MHO_OK) {
+    for (int i = 0; i < s->molecule_count; i++)
+      checked[i] = (mho_checked){&s->molecule[i], &r->outcome[i].junction, r->outcome[i].warnings};
+    object = mho_json_with(object, "molecules",
+                        mho_json_molecules(checked, (size_t)s->molecule_count));
+    object = mho_json_with(object, "tables", mho_json_tables(&r->output));
+    object = mho_json_with(object, "warnings", mho_json_warnings(&r->output));
+    object = mho_json_with(object, "notes", mho_json_notes(&r->output));
+    status = mho_json_write(object, &buffer, error);
+    object = NULL;
+  }
+  if (status == MHO_OK) status = mho_folder_write(&r->folder, "results.json", &buffer, error);
+  json_decref(object);
+  mho_buffer_clear(&buffer);
+  free(checked);
+  return status;
+}
+
+static mho_status write_report(run *r, mho_error *error)
+{
+  mho_report report = {.title = r->study->title,
+                       .output = &r->output,
+                       .answer = r->answer,
+                       .answers = r->answers,
+                       .figure = r->figure,
+                       .figures = r->figures,
+                       .without_gnuplot = r->without_gnuplot};
+  mho_buffer buffer = {0};
+  mho_status status = mho_write_html(&report, &buffer, error);
+  if (status == MHO_OK) status = mho_folder_write(&r->folder, "report.html", &buffer, error);
+  mho_buffer_clear(&buffer);
+  if (status != MHO_OK) return status;
+  status = mho_write_provenance(r->study, r->options->command, &buffer, error);
+  if (status == MHO_OK) status = mho_folder_write(&r->folder, "provenance.json", &buffer, error);
+  mho_buffer_clear(&buffer);
+  return status;
+}
+
+/* STUDY-results beside the study. */
+static char *default_folder(const mho_study *study)
+{
+  const char *path = study->path, *slash = strrchr(path, '/');
+  const char *stem = slash ? slash + 1 : path, *dot = strrchr(stem, '.');
+  size_t length = dot && dot > stem ? (size_t)(dot - path) : strlen(path);
+  return mho_print_text("%.*s-results", (int)length, path);
+}
+
+static mho_status execute(run *r, mho_error *error)
+{
+  const mho_study *s = r->study;
+  mho_status status = build_junctions(r, error);
+  for (int i = 0; status == MHO_OK && i < s->molecule_count; i++)
+    status = compute_molecule(r, i, error);
+  if (status == MHO_OK && s->compare)
+    status = mho_compare_ratios(r->conductance, s->molecule_count, s->peak, s->peak_count,
+                                s->reference, r->comparison, &r->agreement, error);
+  if (status != MHO_OK) return status;
+  fill_tables(r);
+  answer(r);
+  status = draw_figures(r, error);
+  if (status == MHO_OK) status = step(r, "report", error);
+  if (status == MHO_OK) status = mho_output_check(&r->output, error);
+  if (status == MHO_OK) status = write_tables(r, error);
+  if (status == MHO_OK) status = write_results(r, error);
+  if (status == MHO_OK) status = write_report(r, error);
+  if (status == MHO_OK) status = step(r, "done", error);
+  return status == MHO_OK ? mho_folder_commit(&r->folder, error) : status;
+}
+
+static void run_clear(run *r)
+{
+  for (int i = 0; r->outcome && i < r->study->molecule_count; i++) {
+    mho_junction_clear(&r->outcome[i].junction);
+    free(r->outcome[i].energy_ev);
+    free(r->outcome[i].point);
+  }
+  for (size_t i = 0; i < r->answers; i++) free(r->answer[i]);
+  for (size_t i = 0; i < r->figures; i++) {
+    free(r->figure[i].file);
+    free(r->figure[i].caption);
+    mho_buffer_clear(&r->figure[i].svg);
+  }
+  free(r->figure);
+  free(r->outcome);
+  free(r->conductance);
+  free(r->comparison);
+  mho_output_clear(&r->output);
+  mho_folder_close(&r->folder);
+}
+
+mho_status mho_study_run(const mho_study *study, const mho_run_options *options, char **folder,
+                         mho_error *error)
+{
+  size_t n = (size_t)study->molecule_count;
+  static const mho_run_options nothing = {0};
+  run r = {.study = study, .options = options ? options : &nothing};
+  r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2;
+  r.outcome = calloc(n, sizeof *r.outcome);
+  r.conductance = calloc(n, sizeof *r.conductance);
+  r.comparison = calloc(n, sizeof *r.comparison);
+  char *target = r.options->folder ? mho_copy_text(r.options->folder) : default_folder(study);
+  mho_status status =
+      r.outcome && r.conductance && r.comparison && target ? MHO_OK : fail_memory(error);
+  if (status == MHO_OK) status = mho_folder_open(target, &r.folder, error);
+  if (status == MHO_OK) status = execute(&r, error);
+  run_clear(&r);
+  if (status == MHO_OK && folder) *folder = target;
+  else free(target);
+  return status;
+}

@@ -1,0 +1,34 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * What a study file says.
+ */
+#ifndef MHOLECULE_STUDY_STUDY_H
+#define MHOLECULE_STUDY_STUDY_H
+
+#include <mho/compare.h>
+#include <mho/molecule.h>
+#include <mho/study.h>
+
+typedef struct {
+  char *path; /* as opened */
+  char *name; /* as the study names it */
+} mho_study_input;
+
+struct mho_study {
+  char *path, *title;
+  int molecule_count;
+  mho_molecule *molecule;
+  mho_study_input *input; /* files that were read, the study first */
+  int input_count;
+  mho_measured_peak *peak;
+  int peak_count;
+  /* questions */
+  bool has_energies;
+  double energy_low_ev, energy_high_ev;
+  long samples; /* 0: as the resonances ask for */
+  double window_ev;
+  bool compare;
+  int reference; /* index, or -1 */
+};
+
+#endif

@@ -1,0 +1,321 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Reads a study file and the molecules it names.
+ */
+#include <glob.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include <mho/molecule_file.h>
+
+#include "base/text.h"
+#include "input/yaml.h"
+#include "study/study.h"
+
+#define COUNT(array) (sizeof(array) / sizeof *(array))
+#define PEAK_LOW_G0 1e-15
+#define PEAK_HIGH_G0 1e3
+
+enum { MOLECULES_MAX = 1000 };
+
+typedef struct {
+  mho_yaml yaml;
+  mho_study *study;
+  mho_settings defaults;
+  const mho_settings *overrides;
+} reader;
+
+static void fail_memory(const reader *r)
+{
+  mho_fail_at(r->yaml.error, MHO_ERR_MEMORY, "study", r->yaml.file, 0, 0, NULL,
+              "out of memory");
+}
+
+static bool add_input(reader *r, const char *path, const char *name)
+{
+  mho_study *s = r->study;
+  mho_study_input *larger =
+      realloc(s->input, (size_t)(s->input_count + 1) * sizeof *larger);
+  if (larger) s->input = larger;
+  mho_study_input input = {mho_copy_text(path), mho_copy_text(name)};
+  if (!larger || !input.path || !input.name) {
+    free(input.path);
+    free(input.name);
+    fail_memory(r);
+    return false;
+  }
+  s->input[s->input_count++] = input;
+  return true;
+}
+
+static void read_defaults(reader *r)
+{
+  size_t count;
+  const char *const *names = mho_settings_names(&count);
+  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "defaults");
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "defaults")) return;
+  mho_yaml_check_keys(&r->yaml, node, names, count);
+  mho_yaml_get_settings(&r->yaml, node, &r->defaults);
+  /* A study's Fermi level is resolved in each molecule; its line is here. */
+  r->defaults.fermi.line = r->defaults.fermi.column = 0;
+}
+
+/* A path relative to the folder of the study. */
+static char *beside_study(const reader *r, const char *name)
+{
+  const char *slash = strrchr(r->yaml.file, '/');
+  if (name[0] == '/' || !slash) return mho_copy_text(name);
+  return mho_print_text("%.*s/%s", (int)(slash - r->yaml.file), r->yaml.file, name);
+}
+
+static void read_molecule_file(reader *r, const mho_yaml_node *node, const char *path)
+{
+  mho_study *s = r->study;
+  if (s->molecule_count >= MOLECULES_MAX) {
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_LIMIT, "molecules",
+                  "molecules: more than %d are named", MOLECULES_MAX);
+    return;
+  }
+  mho_molecule *larger =
+      realloc(s->molecule, (size_t)(s->molecule_count + 1) * sizeof *larger);
+  if (!larger) {
+    fail_memory(r);
+    return;
+  }
+  s->molecule = larger;
+  mho_molecule *molecule = &s->molecule[s->molecule_count++];
+  mho_status status =
+      mho_molecule_read(path, &r->defaults, r->overrides, molecule, r->yaml.error);
+  if (status != MHO_OK || !add_input(r, path, path)) return;
+  for (int i = 0; i + 1 < s->molecule_count; i++)
+    if (s->molecule[i].name && !strcmp(s->molecule[i].name, molecule->name))
+      mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "molecules",
+                    "molecules: '%.60s' of %.200s stands in %.200s already; names must differ",
+                    molecule->name, path, s->molecule[i].source);
+}
+
+static int compare_paths(const void *a, const void *b)
+{
+  return strcmp(*(char *const *)a, *(char *const *)b);
+}
+
+/* A file, or a pattern of files in bytewise order. */
+static void read_molecule_files(reader *r, const mho_yaml_node *node)
+{
+  const char *name;
+  if (!mho_yaml_get_text(&r->yaml, node, "file", &name)) return;
+  char *path = beside_study(r, name);
+  glob_t found = {0};
+  int code = path ? glob(path, GLOB_NOSORT, NULL, &found) : GLOB_NOSPACE;
+  if (code == GLOB_NOSPACE) fail_memory(r);
+  else if (code == GLOB_NOMATCH && !strpbrk(name, "*?["))
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, "file",
+                  "file: '%.200s' does not exist; paths are relative to the study", path);
+  else if (code != 0)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, "file",
+                  "file: no file matches '%.200s'; paths are relative to the study", path);
+  if (code == 0) qsort(found.gl_pathv, found.gl_pathc, sizeof *found.gl_pathv, compare_paths);
+  for (size_t i = 0; code == 0 && i < found.gl_pathc; i++)
+    read_molecule_file(r, node, found.gl_pathv[i]);
+  if (code == 0) globfree(&found);
+  free(path);
+}
+
+static void read_molecules(reader *r)
+{
+  static const char *const keys[] = {"file"};
+  const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "molecules");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "molecules")) return;
+  if (list->count == 0)
+    mho_yaml_fail(&r->yaml, list, MHO_ERR_LIMIT, "molecules", "molecules: at least one is needed");
+  for (size_t i = 0; i < list->count; i++) {
+    const mho_yaml_node *item = list->item[i];
+    if (!mho_yaml_is(&r->yaml, item, MHO_YAML_MAPPING, "a molecule")) continue;
+    mho_yaml_check_keys(&r->yaml, item, keys, COUNT(keys));
+    read_molecule_files(r, mho_yaml_require(&r->yaml, item, "file"));
+  }
+}
+
+/* Index of the molecule a text names; a dangling name is an error. */
+static bool read_molecule_name(reader *r, const mho_yaml_node *node, const char *field,
+                               int *index)
+{
+  const char *text;
+  if (!mho_yaml_get_text(&r->yaml, node, field, &text)) return false;
+  const char *name[MOLECULES_MAX];
+  size_t count = 0;
+  for (int i = 0; i < r->study->molecule_count; i++) {
+    const char *known = r->study->molecule[i].name;
+    if (known && !strcmp(known, text)) {
+      *index = i;
+      return true;
+    }
+    if (known) name[count++] = known;
+  }
+  const char *nearest = mho_nearest_word(text, name, count);
+  if (nearest)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_REFERENCE, field,
+                  "%s: there is no molecule '%.60s'; did you mean '%.60s'?", field, text,
+                  nearest);
+  else
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_REFERENCE, field,
+                  "%s: there is no molecule '%.60s' under 'molecules'", field, text);
+  return false;
+}
+
+static void read_peak(reader *r, const mho_yaml_node *node, mho_measured_peak *peak)
+{
+  static const char *const keys[] = {"molecule", "peak", "spread", "histogram"};
+  static const char *const kinds[] = {"log", "linear"};
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "a measured value")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  bool good = read_molecule_name(r, mho_yaml_require(&r->yaml, node, "molecule"), "molecule",
+                                 &peak->molecule);
+  good &= mho_yaml_get_quantity(&r->yaml, mho_yaml_require(&r->yaml, node, "peak"), "peak",
+                                MHO_CONDUCTANCE, PEAK_LOW_G0, PEAK_HIGH_G0, &peak->peak_g0);
+  peak->has_spread =
+      mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, "spread"), "spread", MHO_DECADES,
+                            0.0, 5.0, &peak->spread_decades);
+  size_t kind = 0;
+  const mho_yaml_node *histogram = mho_yaml_require(&r->yaml, node, "histogram");
+  if (mho_yaml_get_choice(&r->yaml, histogram, "histogram", kinds, 2, &kind))
+    peak->histogram = kind == 1 ? MHO_HISTOGRAM_LINEAR : MHO_HISTOGRAM_LOG;
+  if (peak->histogram == MHO_HISTOGRAM_LINEAR && !mho_yaml_find(node, "spread"))
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "spread",
+                  "key 'spread' is missing here: the peak of a linear histogram lies lower than "
+                  "that of a log one by an amount that depends on it");
+  if (good) r->study->peak_count++;
+}
+
+static void read_measured(reader *r)
+{
+  const mho_yaml_node *list = mho_yaml_find(r->yaml.root, "measured");
+  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "measured")) return;
+  r->study->peak = calloc(list->count + 1, sizeof *r->study->peak);
+  if (!r->study->peak) {
+    fail_memory(r);
+    return;
+  }
+  for (size_t i = 0; i < list->count; i++)
+    read_peak(r, list->item[i], &r->study->peak[r->study->peak_count]);
+}
+
+static void read_transmission_question(reader *r, const mho_yaml_node *node)
+{
+  static const char *const keys[] = {"energies", "samples"};
+  mho_study *s = r->study;
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "transmission")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  mho_yaml_get_integer(&r->yaml, mho_yaml_find(node, "samples"), "samples", 2, 100000,
+                       &s->samples);
+  const mho_yaml_node *range = mho_yaml_find(node, "energies");
+  if (!mho_yaml_is(&r->yaml, range, MHO_YAML_LIST, "energies")) return;
+  if (range->count != 2) {
+    mho_yaml_fail(&r->yaml, range, MHO_ERR_SYNTAX, "energies",
+                  "energies: two are needed, such as [-3 eV, 3 eV]");
+    return;
+  }
+  bool low = mho_yaml_get_quantity(&r->yaml, range->item[0], "energies", MHO_ENERGY, -100, 100,
+                                   &s->energy_low_ev);
+  bool high = mho_yaml_get_quantity(&r->yaml, range->item[1], "energies", MHO_ENERGY, -100, 100,
+                                    &s->energy_high_ev);
+  if (low && high && !(s->energy_low_ev < s->energy_high_ev))
+    mho_yaml_fail(&r->yaml, range, MHO_ERR_RANGE, "energies",
+                  "energies: the range runs downwards; the lower end comes first");
+}
+
+static void read_questions(reader *r)
+{
+  static const char *const keys[] = {"conductance", "transmission", "compare"};
+  static const char *const conductance_keys[] = {"window"};
+  static const char *const compare_keys[] = {"reference"};
+  mho_study *s = r->study;
+  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "questions");
+  s->compare = s->peak_count > 0;
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "questions")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  read_transmission_question(r, mho_yaml_find(node, "transmission"));
+  const mho_yaml_node *conductance = mho_yaml_find(node, "conductance");
+  if (mho_yaml_is(&r->yaml, conductance, MHO_YAML_MAPPING, "conductance")) {
+    mho_yaml_check_keys(&r->yaml, conductance, conductance_keys, COUNT(conductance_keys));
+    mho_yaml_get_quantity(&r->yaml, mho_yaml_find(conductance, "window"), "window", MHO_ENERGY,
+                          0.0, 10.0, &s->window_ev);
+  }
+  const mho_yaml_node *compare = mho_yaml_find(node, "compare");
+  if (!mho_yaml_is(&r->yaml, compare, MHO_YAML_MAPPING, "compare")) return;
+  mho_yaml_check_keys(&r->yaml, compare, compare_keys, COUNT(compare_keys));
+  if (s->peak_count == 0)
+    mho_yaml_fail(&r->yaml, compare, MHO_ERR_KEY, "compare",
+                  "compare: there is nothing to compare with; give 'measured' values");
+  const mho_yaml_node *reference = mho_yaml_find(compare, "reference");
+  if (!reference || !read_molecule_name(r, reference, "reference", &s->reference)) return;
+  bool measured = false;
+  for (int p = 0; p < s->peak_count; p++) measured |= s->peak[p].molecule == s->reference;
+  if (!measured)
+    mho_yaml_fail(&r->yaml, reference, MHO_ERR_REFERENCE, "reference",
+                  "reference: '%.60s' has no measured value to take ratios to",
+                  reference->text);
+}
+
+static void read_study(reader *r)
+{
+  static const char *const keys[] = {"study", "defaults", "molecules", "measured", "questions"};
+  const char *title;
+  mho_yaml_check_keys(&r->yaml, r->yaml.root, keys, COUNT(keys));
+  const mho_yaml_node *node = mho_yaml_require(&r->yaml, r->yaml.root, "study");
+  if (mho_yaml_get_text(&r->yaml, node, "study", &title)) {
+    r->study->title = mho_copy_text(title);
+    if (!r->study->title) fail_memory(r);
+  }
+  read_defaults(r);
+  read_molecules(r);
+  read_measured(r);
+  read_questions(r);
+}
+
+mho_status mho_study_read(const char *path, const mho_settings *overrides,
+                          mho_study **result, mho_error *error)
+{
+  *result = NULL;
+  mho_error own;
+  if (!error) {
+    mho_error_init(&own);
+    error = &own;
+  }
+  mho_study *study = calloc(1, sizeof *study);
+  if (!study) return mho_fail(error, MHO_ERR_MEMORY, "study", NULL, "out of memory");
+  study->window_ev = MHO_DEFAULT_WINDOW_EV;
+  study->reference = -1;
+  study->energy_low_ev = -3.0;
+  study->energy_high_ev = 3.0;
+  reader r = {.study = study, .overrides = overrides};
+  int before = error->count;
+  mho_status status = mho_yaml_read(path, &r.yaml, error);
+  study->path = mho_copy_text(path);
+  if (!study->path) fail_memory(&r);
+  if (status == MHO_OK || (status == MHO_ERR_KEY && r.yaml.root)) {
+    add_input(&r, path, path);
+    read_study(&r);
+  }
+  mho_yaml_clear(&r.yaml);
+  if (status == MHO_OK && error->count > before) status = error->cause[before].status;
+  if (status != MHO_OK) mho_study_free(study);
+  else *result = study;
+  return status;
+}
+
+void mho_study_free(mho_study *study)
+{
+  if (!study) return;
+  for (int i = 0; i < study->molecule_count; i++) mho_molecule_clear(&study->molecule[i]);
+  for (int i = 0; i < study->input_count; i++) {
+    free(study->input[i].path);
+    free(study->input[i].name);
+  }
+  free(study->molecule);
+  free(study->input);
+  free(study->peak);
+  free(study->path);
+  free(study->title);
+  free(study);
+}

@@ -1,0 +1,59 @@
+#!/usr/bin/python3
+# SPDX-License-Identifier: GPL-3.0-or-later
+"""The n-th allocation fails, for every n: the program ends with a message and
+exit 1 (or does well without), never with a signal, and leaves nothing behind."""
+import os
+import shutil
+import subprocess
+import sys
+import tempfile
+
+MHO = os.path.abspath(os.environ["MHO"])
+ROOT = os.environ["MHO_SOURCE"]
+PRELOAD = sys.argv[1]
+STRIDE_LIMIT = 160  # at most that many runs a command
+MOLECULE = os.path.join(ROOT, "molecules/benzene-1-3-diamine.yaml")
+STUDY = os.path.join(ROOT, "molecules/studies/flat-or-twisted.yaml")
+
+
+def run(arguments, scratch, **variables):
+    environment = {"PATH": scratch, "LD_PRELOAD": PRELOAD, **variables}
+    return subprocess.run([MHO, *arguments], env=environment, capture_output=True, text=True,
+                          errors="replace", timeout=60)
+
+
+def main():
+    failures = runs = 0
+    for arguments in (["check", "--json", MOLECULE], ["conductance", MOLECULE],
+                      ["conductance", "--json", MOLECULE],
+                      ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
+                      ["run", STUDY, "-o", "results"]):
+        scratch = tempfile.mkdtemp()
+        os.chdir(scratch)
+        good = run(arguments, scratch, FAIL_COUNT=os.path.join(scratch, "count"))
+        total = int(open(os.path.join(scratch, "count")).read())
+        shutil.rmtree("results", ignore_errors=True)
+        stride = max(1, total // STRIDE_LIMIT)
+        for at in list(range(1, min(total, 60))) + list(range(60, total + 1, stride)):
+            variables = {"FAIL_AT": str(at)}
+            if at % 2:
+                variables["FAIL_ON"] = "1"
+            result = run(arguments, scratch, **variables)
+            runs += 1
+            fine = result.returncode == 0 and result.stdout == good.stdout
+            told = result.returncode in (1, 2) and result.stderr.strip()
+            left = [n for n in os.listdir(".") if ".tmp-" in n or n == "results"]
+            if result.returncode == 0:
+                shutil.rmtree("results", ignore_errors=True)
+                left = [n for n in left if n != "results"]
+            if not (fine or told) or left:
+                failures += 1
+                print(f"allocation {at} of {total} in {arguments[0]}: exit {result.returncode}, "
+                      f"left {left}, said {result.stderr[:200]!r}")
+        os.chdir("/")
+        shutil.rmtree(scratch)
+    print(f"{runs} runs, {failures} failures")
+    return 1 if failures or runs < 300 else 0
+
+
+sys.exit(main())
