@@ -14,6 +14,7 @@
 #include <mho/molecule_file.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
+#include <mho/sensitivity.h>
 #include <mho/settings.h>
 #include <mho/status.h>
 #include <mho/study.h>

@@ -50,7 +50,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WINDOW, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_HELP, OPTION_COUNT
 };
@@ -63,6 +63,9 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
+    [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
+                         "list the parameters that matter most, and the error they make"},
+    [OPT_SEED] = {CONDUCTANCE, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
     [OPT_FERMI] = {ALL, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
@@ -176,6 +179,18 @@ static int read_samples(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
+static int read_seed(command *cmd, const char *text)
+{
+  const unsigned long most = 4294967295ul;
+  char *end;
+  errno = 0;
+  cmd->seed = strtoul(text, &end, 10);
+  if (errno || *end || end == text || *text == '-' || cmd->seed > most)
+    return usage_error(cmd->verb, "--seed: '%s' is not allowed; a whole number from 0 to %lu is",
+                       text, most);
+  return EXIT_DONE;
+}
+
 static int read_option(command *cmd, int which, const char *text)
 {
   char reason[320];
@@ -185,7 +200,10 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_AT:
     cmd->has_at = true;
     return read_quantity(cmd->verb, "at", text, MHO_ENERGY, -1000, 1000, &cmd->at_ev);
+  case OPT_SEED: return read_seed(cmd, text);
+  case OPT_SENSITIVITY: cmd->sensitivity = true; return EXIT_DONE;
   case OPT_WINDOW:
+    cmd->has_window = true;
     return read_quantity(cmd->verb, "window", text, MHO_ENERGY, 0, 10, &cmd->window_ev);
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
@@ -235,7 +253,7 @@ static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
       table[count++] = (struct option){
           options[i].name, options[i].argument ? required_argument : no_argument, NULL, 256 + i};
   table[count] = (struct option){0};
-  *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV};
+  *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV, .seed = 1};
   opterr = 0;
   int code;
   while ((code = getopt_long(argc, argv, ":ho:", table, NULL)) != -1) {

@@ -9,6 +9,7 @@
 #include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/molecule.h>
+#include <mho/sensitivity.h>
 #include <mho/transmission.h>
 
 #include "report/table.h"
@@ -16,6 +17,11 @@
 mho_table *mho_conductance_table(mho_output *output);
 void mho_conductance_row(mho_table *table, const char *molecule,
                          const mho_conductance *conductance, unsigned warnings);
+
+/* Every parameter, then a row for all of them that names the rule. */
+mho_table *mho_sensitivity_table(mho_output *output);
+void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
+                          const mho_sensitivity *sensitivity);
 
 /* energy_ev is absolute; the table has it relative to fermi_ev. */
 mho_table *mho_transmission_table(mho_output *output);
