@@ -12,6 +12,7 @@
 #include <mho/junction.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>
+#include <mho/nodes.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
 #include <mho/sensitivity.h>

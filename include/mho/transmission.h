@@ -40,6 +40,7 @@ typedef struct {
 typedef struct {
   double energy_ev; /* real part */
   double width_ev;  /* full width at half maximum, -2 Im */
+  double left_width_ev, right_width_ev; /* what each contact contributes */
 } mho_pole;
 
 MHO_BEGIN_DECLARATIONS
@@ -74,7 +75,9 @@ MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,
                                                        mho_point *point,
                                                        mho_error *error);
 
-/* All poles, by ascending energy; pole[] has room for one a site. */
+/* All poles, by ascending energy; pole[] has room for one a site.
+ * Errors: MHO_ERR_LIMIT (too many sites), MHO_ERR_MEMORY,
+ * MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_poles(const mho_plan *plan, mho_pole *pole,
                                           mho_error *error);
 MHO_API int mho_plan_sites(const mho_plan *plan);
@@ -82,8 +85,8 @@ MHO_API int mho_plan_sites(const mho_plan *plan);
 /* Most that T can be: the smaller number of channels of the two contacts. */
 MHO_API int mho_plan_channels(const mho_plan *plan);
 
-/* Energies for a plot from low to high: an even grid of `even` points, and
- * around every pole points as dense as its width asks for.  The caller frees
+/* Energies for a plot from low to high: an even grid of `even` points, around
+ * every pole points as dense as its width asks for, and every node.  The caller frees
  * *energy_ev.  Errors: MHO_ERR_RANGE, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_energy_grid(const mho_plan *plan,
                                                 double low_ev, double high_ev,

@@ -29,9 +29,9 @@ static const verb verbs[] = {
      "Thermal zero-bias conductance of each molecule at its Fermi level, and its\n"
      "5 % and 95 % quantiles while the Fermi level moves over the alignment window.",
      command_conductance},
-    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), and its resonances",
+    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), its resonances and nodes",
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
-     "follow the resonances, so that none is missed.",
+     "follow resonances and nodes, so that none is missed.",
      command_transmission},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
@@ -50,7 +50,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_HELP, OPTION_COUNT
 };
@@ -61,6 +61,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_SAMPLES] = {TRANSMISSION, "samples", 0, "N", "that many even steps, both ends included"},
     [OPT_AT] = {TRANSMISSION, "at", 0, "ENERGY", "one row, at this energy above the Fermi level"},
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
+    [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
+                   "list where T vanishes or dips, from the zeros of the Green's function"},
     [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
@@ -206,6 +208,7 @@ static int read_option(command *cmd, int which, const char *text)
     cmd->has_window = true;
     return read_quantity(cmd->verb, "window", text, MHO_ENERGY, 0, 10, &cmd->window_ev);
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
+  case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;

@@ -127,6 +127,26 @@ void mho_compare_row(mho_table *table, const char *molecule, const mho_compariso
   mho_table_optional(table, c->has_ratio, c->deviation_decades);
 }
 
+mho_table *mho_nodes_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "energy_eV", "imaginary_eV", "order", "kind"};
+  return mho_output_table(output, "nodes", columns, COUNT(columns));
+}
+
+void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_node *node)
+{
+  static const char *const kind[] = {
+      [MHO_NODE_EXACT] = "node", [MHO_NODE_DIP] = "dip", [MHO_NODE_MINIMUM] = "minimum"};
+  bool zero = node->kind != MHO_NODE_MINIMUM;
+  mho_table_text(table, molecule);
+  mho_table_number(table, node->energy_ev - fermi_ev);
+  mho_table_optional(table, zero, node->imaginary_ev);
+  if (zero) mho_table_integer(table, node->order);
+  else mho_table_empty(table);
+  mho_table_text(table, kind[node->kind]);
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {

@@ -9,6 +9,7 @@
 #include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/molecule.h>
+#include <mho/nodes.h>
 #include <mho/sensitivity.h>
 #include <mho/transmission.h>
 
@@ -31,6 +32,10 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
 mho_table *mho_poles_table(mho_output *output);
 void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_pole *pole);
+
+mho_table *mho_nodes_table(mho_output *output);
+void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_node *node);
 
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
