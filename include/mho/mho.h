@@ -9,12 +9,15 @@
 #include <mho/conductance.h>
 #include <mho/constants.h>
 #include <mho/graph.h>
+#include <mho/gradient.h>
 #include <mho/junction.h>
 #include <mho/linker.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>
+#include <mho/nodes.h>
 #include <mho/parameters.h>
 #include <mho/quantity.h>
+#include <mho/sensitivity.h>
 #include <mho/settings.h>
 #include <mho/status.h>
 #include <mho/structure.h>

@@ -13,6 +13,12 @@
 
 typedef struct mho_plan mho_plan;
 
+/* H_ij = H_ji of a Hamiltonian given by its non-zero entries. */
+typedef struct {
+  int i, j;
+  double value_ev;
+} mho_entry;
+
 /* How a value was found; later methods are slower and more exact. */
 typedef enum {
   MHO_METHOD_NO_PATH,     /* no hopping joins the contacts: T = 0 */
@@ -34,6 +40,7 @@ typedef struct {
 typedef struct {
   double energy_ev; /* real part */
   double width_ev;  /* full width at half maximum, -2 Im */
+  double left_width_ev, right_width_ev; /* what each contact contributes */
 } mho_pole;
 
 MHO_BEGIN_DECLARATIONS
@@ -44,6 +51,15 @@ MHO_BEGIN_DECLARATIONS
 MHO_API MHO_MUST_USE mho_status mho_plan_create(const mho_junction *junction,
                                                 mho_plan **plan,
                                                 mho_error *error);
+
+/* The same from the non-zero entries of H alone, for molecules too long or
+ * large to be diagonalised: memory O(sites) for a chain.  entry[entries] has
+ * i <= j, entries of one pair add up; leads as in a junction (all copied).
+ * Errors: MHO_ERR_SIZE (a site), MHO_ERR_NOT_FINITE, MHO_ERR_CONTACTS,
+ * MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_plan_create_sparse(
+    int sites, const mho_entry *entry, size_t entries, const mho_lead *left,
+    const mho_lead *right, mho_plan **plan, mho_error *error);
 MHO_API void mho_plan_free(mho_plan *plan);
 
 /* T at energy_ev[count] (relative to alpha) into point[count].
@@ -59,7 +75,9 @@ MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,
                                                        mho_point *point,
                                                        mho_error *error);
 
-/* All poles, by ascending energy; pole[] has room for one a site. */
+/* All poles, by ascending energy; pole[] has room for one a site.
+ * Errors: MHO_ERR_LIMIT (too many sites), MHO_ERR_MEMORY,
+ * MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_poles(const mho_plan *plan, mho_pole *pole,
                                           mho_error *error);
 MHO_API int mho_plan_sites(const mho_plan *plan);
@@ -67,8 +85,8 @@ MHO_API int mho_plan_sites(const mho_plan *plan);
 /* Most that T can be: the smaller number of channels of the two contacts. */
 MHO_API int mho_plan_channels(const mho_plan *plan);
 
-/* Energies for a plot from low to high: an even grid of `even` points, and
- * around every pole points as dense as its width asks for.  The caller frees
+/* Energies for a plot from low to high: an even grid of `even` points, around
+ * every pole points as dense as its width asks for, and every node.  The caller frees
  * *energy_ev.  Errors: MHO_ERR_RANGE, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_energy_grid(const mho_plan *plan,
                                                 double low_ev, double high_ev,

@@ -10,9 +10,6 @@
 
 enum { WINDOW_SAMPLES = 401 };
 
-/* Below this kT the Fermi function is a step for every width we resolve. */
-#define COLD_EV 1e-7
-
 #define NEAR_DEGENERATE_EV 0.2
 #define STRONG_TWIST_DEG 70.0
 
@@ -42,27 +39,6 @@ static double quantile(const double *value, size_t count, double p)
   if (value[below] == -INFINITY) return -INFINITY;
   double fraction = place - (double)below;
   return value[below] + fraction * (value[below + 1] - value[below]);
-}
-
-/* log10 of the conductance at each Fermi level. */
-static mho_status conductances(const mho_plan *plan, const double *fermi_ev, size_t count,
-                               double kt_ev, double *log10_g0, mho_error *error)
-{
-  if (kt_ev < COLD_EV) {
-    mho_point *point = malloc(count * sizeof *point);
-    if (!point) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-    mho_status status = mho_transmission_sweep(plan, count, fermi_ev, point, error);
-    for (size_t i = 0; status == MHO_OK && i < count; i++)
-      log10_g0[i] = point[i].node ? -INFINITY : point[i].log10_transmission;
-    free(point);
-    return status;
-  }
-  mho_thermal_grid grid;
-  mho_status status = mho_thermal_grid_build(plan, fermi_ev, count, kt_ev, &grid, error);
-  for (size_t i = 0; status == MHO_OK && i < count; i++)
-    log10_g0[i] = mho_thermal_average_log10(&grid, fermi_ev[i], kt_ev);
-  mho_thermal_grid_clear(&grid);
-  return status;
 }
 
 static mho_status fermi_warnings(const mho_plan *plan, double kt_ev,
@@ -123,7 +99,7 @@ mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
   for (int i = 0; i < WINDOW_SAMPLES; i++)
     fermi[i] = fermi_ev + window * (2.0 * i / (WINDOW_SAMPLES - 1) - 1.0);
   if (status == MHO_OK)
-    status = conductances(plan, fermi, WINDOW_SAMPLES, kt, value, error);
+    status = mho_thermal_log10(plan, fermi, WINDOW_SAMPLES, kt, value, error);
   if (status != MHO_OK) return status;
   log10_g0 = value[WINDOW_SAMPLES / 2];
   set_conductance(result, log10_g0);

@@ -170,3 +170,23 @@ double mho_thermal_average_log10(const mho_thermal_grid *grid, double fermi_ev,
   }
   return sum > 0 ? log10(sum / kt_ev) + grid->scale_log10 : -INFINITY;
 }
+
+mho_status mho_thermal_log10(const mho_plan *plan, const double *fermi_ev, size_t count,
+                               double kt_ev, double *log10_g0, mho_error *error)
+{
+  if (kt_ev < MHO_COLD_EV) {
+    mho_point *point = malloc(count * sizeof *point);
+    if (!point) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+    mho_status status = mho_transmission_sweep(plan, count, fermi_ev, point, error);
+    for (size_t i = 0; status == MHO_OK && i < count; i++)
+      log10_g0[i] = point[i].node ? -INFINITY : point[i].log10_transmission;
+    free(point);
+    return status;
+  }
+  mho_thermal_grid grid;
+  mho_status status = mho_thermal_grid_build(plan, fermi_ev, count, kt_ev, &grid, error);
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    log10_g0[i] = mho_thermal_average_log10(&grid, fermi_ev[i], kt_ev);
+  mho_thermal_grid_clear(&grid);
+  return status;
+}

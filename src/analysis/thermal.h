@@ -25,4 +25,13 @@ void mho_thermal_grid_clear(mho_thermal_grid *grid);
 double mho_thermal_average_log10(const mho_thermal_grid *grid, double fermi_ev,
                                  double kt_ev);
 
+/* Below this kT the Fermi function is a step for every width we resolve. */
+#define MHO_COLD_EV 1e-7
+
+/* log10 of the thermal conductance (in G0) at ascending Fermi levels
+ * fermi_ev[count]; -INFINITY for zero. */
+MHO_MUST_USE mho_status mho_thermal_log10(const mho_plan *plan, const double *fermi_ev,
+                                          size_t count, double kt_ev, double *log10_g0,
+                                          mho_error *error);
+
 #endif

@@ -53,20 +53,29 @@ mho_status mho_eigen_symmetric(int n, double *matrix, double *eigenvalues,
   return status;
 }
 
-mho_status mho_eigenvalues_complex(int n, double complex *matrix,
-                                   double complex *eigenvalues,
-                                   mho_error *error)
+mho_status mho_eigen_complex(int n, double complex *matrix,
+                             double complex *eigenvalues,
+                             double complex *eigenvectors, mho_error *error)
 {
   mho_status status = mho_lapack_check(error);
   if (status != MHO_OK) return status;
   double complex unused = 0;
-  lapack_int info =
-      LAPACKE_zgeev(LAPACK_COL_MAJOR, 'N', 'N', n, matrix, n, eigenvalues,
-                    &unused, 1, &unused, 1);
+  char vectors = eigenvectors ? 'V' : 'N';
+  lapack_int info = LAPACKE_zgeev(LAPACK_COL_MAJOR, 'N', vectors, n, matrix, n,
+                                  eigenvalues, &unused, 1,
+                                  eigenvectors ? eigenvectors : &unused,
+                                  eigenvectors ? n : 1);
   status = finish("zgeev", info, error);
   for (int i = 0; status == MHO_OK && i < n; i++)
     if (!isfinite(creal(eigenvalues[i])) || !isfinite(cimag(eigenvalues[i])))
       status = mho_fail(error, MHO_ERR_NOT_FINITE, "base", NULL,
-                        "zgeev gave a pole that is not finite");
+                        "zgeev gave an eigenvalue that is not finite");
   return status;
+}
+
+mho_status mho_eigenvalues_complex(int n, double complex *matrix,
+                                   double complex *eigenvalues,
+                                   mho_error *error)
+{
+  return mho_eigen_complex(n, matrix, eigenvalues, NULL, error);
 }

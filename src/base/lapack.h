@@ -29,6 +29,12 @@ MHO_MUST_USE mho_status mho_eigenvalues_complex(int n, double complex *matrix,
                                                 double complex *eigenvalues,
                                                 mho_error *error);
 
+/* The same with right eigenvectors, column k for eigenvalue k. */
+MHO_MUST_USE mho_status mho_eigen_complex(int n, double complex *matrix,
+                                          double complex *eigenvalues,
+                                          double complex *eigenvectors,
+                                          mho_error *error);
+
 /* One line that names the linear algebra in use, for `mho --version`. */
 const char *mho_lapack_description(void);
 

@@ -21,8 +21,47 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   return MHO_OK;
 }
 
+static mho_status add_sensitivity(const command *cmd, const subject *s, mho_output *output,
+                                  mho_table *table, mho_error *error)
+{
+  mho_sensitivity result;
+  mho_sensitivity_options options = mho_sensitivity_defaults();
+  options.seed = cmd->seed;
+  mho_status status =
+      mho_sensitivity_compute(&s->molecule, &s->junction, &options, &result, error);
+  if (status == MHO_OK) {
+    unsigned node = result.has_derivatives ? 0u : MHO_WARN_NEAR_NODE;
+    mho_sensitivity_rows(table, &s->molecule, &result);
+    mho_output_warn(output, s->molecule.name, s->warnings | node);
+    if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
+  }
+  mho_sensitivity_clear(&result);
+  return status;
+}
+
+static int list_sensitivities(const command *cmd, mho_error *error)
+{
+  if (cmd->has_window)
+    return usage_error(cmd->verb, "--sensitivity looks at the Fermi level only; it excludes "
+                                  "--window");
+  subject *list;
+  mho_output output = {0};
+  mho_status status = subjects_read(cmd, true, &list, error);
+  mho_table *table = mho_sensitivity_table(&output);
+  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
+    status = add_sensitivity(cmd, &list[i], &output, table, error);
+  if (!cmd->quiet)
+    mho_output_note(&output, "derivatives of log10 of the thermal conductance at the Fermi level, "
+                             "each a unit of its parameter; sigma is the default uncertainty");
+  if (status == MHO_OK) status = output_write(cmd, &output, error);
+  mho_output_clear(&output);
+  subjects_free(list, cmd->files);
+  return exit_of(status);
+}
+
 int command_conductance(const command *cmd, mho_error *error)
 {
+  if (cmd->sensitivity) return list_sensitivities(cmd, error);
   subject *list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);

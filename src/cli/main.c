@@ -29,9 +29,9 @@ static const verb verbs[] = {
      "Thermal zero-bias conductance of each molecule at its Fermi level, and its\n"
      "5 % and 95 % quantiles while the Fermi level moves over the alignment window.",
      command_conductance},
-    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), and its resonances",
+    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), its resonances and nodes",
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
-     "follow the resonances, so that none is missed.",
+     "follow resonances and nodes, so that none is missed.",
      command_transmission},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
@@ -50,7 +50,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WINDOW, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_HELP, OPTION_COUNT
 };
@@ -61,8 +61,13 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_SAMPLES] = {TRANSMISSION, "samples", 0, "N", "that many even steps, both ends included"},
     [OPT_AT] = {TRANSMISSION, "at", 0, "ENERGY", "one row, at this energy above the Fermi level"},
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
+    [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
+                   "list where T vanishes or dips, from the zeros of the Green's function"},
     [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
+    [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
+                         "list the parameters that matter most, and the error they make"},
+    [OPT_SEED] = {CONDUCTANCE, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
     [OPT_FERMI] = {ALL, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
@@ -176,6 +181,18 @@ static int read_samples(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
+static int read_seed(command *cmd, const char *text)
+{
+  const unsigned long most = 4294967295ul;
+  char *end;
+  errno = 0;
+  cmd->seed = strtoul(text, &end, 10);
+  if (errno || *end || end == text || *text == '-' || cmd->seed > most)
+    return usage_error(cmd->verb, "--seed: '%s' is not allowed; a whole number from 0 to %lu is",
+                       text, most);
+  return EXIT_DONE;
+}
+
 static int read_option(command *cmd, int which, const char *text)
 {
   char reason[320];
@@ -185,9 +202,13 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_AT:
     cmd->has_at = true;
     return read_quantity(cmd->verb, "at", text, MHO_ENERGY, -1000, 1000, &cmd->at_ev);
+  case OPT_SEED: return read_seed(cmd, text);
+  case OPT_SENSITIVITY: cmd->sensitivity = true; return EXIT_DONE;
   case OPT_WINDOW:
+    cmd->has_window = true;
     return read_quantity(cmd->verb, "window", text, MHO_ENERGY, 0, 10, &cmd->window_ev);
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
+  case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
@@ -235,7 +256,7 @@ static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
       table[count++] = (struct option){
           options[i].name, options[i].argument ? required_argument : no_argument, NULL, 256 + i};
   table[count] = (struct option){0};
-  *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV};
+  *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV, .seed = 1};
   opterr = 0;
   int code;
   while ((code = getopt_long(argc, argv, ":ho:", table, NULL)) != -1) {

@@ -73,6 +73,18 @@ static mho_status add_poles(const subject *s, const mho_plan *plan, mho_table *t
   return status;
 }
 
+static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *table,
+                            unsigned *warnings, mho_error *error)
+{
+  mho_nodes nodes;
+  mho_status status = mho_nodes_find(plan, &nodes, error);
+  if (status == MHO_OK && nodes.everywhere) *warnings |= MHO_WARN_NO_PI_PATH;
+  for (size_t k = 0; status == MHO_OK && k < nodes.count; k++)
+    mho_nodes_row(table, s->molecule.name, s->junction.fermi_ev, &nodes.node[k]);
+  mho_nodes_clear(&nodes);
+  return status;
+}
+
 static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
                                mho_table *table, mho_error *error)
 {
@@ -80,8 +92,9 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   unsigned warnings = s->warnings;
   mho_status status = mho_plan_create(&s->junction, &plan, error);
   if (status == MHO_OK)
-    status = cmd->poles ? add_poles(s, plan, table, error)
-                        : add_sweep(cmd, s, plan, table, &warnings, error);
+    status = cmd->poles   ? add_poles(s, plan, table, error)
+             : cmd->nodes ? add_nodes(s, plan, table, &warnings, error)
+                          : add_sweep(cmd, s, plan, table, &warnings, error);
   mho_plan_free(plan);
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
@@ -92,9 +105,12 @@ static int check_options(const command *cmd)
 {
   if (cmd->has_at && (cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb, "--at gives one row; it excludes --energies and --samples");
-  if (cmd->poles && (cmd->has_at || cmd->has_samples || cmd->has_energies))
+  if (cmd->poles && cmd->nodes)
+    return usage_error(cmd->verb, "--poles and --nodes exclude each other; one table a call");
+  if ((cmd->poles || cmd->nodes) && (cmd->has_at || cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb,
-                       "--poles lists every resonance; it excludes --at, --energies and --samples");
+                       "--%s lists all there are; it excludes --at, --energies and --samples",
+                       cmd->poles ? "poles" : "nodes");
   return EXIT_DONE;
 }
 
@@ -106,7 +122,9 @@ int command_transmission(const command *cmd, mho_error *error)
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
   mho_table *table =
-      cmd->poles ? mho_poles_table(&output) : mho_transmission_table(&output);
+      cmd->poles   ? mho_poles_table(&output)
+      : cmd->nodes ? mho_nodes_table(&output)
+                   : mho_transmission_table(&output);
   for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
     status = add_molecule(cmd, &list[i], &output, table, error);
   if (status == MHO_OK) status = output_write(cmd, &output, error);

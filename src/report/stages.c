@@ -46,6 +46,33 @@ void mho_conductance_row(mho_table *table, const char *molecule,
   add_warning_words(table, warnings);
 }
 
+mho_table *mho_sensitivity_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "parameter", "derivative_log10_G0", "sigma",
+                                        "contribution_decades"};
+  return mho_output_table(output, "sensitivity", columns, COUNT(columns));
+}
+
+void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
+                          const mho_sensitivity *sensitivity)
+{
+  char name[2 * MHO_ID_SIZE + 32];
+  for (size_t p = 0; p < sensitivity->count; p++) {
+    const mho_sensitivity_row *row = &sensitivity->row[p];
+    mho_table_text(table, molecule->name);
+    mho_table_text(table, mho_sensitivity_name(row, molecule, name, sizeof name));
+    mho_table_optional(table, sensitivity->has_derivatives, row->derivative_log10_g0);
+    mho_table_number(table, row->sigma);
+    mho_table_optional(table, sensitivity->has_derivatives, row->contribution_decades);
+  }
+  bool linear = sensitivity->rule == MHO_RULE_LINEAR;
+  mho_table_text(table, molecule->name);
+  mho_table_text(table, linear ? "all (linear rule)" : "all (Monte Carlo)");
+  mho_table_empty(table);
+  mho_table_empty(table);
+  mho_table_optional(table, sensitivity->has_error, sensitivity->error_decades);
+}
+
 mho_table *mho_transmission_table(mho_output *output)
 {
   static const char *const columns[] = {"molecule", "energy_eV", "transmission",
@@ -98,6 +125,26 @@ void mho_compare_row(mho_table *table, const char *molecule, const mho_compariso
   mho_table_optional(table, c->has_ratio, c->ratio_computed);
   mho_table_optional(table, c->has_ratio, c->ratio_measured);
   mho_table_optional(table, c->has_ratio, c->deviation_decades);
+}
+
+mho_table *mho_nodes_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "energy_eV", "imaginary_eV", "order", "kind"};
+  return mho_output_table(output, "nodes", columns, COUNT(columns));
+}
+
+void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_node *node)
+{
+  static const char *const kind[] = {
+      [MHO_NODE_EXACT] = "node", [MHO_NODE_DIP] = "dip", [MHO_NODE_MINIMUM] = "minimum"};
+  bool zero = node->kind != MHO_NODE_MINIMUM;
+  mho_table_text(table, molecule);
+  mho_table_number(table, node->energy_ev - fermi_ev);
+  mho_table_optional(table, zero, node->imaginary_ev);
+  if (zero) mho_table_integer(table, node->order);
+  else mho_table_empty(table);
+  mho_table_text(table, kind[node->kind]);
 }
 
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

@@ -9,6 +9,8 @@
 #include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/molecule.h>
+#include <mho/nodes.h>
+#include <mho/sensitivity.h>
 #include <mho/transmission.h>
 
 #include "report/table.h"
@@ -16,6 +18,11 @@
 mho_table *mho_conductance_table(mho_output *output);
 void mho_conductance_row(mho_table *table, const char *molecule,
                          const mho_conductance *conductance, unsigned warnings);
+
+/* Every parameter, then a row for all of them that names the rule. */
+mho_table *mho_sensitivity_table(mho_output *output);
+void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
+                          const mho_sensitivity *sensitivity);
 
 /* energy_ev is absolute; the table has it relative to fermi_ev. */
 mho_table *mho_transmission_table(mho_output *output);
@@ -25,6 +32,10 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
 mho_table *mho_poles_table(mho_output *output);
 void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_pole *pole);
+
+mho_table *mho_nodes_table(mho_output *output);
+void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
+                   const mho_node *node);
 
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);

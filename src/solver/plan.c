@@ -1,18 +1,13 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
- * The plan of a junction and the ladder of methods over it.
+ * What the methods share: non-zeros of H, channels, a narrow order of the
+ * sites, and the orbitals' amplitudes where the molecule was diagonalised.
  */
 #include "solver/plan.h"
 
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
-
-/* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
- * is done again in extended precision. */
-#define CONTRACT_FLOOR 1e-12
-#define CONTRACT_CEILING 1e-10
-#define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
 static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
 {
@@ -29,23 +24,101 @@ static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
   return MHO_OK;
 }
 
-static mho_status collect_channels(const mho_junction *junction, mho_plan *plan)
+static mho_status collect_support(mho_plan *plan)
 {
-  size_t n = (size_t)junction->sites, m = (size_t)plan->channels;
+  size_t n = (size_t)plan->sites, m = (size_t)plan->channels, count = 0;
+  for (size_t k = 0; k < m * n; k++) count += plan->vector[k] != 0.0;
+  plan->support = malloc((count ? count : 1) * sizeof(int));
+  plan->support_start = malloc((m + 1) * sizeof(size_t));
+  if (!plan->support || !plan->support_start) return MHO_ERR_MEMORY;
+  count = 0;
+  for (size_t c = 0; c < m; c++) {
+    plan->support_start[c] = count;
+    for (size_t i = 0; i < n; i++)
+      if (plan->vector[c * n + i] != 0.0) plan->support[count++] = (int)i;
+  }
+  plan->support_start[m] = count;
+  return MHO_OK;
+}
+
+static mho_status collect_channels(const mho_lead *const lead[2], mho_plan *plan)
+{
+  size_t n = (size_t)plan->sites, first = 0;
+  plan->left = lead[MHO_LEFT]->channels;
+  plan->right = lead[MHO_RIGHT]->channels;
+  plan->channels = plan->left + plan->right;
+  size_t m = (size_t)plan->channels;
   plan->coupling_ev = malloc(m * sizeof(double));
   plan->shift_ev = malloc(m * sizeof(double));
   plan->vector = malloc(m * n * sizeof(double));
   if (!plan->coupling_ev || !plan->shift_ev || !plan->vector) return MHO_ERR_MEMORY;
-  size_t first = 0;
   for (int side = 0; side < 2; side++) {
-    const mho_lead *lead = &junction->lead[side];
-    size_t count = (size_t)lead->channels;
-    memcpy(plan->coupling_ev + first, lead->coupling_ev, count * sizeof(double));
-    memcpy(plan->shift_ev + first, lead->shift_ev, count * sizeof(double));
-    memcpy(plan->vector + first * n, lead->vector, count * n * sizeof(double));
+    size_t count = (size_t)lead[side]->channels;
+    memcpy(plan->coupling_ev + first, lead[side]->coupling_ev, count * sizeof(double));
+    memcpy(plan->shift_ev + first, lead[side]->shift_ev, count * sizeof(double));
+    memcpy(plan->vector + first * n, lead[side]->vector, count * n * sizeof(double));
     first += count;
   }
+  return collect_support(plan);
+}
+
+/* Calls back once for each ordered pair of sites that H or Sigma joins:
+ * counts them, or with `fill` stores them at neighbour_start, which moves on. */
+static void add_neighbour(mho_plan *plan, int i, int j, bool fill)
+{
+  if (i == j) return;
+  if (fill) plan->neighbour[plan->neighbour_start[i]++] = j;
+  else plan->neighbour_start[i + 1]++;
+}
+
+static void walk_pattern(mho_plan *plan, bool fill)
+{
+  for (size_t e = 0; e < plan->entries; e++) {
+    if (plan->entry[e].value_ev == 0.0) continue;
+    add_neighbour(plan, plan->entry[e].i, plan->entry[e].j, fill);
+    add_neighbour(plan, plan->entry[e].j, plan->entry[e].i, fill);
+  }
+  for (int c = 0; c < plan->channels; c++)
+    for (size_t a = plan->support_start[c]; a < plan->support_start[c + 1]; a++)
+      for (size_t b = plan->support_start[c]; b < plan->support_start[c + 1]; b++)
+        add_neighbour(plan, plan->support[a], plan->support[b], fill);
+}
+
+static mho_status collect_neighbours(mho_plan *plan)
+{
+  size_t n = (size_t)plan->sites;
+  plan->neighbour_start = calloc(n + 2, sizeof(size_t));
+  if (!plan->neighbour_start) return MHO_ERR_MEMORY;
+  walk_pattern(plan, false);
+  for (size_t i = 0; i < n; i++) plan->neighbour_start[i + 1] += plan->neighbour_start[i];
+  plan->neighbour = malloc((plan->neighbour_start[n] + 1) * sizeof(int));
+  if (!plan->neighbour) return MHO_ERR_MEMORY;
+  walk_pattern(plan, true); /* every start now stands at its end */
+  memmove(plan->neighbour_start + 1, plan->neighbour_start, n * sizeof(size_t));
+  plan->neighbour_start[0] = 0;
   return MHO_OK;
+}
+
+/* True if some chain of hoppings leads from the left to the right contact. */
+static mho_status find_connection(mho_plan *plan)
+{
+  size_t n = (size_t)plan->sites, head = 0, tail = 0;
+  size_t right = plan->support_start[plan->left], all = plan->support_start[plan->channels];
+  int *queue = malloc(n * sizeof(int));
+  bool *reached = calloc(n, sizeof(bool));
+  if (queue && reached) {
+    for (size_t k = 0; k < right; k++)
+      if (!reached[plan->support[k]]) reached[queue[tail++] = plan->support[k]] = true;
+    for (; head < tail; head++)
+      for (size_t k = plan->neighbour_start[queue[head]];
+           k < plan->neighbour_start[queue[head] + 1]; k++)
+        if (!reached[plan->neighbour[k]]) reached[queue[tail++] = plan->neighbour[k]] = true;
+    for (size_t k = right; k < all; k++) plan->connected |= reached[plan->support[k]];
+  }
+  mho_status status = queue && reached ? MHO_OK : MHO_ERR_MEMORY;
+  free(queue);
+  free(reached);
+  return status;
 }
 
 /* <orbital k|v_c> for all levels and channels. */
@@ -60,36 +133,101 @@ static mho_status project_orbitals(const mho_junction *junction, mho_plan *plan)
   for (size_t k = 0; k < n; k++)
     for (size_t c = 0; c < m; c++) {
       double sum = 0;
-      for (size_t i = 0; i < n; i++)
+      for (size_t a = plan->support_start[c]; a < plan->support_start[c + 1]; a++) {
+        size_t i = (size_t)plan->support[a];
         sum += junction->orbital[k * n + i] * plan->vector[c * n + i];
+      }
       plan->amplitude[k * m + c] = sum;
     }
   return MHO_OK;
 }
 
-mho_status mho_plan_create(const mho_junction *junction, mho_plan **result,
-                           mho_error *error)
+/* Largest sum of |H_ij| over a row bounds the 2-norm. */
+static mho_status bound_norm(mho_plan *plan)
 {
-  *result = NULL;
-  if (!junction->lead[MHO_LEFT].channels || !junction->lead[MHO_RIGHT].channels)
+  double *row = calloc((size_t)plan->sites, sizeof(double));
+  if (!row) return MHO_ERR_MEMORY;
+  for (size_t e = 0; e < plan->entries; e++) {
+    double size = fabs(plan->entry[e].value_ev);
+    row[plan->entry[e].i] += size;
+    if (plan->entry[e].i != plan->entry[e].j) row[plan->entry[e].j] += size;
+  }
+  for (int i = 0; i < plan->sites; i++) plan->norm_ev = fmax(plan->norm_ev, row[i]);
+  free(row);
+  return MHO_OK;
+}
+
+static mho_status start(int sites, const mho_lead *left, const mho_lead *right,
+                        mho_plan **plan, mho_error *error)
+{
+  *plan = NULL;
+  if (!left->channels || !right->channels)
     return mho_fail(error, MHO_ERR_CONTACTS, "solver", "electrodes",
                     "transmission needs a left and a right contact");
-  mho_plan *plan = calloc(1, sizeof *plan);
-  if (!plan) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  plan->sites = junction->sites;
-  plan->left = junction->lead[MHO_LEFT].channels;
-  plan->right = junction->lead[MHO_RIGHT].channels;
-  plan->channels = plan->left + plan->right;
-  mho_status status = mho_junction_is_connected(junction, &plan->connected, NULL);
-  if (status == MHO_OK) status = collect_entries(junction, plan);
-  if (status == MHO_OK) status = collect_channels(junction, plan);
-  if (status == MHO_OK) status = project_orbitals(junction, plan);
-  if (status != MHO_OK) {
-    mho_plan_free(plan);
-    return mho_fail(error, status, "solver", NULL, "out of memory");
-  }
-  *result = plan;
+  *plan = calloc(1, sizeof **plan);
+  if (!*plan) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  (*plan)->sites = sites;
   return MHO_OK;
+}
+
+/* Everything that follows from entries and leads. */
+static mho_status prepare(const mho_lead *left, const mho_lead *right, mho_plan *plan)
+{
+  mho_status status = collect_channels((const mho_lead *const[]){left, right}, plan);
+  if (status == MHO_OK) status = collect_neighbours(plan);
+  if (status == MHO_OK) status = find_connection(plan);
+  return status == MHO_OK ? mho_plan_order(plan) : status;
+}
+
+static mho_status finish(mho_status status, mho_plan **plan, mho_error *error)
+{
+  if (status == MHO_OK) return MHO_OK;
+  mho_plan_free(*plan);
+  *plan = NULL;
+  return mho_fail(error, status, "solver", NULL, "out of memory");
+}
+
+mho_status mho_plan_create(const mho_junction *junction, mho_plan **plan, mho_error *error)
+{
+  const mho_lead *left = &junction->lead[MHO_LEFT], *right = &junction->lead[MHO_RIGHT];
+  mho_status status = start(junction->sites, left, right, plan, error);
+  if (status != MHO_OK) return status;
+  status = collect_entries(junction, *plan);
+  if (status == MHO_OK) status = prepare(left, right, *plan);
+  if (status == MHO_OK) status = project_orbitals(junction, *plan);
+  return finish(status, plan, error);
+}
+
+static mho_status check_entries(int sites, const mho_entry *entry, size_t entries,
+                                mho_error *error)
+{
+  for (size_t e = 0; e < entries; e++) {
+    if (entry[e].i < 0 || entry[e].i > entry[e].j || entry[e].j >= sites)
+      return mho_fail(error, MHO_ERR_SIZE, "solver", "entry",
+                      "entry %zu joins sites %d and %d; allowed are 0 <= i <= j < %d", e,
+                      entry[e].i, entry[e].j, sites);
+    if (!isfinite(entry[e].value_ev))
+      return mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "entry",
+                      "entry %zu is not a finite number", e);
+  }
+  return MHO_OK;
+}
+
+mho_status mho_plan_create_sparse(int sites, const mho_entry *entry, size_t entries,
+                                  const mho_lead *left, const mho_lead *right,
+                                  mho_plan **plan, mho_error *error)
+{
+  *plan = NULL;
+  mho_status status = check_entries(sites, entry, entries, error);
+  if (status == MHO_OK) status = start(sites, left, right, plan, error);
+  if (status != MHO_OK) return status;
+  (*plan)->entry = malloc((entries ? entries : 1) * sizeof *entry);
+  (*plan)->entries = entries;
+  if (!(*plan)->entry) return finish(MHO_ERR_MEMORY, plan, error);
+  if (entries) memcpy((*plan)->entry, entry, entries * sizeof *entry);
+  status = prepare(left, right, *plan);
+  if (status == MHO_OK) status = bound_norm(*plan);
+  return finish(status, plan, error);
 }
 
 void mho_plan_free(mho_plan *plan)
@@ -99,6 +237,12 @@ void mho_plan_free(mho_plan *plan)
   free(plan->coupling_ev);
   free(plan->shift_ev);
   free(plan->vector);
+  free(plan->support);
+  free(plan->support_start);
+  free(plan->neighbour);
+  free(plan->neighbour_start);
+  free(plan->order);
+  free(plan->place);
   free(plan->level_ev);
   free(plan->amplitude);
   free(plan);
@@ -109,90 +253,4 @@ int mho_plan_sites(const mho_plan *plan) { return plan->sites; }
 int mho_plan_channels(const mho_plan *plan)
 {
   return plan->left < plan->right ? plan->left : plan->right;
-}
-
-/* What one thread needs besides the plan; the extended one only on demand. */
-typedef struct {
-  mho_elimination_double *plain;
-  mho_elimination_quad *extended;
-} workspace;
-
-static void set_point(const mho_plan *plan, const mho_estimate *estimate,
-                      mho_method method, mho_point *point)
-{
-  double most = mho_plan_channels(plan);
-  *point = (mho_point){.transmission = estimate->transmission,
-                       .log10_transmission = estimate->log10_transmission,
-                       .relative_error = estimate->relative_error,
-                       .method = method};
-  if (point->transmission > most) {
-    point->transmission = most;
-    point->log10_transmission = log10(most);
-  }
-}
-
-static bool keeps_contract(const mho_estimate *estimate)
-{
-  double allowed = fmax(CONTRACT_FLOOR, CONTRACT_KAPPA * estimate->kappa);
-  return estimate->first_order &&
-         estimate->relative_error <= fmin(allowed, CONTRACT_CEILING);
-}
-
-/* The last rung: what 113 bits cannot tell from zero is a node. */
-static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
-                         mho_point *point)
-{
-  set_point(plan, estimate, MHO_METHOD_EXTENDED, point);
-  if (estimate->relative_error > 0.5 && !(estimate->transmission > 1e-20)) {
-    *point = (mho_point){.node = true, .method = MHO_METHOD_EXTENDED};
-    return;
-  }
-  point->unresolved =
-      !estimate->first_order || !(estimate->relative_error <= CONTRACT_CEILING);
-  if (!isfinite(point->relative_error)) point->relative_error = 1.0;
-}
-
-static mho_status evaluate(const mho_plan *plan, workspace *work,
-                           double energy_ev, mho_point *point)
-{
-  mho_estimate estimate;
-  if (!plan->connected) {
-    *point = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
-    return MHO_OK;
-  }
-  mho_spectrum_evaluate(plan, energy_ev, &estimate);
-  if (keeps_contract(&estimate)) {
-    set_point(plan, &estimate, MHO_METHOD_SPECTRUM, point);
-    return MHO_OK;
-  }
-  if (!work->plain) work->plain = mho_elimination_create_double(plan);
-  if (!work->plain) return MHO_ERR_MEMORY;
-  mho_elimination_evaluate_double(plan, work->plain, energy_ev, &estimate);
-  if (keeps_contract(&estimate)) {
-    set_point(plan, &estimate, MHO_METHOD_ELIMINATION, point);
-    return MHO_OK;
-  }
-  if (!work->extended) work->extended = mho_elimination_create_quad(plan);
-  if (!work->extended) return MHO_ERR_MEMORY;
-  mho_elimination_evaluate_quad(plan, work->extended, energy_ev, &estimate);
-  set_extended(plan, &estimate, point);
-  return MHO_OK;
-}
-
-mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
-                                  const double *energy_ev, mho_point *point,
-                                  mho_error *error)
-{
-  workspace work = {0};
-  mho_status status = MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < count; i++) {
-    if (!isfinite(energy_ev[i]))
-      status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
-                        "energy %zu is not a finite number", i);
-    else if (evaluate(plan, &work, energy_ev[i], &point[i]) != MHO_OK)
-      status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  }
-  mho_elimination_free_double(work.plain);
-  mho_elimination_free_quad(work.extended);
-  return status;
 }

@@ -12,22 +12,25 @@
 
 #include <float.h>
 
+#include <mho/gradient.h>
 #include <mho/transmission.h>
-
-typedef struct {
-  int i, j; /* i <= j */
-  double value_ev;
-} mho_entry;
 
 struct mho_plan {
   int sites, left, right, channels; /* channels = left + right */
   bool connected;
-  double norm_ev; /* 2-norm of H */
-  mho_entry *entry; /* non-zeros of H, upper triangle with the diagonal */
+  double norm_ev; /* 2-norm of H, or a bound on it */
+  mho_entry *entry; /* non-zeros of H, i <= j, with the diagonal */
   size_t entries;
+  size_t *neighbour_start; /* [sites + 1]: pattern of H and of Sigma, no diagonal */
+  int *neighbour;
+  int *order, *place; /* [sites]: site at a place of a narrow band, and back */
+  size_t bandwidth;   /* of H and Sigma in that order */
+  size_t band; /* to eliminate within, or 0 where full elimination is as good */
+  size_t *support_start; /* [channels + 1]: sites where v_c is not zero */
+  int *support;
   double *coupling_ev, *shift_ev; /* [channels] */
   double *vector;                 /* [channels][sites] */
-  double *level_ev;               /* [sites] */
+  double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
 };
 
@@ -46,12 +49,17 @@ typedef struct {
   double kappa;
 } mho_estimate;
 
+/* Order that makes the band narrow, over plan->neighbour; order.c. */
+MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
+
 /* Sum over the levels of the bare molecule; spectrum.c. */
 void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
                            mho_estimate *estimate);
 
 /* Gaussian elimination in double and in 113 bits; elimination.inc.  The
- * workspace belongs to one thread; create returns NULL without memory. */
+ * workspace belongs to one thread; create returns NULL without memory.
+ * differentiate follows an evaluate that found T, fills all derivatives and
+ * returns an estimate of the error of the sum of all p dlnT/dp. */
 typedef struct mho_elimination_double mho_elimination_double;
 typedef struct mho_elimination_quad mho_elimination_quad;
 
@@ -61,10 +69,20 @@ void mho_elimination_evaluate_double(const mho_plan *plan,
                                      mho_elimination_double *workspace,
                                      double energy_ev, mho_estimate *estimate);
 
+double mho_elimination_differentiate_double(const mho_plan *plan,
+                                        mho_elimination_double *workspace,
+                                        double energy_ev, double relative_error,
+                                        mho_gradient *gradient);
+
 mho_elimination_quad *mho_elimination_create_quad(const mho_plan *plan);
 void mho_elimination_free_quad(mho_elimination_quad *workspace);
 void mho_elimination_evaluate_quad(const mho_plan *plan,
                                    mho_elimination_quad *workspace,
                                    double energy_ev, mho_estimate *estimate);
+
+double mho_elimination_differentiate_quad(const mho_plan *plan,
+                                        mho_elimination_quad *workspace,
+                                        double energy_ev, double relative_error,
+                                        mho_gradient *gradient);
 
 #endif

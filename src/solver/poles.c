@@ -2,7 +2,7 @@
  *
  * Poles: eigenvalues of H + Sigma, complex symmetric, so that the general
  * eigensolver is used.  A state that no contact sees has width 0; so has one
- * whose width is below the rounding of that solver.
+ * whose amplitude on the contacts is rounding.
  */
 #include <math.h>
 #include <stdlib.h>
@@ -10,6 +10,9 @@
 
 #include "base/lapack.h"
 #include "solver/plan.h"
+
+/* An amplitude on a contact below this is rounding. */
+#define MIXING_MIN 1e-13
 
 static int compare_poles(const void *a, const void *b)
 {
@@ -23,7 +26,8 @@ static void effective_hamiltonian(const mho_plan *plan, double complex *matrix)
   size_t n = (size_t)plan->sites;
   for (size_t e = 0; e < plan->entries; e++) {
     size_t i = (size_t)plan->entry[e].i, j = (size_t)plan->entry[e].j;
-    matrix[i * n + j] = matrix[j * n + i] = plan->entry[e].value_ev;
+    matrix[i * n + j] += plan->entry[e].value_ev;
+    if (i != j) matrix[j * n + i] += plan->entry[e].value_ev;
   }
   for (int c = 0; c < plan->channels; c++) {
     const double *v = plan->vector + (size_t)c * n;
@@ -34,80 +38,51 @@ static void effective_hamiltonian(const mho_plan *plan, double complex *matrix)
   }
 }
 
-mho_status mho_poles(const mho_plan *plan, mho_pole *pole, mho_error *error)
+/* The width of state x is what each contact takes of it,
+ *   -2 Im E = sum_c Gamma_c |v_c.x|^2 / |x|^2,
+ * to more digits than the eigenvalue has.  Below what rounding mixes in, it is 0. */
+static void set_widths(const mho_plan *plan, const double complex *x, mho_pole *pole)
 {
   size_t n = (size_t)plan->sites;
-  double complex *matrix = calloc(n * n, sizeof *matrix);
+  double norm = 0, width[2] = {0, 0}, total = 0;
+  for (size_t i = 0; i < n; i++) norm += creal(x[i] * conj(x[i]));
+  for (int c = 0; c < plan->channels; c++) {
+    double complex overlap = 0;
+    for (size_t k = plan->support_start[c]; k < plan->support_start[c + 1]; k++)
+      overlap += plan->vector[(size_t)c * n + (size_t)plan->support[k]] * x[plan->support[k]];
+    width[c < plan->left ? MHO_LEFT : MHO_RIGHT] +=
+        plan->coupling_ev[c] * creal(overlap * conj(overlap)) / norm;
+    total += plan->coupling_ev[c];
+  }
+  double mixed = fmax(MIXING_MIN, 4.0 * (double)n * DBL_EPSILON * plan->norm_ev / total);
+  for (int side = 0; side < 2; side++)
+    if (!(width[side] > total * mixed * mixed)) width[side] = 0;
+  pole->left_width_ev = width[MHO_LEFT];
+  pole->right_width_ev = width[MHO_RIGHT];
+  pole->width_ev = width[MHO_LEFT] + width[MHO_RIGHT];
+}
+
+mho_status mho_poles(const mho_plan *plan, mho_pole *pole, mho_error *error)
+{
+  if (plan->sites > MHO_SITE_LIMIT)
+    return mho_fail(error, MHO_ERR_LIMIT, "solver", "poles",
+                    "poles need a full matrix; allowed are %d sites", MHO_SITE_LIMIT);
+  size_t n = (size_t)plan->sites;
+  double complex *matrix = calloc(2 * n * n, sizeof *matrix), *vector = matrix + n * n;
   double complex *value = malloc(n * sizeof *value);
   mho_status status = MHO_OK;
   if (!matrix || !value)
     status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   if (status == MHO_OK) {
     effective_hamiltonian(plan, matrix);
-    status = mho_eigenvalues_complex(plan->sites, matrix, value, error);
+    status = mho_eigen_complex(plan->sites, matrix, value, vector, error);
   }
-  double rounding = 4.0 * (double)n * DBL_EPSILON * plan->norm_ev;
   for (size_t k = 0; status == MHO_OK && k < n; k++) {
-    double width = -2.0 * cimag(value[k]);
-    pole[k] = (mho_pole){creal(value[k]), width > rounding ? width : 0.0};
+    pole[k].energy_ev = creal(value[k]);
+    set_widths(plan, vector + k * n, &pole[k]);
   }
   if (status == MHO_OK) qsort(pole, n, sizeof *pole, compare_poles);
   free(matrix);
   free(value);
   return status;
-}
-
-/* Distances from a pole, in its widths, that draw a Lorentzian well. */
-static const double pole_offset[] = {0,   0.05, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.65,
-                                     0.8, 1,    1.5, 2,    3,   5,   8,   13,  21,
-                                     40,  80,   160, 320,  640, 1280};
-enum { POLE_OFFSETS = sizeof pole_offset / sizeof *pole_offset };
-
-static int compare_doubles(const void *a, const void *b)
-{
-  double x = *(const double *)a, y = *(const double *)b;
-  return (x > y) - (x < y);
-}
-
-mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev,
-                           int even, double **energy_ev, size_t *count,
-                           mho_error *error)
-{
-  *energy_ev = NULL;
-  if (!(low_ev < high_ev) || even < 2)
-    return mho_fail(error, MHO_ERR_RANGE, "solver", "energies",
-                    "the lower energy must be below the upper one");
-  size_t n = (size_t)plan->sites;
-  mho_pole *pole = malloc(n * sizeof *pole);
-  double *grid = malloc(((size_t)even + n * 2 * POLE_OFFSETS) * sizeof *grid);
-  mho_status status = MHO_OK;
-  if (!pole || !grid)
-    status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  if (status == MHO_OK) status = mho_poles(plan, pole, error);
-  if (status != MHO_OK) {
-    free(pole);
-    free(grid);
-    return status;
-  }
-  double step = (high_ev - low_ev) / (even - 1);
-  size_t filled = 0;
-  for (int i = 0; i < even; i++)
-    grid[filled++] = i == even - 1 ? high_ev : low_ev + i * step;
-  for (size_t k = 0; k < n; k++)
-    for (int o = 0; o < POLE_OFFSETS; o++) {
-      double offset = pole_offset[o] * pole[k].width_ev;
-      for (int side = -1; side <= 1; side += 2) {
-        double energy = pole[k].energy_ev + side * offset;
-        bool useful = offset < 2 * step && energy > low_ev && energy < high_ev;
-        if (useful && !(o == 0 && side > 0)) grid[filled++] = energy;
-      }
-    }
-  qsort(grid, filled, sizeof *grid, compare_doubles);
-  size_t kept = 1;
-  for (size_t i = 1; i < filled; i++)
-    if (grid[i] > grid[kept - 1]) grid[kept++] = grid[i];
-  free(pole);
-  *energy_ev = grid;
-  *count = kept;
-  return MHO_OK;
 }

@@ -1,0 +1,54 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Where the transmission vanishes.  With one channel a contact,
+ * T = Gamma_L Gamma_R |P/D|^2 where P(E) = v_r^T adj(E - H) v_l is a real
+ * polynomial that does not depend on Gamma.  Its real zeros are exact nodes, a
+ * complex pair is a dip of T near its real part.
+ */
+#ifndef MHOLECULE_NODES_H
+#define MHOLECULE_NODES_H
+
+#include <mho/transmission.h>
+
+typedef enum {
+  MHO_NODE_EXACT,  /* T = 0 at a real energy */
+  MHO_NODE_DIP,    /* a pair of zeros at energy +- i imaginary */
+  MHO_NODE_MINIMUM /* a local minimum of T, where contacts have more channels */
+} mho_node_kind;
+
+typedef struct {
+  mho_node_kind kind;
+  double energy_ev;
+  double imaginary_ev; /* > 0 for a dip, else 0 */
+  int order;           /* multiplicity of the zero; 0 for a minimum */
+} mho_node;
+
+typedef struct {
+  size_t count;
+  mho_node *node;  /* by ascending energy */
+  bool everywhere; /* P = 0: by symmetry, or because no path joins the contacts */
+  int unseen;      /* states that no contact sees; they cancel from P and D */
+  int zeros;       /* zeros with multiplicity, a dip counting twice */
+} mho_nodes;
+
+/* More states than this that a contact sees, and minima are searched. */
+enum { MHO_NODES_STATES_MAX = 300 };
+
+MHO_BEGIN_DECLARATIONS
+
+/* All nodes of a plan; the caller clears the result, also after a failure.
+ *
+ * In 113 bits: states that neither contact sees are deflated by a block
+ * Krylov basis, the infinite zeros of the bordered pencil
+ * [[H, v_l], [v_r^T, 0]] - E diag(1, 0) by its staircase form (A. Emami-Naeini
+ * and P. Van Dooren, Automatica 18, 415 (1982)); the finite ones are polished
+ * on P itself, counted by the argument principle and checked by evaluation.
+ * Errors: MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA, MHO_ERR_NOT_CONVERGED. */
+MHO_API MHO_MUST_USE mho_status mho_nodes_find(const mho_plan *plan,
+                                               mho_nodes *result,
+                                               mho_error *error);
+MHO_API void mho_nodes_clear(mho_nodes *result);
+
+MHO_END_DECLARATIONS
+
+#endif
