@@ -164,4 +164,6 @@ void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                   molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
                   fermi, relative ? " = " : "", relative ? at : "", relative ? " eV" : "",
                   temperature);
+  for (int i = 0; i < molecule->notes.count; i++)
+    mho_output_note(output, "%s: %s", molecule->name, molecule->notes.text[i]);
 }
