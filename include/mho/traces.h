@@ -62,7 +62,8 @@ typedef struct {
 typedef struct {
   uint64_t files, failed_files, truncated_files;
   uint64_t traces;
-  uint64_t abandoned_traces; /* left unfinished by a failed file */
+  uint64_t abandoned_traces; /* left unfinished by a failed file, */
+  uint64_t abandoned_points; /* with what was read of them */
   uint64_t points;           /* all; of them: */
   uint64_t not_finite;       /* nan, inf or an empty cell */
   uint64_t not_positive;     /* zero or negative: censored where a floor is */

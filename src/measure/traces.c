@@ -260,7 +260,8 @@ static mho_status next_piece(mho_trace_reader *reader, mho_trace_chunk *chunk,
     if (chunk->abscissa != MHO_ABSCISSA_NONE) chunk->x = reader->x;
   }
   reader->trace_point += reader->count;
-  reader->in_trace = was_in_trace || reader->count > 0;
+  reader->count = 0;
+  reader->in_trace = was_in_trace || chunk->count > 0;
   if (chunk->last) {
     if (reader->in_trace) reader->trace++, reader->report.traces++;
     else chunk->last = false; /* an empty line between traces */
@@ -282,8 +283,9 @@ static mho_status give_up_file(mho_trace_reader *reader, mho_status status)
 {
   reader->report.failed_files++;
   reader->report.truncated_files += reader->source.truncated;
-  if (reader->in_trace) {
+  if (reader->in_trace || reader->count > 0) {
     reader->report.abandoned_traces++;
+    reader->report.abandoned_points += reader->trace_point + reader->count;
     reader->trace++;
   }
   close_file(reader);
