@@ -12,7 +12,7 @@
 
 #include <mho/histogram.h>
 
-enum { MHO_PEAK_LIMIT = 6, MHO_COMB_LIMIT = 6, MHO_CLUSTER_LIMIT = 5 };
+enum { MHO_PEAK_LIMIT = 5, MHO_COMB_LIMIT = 6, MHO_CLUSTER_LIMIT = 5 };
 
 /* --- Peaks of the logarithmic histogram ------------------------------- */
 
@@ -57,8 +57,9 @@ MHO_BEGIN_DECLARATIONS
 
 MHO_API void mho_peak_options_init(mho_peak_options *options);
 
-/* A mixture of Gaussians and a plateau with soft edges and a tilt (the
- * tunnelling background) is fitted by maximum likelihood; a component is a
+/* A mixture of Gaussians, each with the tail that its traces leave on their way
+ * down, and a plateau with soft edges and a tilt (the tunnelling background)
+ * is fitted by maximum likelihood; a component is a
  * peak if the fitted density has a local maximum there, in all but
  * `significance` of the resamples, that stands `prominence` over its higher
  * flank and is narrower than a decade at half height.  No peak: count = 0,

@@ -7,6 +7,8 @@
 #define SQRT1_2 0.70710678118654752440
 #define SQRT_1_2PI 0.39894228040143267794
 
+enum { G = MHO_GAUSSIAN_PARAMETERS };
+
 /* A little everywhere, so that no count is impossible. */
 #define RATE_FLOOR 1e-6
 
@@ -35,6 +37,31 @@ static void add_gaussian(const mho_mixture *m, const double *p, int column, int 
     z = z1;
     cdf = cdf1;
   }
+}
+
+static void add_tail(const mho_mixture *m, const double *p, int column, int n, double *rate,
+                     double *jacobian)
+{
+  double sigma = exp(p[2]), edge = p[1] - p[4], height = exp(p[3]);
+  for (int i = 0; i < m->bins; i++) {
+    double z = (0.5 * (m->edge[i + 1] + m->edge[i]) - edge) / sigma;
+    double scale = height * (m->edge[i + 1] - m->edge[i]);
+    double part = scale * 0.5 * erfc(z * SQRT1_2);
+    rate[i] += part;
+    if (!jacobian) continue;
+    double slope = scale * normal(z), *row = jacobian + i * n + column;
+    row[1] += slope / sigma;
+    row[2] += slope * z;
+    row[3] = part;
+    row[4] = -slope / sigma;
+  }
+}
+
+static void add_component(const mho_mixture *m, const double *p, int column, int n,
+                          double *rate, double *jacobian)
+{
+  add_gaussian(m, p, column, n, rate, jacobian);
+  add_tail(m, p, column, n, rate, jacobian);
 }
 
 static void add_plateau(const mho_mixture *m, const double *p, int column, int n,
@@ -67,8 +94,8 @@ static void mixture_rate(const void *context, const double *parameter, double *r
   int n = MHO_MIXTURE_PARAMETERS(m->gaussians);
   for (int i = 0; i < m->bins; i++) rate[i] = RATE_FLOOR;
   for (int k = 0; k < m->gaussians; k++)
-    add_gaussian(m, parameter + 3 * k, 3 * k, n, rate, jacobian);
-  int last = MHO_GAUSSIAN_PARAMETERS * m->gaussians;
+    add_component(m, parameter + G * k, G * k, n, rate, jacobian);
+  int last = G * m->gaussians;
   add_plateau(m, parameter + last, last, n, rate, jacobian);
 }
 
@@ -80,8 +107,9 @@ mho_fit_problem mho_mixture_problem(const mho_mixture *mixture)
                              MHO_MIXTURE_PARAMETERS(mixture->gaussians), {0}, {0}};
   int n = 0;
   for (int k = 0; k < mixture->gaussians; k++) {
-    const double lower[3] = {-20.0, low, log(0.5 * bin)}, upper[3] = {40.0, high, log(0.6)};
-    for (int j = 0; j < 3; j++, n++) problem.lower[n] = lower[j], problem.upper[n] = upper[j];
+    const double lower[G] = {-20.0, low, log(0.5 * bin), -20.0, 0.0};
+    const double upper[G] = {40.0, high, log(0.6), 40.0, 1.5};
+    for (int j = 0; j < G; j++, n++) problem.lower[n] = lower[j], problem.upper[n] = upper[j];
   }
   double soft = log(0.02), softest = log(0.6);
   const double lower[6] = {-20.0, low - 1.0, 1.0, soft, soft, -2.0};
@@ -105,10 +133,10 @@ double mho_mixture_density(const mho_mixture *mixture, const double *parameter, 
   double edge[2] = {x - 5e-4, x + 5e-4}, rate = 0.0, sum;
   mho_mixture narrow = {1, mixture->gaussians, edge};
   for (int k = 0; k < mixture->gaussians; k++)
-    add_gaussian(&narrow, parameter + 3 * k, 0, 0, &rate, NULL);
+    add_component(&narrow, parameter + G * k, 0, 0, &rate, NULL);
   sum = rate / 1e-3;
   /* The tilt counts from the middle of the whole window. */
-  const double *p = parameter + 3 * mixture->gaussians;
+  const double *p = parameter + G * mixture->gaussians;
   double centre = 0.5 * (mixture->edge[0] + mixture->edge[mixture->bins]);
   double part = erf((x - p[1]) / exp(p[3]) * SQRT1_2) - erf((x - p[1] - p[2]) / exp(p[4]) * SQRT1_2);
   return sum + fmax(0.0, 0.5 * part * exp(p[0] + p[5] * (x - centre)));
@@ -117,7 +145,7 @@ double mho_mixture_density(const mho_mixture *mixture, const double *parameter, 
 double mho_mixture_prominence(const mho_mixture *mixture, const double *parameter, int k)
 {
   enum { STEPS = 25 };
-  double mu = parameter[3 * k + 1], reach = 2.5 * exp(parameter[3 * k + 2]);
+  double mu = parameter[G * k + 1], reach = 2.5 * exp(parameter[G * k + 2]);
   double from = fmax(mu - reach, mixture->edge[0]);
   double to = fmin(mu + reach, mixture->edge[mixture->bins]);
   double density[2 * STEPS + 1], highest = 0.0;

@@ -12,7 +12,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { FIT_BINS_PER_DECADE = 25, P = MHO_FIT_PARAMETERS };
+enum { FIT_BINS_PER_DECADE = 25, P = MHO_FIT_PARAMETERS, G = MHO_GAUSSIAN_PARAMETERS };
 
 #define FWHM_OF_SIGMA 2.3548200450309493 /* 2 sqrt(2 ln 2) */
 #define STANDARD_ERRORS 2.0 /* that a further component must gain */
@@ -76,11 +76,13 @@ static bool add_component(const search *s, const mho_mixture *larger, double *pa
   problem.model(&s->mixture, s->parameter, now, NULL);
   for (size_t w = 0; w < sizeof widths / sizeof *widths; w++) {
     double trial[P];
-    memcpy(trial, s->parameter, (size_t)(3 * k) * sizeof *trial);
-    memcpy(trial + 3 * k + 3, s->parameter + 3 * k, MHO_PLATEAU_PARAMETERS * sizeof *trial);
-    trial[3 * k] = log(0.1 * total_of(s->sample.total, s->sample.bins) + 1.0);
-    trial[3 * k + 1] = largest_excess(s, now, widths[w]);
-    trial[3 * k + 2] = log(widths[w]);
+    memcpy(trial, s->parameter, (size_t)(G * k) * sizeof *trial);
+    memcpy(trial + G * (k + 1), s->parameter + G * k, MHO_PLATEAU_PARAMETERS * sizeof *trial);
+    trial[G * k] = log(0.1 * total_of(s->sample.total, s->sample.bins) + 1.0);
+    trial[G * k + 1] = largest_excess(s, now, widths[w]);
+    trial[G * k + 2] = log(widths[w]);
+    trial[G * k + 3] = trial[G * k] - 2.0;
+    trial[G * k + 4] = 0.3;
     double deviance = fit(larger, s->sample.total, trial, s->work);
     if (!(deviance < best)) continue;
     best = deviance;
@@ -161,7 +163,7 @@ static void check_drift(const search *s, int k, double error_of_mean, mho_peak *
     mho_sample_sum(&s->sample, side ? middle : 0, side ? s->sample.units : middle, count);
     fit(&s->mixture, count, half[side], s->work);
   }
-  peak->drift_decades = half[1][3 * k + 1] - half[0][3 * k + 1];
+  peak->drift_decades = half[1][G * k + 1] - half[0][G * k + 1];
   /* Each half errs sqrt(2) times as much as the whole, their difference 2. */
   double z = fabs(peak->drift_decades) / (2.0 * error_of_mean);
   peak->drift_p = error_of_mean > 0.0 ? erfc(z * 0.70710678118654752440) : 1.0;
@@ -170,7 +172,7 @@ static void check_drift(const search *s, int k, double error_of_mean, mho_peak *
 /* Judges component k; true where it is a peak. */
 static bool judge(const search *s, int k, const double *resampled, double *value, mho_peak *peak)
 {
-  const double *p = s->parameter + 3 * k;
+  const double *p = s->parameter + G * k;
   int resamples = s->options->resamples, without = 0;
   double all = total_of(s->sample.total, s->sample.bins);
   *peak = (mho_peak){.log10_g0 = p[1], .width_decades = exp(p[2]), .weight = exp(p[0]) / all};
@@ -179,9 +181,9 @@ static bool judge(const search *s, int k, const double *resampled, double *value
     return false;
   for (int b = 0; b < resamples; b++) {
     const double *q = resampled + (size_t)b * P;
-    value[b] = q[3 * k + 1];
+    value[b] = q[G * k + 1];
     without += !(mho_mixture_prominence(&s->mixture, q, k) > 0.0) ||
-               FWHM_OF_SIGMA * exp(q[3 * k + 2]) >= 1.0;
+               FWHM_OF_SIGMA * exp(q[G * k + 2]) >= 1.0;
   }
   peak->p_value = (double)without / resamples;
   if (peak->p_value > s->options->significance) return false;
@@ -230,7 +232,7 @@ static mho_status draw(const search *s, mho_peaks *peaks)
   mho_mixture plateau = {s->mixture.bins, 0, s->mixture.edge};
   mho_fit_problem problem = mho_mixture_problem(&s->mixture);
   problem.model(&s->mixture, s->parameter, peaks->fit, NULL);
-  problem.model(&plateau, s->parameter + 3 * s->mixture.gaussians, peaks->background, NULL);
+  problem.model(&plateau, s->parameter + G * s->mixture.gaussians, peaks->background, NULL);
   double scale = peaks->traces ? 1.0 / (double)peaks->traces : 0.0;
   scale *= (double)bins / (peaks->high_log10_g0 - peaks->low_log10_g0);
   for (size_t i = 0; i < bins; i++) {
