@@ -90,7 +90,7 @@ typedef struct {
 
 /* Of the `linear` histogram. */
 typedef struct {
-  bool found;                /* G1 has a significant peak */
+  bool found;                /* G1 has a significant peak; else all is 0 */
   double g1_g0, low, high;   /* from the comb, 95 % */
   int count;
   mho_comb_tooth tooth[MHO_COMB_LIMIT]; /* those asked for in the window */
@@ -102,8 +102,8 @@ typedef struct {
 
 MHO_API void mho_comb_options_init(mho_comb_options *options);
 
-/* The density in G is n Gaussians at n G1, of widths that grow as sqrt(n),
- * on an exponential background; the counts are those of the logarithmic bins,
+/* The density in G is Gaussians at n G1, of widths s n^q (q = 1/2 where the
+ * molecules scatter independently), on an exponential background; the counts are those of the logarithmic bins,
  * as bins of unequal width in G. */
 MHO_API MHO_MUST_USE mho_status mho_comb_find(const mho_trace_counts *counts,
                                               const mho_comb_options *options,
