@@ -15,7 +15,7 @@
 enum { FIT_BINS_PER_DECADE = 25, P = MHO_FIT_PARAMETERS, G = MHO_GAUSSIAN_PARAMETERS };
 
 #define FWHM_OF_SIGMA 2.3548200450309493 /* 2 sqrt(2 ln 2) */
-#define STANDARD_ERRORS 2.0 /* that a further component must gain */
+#define STANDARD_ERRORS 3.0 /* that a further component must gain */
 
 void mho_peak_options_init(mho_peak_options *options)
 {
@@ -43,6 +43,30 @@ static double total_of(const double *count, int bins)
   double total = 0.0;
   for (int i = 0; i < bins; i++) total += count[i];
   return total;
+}
+
+/* The likelihood has several maxima: background may hide in a tail or in the
+ * plateau.  The best from here, and from here with the background reset. */
+static void refit(const mho_mixture *mixture, const double *count, bool thorough,
+                  double *parameter, double *work)
+{
+  static const double depth[] = {0.3, 0.0, 0.8};
+  double start[P], best = fit(mixture, count, parameter, work);
+  memcpy(start, parameter, sizeof start);
+  for (size_t i = 0; i < (thorough ? sizeof depth / sizeof *depth : 1); i++) {
+    double trial[P];
+    memcpy(trial, start, sizeof trial);
+    for (int k = 0; k < mixture->gaussians; k++) {
+      trial[G * k + 3] = trial[G * k] - 1.5;
+      trial[G * k + 4] = depth[i];
+    }
+    double *plateau = trial + G * mixture->gaussians;
+    mho_mixture_flat(mixture, 0.3 * total_of(count, mixture->bins), plateau);
+    double deviance = fit(mixture, count, trial, work);
+    if (!(deviance < best)) continue;
+    best = deviance;
+    memcpy(parameter, trial, sizeof trial);
+  }
 }
 
 /* Where the counts exceed the rate most, in units of its noise, within a
@@ -88,6 +112,7 @@ static bool add_component(const search *s, const mho_mixture *larger, double *pa
     best = deviance;
     memcpy(parameter, trial, sizeof trial);
   }
+  if (isfinite(best)) refit(larger, s->sample.total, true, parameter, s->work);
   return isfinite(best);
 }
 
@@ -146,7 +171,7 @@ static mho_status bootstrap(const search *s, double *resampled)
       double *count = work + MHO_FIT_WORK(s->sample.bins, P);
       memcpy(resampled + (size_t)b * P, s->parameter, P * sizeof(double));
       mho_sample_draw(&s->sample, s->options->seed, (uint64_t)b, count);
-      fit(&s->mixture, count, resampled + (size_t)b * P, work);
+      refit(&s->mixture, count, false, resampled + (size_t)b * P, work);
     }
     free(work);
   }
@@ -161,7 +186,7 @@ static void check_drift(const search *s, int k, double error_of_mean, mho_peak *
   for (int side = 0; side < 2; side++) {
     memcpy(half[side], s->parameter, sizeof half[side]);
     mho_sample_sum(&s->sample, side ? middle : 0, side ? s->sample.units : middle, count);
-    fit(&s->mixture, count, half[side], s->work);
+    refit(&s->mixture, count, true, half[side], s->work);
   }
   peak->drift_decades = half[1][G * k + 1] - half[0][G * k + 1];
   /* Each half errs sqrt(2) times as much as the whole, their difference 2. */
