@@ -33,21 +33,18 @@ static bool push(mho_telegraph *t, const mho_dwell *dwell)
 }
 
 /* Mean of the points that lie on the level, without the first and last of
- * every stay, where the instrument is on its way. */
+ * every stay, where the instrument is on its way; NaN where none is left. */
 static double mean_on_level(const uint8_t *path, const double *signal, size_t from, size_t to,
                             int level)
 {
-  double inner = 0.0, all = 0.0;
-  size_t inner_count = 0, count = 0;
-  for (size_t i = from; i < to; i++) {
-    if (path[i] != level) continue;
-    all += signal[i];
+  double sum = 0.0;
+  size_t count = 0;
+  for (size_t i = from + 1; i + 1 < to; i++) {
+    if (path[i] != level || path[i - 1] != level || path[i + 1] != level) continue;
+    sum += signal[i];
     count++;
-    if (i == from || i + 1 == to || path[i - 1] != level || path[i + 1] != level) continue;
-    inner += signal[i];
-    inner_count++;
   }
-  return inner_count ? inner / (double)inner_count : count ? all / (double)count : NAN;
+  return count ? sum / (double)count : NAN;
 }
 
 mho_status mho_dwells_add(mho_telegraph *telegraph, uint64_t trace, const uint8_t *path,

@@ -10,10 +10,10 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { S = MHO_STATES, ROUNDS = 60 };
+enum { S = MHO_STATES, ROUNDS = 50 };
 
 #define LOG_2PI 1.83787706640934548356
-#define CONVERGED 1e-7 /* of the log likelihood a point */
+#define CONVERGED 1e-6 /* of the log likelihood a point */
 
 /* What one block says about the parameters. */
 typedef struct {
@@ -26,27 +26,32 @@ static double log_density(const mho_hmm *m, int k, double y)
   return -0.5 * (z * z + LOG_2PI) - log(m->deviation[k]);
 }
 
-/* Densities of one point up to a factor; returns the log of the factor. */
-static double densities(const mho_hmm *m, double y, double *density)
+/* Densities of one point up to a factor; returns the log of the factor.
+ * constant[k] is ln of the deviation. */
+static inline double densities(const mho_hmm *m, const double *constant, double y,
+                               double *density)
 {
   double top = -INFINITY;
   for (int k = 0; k < m->states; k++) {
-    density[k] = log_density(m, k, y);
+    double z = (y - m->mean[k]) / m->deviation[k];
+    density[k] = -0.5 * z * z - constant[k];
     if (density[k] > top) top = density[k];
   }
-  for (int k = 0; k < m->states; k++) density[k] = exp(density[k] - top);
-  return top;
+  for (int k = 0; k < m->states; k++)
+    density[k] = density[k] == top ? 1.0 : exp(density[k] - top);
+  return top - 0.5 * LOG_2PI;
 }
 
 /* Forward variables, normalised a point: alpha[n * S], scale[n], density[n * S]. */
 static double forward(const mho_hmm *m, const double *y, size_t n, double *alpha, double *scale,
                       double *density)
 {
-  double likelihood = 0.0;
+  double likelihood = 0.0, constant[S];
   int states = m->states;
+  for (int k = 0; k < states; k++) constant[k] = log(m->deviation[k]);
   for (size_t t = 0; t < n; t++) {
     double *a = alpha + t * S, *d = density + t * S, sum = 0.0;
-    likelihood += densities(m, y[t], d);
+    likelihood += densities(m, constant, y[t], d);
     for (int k = 0; k < states; k++) {
       double come = t == 0 ? m->start[k] : 0.0;
       for (int j = 0; t > 0 && j < states; j++) come += a[j - S] * m->go[j][k];

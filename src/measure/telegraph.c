@@ -176,6 +176,18 @@ static mho_status unseen_likelihood(const mho_blocks *blocks, int states, double
   return status;
 }
 
+/* A level on which the signal stays for less than three samples on the average
+ * is no level but the passage between two others. */
+static mho_status is_passage(const mho_blocks *blocks, int states, bool *passage)
+{
+  mho_hmm model;
+  mho_status status = mho_hmm_estimate(blocks, 2, states, &model);
+  *passage = false;
+  for (int k = 0; status == MHO_OK && k < states; k++)
+    *passage |= 1.0 - model.go[k][k] > 1.0 / 3.0;
+  return status;
+}
+
 static mho_status choose_levels(const mho_blocks *blocks, const mho_telegraph_options *options,
                                 mho_telegraph *t)
 {
@@ -190,6 +202,9 @@ static mho_status choose_levels(const mho_blocks *blocks, const mho_telegraph_op
     if (status != MHO_OK) break;
     mho_paired_gain(after, before, blocks->count, &t->gain[k], &t->gain_error[k]);
     if (!(t->gain[k] > STANDARD_ERRORS * t->gain_error[k])) break;
+    bool passage;
+    status = is_passage(blocks, k, &passage);
+    if (passage) break;
     t->levels = k;
     memcpy(before, after, blocks->count * sizeof *before);
   }
@@ -247,6 +262,24 @@ static mho_status fit_paths(signal *s, const mho_telegraph_options *options, mho
   return status;
 }
 
+static mho_status decode(signal *s, const mho_telegraph_options *options, mho_telegraph *t,
+                         uint8_t *back, uint8_t *path)
+{
+  mho_hmm model;
+  mho_status status = fit_paths(s, options, t, &model, back, path);
+  if (status != MHO_OK) return status;
+  size_t least = least_samples(&model, options, t);
+  memset(t->level, 0, sizeof t->level);
+  for (int k = 0; k < t->levels; k++) t->level[k].noise_g0 = model.deviation[k];
+  t->dwells = 0;
+  free(t->dwell);
+  t->dwell = NULL;
+  for (size_t i = 0, begin = 0; i < s->traces && status == MHO_OK; begin = s->end[i++])
+    if (s->end[i] > begin)
+      status = mho_dwells_add(t, i, path + begin, s->g + begin, s->end[i] - begin, least);
+  return status == MHO_OK ? mho_dwells_summarise(t) : status;
+}
+
 static mho_status idealise(signal *s, const mho_telegraph_options *options, mho_telegraph *t,
                            mho_error *error)
 {
@@ -261,22 +294,21 @@ static mho_status idealise(signal *s, const mho_telegraph_options *options, mho_
     take_off(s, t->drift_g0_per_s, t->sampling_s);
   }
   uint8_t *back = malloc(s->count), *path = malloc(s->count);
-  mho_hmm model;
-  mho_status status = back && path ? fit_paths(s, options, t, &model, back, path) : MHO_ERR_MEMORY;
-  if (status == MHO_OK) {
-    size_t least = least_samples(&model, options, t);
-    for (int k = 0; k < t->levels; k++) t->level[k].noise_g0 = model.deviation[k];
-    for (size_t i = 0, begin = 0; i < s->traces && status == MHO_OK; begin = s->end[i++])
-      if (s->end[i] > begin)
-        status = mho_dwells_add(t, i, path + begin, s->g + begin, s->end[i] - begin, least);
+  mho_status status = back && path ? MHO_OK : MHO_ERR_MEMORY;
+  mho_telegraph_options now = *options;
+  if (status == MHO_OK) status = decode(s, &now, t, back, path);
+  while (status == MHO_ERR_NOT_FINITE && !options->levels && t->levels > 1) {
+    now.levels = t->levels - 1; /* a level too short for the resolution */
+    status = decode(s, &now, t, back, path);
   }
-  if (status == MHO_OK) status = mho_dwells_summarise(t);
   free(back);
   free(path);
   if (status == MHO_ERR_RANGE)
     return mho_fail(error, status, "measure", "points", "every trace is too short to be idealised");
   if (status == MHO_ERR_NOT_FINITE)
-    return mho_fail(error, status, "measure", "levels", "a level is never reached; fewer levels are needed");
+    return mho_fail(error, MHO_ERR_RANGE, "measure", "levels",
+                    "the signal does not stay on each of %d levels; fewer are needed",
+                    t->levels);
   return status == MHO_OK ? MHO_OK : mho_fail(error, status, "measure", NULL, "out of memory");
 }
 

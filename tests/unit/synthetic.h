@@ -127,4 +127,35 @@ static inline bool synthetic_write_npy(const char *path, const synthetic_pull *s
   return fclose(file) == 0;
 }
 
+/* A signal that switches between levels g0[states] with mean dwells dwell_s
+ * (exponential, continuous in time); a sample is the mean over its time.  From
+ * a level the next is any other with equal probability. */
+typedef struct {
+  int states;
+  double g0[3], dwell_s[3], noise_g0, drift_g0; /* drift over the whole */
+  double sampling_s;
+} synthetic_telegraph;
+
+static inline void synthetic_signal(const synthetic_telegraph *s, uint64_t seed, size_t n,
+                                    double *g)
+{
+  mho_random random = mho_random_stream(seed, 0);
+  int state = 0;
+  double left = -s->dwell_s[0] * log(synthetic_uniform(&random));
+  for (size_t i = 0; i < n; i++) {
+    double rest = s->sampling_s, sum = 0.0;
+    while (s->states > 1 && left < rest) {
+      sum += left * s->g0[state];
+      rest -= left;
+      int step = 1 + (int)mho_random_below(&random, (uint64_t)(s->states - 1));
+      state = (state + step) % s->states;
+      left = -s->dwell_s[state] * log(synthetic_uniform(&random));
+    }
+    sum += rest * s->g0[state];
+    left -= rest;
+    g[i] = sum / s->sampling_s + s->noise_g0 * synthetic_normal(&random) +
+           s->drift_g0 * (double)i / (double)n;
+  }
+}
+
 #endif
