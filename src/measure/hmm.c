@@ -10,7 +10,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-enum { S = MHO_STATES, ROUNDS = 50 };
+enum { S = MHO_STATES, ROUNDS = 40, TRIAL_ROUNDS = 6 };
 
 #define LOG_2PI 1.83787706640934548356
 #define CONVERGED 1e-6 /* of the log likelihood a point */
@@ -146,11 +146,11 @@ static void maximise(mho_hmm *m, const evidence *e, double least_deviation)
   }
 }
 
-static double baum_welch(const mho_blocks *blocks, int parity, mho_hmm *model, evidence *each,
-                         double least_deviation, mho_status *status)
+static double baum_welch(const mho_blocks *blocks, int parity, int rounds, mho_hmm *model,
+                         evidence *each, double least_deviation, mho_status *status)
 {
   double before = -INFINITY;
-  for (int round = 0; round < ROUNDS; round++) {
+  for (int round = 0; round < rounds; round++) {
     evidence sum = {0};
     double points = 0.0;
     *status = gather_all(blocks, parity, model, each);
@@ -222,14 +222,15 @@ mho_status mho_hmm_estimate(const mho_blocks *blocks, int parity, int states, mh
   double *point = malloc(4096 * sizeof *point), best = -INFINITY;
   mho_status status = each && point ? MHO_OK : MHO_ERR_MEMORY;
   size_t n = status == MHO_OK ? sorted_points(blocks, parity, point) : 0;
+  double least = n ? 1e-4 * (point[n - 1] - point[0]) + 1e-300 : 0.0;
   for (int way = 0; status == MHO_OK && way < (states > 1 ? 2 : 1); way++) {
     mho_hmm trial = start_model(states, point, n, way == 1);
-    double least = 1e-4 * (point[n - 1] - point[0]) + 1e-300;
-    double likelihood = baum_welch(blocks, parity, &trial, each, least, &status);
+    double likelihood = baum_welch(blocks, parity, TRIAL_ROUNDS, &trial, each, least, &status);
     if (!(likelihood > best) && way > 0) continue;
     best = likelihood;
     *model = trial;
   }
+  if (status == MHO_OK) baum_welch(blocks, parity, ROUNDS, model, each, least, &status);
   if (status == MHO_OK) sort_states(model);
   free(each);
   free(point);
