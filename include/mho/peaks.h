@@ -18,7 +18,8 @@ enum { MHO_PEAK_LIMIT = 5, MHO_COMB_LIMIT = 6, MHO_CLUSTER_LIMIT = 5 };
 
 typedef struct {
   double low_log10_g0, high_log10_g0; /* the window; NaN: from the floor (or
-                                         the first bin) to -0.45 */
+                                         the first 1 % of points; better give
+                                         a floor) to -0.45 */
   int most;                           /* peaks looked for, 4 */
   int resamples;                      /* of the bootstrap, 400 */
   double prominence;                  /* 0.1: over its higher flank */

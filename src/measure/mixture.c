@@ -112,8 +112,9 @@ mho_fit_problem mho_mixture_problem(const mho_mixture *mixture)
     for (int j = 0; j < G; j++, n++) problem.lower[n] = lower[j], problem.upper[n] = upper[j];
   }
   double soft = log(0.02), softest = log(0.6);
-  const double lower[6] = {-20.0, low - 1.0, 1.0, soft, soft, -2.0};
-  const double upper[6] = {40.0, fmax(high - 1.0, low), high - low + 2.0, softest, softest, 2.0};
+  double least = fmax(1.0, 0.5 * (high - low));
+  const double lower[6] = {-20.0, low - 1.0, least, soft, soft, -2.0};
+  const double upper[6] = {40.0, low + 0.5, high - low + 2.0, softest, softest, 2.0};
   for (int j = 0; j < 6; j++, n++) problem.lower[n] = lower[j], problem.upper[n] = upper[j];
   return problem;
 }

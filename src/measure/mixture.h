@@ -4,8 +4,9 @@
  *
  * rate(x) = sum_k [A_k N(x; mu_k, sigma_k) + a_k Phi((mu_k - d_k - x)/sigma_k)]
  *         + h/2 [erf((x - l)/(sqrt2 s_l)) - erf((x - r)/(sqrt2 s_r))] e^(t(x - c))
- * integrated over the bins; c is the middle of the window and r - l at least a
- * decade, so that the plateau cannot pass for a peak.  The edges are soft
+ * integrated over the bins; c is the middle of the window and r - l at least
+ * half of it and a decade, and l at most half a decade inside, for the background
+ * reaches down to the floor: so the plateau cannot pass for a peak.  The edges are soft
  * because the jump out of contact and the end of the trace scatter normally
  * in log10 G.  The tail a_k below a Gaussian is what its traces leave on their
  * way from the plateau down to the floor; without it a peak is drawn towards

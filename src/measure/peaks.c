@@ -277,13 +277,25 @@ static mho_status check_options(const mho_peak_options *options, mho_error *erro
   return MHO_OK;
 }
 
+/* Where the window starts: at the floor, or else where a hundredth of the
+ * points up to `high` lie below. */
+static double lowest(const mho_trace_counts *counts, double high)
+{
+  if (isfinite(counts->floor_log10_g0)) return fmax(counts->low_log10_g0, counts->floor_log10_g0);
+  double all = 0.0, below = 0.0;
+  int last = (int)fmin(counts->bins, (high - counts->low_log10_g0) * counts->bins_per_decade), i = 0;
+  for (int j = 0; j < last; j++) all += (double)counts->count[j];
+  while (i < last && below + (double)counts->count[i] < 0.01 * all) below += (double)counts->count[i++];
+  return counts->low_log10_g0 + (double)i / counts->bins_per_decade;
+}
+
 mho_status mho_peaks_find(const mho_trace_counts *counts, const mho_peak_options *options,
                           mho_peaks *peaks, mho_error *error)
 {
   *peaks = (mho_peaks){.traces = counts->traces};
   double low = options->low_log10_g0, high = options->high_log10_g0;
-  if (isnan(low)) low = fmax(counts->low_log10_g0, counts->floor_log10_g0);
   if (isnan(high)) high = -0.45; /* below the foot of the contact's peak at G0 */
+  if (isnan(low)) low = lowest(counts, high);
   int group = counts->bins_per_decade / FIT_BINS_PER_DECADE;
   search s = {.options = options};
   mho_status status = check_options(options, error);
