@@ -220,19 +220,22 @@ static mho_status slow_line(mho_trace_reader *reader, const char *line,
   return slow_cells(reader, line, end, field, error);
 }
 
+static inline bool number_changes(mho_trace_reader *reader, const double *field)
+{
+  mho_text_state *text = &reader->text;
+  double number = field[reader->columns.number];
+  if (text->has_number && number != text->number) return true;
+  text->number = number;
+  text->has_number = true;
+  return false;
+}
+
 /* True where the point belongs to the next trace. */
 static inline bool starts_trace(mho_trace_reader *reader, const double *field)
 {
-  mho_text_state *text = &reader->text;
-  if (reader->columns.number >= 0) {
-    double number = field[reader->columns.number];
-    if (text->has_number && number != text->number) return true;
-    text->number = number;
-    text->has_number = true;
-  } else if (reader->columns.x >= 0) {
-    return mho_sweep_restarts(&reader->sweep, field[reader->columns.x]);
-  }
-  return false;
+  if (reader->columns.number >= 0) return number_changes(reader, field);
+  return reader->columns.x >= 0 &&
+         mho_sweep_restarts(&reader->sweep, field[reader->columns.x]);
 }
 
 static inline bool store_point(mho_trace_reader *reader, const double *field)
@@ -244,24 +247,33 @@ static inline bool store_point(mho_trace_reader *reader, const double *field)
   return true;
 }
 
-/* Fast lines up to the first that is not, or the end of the whole lines. */
+/* Fast lines up to the first that is not, or the end of the whole lines.  What
+ * changes with every point is kept out of memory. */
 static inline __attribute__((always_inline)) const char *
 fast_lines(mho_trace_reader *reader, const char *p, const char *limit, int count,
            char separator, bool *restart)
 {
-  double field[MHO_TRACE_COLUMN_LIMIT];
-  long lines = 0;
-  while (p < limit && reader->count < MHO_TRACE_CHUNK) {
+  double field[MHO_TRACE_COLUMN_LIMIT], *value = reader->value, *x = reader->x;
+  const int value_at = reader->columns.value, x_at = reader->columns.x;
+  bool has_number = reader->columns.number >= 0;
+  mho_sweep sweep = reader->sweep;
+  size_t n = reader->count, start = n;
+  while (p < limit && n < MHO_TRACE_CHUNK) {
     const char *next = fast_line(p, count, separator, field);
     if (!next) break;
-    if (!store_point(reader, field)) {
+    if (has_number ? number_changes(reader, field)
+                   : x_at >= 0 && mho_sweep_restarts(&sweep, field[x_at])) {
       *restart = true;
       break;
     }
+    value[n] = field[value_at];
+    if (x_at >= 0) x[n] = field[x_at];
     p = next;
-    lines++;
+    n++;
   }
-  reader->text.line += lines;
+  reader->sweep = sweep;
+  reader->text.line += (long)(n - start);
+  reader->count = n;
   return p;
 }
 
