@@ -21,9 +21,12 @@ typedef struct {
   mho_histogram *histogram;
   mho_logbin logbin;
   double floor_g0;
-  uint64_t *row;     /* [bins + 2] points of this trace by slot */
+  /* Points of this trace by slot.  Even and odd points count in halves of
+   * their own, [2 * slots]: neighbours often meet in a bin, and a sum that
+   * waits for the sum before it is slow.  The end of the trace joins them. */
+  uint64_t *row, *linear;
+  size_t slots, linear_slots; /* bins + 2, linear_bins + 2 */
   uint64_t censored;
-  uint64_t *linear;  /* [linear_bins + 2] */
   double *spent;     /* [bins + 2] */
   double *coarse;    /* [coarse_bins] */
   int *map_slot;     /* [bins + 2] conductance bin of the map, or -1 */
@@ -101,6 +104,8 @@ static void merge_units(mho_trace_counts *counts)
   }
   counts->units /= 2;
   counts->traces_per_unit *= 2;
+  memset(counts->unit_count + counts->units * bins, 0,
+         counts->units * bins * sizeof *counts->unit_count);
 }
 
 static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t censored)
@@ -115,7 +120,6 @@ static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t c
   else {
     counts->units = unit + 1;
     counts->unit_traces[unit] = 0;
-    memset(counts->unit_count + unit * bins, 0, bins * sizeof *counts->unit_count);
   }
   uint32_t *to = counts->unit_count + unit * bins;
   for (size_t i = 0; i < bins; i++) {
@@ -147,8 +151,10 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
   h->map = calloc((size_t)o->map_bins * (size_t)h->map_g_bins, sizeof(uint64_t));
   h->coarse_sum = calloc(coarse, sizeof(double));
   h->coarse_product = calloc(coarse * coarse, sizeof(double));
-  c->row = malloc(slots * sizeof *c->row);
-  c->linear = malloc(((size_t)o->linear_bins + 2) * sizeof *c->linear);
+  c->slots = slots;
+  c->linear_slots = (size_t)o->linear_bins + 2;
+  c->row = malloc(2 * c->slots * sizeof *c->row);
+  c->linear = malloc(2 * c->linear_slots * sizeof *c->linear);
   c->spent = malloc(slots * sizeof *c->spent);
   c->coarse = malloc(coarse * sizeof *c->coarse);
   c->map_slot = malloc(slots * sizeof *c->map_slot);
@@ -167,43 +173,58 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
   return MHO_OK;
 }
 
+static void start_trace(collector *c, bool has_x)
+{
+  memset(c->row, 0, 2 * c->slots * sizeof *c->row);
+  memset(c->linear, 0, 2 * c->linear_slots * sizeof *c->linear);
+  c->censored = 0;
+  c->pull.count = 0;
+  c->too_long = false;
+  c->has_x = has_x;
+}
+
+static void join_halves(uint64_t *count, size_t slots)
+{
+  for (size_t i = 0; i < slots; i++) count[i] += count[slots + i];
+}
+
+/* Bins points; slot[n] is filled, 0 for what is missing or censored. */
+static void bin_points(collector *c, const double *g0, size_t n, uint16_t *slot)
+{
+  const double top = c->histogram->options.linear_bins;
+  const double scale = top / c->histogram->options.linear_high_g0;
+  const double least = fmax(c->floor_g0, 5e-324);
+  uint64_t censored = 0;
+  for (size_t i = 0; i < n; i++) {
+    double g = g0[i];
+    slot[i] = 0;
+    if (!(g >= least)) {
+      censored += g == g;
+      continue;
+    }
+    size_t half = i & 1;
+    slot[i] = (uint16_t)mho_logbin_slot(&c->logbin, g);
+    c->row[half * c->slots + slot[i]]++;
+    double at = g * scale;
+    c->linear[half * c->linear_slots + (at < top ? (size_t)at : (size_t)top) + 1]++;
+  }
+  c->censored += censored;
+}
+
 /* Bins the points of a piece: 1D, and what alignment will need. */
 static bool add_piece(collector *c, const mho_trace_chunk *chunk)
 {
-  const mho_histogram_options *o = &c->histogram->options;
   size_t n = chunk->count;
   mho_pull *pull = &c->pull;
-  if (chunk->first) {
-    memset(c->row, 0, ((size_t)c->logbin.bins + 2) * sizeof *c->row);
-    memset(c->linear, 0, ((size_t)o->linear_bins + 2) * sizeof *c->linear);
-    c->censored = 0;
-    pull->count = 0;
-    c->too_long = false;
-    c->has_x = chunk->x != NULL;
-  }
+  if (chunk->first) start_trace(c, chunk->x != NULL);
   if (c->has_x && pull->count + n > MHO_PULL_LIMIT) c->too_long = true;
-  bool keep = c->has_x && !c->too_long;
-  if (keep && !mho_pull_reserve(pull, n)) return false;
-  double scale = o->linear_bins / o->linear_high_g0;
-  for (size_t i = 0; i < n; i++) {
-    double g = chunk->g0[i];
-    int slot = 0;
-    if (isnan(g)) {
-    } else if (g <= 0.0 || g < c->floor_g0) {
-      c->censored++;
-    } else {
-      slot = mho_logbin_slot(&c->logbin, g);
-      c->row[slot]++;
-      double bin = g * scale;
-      c->linear[bin < o->linear_bins ? (int)bin + 1 : o->linear_bins + 1]++;
-    }
-    if (keep) pull->slot[pull->count + i] = (uint16_t)slot;
-  }
-  if (keep) {
-    memcpy(pull->g0 + pull->count, chunk->g0, n * sizeof(double));
-    memcpy(pull->x + pull->count, chunk->x, n * sizeof(double));
-    pull->count += n;
-  }
+  if (!c->has_x || c->too_long) pull->count = 0;
+  if (!mho_pull_reserve(pull, n)) return false;
+  bin_points(c, chunk->g0, n, pull->slot + pull->count);
+  if (!c->has_x || c->too_long) return true;
+  memcpy(pull->g0 + pull->count, chunk->g0, n * sizeof(double));
+  memcpy(pull->x + pull->count, chunk->x, n * sizeof(double));
+  pull->count += n;
   return true;
 }
 
@@ -312,6 +333,8 @@ static bool end_trace(collector *c, uint64_t trace)
   mho_histogram *h = c->histogram;
   size_t start = 0;
   double zero_nm = 0.0;
+  join_halves(c->row, c->slots);
+  join_halves(c->linear, c->linear_slots);
   h->has_distance |= c->has_x;
   h->too_long += c->too_long;
   bool aligned = c->has_x && !c->too_long &&
