@@ -86,7 +86,7 @@ static size_t reduce(const mho_pull *pull, size_t start, double floor_g0, double
     double sum_x = 0.0, sum_y = 0.0;
     size_t used = 0;
     for (size_t j = i; j < i + group && j < pull->count; j++) {
-      if (!(pull->g0[j] > 0.0 && pull->g0[j] >= floor_g0)) continue;
+      if (!(pull->g0[j] > 0.0 && pull->g0[j] >= floor_g0) || !isfinite(pull->x[j])) continue;
       sum_x += pull->x[j];
       sum_y += log10(pull->g0[j]);
       used++;
