@@ -167,7 +167,7 @@ void mho_figure_map(mho_buffer *script, const mho_histogram *h, const mho_peaks 
   set_range(script, "yrange", fmax(o->low_log10_g0, h->all.floor_log10_g0 - 0.2), o->high_log10_g0);
   set_range(script, "cbrange", 0.0, darkest_count(h));
   mho_buffer_print(script,
-                   "set palette defined (0 '#ffffff', 0.25 '#cfe3df', 0.6 '%s', 1 '%s')\n"
+                   "set key inside right bottom vertical\nset palette defined (0 '#ffffff', 0.25 '#cfe3df', 0.6 '%s', 1 '%s')\n"
                    "set xlabel 'displacement (nm)'\nset ylabel 'conductance (G_0)'\n"
                    "set format y '10^{%%.0f}'\nset ytics 1\nset cblabel 'points in a cell'\n"
                    "plot $map matrix using (",
@@ -184,6 +184,15 @@ void mho_figure_map(mho_buffer *script, const mho_histogram *h, const mho_peaks 
     mho_buffer_print(script, ", $peak%d with lines linewidth 2 linecolor '%s' dashtype '_' %s", k,
                      ink[1], k ? "notitle" : "title 'peak of the log histogram'");
   mho_buffer_add(script, "\n");
+}
+
+/* Where most points lie below the contact. */
+static double commonest_g0(const mho_histogram *h, const mho_trace_counts *counts)
+{
+  int most = 0;
+  for (int i = 0; i < counts->bins && mho_histogram_log10_g0(h, i) < -0.5; i++)
+    if (counts->count[i] > counts->count[most]) most = i;
+  return h->edge_g0[most];
 }
 
 /* Linear density of the logarithmic bins, whose width follows G. */
@@ -206,8 +215,8 @@ static double add_linear_density(mho_buffer *script, const mho_histogram *h,
 void mho_figure_comb(mho_buffer *script, const mho_histogram *h, const mho_trace_counts *counts,
                      const mho_comb *comb)
 {
-  double g1 = comb->found ? comb->g1_g0 : 0.01;
-  double low = 0.3 * g1, high = (comb->count + 1.2) * g1;
+  double g1 = comb->found ? comb->g1_g0 : commonest_g0(h, counts);
+  double low = 0.3 * g1, high = ((comb->count > 0 ? comb->count : 4) + 1.2) * g1;
   begin_figure(script, WIDTH, HEIGHT);
   double top = add_linear_density(script, h, counts, low, high);
   if (!(top > 0.0)) top = 1.0;
@@ -316,7 +325,8 @@ void mho_figure_dwells(mho_buffer *script, const mho_telegraph *t)
   set_range(script, "xrange", 0.0, longest > 0.0 ? 1.02 * longest : 1.0);
   set_range(script, "yrange", 0.5 / (double)most, 1.3);
   mho_buffer_add(script, "set logscale y\nset format y '10^{%L}'\nset xlabel 'dwell time (s)'\n"
-                         "set ylabel 'whole dwells that last longer'\nset samples 400\nplot ");
+                         "set ylabel 'whole dwells that last longer'\nset samples 400\n"
+                         "set key inside right top vertical\nplot ");
   bool first = true;
   for (int k = 0; k < t->levels; k++) {
     if (count[k] == 0) continue;
