@@ -8,7 +8,7 @@
 
 #include "measure/logbin.h"
 #include "measure/pull.h"
-#include "measure/random.h"
+#include "base/random.h"
 
 #include <math.h>
 #include <stdlib.h>
