@@ -5,6 +5,7 @@
 #include <math.h>
 
 #include "solver/plan.h"
+#include "solver/program.h"
 
 /* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
  * is done again in extended precision. */
@@ -12,10 +13,14 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
-/* What one thread needs besides the plan; the extended one only on demand. */
+/* What one thread needs besides the plan; all but the batch only on demand. */
 typedef struct {
-  mho_elimination_double *plain;
-  mho_elimination_quad *extended;
+  mho_elimination_double *plain, *reduced;
+  mho_elimination_quad *extended, *reduced_extended;
+  mho_program_numbers numbers;
+  double energy_ev[PROGRAM_LANES];
+  size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
+  size_t lanes;
 } workspace;
 
 static void set_point(const mho_plan *plan, const mho_estimate *estimate,
@@ -53,27 +58,78 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
   if (!isfinite(point->relative_error)) point->relative_error = 1.0;
 }
 
-static mho_status evaluate(const mho_plan *plan, workspace *work,
-                           double energy_ev, mho_point *point)
+/* Schur complements of one lane, as double-double added up. */
+static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t lane,
+                                bool extended, mho_estimate *estimate)
 {
-  mho_estimate estimate;
-  if (!plan->connected) {
-    *point = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
-    return MHO_OK;
+  const mho_program *program = plan->program;
+  size_t n = (size_t)program->kept;
+  double value[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX], error[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX];
+  mho_quad exact[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX];
+  for (size_t i = 0; i < n; i++)
+    for (size_t j = 0; j < n; j++) {
+      int slot = program->kept_slot[i][j];
+      size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
+      value[i * n + j] = slot < 0 ? 0 : work->numbers.high[at];
+      error[i * n + j] = slot < 0 ? 0 : work->numbers.error[at];
+      exact[i * n + j] = value[i * n + j];
+      if (slot >= 0 && extended) exact[i * n + j] += work->numbers.low[at];
+    }
+  if (extended) {
+    if (!work->reduced_extended) work->reduced_extended = mho_elimination_create_quad(plan->contacts);
+    if (!work->reduced_extended) return MHO_ERR_MEMORY;
+    mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, error, estimate);
+  } else {
+    if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
+    if (!work->reduced) return MHO_ERR_MEMORY;
+    mho_elimination_reduced_double(plan->contacts, work->reduced, value, error, estimate);
   }
-  if (plan->level_ev) {
-    mho_spectrum_evaluate(plan, energy_ev, &estimate);
+  return MHO_OK;
+}
+
+/* Runs the lanes that wait and settles those that keep the contract; the
+ * others stay, moved together. */
+static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
+                              mho_point *point)
+{
+  if (!work->lanes) return MHO_OK;
+  for (size_t l = work->lanes; l < PROGRAM_LANES; l++) work->energy_ev[l] = work->energy_ev[0];
+  if (!work->numbers.high &&
+      mho_program_numbers_create(plan->program, &work->numbers) != MHO_OK)
+    return MHO_ERR_MEMORY;
+  (extended ? mho_program_run_extended : mho_program_run_double)(plan->program, work->energy_ev,
+                                                                 &work->numbers);
+  size_t left = 0;
+  for (size_t l = 0; l < work->lanes; l++) {
+    mho_estimate estimate = {.relative_error = INFINITY};
+    if (!work->numbers.broken[l] &&
+        reduced_point(plan, work, l, extended, &estimate) != MHO_OK)
+      return MHO_ERR_MEMORY;
     if (keeps_contract(&estimate)) {
-      set_point(plan, &estimate, MHO_METHOD_SPECTRUM, point);
-      return MHO_OK;
+      set_point(plan, &estimate, extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
+                &point[work->at[l]]);
+    } else {
+      work->energy_ev[left] = work->energy_ev[l];
+      work->at[left++] = work->at[l];
     }
   }
-  if (!work->plain) work->plain = mho_elimination_create_double(plan);
-  if (!work->plain) return MHO_ERR_MEMORY;
-  mho_elimination_evaluate_double(plan, work->plain, energy_ev, &estimate);
-  if (keeps_contract(&estimate)) {
-    set_point(plan, &estimate, MHO_METHOD_ELIMINATION, point);
-    return MHO_OK;
+  work->lanes = left;
+  return MHO_OK;
+}
+
+/* One energy by pivoted elimination, in double and then in 113 bits. */
+static mho_status eliminate(const mho_plan *plan, workspace *work, double energy_ev,
+                            mho_point *point)
+{
+  mho_estimate estimate;
+  if (plan->first <= MHO_METHOD_ELIMINATION) {
+    if (!work->plain) work->plain = mho_elimination_create_double(plan);
+    if (!work->plain) return MHO_ERR_MEMORY;
+    mho_elimination_evaluate_double(plan, work->plain, energy_ev, &estimate);
+    if (keeps_contract(&estimate)) {
+      set_point(plan, &estimate, MHO_METHOD_ELIMINATION, point);
+      return MHO_OK;
+    }
   }
   if (!work->extended) work->extended = mho_elimination_create_quad(plan);
   if (!work->extended) return MHO_ERR_MEMORY;
@@ -82,20 +138,70 @@ static mho_status evaluate(const mho_plan *plan, workspace *work,
   return MHO_OK;
 }
 
+/* The lanes that wait, through all methods after the sum over levels. */
+static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point)
+{
+  mho_status status = MHO_OK;
+  if (plan->program && plan->first <= MHO_METHOD_SPARSE)
+    status = run_program(plan, work, false, point);
+  if (status == MHO_OK && plan->program && plan->first <= MHO_METHOD_SPARSE_EXTENDED)
+    status = run_program(plan, work, true, point);
+  for (size_t l = 0; status == MHO_OK && l < work->lanes; l++)
+    status = eliminate(plan, work, work->energy_ev[l], &point[work->at[l]]);
+  work->lanes = 0;
+  return status;
+}
+
+/* Takes the sum over levels where it is good; else the energy waits in a lane. */
+static mho_status evaluate(const mho_plan *plan, workspace *work, double energy_ev, size_t index,
+                           mho_point *point)
+{
+  if (!plan->connected) {
+    point[index] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
+    return MHO_OK;
+  }
+  mho_estimate estimate = {.relative_error = INFINITY};
+  if (plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM)
+    mho_spectrum_evaluate(plan, energy_ev, &estimate);
+  if (keeps_contract(&estimate)) {
+    set_point(plan, &estimate, MHO_METHOD_SPECTRUM, &point[index]);
+    return MHO_OK;
+  }
+  work->energy_ev[work->lanes] = energy_ev;
+  work->at[work->lanes++] = index;
+  return work->lanes == PROGRAM_LANES ? settle(plan, work, point) : MHO_OK;
+}
+
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
                                   const double *energy_ev, mho_point *point,
                                   mho_error *error)
 {
   workspace work = {0};
   mho_status status = MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < count; i++) {
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
     if (!isfinite(energy_ev[i]))
       status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
                         "energy %zu is not a finite number", i);
-    else if (evaluate(plan, &work, energy_ev[i], &point[i]) != MHO_OK)
-      status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  }
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    status = evaluate(plan, &work, energy_ev[i], i, point);
+  if (status == MHO_OK) status = settle(plan, &work, point);
+  if (status == MHO_ERR_MEMORY) mho_fail(error, status, "solver", NULL, "out of memory");
   mho_elimination_free_double(work.plain);
+  mho_elimination_free_double(work.reduced);
   mho_elimination_free_quad(work.extended);
+  mho_elimination_free_quad(work.reduced_extended);
+  mho_program_numbers_clear(&work.numbers);
   return status;
+}
+
+const char *mho_method_name(mho_method method)
+{
+  static const char *const name[MHO_METHOD_COUNT] = {
+      [MHO_METHOD_NO_PATH] = "no path joins the contacts",
+      [MHO_METHOD_SPECTRUM] = "sum over levels",
+      [MHO_METHOD_SPARSE] = "compiled sparse elimination",
+      [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_ELIMINATION] = "pivoted elimination",
+      [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};
+  return method >= 0 && method < MHO_METHOD_COUNT ? name[method] : "unknown";
 }

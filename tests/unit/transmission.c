@@ -49,7 +49,7 @@ static double log10_of_text(const char *text)
 }
 
 typedef struct {
-  int points, nodes, beyond, method[4];
+  int points, nodes, beyond, method[MHO_METHOD_COUNT];
   double worst_fraction;
 } tally;
 
@@ -138,9 +138,10 @@ static void check_junctions(bool banded)
     raw_clear(&turned);
   }
   json_decref(root);
-  print_message("%d points: spectrum %d, elimination %d, extended %d; %d nodes, %d with kappa "
+  print_message("%d points: spectrum %d, sparse %d and %d, elimination %d, extended %d; %d nodes, %d with kappa "
                 "> 1e20; worst %.2g of what is allowed\n",
-                count.points, count.method[1], count.method[2], count.method[3], count.nodes,
+                count.points, count.method[1], count.method[2], count.method[3], count.method[4],
+                count.method[5], count.nodes,
                 count.beyond, count.worst_fraction);
   assert_true(count.points > 1000 && count.beyond * 20 < count.points);
   for (int method = 1; method < 4; method++) assert_true(count.method[method] > 20);
