@@ -48,6 +48,11 @@ typedef struct {
 
 MHO_BEGIN_DECLARATIONS
 
+/* What a plan can do for its junction and why, one line without an end, cut to
+ * the buffer's size; returns buffer. */
+MHO_API const char *mho_plan_describe(const mho_plan *plan, char *buffer,
+                                      size_t size);
+
 /* A few words for a method, as --verbose prints them; never NULL. */
 MHO_API const char *mho_method_name(mho_method method);
 

@@ -6,13 +6,14 @@
 #include "solver/plan.h"
 
 #include <math.h>
+#include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
 #include "solver/program.h"
 
 /* Smaller molecules are as fast without a compiled elimination. */
-enum { PROGRAM_SITES_MIN = 12 };
+enum { PROGRAM_SITES_MIN = 4 };
 
 static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
 {
@@ -288,4 +289,23 @@ int mho_plan_sites(const mho_plan *plan) { return plan->sites; }
 int mho_plan_channels(const mho_plan *plan)
 {
   return plan->left < plan->right ? plan->left : plan->right;
+}
+
+const char *mho_plan_describe(const mho_plan *plan, char *buffer, size_t size)
+{
+  char compiled[160] = "no compiled elimination, which would fill in";
+  if (plan->program)
+    snprintf(compiled, sizeof compiled,
+             "compiled elimination of %zu sites with %d numbers alive at once",
+             plan->program->steps, plan->program->slots);
+  char band[160];
+  if (plan->band)
+    snprintf(band, sizeof band, "pivoting within a band of %zu, of %d sites", plan->band,
+             plan->sites);
+  else snprintf(band, sizeof band, "full pivoting, as the matrix is small or has no narrow band");
+  snprintf(buffer, size, "%s; %s; %s",
+           plan->level_ev ? "sum over levels, as the molecule is diagonalised"
+                          : "no sum over levels, as only the non-zero entries are given",
+           compiled, band);
+  return buffer;
 }

@@ -18,9 +18,11 @@
 
 enum { L = PROGRAM_LANES };
 
-/* Roundoff of a double, and of a double-double operation with room. */
+/* Roundoff of a double, and of a double-double operation (at most 6 2^-106 for
+ * those below: M. Joldes, J.-M. Muller and V. Popescu, ACM Trans. Math. Softw.
+ * 44, 15 (2017)). */
 #define U UNIT_ROUNDOFF
-#define UU 0x1p-100
+#define UU 0x1p-103
 
 /* A pivot whose relative error exceeds this is refused. */
 #define PIVOT_ERROR 1e-6

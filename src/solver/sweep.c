@@ -13,6 +13,8 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
+enum { KEPT_SQUARE = PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX };
+
 /* What one thread needs besides the plan; all but the batch only on demand. */
 typedef struct {
   mho_elimination_double *plain, *reduced;
@@ -58,32 +60,32 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
   if (!isfinite(point->relative_error)) point->relative_error = 1.0;
 }
 
-/* Schur complements of one lane, as double-double added up. */
+/* T of one lane from its Schur complement: in double, where the low parts count
+ * as error, and if that is not good enough in 113 bits. */
 static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t lane,
                                 bool extended, mho_estimate *estimate)
 {
   const mho_program *program = plan->program;
-  size_t n = (size_t)program->kept;
-  double value[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX], error[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX];
-  mho_quad exact[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX];
-  for (size_t i = 0; i < n; i++)
-    for (size_t j = 0; j < n; j++) {
-      int slot = program->kept_slot[i][j];
-      size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
-      value[i * n + j] = slot < 0 ? 0 : work->numbers.high[at];
-      error[i * n + j] = slot < 0 ? 0 : work->numbers.error[at];
-      exact[i * n + j] = value[i * n + j];
-      if (slot >= 0 && extended) exact[i * n + j] += work->numbers.low[at];
-    }
-  if (extended) {
-    if (!work->reduced_extended) work->reduced_extended = mho_elimination_create_quad(plan->contacts);
-    if (!work->reduced_extended) return MHO_ERR_MEMORY;
-    mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, error, estimate);
-  } else {
-    if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
-    if (!work->reduced) return MHO_ERR_MEMORY;
-    mho_elimination_reduced_double(plan->contacts, work->reduced, value, error, estimate);
+  size_t n = (size_t)program->kept, count = n * n;
+  double value[KEPT_SQUARE], error[KEPT_SQUARE], rounded[KEPT_SQUARE];
+  mho_quad exact[KEPT_SQUARE];
+  for (size_t k = 0; k < count; k++) {
+    int slot = program->kept_slot[k / n][k % n];
+    size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
+    double low = slot < 0 || !extended ? 0 : work->numbers.low[at];
+    value[k] = slot < 0 ? 0 : work->numbers.high[at];
+    error[k] = slot < 0 ? 0 : work->numbers.error[at];
+    rounded[k] = error[k] + fabs(low);
+    exact[k] = (mho_quad)value[k] + low;
   }
+  if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
+  if (!work->reduced) return MHO_ERR_MEMORY;
+  mho_elimination_reduced_double(plan->contacts, work->reduced, value, rounded, estimate);
+  if (!extended || keeps_contract(estimate)) return MHO_OK;
+  if (!work->reduced_extended)
+    work->reduced_extended = mho_elimination_create_quad(plan->contacts);
+  if (!work->reduced_extended) return MHO_ERR_MEMORY;
+  mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, error, estimate);
   return MHO_OK;
 }
 
