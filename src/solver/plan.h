@@ -61,10 +61,6 @@ MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
 MHO_MUST_USE mho_status mho_plan_contacts(const mho_plan *plan, const int *site, int count,
                                           mho_plan **contacts);
 
-/* Sum over the levels of the bare molecule; spectrum.c. */
-void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
-                           mho_estimate *estimate);
-
 /* Gaussian elimination in double and in 113 bits; elimination.inc.  The
  * workspace belongs to one thread; create returns NULL without memory.
  * differentiate follows an evaluate that found T, fills all derivatives and

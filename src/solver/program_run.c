@@ -12,6 +12,7 @@
  * Math. 18, 224 (1971), its products by fused multiply-add.
  */
 #include "solver/program.h"
+#include "solver/processor.h"
 
 #include <math.h>
 #include <stdlib.h>
@@ -26,13 +27,6 @@ enum { L = PROGRAM_LANES };
 
 /* A pivot whose relative error exceeds this is refused. */
 #define PIVOT_ERROR 1e-6
-
-#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__)
-#define FOR_EVERY_PROCESSOR                                                    \
-  __attribute__((target_clones("arch=x86-64-v4", "arch=x86-64-v3", "default")))
-#else
-#define FOR_EVERY_PROCESSOR
-#endif
 
 mho_status mho_program_numbers_create(const mho_program *program, mho_program_numbers *numbers)
 {

@@ -6,6 +6,7 @@
 
 #include "solver/plan.h"
 #include "solver/program.h"
+#include "solver/spectrum.h"
 
 /* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
  * is done again in extended precision. */
@@ -154,24 +155,55 @@ static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point
   return status;
 }
 
-/* Takes the sum over levels where it is good; else the energy waits in a lane. */
-static mho_status evaluate(const mho_plan *plan, workspace *work, double energy_ev, size_t index,
-                           mho_point *point)
+/* Takes an estimate of the sum over levels if it is good; else the energy waits
+ * in a lane. */
+static mho_status take_or_wait(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
+                               double energy_ev, size_t index, mho_point *point)
 {
-  if (!plan->connected) {
-    point[index] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
-    return MHO_OK;
-  }
-  mho_estimate estimate = {.relative_error = INFINITY};
-  if (plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM)
-    mho_spectrum_evaluate(plan, energy_ev, &estimate);
-  if (keeps_contract(&estimate)) {
-    set_point(plan, &estimate, MHO_METHOD_SPECTRUM, &point[index]);
+  if (keeps_contract(estimate)) {
+    set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
     return MHO_OK;
   }
   work->energy_ev[work->lanes] = energy_ev;
   work->at[work->lanes++] = index;
   return work->lanes == PROGRAM_LANES ? settle(plan, work, point) : MHO_OK;
+}
+
+/* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
+static mho_status evaluate(const mho_plan *plan, workspace *work, const double *energy_ev,
+                           size_t first, size_t count, mho_point *point)
+{
+  mho_estimate estimate[SPECTRUM_LANES];
+  double lane[SPECTRUM_LANES];
+  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM;
+  bool pair = plan->left == 1 && plan->right == 1;
+  for (size_t l = 0; l < SPECTRUM_LANES; l++) {
+    lane[l] = energy_ev[first + (l < count ? l : 0)];
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
+  }
+  if (levels && pair) {
+    mho_spectrum_evaluate_pair(plan, lane, estimate);
+    for (size_t l = 0; l < count; l++)
+      estimate[l].log10_transmission = log10(estimate[l].transmission);
+  }
+  mho_status status = MHO_OK;
+  for (size_t l = 0; status == MHO_OK && l < count; l++)
+    status = take_or_wait(plan, work, &estimate[l], lane[l], first + l, point);
+  return status;
+}
+
+static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+                        const double *energy_ev, mho_point *point)
+{
+  mho_status status = MHO_OK;
+  for (size_t i = 0; !plan->connected && i < count; i++)
+    point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
+  if (!plan->connected) return MHO_OK;
+  for (size_t i = 0; status == MHO_OK && i < count; i += SPECTRUM_LANES)
+    status = evaluate(plan, work, energy_ev, i,
+                      count - i < SPECTRUM_LANES ? count - i : SPECTRUM_LANES, point);
+  return status == MHO_OK ? settle(plan, work, point) : status;
 }
 
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
@@ -184,9 +216,7 @@ mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
     if (!isfinite(energy_ev[i]))
       status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
                         "energy %zu is not a finite number", i);
-  for (size_t i = 0; status == MHO_OK && i < count; i++)
-    status = evaluate(plan, &work, energy_ev[i], i, point);
-  if (status == MHO_OK) status = settle(plan, &work, point);
+  if (status == MHO_OK) status = sweep(plan, &work, count, energy_ev, point);
   if (status == MHO_ERR_MEMORY) mho_fail(error, status, "solver", NULL, "out of memory");
   mho_elimination_free_double(work.plain);
   mho_elimination_free_double(work.reduced);
