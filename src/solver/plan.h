@@ -76,7 +76,7 @@ void mho_elimination_evaluate_double(const mho_plan *plan,
                                      double energy_ev, mho_estimate *estimate);
 
 void mho_elimination_reduced_double(const mho_plan *contacts, mho_elimination_double *workspace,
-                                const double *value, const double *error,
+                                const double *value, double *adjoint,
                                 mho_estimate *estimate);
 double mho_elimination_differentiate_double(const mho_plan *plan,
                                         mho_elimination_double *workspace,
@@ -90,7 +90,7 @@ void mho_elimination_evaluate_quad(const mho_plan *plan,
                                    double energy_ev, mho_estimate *estimate);
 
 void mho_elimination_reduced_quad(const mho_plan *contacts, mho_elimination_quad *workspace,
-                                const mho_quad *value, const double *error,
+                                const mho_quad *value, double *adjoint,
                                 mho_estimate *estimate);
 double mho_elimination_differentiate_quad(const mho_plan *plan,
                                         mho_elimination_quad *workspace,

@@ -14,13 +14,16 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
+/* Room for what a first-order bound leaves out. */
+#define SECOND_ORDER 1.5
+
 enum { KEPT_SQUARE = PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX };
 
 /* What one thread needs besides the plan; all but the batch only on demand. */
 typedef struct {
   mho_elimination_double *plain, *reduced;
   mho_elimination_quad *extended, *reduced_extended;
-  mho_program_numbers numbers;
+  mho_program_trace trace;
   double energy_ev[PROGRAM_LANES];
   size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
   size_t lanes;
@@ -62,31 +65,37 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
 }
 
 /* T of one lane from its Schur complement: in double, where the low parts count
- * as error, and if that is not good enough in 113 bits. */
+ * as error, and if that is not good enough in 113 bits; sets the adjoints. */
 static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t lane,
                                 bool extended, mho_estimate *estimate)
 {
   const mho_program *program = plan->program;
-  size_t n = (size_t)program->kept, count = n * n;
-  double value[KEPT_SQUARE], error[KEPT_SQUARE], rounded[KEPT_SQUARE];
-  mho_quad exact[KEPT_SQUARE];
-  for (size_t k = 0; k < count; k++) {
+  size_t n = (size_t)program->kept;
+  double value[KEPT_SQUARE], low[KEPT_SQUARE], adjoint[KEPT_SQUARE] = {0};
+  for (size_t k = 0; k < n * n; k++) {
     int slot = program->kept_slot[k / n][k % n];
     size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
-    double low = slot < 0 || !extended ? 0 : work->numbers.low[at];
-    value[k] = slot < 0 ? 0 : work->numbers.high[at];
-    error[k] = slot < 0 ? 0 : work->numbers.error[at];
-    rounded[k] = error[k] + fabs(low);
-    exact[k] = (mho_quad)value[k] + low;
+    value[k] = slot < 0 ? 0 : work->trace.high[at];
+    low[k] = slot < 0 || !extended ? 0 : work->trace.low[at];
   }
   if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
   if (!work->reduced) return MHO_ERR_MEMORY;
-  mho_elimination_reduced_double(plan->contacts, work->reduced, value, rounded, estimate);
-  if (!extended || keeps_contract(estimate)) return MHO_OK;
-  if (!work->reduced_extended)
-    work->reduced_extended = mho_elimination_create_quad(plan->contacts);
-  if (!work->reduced_extended) return MHO_ERR_MEMORY;
-  mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, error, estimate);
+  mho_elimination_reduced_double(plan->contacts, work->reduced, value, adjoint, estimate);
+  for (size_t k = 0; k < n * n; k++)
+    if (k % n <= k / n) estimate->relative_error += fabs(adjoint[k] * low[k]);
+  if (extended && !keeps_contract(estimate)) {
+    mho_quad exact[KEPT_SQUARE];
+    for (size_t k = 0; k < n * n; k++) exact[k] = (mho_quad)value[k] + low[k];
+    if (!work->reduced_extended)
+      work->reduced_extended = mho_elimination_create_quad(plan->contacts);
+    if (!work->reduced_extended) return MHO_ERR_MEMORY;
+    mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, adjoint, estimate);
+  }
+  for (size_t k = 0; k < n * n; k++) {
+    int slot = program->kept_slot[k / n][k % n];
+    if (slot >= 0 && k % n <= k / n)
+      work->trace.adjoint[(size_t)slot * PROGRAM_LANES + lane] = adjoint[k];
+  }
   return MHO_OK;
 }
 
@@ -95,21 +104,28 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
 static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
                               mho_point *point)
 {
+  mho_program_trace *trace = &work->trace;
   if (!work->lanes) return MHO_OK;
   for (size_t l = work->lanes; l < PROGRAM_LANES; l++) work->energy_ev[l] = work->energy_ev[0];
-  if (!work->numbers.high &&
-      mho_program_numbers_create(plan->program, &work->numbers) != MHO_OK)
+  if (!trace->high && mho_program_trace_create(plan->program, trace) != MHO_OK)
     return MHO_ERR_MEMORY;
-  (extended ? mho_program_run_extended : mho_program_run_double)(plan->program, work->energy_ev,
-                                                                 &work->numbers);
+  (extended ? mho_program_forward_extended : mho_program_forward_double)(
+      plan->program, work->energy_ev, plan->norm_ev, trace);
+  mho_estimate estimate[PROGRAM_LANES];
+  for (size_t l = 0; l < PROGRAM_LANES; l++) {
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (l < work->lanes && !trace->broken[l] &&
+        reduced_point(plan, work, l, extended, &estimate[l]) != MHO_OK)
+      return MHO_ERR_MEMORY;
+  }
+  mho_program_backward(plan->program, work->energy_ev,
+                       extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE, trace);
   size_t left = 0;
   for (size_t l = 0; l < work->lanes; l++) {
-    mho_estimate estimate = {.relative_error = INFINITY};
-    if (!work->numbers.broken[l] &&
-        reduced_point(plan, work, l, extended, &estimate) != MHO_OK)
-      return MHO_ERR_MEMORY;
-    if (keeps_contract(&estimate)) {
-      set_point(plan, &estimate, extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
+    estimate[l].kappa = trace->kappa[l];
+    estimate[l].relative_error += SECOND_ORDER * trace->error[l];
+    if (keeps_contract(&estimate[l])) {
+      set_point(plan, &estimate[l], extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
                 &point[work->at[l]]);
     } else {
       work->energy_ev[left] = work->energy_ev[l];
@@ -222,7 +238,7 @@ mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
   mho_elimination_free_double(work.reduced);
   mho_elimination_free_quad(work.extended);
   mho_elimination_free_quad(work.reduced_extended);
-  mho_program_numbers_clear(&work.numbers);
+  mho_program_trace_clear(&work.trace);
   return status;
 }
 
