@@ -77,7 +77,8 @@ MHO_API void mho_plan_free(mho_plan *plan);
  *
  * Methods are tried in turn, each with a bound on its own error; the first that
  * keeps max(1e-12, 64 u kappa) <= 1e-10 is taken, where kappa is the relative
- * condition of T.  No result depends on the other energies of the call.  States that no contact sees do not matter:
+ * condition of T.  A plan keeps the workspace of a sweep for the next, so that
+ * only the first allocates (and those that run at the same time).  No result depends on the other energies of the call.  States that no contact sees do not matter:
  * where E - H is singular through them alone, the finite limit is returned.
  * Errors: MHO_ERR_NOT_FINITE (an energy is not finite), MHO_ERR_MEMORY. */
 MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,

@@ -179,7 +179,8 @@ static mho_status start(int sites, const mho_lead *left, const mho_lead *right,
 /* Everything that follows from entries and leads. */
 static mho_status prepare(const mho_lead *left, const mho_lead *right, mho_plan *plan)
 {
-  mho_status status = collect_channels((const mho_lead *const[]){left, right}, plan);
+  mho_status status = mho_spare_create(plan);
+  if (status == MHO_OK) status = collect_channels((const mho_lead *const[]){left, right}, plan);
   if (status == MHO_OK) status = collect_neighbours(plan);
   if (status == MHO_OK) status = find_connection(plan);
   if (status == MHO_OK) status = mho_plan_order(plan);
@@ -281,6 +282,7 @@ void mho_plan_free(mho_plan *plan)
   free(plan->amplitude);
   mho_program_free(plan->program);
   mho_plan_free(plan->contacts);
+  mho_spare_free(plan);
   free(plan);
 }
 

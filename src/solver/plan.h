@@ -37,6 +37,7 @@ struct mho_plan {
   struct mho_program *program;    /* NULL: does not pay */
   mho_plan *contacts;             /* of the program's kept sites */
   mho_method first;               /* methods before it are left out (tests) */
+  struct mho_spare *spare;        /* a workspace that no sweep uses now */
 };
 
 /* Unit roundoff of a double. */
@@ -60,6 +61,11 @@ MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
 /* A plan of the contacts' sites alone, site[count] of this one. */
 MHO_MUST_USE mho_status mho_plan_contacts(const mho_plan *plan, const int *site, int count,
                                           mho_plan **contacts);
+
+/* The workspace of the last sweep waits for the next one, whichever thread that
+ * is; sweep.c.  Errors: MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_spare_create(mho_plan *plan);
+void mho_spare_free(mho_plan *plan);
 
 /* Gaussian elimination in double and in 113 bits; elimination.inc.  The
  * workspace belongs to one thread; create returns NULL without memory.

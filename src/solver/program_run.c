@@ -19,8 +19,9 @@
 
 #include <math.h>
 #include <stdlib.h>
+#include <sys/mman.h>
 
-enum { L = PROGRAM_LANES };
+enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21 };
 
 /* Pivots below this (times the norm) leave too few digits for first order. */
 #define PIVOT_DOUBLE 1e-6
@@ -29,9 +30,14 @@ enum { L = PROGRAM_LANES };
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
   size_t slots = ((size_t)program->slots + 1) * L;
+  size_t bytes = (3 * slots + program->taped * L) * sizeof(double);
+  size_t page = bytes > LARGE_PAGE ? LARGE_PAGE : 64;
   *trace = (mho_program_trace){0};
-  trace->high = aligned_alloc(64, (3 * slots + program->taped * L) * sizeof(double));
+  trace->high = aligned_alloc(page, (bytes + page - 1) / page * page);
   if (!trace->high) return MHO_ERR_MEMORY;
+#ifdef MADV_HUGEPAGE
+  if (page == LARGE_PAGE) (void)madvise(trace->high, bytes, MADV_HUGEPAGE); /* only a hint */
+#endif
   trace->low = trace->high + slots;
   trace->adjoint = trace->low + slots;
   trace->tape = trace->adjoint + slots;

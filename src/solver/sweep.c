@@ -3,6 +3,8 @@
  * The ladder of methods: the first that keeps the accuracy contract is taken.
  */
 #include <math.h>
+#include <stdatomic.h>
+#include <stdlib.h>
 
 #include "solver/plan.h"
 #include "solver/program.h"
@@ -28,6 +30,48 @@ typedef struct {
   size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
   size_t lanes;
 } workspace;
+
+struct mho_spare {
+  _Atomic(workspace *) waiting;
+};
+
+static void workspace_free(workspace *work)
+{
+  if (!work) return;
+  mho_elimination_free_double(work->plain);
+  mho_elimination_free_double(work->reduced);
+  mho_elimination_free_quad(work->extended);
+  mho_elimination_free_quad(work->reduced_extended);
+  mho_program_trace_clear(&work->trace);
+  free(work);
+}
+
+mho_status mho_spare_create(mho_plan *plan)
+{
+  plan->spare = malloc(sizeof *plan->spare);
+  if (!plan->spare) return MHO_ERR_MEMORY;
+  atomic_init(&plan->spare->waiting, NULL);
+  return MHO_OK;
+}
+
+void mho_spare_free(mho_plan *plan)
+{
+  if (plan->spare) workspace_free(atomic_load(&plan->spare->waiting));
+  free(plan->spare);
+}
+
+/* The waiting workspace, or a new one; several sweeps at a time have one each. */
+static workspace *workspace_take(const mho_plan *plan)
+{
+  workspace *work = atomic_exchange(&plan->spare->waiting, NULL);
+  return work ? work : calloc(1, sizeof *work);
+}
+
+/* A workspace of a sweep that failed may hold anything and is not kept. */
+static void workspace_return(const mho_plan *plan, workspace *work, bool keep)
+{
+  workspace_free(keep ? atomic_exchange(&plan->spare->waiting, work) : work);
+}
 
 static void set_point(const mho_plan *plan, const mho_estimate *estimate,
                       mho_method method, mho_point *point)
@@ -226,20 +270,14 @@ mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
                                   const double *energy_ev, mho_point *point,
                                   mho_error *error)
 {
-  workspace work = {0};
-  mho_status status = MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < count; i++)
+  for (size_t i = 0; i < count; i++)
     if (!isfinite(energy_ev[i]))
-      status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
-                        "energy %zu is not a finite number", i);
-  if (status == MHO_OK) status = sweep(plan, &work, count, energy_ev, point);
-  if (status == MHO_ERR_MEMORY) mho_fail(error, status, "solver", NULL, "out of memory");
-  mho_elimination_free_double(work.plain);
-  mho_elimination_free_double(work.reduced);
-  mho_elimination_free_quad(work.extended);
-  mho_elimination_free_quad(work.reduced_extended);
-  mho_program_trace_clear(&work.trace);
-  return status;
+      return mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
+                      "energy %zu is not a finite number", i);
+  workspace *work = workspace_take(plan);
+  mho_status status = work ? sweep(plan, work, count, energy_ev, point) : MHO_ERR_MEMORY;
+  if (work) workspace_return(plan, work, status == MHO_OK);
+  return status == MHO_OK ? MHO_OK : mho_fail(error, status, "solver", NULL, "out of memory");
 }
 
 const char *mho_method_name(mho_method method)
