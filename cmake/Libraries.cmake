@@ -4,7 +4,10 @@ find_package(PkgConfig REQUIRED)
 pkg_check_modules(YAML REQUIRED IMPORTED_TARGET yaml-0.1)
 pkg_check_modules(JANSSON REQUIRED IMPORTED_TARGET jansson)
 pkg_check_modules(MD REQUIRED IMPORTED_TARGET libmd)
+pkg_check_modules(ZLIB REQUIRED IMPORTED_TARGET zlib)
 pkg_check_modules(OPENBLAS REQUIRED IMPORTED_TARGET openblas)
+
+find_package(OpenMP REQUIRED COMPONENTS C)
 
 find_library(LAPACKE_LIBRARY lapacke REQUIRED)
 find_path(LAPACKE_INCLUDE lapacke.h REQUIRED)

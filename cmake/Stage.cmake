@@ -30,7 +30,8 @@ function(mho_library)
     target_sources(mho PRIVATE $<TARGET_OBJECTS:${stage}>)
     target_sources(mho_all INTERFACE $<TARGET_OBJECTS:${stage}>)
   endforeach()
-  set(libraries mho_linear_algebra mho_gsl PkgConfig::YAML PkgConfig::JANSSON PkgConfig::MD m)
+  set(libraries mho_linear_algebra mho_gsl PkgConfig::YAML PkgConfig::JANSSON PkgConfig::MD
+                PkgConfig::ZLIB OpenMP::OpenMP_C m)
   target_link_libraries(mho PRIVATE ${libraries})
   target_link_libraries(mho_all INTERFACE ${libraries})
   target_include_directories(mho PUBLIC

@@ -6,6 +6,7 @@
 #ifndef MHOLECULE_MOLECULE_H
 #define MHOLECULE_MOLECULE_H
 
+#include <mho/graph.h>
 #include <mho/parameters.h>
 #include <mho/status.h>
 
@@ -60,6 +61,12 @@ typedef struct {
   long line, column; /* where the file says so; 0 elsewhere */
 } mho_fermi;
 
+/* A linker by its kind (`amine`, `thiol` ...) and the site that binds. */
+typedef struct {
+  const char *kind;
+  int site;
+} mho_site_linker;
+
 enum { MHO_LEFT, MHO_RIGHT };
 
 typedef struct {
@@ -76,6 +83,12 @@ typedef struct {
   int charge;
   mho_contact contact[2]; /* MHO_LEFT, MHO_RIGHT */
   mho_fermi fermi;
+  /* What the reader of a structure has to say. */
+  int linker_count;
+  mho_site_linker *linker;
+  mho_texts notes;
+  unsigned warnings; /* bits of mho/warning.h */
+  mho_parameter_set *own_parameters; /* of the file, if it names a set */
 } mho_molecule;
 
 MHO_BEGIN_DECLARATIONS

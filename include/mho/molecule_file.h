@@ -22,6 +22,23 @@ MHO_API MHO_MUST_USE mho_status mho_molecule_read(const char *path,
                                                   mho_molecule *molecule,
                                                   mho_error *error);
 
+/* The molecule that a SMILES draws, under `settings` (may be NULL), with
+ * `charge` on top of the charges that are drawn.  The molecule is initialised;
+ * it may have a name already and is called by the text otherwise.  place (may
+ * be NULL) is where the text stands.  Errors: as mho_structure_read_smiles,
+ * and as mho_settings_apply. */
+MHO_API MHO_MUST_USE mho_status mho_molecule_read_smiles(
+    const char *text, const mho_place *place, const mho_settings *settings,
+    int charge, mho_molecule *molecule, mho_error *error);
+
+/* Reads a parameter set (YAML): `name`, `source`, optionally `base` (a
+ * built-in set to start from, van-catledge by default), `rows` of {element, h,
+ * k, electrons} with k to carbon, and `pairs` of {between: [A, B], k}.  The
+ * caller frees the set with mho_parameters_free. */
+MHO_API MHO_MUST_USE mho_status mho_parameters_read(const char *path,
+                                                    mho_parameter_set **set,
+                                                    mho_error *error);
+
 MHO_END_DECLARATIONS
 
 #endif

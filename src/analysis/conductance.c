@@ -116,7 +116,7 @@ mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
 unsigned mho_molecule_warnings(const mho_molecule *molecule,
                                const mho_junction *junction)
 {
-  unsigned warnings = 0;
+  unsigned warnings = molecule->warnings;
   if (molecule->charge != 0) warnings |= MHO_WARN_CHARGED;
   if (junction->open_shell) warnings |= MHO_WARN_OPEN_SHELL;
   if (!junction->open_shell && junction->has_homo && junction->has_lumo &&

@@ -86,6 +86,13 @@ char *mho_print_text(const char *format, ...)
   return text;
 }
 
+char *mho_path_beside(const char *beside, const char *name)
+{
+  const char *slash = beside ? strrchr(beside, '/') : NULL;
+  if (name[0] == '/' || !slash) return mho_copy_text(name);
+  return mho_print_text("%.*s/%s", (int)(slash - beside), beside, name);
+}
+
 mho_status mho_read_file(const char *path, size_t limit, const char *stage,
                          char **text, size_t *size, mho_error *error)
 {

@@ -20,6 +20,10 @@ const char *mho_join_words(const char *const *candidates, size_t count,
 MHO_MUST_USE char *mho_copy_text(const char *text);
 MHO_MUST_USE char *mho_print_text(const char *format, ...) MHO_PRINTF(1, 2);
 
+/* `name` as seen from the folder of the file `beside` (NULL: from here); the
+ * caller frees it. */
+MHO_MUST_USE char *mho_path_beside(const char *beside, const char *name);
+
 /* Reads a whole regular file of at most limit bytes; *text is NUL-terminated
  * and the caller frees it.  Errors: MHO_ERR_FILE, MHO_ERR_LIMIT,
  * MHO_ERR_MEMORY. */

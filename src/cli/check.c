@@ -6,16 +6,18 @@
 
 int command_check(const command *cmd, mho_error *error)
 {
-  subject *list;
-  mho_status status = subjects_read(cmd, false, &list, error);
-  mho_checked *checked = calloc((size_t)cmd->files, sizeof *checked);
+  subjects list;
+  command lenient = *cmd;
+  lenient.overrides.contacts_optional = true;
+  mho_status status = subjects_read(&lenient, false, &list, error);
+  mho_checked *checked = calloc((size_t)list.count + 1, sizeof *checked);
   if (status == MHO_OK && !checked)
     status = mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
   mho_buffer buffer = {0};
   if (status == MHO_OK) {
-    size_t count = (size_t)cmd->files;
+    size_t count = (size_t)list.count;
     for (size_t i = 0; i < count; i++)
-      checked[i] = (mho_checked){&list[i].molecule, &list[i].junction, list[i].warnings};
+      checked[i] = (mho_checked){&list.item[i].molecule, &list.item[i].junction, list.item[i].warnings};
     status = cmd->format == FORMAT_JSON
                  ? mho_write_check_json(checked, count, &buffer, error)
                  : mho_write_check_screen(checked, count, digits_of(cmd), &buffer, error);
@@ -23,6 +25,6 @@ int command_check(const command *cmd, mho_error *error)
   if (status == MHO_OK) status = text_write(cmd, &buffer, error);
   mho_buffer_clear(&buffer);
   free(checked);
-  subjects_free(list, cmd->files);
+  subjects_free(&list);
   return exit_of(status);
 }

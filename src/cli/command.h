@@ -50,12 +50,22 @@ typedef struct {
   unsigned warnings;
 } subject;
 
-/* Reads every FILE of the command; names must differ.  With need_contacts a
- * molecule without two contacts is an error.  The caller frees with
- * subjects_free, also after a failure (*list may be NULL then). */
+typedef struct {
+  int count, capacity;
+  subject *item;
+} subjects;
+
+/* Reads every argument of the command: a molecule file, a list of SMILES
+ * (.smi, .csv), or else a SMILES itself.  Names must differ; in a list the row
+ * is added where they do not.  A bad row of a list is told on stderr and left
+ * out.  With need_contacts a molecule without two contacts is an error.  The
+ * caller frees, also after a failure. */
 MHO_MUST_USE mho_status subjects_read(const command *cmd, bool need_contacts,
-                                      subject **list, mho_error *error);
-void subjects_free(subject *list, int count);
+                                      subjects *list, mho_error *error);
+void subjects_free(subjects *list);
+
+/* The causes on stderr, one a line. */
+void print_causes(const command *cmd, mho_error *error);
 
 /* Writes an output in the chosen form to stdout or to -o PATH. */
 MHO_MUST_USE mho_status output_write(const command *cmd, const mho_output *output,
@@ -63,8 +73,5 @@ MHO_MUST_USE mho_status output_write(const command *cmd, const mho_output *outpu
 MHO_MUST_USE mho_status text_write(const command *cmd, const mho_buffer *buffer,
                                    mho_error *error);
 int digits_of(const command *cmd);
-
-/* True if the text ends like a file that holds a molecule. */
-bool has_molecule_extension(const char *text);
 
 #endif

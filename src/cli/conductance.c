@@ -19,7 +19,9 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   unsigned warnings = s->warnings | result.warnings;
   mho_conductance_row(table, s->molecule.name, &result, warnings);
   mho_output_warn(output, s->molecule.name, warnings);
-  if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
+  if (cmd->quiet) return MHO_OK;
+  mho_verdict_note(output, s->molecule.name, &result, cmd->window_ev);
+  mho_assumption_note(output, &s->molecule, &s->junction);
   return MHO_OK;
 }
 
@@ -46,37 +48,32 @@ static int list_sensitivities(const command *cmd, mho_error *error)
   if (cmd->has_window)
     return usage_error(cmd->verb, "--sensitivity looks at the Fermi level only; it excludes "
                                   "--window");
-  subject *list;
+  subjects list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
   mho_table *table = mho_sensitivity_table(&output);
-  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
-    status = add_sensitivity(cmd, &list[i], &output, table, error);
+  for (int i = 0; status == MHO_OK && table && i < list.count; i++)
+    status = add_sensitivity(cmd, &list.item[i], &output, table, error);
   if (!cmd->quiet)
     mho_output_note(&output, "derivatives of log10 of the thermal conductance at the Fermi level, "
                              "each a unit of its parameter; sigma is the default uncertainty");
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
-  subjects_free(list, cmd->files);
+  subjects_free(&list);
   return exit_of(status);
 }
 
 int command_conductance(const command *cmd, mho_error *error)
 {
   if (cmd->sensitivity) return list_sensitivities(cmd, error);
-  subject *list;
+  subjects list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
   mho_table *table = mho_conductance_table(&output);
-  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
-    status = add_molecule(cmd, &list[i], &output, table, error);
-  if (!cmd->quiet)
-    mho_output_note(&output,
-                    "conductance is the thermal value at the Fermi level; the window values are "
-                    "its 5 %% and 95 %% quantiles over +-%g eV around it",
-                    cmd->window_ev);
+  for (int i = 0; status == MHO_OK && table && i < list.count; i++)
+    status = add_molecule(cmd, &list.item[i], &output, table, error);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
-  subjects_free(list, cmd->files);
+  subjects_free(&list);
   return exit_of(status);
 }

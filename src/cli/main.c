@@ -20,16 +20,16 @@ typedef struct {
 } verb;
 
 static const verb verbs[] = {
-    {CHECK, "check", "FILE...", "say what was understood of a molecule",
+    {CHECK, "check", "MOLECULE...", "say what was understood of a molecule",
      "Sites, bonds, electrons, levels, contacts and warnings of each molecule.\n"
      "Needs no contacts.",
      command_check},
-    {CONDUCTANCE, "conductance", "FILE...",
+    {CONDUCTANCE, "conductance", "MOLECULE...",
      "conductance at the Fermi level and how far it may be off",
      "Thermal zero-bias conductance of each molecule at its Fermi level, and its\n"
      "5 % and 95 % quantiles while the Fermi level moves over the alignment window.",
      command_conductance},
-    {TRANSMISSION, "transmission", "FILE...", "transmission T(E), its resonances and nodes",
+    {TRANSMISSION, "transmission", "MOLECULE...", "transmission T(E), its resonances and nodes",
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
      "follow resonances and nodes, so that none is missed.",
      command_transmission},
@@ -51,7 +51,7 @@ typedef struct {
 
 enum {
   OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
-  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
 
@@ -73,7 +73,12 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
     [OPT_COUPLING] = {ALL, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
     [OPT_BETA] = {ALL, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
-    [OPT_PARAMETERS] = {ALL, "parameters", 0, "SET", "parameter set (default van-catledge)"},
+    [OPT_PARAMETERS] = {ALL, "parameters", 0, "SET", "van-catledge (default), streitwieser, or a file"},
+    [OPT_TWIST] = {ALL, "twist", 0, "'BOND = ANGLE'", "such as 'C5-C8 = 38 deg'; may be repeated"},
+    [OPT_ALTERNATION] = {ALL, "alternation", 0, "RULE",
+                         "of bonds in a SMILES: formal (default) or none"},
+    [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
+                   "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
     [OPT_CSV] = {TABLES, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
@@ -102,14 +107,41 @@ int usage_error(const char *verb_name, const char *format, ...)
   return EXIT_INPUT;
 }
 
+/* The mistakes of one file in the order of its lines. */
+static void sort_causes(mho_error *error)
+{
+  for (int i = 1; i < error->count; i++)
+    for (int k = i; k > 0; k--) {
+      mho_cause *a = &error->cause[k - 1], *b = &error->cause[k], swap = *a;
+      bool later = a->line > b->line || (a->line == b->line && a->column > b->column);
+      if (strcmp(a->file, b->file) || !later) break;
+      *a = *b;
+      *b = swap;
+    }
+}
+
+void print_causes(const command *cmd, mho_error *error)
+{
+  sort_causes(error);
+  for (int i = 0; i < error->count; i++) {
+    char line[1400];
+    mho_cause_format(&error->cause[i], line, sizeof line);
+    if (error->cause[i].file[0]) fprintf(stderr, "%s\n", line);
+    else fprintf(stderr, "mho %s: %s\n", cmd->verb, line);
+  }
+  if (error->suppressed)
+    fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
+}
+
 static void print_help(void)
 {
   printf("mho - conductance of single-molecule junctions from a tight-binding model\n\n"
-         "usage: mho VERB [options] FILE...\n\n");
+         "usage: mho VERB [options] MOLECULE...\n\n");
   for (int i = 0; i < VERB_COUNT; i++)
     printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
   printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
-         "\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
+         "\nA MOLECULE is a molecule file, a list (.smi, .csv) or a SMILES such as\n"
+         "'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
          "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
 }
 
@@ -194,9 +226,34 @@ static int read_seed(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
-static int read_option(command *cmd, int which, const char *text)
+/* A setting that files have as well; a parameter file may have its own causes. */
+static int read_setting(command *cmd, const char *name, const char *text)
 {
   char reason[320];
+  mho_error error;
+  mho_error_init(&error);
+  mho_status status =
+      mho_settings_read(&cmd->overrides, name, text, NULL, reason, sizeof reason, &error);
+  print_causes(cmd, &error);
+  return status == MHO_OK ? EXIT_DONE : usage_error(cmd->verb, "--%s: %s", name, reason);
+}
+
+/* `C5-C8 = 38 deg` */
+static int read_twist(command *cmd, const char *text)
+{
+  char reason[320], bond[2 * MHO_ID_SIZE + 2];
+  const char *equals = strchr(text, '=');
+  if (!equals || (size_t)(equals - text) >= sizeof bond)
+    return usage_error(cmd->verb, "--twist: '%s' is not understood; write 'C5-C8 = 38 deg'", text);
+  snprintf(bond, sizeof bond, "%.*s", (int)(equals - text), text);
+  bond[strcspn(bond, " \t")] = '\0';
+  if (mho_settings_read_twist(&cmd->overrides, bond, equals + 1, reason, sizeof reason) != MHO_OK)
+    return usage_error(cmd->verb, "--twist: %s", reason);
+  return EXIT_DONE;
+}
+
+static int read_option(command *cmd, int which, const char *text)
+{
   switch (which) {
   case OPT_ENERGIES: return read_energies(cmd, text);
   case OPT_SAMPLES: return read_samples(cmd, text);
@@ -220,11 +277,8 @@ static int read_option(command *cmd, int which, const char *text)
       return usage_error(cmd->verb, "--csv and --json exclude each other");
     cmd->format = which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON;
     return EXIT_DONE;
-  default:
-    if (mho_settings_read(&cmd->overrides, options[which].name, text, reason, sizeof reason) !=
-        MHO_OK)
-      return usage_error(cmd->verb, "--%s: %s", options[which].name, reason);
-    return EXIT_DONE;
+  case OPT_TWIST: return read_twist(cmd, text);
+  default: return read_setting(cmd, options[which].name, text);
   }
 }
 
@@ -279,31 +333,6 @@ static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
   return EXIT_DONE;
 }
 
-/* The mistakes of one file in the order of its lines. */
-static void sort_causes(mho_error *error)
-{
-  for (int i = 1; i < error->count; i++)
-    for (int k = i; k > 0; k--) {
-      mho_cause *a = &error->cause[k - 1], *b = &error->cause[k], swap = *a;
-      bool later = a->line > b->line || (a->line == b->line && a->column > b->column);
-      if (strcmp(a->file, b->file) || !later) break;
-      *a = *b;
-      *b = swap;
-    }
-}
-
-static void print_causes(const command *cmd, const mho_error *error)
-{
-  for (int i = 0; i < error->count; i++) {
-    char line[1400];
-    mho_cause_format(&error->cause[i], line, sizeof line);
-    if (error->cause[i].file[0]) fprintf(stderr, "%s\n", line);
-    else fprintf(stderr, "mho %s: %s\n", cmd->verb, line);
-  }
-  if (error->suppressed)
-    fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
-}
-
 /* The command line as one text, arguments with blanks in quotes. */
 static void join_arguments(int argc, char **argv, mho_buffer *line)
 {
@@ -327,9 +356,9 @@ static int run_verb(const verb *v, int argc, char **argv)
     mho_error_init(&error);
     cmd.line = line.data;
     code = v->run(&cmd, &error);
-    sort_causes(&error);
     print_causes(&cmd, &error);
   }
+  mho_settings_clear(&cmd.overrides);
   mho_buffer_clear(&line);
   return code;
 }

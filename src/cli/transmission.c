@@ -120,17 +120,17 @@ int command_transmission(const command *cmd, mho_error *error)
 {
   int code = check_options(cmd);
   if (code != EXIT_DONE) return code;
-  subject *list;
+  subjects list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
   mho_table *table =
       cmd->poles   ? mho_poles_table(&output)
       : cmd->nodes ? mho_nodes_table(&output)
                    : mho_transmission_table(&output);
-  for (int i = 0; status == MHO_OK && table && i < cmd->files; i++)
-    status = add_molecule(cmd, &list[i], &output, table, error);
+  for (int i = 0; status == MHO_OK && table && i < list.count; i++)
+    status = add_molecule(cmd, &list.item[i], &output, table, error);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
-  subjects_free(list, cmd->files);
+  subjects_free(&list);
   return exit_of(status);
 }

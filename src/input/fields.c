@@ -177,12 +177,34 @@ void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mappin
     if (!mho_yaml_is(document, node, MHO_YAML_TEXT, name[i])) continue;
     char reason[320];
     mho_status status =
-        mho_settings_read(settings, name[i], node->text, reason, sizeof reason);
+        mho_settings_read(settings, name[i], node->text, document->file, reason, sizeof reason,
+                          document->error);
     if (status != MHO_OK) {
       mho_yaml_fail(document, node, status, name[i], "%s: %s", name[i], reason);
     } else if (!strcmp(name[i], "fermi")) {
       settings->fermi.line = node->line;
       settings->fermi.column = node->column;
     }
+  }
+}
+
+void mho_yaml_get_twists(const mho_yaml *document, const mho_yaml_node *list,
+                         mho_settings *settings)
+{
+  static const char *const keys[] = {"bond", "angle"};
+  if (!mho_yaml_is(document, list, MHO_YAML_LIST, "twist")) return;
+  for (size_t i = 0; i < list->count; i++) {
+    const mho_yaml_node *item = list->item[i];
+    const char *bond, *angle;
+    char reason[320];
+    if (!mho_yaml_is(document, item, MHO_YAML_MAPPING, "a twist")) continue;
+    mho_yaml_check_keys(document, item, keys, 2);
+    const mho_yaml_node *bond_node = mho_yaml_require(document, item, "bond");
+    const mho_yaml_node *angle_node = mho_yaml_require(document, item, "angle");
+    if (!mho_yaml_get_text(document, bond_node, "bond", &bond) ||
+        !mho_yaml_get_text(document, angle_node, "angle", &angle))
+      continue;
+    mho_status status = mho_settings_read_twist(settings, bond, angle, reason, sizeof reason);
+    if (status != MHO_OK) mho_yaml_fail(document, item, status, "twist", "twist: %s", reason);
   }
 }

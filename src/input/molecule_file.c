@@ -9,24 +9,26 @@
 #include <string.h>
 
 #include "base/text.h"
+#include "input/molecule_node.h"
 #include "input/yaml.h"
 
 #define ENERGY_LIMIT_EV 100.0
 #define COUPLING_LOW_EV 1e-9
 #define COUPLING_HIGH_EV 10.0
 
-enum { CHARGE_LIMIT = 20, ROWS_MAX = 128 };
+enum { CHARGE_LIMIT = 20 };
 
 typedef struct {
-  mho_yaml yaml;
+  const mho_yaml *yaml;
+  const mho_yaml_node *node; /* the mapping of the molecule */
   mho_molecule *molecule;
-  const mho_settings *overrides;
+  mho_settings settings; /* of defaults, this mapping and overrides together */
   bool explicit_energy; /* some site has an explicit onsite only */
 } reader;
 
 static bool fail_memory(const reader *r)
 {
-  mho_fail_at(r->yaml.error, MHO_ERR_MEMORY, "input", r->yaml.file, 0, 0, NULL,
+  mho_fail_at(r->yaml->error, MHO_ERR_MEMORY, "input", r->yaml->file, 0, 0, NULL,
               "out of memory");
   return false;
 }
@@ -40,22 +42,33 @@ static bool is_id(const char *text)
          strlen(text) < MHO_ID_SIZE;
 }
 
-static void read_settings(reader *r)
+/* What stands in the mapping goes on top of the defaults, and the overrides on
+ * top of both. */
+static bool read_settings(reader *r, const mho_settings *defaults,
+                          const mho_settings *overrides)
 {
-  mho_settings settings = {0};
-  mho_yaml_get_settings(&r->yaml, r->yaml.root, &settings);
-  mho_settings_apply(&settings, r->molecule);
-  /* Rows are looked up while reading, so this override cannot wait. */
-  if (r->overrides && r->overrides->parameters)
-    r->molecule->parameters = r->overrides->parameters;
+  mho_settings own = {0};
+  mho_yaml_get_settings(r->yaml, r->node, &own);
+  mho_yaml_get_twists(r->yaml, mho_yaml_find(r->node, "twist"), &own);
+  bool good = mho_settings_merge(&r->settings, defaults) == MHO_OK &&
+              mho_settings_merge(&r->settings, &own) == MHO_OK &&
+              mho_settings_merge(&r->settings, overrides) == MHO_OK;
+  r->molecule->own_parameters = own.own_parameters;
+  own.own_parameters = NULL;
+  mho_settings_clear(&own);
+  if (r->settings.parameters) r->molecule->parameters = r->settings.parameters;
+  return good ? true : fail_memory(r);
 }
 
 static void read_name(reader *r)
 {
-  const char *text, *path = r->yaml.file;
-  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "name");
-  if (mho_yaml_get_text(&r->yaml, node, "name", &text)) {
+  const char *text, *path = r->yaml->file;
+  const mho_yaml_node *node = mho_yaml_find(r->node, "name");
+  bool whole_file = r->node == r->yaml->root;
+  if (mho_yaml_get_text(r->yaml, node, "name", &text)) {
     r->molecule->name = mho_copy_text(text);
+  } else if (!whole_file) {
+    return; /* a structure inside a study is called by its text */
   } else {
     const char *slash = strrchr(path, '/'), *stem = slash ? slash + 1 : path;
     const char *dot = strrchr(stem, '.');
@@ -70,24 +83,24 @@ static void read_element(reader *r, const mho_yaml_node *node, mho_site *site)
 {
   const mho_parameter_set *set = r->molecule->parameters;
   const char *text;
-  if (!mho_yaml_get_text(&r->yaml, node, "element", &text)) return;
+  if (!mho_yaml_get_text(r->yaml, node, "element", &text)) return;
   site->row = mho_parameters_find(set, text);
   if (site->row >= 0) {
     site->electrons = mho_parameters_electrons(set, site->row);
     return;
   }
-  const char *row[ROWS_MAX];
+  const char *row[MHO_ROW_LIMIT];
   size_t count = 0;
-  for (int i = 0; i < mho_parameters_count(set) && count < ROWS_MAX; i++)
+  for (int i = 0; i < mho_parameters_count(set) && count < MHO_ROW_LIMIT; i++)
     row[count++] = mho_parameters_row_name(set, i);
   const char *nearest = mho_nearest_word(text, row, count);
   char list[320];
   if (nearest)
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
+    mho_yaml_fail(r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
                   "element: '%.40s' is not a row of %s; did you mean '%s'?", text,
                   mho_parameters_name(set), nearest);
   else
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
+    mho_yaml_fail(r->yaml, node, MHO_ERR_UNPARAMETERISED, "element",
                   "element: '%.40s' is not a row of %s; allowed are %s", text,
                   mho_parameters_name(set), mho_join_words(row, count, list, sizeof list));
 }
@@ -96,39 +109,39 @@ static void read_site(reader *r, const mho_yaml_node *node, mho_site *site)
 {
   static const char *const keys[] = {"id", "element", "onsite"};
   *site = (mho_site){.row = -1};
-  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "a site")) return;
-  mho_yaml_check_keys(&r->yaml, node, keys, 3);
-  const mho_yaml_node *id = mho_yaml_require(&r->yaml, node, "id");
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "a site")) return;
+  mho_yaml_check_keys(r->yaml, node, keys, 3);
+  const mho_yaml_node *id = mho_yaml_require(r->yaml, node, "id");
   const char *text;
-  if (mho_yaml_get_text(&r->yaml, id, "id", &text)) {
+  if (mho_yaml_get_text(r->yaml, id, "id", &text)) {
     if (!is_id(text))
-      mho_yaml_fail(&r->yaml, id, MHO_ERR_SYNTAX, "id",
+      mho_yaml_fail(r->yaml, id, MHO_ERR_SYNTAX, "id",
                     "id: '%.40s' is not allowed; write a letter, then letters, digits or _, "
                     "at most %d characters",
                     text, MHO_ID_SIZE - 1);
     else if (mho_molecule_find_site(r->molecule, text) >= 0)
-      mho_yaml_fail(&r->yaml, id, MHO_ERR_KEY, "id", "id: site '%s' exists already", text);
+      mho_yaml_fail(r->yaml, id, MHO_ERR_KEY, "id", "id: site '%s' exists already", text);
     else
       snprintf(site->id, sizeof site->id, "%s", text);
   }
   const mho_yaml_node *element = mho_yaml_find(node, "element");
   const mho_yaml_node *onsite = mho_yaml_find(node, "onsite");
   if (!element && !onsite)
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "element",
+    mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, "element",
                   "a site needs an 'element' such as C or an 'onsite' energy");
   read_element(r, element, site);
   site->explicit_onsite =
-      mho_yaml_get_quantity(&r->yaml, onsite, "onsite", MHO_ENERGY, -ENERGY_LIMIT_EV,
+      mho_yaml_get_quantity(r->yaml, onsite, "onsite", MHO_ENERGY, -ENERGY_LIMIT_EV,
                             ENERGY_LIMIT_EV, &site->onsite_ev);
   if (onsite) r->explicit_energy = true;
 }
 
 static void read_sites(reader *r)
 {
-  const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "sites");
-  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "sites")) return;
+  const mho_yaml_node *list = mho_yaml_require(r->yaml, r->node, "sites");
+  if (!mho_yaml_is(r->yaml, list, MHO_YAML_LIST, "sites")) return;
   if (list->count < 1 || list->count > MHO_SITE_LIMIT) {
-    mho_yaml_fail(&r->yaml, list, MHO_ERR_LIMIT, "sites",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_LIMIT, "sites",
                   "sites: %zu are given; allowed are 1 to %d", list->count, MHO_SITE_LIMIT);
     return;
   }
@@ -147,7 +160,7 @@ static void read_sites(reader *r)
 static bool read_site_name(reader *r, const mho_yaml_node *node, const char *field, int *site)
 {
   const char *text;
-  if (!mho_yaml_get_text(&r->yaml, node, field, &text)) return false;
+  if (!mho_yaml_get_text(r->yaml, node, field, &text)) return false;
   *site = mho_molecule_find_site(r->molecule, text);
   if (*site >= 0) return true;
   const char *nearest = NULL, **id = malloc((size_t)(r->molecule->site_count + 1) * sizeof *id);
@@ -155,7 +168,7 @@ static bool read_site_name(reader *r, const mho_yaml_node *node, const char *fie
     for (int i = 0; i < r->molecule->site_count; i++) id[i] = r->molecule->site[i].id;
     nearest = mho_nearest_word(text, id, (size_t)r->molecule->site_count);
   }
-  mho_yaml_fail(&r->yaml, node, MHO_ERR_REFERENCE, field,
+  mho_yaml_fail(r->yaml, node, MHO_ERR_REFERENCE, field,
                 nearest ? "%s: there is no site '%.40s'; did you mean '%s'?"
                         : "%s: there is no site '%.40s' under 'sites'",
                 field, text, nearest);
@@ -165,10 +178,10 @@ static bool read_site_name(reader *r, const mho_yaml_node *node, const char *fie
 
 static bool read_ends(reader *r, const mho_yaml_node *node, mho_bond *bond)
 {
-  const mho_yaml_node *between = mho_yaml_require(&r->yaml, node, "between");
-  if (!mho_yaml_is(&r->yaml, between, MHO_YAML_LIST, "between")) return false;
+  const mho_yaml_node *between = mho_yaml_require(r->yaml, node, "between");
+  if (!mho_yaml_is(r->yaml, between, MHO_YAML_LIST, "between")) return false;
   if (between->count != 2) {
-    mho_yaml_fail(&r->yaml, between, MHO_ERR_SYNTAX, "between",
+    mho_yaml_fail(r->yaml, between, MHO_ERR_SYNTAX, "between",
                   "between: %zu sites are given; a bond joins two, such as [a1, a2]",
                   between->count);
     return false;
@@ -177,7 +190,7 @@ static bool read_ends(reader *r, const mho_yaml_node *node, mho_bond *bond)
   bool second = read_site_name(r, between->item[1], "between", &bond->site[1]);
   if (!first || !second) return false;
   if (bond->site[0] == bond->site[1]) {
-    mho_yaml_fail(&r->yaml, between, MHO_ERR_REFERENCE, "between",
+    mho_yaml_fail(r->yaml, between, MHO_ERR_REFERENCE, "between",
                   "between: site '%s' is bonded to itself; a bond joins two sites",
                   between->item[0]->text);
     return false;
@@ -186,7 +199,7 @@ static bool read_ends(reader *r, const mho_yaml_node *node, mho_bond *bond)
     const int *other = r->molecule->bond[b].site;
     if ((other[0] == bond->site[0] && other[1] == bond->site[1]) ||
         (other[0] == bond->site[1] && other[1] == bond->site[0])) {
-      mho_yaml_fail(&r->yaml, between, MHO_ERR_KEY, "between",
+      mho_yaml_fail(r->yaml, between, MHO_ERR_KEY, "between",
                     "between: the bond %s-%s is given twice", between->item[0]->text,
                     between->item[1]->text);
       return false;
@@ -199,21 +212,21 @@ static void read_bond(reader *r, const mho_yaml_node *node)
 {
   static const char *const keys[] = {"between", "hopping", "twist"};
   mho_bond bond = {.strength = 1.0};
-  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "a bond")) return;
-  mho_yaml_check_keys(&r->yaml, node, keys, 3);
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "a bond")) return;
+  mho_yaml_check_keys(r->yaml, node, keys, 3);
   bool ends = read_ends(r, node, &bond);
   const mho_yaml_node *hopping = mho_yaml_find(node, "hopping");
   bond.explicit_hopping =
-      mho_yaml_get_quantity(&r->yaml, hopping, "hopping", MHO_ENERGY, -ENERGY_LIMIT_EV,
+      mho_yaml_get_quantity(r->yaml, hopping, "hopping", MHO_ENERGY, -ENERGY_LIMIT_EV,
                             ENERGY_LIMIT_EV, &bond.hopping_ev);
   const mho_yaml_node *twist = mho_yaml_find(node, "twist");
   bond.rotatable = twist != NULL;
-  mho_yaml_get_quantity(&r->yaml, twist, "twist", MHO_ANGLE, -360.0, 360.0, &bond.twist_deg);
+  mho_yaml_get_quantity(r->yaml, twist, "twist", MHO_ANGLE, -360.0, 360.0, &bond.twist_deg);
   if (!ends) return;
   for (int end = 0; !hopping && end < 2; end++) {
     const mho_site *site = &r->molecule->site[bond.site[end]];
     if (site->row < 0 && site->explicit_onsite) {
-      mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "hopping",
+      mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, "hopping",
                     "key 'hopping' is missing here: site '%s' has no element to take it from",
                     site->id);
       break;
@@ -224,8 +237,8 @@ static void read_bond(reader *r, const mho_yaml_node *node)
 
 static void read_bonds(reader *r)
 {
-  const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "bonds");
-  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "bonds")) return;
+  const mho_yaml_node *list = mho_yaml_require(r->yaml, r->node, "bonds");
+  if (!mho_yaml_is(r->yaml, list, MHO_YAML_LIST, "bonds")) return;
   r->molecule->bond = calloc(list->count + 1, sizeof *r->molecule->bond);
   if (!r->molecule->bond) {
     fail_memory(r);
@@ -234,39 +247,45 @@ static void read_bonds(reader *r)
   for (size_t i = 0; i < list->count; i++) read_bond(r, list->item[i]);
 }
 
+static int read_charge(reader *r)
+{
+  long charge = 0;
+  mho_yaml_get_integer(r->yaml, mho_yaml_find(r->node, "charge"), "charge", -CHARGE_LIMIT,
+                       CHARGE_LIMIT, &charge);
+  return (int)charge;
+}
+
 static void read_electrons(reader *r)
 {
   mho_molecule *m = r->molecule;
-  const mho_yaml_node *electrons = mho_yaml_find(r->yaml.root, "electrons");
-  long charge = 0, count = 0;
-  mho_yaml_get_integer(&r->yaml, mho_yaml_find(r->yaml.root, "charge"), "charge",
-                       -CHARGE_LIMIT, CHARGE_LIMIT, &charge);
-  m->charge = (int)charge;
-  m->explicit_electrons = mho_yaml_get_integer(&r->yaml, electrons, "electrons", 0,
+  const mho_yaml_node *electrons = mho_yaml_find(r->node, "electrons");
+  long count = 0;
+  m->charge = read_charge(r);
+  m->explicit_electrons = mho_yaml_get_integer(r->yaml, electrons, "electrons", 0,
                                                2L * m->site_count, &count);
   if (m->explicit_electrons) m->electrons = (int)count;
   if (electrons) return;
   if (r->explicit_energy) {
-    mho_yaml_fail(&r->yaml, r->yaml.root, MHO_ERR_KEY, "electrons",
+    mho_yaml_fail(r->yaml, r->node, MHO_ERR_KEY, "electrons",
                   "key 'electrons' is missing here: it is needed where a site has an explicit "
                   "'onsite'");
     return;
   }
   m->electrons = -m->charge;
   for (int i = 0; i < m->site_count; i++) m->electrons += m->site[i].electrons;
-  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "charge");
+  const mho_yaml_node *node = mho_yaml_find(r->node, "charge");
   if (node && (m->electrons < 0 || m->electrons > 2 * m->site_count))
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_RANGE, "charge",
+    mho_yaml_fail(r->yaml, node, MHO_ERR_RANGE, "charge",
                   "charge: it leaves %d electrons; allowed are 0 to %d", m->electrons,
                   2 * m->site_count);
 }
 
 static void read_contact_sites(reader *r, const mho_yaml_node *node, mho_contact *contact)
 {
-  const mho_yaml_node *list = mho_yaml_require(&r->yaml, node, "sites");
-  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "sites")) return;
+  const mho_yaml_node *list = mho_yaml_require(r->yaml, node, "sites");
+  if (!mho_yaml_is(r->yaml, list, MHO_YAML_LIST, "sites")) return;
   if (list->count < 1) {
-    mho_yaml_fail(&r->yaml, list, MHO_ERR_LIMIT, "sites", "sites: a contact needs a site");
+    mho_yaml_fail(r->yaml, list, MHO_ERR_LIMIT, "sites", "sites: a contact needs a site");
     return;
   }
   contact->site = calloc(list->count, sizeof *contact->site);
@@ -280,7 +299,7 @@ static void read_contact_sites(reader *r, const mho_yaml_node *node, mho_contact
     if (!read_site_name(r, list->item[i], "sites", &site)) continue;
     for (int k = 0; k < contact->count; k++)
       if (contact->site[k] == site)
-        mho_yaml_fail(&r->yaml, list->item[i], MHO_ERR_KEY, "sites",
+        mho_yaml_fail(r->yaml, list->item[i], MHO_ERR_KEY, "sites",
                       "sites: '%s' is given twice in one contact", list->item[i]->text);
     contact->site[contact->count] = site;
     contact->amplitude[contact->count++] = 1.0;
@@ -290,26 +309,26 @@ static void read_contact_sites(reader *r, const mho_yaml_node *node, mho_contact
 static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *contact)
 {
   const mho_yaml_node *list = mho_yaml_find(node, "amplitude");
-  if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "amplitude")) return;
+  if (!mho_yaml_is(r->yaml, list, MHO_YAML_LIST, "amplitude")) return;
   if (contact->channels != MHO_CHANNELS_ONE) {
-    mho_yaml_fail(&r->yaml, list, MHO_ERR_KEY, "amplitude",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_KEY, "amplitude",
                   "amplitude: it belongs to 'channels: one', where it is coherent");
     return;
   }
   if (list->count != (size_t)contact->count) {
-    mho_yaml_fail(&r->yaml, list, MHO_ERR_SIZE, "amplitude",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_SIZE, "amplitude",
                   "amplitude: %zu values for %d sites; one a site is needed", list->count,
                   contact->count);
     return;
   }
   bool all_zero = true;
   for (size_t i = 0; i < list->count; i++) {
-    mho_yaml_get_number(&r->yaml, list->item[i], "amplitude", -100.0, 100.0,
+    mho_yaml_get_number(r->yaml, list->item[i], "amplitude", -100.0, 100.0,
                         &contact->amplitude[i]);
     if (contact->amplitude[i] != 0.0) all_zero = false;
   }
   if (all_zero)
-    mho_yaml_fail(&r->yaml, list, MHO_ERR_RANGE, "amplitude",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_RANGE, "amplitude",
                   "amplitude: all are zero, so the contact touches nothing");
 }
 
@@ -318,15 +337,15 @@ static void read_contact(reader *r, const mho_yaml_node *node, const char *field
 {
   static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift"};
   static const char *const channels[] = {"independent", "one"};
-  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, field)) return;
-  mho_yaml_check_keys(&r->yaml, node, keys, sizeof keys / sizeof *keys);
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
+  mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
   read_contact_sites(r, node, contact);
-  mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, "coupling"), "coupling", MHO_ENERGY,
+  mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "coupling"), "coupling", MHO_ENERGY,
                         COUPLING_LOW_EV, COUPLING_HIGH_EV, &contact->coupling_ev);
-  mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, "shift"), "shift", MHO_ENERGY, -10.0,
+  mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "shift"), "shift", MHO_ENERGY, -10.0,
                         10.0, &contact->shift_ev);
   size_t choice = 0;
-  if (mho_yaml_get_choice(&r->yaml, mho_yaml_find(node, "channels"), "channels", channels, 2,
+  if (mho_yaml_get_choice(r->yaml, mho_yaml_find(node, "channels"), "channels", channels, 2,
                           &choice))
     contact->channels = choice == 1 ? MHO_CHANNELS_ONE : MHO_CHANNELS_INDEPENDENT;
   read_amplitudes(r, node, contact);
@@ -335,26 +354,89 @@ static void read_contact(reader *r, const mho_yaml_node *node, const char *field
 static void read_electrodes(reader *r)
 {
   static const char *const keys[] = {"left", "right"};
-  const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "electrodes");
-  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "electrodes")) return;
-  mho_yaml_check_keys(&r->yaml, node, keys, 2);
+  const mho_yaml_node *node = mho_yaml_find(r->node, "electrodes");
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "electrodes")) return;
+  mho_yaml_check_keys(r->yaml, node, keys, 2);
   for (int side = 0; side < 2; side++)
-    read_contact(r, mho_yaml_require(&r->yaml, node, keys[side]), keys[side],
+    read_contact(r, mho_yaml_require(r->yaml, node, keys[side]), keys[side],
                  &r->molecule->contact[side]);
 }
 
-static void read_molecule(reader *r)
+/* The sites themselves. */
+static void read_explicit(reader *r, const mho_settings *overrides)
 {
-  static const char *const keys[] = {"name",       "sites",       "bonds",    "electrons",
-                                     "charge",     "electrodes",  "fermi",    "parameters",
-                                     "beta",       "temperature", "coupling"};
-  mho_yaml_check_keys(&r->yaml, r->yaml.root, keys, sizeof keys / sizeof *keys);
-  read_settings(r);
-  read_name(r);
   read_sites(r);
   read_bonds(r);
   read_electrons(r);
+  mho_settings below = r->settings; /* a contact's own coupling counts more */
+  below.twist_count = 0;
+  if (mho_settings_apply(&below, r->molecule, r->yaml->error) != MHO_OK) return;
   read_electrodes(r);
+  if (r->yaml->error->count) return; /* sites may be missing */
+  mho_settings above = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
+  if (overrides) {
+    above.has_coupling = overrides->has_coupling;
+    above.coupling_ev = overrides->coupling_ev;
+  }
+  mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
+  (void)status; /* the cause is in the document's error */
+}
+
+static void read_drawn(reader *r, const mho_yaml_node *smiles)
+{
+  const char *text;
+  int charge = read_charge(r);
+  if (!mho_yaml_get_text(r->yaml, smiles, "smiles", &text)) return;
+  mho_place place = {r->yaml->file, smiles->line, smiles->column + smiles->quoted};
+  mho_status status = mho_molecule_read_smiles(text, &place, &r->settings, charge, r->molecule,
+                                               r->yaml->error);
+  (void)status; /* the cause is in the document's error */
+}
+
+static void refuse_mixture(reader *r)
+{
+  static const char *const keys[] = {"sites", "bonds", "electrons", "electrodes"};
+  for (int i = 0; i < 4; i++) {
+    const mho_yaml_node *node = mho_yaml_find(r->node, keys[i]);
+    if (node)
+      mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, keys[i],
+                    "key '%s' does not go with 'smiles'; give the structure or the sites",
+                    keys[i]);
+  }
+}
+
+static void read_molecule(reader *r, const mho_settings *defaults,
+                          const mho_settings *overrides)
+{
+  static const char *const keys[] = {
+      "name", "smiles", "sites",      "bonds",       "electrons", "charge",      "electrodes",
+      "fermi", "twist", "parameters", "alternation", "alkyl",     "beta", "temperature",
+      "coupling"};
+  mho_yaml_check_keys(r->yaml, r->node, keys, sizeof keys / sizeof *keys);
+  if (!read_settings(r, defaults, overrides)) return;
+  read_name(r);
+  const mho_yaml_node *smiles = mho_yaml_find(r->node, "smiles");
+  if (!smiles) {
+    read_explicit(r, overrides);
+    return;
+  }
+  refuse_mixture(r);
+  read_drawn(r, smiles);
+}
+
+mho_status mho_molecule_read_node(const mho_yaml *document, const mho_yaml_node *node,
+                                  const mho_settings *defaults,
+                                  const mho_settings *overrides, mho_molecule *molecule)
+{
+  reader r = {.yaml = document, .node = node, .molecule = molecule};
+  int before = document->error->count + document->error->suppressed;
+  molecule->source = mho_copy_text(document->file);
+  if (!molecule->source) fail_memory(&r);
+  else read_molecule(&r, defaults, overrides);
+  mho_settings_clear(&r.settings);
+  mho_error *error = document->error;
+  if (error->count + error->suppressed == before) return MHO_OK;
+  return before < error->count ? error->cause[before].status : MHO_ERR_KEY;
 }
 
 mho_status mho_molecule_read(const char *path, const mho_settings *defaults,
@@ -367,18 +449,14 @@ mho_status mho_molecule_read(const char *path, const mho_settings *defaults,
     error = &own;
   }
   mho_molecule_init(molecule);
-  reader r = {.molecule = molecule, .overrides = overrides};
-  int before = error->count;
-  mho_status status = mho_yaml_read(path, &r.yaml, error);
+  mho_yaml document;
+  mho_status status = mho_yaml_read(path, &document, error);
   /* A key given twice does not stop the search for further mistakes. */
-  if (status == MHO_OK || (status == MHO_ERR_KEY && r.yaml.root)) {
-    molecule->source = mho_copy_text(path);
-    if (!molecule->source) fail_memory(&r);
-    mho_settings_apply(defaults, molecule);
-    read_molecule(&r);
-    mho_settings_apply(overrides, molecule);
+  if (status == MHO_OK || (status == MHO_ERR_KEY && document.root)) {
+    mho_status read =
+        mho_molecule_read_node(&document, document.root, defaults, overrides, molecule);
+    if (status == MHO_OK) status = read;
   }
-  mho_yaml_clear(&r.yaml);
-  if (error->count > before) return error->cause[before].status;
+  mho_yaml_clear(&document);
   return status;
 }

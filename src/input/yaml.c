@@ -126,6 +126,8 @@ static mho_status read_text(walker *w, mho_yaml_node **result)
                      "a text must not contain a NUL character");
   status = node_create(w, MHO_YAML_TEXT, result);
   if (status != MHO_OK) return status;
+  (*result)->quoted = w->event.data.scalar.style == YAML_SINGLE_QUOTED_SCALAR_STYLE ||
+                      w->event.data.scalar.style == YAML_DOUBLE_QUOTED_SCALAR_STYLE;
   (*result)->text = mho_copy_text(value);
   return (*result)->text ? MHO_OK : fail_memory(w);
 }

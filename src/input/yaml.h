@@ -23,6 +23,7 @@ struct mho_yaml_node {
   mho_yaml_kind kind;
   long line, column;
   char *text;           /* of a MHO_YAML_TEXT */
+  bool quoted;          /* the text begins one column further */
   size_t count;         /* items, or pairs of a mapping */
   mho_yaml_node **item; /* items, or values of a mapping */
   mho_yaml_node **key;  /* keys of a mapping, texts */
@@ -83,5 +84,9 @@ bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
  * the Fermi level remembers its place. */
 void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mapping,
                            mho_settings *settings);
+
+/* A list of {bond: C5-C8, angle: 38 deg}. */
+void mho_yaml_get_twists(const mho_yaml *document, const mho_yaml_node *list,
+                         mho_settings *settings);
 
 #endif

@@ -5,6 +5,8 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "molecule/texts.h"
+
 #define RADIANS_PER_DEGREE 0.017453292519943295769236907684886
 
 void mho_molecule_init(mho_molecule *molecule)
@@ -23,6 +25,9 @@ void mho_molecule_clear(mho_molecule *molecule)
   free(molecule->source);
   free(molecule->site);
   free(molecule->bond);
+  free(molecule->linker);
+  mho_texts_clear(&molecule->notes);
+  mho_parameters_free(molecule->own_parameters);
   for (int side = 0; side < 2; side++) {
     free(molecule->contact[side].site);
     free(molecule->contact[side].amplitude);

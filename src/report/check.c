@@ -67,6 +67,25 @@ static json_t *json_contacts(const mho_molecule *molecule)
   return contacts;
 }
 
+static json_t *json_linkers(const mho_molecule *molecule)
+{
+  json_t *list = json_array();
+  for (int i = 0; i < molecule->linker_count; i++) {
+    json_t *object = mho_json_with(json_object(), "kind", mho_json_text(molecule->linker[i].kind));
+    const char *site = molecule->site[molecule->linker[i].site].id;
+    list = mho_json_append(list, mho_json_with(object, "site", mho_json_text(site)));
+  }
+  return list;
+}
+
+static json_t *json_notes(const mho_molecule *molecule)
+{
+  json_t *list = json_array();
+  for (int i = 0; i < molecule->notes.count; i++)
+    list = mho_json_append(list, mho_json_text(molecule->notes.text[i]));
+  return list;
+}
+
 static json_t *json_optional(bool present, double value)
 {
   return present ? json_real(value) : json_null();
@@ -97,9 +116,10 @@ static json_t *json_molecule(const mho_checked *checked)
   object = mho_json_with(object, "homo_eV", json_optional(junction->has_homo, junction->homo_ev));
   object = mho_json_with(object, "lumo_eV", json_optional(junction->has_lumo, junction->lumo_ev));
   object = mho_json_with(object, "fermi_eV", json_real(junction->fermi_ev));
-  object = mho_json_with(object, "linkers", json_array());
+  object = mho_json_with(object, "linkers", json_linkers(molecule));
   object = mho_json_with(object, "contacts", json_contacts(molecule));
   object = mho_json_with(object, "warnings", mho_json_warning_words(checked->warnings));
+  object = mho_json_with(object, "notes", json_notes(molecule));
   return object;
 }
 
@@ -202,7 +222,13 @@ static void write_molecule(const mho_checked *checked, int digits, mho_buffer *b
   write_level(buffer, ", Fermi level", true, junction->fermi_ev, digits);
   mho_buffer_add(buffer, " (relative to alpha)\n");
   for (int side = 0; side < 2; side++) write_contact(molecule, side, digits, buffer);
+  for (int i = 0; i < molecule->linker_count; i++)
+    mho_buffer_print(buffer, "%s%s at %s%s", i ? ", " : "  linkers   ",
+                     molecule->linker[i].kind, molecule->site[molecule->linker[i].site].id,
+                     i + 1 == molecule->linker_count ? "\n" : "");
   write_sites(molecule, digits, buffer);
+  for (int i = 0; i < molecule->notes.count; i++)
+    mho_buffer_print(buffer, "  note: %s\n", molecule->notes.text[i]);
   for (int k = 0; k < MHO_WARNING_COUNT; k++)
     if (checked->warnings & (1u << k))
       mho_buffer_print(buffer, "  %s: %s\n", mho_warning_word(k), mho_warning_sentence(k));

@@ -40,6 +40,10 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
 
+/* The result in one sentence. */
+void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
+                      double window_ev);
+
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction);

@@ -149,15 +149,22 @@ json_t *mho_json_notes(const mho_output *output)
   return notes;
 }
 
-/* Takes the object over. */
+static int append_json(const char *text, size_t size, void *buffer)
+{
+  mho_buffer_add_bytes(buffer, text, size);
+  return ((mho_buffer *)buffer)->failed ? -1 : 0;
+}
+
+/* By the callback and into our buffer: jansson's own json_dumps drops the text
+ * of a key where memory runs out, and reports success. */
 mho_status mho_json_write(json_t *object, mho_buffer *buffer, mho_error *error)
 {
-  char *text = object ? json_dumps(object, JSON_INDENT(1) | JSON_REAL_PRECISION(17)) : NULL;
+  int code = object ? json_dump_callback(object, append_json, buffer,
+                                         JSON_INDENT(1) | JSON_REAL_PRECISION(17))
+                    : -1;
   json_decref(object);
-  if (!text) return mho_fail(error, MHO_ERR_MEMORY, "report", NULL, "out of memory");
-  mho_buffer_add(buffer, text);
   mho_buffer_add(buffer, "\n");
-  free(text);
+  if (code != 0) return mho_fail(error, MHO_ERR_MEMORY, "report", NULL, "out of memory");
   return mho_buffer_check(buffer, "report", error);
 }
 

@@ -113,8 +113,11 @@ mho_status mho_folder_open(const char *target, mho_folder *folder, mho_error *er
   else status = check_target(folder->target, error);
   if (status == MHO_OK) {
     remove_leftovers(parent, prefix);
-    if (mkdir(folder->temporary, 0777) != 0)
+    if (mkdir(folder->temporary, 0777) != 0 ||
+        !(folder->handle = opendir(folder->temporary))) {
       status = fail(folder->target, MHO_ERR_WRITE, "cannot be made", error);
+      rmdir(folder->temporary);
+    }
   }
   free(parent);
   free(prefix);
@@ -169,9 +172,19 @@ mho_status mho_folder_commit(mho_folder *folder, mho_error *error)
   return status;
 }
 
+/* Our own files only, and no folders among them. */
+static void remove_temporary(const mho_folder *folder)
+{
+  const struct dirent *entry;
+  rewinddir(folder->handle);
+  while ((entry = readdir(folder->handle))) unlinkat(dirfd(folder->handle), entry->d_name, 0);
+  rmdir(folder->temporary);
+}
+
 void mho_folder_close(mho_folder *folder)
 {
-  if (folder->temporary) remove_tree(folder->temporary);
+  if (folder->temporary && folder->handle) remove_temporary(folder);
+  if (folder->handle) closedir(folder->handle);
   free(folder->temporary);
   free(folder->target);
   *folder = (mho_folder){0};

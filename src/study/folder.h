@@ -6,6 +6,8 @@
 #ifndef MHOLECULE_STUDY_FOLDER_H
 #define MHOLECULE_STUDY_FOLDER_H
 
+#include <dirent.h>
+
 #include <mho/status.h>
 
 #include "base/buffer.h"
@@ -13,6 +15,7 @@
 typedef struct {
   char *target;
   char *temporary; /* NULL once it is in place or removed */
+  DIR *handle;     /* of the temporary folder: emptying it allocates nothing */
 } mho_folder;
 
 /* Refuses a target that is neither absent, nor empty, nor an earlier results

@@ -16,6 +16,7 @@ typedef struct {
 
 struct mho_study {
   char *path, *title;
+  mho_settings defaults; /* owns what molecules may point to */
   int molecule_count;
   mho_molecule *molecule;
   mho_study_input *input; /* files that were read, the study first */

@@ -9,6 +9,7 @@
 #include <mho/molecule_file.h>
 
 #include "base/text.h"
+#include "input/molecule_node.h"
 #include "input/yaml.h"
 #include "study/study.h"
 
@@ -21,7 +22,6 @@ enum { MOLECULES_MAX = 1000 };
 typedef struct {
   mho_yaml yaml;
   mho_study *study;
-  mho_settings defaults;
   const mho_settings *overrides;
 } reader;
 
@@ -55,43 +55,48 @@ static void read_defaults(reader *r)
   const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "defaults");
   if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "defaults")) return;
   mho_yaml_check_keys(&r->yaml, node, names, count);
-  mho_yaml_get_settings(&r->yaml, node, &r->defaults);
+  mho_yaml_get_settings(&r->yaml, node, &r->study->defaults);
   /* A study's Fermi level is resolved in each molecule; its line is here. */
-  r->defaults.fermi.line = r->defaults.fermi.column = 0;
+  r->study->defaults.fermi.line = r->study->defaults.fermi.column = 0;
 }
 
-/* A path relative to the folder of the study. */
-static char *beside_study(const reader *r, const char *name)
-{
-  const char *slash = strrchr(r->yaml.file, '/');
-  if (name[0] == '/' || !slash) return mho_copy_text(name);
-  return mho_print_text("%.*s/%s", (int)(slash - r->yaml.file), r->yaml.file, name);
-}
-
-static void read_molecule_file(reader *r, const mho_yaml_node *node, const char *path)
+/* Room for one more molecule, or NULL. */
+static mho_molecule *add_molecule(reader *r, const mho_yaml_node *node)
 {
   mho_study *s = r->study;
   if (s->molecule_count >= MOLECULES_MAX) {
     mho_yaml_fail(&r->yaml, node, MHO_ERR_LIMIT, "molecules",
                   "molecules: more than %d are named", MOLECULES_MAX);
-    return;
+    return NULL;
   }
   mho_molecule *larger =
       realloc(s->molecule, (size_t)(s->molecule_count + 1) * sizeof *larger);
   if (!larger) {
     fail_memory(r);
-    return;
+    return NULL;
   }
   s->molecule = larger;
-  mho_molecule *molecule = &s->molecule[s->molecule_count++];
-  mho_status status =
-      mho_molecule_read(path, &r->defaults, r->overrides, molecule, r->yaml.error);
-  if (status != MHO_OK || !add_input(r, path, path)) return;
+  mho_molecule_init(&s->molecule[s->molecule_count]);
+  return &s->molecule[s->molecule_count++];
+}
+
+static void check_name(reader *r, const mho_yaml_node *node, const mho_molecule *molecule)
+{
+  const mho_study *s = r->study;
   for (int i = 0; i + 1 < s->molecule_count; i++)
-    if (s->molecule[i].name && !strcmp(s->molecule[i].name, molecule->name))
+    if (s->molecule[i].name && molecule->name && !strcmp(s->molecule[i].name, molecule->name))
       mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, "molecules",
-                    "molecules: '%.60s' of %.200s stands in %.200s already; names must differ",
-                    molecule->name, path, s->molecule[i].source);
+                    "molecules: the name '%.60s' stands in %.200s already; names must differ",
+                    molecule->name, s->molecule[i].source);
+}
+
+static void read_molecule_file(reader *r, const mho_yaml_node *node, const char *path)
+{
+  mho_molecule *molecule = add_molecule(r, node);
+  if (!molecule) return;
+  mho_status status =
+      mho_molecule_read(path, &r->study->defaults, r->overrides, molecule, r->yaml.error);
+  if (status == MHO_OK && add_input(r, path, path)) check_name(r, node, molecule);
 }
 
 static int compare_paths(const void *a, const void *b)
@@ -104,7 +109,7 @@ static void read_molecule_files(reader *r, const mho_yaml_node *node)
 {
   const char *name;
   if (!mho_yaml_get_text(&r->yaml, node, "file", &name)) return;
-  char *path = beside_study(r, name);
+  char *path = mho_path_beside(r->yaml.file, name);
   glob_t found = {0};
   int code = path ? glob(path, GLOB_NOSORT, NULL, &found) : GLOB_NOSPACE;
   if (code == GLOB_NOSPACE) fail_memory(r);
@@ -124,6 +129,7 @@ static void read_molecule_files(reader *r, const mho_yaml_node *node)
 static void read_molecules(reader *r)
 {
   static const char *const keys[] = {"file"};
+  mho_molecule *molecule;
   const mho_yaml_node *list = mho_yaml_require(&r->yaml, r->yaml.root, "molecules");
   if (!mho_yaml_is(&r->yaml, list, MHO_YAML_LIST, "molecules")) return;
   if (list->count == 0)
@@ -131,8 +137,19 @@ static void read_molecules(reader *r)
   for (size_t i = 0; i < list->count; i++) {
     const mho_yaml_node *item = list->item[i];
     if (!mho_yaml_is(&r->yaml, item, MHO_YAML_MAPPING, "a molecule")) continue;
+    if (mho_yaml_find(item, "smiles") || mho_yaml_find(item, "sites")) {
+      molecule = add_molecule(r, item);
+      if (molecule && mho_molecule_read_node(&r->yaml, item, &r->study->defaults, r->overrides,
+                                             molecule) == MHO_OK)
+        check_name(r, item, molecule);
+      continue;
+    }
     mho_yaml_check_keys(&r->yaml, item, keys, COUNT(keys));
-    read_molecule_files(r, mho_yaml_require(&r->yaml, item, "file"));
+    const mho_yaml_node *file = mho_yaml_find(item, "file");
+    if (file) read_molecule_files(r, file);
+    else
+      mho_yaml_fail(&r->yaml, item, MHO_ERR_KEY, "file",
+                    "a molecule needs a 'file', a 'smiles' or its 'sites'");
   }
 }
 
@@ -317,5 +334,6 @@ void mho_study_free(mho_study *study)
   free(study->peak);
   free(study->path);
   free(study->title);
+  mho_settings_clear(&study->defaults);
   free(study);
 }

@@ -11,7 +11,7 @@ import tempfile
 MHO = os.path.abspath(os.environ["MHO"])
 ROOT = os.environ["MHO_SOURCE"]
 PRELOAD = sys.argv[1]
-STRIDE_LIMIT = 160  # at most that many runs a command
+STRIDE_LIMIT = 80  # at most that many runs a command
 MOLECULE = os.path.join(ROOT, "molecules/benzene-1-3-diamine.yaml")
 STUDY = os.path.join(ROOT, "molecules/studies/flat-or-twisted.yaml")
 
@@ -34,7 +34,7 @@ def main():
         total = int(open(os.path.join(scratch, "count")).read())
         shutil.rmtree("results", ignore_errors=True)
         stride = max(1, total // STRIDE_LIMIT)
-        for at in list(range(1, min(total, 60))) + list(range(60, total + 1, stride)):
+        for at in list(range(1, min(total, 40))) + list(range(40, total + 1, stride)):
             variables = {"FAIL_AT": str(at)}
             if at % 2:
                 variables["FAIL_ON"] = "1"

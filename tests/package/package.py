@@ -48,7 +48,7 @@ def main():
     project = os.path.join(scratch, "project")
     shutil.copytree(os.path.join(HERE, "project"), project)
     shutil.copy(source, project)
-    run("cmake", "-S", project, "-B", os.path.join(project, "build"),
+    run("cmake", "-G", "Ninja", "-S", project, "-B", os.path.join(project, "build"),
         "-DCMAKE_PREFIX_PATH=" + prefix)
     run("cmake", "--build", os.path.join(project, "build"))
     print(run(os.path.join(project, "build/consumer"), env=environment).strip())

@@ -5,6 +5,17 @@
  */
 #include "junctions.h"
 
+#include "solver/spectrum.h"
+
+/* xorshift64: G. Marsaglia, J. Stat. Softw. 8, 14 (2003). */
+static int random_below(unsigned long long *state, int n)
+{
+  *state ^= *state << 13;
+  *state ^= *state >> 7;
+  *state ^= *state << 17;
+  return (int)((*state >> 16) % (unsigned long long)n);
+}
+
 /* The same junction with its sites in reverse order. */
 static void raw_reverse(const raw *from, raw *to)
 {
@@ -147,6 +158,93 @@ static void check_junctions(bool banded)
   for (int method = 1; method < 4; method++) assert_true(count.method[method] > 20);
 }
 
+/* A chain with random cross-links, onsite 0 or h*beta: like a large molecule. */
+static void raw_random(raw *r, int sites, unsigned long long *state)
+{
+  size_t n = (size_t)sites;
+  *r = (raw){.sites = sites, .h = calloc(n * n, sizeof(double))};
+  for (size_t i = 0; i < n; i++) {
+    size_t j = i + 1 < n ? i + 1 : (size_t)random_below(state, sites - 2);
+    double t = -2.7 * (0.6 + 0.01 * random_below(state, 50));
+    r->h[i * n + j] = r->h[j * n + i] = t;
+    if (random_below(state, 5) == 0) r->h[i * n + i] = -2.7 * 0.51;
+    size_t k = (size_t)random_below(state, sites);
+    if (random_below(state, 6) == 0 && k != i) r->h[i * n + k] = r->h[k * n + i] = -2.7;
+  }
+  for (int side = 0; side < 2; side++) {
+    mho_lead *lead = &r->lead[side];
+    lead->channels = 1;
+    lead->coupling_ev = malloc(sizeof(double));
+    lead->shift_ev = calloc(1, sizeof(double));
+    lead->vector = calloc(n, sizeof(double));
+    lead->coupling_ev[0] = pow(10, -8 + 0.09 * random_below(state, 100));
+    lead->vector[random_below(state, sites)] = 1.0;
+  }
+}
+
+/* What a method claims to be its error must cover the distance to 113 bits. */
+static void claimed_errors_hold_for_larger_molecules(void **unused)
+{
+  (void)unused;
+  unsigned long long state = 12345;
+  int checked = 0;
+  for (int trial = 0; trial < 60; trial++) {
+    raw r;
+    raw_random(&r, 20 + random_below(&state, 50), &state);
+    mho_plan *plan = plan_of(&r, false, trial % 2);
+    mho_elimination_double *plain = mho_elimination_create_double(plan);
+    mho_elimination_quad *exact = mho_elimination_create_quad(plan);
+    for (int k = 0; k < 6; k++) {
+      /* Half of the energies next to a level. */
+      double energy = -6 + 0.012 * random_below(&state, 1000);
+      if (k % 2) energy = plan->level_ev[random_below(&state, r.sites)] * (1 + 1e-9 * (k - 3));
+      mho_estimate reference, estimate[3], lane[SPECTRUM_LANES];
+      double energies[SPECTRUM_LANES];
+      mho_elimination_evaluate_quad(plan, exact, energy, &reference);
+      mho_elimination_evaluate_double(plan, plain, energy, &estimate[0]);
+      mho_spectrum_evaluate(plan, energy, &estimate[1]);
+      for (int l = 0; l < SPECTRUM_LANES; l++) energies[l] = l == k ? energy : 0.1 * l;
+      mho_spectrum_evaluate_pair(plan, energies, lane);
+      estimate[2] = lane[k];
+      if (!(reference.relative_error < 1e-14) || !reference.first_order) continue;
+      for (int m = 0; m < 3; m++) {
+        if (!(estimate[m].relative_error < 0.1) || !estimate[m].first_order) continue;
+        double difference =
+            fabs(estimate[m].transmission / reference.transmission - 1);
+        if (difference > estimate[m].relative_error)
+          fail_msg("trial %d energy %.17g method %d: off by %.3g, claims %.3g", trial, energy, m,
+                   difference, estimate[m].relative_error);
+        checked++;
+      }
+    }
+    mho_elimination_free_double(plain);
+    mho_elimination_free_quad(exact);
+    mho_plan_free(plan);
+    raw_clear(&r);
+  }
+  assert_true(checked > 300);
+}
+
+static void what_is_not_a_junction_is_refused(void **state)
+{
+  (void)state;
+  double h[] = {0, 1, 1, 0}, skew[] = {0, 1, 2, 0}, bad[] = {0, NAN, NAN, 0};
+  mho_junction junction;
+  mho_plan *plan;
+  assert_int_equal(mho_junction_from_hamiltonian(2, skew, 0, 0, NULL, NULL, &junction, NULL),
+                   MHO_ERR_NOT_FINITE);
+  mho_junction_clear(&junction);
+  assert_int_equal(mho_junction_from_hamiltonian(2, bad, 0, 0, NULL, NULL, &junction, NULL),
+                   MHO_ERR_NOT_FINITE);
+  mho_junction_clear(&junction);
+  assert_int_equal(mho_junction_from_hamiltonian(2, h, 5, 0, NULL, NULL, &junction, NULL),
+                   MHO_ERR_SIZE);
+  mho_junction_clear(&junction);
+  assert_int_equal(mho_junction_from_hamiltonian(2, h, 2, 0, NULL, NULL, &junction, NULL), MHO_OK);
+  assert_int_equal(mho_plan_create(&junction, &plan, NULL), MHO_ERR_CONTACTS);
+  mho_junction_clear(&junction);
+}
+
 static void transmission_keeps_the_accuracy_contract(void **state)
 {
   (void)state;
@@ -162,6 +260,8 @@ static void elimination_within_the_band_keeps_it_too(void **state)
 int main(void)
 {
   const struct CMUnitTest tests[] = {
+      cmocka_unit_test(claimed_errors_hold_for_larger_molecules),
+      cmocka_unit_test(what_is_not_a_junction_is_refused),
       cmocka_unit_test(elimination_within_the_band_keeps_it_too),
       cmocka_unit_test(transmission_keeps_the_accuracy_contract),
   };

@@ -1,0 +1,18 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#ifndef MHOLECULE_INPUT_MOLECULE_NODE_H
+#define MHOLECULE_INPUT_MOLECULE_NODE_H
+
+#include <mho/molecule.h>
+#include <mho/settings.h>
+
+#include "input/yaml.h"
+
+/* The molecule that a mapping describes, a whole file or a part of a study;
+ * see mho_molecule_read.  The molecule is initialised. */
+MHO_MUST_USE mho_status mho_molecule_read_node(const mho_yaml *document,
+                                               const mho_yaml_node *node,
+                                               const mho_settings *defaults,
+                                               const mho_settings *overrides,
+                                               mho_molecule *molecule);
+
+#endif

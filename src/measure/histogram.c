@@ -1,0 +1,477 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * One pass: every piece of a trace is binned into the row of the trace as it
+ * comes; at the end of the trace the row is added where it belongs.  A trace
+ * whose file fails leaves nothing behind.
+ */
+#include <mho/histogram.h>
+
+#include "measure/logbin.h"
+#include "measure/pull.h"
+#include "base/random.h"
+
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+enum { COARSE_PER_DECADE = 10, TRACE_PLATEAUS = 32 };
+
+/* What belongs to the reading only. */
+typedef struct {
+  mho_histogram *histogram;
+  mho_logbin logbin;
+  double floor_g0;
+  /* Points of this trace by slot.  Even and odd points count in halves of
+   * their own, [2 * slots]: neighbours often meet in a bin, and a sum that
+   * waits for the sum before it is slow.  The end of the trace joins them. */
+  uint64_t *row, *linear;
+  size_t slots, linear_slots; /* bins + 2, linear_bins + 2 */
+  uint64_t censored;
+  double *spent;     /* [bins + 2] */
+  double *coarse;    /* [coarse_bins] */
+  int *map_slot;     /* [bins + 2] conductance bin of the map, or -1 */
+  mho_pull pull;
+  bool too_long;
+  bool has_x;
+} collector;
+
+void mho_histogram_options_init(mho_histogram_options *options)
+{
+  *options = (mho_histogram_options){
+      .low_log10_g0 = -7.0, .high_log10_g0 = 1.0, .bins_per_decade = 100,
+      .linear_high_g0 = 1.5, .linear_bins = 1500,
+      .map_low_nm = -0.5, .map_high_nm = 2.5, .map_bins = 300,
+      .map_bins_per_decade = 20, .crossing_g0 = 0.5, .window_decades = 0.5,
+      .guard_decades = 0.3, .plateau_nm = 0.15, .plateau_slope = 3.0,
+      .step_decades = 0.2};
+}
+
+static mho_status check_options(const mho_histogram_options *o, mho_error *error)
+{
+  const struct { const char *name; bool good; const char *allowed; } rule[] = {
+      {"linear", o->linear_high_g0 > 0 && isfinite(o->linear_high_g0), "a positive range"},
+      {"linear", o->linear_bins >= 1 && o->linear_bins <= 100000, "1 to 100000 bins"},
+      {"map", o->map_low_nm < o->map_high_nm && isfinite(o->map_high_nm - o->map_low_nm),
+       "a range of distances"},
+      {"map", o->map_bins >= 1 && o->map_bins <= 10000, "1 to 10000 bins"},
+      {"map", o->map_bins_per_decade >= 1 && o->map_bins_per_decade <= o->bins_per_decade,
+       "no more bins a decade than the histogram has"},
+      {"crossing", o->crossing_g0 > 0 && isfinite(o->crossing_g0), "a positive conductance"},
+      {"snap-back", isfinite(o->snap_back_nm) && o->snap_back_nm >= 0, "a length"},
+      {"reject", o->window_decades > 0 && o->guard_decades >= 0 && o->plateau_nm >= 0,
+       "a positive window"}};
+  for (size_t i = 0; i < sizeof rule / sizeof *rule; i++)
+    if (!rule[i].good)
+      return mho_fail(error, MHO_ERR_RANGE, "measure", rule[i].name,
+                      "%s: %s is allowed", rule[i].name, rule[i].allowed);
+  return MHO_OK;
+}
+
+static bool counts_init(mho_trace_counts *counts, const mho_histogram_options *options,
+                        int bins, double floor_g0)
+{
+  counts->low_log10_g0 = options->low_log10_g0;
+  counts->bins_per_decade = options->bins_per_decade;
+  counts->bins = bins;
+  counts->floor_log10_g0 = floor_g0 > 0.0 ? log10(floor_g0) : -INFINITY;
+  counts->traces_per_unit = 1;
+  counts->count = calloc((size_t)bins, sizeof *counts->count);
+  counts->unit_traces = calloc(MHO_UNIT_LIMIT, sizeof *counts->unit_traces);
+  counts->unit_count = calloc((size_t)MHO_UNIT_LIMIT * (size_t)bins, sizeof *counts->unit_count);
+  return counts->count && counts->unit_traces && counts->unit_count;
+}
+
+static void counts_clear(mho_trace_counts *counts)
+{
+  free(counts->count);
+  free(counts->unit_traces);
+  free(counts->unit_count);
+}
+
+static uint32_t add_capped(uint32_t a, uint64_t b)
+{
+  return b > UINT32_MAX - a ? UINT32_MAX : a + (uint32_t)b;
+}
+
+static void merge_units(mho_trace_counts *counts)
+{
+  size_t bins = (size_t)counts->bins;
+  for (size_t i = 0; i < counts->units / 2; i++) {
+    uint32_t *to = counts->unit_count + i * bins;
+    const uint32_t *a = counts->unit_count + 2 * i * bins, *b = a + bins;
+    for (size_t j = 0; j < bins; j++) to[j] = add_capped(a[j], b[j]);
+    counts->unit_traces[i] = counts->unit_traces[2 * i] + counts->unit_traces[2 * i + 1];
+  }
+  counts->units /= 2;
+  counts->traces_per_unit *= 2;
+  memset(counts->unit_count + counts->units * bins, 0,
+         counts->units * bins * sizeof *counts->unit_count);
+}
+
+static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t censored)
+{
+  size_t bins = (size_t)counts->bins, unit = counts->units;
+  bool is_open = unit > 0 && counts->unit_traces[unit - 1] < counts->traces_per_unit;
+  if (!is_open && unit == MHO_UNIT_LIMIT) {
+    merge_units(counts);
+    unit = counts->units;
+  }
+  if (is_open) unit--;
+  else {
+    counts->units = unit + 1;
+    counts->unit_traces[unit] = 0;
+  }
+  uint32_t *to = counts->unit_count + unit * bins;
+  for (size_t i = 0; i < bins; i++) {
+    to[i] = add_capped(to[i], row[i + 1]);
+    counts->count[i] += row[i + 1];
+  }
+  counts->unit_traces[unit]++;
+  counts->traces++;
+  counts->censored += censored;
+  counts->below += row[0];
+  counts->above += row[bins + 1];
+}
+
+static mho_status allocate(collector *c, const mho_histogram_options *o, mho_error *error)
+{
+  mho_histogram *h = c->histogram;
+  mho_status status = mho_logbin_init(&c->logbin, o->low_log10_g0, o->high_log10_g0,
+                                      o->bins_per_decade, error);
+  if (status != MHO_OK) return status;
+  size_t bins = (size_t)c->logbin.bins, slots = bins + 2;
+  double decades = o->high_log10_g0 - o->low_log10_g0;
+  h->map_g_bins = (int)ceil(decades * o->map_bins_per_decade - 1e-9);
+  h->coarse_bins = (int)ceil(decades * COARSE_PER_DECADE - 1e-9);
+  size_t coarse = (size_t)h->coarse_bins;
+  bool good = counts_init(&h->all, o, (int)bins, c->floor_g0) &&
+              counts_init(&h->accepted, o, (int)bins, c->floor_g0);
+  h->edge_g0 = malloc((bins + 1) * sizeof(double));
+  h->linear = calloc((size_t)o->linear_bins, sizeof(uint64_t));
+  h->map = calloc((size_t)o->map_bins * (size_t)h->map_g_bins, sizeof(uint64_t));
+  h->coarse_sum = calloc(coarse, sizeof(double));
+  h->coarse_product = calloc(coarse * coarse, sizeof(double));
+  c->slots = slots;
+  c->linear_slots = (size_t)o->linear_bins + 2;
+  c->row = malloc(2 * c->slots * sizeof *c->row);
+  c->linear = malloc(2 * c->linear_slots * sizeof *c->linear);
+  c->spent = malloc(slots * sizeof *c->spent);
+  c->coarse = malloc(coarse * sizeof *c->coarse);
+  c->map_slot = malloc(slots * sizeof *c->map_slot);
+  good = good && h->edge_g0 && h->linear && h->map && h->coarse_sum &&
+         h->coarse_product && c->row && c->linear && c->spent && c->coarse && c->map_slot;
+  if (o->clusters) {
+    h->sample_trace = malloc(MHO_UNIT_LIMIT * sizeof(uint64_t));
+    h->sample_count = malloc((size_t)MHO_UNIT_LIMIT * bins * sizeof(uint32_t));
+    good = good && h->sample_trace && h->sample_count;
+  }
+  if (!good) return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
+  memcpy(h->edge_g0, c->logbin.edge, (bins + 1) * sizeof(double));
+  for (int slot = 0; slot < (int)slots; slot++)
+    c->map_slot[slot] = slot == 0 || slot > (int)bins
+                            ? -1 : (slot - 1) * o->map_bins_per_decade / o->bins_per_decade;
+  return MHO_OK;
+}
+
+static void start_trace(collector *c, bool has_x)
+{
+  memset(c->row, 0, 2 * c->slots * sizeof *c->row);
+  memset(c->linear, 0, 2 * c->linear_slots * sizeof *c->linear);
+  c->censored = 0;
+  c->pull.count = 0;
+  c->too_long = false;
+  c->has_x = has_x;
+}
+
+static void join_halves(uint64_t *count, size_t slots)
+{
+  for (size_t i = 0; i < slots; i++) count[i] += count[slots + i];
+}
+
+/* Bins points; slot[n] is filled, 0 for what is missing or censored. */
+static void bin_points(collector *c, const double *g0, size_t n, uint16_t *slot)
+{
+  const double top = c->histogram->options.linear_bins;
+  const double scale = top / c->histogram->options.linear_high_g0;
+  const double least = fmax(c->floor_g0, 5e-324);
+  uint64_t censored = 0;
+  for (size_t i = 0; i < n; i++) {
+    double g = g0[i];
+    slot[i] = 0;
+    if (!(g >= least)) {
+      censored += g == g;
+      continue;
+    }
+    size_t half = i & 1;
+    slot[i] = (uint16_t)mho_logbin_slot(&c->logbin, g);
+    c->row[half * c->slots + slot[i]]++;
+    double at = g * scale;
+    c->linear[half * c->linear_slots + (at < top ? (size_t)at : (size_t)top) + 1]++;
+  }
+  c->censored += censored;
+}
+
+/* Bins the points of a piece: 1D, and what alignment will need. */
+static bool add_piece(collector *c, const mho_trace_chunk *chunk)
+{
+  size_t n = chunk->count;
+  mho_pull *pull = &c->pull;
+  if (chunk->first) start_trace(c, chunk->x != NULL);
+  if (c->has_x && pull->count + n > MHO_PULL_LIMIT) c->too_long = true;
+  if (!c->has_x || c->too_long) pull->count = 0;
+  if (!mho_pull_reserve(pull, n)) return false;
+  bin_points(c, chunk->g0, n, pull->slot + pull->count);
+  if (!c->has_x || c->too_long) return true;
+  memcpy(pull->g0 + pull->count, chunk->g0, n * sizeof(double));
+  memcpy(pull->x + pull->count, chunk->x, n * sizeof(double));
+  pull->count += n;
+  return true;
+}
+
+static void add_map(collector *c, double zero_nm)
+{
+  mho_histogram *h = c->histogram;
+  const mho_histogram_options *o = &h->options;
+  double scale = o->map_bins / (o->map_high_nm - o->map_low_nm);
+  for (size_t i = 0; i < c->pull.count; i++) {
+    int g = c->map_slot[c->pull.slot[i]];
+    double x = c->pull.x[i] - zero_nm;
+    if (x > 0.0) x += o->snap_back_nm;
+    double at = (x - o->map_low_nm) * scale;
+    if (g < 0 || !(at >= 0.0 && at < o->map_bins)) continue;
+    h->map[(size_t)at * (size_t)h->map_g_bins + (size_t)g]++;
+  }
+}
+
+static bool add_plateaus(collector *c, uint64_t trace, size_t start)
+{
+  mho_histogram *h = c->histogram;
+  mho_plateau found[TRACE_PLATEAUS];
+  size_t count = mho_pull_plateaus(&c->pull, start, c->floor_g0, &h->options, found, TRACE_PLATEAUS);
+  for (size_t i = 0; i < count; i++) {
+    int bin = (int)fmin(found[i].length_nm / 0.02, MHO_PLATEAU_LENGTH_BINS - 1);
+    h->plateau_lengths[bin]++;
+    if (h->plateaus == MHO_PLATEAU_LIMIT) {
+      h->plateaus_dropped++;
+      continue;
+    }
+    if ((h->plateaus & (h->plateaus - 1)) == 0) { /* full at powers of two */
+      size_t capacity = h->plateaus ? 2 * h->plateaus : 1;
+      mho_plateau *larger = realloc(h->plateau, capacity * sizeof *larger);
+      if (!larger) return false;
+      h->plateau = larger;
+    }
+    found[i].trace = trace;
+    h->plateau[h->plateaus++] = found[i];
+  }
+  return true;
+}
+
+static void add_coarse(collector *c)
+{
+  mho_histogram *h = c->histogram;
+  int n = h->coarse_bins;
+  double *coarse = c->coarse;
+  memset(coarse, 0, (size_t)n * sizeof *coarse);
+  for (int i = 0; i < c->logbin.bins; i++) {
+    int j = i * COARSE_PER_DECADE / h->options.bins_per_decade;
+    if (j < n) coarse[j] += (double)c->row[i + 1];
+  }
+  for (int i = 0; i < n; i++) {
+    if (coarse[i] == 0.0) continue;
+    h->coarse_sum[i] += coarse[i];
+    for (int j = 0; j < n; j++) h->coarse_product[i * n + j] += coarse[i] * coarse[j];
+  }
+}
+
+/* Reservoir sampling: every accepted trace stays with equal probability. */
+static void add_sample(collector *c, uint64_t trace)
+{
+  mho_histogram *h = c->histogram;
+  if (!h->options.clusters) return;
+  uint64_t seen = h->accepted.traces; /* this one is not counted yet */
+  size_t place = h->samples;
+  if (place == MHO_UNIT_LIMIT) {
+    mho_random random = mho_random_stream(h->options.seed, seen);
+    uint64_t drawn = mho_random_below(&random, seen + 1);
+    if (drawn >= MHO_UNIT_LIMIT) return;
+    place = (size_t)drawn;
+  } else {
+    h->samples++;
+  }
+  size_t bins = (size_t)c->logbin.bins;
+  h->sample_trace[place] = trace;
+  for (size_t i = 0; i < bins; i++)
+    h->sample_count[place * bins + i] = add_capped(0, c->row[i + 1]);
+}
+
+/* True where the trace shows more than tunnelling; counts why not. */
+static bool accept_trace(collector *c, bool aligned, size_t start)
+{
+  mho_histogram *h = c->histogram;
+  const mho_histogram_options *o = &h->options;
+  if (!c->has_x || c->too_long) return true;
+  if (!aligned) {
+    h->no_contact++;
+    return false;
+  }
+  double low = c->floor_g0 * pow(10.0, o->guard_decades);
+  int first = mho_logbin_slot(&c->logbin, fmax(low, c->logbin.edge[0]));
+  int last = mho_logbin_slot(&c->logbin, o->crossing_g0);
+  if (first < 1) first = 1;
+  if (last > c->logbin.bins) last = c->logbin.bins;
+  int window = (int)rint(o->window_decades * o->bins_per_decade);
+  if (mho_pull_longest_stay(&c->pull, start, first, last, window > 0 ? window : 1, c->spent) >=
+      o->plateau_nm)
+    return true;
+  h->no_plateau++;
+  return false;
+}
+
+static bool end_trace(collector *c, uint64_t trace)
+{
+  mho_histogram *h = c->histogram;
+  size_t start = 0;
+  double zero_nm = 0.0;
+  join_halves(c->row, c->slots);
+  join_halves(c->linear, c->linear_slots);
+  h->has_distance |= c->has_x;
+  h->too_long += c->too_long;
+  bool aligned = c->has_x && !c->too_long &&
+                 mho_pull_align(&c->pull, h->options.crossing_g0, &start, &zero_nm);
+  h->aligned += aligned;
+  counts_add(&h->all, c->row, c->censored);
+  if (!accept_trace(c, aligned, start)) return true;
+  add_sample(c, trace);
+  counts_add(&h->accepted, c->row, c->censored);
+  for (int i = 0; i < h->options.linear_bins; i++) h->linear[i] += c->linear[i + 1];
+  h->linear_above += c->linear[h->options.linear_bins + 1];
+  add_coarse(c);
+  if (!aligned) return true;
+  add_map(c, zero_nm);
+  return !h->options.plateaus || add_plateaus(c, trace, start);
+}
+
+static mho_status collect(collector *c, mho_trace_reader *reader, mho_error *error)
+{
+  mho_trace_chunk chunk;
+  for (;;) {
+    bool more;
+    mho_status status = mho_trace_reader_next(reader, &chunk, &more, error);
+    if (status != MHO_OK || !more) return status;
+    if (!add_piece(c, &chunk) || (chunk.last && !end_trace(c, chunk.trace)))
+      return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
+  }
+}
+
+mho_status mho_histogram_read(const char *const *paths, size_t count,
+                              const mho_trace_options *traces,
+                              const mho_histogram_options *options,
+                              mho_histogram **result, mho_error *error)
+{
+  *result = NULL;
+  mho_status status = check_options(options, error);
+  if (status != MHO_OK) return status;
+  mho_histogram *histogram = calloc(1, sizeof *histogram);
+  if (!histogram) return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
+  histogram->options = *options;
+  collector c = {.histogram = histogram, .floor_g0 = mho_trace_floor_g0(traces)};
+  mho_trace_reader *reader = NULL;
+  status = allocate(&c, options, error);
+  if (status == MHO_OK)
+    status = mho_trace_reader_create(paths, count, traces, MHO_ABSCISSA_DISTANCE, &reader, error);
+  if (status == MHO_OK) {
+    status = collect(&c, reader, error);
+    histogram->report = *mho_trace_reader_report(reader);
+  }
+  mho_trace_reader_free(reader);
+  mho_pull_clear(&c.pull);
+  mho_logbin_clear(&c.logbin);
+  free(c.row);
+  free(c.linear);
+  free(c.spent);
+  free(c.coarse);
+  free(c.map_slot);
+  if (status != MHO_OK) {
+    mho_histogram_free(histogram);
+    return status;
+  }
+  *result = histogram;
+  return MHO_OK;
+}
+
+void mho_histogram_free(mho_histogram *histogram)
+{
+  if (!histogram) return;
+  counts_clear(&histogram->all);
+  counts_clear(&histogram->accepted);
+  free(histogram->edge_g0);
+  free(histogram->linear);
+  free(histogram->map);
+  free(histogram->coarse_sum);
+  free(histogram->coarse_product);
+  free(histogram->plateau);
+  free(histogram->sample_trace);
+  free(histogram->sample_count);
+  free(histogram);
+}
+
+double mho_histogram_log10_g0(const mho_histogram *histogram, int bin)
+{
+  return histogram->all.low_log10_g0 + (bin + 0.5) / histogram->all.bins_per_decade;
+}
+
+double mho_histogram_density(const mho_trace_counts *counts, int bin)
+{
+  if (counts->traces == 0) return 0.0;
+  return (double)counts->count[bin] * counts->bins_per_decade / (double)counts->traces;
+}
+
+double mho_histogram_linear_g0(const mho_histogram *histogram, int bin)
+{
+  return (bin + 0.5) * histogram->options.linear_high_g0 / histogram->options.linear_bins;
+}
+
+double mho_histogram_linear_density(const mho_histogram *histogram, int bin)
+{
+  if (histogram->accepted.traces == 0) return 0.0;
+  double width = histogram->options.linear_high_g0 / histogram->options.linear_bins;
+  return (double)histogram->linear[bin] / width / (double)histogram->accepted.traces;
+}
+
+void mho_histogram_correlation(const mho_histogram *histogram, double *correlation)
+{
+  int n = histogram->coarse_bins;
+  double traces = (double)histogram->accepted.traces;
+  const double *sum = histogram->coarse_sum, *product = histogram->coarse_product;
+  for (int i = 0; i < n; i++)
+    for (int j = 0; j < n; j++) {
+      double covariance = product[i * n + j] - sum[i] * sum[j] / traces;
+      double variance_i = product[i * n + i] - sum[i] * sum[i] / traces;
+      double variance_j = product[j * n + j] - sum[j] * sum[j] / traces;
+      bool varies = traces > 1 && variance_i > 0.0 && variance_j > 0.0;
+      correlation[i * n + j] = varies ? covariance / sqrt(variance_i * variance_j) : 0.0;
+    }
+}
+
+mho_status mho_histogram_bin(const double *g0, size_t n, double low_log10_g0,
+                             double high_log10_g0, int bins_per_decade, uint64_t *count,
+                             uint64_t *below, uint64_t *above, mho_error *error)
+{
+  mho_logbin logbin;
+  mho_status status = mho_logbin_init(&logbin, low_log10_g0, high_log10_g0, bins_per_decade, error);
+  if (status != MHO_OK) return status;
+  uint64_t *slots = calloc((size_t)logbin.bins + 2, sizeof *slots);
+  if (!slots) {
+    mho_logbin_clear(&logbin);
+    return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
+  }
+  for (size_t i = 0; i < n; i++)
+    if (!isnan(g0[i])) slots[mho_logbin_slot(&logbin, g0[i])]++;
+  for (int i = 0; i < logbin.bins; i++) count[i] += slots[i + 1];
+  *below += slots[0];
+  *above += slots[logbin.bins + 1];
+  free(slots);
+  mho_logbin_clear(&logbin);
+  return MHO_OK;
+}

@@ -1,0 +1,121 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Dihedral angles between two pi fragments, from what stands in the ortho
+ * positions.  A rough table: it tells flat from twisted from perpendicular,
+ * and a measured or computed angle should replace it where there is one.
+ */
+#include "molecule/element.h"
+#include "molecule/pi.h"
+
+typedef struct {
+  int size;     /* of the ring */
+  int lone;     /* ortho ring atoms without a substituent: N, O, S */
+  bool sulfur;  /* one of them is S */
+  int fluorine; /* ortho C-F */
+  int crowded;  /* other ortho substituents, fused rings included */
+} ortho_side;
+
+static ortho_side look_at(const mho_graph *g, const mho_pi *pi, int atom)
+{
+  ortho_side side = {.size = mho_pi_ring_size(g, pi, atom)};
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++) {
+    if (!g->bond[g->link[i].bond].ring) continue;
+    int ortho = g->link[i].atom, substituent = -1;
+    for (int j = g->start[ortho]; j < g->start[ortho + 1]; j++) {
+      int next = g->link[j].atom;
+      bool main_ring = g->bond[g->link[j].bond].ring && next != atom;
+      if (next == atom || g->atom[next].element == ELEMENT_H) continue;
+      /* The first ring bond leads on round the ring; a second one is fused. */
+      if (main_ring && substituent == -1) substituent = -2;
+      else if (substituent < 0 || !main_ring) substituent = next;
+    }
+    int element = g->atom[ortho].element;
+    if (substituent >= 0) {
+      bool fluorine = g->atom[substituent].element == ELEMENT_F;
+      side.fluorine += fluorine;
+      side.crowded += !fluorine;
+    } else if (element != ELEMENT_C && mho_graph_hydrogens(g, ortho) == 0) {
+      side.lone++;
+      side.sulfur |= element == ELEMENT_S;
+    }
+  }
+  return side;
+}
+
+/* Two rings. */
+static double between_rings(ortho_side a, ortho_side b, const char **reason)
+{
+  int crowded = a.crowded + b.crowded;
+  if (crowded >= 4) {
+    /* 88 deg: L. Venkataraman et al., Nature 442, 904 (2006), Table 1
+     * (memory). */
+    *reason = "four ortho substituents, as tetramethylated biphenyl";
+    return 88.0;
+  }
+  if (crowded) {
+    /* Steps between o-terphenyl, about 50 deg in the crystal (Acta Cryst.
+     * B 34, 1978, o-terphenyl, as cited), and the above; 2-methylbiphenyl
+     * about 58, 2,2'-dimethylbiphenyl about 70 deg (memory). */
+    static const double angle[] = {0.0, 55.0, 70.0, 80.0};
+    static const char *const text[] = {
+        "", "one ortho substituent, as 2-methylbiphenyl",
+        "two ortho substituents, as 2,2'-dimethylbiphenyl",
+        "three ortho substituents"};
+    *reason = text[crowded];
+    return angle[crowded];
+  }
+  if (a.fluorine + b.fluorine) {
+    *reason = "ortho fluorine, as 2-fluorobiphenyl and its octafluoro relative";
+    return 50.0; /* 49 and 52 deg (memory; Nature 442, 904, Table 1) */
+  }
+  if (a.lone && b.lone) {
+    bool bithiophene = a.size == 5 && b.size == 5 && a.sulfur && b.sulfur;
+    /* 2,2'-bithiophene about 147 deg from cis (electron diffraction and
+     * computation, E. Orti et al., J. Phys. Chem. 99, 4955 (1995)); its
+     * potential is flat.  2,2'-bipyridine is flat (Chem. Phys. Lett. 354, 233
+     * (2002)). */
+    *reason = bithiophene ? "2,2'-bithiophene in the gas phase"
+                          : "flat as 2,2'-bipyridine: no ortho hydrogens meet";
+    return bithiophene ? 33.0 : 0.0;
+  }
+  if (a.lone + b.lone >= 2) {
+    *reason = "flat as 2-phenylpyrimidine";
+    return 0.0;
+  }
+  if (a.lone + b.lone == 1) {
+    bool thiophene = a.sulfur || b.sulfur;
+    *reason = thiophene ? "as 2-phenylthiophene" : "as 2-phenylpyridine";
+    return thiophene ? 28.0 : 20.0; /* memory */
+  }
+  /* Biphenyls without ortho substituents: 34 deg for 4,4'-diaminobiphenyl,
+   * Nature 442, 904 (memory); 34 deg 20' for tetrachlorobiphenyl in a nematic
+   * solvent (magnetic resonance, as read in an abstract).  In the gas 44.4
+   * deg for biphenyl, 37.2 deg for 4,4'-bipyridine. */
+  *reason = "ortho hydrogens meet, as in the oligophenyls";
+  return 34.0;
+}
+
+/* Does the atom end a flat group by itself: doubly or triply bonded, or the
+ * nitrogen of a nitro group? */
+static bool is_flat_group(const mho_graph *g, int atom)
+{
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++)
+    if (g->bond[g->link[i].bond].order > 1) return true;
+  return false;
+}
+
+double mho_torsion_estimate(const mho_graph *graph, const mho_pi *pi,
+                            const int atom[2], const char **reason)
+{
+  ortho_side side[2];
+  for (int end = 0; end < 2; end++) side[end] = look_at(graph, pi, atom[end]);
+  if (side[0].size && side[1].size) return between_rings(side[0], side[1], reason);
+  /* trans-Azobenzene is flat (electron diffraction, T. Tsuji et al., J. Phys.
+   * Chem. A 105, 9347 (2001), in Landolt-Boernstein II/28D), trans-stilbene
+   * nearly so (Chem. Phys. Lett. 421, 134 (2006)). */
+  bool crowded = side[0].crowded + side[1].crowded > 0;
+  bool flat = is_flat_group(graph, atom[0]) && is_flat_group(graph, atom[1]);
+  *reason = flat && !crowded ? "flat as stilbene and azobenzene"
+                             : "no value in the table; taken as flat";
+  return 0.0;
+}
