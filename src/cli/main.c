@@ -66,7 +66,7 @@ enum {
   OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
   OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
   OPT_BIAS, OPT_SERIES, OPT_FLOOR, OPT_SATURATION, OPT_COLUMNS, OPT_QUANTITY, OPT_ROWS, OPT_SAMPLING,
-  OPT_SPEED, OPT_KEEP_GOING, OPT_THREADS, OPT_FIGURE, OPT_QUIET, OPT_HELP, OPTION_COUNT
+  OPT_SPEED, OPT_KEEP_GOING, OPT_THREADS, OPT_FIGURE, OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
 
 static const option_row options[OPTION_COUNT] = {
@@ -142,6 +142,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
     [OPT_FIGURE] = {MEASURED, "figure", 0, "FILE.svg", "draw the table with gnuplot"},
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
+    [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
 };
 
@@ -326,6 +327,7 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
+  case OPT_VERBOSE: cmd->verbose = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
   case OPT_CSV:
   case OPT_JSON:

@@ -201,15 +201,15 @@ mho_table *mho_traces_table(mho_output *output)
   return mho_output_table(output, "traces", columns, COUNT(columns));
 }
 
-void mho_traces_rows(mho_table *table, const char *molecule, const mho_histogram *h,
+void mho_traces_rows(mho_table *table, const char *molecule, uint64_t traces, uint64_t rejected,
                      const mho_peaks *peaks)
 {
   for (int i = 0; i < (peaks->count > 0 ? peaks->count : 1); i++) {
     const mho_peak *p = &peaks->peak[i];
     bool found = i < peaks->count;
     mho_table_text(table, molecule);
-    mho_table_integer(table, (long)h->all.traces);
-    mho_table_integer(table, (long)(h->all.traces - h->accepted.traces));
+    mho_table_integer(table, (long)traces);
+    mho_table_integer(table, (long)rejected);
     if (found) mho_table_integer(table, i + 1);
     else mho_table_empty(table);
     mho_table_optional(table, found, p->log10_g0);

@@ -227,7 +227,7 @@ void mho_figure_comb(mho_buffer *script, const mho_histogram *h, const mho_trace
     add_number(script, 1.06 * top);
     add_number(script, t->low);
     add_number(script, t->high);
-    mho_buffer_print(script, " %d\n", t->supported ? 7 : 6);
+    mho_buffer_print(script, " %d\n", t->supported);
   }
   mho_buffer_add(script, "END\n");
   for (int n = 1; comb->found && n <= comb->count; n++) {
@@ -245,9 +245,11 @@ void mho_figure_comb(mho_buffer *script, const mho_histogram *h, const mho_trace
   if (comb->count > 0)
     mho_buffer_print(script,
                      ", $teeth using 1:2:3:4 with xerrorbars linewidth 2 pointtype 0 linecolor "
-                     "'%s' notitle, $teeth using 1:2:5 with points pointtype variable pointsize "
-                     "1.2 linecolor '%s' title 'own centre of each (filled: supported)'",
-                     ink[0], ink[0]);
+                     "'%s' notitle, $teeth using ($5 == 1 ? $1 : NaN):2 with points pointtype 7 "
+                     "pointsize 1.2 linecolor '%s' title 'own centre, supported', $teeth using "
+                     "($5 == 0 ? $1 : NaN):2 with points pointtype 6 pointsize 1.2 linecolor '%s' "
+                     "title 'not supported'",
+                     ink[0], ink[0], ink[0]);
   mho_buffer_add(script, "\n");
 }
 

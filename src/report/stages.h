@@ -64,7 +64,7 @@ void mho_dwell_rows(mho_output *output, const mho_telegraph *telegraph);
 
 /* Of a study: the peaks of each molecule, one row without them if none. */
 mho_table *mho_traces_table(mho_output *output);
-void mho_traces_rows(mho_table *table, const char *molecule, const mho_histogram *histogram,
+void mho_traces_rows(mho_table *table, const char *molecule, uint64_t traces, uint64_t rejected,
                      const mho_peaks *peaks);
 
 /* The peak with the largest weight, or NULL. */
@@ -84,6 +84,10 @@ void mho_blink_note(mho_output *output, const mho_telegraph *telegraph);
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction);
+
+/* What the plan of a molecule can do, and how many points each method settled. */
+void mho_method_note(mho_output *output, const char *molecule, const mho_plan *plan,
+                     const mho_point *point, size_t count);
 
 /* What `mho check` says about a molecule. */
 typedef struct {
