@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <math.h>
-#include <stdlib.h>
+#include <stdio.h>
 
 #include "cli/command.h"
 #include "report/figure.h"
@@ -12,6 +12,7 @@ typedef struct {
   const mho_trace_counts *counts;
   mho_peaks peaks, unrejected;
   bool has_peaks, has_unrejected;
+  char no_peaks[512]; /* why none were looked for, or empty */
   mho_comb comb;
   mho_clusters clusters;
 } findings;
@@ -31,6 +32,20 @@ static mho_status find_peaks(const command *cmd, findings *f, bool remarks, mho_
   if (status != MHO_OK || !remarks || f->counts->traces == f->histogram->all.traces) return status;
   f->has_unrejected = true;
   return mho_peaks_find(&f->histogram->all, &options, &f->unrejected, error);
+}
+
+/* Peaks beside another table: too few bins for a fit are no mistake there. */
+static mho_status find_peaks_beside(const command *cmd, findings *f, bool remarks,
+                                    mho_error *error)
+{
+  mho_error own;
+  mho_error_init(&own);
+  mho_status status = find_peaks(cmd, f, remarks, &own);
+  if (status != MHO_ERR_RANGE)
+    return status == MHO_OK ? MHO_OK : mho_fail(error, status, "cli", NULL, "%s", own.cause[0].message);
+  f->has_peaks = false;
+  snprintf(f->no_peaks, sizeof f->no_peaks, "%s", own.cause[0].message);
+  return MHO_OK;
 }
 
 static mho_status find_comb(const command *cmd, findings *f, mho_error *error)
@@ -65,7 +80,7 @@ static mho_status analyse(const command *cmd, findings *f, mho_error *error)
   switch (m->table) {
   case MEASURED_DEFAULT:
   case MEASURED_MAP:
-    return remarks || m->figure ? find_peaks(cmd, f, remarks, error) : MHO_OK;
+    return remarks || m->figure ? find_peaks_beside(cmd, f, remarks, error) : MHO_OK;
   case MEASURED_PEAKS: return find_peaks(cmd, f, remarks, error);
   case MEASURED_COMB: return find_comb(cmd, f, error);
   case MEASURED_CLUSTERS: return find_clusters(cmd, f, error);
@@ -92,6 +107,7 @@ static void add_remarks(const command *cmd, const findings *f, mho_output *outpu
   const measured_options *m = &cmd->measured;
   const mho_histogram *h = f->histogram;
   if (f->has_peaks) mho_peaks_note(output, &f->peaks);
+  if (f->no_peaks[0]) mho_output_note(output, "no peaks are looked for: %s", f->no_peaks);
   if (m->table == MEASURED_COMB) mho_comb_note(output, &f->comb);
   if (m->table == MEASURED_PLATEAUS) mho_plateaus_note(output, h);
   if (m->table == MEASURED_CLUSTERS) mho_clusters_note(output, &f->clusters, h->samples);

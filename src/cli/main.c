@@ -128,7 +128,7 @@ static const option_row options[OPTION_COUNT] = {
                        "shortest dwell that is seen (default 0.179/bandwidth)"},
     [OPT_NO_DRIFT] = {BLINK, "no-drift", 0, NULL, "do not take off a straight drift"},
     [OPT_BIAS] = {MEASURED, "bias", 0, "VOLTAGE", "of a measured current, such as '0.1 V'"},
-    [OPT_SERIES] = {MEASURED, "series-resistance", 0, "RESISTANCE", "to take off (default '0 ohm')"},
+    [OPT_SERIES] = {MEASURED, "series-resistance", 0, "R", "to take off (default '0 ohm')"},
     [OPT_FLOOR] = {MEASURED, "floor", 0, "G-OR-I", "of the preamplifier, such as '1e-6 G0' or '10 pA'"},
     [OPT_SATURATION] = {MEASURED, "saturation", 0, "G-OR-I", "of the preamplifier"},
     [OPT_COLUMNS] = {MEASURED, "columns", 0, "NAMES", "such as distance_nm,current_nA"},
