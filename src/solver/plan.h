@@ -98,6 +98,14 @@ void mho_elimination_evaluate_quad(const mho_plan *plan,
 void mho_elimination_reduced_quad(const mho_plan *contacts, mho_elimination_quad *workspace,
                                 const mho_quad *value, double *adjoint,
                                 mho_estimate *estimate);
+/* y_c of all channels, [channels][sites], in double. */
+void mho_elimination_solutions_quad(const mho_plan *plan,
+                                    const mho_elimination_quad *workspace,
+                                    double _Complex *solution);
+
+/* Im (G Gamma_L G^+)_ij, which may be far smaller than its terms. */
+double mho_elimination_flow_quad(const mho_plan *plan, const mho_elimination_quad *workspace,
+                                 int i, int j);
 double mho_elimination_differentiate_quad(const mho_plan *plan,
                                         mho_elimination_quad *workspace,
                                         double energy_ev, double relative_error,
