@@ -135,9 +135,11 @@ mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan
   if (junction->sites != plan->sites || !plan->level_ev)
     return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
                     "the plan was not made of this junction");
+  mho_status status = mho_plan_require_wide_band(plan, "inside views", error);
+  if (status != MHO_OK) return status;
   view v = {junction, plan, NULL, NULL};
   mho_point point;
-  mho_status status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
+  status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
   if (status == MHO_OK) status = allocate(plan, result, error);
   if (status == MHO_OK) status = solve(&v, energy_ev, result, error);
   if (status == MHO_OK) {

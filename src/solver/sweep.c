@@ -253,7 +253,7 @@ static mho_status evaluate(const mho_plan *plan, workspace *work, const double *
   return status;
 }
 
-static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+static mho_status sweep_wide_band(const mho_plan *plan, workspace *work, size_t count,
                         const double *energy_ev, mho_point *point)
 {
   mho_status status = MHO_OK;
@@ -264,6 +264,38 @@ static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
     status = evaluate(plan, work, energy_ev, i,
                       count - i < SPECTRUM_LANES ? count - i : SPECTRUM_LANES, point);
   return status == MHO_OK ? settle(plan, work, point) : status;
+}
+
+/* With chains as electrodes every energy has its own Gamma and shift. */
+static mho_status sweep_chains(const mho_plan *plan, workspace *work, size_t count,
+                               const double *energy_ev, mho_point *point)
+{
+  size_t m = (size_t)plan->channels;
+  double *sigma = malloc(2 * m * sizeof *sigma);
+  if (!sigma) return MHO_ERR_MEMORY;
+  mho_plan at_energy = *plan, contacts;
+  at_energy.coupling_ev = sigma;
+  at_energy.shift_ev = sigma + m;
+  if (plan->contacts) {
+    contacts = *plan->contacts;
+    contacts.coupling_ev = sigma;
+    contacts.shift_ev = sigma + m;
+    at_energy.contacts = &contacts;
+  }
+  mho_status status = MHO_OK;
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    if (mho_plan_electrodes(plan, energy_ev[i], sigma, sigma + m))
+      status = sweep_wide_band(&at_energy, work, 1, energy_ev + i, point + i);
+    else point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
+  free(sigma);
+  return status;
+}
+
+static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+                        const double *energy_ev, mho_point *point)
+{
+  bool chains = plan->has_chain[MHO_LEFT] || plan->has_chain[MHO_RIGHT];
+  return (chains ? sweep_chains : sweep_wide_band)(plan, work, count, energy_ev, point);
 }
 
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,

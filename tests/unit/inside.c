@@ -110,7 +110,7 @@ static void a_ring_current_flows_near_a_node(void **state)
   (void)state;
   double h[36] = {0}, gamma = 0.5, zero = 0, left[6] = {1}, right[6] = {0, 0, 1};
   for (int i = 0; i < 6; i++) h[i * 6 + (i + 1) % 6] = h[(i + 1) % 6 * 6 + i] = -2.7;
-  mho_lead lead[2] = {{1, &gamma, &zero, left}, {1, &gamma, &zero, right}};
+  mho_lead lead[2] = {{1, &gamma, &zero, left, NULL}, {1, &gamma, &zero, right, NULL}};
   mho_junction junction;
   mho_plan *plan;
   mho_inside view;

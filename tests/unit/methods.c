@@ -24,7 +24,7 @@ static raw random_junction(int sites, double gamma[2], double *zero, double *vec
 {
   static const double onsite[] = {0, 0, 0, 0, 0.51, 1.37};
   size_t n = (size_t)sites;
-  raw r = {sites, calloc(n * n, sizeof(double)), {{0}, {0}}};
+  raw r = {.sites = sites, .h = calloc(n * n, sizeof(double))};
   for (size_t i = 0; i < n; i++) r.h[i * n + i] = BETA * onsite[(size_t)(6 * uniform())];
   for (size_t i = 1; i < n; i++)
     for (int bond = 0; bond < 2; bond++) {
@@ -37,7 +37,7 @@ static raw random_junction(int sites, double gamma[2], double *zero, double *vec
   vectors[left] = vectors[n + right] = 1;
   for (int side = 0; side < 2; side++) {
     gamma[side] = pow(10, -9 + 10 * uniform());
-    r.lead[side] = (mho_lead){1, &gamma[side], zero, vectors + (side ? n : 0)};
+    r.lead[side] = (mho_lead){1, &gamma[side], zero, vectors + (side ? n : 0), NULL};
   }
   return r;
 }
@@ -117,7 +117,7 @@ static mho_plan *chain_plan(int sites, double gamma)
   double zero = 0, *left = calloc(n, sizeof(double)), *right = calloc(n, sizeof(double));
   for (int i = 0; i + 1 < sites; i++) entry[i] = (mho_entry){i, i + 1, BETA};
   left[0] = right[n - 1] = 1;
-  mho_lead lead[2] = {{1, &gamma, &zero, left}, {1, &gamma, &zero, right}};
+  mho_lead lead[2] = {{1, &gamma, &zero, left, NULL}, {1, &gamma, &zero, right, NULL}};
   mho_plan *plan;
   assert_int_equal(mho_plan_create_sparse(sites, entry, n - 1, &lead[0], &lead[1], &plan, NULL),
                    MHO_OK);
@@ -190,7 +190,7 @@ static void sparse_plans_refuse_bad_entries(void **state)
 {
   (void)state;
   double gamma = 1, zero = 0, vector[2] = {1, 0};
-  mho_lead lead = {1, &gamma, &zero, vector}, none = {0};
+  mho_lead lead = {1, &gamma, &zero, vector, NULL}, none = {0};
   mho_plan *plan;
   mho_entry good = {0, 1, 1.0}, order = {1, 0, 1.0}, outside = {0, 2, 1.0}, bad = {0, 1, NAN};
   assert_int_equal(mho_plan_create_sparse(2, &order, 1, &lead, &lead, &plan, NULL), MHO_ERR_SIZE);
