@@ -143,6 +143,29 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
   return MHO_OK;
 }
 
+/* T of all lanes and the adjoints of the Schur complements. */
+static mho_status finish_lanes(const mho_plan *plan, workspace *work, bool extended,
+                               mho_estimate *estimate)
+{
+  double transmission[PROGRAM_LANES], error[PROGRAM_LANES];
+  bool pair = mho_program_is_pair(plan);
+  if (pair) mho_program_finish_pair(plan, extended, &work->trace, transmission, error);
+  for (size_t l = 0; l < PROGRAM_LANES; l++) {
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (l >= work->lanes || work->trace.broken[l]) continue;
+    if (pair && transmission[l] > 1e-200 && (!extended || error[l] <= CONTRACT_FLOOR))
+      estimate[l] = (mho_estimate){.transmission = transmission[l],
+                                   .log10_transmission = log10(transmission[l]),
+                                   .relative_error = error[l],
+                                   .first_order = true};
+    else if (!pair || extended) {
+      mho_status status = reduced_point(plan, work, l, extended, &estimate[l]);
+      if (status != MHO_OK) return status;
+    }
+  }
+  return MHO_OK;
+}
+
 /* Runs the lanes that wait and settles those that keep the contract; the
  * others stay, moved together. */
 static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
@@ -156,12 +179,8 @@ static mho_status run_program(const mho_plan *plan, workspace *work, bool extend
   (extended ? mho_program_forward_extended : mho_program_forward_double)(
       plan->program, work->energy_ev, plan->norm_ev, trace);
   mho_estimate estimate[PROGRAM_LANES];
-  for (size_t l = 0; l < PROGRAM_LANES; l++) {
-    estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (l < work->lanes && !trace->broken[l] &&
-        reduced_point(plan, work, l, extended, &estimate[l]) != MHO_OK)
-      return MHO_ERR_MEMORY;
-  }
+  mho_status status = finish_lanes(plan, work, extended, estimate);
+  if (status != MHO_OK) return status;
   mho_program_backward(plan->program, work->energy_ev,
                        extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE, trace);
   size_t left = 0;
