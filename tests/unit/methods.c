@@ -7,6 +7,8 @@
  */
 #include "junctions.h"
 
+#include <pthread.h>
+
 #include <mho/nodes.h>
 
 #define BETA (-2.7)
@@ -186,6 +188,52 @@ static void results_do_not_depend_on_the_company(void **state)
   mho_plan_free(plan);
 }
 
+enum { SHARED_ENERGIES = 400, THREADS = 4 };
+
+typedef struct {
+  const mho_plan *plan;
+  const double *energy;
+  const mho_point *expected;
+  int different;
+} shared_work;
+
+static void *sweep_many_times(void *argument)
+{
+  shared_work *work = argument;
+  mho_point point[SHARED_ENERGIES];
+  for (int repeat = 0; repeat < 20; repeat++) {
+    if (mho_transmission_sweep(work->plan, SHARED_ENERGIES, work->energy, point, NULL) != MHO_OK)
+      work->different++;
+    for (int i = 0; i < SHARED_ENERGIES; i++)
+      work->different += point[i].log10_transmission != work->expected[i].log10_transmission ||
+                         point[i].method != work->expected[i].method;
+  }
+  return NULL;
+}
+
+static void threads_share_a_plan(void **state)
+{
+  (void)state;
+  double gamma[2], zero = 0, vectors[2 * 40], energy[SHARED_ENERGIES];
+  raw r = random_junction(40, gamma, &zero, vectors);
+  mho_plan *plan = plan_of(&r, false, false);
+  mho_point expected[SHARED_ENERGIES];
+  for (int i = 0; i < SHARED_ENERGIES; i++) energy[i] = -4 + 8.0 * i / SHARED_ENERGIES;
+  assert_int_equal(mho_transmission_sweep(plan, SHARED_ENERGIES, energy, expected, NULL), MHO_OK);
+  pthread_t thread[THREADS];
+  shared_work work[THREADS];
+  for (int k = 0; k < THREADS; k++) {
+    work[k] = (shared_work){plan, energy, expected, 0};
+    assert_int_equal(pthread_create(&thread[k], NULL, sweep_many_times, &work[k]), 0);
+  }
+  for (int k = 0; k < THREADS; k++) {
+    pthread_join(thread[k], NULL);
+    assert_int_equal(work[k].different, 0);
+  }
+  mho_plan_free(plan);
+  free(r.h);
+}
+
 static void sparse_plans_refuse_bad_entries(void **state)
 {
   (void)state;
@@ -208,6 +256,7 @@ int main(void)
       cmocka_unit_test(methods_agree_on_random_graphs),
       cmocka_unit_test(long_chains_follow_the_closed_form),
       cmocka_unit_test(results_do_not_depend_on_the_company),
+      cmocka_unit_test(threads_share_a_plan),
       cmocka_unit_test(sparse_plans_refuse_bad_entries),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
