@@ -178,6 +178,7 @@ static void fill_traces_table(run *r)
     mho_traces_rows(table, name, r->measured[i].traces, r->measured[i].rejected,
                     &r->measured[i].peaks);
     mho_output_note(&r->output, "traces of %s:", name);
+    mho_peaks_note(&r->output, &r->measured[i].peaks);
     mho_reading_note(&r->output, &r->measured[i].report,
                      mho_trace_floor_g0(&s->traces[i].options));
   }
