@@ -83,6 +83,10 @@ typedef struct {
   int charge;
   mho_contact contact[2]; /* MHO_LEFT, MHO_RIGHT */
   mho_fermi fermi;
+  /* The structure that was drawn (no atoms where the file gives the sites
+   * themselves), and [site_count] the atom of each site. */
+  mho_graph graph;
+  int *site_atom;
   /* What the reader of a structure has to say. */
   int linker_count;
   mho_site_linker *linker;

@@ -94,9 +94,9 @@ static mho_status fail_row(conversion *c, const mho_pi_site *site)
   for (int i = 0; i < mho_parameters_count(set) && count < 32; i++)
     rows[count++] = mho_parameters_row_name(set, i);
   mho_graph_atom_name(&c->structure->graph, site->atom, name, sizeof name);
-  return mho_fail_column(
+  return mho_fail_atom(
       c->error, MHO_ERR_UNPARAMETERISED, &c->options->place,
-      c->structure->graph.atom[site->atom].column,
+      &c->structure->graph, site->atom,
       "%s needs the row '%s', which the parameter set %s does not have; it has %s",
       name, site->row, mho_parameters_name(set),
       mho_join_words(rows, count, list, sizeof list));
@@ -227,9 +227,9 @@ static mho_status fail_contact(conversion *c, int side, int atom)
 {
   char name[24];
   mho_graph_atom_name(&c->structure->graph, atom, name, sizeof name);
-  return mho_fail_column(c->error, MHO_ERR_CONTACTS, &c->options->place,
-                         c->structure->graph.atom[atom].column,
-                         "the %s contact %s carries no p orbital; mark an atom "
+  return mho_fail_atom(c->error, MHO_ERR_CONTACTS, &c->options->place,
+                       &c->structure->graph, atom,
+                       "the %s contact %s carries no p orbital; mark an atom "
                          "of the pi system", side ? "right" : "left", name);
 }
 

@@ -53,7 +53,7 @@ static mho_status fail_valence(const mho_graph *graph, int atom, int used,
   int most = 0;
   for (int v = 0; v <= used; v++)
     if (valence_of(graph, atom, v) > most) most = valence_of(graph, atom, v);
-  return mho_fail_column(error, MHO_ERR_SYNTAX, place, a->column,
+  return mho_fail_atom(error, MHO_ERR_SYNTAX, place, graph, atom,
                          "%s has %d bonds; %s with charge %+d forms at most %d",
                          name, used, mho_element_symbol(a->element), a->charge,
                          most);
@@ -77,8 +77,8 @@ static mho_status fail_kekule(const mho_graph *graph, int atom,
     if (graph->atom[a].aromatic && graph->atom[a].element == ELEMENT_N &&
         !graph->atom[a].bracket && mho_graph_degree(graph, a) == 2)
       mho_graph_atom_name(graph, a, nitrogen, sizeof nitrogen);
-  return mho_fail_column(
-      error, MHO_ERR_SYNTAX, place, graph->atom[atom].column,
+  return mho_fail_atom(
+      error, MHO_ERR_SYNTAX, place, graph, atom,
       "no Kekule structure: the aromatic atom %s finds no partner for a double "
       "bond%s%s%s",
       name, nitrogen[0] ? "; a ring nitrogen that bears a hydrogen (" : "",
@@ -96,8 +96,8 @@ static mho_status find_open_atoms(const mho_graph *graph, bool *open,
     for (int i = graph->start[a]; i < graph->start[a + 1]; i++)
       ring |= graph->bond[graph->link[i].bond].ring;
     if (!ring)
-      return mho_fail_column(
-          error, MHO_ERR_SYNTAX, place, graph->atom[a].column,
+      return mho_fail_atom(
+          error, MHO_ERR_SYNTAX, place, graph, a,
           "an aromatic atom stands outside a ring; write it as a capital "
           "letter");
     int left = open_valence(graph, a);
