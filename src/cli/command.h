@@ -22,6 +22,7 @@ typedef struct {
   output_format format;
   bool exact, quiet, poles, nodes, sensitivity;
   const char *output; /* -o, or NULL */
+  const char *drawing; /* --draw, or NULL; "-" is stdout */
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;

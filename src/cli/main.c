@@ -50,7 +50,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_HELP, OPTION_COUNT
 };
@@ -63,6 +63,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
+    [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
     [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
@@ -267,6 +268,7 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
+  case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
   case OPT_CSV:

@@ -141,7 +141,7 @@ static mho_status read_single(const command *cmd, const char *argument, bool is_
 {
   subject *s = add_subject(list, error);
   if (!s) return MHO_ERR_MEMORY;
-  mho_place place = {"SMILES", 0, 0};
+  mho_place place = {"SMILES", 0, 0, false};
   mho_status status =
       is_file ? mho_molecule_read(argument, NULL, &cmd->overrides, &s->molecule, error)
               : mho_molecule_read_smiles(argument, &place, &cmd->overrides, 0, &s->molecule, error);

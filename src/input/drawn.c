@@ -27,7 +27,11 @@ static mho_status keep_findings(mho_structure *structure, mho_molecule *molecule
   }
   molecule->notes = structure->notes;
   molecule->warnings = structure->warnings;
+  molecule->graph = structure->graph;
+  molecule->site_atom = structure->site_atom;
   structure->notes = (mho_texts){0};
+  mho_graph_init(&structure->graph);
+  structure->site_atom = NULL;
   return MHO_OK;
 }
 

@@ -387,7 +387,7 @@ static void read_drawn(reader *r, const mho_yaml_node *smiles)
   const char *text;
   int charge = read_charge(r);
   if (!mho_yaml_get_text(r->yaml, smiles, "smiles", &text)) return;
-  mho_place place = {r->yaml->file, smiles->line, smiles->column + smiles->quoted};
+  mho_place place = {r->yaml->file, smiles->line, smiles->column + smiles->quoted, false};
   mho_status status = mho_molecule_read_smiles(text, &place, &r->settings, charge, r->molecule,
                                                r->yaml->error);
   (void)status; /* the cause is in the document's error */
