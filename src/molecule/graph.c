@@ -67,7 +67,7 @@ mho_status mho_fail_atom(mho_error *error, mho_status status,
 }
 
 /* Neighbours of each atom, in the order of the bonds. */
-static void link_atoms(mho_graph *graph)
+void mho_graph_link_atoms(mho_graph *graph)
 {
   int n = graph->atom_count;
   memset(graph->start, 0, ((size_t)n + 1) * sizeof *graph->start);
@@ -124,7 +124,7 @@ static void find_ring_bonds(mho_graph *graph, int *memory)
 mho_status mho_graph_complete(mho_graph *graph, const mho_place *place,
                               mho_error *error)
 {
-  link_atoms(graph);
+  mho_graph_link_atoms(graph);
   int *memory = malloc(4 * (size_t)graph->atom_count * sizeof *memory + 1);
   if (!memory) return mho_fail(error, MHO_ERR_MEMORY, MOLECULE_STAGE, NULL, "out of memory");
   find_ring_bonds(graph, memory);

@@ -13,6 +13,9 @@
 MHO_MUST_USE mho_status mho_graph_reserve(mho_graph *graph, int atoms,
                                           int bonds);
 
+/* Fills start and link from the bonds. */
+void mho_graph_link_atoms(mho_graph *graph);
+
 /* Atoms and bonds are in place (aromatic bonds with order 1): finds
  * neighbours and rings, gives aromatic bonds their orders and atoms their
  * hydrogens and radicals.  Errors: MHO_ERR_SYNTAX, MHO_ERR_MEMORY. */

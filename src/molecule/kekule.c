@@ -17,10 +17,10 @@
 
 enum { NAME_SIZE = 16 };
 
-/* Bond orders and written hydrogens at an atom. */
+/* Bond orders, written hydrogens and radicals at an atom. */
 static int used_valence(const mho_graph *graph, int atom)
 {
-  int used = graph->atom[atom].hydrogens;
+  int used = graph->atom[atom].hydrogens + graph->atom[atom].radical;
   for (int i = graph->start[atom]; i < graph->start[atom + 1]; i++)
     used += graph->bond[graph->link[i].bond].order;
   return used;
@@ -82,7 +82,10 @@ static mho_status fail_kekule(const mho_graph *graph, int atom,
       "no Kekule structure: the aromatic atom %s finds no partner for a double "
       "bond%s%s%s",
       name, nitrogen[0] ? "; a ring nitrogen that bears a hydrogen (" : "",
-      nitrogen, nitrogen[0] ? "?) is written [nH]" : "");
+      nitrogen,
+      !nitrogen[0]              ? ""
+      : place && place->record ? "?) needs it as an atom, or single and double bonds"
+                                : "?) is written [nH]");
 }
 
 /* Marks in `open` the aromatic atoms that need a double bond. */
@@ -154,12 +157,12 @@ static mho_status count_hydrogens(mho_graph *graph, const mho_place *place,
     int used = used_valence(graph, a);
     int valence = valence_of(graph, a, used);
     if (valence < 0) return fail_valence(graph, a, used, place, error);
-    if (atom->bracket) atom->radical = valence - used;
+    if (atom->bracket) atom->radical += valence - used;
     else if (!(atom->aromatic && atom->element != ELEMENT_C &&
                atom->element != ELEMENT_B))
       atom->hydrogens = valence - used;
     else
-      atom->radical = valence - used;
+      atom->radical += valence - used;
   }
   return MHO_OK;
 }

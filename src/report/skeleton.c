@@ -100,11 +100,20 @@ static bool is_carbon(const picture *p, int point)
   return atom >= 0 && p->d->molecule->graph.atom[atom].element == 6;
 }
 
-/* Carbon atoms are corners, sites without an atom small discs, others words
- * on a white disc: how far a bond stays away. */
+/* A site without an atom, of carbon or of an explicit energy: a small disc. */
+static bool is_bare(const picture *p, int point)
+{
+  if (p->d->point_atom[point] >= 0) return false;
+  const mho_molecule *m = p->d->molecule;
+  const char *row = mho_parameters_row_name(m->parameters, m->site[p->d->point_site[point]].row);
+  return !row || !strcmp(row, "C");
+}
+
+/* Carbon atoms are corners, other elements words on a white disc: how far a
+ * bond stays away. */
 static double clearance(const picture *p, int point)
 {
-  if (p->d->point_atom[point] < 0) return 5;
+  if (is_bare(p, point)) return 5;
   return is_carbon(p, point) ? 0 : 13;
 }
 
@@ -196,8 +205,16 @@ static void draw_arrow(picture *p, int bond)
                          "\" stroke-width=\"0.8\"/>\n");
 }
 
-/* Middle of the largest gap between the bonds at a point, as an angle in the
- * picture. */
+static bool touches(const picture *p, int side, int point)
+{
+  const mho_contact *c = &p->d->molecule->contact[side];
+  for (int i = 0; i < c->count; i++)
+    if (p->d->site_point[c->site[i]] == point) return true;
+  return false;
+}
+
+/* Middle of the largest gap between the bonds and leads at a point, as an angle
+ * in the picture. */
 static double free_direction(const picture *p, int point)
 {
   const mho_drawing *d = p->d;
@@ -211,6 +228,8 @@ static double free_direction(const picture *p, int point)
         double to = atan2(y_of(p, other) - y_of(p, point), x_of(p, other) - x_of(p, point));
         nearest = fmin(nearest, fabs(remainder(to - angle, 2 * PI)));
       }
+    if (touches(p, MHO_LEFT, point)) nearest = fmin(nearest, fabs(remainder(PI - angle, 2 * PI)));
+    if (touches(p, MHO_RIGHT, point)) nearest = fmin(nearest, fabs(remainder(angle, 2 * PI)));
     if (nearest > most + 1e-6) {
       most = nearest;
       best = angle;
@@ -311,7 +330,7 @@ static void draw_atom(picture *p, int point)
 {
   char name[MHO_ID_SIZE + 16];
   double x = x_of(p, point), y = y_of(p, point), angle = free_direction(p, point);
-  bool corner = is_carbon(p, point), bare = p->d->point_atom[point] < 0;
+  bool corner = is_carbon(p, point), bare = is_bare(p, point);
   name_of(p, point, name, sizeof name);
   add_charge(p, point, name, sizeof name);
   if (is_linker(p, point))
