@@ -51,7 +51,7 @@ typedef struct {
 
 enum {
   OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
-  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_HELP, OPTION_COUNT
 };
 
@@ -80,6 +80,8 @@ static const option_row options[OPTION_COUNT] = {
                          "of bonds in a SMILES: formal (default) or none"},
     [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
                    "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
+    [OPT_HOPPING] = {ALL, "hopping", 0, "RULE",
+                     "of C-C bonds: table (default), or bond-length from coordinates"},
     [OPT_CSV] = {TABLES, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
@@ -140,8 +142,8 @@ static void print_help(void)
   for (int i = 0; i < VERB_COUNT; i++)
     printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
   printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
-         "\nA MOLECULE is a molecule file, a list (.smi, .csv) or a SMILES such as\n"
-         "'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
+         "\nA MOLECULE is a molecule file, a list (.smi, .csv), a file of structures\n"
+         "(.mol, .sdf, .xyz) or a SMILES such as 'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
          "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
 }
 

@@ -30,6 +30,7 @@ typedef struct {
   int *order;   /* [points] in which they were placed */
   int *scratch; /* [points] */
   signed char *turn; /* [points] of a zigzag */
+  signed char *linear; /* [points] pi bonds, up to 2 */
   bool *placed, *done; /* [points]; [rings] */
   int placed_count;
   long work;
@@ -169,7 +170,7 @@ static void attach(layout *l, int parent, int v, double angle)
 
 static bool is_linear(const layout *l, int v)
 {
-  return l->graph->linear && l->graph->linear[v];
+  return l->graph->order && l->linear[v] >= 2;
 }
 
 /* Places the neighbours of a placed point that are not placed yet. */
@@ -401,14 +402,19 @@ mho_status mho_layout(const mho_layout_graph *graph, double (*position)[2],
   size_t n = (size_t)graph->points;
   layout l = {.graph = graph, .position = position, .work = WORK_LIMIT};
   int *memory = malloc((4 * n + 1) * sizeof *memory);
-  l.turn = calloc(2 * n + 1, 1);
+  l.turn = calloc(3 * n + 1, 1);
   mho_status status = memory && l.turn ? MHO_OK : MHO_ERR_MEMORY;
   if (status == MHO_OK) {
     l.system = memory;
     l.parent = memory + n;
     l.order = memory + 2 * n;
     l.scratch = memory + 3 * n;
-    l.placed = (bool *)(l.turn + n);
+    l.linear = l.turn + n;
+    l.placed = (bool *)(l.turn + 2 * n);
+    for (int b = 0; graph->order && b < graph->bonds; b++)
+      for (int end = 0; end < 2; end++)
+        if (l.linear[graph->bond[b][end]] < 2)
+          l.linear[graph->bond[b][end]] += (signed char)(graph->order[b] - 1);
     if (graph->points > MHO_LAYOUT_LIMIT) {
       for (int v = 0; v < graph->points; v++) l.order[v] = v;
       place_circle(&l, l.order, graph->points);

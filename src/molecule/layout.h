@@ -20,7 +20,7 @@ typedef enum {
 typedef struct {
   int points, bonds;
   const int (*bond)[2]; /* [bonds] no point with itself */
-  const bool *linear;   /* [points] two bonds in a straight line; or NULL */
+  const int *order;     /* [bonds]: a triple or two double bonds are straight; or NULL */
 } mho_layout_graph;
 
 /* Fills position[points] and what became of it (kind may be NULL).  The work

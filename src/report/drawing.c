@@ -87,19 +87,6 @@ static void match_bonds(mho_drawing *d)
   }
 }
 
-static void find_linear(const mho_drawing *d, bool *linear)
-{
-  for (int i = 0; i < d->points; i++) linear[i] = false;
-  for (int b = 0; b < d->bonds; b++)
-    for (int end = 0; end < 2; end++) {
-      int p = d->bond[b][end];
-      int doubles = d->bond_order[b] == 2;
-      for (int k = 0; doubles == 1 && k < b; k++)
-        doubles += d->bond_order[k] == 2 && (d->bond[k][0] == p || d->bond[k][1] == p);
-      if (d->bond_order[b] == 3 || doubles > 1) linear[p] = true;
-    }
-}
-
 static bool contact_centre(const mho_drawing *d, int side, double centre[2])
 {
   const mho_contact *c = &d->molecule->contact[side];
@@ -134,8 +121,7 @@ mho_status mho_drawing_make(const mho_molecule *molecule, mho_drawing *drawing,
   *drawing = (mho_drawing){.molecule = molecule};
   mho_status status = reserve(drawing, atoms, structure ? g->bond_count : molecule->bond_count);
   int *point = malloc(((size_t)atoms + 1) * sizeof *point);
-  bool *linear = malloc((size_t)atoms + 1);
-  if (!point || !linear) status = MHO_ERR_MEMORY;
+  if (!point) status = MHO_ERR_MEMORY;
   if (status == MHO_OK) {
     if (structure) from_structure(drawing, point);
     else from_sites(drawing);
@@ -143,13 +129,11 @@ mho_status mho_drawing_make(const mho_molecule *molecule, mho_drawing *drawing,
     for (int s = molecule->site_count - 1; s >= 0; s--)
       drawing->point_site[drawing->site_point[s]] = s;
     match_bonds(drawing);
-    find_linear(drawing, linear);
     mho_layout_graph graph = {drawing->points, drawing->bonds,
-                              (const int(*)[2])drawing->bond, linear};
+                              (const int(*)[2])drawing->bond, drawing->bond_order};
     status = mho_layout(&graph, drawing->position, NULL);
   }
   free(point);
-  free(linear);
   if (status != MHO_OK) return no_memory(error);
   orient(drawing);
   return MHO_OK;
