@@ -12,12 +12,16 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   if (status == MHO_OK)
     status = mho_conductance_compute(plan, s->junction.fermi_ev, s->junction.temperature_k,
                                      &options, &result, error);
+  if (status == MHO_OK && cmd->verbose)
+    mho_method_note(output, s->molecule.name, plan, &result.at_fermi, 1);
   mho_plan_free(plan);
   if (status != MHO_OK) return status;
   unsigned warnings = s->warnings | result.warnings;
   mho_conductance_row(table, s->molecule.name, &result, warnings);
   mho_output_warn(output, s->molecule.name, warnings);
-  if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
+  if (cmd->quiet) return MHO_OK;
+  mho_verdict_note(output, s->molecule.name, &result, cmd->window_ev);
+  mho_assumption_note(output, &s->molecule, &s->junction);
   return MHO_OK;
 }
 
@@ -68,11 +72,6 @@ int command_conductance(const command *cmd, mho_error *error)
   mho_table *table = mho_conductance_table(&output);
   for (int i = 0; status == MHO_OK && table && i < list.count; i++)
     status = add_molecule(cmd, &list.item[i], &output, table, error);
-  if (!cmd->quiet)
-    mho_output_note(&output,
-                    "conductance is the thermal value at the Fermi level; the window values are "
-                    "its 5 %% and 95 %% quantiles over +-%g eV around it",
-                    cmd->window_ev);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
   subjects_free(&list);

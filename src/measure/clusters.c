@@ -5,7 +5,7 @@
  */
 #include <mho/peaks.h>
 
-#include "measure/random.h"
+#include "base/random.h"
 #include "measure/sample.h"
 
 #include <math.h>

@@ -11,7 +11,7 @@
  */
 #include "measure/dwell.h"
 
-#include "measure/random.h"
+#include "base/random.h"
 
 #include <gsl/gsl_cdf.h>
 #include <math.h>

@@ -6,7 +6,7 @@
  */
 #include <mho/telegraph.h>
 
-#include "measure/random.h"
+#include "base/random.h"
 #include "measure/sample.h"
 
 #include <gsl/gsl_fft_real.h>

@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "measure/sample.h"
 
-#include "measure/random.h"
+#include "base/random.h"
 
 #include <math.h>
 #include <stdlib.h>

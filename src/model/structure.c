@@ -316,7 +316,8 @@ static mho_status warn(conversion *c)
   const mho_graph *graph = &c->structure->graph;
   unsigned *warnings = &c->structure->warnings;
   for (int a = 0; a < graph->atom_count; a++)
-    if (mho_element_is_metal(graph->atom[a].element) && !c->linkers.removed[a])
+    if (mho_element_is_metal(graph->atom[a].element) &&
+        graph->atom[a].element != ELEMENT_AU)
       *warnings |= MHO_WARN_METAL;
   if (!m->contact[MHO_LEFT].count) return MHO_OK;
   bool *reached = malloc((size_t)m->site_count * sizeof *reached);

@@ -24,7 +24,7 @@
 #define LINE 17.0
 #define PI 3.14159265358979323846
 
-enum { NARROWEST = 300 };
+enum { NARROWEST = 300, TITLE_LIMIT = 70 };
 
 typedef struct {
   const mho_drawing *d;
@@ -79,6 +79,33 @@ static void text(picture *p, double x, double y, const char *style, const char *
   mho_buffer_add(p->svg, "</text>\n");
 }
 
+static int count_characters(const char *words)
+{
+  int count = 0;
+  for (; *words; words++) count += ((unsigned char)*words & 0xC0) != 0x80;
+  return count < TITLE_LIMIT ? count : TITLE_LIMIT;
+}
+
+/* A title of many characters ends in dots. */
+static void draw_title(picture *p)
+{
+  char words[4 * TITLE_LIMIT + 4];
+  size_t used = 0;
+  int count = 0;
+  for (const char *c = p->marks->title; *c; c++) {
+    count += ((unsigned char)*c & 0xC0) != 0x80;
+    if (count > TITLE_LIMIT) {
+      memcpy(words + used - 1, "…", 4);
+      used += 2;
+      break;
+    }
+    if (used < sizeof words - 4) words[used++] = *c;
+  }
+  words[used] = '\0';
+  text(p, p->width / 2, 24,
+       "font-size=\"14\" font-weight=\"bold\" fill=\"#1c2028\" text-anchor=\"middle\"", words);
+}
+
 static void measure(picture *p)
 {
   const mho_drawing *d = p->d;
@@ -89,6 +116,7 @@ static void measure(picture *p)
     }
   double wide = (p->high[0] - p->low[0]) * SCALE, high = (p->high[1] - p->low[1]) * SCALE;
   p->width = fmax(ceil(wide + 2 * MARGIN), NARROWEST);
+  if (p->marks->title) p->width = fmax(p->width, 9.5 * count_characters(p->marks->title) + 20);
   p->left = (p->width - wide) / 2;
   p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75;
   p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE);
@@ -213,6 +241,18 @@ static bool touches(const picture *p, int side, int point)
   return false;
 }
 
+/* Is something drawn within reach on that side of a point? */
+static bool is_blocked(const picture *p, int point, double way)
+{
+  const mho_drawing *d = p->d;
+  for (int i = 0; i < d->points; i++) {
+    double dx = (d->position[i][0] - d->position[point][0]) * way;
+    double dy = d->position[i][1] - d->position[point][1];
+    if (i != point && dx > 0.05 && dx < 1.6 && fabs(dy) < 0.7) return true;
+  }
+  return false;
+}
+
 /* Middle of the largest gap between the bonds and leads at a point, as an angle
  * in the picture. */
 static double free_direction(const picture *p, int point)
@@ -228,8 +268,8 @@ static double free_direction(const picture *p, int point)
         double to = atan2(y_of(p, other) - y_of(p, point), x_of(p, other) - x_of(p, point));
         nearest = fmin(nearest, fabs(remainder(to - angle, 2 * PI)));
       }
-    if (touches(p, MHO_LEFT, point)) nearest = fmin(nearest, fabs(remainder(PI - angle, 2 * PI)));
-    if (touches(p, MHO_RIGHT, point)) nearest = fmin(nearest, fabs(remainder(angle, 2 * PI)));
+    if (touches(p, MHO_LEFT, point) && !is_blocked(p, point, -1)) nearest = fmin(nearest, fabs(remainder(PI - angle, 2 * PI)));
+    if (touches(p, MHO_RIGHT, point) && !is_blocked(p, point, 1)) nearest = fmin(nearest, fabs(remainder(angle, 2 * PI)));
     if (nearest > most + 1e-6) {
       most = nearest;
       best = angle;
@@ -283,16 +323,18 @@ static const char *name_of(const picture *p, int point, char *buffer, size_t siz
   return buffer;
 }
 
-/* The charge as chemists write it: +, 2−. */
-static void add_charge(const picture *p, int point, char *name, size_t size)
+/* The charge as chemists write it, `+` or `2−`, up to the right of the name. */
+static void draw_charge(picture *p, int point, double away)
 {
   int atom = p->d->point_atom[point];
   int charge = atom >= 0 ? p->d->molecule->graph.atom[atom].charge : 0;
-  if (!charge) return;
-  size_t length = strlen(name);
+  char words[32];
   const char *sign = charge > 0 ? "+" : "−";
-  if (labs(charge) == 1) snprintf(name + length, size - length, " %s", sign);
-  else snprintf(name + length, size - length, " %ld%s", labs(charge), sign);
+  if (!charge) return;
+  if (abs(charge) == 1) snprintf(words, sizeof words, "%s", sign);
+  else snprintf(words, sizeof words, "%d%s", abs(charge), sign);
+  text(p, x_of(p, point) + away, y_of(p, point) - away + 3,
+       "font-size=\"15\" font-weight=\"bold\" fill=\"" INK "\" text-anchor=\"middle\"", words);
 }
 
 /* Two dots for a pair that the site brings, a small circle for an empty one. */
@@ -332,7 +374,6 @@ static void draw_atom(picture *p, int point)
   double x = x_of(p, point), y = y_of(p, point), angle = free_direction(p, point);
   bool corner = is_carbon(p, point), bare = is_bare(p, point);
   name_of(p, point, name, sizeof name);
-  add_charge(p, point, name, sizeof name);
   if (is_linker(p, point))
     circle(p, x, y, corner ? 7 : 15, "fill=\"#ffffff\" stroke=\"" INK "\" stroke-width=\"2.4\"");
   else if (!corner && !bare)
@@ -342,12 +383,14 @@ static void draw_atom(picture *p, int point)
     text(p, x, y + 4, "font-size=\"12\" font-weight=\"bold\" fill=\"" INK "\" text-anchor=\"middle\"",
          name);
     draw_electrons(p, point, angle, is_linker(p, point) ? 20 : 17);
+    draw_charge(p, point, 15);
     return;
   }
   double away = 12 + 1.5 * fabs(cos(angle)) * (double)strlen(name);
   text(p, x + away * cos(angle), y + away * sin(angle) + 3.5,
        "font-size=\"10\" fill=\"" NEUTRAL "\" text-anchor=\"middle\"", name);
   draw_electrons(p, point, angle + PI / 5, 11);
+  draw_charge(p, point, 8);
 }
 
 static void draw_site_text(picture *p, int site)
@@ -374,27 +417,35 @@ static void draw_bond_text(picture *p, int bond)
 
 /* --- contacts ------------------------------------------------------------- */
 
-/* A bar beyond the contact's atoms and a short lead to each of them. */
+/* A bar beyond the contact's atoms and a lead to each of them: to the left and
+ * the right, or where a single atom is not free there, where it is. */
 static void draw_contact(picture *p, int side)
 {
   const mho_drawing *d = p->d;
   const mho_contact *c = &d->molecule->contact[side];
   if (!c->count) return;
-  double top = 1e9, bottom = -1e9, edge = side == MHO_LEFT ? 1e9 : -1e9;
+  double way = side == MHO_LEFT ? -1 : 1, angle = side == MHO_LEFT ? PI : 0;
+  bool single = c->count == 1 && is_blocked(p, d->site_point[c->site[0]], way);
+  if (single) angle = free_direction(p, d->site_point[c->site[0]]);
+  double ux = cos(angle), uy = sin(angle), far = -1e9, low = 1e9, high = -1e9;
   for (int i = 0; i < c->count; i++) {
     int point = d->site_point[c->site[i]];
-    top = fmin(top, y_of(p, point));
-    bottom = fmax(bottom, y_of(p, point));
-    edge = side == MHO_LEFT ? fmin(edge, x_of(p, point)) : fmax(edge, x_of(p, point));
+    far = fmax(far, x_of(p, point) * ux + y_of(p, point) * uy);
+    low = fmin(low, -x_of(p, point) * uy + y_of(p, point) * ux);
+    high = fmax(high, -x_of(p, point) * uy + y_of(p, point) * ux);
   }
-  double way = side == MHO_LEFT ? -1 : 1, x = edge + way * 36;
+  far += 36;
   for (int i = 0; i < c->count; i++) {
     int point = d->site_point[c->site[i]];
-    line(p, x_of(p, point) + way * (is_linker(p, point) ? 16 : 8), y_of(p, point), x, y_of(p, point),
+    double x = x_of(p, point), y = y_of(p, point), rest = far - (x * ux + y * uy);
+    double from = is_linker(p, point) ? 17 : is_carbon(p, point) || is_bare(p, point) ? 8 : 15;
+    line(p, x + ux * from, y + uy * from, x + ux * rest, y + uy * rest,
          "stroke=\"" INK "\" stroke-width=\"2.4\" stroke-dasharray=\"1 4\" stroke-linecap=\"round\"");
   }
-  line(p, x, top - 16, x, bottom + 16, "stroke=\"" INK "\" stroke-width=\"9\"");
-  text(p, x + way * 13, (top + bottom) / 2 + 5,
+  line(p, far * ux - (low - 16) * uy, far * uy + (low - 16) * ux, far * ux - (high + 16) * uy,
+       far * uy + (high + 16) * ux, "stroke=\"" INK "\" stroke-width=\"9\"");
+  double middle = (low + high) / 2;
+  text(p, (far + 14) * ux - middle * uy, (far + 14) * uy + middle * ux + 5,
        "font-size=\"15\" font-weight=\"bold\" fill=\"" INK "\" text-anchor=\"middle\"",
        side == MHO_LEFT ? "L" : "R");
 }
@@ -413,10 +464,7 @@ static void write_caption(picture *p)
 static void draw(picture *p)
 {
   const mho_drawing *d = p->d;
-  if (p->marks->title)
-    text(p, p->width / 2, 24,
-         "font-size=\"14\" font-weight=\"bold\" fill=\"#1c2028\" text-anchor=\"middle\"",
-         p->marks->title);
+  if (p->marks->title) draw_title(p);
   for (int i = 0; i < d->points; i++) draw_value(p, i);
   for (int b = 0; b < d->bonds; b++) draw_arrow(p, b);
   for (int b = 0; b < d->bonds; b++) draw_bond(p, b);

@@ -3,7 +3,9 @@
 
 #include <mho/quantity.h>
 #include <mho/settings.h>
+#include <mho/warning.h>
 
+#include <math.h>
 #include <stdio.h>
 #include <string.h>
 
@@ -147,6 +149,38 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
   mho_table_text(table, kind[node->kind]);
 }
 
+/* 10^log10 with two digits, in a buffer. */
+static const char *two_digits(double log10_value, char *buffer, size_t size)
+{
+  mho_number_write(buffer, size, 2, pow(10.0, log10_value));
+  return buffer;
+}
+
+void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
+                      double window_ev)
+{
+  char value[32], low[32], high[32], window[32];
+  mho_number_write(window, sizeof window, 3, window_ev);
+  if (g->warnings & MHO_WARN_NO_PI_PATH) {
+    mho_output_note(output, "%s: no pi path joins the contacts, so the model predicts nothing",
+                    molecule);
+  } else if (g->warnings & MHO_WARN_NEAR_NODE || !g->has_log) {
+    mho_output_note(output,
+                    "%s: a node at the Fermi level; the pi system conducts poorly there, and how "
+                    "poorly is not predicted",
+                    molecule);
+  } else {
+    mho_output_note(output,
+                    "%s: %s G0, and %s to %s G0 (5 %% to 95 %%) while the Fermi level moves by "
+                    "+-%s eV",
+                    molecule, two_digits(g->log10_g0, value, sizeof value),
+                    g->has_window_low ? two_digits(g->window_low_log10_g0, low, sizeof low) : "0",
+                    g->has_window_high ? two_digits(g->window_high_log10_g0, high, sizeof high)
+                                       : "0",
+                    window);
+  }
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {
@@ -166,4 +200,20 @@ void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                   temperature);
   for (int i = 0; i < molecule->notes.count; i++)
     mho_output_note(output, "%s: %s", molecule->name, molecule->notes.text[i]);
+}
+
+void mho_method_note(mho_output *output, const char *molecule, const mho_plan *plan,
+                     const mho_point *point, size_t count)
+{
+  char description[512];
+  size_t settled[MHO_METHOD_COUNT] = {0};
+  for (size_t i = 0; i < count; i++) settled[point[i].method]++;
+  mho_output_note(output, "%s: methods at hand: %s", molecule,
+                  mho_plan_describe(plan, description, sizeof description));
+  for (int m = 0; m < MHO_METHOD_COUNT; m++)
+    if (settled[m])
+      mho_output_note(output,
+                      "%s: %zu of %zu energies by %s, the first whose error bound keeps the "
+                      "accuracy contract",
+                      molecule, settled[m], count, mho_method_name((mho_method)m));
 }

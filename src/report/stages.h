@@ -10,7 +10,9 @@
 #include <mho/conductance.h>
 #include <mho/molecule.h>
 #include <mho/nodes.h>
+#include <mho/peaks.h>
 #include <mho/sensitivity.h>
+#include <mho/telegraph.h>
 #include <mho/transmission.h>
 
 #include "report/table.h"
@@ -40,9 +42,52 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
 
+/* The result in one sentence. */
+void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
+                      double window_ev);
+
+/* Measured traces.  Each opens its table and fills it; traces, peaks and levels
+ * count from 1. */
+void mho_histogram_rows(mho_output *output, const mho_histogram *histogram,
+                        const mho_trace_counts *counts);
+void mho_linear_rows(mho_output *output, const mho_histogram *histogram);
+void mho_map_rows(mho_output *output, const mho_histogram *histogram);
+void mho_peak_rows(mho_output *output, const mho_peaks *peaks);
+void mho_comb_rows(mho_output *output, const mho_comb *comb);
+void mho_plateau_rows(mho_output *output, const mho_histogram *histogram);
+void mho_cluster_rows(mho_output *output, const mho_clusters *clusters);
+void mho_correlation_rows(mho_output *output, const mho_histogram *histogram);
+void mho_flicker_rows(mho_output *output, const mho_flicker *flicker);
+void mho_blink_rows(mho_output *output, const mho_telegraph *telegraph);
+void mho_step_rows(mho_output *output, const mho_telegraph *telegraph);
+void mho_dwell_rows(mho_output *output, const mho_telegraph *telegraph);
+
+/* Of a study: the peaks of each molecule, one row without them if none. */
+mho_table *mho_traces_table(mho_output *output);
+void mho_traces_rows(mho_table *table, const char *molecule, uint64_t traces, uint64_t rejected,
+                     const mho_peaks *peaks);
+
+/* The peak with the largest weight, or NULL. */
+const mho_peak *mho_main_peak(const mho_peaks *peaks);
+
+/* What was read, rejected and found, in words. */
+void mho_reading_note(mho_output *output, const mho_trace_report *report, double floor_g0);
+void mho_rejection_note(mho_output *output, const mho_histogram *histogram);
+void mho_peaks_note(mho_output *output, const mho_peaks *peaks);
+void mho_unrejected_note(mho_output *output, const mho_peaks *peaks);
+void mho_comb_note(mho_output *output, const mho_comb *comb);
+void mho_plateaus_note(mho_output *output, const mho_histogram *histogram);
+void mho_clusters_note(mho_output *output, const mho_clusters *clusters, size_t samples);
+void mho_flicker_note(mho_output *output, const mho_flicker *flicker);
+void mho_blink_note(mho_output *output, const mho_telegraph *telegraph);
+
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction);
+
+/* What the plan of a molecule can do, and how many points each method settled. */
+void mho_method_note(mho_output *output, const char *molecule, const mho_plan *plan,
+                     const mho_point *point, size_t count);
 
 /* What `mho check` says about a molecule. */
 typedef struct {

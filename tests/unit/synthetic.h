@@ -19,7 +19,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "measure/random.h"
+#include "base/random.h"
 
 typedef struct {
   double log10_g0;      /* of the molecule */

@@ -6,7 +6,7 @@
 #include <mho/traces.h>
 
 #include "measure/decimal.h"
-#include "measure/random.h"
+#include "base/random.h"
 
 #include <stdlib.h>
 #include <sys/stat.h>
