@@ -94,16 +94,8 @@ static const option_row options[OPTION_COUNT] = {
                          "of bonds in a SMILES: formal (default) or none"},
     [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
                    "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
-<<<<<<< HEAD
     [OPT_HOPPING] = {ALL, "hopping", 0, "RULE",
                      "of C-C bonds: table (default), or bond-length from coordinates"},
-    [OPT_CSV] = {TABLES, "csv", 0, NULL, "write CSV"},
-    [OPT_JSON] = {MOLECULES, "json", 0, NULL, "write JSON"},
-    [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
-    [OPT_OUTPUT] = {ALL, "output", 'o', "PATH", "write there instead of to the screen"},
-    [OPT_QUIET] = {ALL, "quiet", 0, NULL, "no progress and no remarks"},
-    [OPT_HELP] = {ALL, "help", 'h', NULL, "this help"},
-=======
     [OPT_CSV] = {TABLES | MEASURED, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES | MEASURED, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES | MEASURED, "exact", 0, NULL, "17 digits instead of 6"},
@@ -155,7 +147,6 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
     [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
->>>>>>> main
 };
 
 enum { VERB_COUNT = sizeof verbs / sizeof *verbs };

@@ -177,7 +177,7 @@ static mho_status find_length(const mho_molecule *m, double above, double *lengt
   double(*position)[2] = malloc(((size_t)graph.points + 1) * sizeof *position);
   if (!depth || !position) status = MHO_ERR_MEMORY;
   int steps = status == MHO_OK ? count_steps(m, &graph, depth) : -1;
-  if (steps >= 0) *kind = MHO_LENGTH_IDEALISED;
+  if (steps > 0) *kind = MHO_LENGTH_IDEALISED;
   if (steps * BOND_NM > above) {
     mho_layout_kind how;
     status = mho_layout(&graph, position, &how);

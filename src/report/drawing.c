@@ -136,6 +136,9 @@ mho_status mho_drawing_make(const mho_molecule *molecule, mho_drawing *drawing,
   free(point);
   if (status != MHO_OK) return no_memory(error);
   orient(drawing);
+  for (int i = 0; i < drawing->points; i++) /* the same on every machine, no -0 */
+    for (int k = 0; k < 2; k++)
+      drawing->position[i][k] = round(drawing->position[i][k] * 1e6) / 1e6 + 0.0;
   return MHO_OK;
 }
 
