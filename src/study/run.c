@@ -180,6 +180,7 @@ static void fill_traces_table(run *r)
     mho_traces_rows(table, name, r->measured[i].traces, r->measured[i].rejected,
                     &r->measured[i].peaks);
     mho_output_note(&r->output, "traces of %s:", name);
+    mho_peaks_note(&r->output, &r->measured[i].peaks);
     mho_reading_note(&r->output, &r->measured[i].report,
                      mho_trace_floor_g0(&s->traces[i].options));
   }
@@ -230,9 +231,9 @@ static void answer_comparison(run *r)
                           a->compared > 1 ? "s" : "", a->rms_decades, pow(10, a->rms_decades),
                           SCREEN_NAME, molecule[a->largest].name, a->largest_decades));
   if (a->pairs > 0)
-    say(r, mho_print_text("Of the %d pairs that the measurement tells apart, the model puts %d in "
-                          "the measured order.",
-                          a->pairs, a->ordered));
+    say(r, mho_print_text("Of %d pair%s that the measurement tells apart, the model puts %d in the "
+                          "measured order.",
+                          a->pairs, a->pairs == 1 ? "" : "s", a->ordered));
 }
 
 static void answer_traces(run *r)
