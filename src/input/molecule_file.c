@@ -4,10 +4,10 @@
  */
 #include <mho/molecule_file.h>
 
-#include <limits.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+#include <unistd.h>
 
 #include "base/text.h"
 #include "input/molecule_node.h"
@@ -18,7 +18,7 @@
 #define COUPLING_LOW_EV 1e-9
 #define COUPLING_HIGH_EV 10.0
 
-enum { CHARGE_LIMIT = 20 };
+enum { CHARGE_LIMIT = 20, RECORD_LIMIT = 1000000000 };
 
 typedef struct {
   const mho_yaml *yaml;
@@ -402,7 +402,7 @@ static void read_structure(reader *r, const mho_yaml_node *structure)
   const char *name;
   long record = 0;
   int charge = read_charge(r);
-  mho_yaml_get_integer(r->yaml, mho_yaml_find(r->node, "record"), "record", 1, LONG_MAX, &record);
+  mho_yaml_get_integer(r->yaml, mho_yaml_find(r->node, "record"), "record", 1, RECORD_LIMIT, &record);
   if (!mho_yaml_get_text(r->yaml, structure, "structure", &name)) return;
   if (!mho_records_is_file_name(name)) {
     mho_yaml_fail(r->yaml, structure, MHO_ERR_FILE, "structure",
@@ -415,11 +415,14 @@ static void read_structure(reader *r, const mho_yaml_node *structure)
     fail_memory(r);
     return;
   }
-  mho_status status = mho_molecule_read_structure(path, record, &r->settings, charge, r->molecule,
-                                                  r->yaml->error);
-  if (status == MHO_ERR_FILE)
+  mho_status status = MHO_OK;
+  if (access(path, R_OK) != 0)
     mho_yaml_fail(r->yaml, structure, MHO_ERR_FILE, "structure",
                   "structure: '%.200s' cannot be read; paths are relative to this file", name);
+  else
+    status = mho_molecule_read_structure(path, record, &r->settings, charge, r->molecule,
+                                         r->yaml->error);
+  (void)status; /* the cause is in the document's error */
   free(path);
 }
 

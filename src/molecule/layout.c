@@ -15,6 +15,7 @@
 #include "molecule/rings.h"
 
 #define PI 3.14159265358979323846
+#define PAIR_ANGLE (PI / 5) /* of two substituents on a ring, off its bisector */
 #define NEAR 0.85     /* closer points repel */
 #define PART_GAP 1.8  /* between two parts of a drawing */
 
@@ -93,7 +94,7 @@ static mho_status place_systems(layout *l)
       continue;
     }
     if (l->kind == MHO_LAYOUT_RINGS) l->kind = MHO_LAYOUT_STRESS;
-    status = mho_stress_place(&l->links, l->scratch, count, r, l->position);
+    status = mho_stress_place(&l->links, l->scratch, count, r, false, l->position);
   }
   free(ring);
   memset(l->placed, 0, (size_t)l->graph->points);
@@ -189,7 +190,8 @@ static void grow(layout *l, int v)
     int next = l->links.next[i];
     if (l->placed[next]) continue;
     double at;
-    if (fixed > 1) at = from + gap * k / (open + 1);
+    if (fixed > 1 && open == 2 && gap > PI) at = from + gap / 2 + (2 * k - 3) * PAIR_ANGLE;
+    else if (fixed > 1) at = from + gap * k / (open + 1);
     else if (fixed == 1 && open == 1 && is_linear(l, v)) at = back + PI;
     else if (fixed == 1 && open == 1) at = back + l->turn[v] * 2 * PI / 3;
     else if (fixed == 1) at = back + 2 * PI * k / (open + 1);
@@ -311,17 +313,23 @@ static double untangle(layout *l, const int *member, int count)
   return now;
 }
 
-/* The better of the tree and of the distances. */
+/* The best of the tree, the tree relaxed by distances, and distances alone. */
 static mho_status improve(layout *l, const int *member, int count)
 {
   if (5L * count * count > l->work) return MHO_OK;
-  double now = untangle(l, member, count);
-  l->work -= 240L * count * count;
-  if (now < 1e-9 || count > STRESS_LIMIT || l->work < 0) return MHO_OK;
+  double now = untangle(l, member, count);  if (now < 1e-9 || count > STRESS_LIMIT) return MHO_OK;
   double (*tried)[2] = malloc(((size_t)l->graph->points + 1) * sizeof *tried);
   if (!tried) return MHO_ERR_MEMORY;
-  mho_status status = mho_stress_place(&l->links, member, count, &l->rings, tried);
-  if (status == MHO_OK && overlap(l, member, count, tried) < now) {
+  mho_status status = MHO_OK;
+  for (int warm = 1; warm >= 0 && status == MHO_OK && now > 1e-9; warm--) {
+    l->work -= 240L * count * count;
+    if (l->work < 0) break;
+    for (int i = 0; i < count; i++)
+      memcpy(tried[member[i]], l->position[member[i]], sizeof *tried);
+    status = mho_stress_place(&l->links, member, count, &l->rings, warm, tried);
+    double other = status == MHO_OK ? overlap(l, member, count, tried) : now;
+    if (other >= now) continue;
+    now = other;
     for (int i = 0; i < count; i++)
       memcpy(l->position[member[i]], tried[member[i]], sizeof *tried);
     if (l->kind == MHO_LAYOUT_RINGS) l->kind = MHO_LAYOUT_STRESS;

@@ -35,10 +35,11 @@ void mho_rings_clear(mho_ring_list *rings);
  * follow those in the graph (bonds and angles most), within the part of the
  * graph that they form.  Stress majorization: E. R. Gansner, Y. Koren,
  * S. North, Lect. Notes Comput. Sci. 3383, 239 (2004).  O(count^2) a round.
+ * A warm start relaxes the positions as they are.
  * Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_stress_place(const mho_neighbours *neighbours,
                                          const int *member, int count,
                                          const mho_ring_list *rings,
-                                         double (*position)[2]);
+                                         bool warm, double (*position)[2]);
 
 #endif

@@ -125,7 +125,7 @@ static void relax(stress *s, bool local)
 }
 
 mho_status mho_stress_place(const mho_neighbours *neighbours, const int *member,
-                            int count, const mho_ring_list *rings,
+                            int count, const mho_ring_list *rings, bool warm,
                             double (*position)[2])
 {
   size_t n = (size_t)count;
@@ -139,7 +139,11 @@ mho_status mho_stress_place(const mho_neighbours *neighbours, const int *member,
     for (int v = 0; v < neighbours->points; v++) s.place[v] = -1;
     for (int i = 0; i < count; i++) s.place[member[i]] = i;
     find_targets(&s);
-    start(&s);
+    if (!warm) start(&s);
+    for (int i = 0; warm && i < count; i++) {
+      s.at[i][0] = position[member[i]][0] + 0.02 * sin(7.0 * i); /* no two in one place */
+      s.at[i][1] = position[member[i]][1] + 0.02 * cos(11.0 * i);
+    }
     use_polygons(&s, rings);
     for (int round = 0; round < ROUNDS; round++) relax(&s, false);
     for (int round = 0; round < ROUNDS; round++) relax(&s, true);

@@ -116,7 +116,7 @@ static void measure(picture *p)
     }
   double wide = (p->high[0] - p->low[0]) * SCALE, high = (p->high[1] - p->low[1]) * SCALE;
   p->width = fmax(ceil(wide + 2 * MARGIN), NARROWEST);
-  if (p->marks->title) p->width = fmax(p->width, 9.5 * count_characters(p->marks->title) + 20);
+  if (p->marks->title) p->width = fmax(p->width, 10.5 * count_characters(p->marks->title) + 20);
   p->left = (p->width - wide) / 2;
   p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75;
   p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE);
@@ -487,7 +487,8 @@ static void begin(picture *p, double width, double height)
   put(p, "\" height=\"", height);
   put(p, "\" viewBox=\"0 0 ", width);
   put(p, " ", height);
-  mho_buffer_print(p->svg, "\" font-family=\"'DejaVu Sans',Verdana,sans-serif\">\n%s", hatch);
+  mho_buffer_print(p->svg, "\" font-family=\"'DejaVu Sans',Verdana,sans-serif\">\n%s",
+                   p->marks && p->marks->site_value ? hatch : "");
 }
 
 void mho_drawing_write(const mho_drawing *drawing, const mho_drawing_marks *marks,

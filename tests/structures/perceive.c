@@ -4,6 +4,7 @@
  * line, for the comparison with an outside reference.
  * perceive [alkyl=inductive|heteroatom] [alternation=none]
  *          [parameters=NAME] [levels]
+ * perceive records=FILE
  */
 #include <mho/structure.h>
 
@@ -13,6 +14,7 @@
 #include <string.h>
 
 #include "base/lapack.h"
+#include "molecule/records.h"
 
 static json_t *texts(const mho_texts *t)
 {
@@ -140,8 +142,36 @@ static void perceive(const char *text, const mho_structure_options *options, boo
   mho_molecule_clear(&molecule);
 }
 
+/* The graphs of a file of structures. */
+static int perceive_records(const char *path)
+{
+  mho_records *records;
+  mho_record record = {.number = 1};
+  if (mho_records_open(path, &records, NULL) != MHO_OK) return 2;
+  while (record.number) {
+    mho_graph graph;
+    mho_error error;
+    mho_graph_init(&graph);
+    mho_error_init(&error);
+    json_t *out = json_object();
+    if (mho_records_next(records, &graph, &record, NULL, &error) != MHO_OK)
+      json_object_set_new(out, "error", error_text(&error));
+    else if (record.number)
+      put_graph(out, &graph);
+    if (record.number) {
+      json_dumpf(out, stdout, JSON_COMPACT);
+      putchar('\n');
+    }
+    json_decref(out);
+    mho_graph_clear(&graph);
+  }
+  mho_records_close(records);
+  return 0;
+}
+
 int main(int count, char **argument)
 {
+  if (count == 2 && !strncmp(argument[1], "records=", 8)) return perceive_records(argument[1] + 8);
   mho_structure_options options;
   mho_structure_options_init(&options);
   options.contacts_optional = true;
