@@ -25,8 +25,10 @@
 #include <mho/structure.h>
 #include <mho/study.h>
 #include <mho/telegraph.h>
+#include <mho/torsion.h>
 #include <mho/traces.h>
 #include <mho/transmission.h>
+#include <mho/twist.h>
 #include <mho/version.h>
 #include <mho/warning.h>
 

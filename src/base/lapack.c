@@ -2,6 +2,7 @@
 #include "base/lapack.h"
 
 #include <math.h>
+#include <stdlib.h>
 
 #define lapack_complex_float float complex
 #define lapack_complex_double double complex
@@ -78,4 +79,23 @@ mho_status mho_eigenvalues_complex(int n, double complex *matrix,
                                    mho_error *error)
 {
   return mho_eigen_complex(n, matrix, eigenvalues, NULL, error);
+}
+
+mho_status mho_solve_complex(int n, double complex *matrix, int columns,
+                             double complex *column, bool *singular,
+                             mho_error *error)
+{
+  *singular = false;
+  mho_status status = mho_lapack_check(error);
+  if (status != MHO_OK) return status;
+  lapack_int *pivot = malloc((size_t)n * sizeof *pivot);
+  if (!pivot) return mho_fail(error, MHO_ERR_MEMORY, "base", NULL, "out of memory");
+  lapack_int info =
+      LAPACKE_zgesv(LAPACK_COL_MAJOR, n, columns, matrix, n, pivot, column, n);
+  free(pivot);
+  *singular = info > 0;
+  if (info > 0) return MHO_OK;
+  for (size_t i = 0; info == 0 && i < (size_t)n * (size_t)columns; i++)
+    if (!isfinite(creal(column[i])) || !isfinite(cimag(column[i]))) *singular = true;
+  return finish("zgesv", info, error);
 }

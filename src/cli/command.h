@@ -25,6 +25,10 @@ typedef struct {
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;
+  bool map, has_angles;
+  double angle_low_deg, angle_high_deg, at_deg;
+  int bonds;
+  const char *bond[8], *torsion;
   double window_ev;
   bool has_window;
   unsigned long seed;
@@ -35,7 +39,8 @@ typedef struct {
 /* A verb returns the exit status; causes are in error. */
 typedef int verb_function(const command *cmd, mho_error *error);
 
-verb_function command_check, command_conductance, command_transmission, command_run;
+verb_function command_check, command_conductance, command_transmission, command_twist,
+    command_run;
 
 /* Exit status that belongs to a status. */
 int exit_of(mho_status status);

@@ -6,6 +6,7 @@
 #include <mho/warning.h>
 
 #include <math.h>
+#include <math.h>
 #include <stdio.h>
 #include <string.h>
 
@@ -179,6 +180,117 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
                                        : "0",
                     window);
   }
+}
+
+static void add_transmission(mho_table *table, const mho_point *point)
+{
+  if (point->node) mho_table_node(table);
+  else mho_table_number(table, point->transmission);
+}
+
+static void add_conductance(mho_table *table, double log10_g0)
+{
+  if (isinf(log10_g0)) mho_table_node(table);
+  else mho_table_number(table, pow(10, log10_g0));
+}
+
+mho_table *mho_twist_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "transmission",
+                                        "conductance_G0"};
+  return mho_output_table(output, "twist", columns, COUNT(columns));
+}
+
+void mho_twist_row(mho_table *table, const char *molecule, const char *bond, double angle_deg,
+                   const mho_point *point, double log10_g0)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_number(table, angle_deg);
+  add_transmission(table, point);
+  add_conductance(table, log10_g0);
+}
+
+mho_table *mho_twist_map_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "energy_eV",
+                                        "transmission"};
+  return mho_output_table(output, "twist_map", columns, COUNT(columns));
+}
+
+void mho_twist_map_row(mho_table *table, const char *molecule, const char *bond,
+                       double angle_deg, double relative_energy_ev, const mho_point *point)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_number(table, angle_deg);
+  mho_table_number(table, relative_energy_ev);
+  add_transmission(table, point);
+}
+
+mho_table *mho_twist_plane_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "second_bond",
+                                        "second_angle_deg", "transmission"};
+  return mho_output_table(output, "twist_plane", columns, COUNT(columns));
+}
+
+void mho_twist_plane_row(mho_table *table, const char *molecule, const char *const bond[2],
+                         const double angle_deg[2], const mho_point *point)
+{
+  mho_table_text(table, molecule);
+  for (int k = 0; k < 2; k++) {
+    mho_table_text(table, bond[k]);
+    mho_table_number(table, angle_deg[k]);
+  }
+  add_transmission(table, point);
+}
+
+mho_table *mho_twist_average_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "torsion", "temperature_K",
+                                        "mean_cos2", "planar_G0", "motional_average_G0",
+                                        "frozen_average_G0"};
+  return mho_output_table(output, "twist_average", columns, COUNT(columns));
+}
+
+void mho_twist_average_row(mho_table *table, const char *molecule, const char *bond,
+                           const char *torsion, const mho_twist_average *average)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_text(table, torsion);
+  mho_table_number(table, average->temperature_k);
+  mho_table_number(table, average->mean_cos2);
+  add_conductance(table, average->planar_log10_g0);
+  add_conductance(table, average->motional_log10_g0);
+  mho_table_optional(table, average->has_frozen, pow(10, average->frozen_log10_g0));
+}
+
+void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
+                    const double limit_deg[2], const mho_twist_law *law)
+{
+  static const char *const reason[] = {
+      [MHO_TWIST_LAW_HOLDS] = "",
+      [MHO_TWIST_OTHER_PATH] = ": another path stays open at 90 deg",
+      [MHO_TWIST_NEAR_POLE] = ": a resonance lies near the Fermi level",
+      [MHO_TWIST_STRONG_COUPLING] = ": the coupling across the bond is not small against the "
+                                    "levels of its two sides",
+      [MHO_TWIST_SEVERAL_BONDS] = ": several bonds turn together"};
+  if (!law->has_fit) {
+    mho_output_note(output, "%s, %s: no transmission at any angle", molecule, bond);
+    return;
+  }
+  mho_output_note(output,
+                  "%s, %s: flat to within %g deg keeps 80 %% of the planar conductance, to within "
+                  "%g deg half of it",
+                  molecule, bond, limit_deg[0], limit_deg[1]);
+  mho_output_note(output,
+                  "%s, %s: T at the Fermi level goes as (cos^2 angle)^%.2f, residual %.3f decades; "
+                  "cos^2 itself %s %g deg%s",
+                  molecule, bond, law->exponent, law->residual_decades,
+                  law->reason ? "keeps 5 % only to" : "keeps 5 % to", law->holds_to_deg,
+                  reason[law->reason]);
 }
 
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

@@ -12,6 +12,7 @@
 #include <mho/nodes.h>
 #include <mho/sensitivity.h>
 #include <mho/transmission.h>
+#include <mho/twist.h>
 
 #include "report/table.h"
 
@@ -43,6 +44,27 @@ void mho_compare_row(mho_table *table, const char *molecule, const mho_compariso
 /* The result in one sentence. */
 void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
                       double window_ev);
+
+/* `bond` names the bonds that turn; log10_g0 is -INFINITY for zero. */
+mho_table *mho_twist_table(mho_output *output);
+void mho_twist_row(mho_table *table, const char *molecule, const char *bond, double angle_deg,
+                   const mho_point *point, double log10_g0);
+
+/* T(theta, E), and T of two angles at the Fermi level. */
+mho_table *mho_twist_map_table(mho_output *output);
+void mho_twist_map_row(mho_table *table, const char *molecule, const char *bond,
+                       double angle_deg, double relative_energy_ev, const mho_point *point);
+mho_table *mho_twist_plane_table(mho_output *output);
+void mho_twist_plane_row(mho_table *table, const char *molecule, const char *const bond[2],
+                         const double angle_deg[2], const mho_point *point);
+
+mho_table *mho_twist_average_table(mho_output *output);
+void mho_twist_average_row(mho_table *table, const char *molecule, const char *bond,
+                           const char *torsion, const mho_twist_average *average);
+
+/* The answer in words: how flat it must be, and how far cos^2 holds. */
+void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
+                    const double limit_deg[2], const mho_twist_law *law);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
