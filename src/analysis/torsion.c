@@ -110,7 +110,7 @@ mho_status mho_torsion_from_table(size_t count, const double *angle, const doubl
   gsl_set_error_handler_off(); /* its default aborts the program */
   int step = angle[count - 1] > 90 ? 1 : 2;
   size_t most = (size_t)(MHO_TORSION_TERMS / step) + 1;
-  size_t terms = (count + 1) / 2 < most ? (count + 1) / 2 : most;
+  size_t terms = count - 1 < most ? count - 1 : most;
   mho_status status = fit(count, angle, energy, step, terms, torsion, error);
   double miss = 0;
   for (size_t i = 0; i < count; i++)

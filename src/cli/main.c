@@ -76,7 +76,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_SAMPLES] = {TRANSMISSION | TWIST, "samples", 0, "N",
                      "that many even steps, both ends included"},
     [OPT_AT] = {TRANSMISSION | TWIST, "at", 0, "QUANTITY",
-                "one row, at this energy above the Fermi level (twist: at this angle)"},
+                "one row: an energy above the Fermi level, or an angle for twist"},
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
