@@ -21,10 +21,13 @@ typedef struct {
 
 /* How a value was found; later methods are slower and more exact. */
 typedef enum {
-  MHO_METHOD_NO_PATH,     /* no hopping joins the contacts: T = 0 */
-  MHO_METHOD_SPECTRUM,    /* sums over the levels of the bare molecule */
-  MHO_METHOD_ELIMINATION, /* Gaussian elimination in double precision */
-  MHO_METHOD_EXTENDED     /* the same in 113 bits */
+  MHO_METHOD_NO_PATH,  /* no hopping joins the contacts: T = 0 */
+  MHO_METHOD_SPECTRUM, /* sums over the levels of the bare molecule */
+  MHO_METHOD_SPARSE,   /* compiled sparse elimination in double precision */
+  MHO_METHOD_SPARSE_EXTENDED, /* the same in double-double */
+  MHO_METHOD_ELIMINATION, /* pivoted Gaussian elimination in double precision */
+  MHO_METHOD_EXTENDED,    /* the same in 113 bits */
+  MHO_METHOD_COUNT
 } mho_method;
 
 typedef struct {
@@ -45,6 +48,14 @@ typedef struct {
 
 MHO_BEGIN_DECLARATIONS
 
+/* What a plan can do for its junction and why, one line without an end, cut to
+ * the buffer's size; returns buffer. */
+MHO_API const char *mho_plan_describe(const mho_plan *plan, char *buffer,
+                                      size_t size);
+
+/* A few words for a method, as --verbose prints them; never NULL. */
+MHO_API const char *mho_method_name(mho_method method);
+
 /* Prepares a junction for many energies.  The junction may be cleared
  * afterwards.  The plan is not changed by its use: many threads may share it.
  * Errors: MHO_ERR_CONTACTS, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
@@ -64,9 +75,10 @@ MHO_API void mho_plan_free(mho_plan *plan);
 
 /* T at energy_ev[count] (relative to alpha) into point[count].
  *
- * Three methods are tried in turn, each with a bound on its own error; the
- * first that keeps max(1e-12, 64 u kappa) <= 1e-10 is taken, where kappa is
- * the relative condition of T.  States that no contact sees do not matter:
+ * Methods are tried in turn, each with a bound on its own error; the first that
+ * keeps max(1e-12, 64 u kappa) <= 1e-10 is taken, where kappa is the relative
+ * condition of T.  A plan keeps the workspace of a sweep for the next, so that
+ * only the first allocates (and those that run at the same time).  No result depends on the other energies of the call.  States that no contact sees do not matter:
  * where E - H is singular through them alone, the finite limit is returned.
  * Errors: MHO_ERR_NOT_FINITE (an energy is not finite), MHO_ERR_MEMORY. */
 MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,

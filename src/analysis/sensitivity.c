@@ -196,11 +196,12 @@ static void set_range(double *value, size_t samples, mho_sensitivity *result)
   result->error_decades = result->has_error ? 0.5 * (high - low) : 0;
 }
 
+/* Largest first; what symmetry makes equal stays in the molecule's order. */
 static int compare_rows(const void *a, const void *b)
 {
   const mho_sensitivity_row *p = a, *q = b;
-  if (p->contribution_decades != q->contribution_decades)
-    return p->contribution_decades > q->contribution_decades ? -1 : 1;
+  double x = rint(1e9 * p->contribution_decades), y = rint(1e9 * q->contribution_decades);
+  if (x != y) return x > y ? -1 : 1;
   return p->kind != q->kind ? (int)p->kind - (int)q->kind : p->index - q->index;
 }
 

@@ -20,7 +20,7 @@ typedef struct {
   const char *line; /* the whole command line, for provenance */
   mho_settings overrides;
   output_format format;
-  bool exact, quiet, poles, nodes, sensitivity;
+  bool exact, quiet, verbose, poles, nodes, sensitivity;
   const char *output; /* -o, or NULL */
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;

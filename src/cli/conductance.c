@@ -12,6 +12,8 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   if (status == MHO_OK)
     status = mho_conductance_compute(plan, s->junction.fermi_ev, s->junction.temperature_k,
                                      &options, &result, error);
+  if (status == MHO_OK && cmd->verbose)
+    mho_method_note(output, s->molecule.name, plan, &result.at_fermi, 1);
   mho_plan_free(plan);
   if (status != MHO_OK) return status;
   unsigned warnings = s->warnings | result.warnings;

@@ -59,7 +59,7 @@ typedef struct {
 enum {
   OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
-  OPT_QUIET, OPT_HELP, OPTION_COUNT
+  OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
 
 static const option_row options[OPTION_COUNT] = {
@@ -101,6 +101,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
     [OPT_OUTPUT] = {ALL, "output", 'o', "PATH", "write there instead of to the screen"},
     [OPT_QUIET] = {ALL, "quiet", 0, NULL, "no progress and no remarks"},
+    [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {ALL, "help", 'h', NULL, "this help"},
 };
 
@@ -304,6 +305,7 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
+  case OPT_VERBOSE: cmd->verbose = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
   case OPT_CSV:
   case OPT_JSON:

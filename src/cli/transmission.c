@@ -33,7 +33,7 @@ static mho_status choose_energies(const command *cmd, const subject *s, const mh
 }
 
 static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan,
-                            mho_table *table, unsigned *warnings, mho_error *error)
+                            mho_output *output, mho_table *table, unsigned *warnings, mho_error *error)
 {
   double *relative = NULL, *energy = NULL;
   mho_point *point = NULL;
@@ -54,6 +54,8 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
     if (point[i].method == MHO_METHOD_NO_PATH) *warnings |= MHO_WARN_NO_PI_PATH;
     else if (point[i].node) *warnings |= MHO_WARN_NEAR_NODE;
   }
+  if (status == MHO_OK && cmd->verbose)
+    mho_method_note(output, s->molecule.name, plan, point, count);
   free(relative);
   free(energy);
   free(point);
@@ -94,7 +96,7 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   if (status == MHO_OK)
     status = cmd->poles   ? add_poles(s, plan, table, error)
              : cmd->nodes ? add_nodes(s, plan, table, &warnings, error)
-                          : add_sweep(cmd, s, plan, table, &warnings, error);
+                          : add_sweep(cmd, s, plan, output, table, &warnings, error);
   mho_plan_free(plan);
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);

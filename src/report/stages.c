@@ -313,3 +313,19 @@ void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
   for (int i = 0; i < molecule->notes.count; i++)
     mho_output_note(output, "%s: %s", molecule->name, molecule->notes.text[i]);
 }
+
+void mho_method_note(mho_output *output, const char *molecule, const mho_plan *plan,
+                     const mho_point *point, size_t count)
+{
+  char description[512];
+  size_t settled[MHO_METHOD_COUNT] = {0};
+  for (size_t i = 0; i < count; i++) settled[point[i].method]++;
+  mho_output_note(output, "%s: methods at hand: %s", molecule,
+                  mho_plan_describe(plan, description, sizeof description));
+  for (int m = 0; m < MHO_METHOD_COUNT; m++)
+    if (settled[m])
+      mho_output_note(output,
+                      "%s: %zu of %zu energies by %s, the first whose error bound keeps the "
+                      "accuracy contract",
+                      molecule, settled[m], count, mho_method_name((mho_method)m));
+}

@@ -70,6 +70,10 @@ void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction);
 
+/* What the plan of a molecule can do, and how many points each method settled. */
+void mho_method_note(mho_output *output, const char *molecule, const mho_plan *plan,
+                     const mho_point *point, size_t count);
+
 /* What `mho check` says about a molecule. */
 typedef struct {
   const mho_molecule *molecule;

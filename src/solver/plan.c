@@ -6,8 +6,14 @@
 #include "solver/plan.h"
 
 #include <math.h>
+#include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+
+#include "solver/program.h"
+
+/* Smaller molecules are as fast without a compiled elimination. */
+enum { PROGRAM_SITES_MIN = 4 };
 
 static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
 {
@@ -173,10 +179,39 @@ static mho_status start(int sites, const mho_lead *left, const mho_lead *right,
 /* Everything that follows from entries and leads. */
 static mho_status prepare(const mho_lead *left, const mho_lead *right, mho_plan *plan)
 {
-  mho_status status = collect_channels((const mho_lead *const[]){left, right}, plan);
+  mho_status status = mho_spare_create(plan);
+  if (status == MHO_OK) status = collect_channels((const mho_lead *const[]){left, right}, plan);
   if (status == MHO_OK) status = collect_neighbours(plan);
   if (status == MHO_OK) status = find_connection(plan);
-  return status == MHO_OK ? mho_plan_order(plan) : status;
+  if (status == MHO_OK) status = mho_plan_order(plan);
+  if (status == MHO_OK && plan->sites >= PROGRAM_SITES_MIN)
+    status = mho_program_create(plan, &plan->program);
+  if (status == MHO_OK && plan->program)
+    status = mho_plan_contacts(plan, plan->program->kept_site, plan->program->kept,
+                               &plan->contacts);
+  return status;
+}
+
+mho_status mho_plan_contacts(const mho_plan *plan, const int *site, int count,
+                             mho_plan **contacts)
+{
+  size_t n = (size_t)count, m = (size_t)plan->channels;
+  mho_plan *p = *contacts = calloc(1, sizeof *p);
+  if (!p) return MHO_ERR_MEMORY;
+  p->sites = count;
+  p->left = plan->left;
+  p->right = plan->right;
+  p->channels = plan->channels;
+  p->coupling_ev = malloc(m * sizeof(double));
+  p->shift_ev = malloc(m * sizeof(double));
+  p->vector = malloc(m * n * sizeof(double));
+  if (!p->coupling_ev || !p->shift_ev || !p->vector) return MHO_ERR_MEMORY;
+  memcpy(p->coupling_ev, plan->coupling_ev, m * sizeof(double));
+  memcpy(p->shift_ev, plan->shift_ev, m * sizeof(double));
+  for (size_t c = 0; c < m; c++)
+    for (size_t i = 0; i < n; i++)
+      p->vector[c * n + i] = plan->vector[c * (size_t)plan->sites + (size_t)site[i]];
+  return collect_support(p);
 }
 
 static mho_status finish(mho_status status, mho_plan **plan, mho_error *error)
@@ -245,6 +280,9 @@ void mho_plan_free(mho_plan *plan)
   free(plan->place);
   free(plan->level_ev);
   free(plan->amplitude);
+  mho_program_free(plan->program);
+  mho_plan_free(plan->contacts);
+  mho_spare_free(plan);
   free(plan);
 }
 
@@ -253,4 +291,23 @@ int mho_plan_sites(const mho_plan *plan) { return plan->sites; }
 int mho_plan_channels(const mho_plan *plan)
 {
   return plan->left < plan->right ? plan->left : plan->right;
+}
+
+const char *mho_plan_describe(const mho_plan *plan, char *buffer, size_t size)
+{
+  char compiled[160] = "no compiled elimination, which would fill in";
+  if (plan->program)
+    snprintf(compiled, sizeof compiled,
+             "compiled elimination of %zu sites with %d numbers alive at once",
+             plan->program->steps, plan->program->slots);
+  char band[160];
+  if (plan->band)
+    snprintf(band, sizeof band, "pivoting within a band of %zu, of %d sites", plan->band,
+             plan->sites);
+  else snprintf(band, sizeof band, "full pivoting, as the matrix is small or has no narrow band");
+  snprintf(buffer, size, "%s; %s; %s",
+           plan->level_ev ? "sum over levels, as the molecule is diagonalised"
+                          : "no sum over levels, as only the non-zero entries are given",
+           compiled, band);
+  return buffer;
 }

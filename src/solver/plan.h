@@ -15,6 +15,8 @@
 #include <mho/gradient.h>
 #include <mho/transmission.h>
 
+#include "solver/quad.h"
+
 struct mho_plan {
   int sites, left, right, channels; /* channels = left + right */
   bool connected;
@@ -32,6 +34,10 @@ struct mho_plan {
   double *vector;                 /* [channels][sites] */
   double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
+  struct mho_program *program;    /* NULL: does not pay */
+  mho_plan *contacts;             /* of the program's kept sites */
+  mho_method first;               /* methods before it are left out (tests) */
+  struct mho_spare *spare;        /* a workspace that no sweep uses now */
 };
 
 /* Unit roundoff of a double. */
@@ -52,14 +58,20 @@ typedef struct {
 /* Order that makes the band narrow, over plan->neighbour; order.c. */
 MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
 
-/* Sum over the levels of the bare molecule; spectrum.c. */
-void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
-                           mho_estimate *estimate);
+/* A plan of the contacts' sites alone, site[count] of this one. */
+MHO_MUST_USE mho_status mho_plan_contacts(const mho_plan *plan, const int *site, int count,
+                                          mho_plan **contacts);
+
+/* The workspace of the last sweep waits for the next one, whichever thread that
+ * is; sweep.c.  Errors: MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_spare_create(mho_plan *plan);
+void mho_spare_free(mho_plan *plan);
 
 /* Gaussian elimination in double and in 113 bits; elimination.inc.  The
  * workspace belongs to one thread; create returns NULL without memory.
  * differentiate follows an evaluate that found T, fills all derivatives and
  * returns an estimate of the error of the sum of all p dlnT/dp. */
+typedef struct mho_program mho_program;
 typedef struct mho_elimination_double mho_elimination_double;
 typedef struct mho_elimination_quad mho_elimination_quad;
 
@@ -69,6 +81,9 @@ void mho_elimination_evaluate_double(const mho_plan *plan,
                                      mho_elimination_double *workspace,
                                      double energy_ev, mho_estimate *estimate);
 
+void mho_elimination_reduced_double(const mho_plan *contacts, mho_elimination_double *workspace,
+                                const double *value, double *adjoint,
+                                mho_estimate *estimate);
 double mho_elimination_differentiate_double(const mho_plan *plan,
                                         mho_elimination_double *workspace,
                                         double energy_ev, double relative_error,
@@ -80,6 +95,9 @@ void mho_elimination_evaluate_quad(const mho_plan *plan,
                                    mho_elimination_quad *workspace,
                                    double energy_ev, mho_estimate *estimate);
 
+void mho_elimination_reduced_quad(const mho_plan *contacts, mho_elimination_quad *workspace,
+                                const mho_quad *value, double *adjoint,
+                                mho_estimate *estimate);
 double mho_elimination_differentiate_quad(const mho_plan *plan,
                                         mho_elimination_quad *workspace,
                                         double energy_ev, double relative_error,

@@ -19,15 +19,9 @@
 #include <complex.h>
 #include <math.h>
 
-#include "solver/plan.h"
+#include "solver/spectrum.h"
 
 enum { M = SPECTRUM_CHANNELS_MAX };
-
-#define EIGEN_CONSTANT 16
-#define SUM_CONSTANT 8
-
-/* Nearer to a level than this (times ||H||) first order says nothing. */
-#define NEAREST_LEVEL 1e-9
 
 typedef struct {
   double scale_ev; /* ||H|| + |E| */
@@ -44,7 +38,7 @@ static bool sum_levels(const mho_plan *plan, double energy_ev, sums *t)
     for (int b = 0; b <= a; b++) t->f[a][b] = t->f_size[a][b] = t->s[a][b] = 0;
   for (int k = 0; k < plan->sites; k++) {
     double distance = energy_ev - plan->level_ev[k];
-    if (fabs(distance) < NEAREST_LEVEL * plan->norm_ev) return false;
+    if (fabs(distance) < SPECTRUM_NEAREST * plan->norm_ev) return false;
     double inverse = 1.0 / distance;
     const double *w = plan->amplitude + (size_t)k * (size_t)m;
     for (int a = 0; a < m; a++)
@@ -120,8 +114,8 @@ static double element_error(const mho_plan *plan, const sums *t,
       double solve = cabs(t->g[b][p]) * ((p == q) + sigma_size[p] * t->f_size[p][q]);
       rounding += (left + solve) * cabs(t->k[q][a]);
     }
-  return SUM_CONSTANT * UNIT_ROUNDOFF * rounding +
-         EIGEN_CONSTANT * UNIT_ROUNDOFF * t->scale_ev * norm[a] * norm[b];
+  return SPECTRUM_SUM_CONSTANT * UNIT_ROUNDOFF * rounding +
+         SPECTRUM_EIGEN_CONSTANT * UNIT_ROUNDOFF * t->scale_ev * norm[a] * norm[b];
 }
 
 void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,

@@ -3,8 +3,12 @@
  * The ladder of methods: the first that keeps the accuracy contract is taken.
  */
 #include <math.h>
+#include <stdatomic.h>
+#include <stdlib.h>
 
 #include "solver/plan.h"
+#include "solver/program.h"
+#include "solver/spectrum.h"
 
 /* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
  * is done again in extended precision. */
@@ -12,11 +16,62 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
-/* What one thread needs besides the plan; the extended one only on demand. */
+/* Room for what a first-order bound leaves out. */
+#define SECOND_ORDER 1.5
+
+enum { KEPT_SQUARE = PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX };
+
+/* What one thread needs besides the plan; all but the batch only on demand. */
 typedef struct {
-  mho_elimination_double *plain;
-  mho_elimination_quad *extended;
+  mho_elimination_double *plain, *reduced;
+  mho_elimination_quad *extended, *reduced_extended;
+  mho_program_trace trace;
+  double energy_ev[PROGRAM_LANES];
+  size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
+  size_t lanes;
 } workspace;
+
+struct mho_spare {
+  _Atomic(workspace *) waiting;
+};
+
+static void workspace_free(workspace *work)
+{
+  if (!work) return;
+  mho_elimination_free_double(work->plain);
+  mho_elimination_free_double(work->reduced);
+  mho_elimination_free_quad(work->extended);
+  mho_elimination_free_quad(work->reduced_extended);
+  mho_program_trace_clear(&work->trace);
+  free(work);
+}
+
+mho_status mho_spare_create(mho_plan *plan)
+{
+  plan->spare = malloc(sizeof *plan->spare);
+  if (!plan->spare) return MHO_ERR_MEMORY;
+  atomic_init(&plan->spare->waiting, NULL);
+  return MHO_OK;
+}
+
+void mho_spare_free(mho_plan *plan)
+{
+  if (plan->spare) workspace_free(atomic_load(&plan->spare->waiting));
+  free(plan->spare);
+}
+
+/* The waiting workspace, or a new one; several sweeps at a time have one each. */
+static workspace *workspace_take(const mho_plan *plan)
+{
+  workspace *work = atomic_exchange(&plan->spare->waiting, NULL);
+  return work ? work : calloc(1, sizeof *work);
+}
+
+/* A workspace of a sweep that failed may hold anything and is not kept. */
+static void workspace_return(const mho_plan *plan, workspace *work, bool keep)
+{
+  workspace_free(keep ? atomic_exchange(&plan->spare->waiting, work) : work);
+}
 
 static void set_point(const mho_plan *plan, const mho_estimate *estimate,
                       mho_method method, mho_point *point)
@@ -53,27 +108,91 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
   if (!isfinite(point->relative_error)) point->relative_error = 1.0;
 }
 
-static mho_status evaluate(const mho_plan *plan, workspace *work,
-                           double energy_ev, mho_point *point)
+/* T of one lane from its Schur complement: in double, where the low parts count
+ * as error, and if that is not good enough in 113 bits; sets the adjoints. */
+static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t lane,
+                                bool extended, mho_estimate *estimate)
 {
-  mho_estimate estimate;
-  if (!plan->connected) {
-    *point = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
-    return MHO_OK;
+  const mho_program *program = plan->program;
+  size_t n = (size_t)program->kept;
+  double value[KEPT_SQUARE], low[KEPT_SQUARE], adjoint[KEPT_SQUARE] = {0};
+  for (size_t k = 0; k < n * n; k++) {
+    int slot = program->kept_slot[k / n][k % n];
+    size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
+    value[k] = slot < 0 ? 0 : work->trace.high[at];
+    low[k] = slot < 0 || !extended ? 0 : work->trace.low[at];
   }
-  if (plan->level_ev) {
-    mho_spectrum_evaluate(plan, energy_ev, &estimate);
-    if (keeps_contract(&estimate)) {
-      set_point(plan, &estimate, MHO_METHOD_SPECTRUM, point);
-      return MHO_OK;
+  if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
+  if (!work->reduced) return MHO_ERR_MEMORY;
+  mho_elimination_reduced_double(plan->contacts, work->reduced, value, adjoint, estimate);
+  for (size_t k = 0; k < n * n; k++)
+    if (k % n <= k / n) estimate->relative_error += fabs(adjoint[k] * low[k]);
+  if (extended && !keeps_contract(estimate)) {
+    mho_quad exact[KEPT_SQUARE];
+    for (size_t k = 0; k < n * n; k++) exact[k] = (mho_quad)value[k] + low[k];
+    if (!work->reduced_extended)
+      work->reduced_extended = mho_elimination_create_quad(plan->contacts);
+    if (!work->reduced_extended) return MHO_ERR_MEMORY;
+    mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, adjoint, estimate);
+  }
+  for (size_t k = 0; k < n * n; k++) {
+    int slot = program->kept_slot[k / n][k % n];
+    if (slot >= 0 && k % n <= k / n)
+      work->trace.adjoint[(size_t)slot * PROGRAM_LANES + lane] = adjoint[k];
+  }
+  return MHO_OK;
+}
+
+/* Runs the lanes that wait and settles those that keep the contract; the
+ * others stay, moved together. */
+static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
+                              mho_point *point)
+{
+  mho_program_trace *trace = &work->trace;
+  if (!work->lanes) return MHO_OK;
+  for (size_t l = work->lanes; l < PROGRAM_LANES; l++) work->energy_ev[l] = work->energy_ev[0];
+  if (!trace->high && mho_program_trace_create(plan->program, trace) != MHO_OK)
+    return MHO_ERR_MEMORY;
+  (extended ? mho_program_forward_extended : mho_program_forward_double)(
+      plan->program, work->energy_ev, plan->norm_ev, trace);
+  mho_estimate estimate[PROGRAM_LANES];
+  for (size_t l = 0; l < PROGRAM_LANES; l++) {
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (l < work->lanes && !trace->broken[l] &&
+        reduced_point(plan, work, l, extended, &estimate[l]) != MHO_OK)
+      return MHO_ERR_MEMORY;
+  }
+  mho_program_backward(plan->program, work->energy_ev,
+                       extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE, trace);
+  size_t left = 0;
+  for (size_t l = 0; l < work->lanes; l++) {
+    estimate[l].kappa = trace->kappa[l];
+    estimate[l].relative_error += SECOND_ORDER * trace->error[l];
+    if (keeps_contract(&estimate[l])) {
+      set_point(plan, &estimate[l], extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
+                &point[work->at[l]]);
+    } else {
+      work->energy_ev[left] = work->energy_ev[l];
+      work->at[left++] = work->at[l];
     }
   }
-  if (!work->plain) work->plain = mho_elimination_create_double(plan);
-  if (!work->plain) return MHO_ERR_MEMORY;
-  mho_elimination_evaluate_double(plan, work->plain, energy_ev, &estimate);
-  if (keeps_contract(&estimate)) {
-    set_point(plan, &estimate, MHO_METHOD_ELIMINATION, point);
-    return MHO_OK;
+  work->lanes = left;
+  return MHO_OK;
+}
+
+/* One energy by pivoted elimination, in double and then in 113 bits. */
+static mho_status eliminate(const mho_plan *plan, workspace *work, double energy_ev,
+                            mho_point *point)
+{
+  mho_estimate estimate;
+  if (plan->first <= MHO_METHOD_ELIMINATION) {
+    if (!work->plain) work->plain = mho_elimination_create_double(plan);
+    if (!work->plain) return MHO_ERR_MEMORY;
+    mho_elimination_evaluate_double(plan, work->plain, energy_ev, &estimate);
+    if (keeps_contract(&estimate)) {
+      set_point(plan, &estimate, MHO_METHOD_ELIMINATION, point);
+      return MHO_OK;
+    }
   }
   if (!work->extended) work->extended = mho_elimination_create_quad(plan);
   if (!work->extended) return MHO_ERR_MEMORY;
@@ -82,20 +201,93 @@ static mho_status evaluate(const mho_plan *plan, workspace *work,
   return MHO_OK;
 }
 
+/* The lanes that wait, through all methods after the sum over levels. */
+static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point)
+{
+  mho_status status = MHO_OK;
+  if (plan->program && plan->first <= MHO_METHOD_SPARSE)
+    status = run_program(plan, work, false, point);
+  if (status == MHO_OK && plan->program && plan->first <= MHO_METHOD_SPARSE_EXTENDED)
+    status = run_program(plan, work, true, point);
+  for (size_t l = 0; status == MHO_OK && l < work->lanes; l++)
+    status = eliminate(plan, work, work->energy_ev[l], &point[work->at[l]]);
+  work->lanes = 0;
+  return status;
+}
+
+/* Takes an estimate of the sum over levels if it is good; else the energy waits
+ * in a lane. */
+static mho_status take_or_wait(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
+                               double energy_ev, size_t index, mho_point *point)
+{
+  if (keeps_contract(estimate)) {
+    set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
+    return MHO_OK;
+  }
+  work->energy_ev[work->lanes] = energy_ev;
+  work->at[work->lanes++] = index;
+  return work->lanes == PROGRAM_LANES ? settle(plan, work, point) : MHO_OK;
+}
+
+/* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
+static mho_status evaluate(const mho_plan *plan, workspace *work, const double *energy_ev,
+                           size_t first, size_t count, mho_point *point)
+{
+  mho_estimate estimate[SPECTRUM_LANES];
+  double lane[SPECTRUM_LANES];
+  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM;
+  bool pair = plan->left == 1 && plan->right == 1;
+  for (size_t l = 0; l < SPECTRUM_LANES; l++) {
+    lane[l] = energy_ev[first + (l < count ? l : 0)];
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
+  }
+  if (levels && pair) {
+    mho_spectrum_evaluate_pair(plan, lane, estimate);
+    for (size_t l = 0; l < count; l++)
+      estimate[l].log10_transmission = log10(estimate[l].transmission);
+  }
+  mho_status status = MHO_OK;
+  for (size_t l = 0; status == MHO_OK && l < count; l++)
+    status = take_or_wait(plan, work, &estimate[l], lane[l], first + l, point);
+  return status;
+}
+
+static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+                        const double *energy_ev, mho_point *point)
+{
+  mho_status status = MHO_OK;
+  for (size_t i = 0; !plan->connected && i < count; i++)
+    point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
+  if (!plan->connected) return MHO_OK;
+  for (size_t i = 0; status == MHO_OK && i < count; i += SPECTRUM_LANES)
+    status = evaluate(plan, work, energy_ev, i,
+                      count - i < SPECTRUM_LANES ? count - i : SPECTRUM_LANES, point);
+  return status == MHO_OK ? settle(plan, work, point) : status;
+}
+
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
                                   const double *energy_ev, mho_point *point,
                                   mho_error *error)
 {
-  workspace work = {0};
-  mho_status status = MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < count; i++) {
+  for (size_t i = 0; i < count; i++)
     if (!isfinite(energy_ev[i]))
-      status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
-                        "energy %zu is not a finite number", i);
-    else if (evaluate(plan, &work, energy_ev[i], &point[i]) != MHO_OK)
-      status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  }
-  mho_elimination_free_double(work.plain);
-  mho_elimination_free_quad(work.extended);
-  return status;
+      return mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "energy",
+                      "energy %zu is not a finite number", i);
+  workspace *work = workspace_take(plan);
+  mho_status status = work ? sweep(plan, work, count, energy_ev, point) : MHO_ERR_MEMORY;
+  if (work) workspace_return(plan, work, status == MHO_OK);
+  return status == MHO_OK ? MHO_OK : mho_fail(error, status, "solver", NULL, "out of memory");
+}
+
+const char *mho_method_name(mho_method method)
+{
+  static const char *const name[MHO_METHOD_COUNT] = {
+      [MHO_METHOD_NO_PATH] = "no path joins the contacts",
+      [MHO_METHOD_SPECTRUM] = "sum over levels",
+      [MHO_METHOD_SPARSE] = "compiled sparse elimination",
+      [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_ELIMINATION] = "pivoted elimination",
+      [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};
+  return method >= 0 && method < MHO_METHOD_COUNT ? name[method] : "unknown";
 }

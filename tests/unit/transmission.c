@@ -5,6 +5,8 @@
  */
 #include "junctions.h"
 
+#include "solver/spectrum.h"
+
 /* xorshift64: G. Marsaglia, J. Stat. Softw. 8, 14 (2003). */
 static int random_below(unsigned long long *state, int n)
 {
@@ -58,7 +60,7 @@ static double log10_of_text(const char *text)
 }
 
 typedef struct {
-  int points, nodes, beyond, method[4];
+  int points, nodes, beyond, method[MHO_METHOD_COUNT];
   double worst_fraction;
 } tally;
 
@@ -147,9 +149,10 @@ static void check_junctions(bool banded)
     raw_clear(&turned);
   }
   json_decref(root);
-  print_message("%d points: spectrum %d, elimination %d, extended %d; %d nodes, %d with kappa "
+  print_message("%d points: spectrum %d, sparse %d and %d, elimination %d, extended %d; %d nodes, %d with kappa "
                 "> 1e20; worst %.2g of what is allowed\n",
-                count.points, count.method[1], count.method[2], count.method[3], count.nodes,
+                count.points, count.method[1], count.method[2], count.method[3], count.method[4],
+                count.method[5], count.nodes,
                 count.beyond, count.worst_fraction);
   assert_true(count.points > 1000 && count.beyond * 20 < count.points);
   for (int method = 1; method < 4; method++) assert_true(count.method[method] > 20);
@@ -195,12 +198,16 @@ static void claimed_errors_hold_for_larger_molecules(void **unused)
       /* Half of the energies next to a level. */
       double energy = -6 + 0.012 * random_below(&state, 1000);
       if (k % 2) energy = plan->level_ev[random_below(&state, r.sites)] * (1 + 1e-9 * (k - 3));
-      mho_estimate reference, estimate[2];
+      mho_estimate reference, estimate[3], lane[SPECTRUM_LANES];
+      double energies[SPECTRUM_LANES];
       mho_elimination_evaluate_quad(plan, exact, energy, &reference);
       mho_elimination_evaluate_double(plan, plain, energy, &estimate[0]);
       mho_spectrum_evaluate(plan, energy, &estimate[1]);
+      for (int l = 0; l < SPECTRUM_LANES; l++) energies[l] = l == k ? energy : 0.1 * l;
+      mho_spectrum_evaluate_pair(plan, energies, lane);
+      estimate[2] = lane[k];
       if (!(reference.relative_error < 1e-14) || !reference.first_order) continue;
-      for (int m = 0; m < 2; m++) {
+      for (int m = 0; m < 3; m++) {
         if (!(estimate[m].relative_error < 0.1) || !estimate[m].first_order) continue;
         double difference =
             fabs(estimate[m].transmission / reference.transmission - 1);

@@ -1,0 +1,17 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * A function compiled for several processors, the best chosen when the program
+ * starts.  Without fast-math or contraction all of them round alike.
+ */
+#ifndef MHOLECULE_SOLVER_PROCESSOR_H
+#define MHOLECULE_SOLVER_PROCESSOR_H
+
+#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__) &&             \
+    !defined(__SANITIZE_ADDRESS__)
+#define FOR_EVERY_PROCESSOR                                                    \
+  __attribute__((target_clones("arch=x86-64-v4", "arch=x86-64-v3", "default")))
+#else
+#define FOR_EVERY_PROCESSOR
+#endif
+
+#endif

@@ -1,0 +1,76 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Elimination of a sparse H compiled once: every site that no contact touches
+ * is eliminated in a fixed order, in real arithmetic, for many energies at a
+ * time, without pivoting.  What is left is the Schur complement on the contacts'
+ * sites.  Going back over the program gives the derivative of ln T to every
+ * number that arose, and with it the condition of T and a bound on its error.
+ */
+#ifndef MHOLECULE_SOLVER_PROGRAM_H
+#define MHOLECULE_SOLVER_PROGRAM_H
+
+#include "solver/plan.h"
+
+enum { PROGRAM_LANES = 16, PROGRAM_KEPT_MAX = 8 };
+
+typedef struct {
+  int slot, site; /* site >= 0: E - value, the diagonal; else -value */
+  double value;
+} mho_program_load;
+
+/* One pivot: loads first; then row / d; then all pairs of the row. */
+typedef struct {
+  int loads, row, pivot; /* numbers of loads and of row entries; slot of d */
+} mho_program_step;
+
+struct mho_program {
+  mho_program_step *step;
+  size_t steps;
+  mho_program_load *load;
+  size_t loads;
+  int *slot; /* a step's row slots, then a target for each pair; ~slot: new */
+  size_t slots_listed;
+  int slots; /* numbers alive at once */
+  int kept;  /* sites of the contacts */
+  int kept_site[PROGRAM_KEPT_MAX];
+  int kept_slot[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
+  int tail_loads; /* that no pivot asked for */
+  size_t taped;   /* numbers a lane puts on the tape */
+};
+
+/* *program is NULL where elimination in sparse form does not pay.
+ * Errors: MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_program_create(const mho_plan *plan, mho_program **program);
+void mho_program_free(mho_program *program);
+
+/* A batch of energies in work.  value = high + low of every slot, and the slots'
+ * adjoint dlnT/dvalue, [slots][lanes]; the tape keeps what the way back needs. */
+typedef struct {
+  double *high, *low, *adjoint, *tape;
+  bool broken[PROGRAM_LANES];   /* a pivot was too small for these digits */
+  double kappa[PROGRAM_LANES];  /* sum of |p dlnT/dp| over H and E */
+  double error[PROGRAM_LANES];  /* of ln T, from rounding in the elimination */
+} mho_program_trace;
+
+MHO_MUST_USE mho_status mho_program_trace_create(const mho_program *program,
+                                                 mho_program_trace *trace);
+void mho_program_trace_clear(mho_program_trace *trace);
+
+/* Eliminates at energy_ev[PROGRAM_LANES], in double or in double-double; the
+ * kept slots then hold the Schur complement.  norm_ev is that of H. */
+void mho_program_forward_double(const mho_program *program, const double *energy_ev,
+                                double norm_ev, mho_program_trace *trace);
+void mho_program_forward_extended(const mho_program *program, const double *energy_ev,
+                                  double norm_ev, mho_program_trace *trace);
+
+/* From the adjoints of the kept slots (all others zero), which are used up, to
+ * kappa and error; roundoff is that of the numbers' subtraction. */
+void mho_program_backward(const mho_program *program, const double *energy_ev,
+                          double roundoff, mho_program_trace *trace);
+
+/* Roundoff of double, and of the double-double operations used: at most 6 2^-106
+ * (M. Joldes, J.-M. Muller and V. Popescu, ACM Trans. Math. Softw. 44, 15 (2017)). */
+#define ROUNDOFF_DOUBLE UNIT_ROUNDOFF
+#define ROUNDOFF_EXTENDED 0x1p-103
+
+#endif

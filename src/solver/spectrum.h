@@ -1,0 +1,26 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * Sums over the levels of the bare molecule; spectrum.c says how far they hold.
+ */
+#ifndef MHOLECULE_SOLVER_SPECTRUM_H
+#define MHOLECULE_SOLVER_SPECTRUM_H
+
+#include "solver/plan.h"
+
+enum { SPECTRUM_LANES = 16 };
+
+#define SPECTRUM_EIGEN_CONSTANT 16
+#define SPECTRUM_SUM_CONSTANT 8
+
+/* Nearer to a level than this (times ||H||) first order says nothing. */
+#define SPECTRUM_NEAREST 1e-9
+
+/* At one energy, for any number of channels up to SPECTRUM_CHANNELS_MAX. */
+void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
+                           mho_estimate *estimate);
+
+/* At energy_ev[SPECTRUM_LANES] for one channel a contact; log10 is left out. */
+void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
+                                mho_estimate *estimate);
+
+#endif
