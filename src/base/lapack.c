@@ -13,6 +13,9 @@
 void openblas_set_num_threads(int threads);
 int openblas_get_parallel(void);
 char *openblas_get_config(void);
+void dgemm_(const char *, const char *, const lapack_int *, const lapack_int *, const lapack_int *,
+            const double *, const double *, const lapack_int *, const double *, const lapack_int *,
+            const double *, double *, const lapack_int *);
 
 enum { OPENBLAS_SERIAL = 0 };
 
@@ -98,4 +101,13 @@ mho_status mho_solve_complex(int n, double complex *matrix, int columns,
   for (size_t i = 0; info == 0 && i < (size_t)n * (size_t)columns; i++)
     if (!isfinite(creal(column[i])) || !isfinite(cimag(column[i]))) *singular = true;
   return finish("zgesv", info, error);
+}
+
+mho_status mho_multiply_transposed(int n, const double *a, const double *b, double *product,
+                                   mho_error *error)
+{
+  const double one = 1, zero = 0;
+  mho_status status = mho_lapack_check(error);
+  if (status == MHO_OK) dgemm_("N", "T", &n, &n, &n, &one, a, &n, b, &n, &zero, product, &n);
+  return status;
 }

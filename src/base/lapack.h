@@ -42,6 +42,10 @@ MHO_MUST_USE mho_status mho_solve_complex(int n, double complex *matrix, int col
                                           double complex *column, bool *singular,
                                           mho_error *error);
 
+/* product = a b^T, all n x n column-major. */
+MHO_MUST_USE mho_status mho_multiply_transposed(int n, const double *a, const double *b,
+                                                double *product, mho_error *error);
+
 /* One line that names the linear algebra in use, for `mho --version`. */
 const char *mho_lapack_description(void);
 

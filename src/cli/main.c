@@ -10,8 +10,8 @@
 #include "base/text.h"
 #include "cli/command.h"
 
-enum { CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, TWIST = 16 };
-enum { TABLES = CONDUCTANCE | TRANSMISSION | TWIST, MOLECULES = CHECK | TABLES, ALL = MOLECULES | RUN };
+enum { CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, TWIST = 16, INTERFERENCE = 32 };
+enum { TABLES = CONDUCTANCE | TRANSMISSION | TWIST | INTERFERENCE, MOLECULES = CHECK | TABLES, ALL = MOLECULES | RUN };
 
 typedef struct {
   int bit;
@@ -40,6 +40,12 @@ static const verb verbs[] = {
      "and of log G (frozen: every junction keeps its angle).  Two --bond and --map\n"
      "give T of both angles.",
      command_twist},
+    {INTERFERENCE, "interference", "MOLECULE...", "where the linkers should go: all pairs of sites",
+     "T between every two sites that a linker may sit on, at the Fermi level and with\n"
+     "one coupling: the bare Green's function with its sign, magic integers of\n"
+     "benzenoids, what kind of pair it is, its nearest node, and how far the Fermi\n"
+     "level may move before the verdict turns.  Needs no contacts.",
+     command_interference},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
@@ -57,7 +63,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_RULES, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
@@ -73,6 +79,10 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_TORSION] = {TWIST, "torsion", 0, "POTENTIAL",
                      "biphenyl, tolane ..., two barriers '6 kJ/mol, 6.5 kJ/mol' at 0 and 90 deg, "
                      "terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
+    [OPT_RULES] = {INTERFERENCE, "rules", 0, NULL,
+                   "rules of thumb beside the exact result, and where they fail"},
+    [OPT_EVERY_SITE] = {INTERFERENCE, "every-site", 0, NULL,
+                        "also sites with three bonds, which no linker can sit on"},
     [OPT_SAMPLES] = {TRANSMISSION | TWIST, "samples", 0, "N",
                      "that many even steps, both ends included"},
     [OPT_AT] = {TRANSMISSION | TWIST, "at", 0, "QUANTITY",
@@ -288,6 +298,8 @@ static int read_option(command *cmd, int which, const char *text)
     return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", 360, &cmd->angle_low_deg,
                       &cmd->angle_high_deg);
   case OPT_BOND: return read_bond(cmd, text);
+  case OPT_RULES: cmd->rules = true; return EXIT_DONE;
+  case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
   case OPT_MAP: cmd->map = true; return EXIT_DONE;
   case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;
   case OPT_SAMPLES: return read_samples(cmd, text);

@@ -8,6 +8,7 @@
 #include <math.h>
 #include <math.h>
 #include <stdio.h>
+#include <stdlib.h>
 #include <string.h>
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
@@ -291,6 +292,103 @@ void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
                   molecule, bond, law->exponent, law->residual_decades,
                   law->reason ? "keeps 5 % only to" : "keeps 5 % to", law->holds_to_deg,
                   reason[law->reason]);
+}
+
+mho_table *mho_interference_table(mho_output *output)
+{
+  static const char *const columns[] = {
+      "molecule", "site_i", "site_j", "transmission", "green_per_eV", "magic", "class", "node_eV",
+      "overturning_shift_eV"};
+  return mho_output_table(output, "interference", columns, COUNT(columns));
+}
+
+static bool is_node(const mho_pair *pair)
+{
+  return pair->kind == MHO_PAIR_NODE_SYMMETRY || pair->kind == MHO_PAIR_NODE_CANCELLATION ||
+         pair->kind == MHO_PAIR_NO_PATH;
+}
+
+static void begin_pair(mho_table *table, const mho_molecule *molecule, const mho_pair *pair)
+{
+  mho_table_text(table, molecule->name);
+  for (int end = 0; end < 2; end++) mho_table_text(table, molecule->site[pair->site[end]].id);
+}
+
+/* A decimal integer as one where it fits, else as its digits. */
+static void add_magic(mho_table *table, const char *magic)
+{
+  enum { DIGITS_OF_LONG = 18 };
+  if (!magic) mho_table_empty(table);
+  else if (strlen(magic) <= DIGITS_OF_LONG) mho_table_integer(table, strtol(magic, NULL, 10));
+  else mho_table_text(table, magic);
+}
+
+void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
+                           const mho_interference *map)
+{
+  for (size_t p = 0; p < map->count; p++) {
+    const mho_pair *pair = &map->pair[p];
+    begin_pair(table, molecule, pair);
+    if (is_node(pair)) mho_table_node(table);
+    else mho_table_number(table, pair->transmission);
+    mho_table_optional(table, pair->has_green, pair->green_per_ev);
+    add_magic(table, pair->magic);
+    mho_table_text(table, mho_pair_word(pair->kind));
+    mho_table_optional(table, pair->has_node, pair->node_ev);
+    mho_table_optional(table, pair->has_shift, pair->overturning_shift_ev);
+  }
+}
+
+mho_table *mho_rules_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "site_i", "site_j", "class", "starring",
+                                        "orbital", "cross_conjugation", "disagreement"};
+  return mho_output_table(output, "rules", columns, COUNT(columns));
+}
+
+enum { RULES = 3 };
+
+static const char *const rule_name[RULES] = {"starring", "orbital", "cross-conjugation"};
+
+static mho_rule_verdict rule_of(const mho_pair *pair, int rule)
+{
+  return rule == 0 ? pair->starring : rule == 1 ? pair->orbital : pair->cross_conjugation;
+}
+
+void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map)
+{
+  static const char *const verdict[] = {
+      [MHO_RULE_SILENT] = NULL, [MHO_RULE_CONDUCTS] = "conducts", [MHO_RULE_NODE] = "node"};
+  for (size_t p = 0; p < map->count; p++) {
+    const mho_pair *pair = &map->pair[p];
+    char against[80] = "";
+    begin_pair(table, molecule, pair);
+    mho_table_text(table, mho_pair_word(pair->kind));
+    for (int r = 0; r < RULES; r++) {
+      const char *word = verdict[rule_of(pair, r)];
+      if (word) mho_table_text(table, word);
+      else mho_table_empty(table);
+      if (!mho_pair_disagrees(pair, rule_of(pair, r))) continue;
+      size_t used = strlen(against);
+      snprintf(against + used, sizeof against - used, "%s%s", used ? " " : "", rule_name[r]);
+    }
+    if (against[0]) mho_table_text(table, against);
+    else mho_table_empty(table);
+  }
+}
+
+void mho_rules_note(mho_output *output, const mho_molecule *molecule,
+                    const mho_interference *map)
+{
+  for (int r = 0; r < RULES; r++) {
+    size_t wrong = 0, said = 0;
+    for (size_t p = 0; p < map->count; p++) {
+      said += rule_of(&map->pair[p], r) != MHO_RULE_SILENT;
+      wrong += mho_pair_disagrees(&map->pair[p], rule_of(&map->pair[p], r));
+    }
+    mho_output_note(output, "%s: the %s rule contradicts the exact result for %zu of the %zu pairs "
+                            "it speaks of", molecule->name, rule_name[r], wrong, said);
+  }
 }
 
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

@@ -8,6 +8,7 @@
 
 #include <mho/compare.h>
 #include <mho/conductance.h>
+#include <mho/interference.h>
 #include <mho/molecule.h>
 #include <mho/nodes.h>
 #include <mho/sensitivity.h>
@@ -65,6 +66,16 @@ void mho_twist_average_row(mho_table *table, const char *molecule, const char *b
 /* The answer in words: how flat it must be, and how far cos^2 holds. */
 void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
                     const double limit_deg[2], const mho_twist_law *law);
+
+mho_table *mho_interference_table(mho_output *output);
+void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
+                           const mho_interference *map);
+
+/* Rules of thumb beside the exact result; the note counts disagreements. */
+mho_table *mho_rules_table(mho_output *output);
+void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map);
+void mho_rules_note(mho_output *output, const mho_molecule *molecule,
+                    const mho_interference *map);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
