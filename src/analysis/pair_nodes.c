@@ -3,7 +3,7 @@
  * How near to a node each pair is.  g_ij(E) = sum_k c_ki c_kj / (E - level_k)
  * has no poles but the levels, so between two samples with no level between
  * them a change of sign is a node.  One matrix product a sample serves all
- * pairs; what it brackets is then bisected pair by pair.
+ * pairs; what it brackets is then refined pair by pair.
  */
 #include <math.h>
 #include <stdlib.h>
@@ -13,7 +13,9 @@
 #include "analysis/pairs.h"
 
 /* Samples in the gap about the Fermi level, and in each gap beyond it. */
-enum { FIRST_SAMPLES = 16, NEXT_SAMPLES = 8, SAMPLES_MAX = 48, BISECTIONS = 60 };
+enum { FIRST_SAMPLES = 16, NEXT_SAMPLES = 8, SAMPLES_MAX = 48, STEPS_MAX = 60 };
+
+#define ROOT_EV 1e-10
 
 /* Samples keep this part of a gap away from its ends. */
 #define MARGIN 1e-3
@@ -24,18 +26,20 @@ enum { FIRST_SAMPLES = 16, NEXT_SAMPLES = 8, SAMPLES_MAX = 48, BISECTIONS = 60 }
 typedef struct {
   const mho_junction *junction;
   double *energy, *previous, *green, *work;
+  double *row; /* orbitals by site: [site][level] */
   bool *joined; /* no level lies between this sample and the one before */
   size_t count;
 } scan;
 
-static double green_at(const mho_junction *j, const int *site, double energy_ev)
+/* |g_ij| - threshold, or g_ij with threshold 0. */
+static double excess(const scan *s, const int *site, double threshold, double energy_ev)
 {
+  const mho_junction *j = s->junction;
   size_t n = (size_t)j->sites;
+  const double *a = s->row + (size_t)site[0] * n, *b = s->row + (size_t)site[1] * n;
   double sum = 0;
-  for (size_t k = 0; k < n; k++)
-    sum += j->orbital[k * n + (size_t)site[0]] * j->orbital[k * n + (size_t)site[1]] /
-           (energy_ev - j->level_ev[k]);
-  return sum;
+  for (size_t k = 0; k < n; k++) sum += a[k] * b[k] / (energy_ev - j->level_ev[k]);
+  return threshold > 0 ? fabs(sum) - threshold : sum;
 }
 
 /* Samples on one side of the Fermi level (direction +-1), outwards. */
@@ -65,14 +69,22 @@ static void place_samples(scan *s, int direction)
   }
 }
 
-/* The energy where |g| - threshold (or g, with threshold 0) changes sign. */
-static double bisect(const mho_junction *j, const int *site, double threshold, double a, double b)
+/* Where excess changes sign between a and b, by false position with the weight
+ * of a point that stays halved (M. Dowell and P. Jarratt, BIT 11, 168 (1971)). */
+static double find_root(const scan *s, const int *site, double threshold, double a, double b)
 {
-  bool above = threshold > 0 ? fabs(green_at(j, site, a)) >= threshold : green_at(j, site, a) >= 0;
-  for (int i = 0; i < BISECTIONS && a != b; i++) {
-    double middle = a + 0.5 * (b - a), g = green_at(j, site, middle);
-    if ((threshold > 0 ? fabs(g) >= threshold : g >= 0) == above) a = middle;
-    else b = middle;
+  double at_a = excess(s, site, threshold, a), at_b = excess(s, site, threshold, b);
+  for (int i = 0; i < STEPS_MAX && fabs(b - a) > ROOT_EV && at_b != 0; i++) {
+    double c = b - at_b * (b - a) / (at_b - at_a);
+    if (!(c > fmin(a, b) && c < fmax(a, b))) c = 0.5 * (a + b);
+    double moved = fabs(c - b), at_c = excess(s, site, threshold, c);
+    if ((at_c > 0) != (at_b > 0)) {
+      a = b;
+      at_a = at_b;
+    } else at_a *= 0.5;
+    b = c;
+    at_b = at_c;
+    if (moved < ROOT_EV) break;
   }
   return b;
 }
@@ -99,14 +111,14 @@ static void look_at(const scan *s, size_t step, bool signs, double reference, mh
   double a = s->energy[step - 1], b = s->energy[step];
   bool conducts = pair->kind == MHO_PAIR_CONSTRUCTIVE;
   bool crossed = s->joined[step] && (step > 1 || pair->green_per_ev != 0) && before * now < 0;
-  double node = crossed ? bisect(j, pair->site, 0, a, b) : 0;
+  double node = crossed ? find_root(s, pair->site, 0, a, b) : 0;
   if (crossed && signs) keep_nearest(&pair->has_node, &pair->node_ev, node - j->fermi_ev);
   if (*turned || !s->joined[step] || !(threshold > 0)) return;
   if (conducts && crossed) b = node; /* below the threshold on the way there */
   else if ((fabs(now) >= threshold) == conducts) return;
   *turned = true;
   keep_nearest(&pair->has_shift, &pair->overturning_shift_ev,
-               bisect(j, pair->site, threshold, a, b) - j->fermi_ev);
+               find_root(s, pair->site, threshold, a, b) - j->fermi_ev);
 }
 
 static mho_status walk(scan *s, int direction, bool signs, const double *reference,
@@ -157,12 +169,15 @@ mho_status mho_pairs_nodes(const mho_junction *junction, double coupling_ev,
 {
   size_t n = (size_t)junction->sites;
   bool exact = junction->sites <= MHO_INTERFERENCE_NODES_MAX;
-  double *room = malloc(3 * n * n * sizeof *room);
+  double *room = malloc(4 * n * n * sizeof *room);
   double energy[SAMPLES_MAX + 2];
   bool joined[SAMPLES_MAX + 2];
-  scan s = {junction, energy, room, room + n * n, room + 2 * n * n, joined, 0};
+  scan s = {junction, energy, room, room + n * n, room + 2 * n * n, room + 3 * n * n,
+            joined, 0};
   mho_status status =
       room ? MHO_OK : mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+  for (size_t i = 0; room && i < n; i++)
+    for (size_t k = 0; k < n; k++) s.row[i * n + k] = junction->orbital[k * n + i];
   for (int direction = -1; status == MHO_OK && direction < 2; direction += 2)
     status = walk(&s, direction, !exact, reference, map, error);
   for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
