@@ -14,6 +14,7 @@
 #include <mho/interference.h>
 #include <mho/junction.h>
 #include <mho/linker.h>
+#include <mho/modify.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>
 #include <mho/nodes.h>

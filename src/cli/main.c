@@ -44,7 +44,7 @@ static const verb verbs[] = {
      "T between every two sites that a linker may sit on, at the Fermi level and with\n"
      "one coupling: the bare Green's function with its sign, magic integers of\n"
      "benzenoids, what kind of pair it is, its nearest node, and how far the Fermi\n"
-     "level may move before the verdict turns.  Needs no contacts.",
+     "level may move before the verdict turns.  Needs no contacts, but for --modify.",
      command_interference},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
@@ -63,7 +63,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_RULES, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
@@ -81,6 +81,8 @@ static const option_row options[OPTION_COUNT] = {
                      "terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
     [OPT_RULES] = {INTERFERENCE, "rules", 0, NULL,
                    "rules of thumb beside the exact result, and where they fail"},
+    [OPT_MODIFY] = {INTERFERENCE, "modify", 0, NULL,
+                    "what to change instead: CH to N and substituents, largest effect first"},
     [OPT_EVERY_SITE] = {INTERFERENCE, "every-site", 0, NULL,
                         "also sites with three bonds, which no linker can sit on"},
     [OPT_SAMPLES] = {TRANSMISSION | TWIST, "samples", 0, "N",
@@ -90,7 +92,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
-    [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
+    [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
@@ -299,6 +301,7 @@ static int read_option(command *cmd, int which, const char *text)
                       &cmd->angle_high_deg);
   case OPT_BOND: return read_bond(cmd, text);
   case OPT_RULES: cmd->rules = true; return EXIT_DONE;
+  case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;
   case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
   case OPT_MAP: cmd->map = true; return EXIT_DONE;
   case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;

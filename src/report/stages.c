@@ -339,6 +339,28 @@ void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
   }
 }
 
+mho_table *mho_modify_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "site", "change", "log10_G0",
+                                        "change_decades", "window_low", "window_high"};
+  return mho_output_table(output, "modify", columns, COUNT(columns));
+}
+
+void mho_modify_rows(mho_table *table, const mho_molecule *molecule,
+                     const mho_modifications *modifications)
+{
+  for (size_t i = 0; i < modifications->count; i++) {
+    const mho_modification *row = &modifications->row[i];
+    mho_table_text(table, molecule->name);
+    mho_table_text(table, molecule->site[row->site].id);
+    mho_table_text(table, row->substituent->name);
+    mho_table_optional(table, row->has_log, row->log10_g0);
+    mho_table_optional(table, row->has_change, row->change_decades);
+    mho_table_optional(table, row->has_window, row->window_low_decades);
+    mho_table_optional(table, row->has_window, row->window_high_decades);
+  }
+}
+
 mho_table *mho_rules_table(mho_output *output)
 {
   static const char *const columns[] = {"molecule", "site_i", "site_j", "class", "starring",

@@ -9,6 +9,7 @@
 #include <mho/compare.h>
 #include <mho/conductance.h>
 #include <mho/interference.h>
+#include <mho/modify.h>
 #include <mho/molecule.h>
 #include <mho/nodes.h>
 #include <mho/sensitivity.h>
@@ -70,6 +71,10 @@ void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
 mho_table *mho_interference_table(mho_output *output);
 void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
                            const mho_interference *map);
+
+mho_table *mho_modify_table(mho_output *output);
+void mho_modify_rows(mho_table *table, const mho_molecule *molecule,
+                     const mho_modifications *modifications);
 
 /* Rules of thumb beside the exact result; the note counts disagreements. */
 mho_table *mho_rules_table(mho_output *output);

@@ -5,7 +5,9 @@
  */
 #include "check.h"
 
+#include <mho/conductance.h>
 #include <mho/interference.h>
+#include <mho/modify.h>
 #include <mho/molecule_file.h>
 #include <stdlib.h>
 
@@ -262,6 +264,61 @@ static void what_cannot_be_mapped_is_refused(void **state)
   clear(&s);
 }
 
+static double drawn_log10(const char *smiles, mho_alkyl alkyl)
+{
+  mho_settings settings = {.has_alkyl = true, .alkyl = alkyl};
+  mho_molecule m;
+  mho_junction junction;
+  mho_plan *plan;
+  mho_conductance g;
+  mho_molecule_init(&m);
+  assert_int_equal(mho_molecule_read_smiles(smiles, NULL, &settings, 0, &m, NULL), MHO_OK);
+  assert_int_equal(mho_junction_build(&m, &junction, NULL), MHO_OK);
+  assert_int_equal(mho_plan_create(&junction, &plan, NULL), MHO_OK);
+  assert_int_equal(mho_conductance_compute(plan, junction.fermi_ev, m.temperature_k, NULL, &g, NULL),
+                   MHO_OK);
+  mho_plan_free(plan);
+  mho_junction_clear(&junction);
+  mho_molecule_clear(&m);
+  return g.log10_g0;
+}
+
+/* A modified molecule is the one that a chemist would draw. */
+static void modifications_are_the_molecules_drawn(void **state)
+{
+  (void)state;
+  static const struct {
+    const char *change, *smiles;
+    mho_alkyl alkyl;
+  } drawn[] = {{"CH to N", "Nc1ccc(N)nc1", MHO_ALKYL_IGNORED},
+               {"methyl", "Nc1ccc(N)c(C)c1", MHO_ALKYL_INDUCTIVE},
+               {"fluoro", "Nc1ccc(N)c(F)c1", MHO_ALKYL_IGNORED}};
+  subject s = mapped("Nc1ccc(N)cc1", 0, NULL);
+  mho_modifications ranked;
+  double before = drawn_log10("Nc1ccc(N)cc1", MHO_ALKYL_IGNORED);
+  assert_int_equal(mho_modify_rank(&s.molecule, &s.junction, 0.5, &ranked, NULL), MHO_OK);
+  size_t kinds;
+  mho_substituents(&kinds);
+  assert_int_equal(ranked.count, 4 * kinds);
+  for (size_t k = 0; k < sizeof drawn / sizeof *drawn; k++) {
+    int found = 0;
+    double expected = drawn_log10(drawn[k].smiles, drawn[k].alkyl);
+    for (size_t i = 0; i < ranked.count; i++) {
+      if (strcmp(ranked.row[i].substituent->name, drawn[k].change)) continue;
+      assert_near(ranked.row[i].log10_g0, expected, 1e-9);
+      assert_near(ranked.row[i].change_decades, expected - before, 1e-9);
+      assert_true(ranked.row[i].window_low_decades <= ranked.row[i].window_high_decades);
+      found++;
+    }
+    assert_int_equal(found, 4);
+  }
+  for (size_t i = 1; i < ranked.count; i++)
+    assert_true(fabs(ranked.row[i].change_decades) <=
+                fabs(ranked.row[i - 1].change_decades) + 1e-8);
+  mho_modifications_clear(&ranked);
+  clear(&s);
+}
+
 int main(void)
 {
   const struct CMUnitTest tests[] = {
@@ -272,6 +329,7 @@ int main(void)
       cmocka_unit_test(azulene_breaks_the_rules),
       cmocka_unit_test(the_verdict_turns_where_it_says),
       cmocka_unit_test(sampled_nodes_are_the_exact_ones),
+      cmocka_unit_test(modifications_are_the_molecules_drawn),
       cmocka_unit_test(what_cannot_be_mapped_is_refused),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
