@@ -69,7 +69,7 @@ static void read_work(const char *path, bool dense, work *w)
   for (int side = 0; side < 2; side++) {
     double *vector = room(n, sizeof(double));
     vector[side ? w->right : w->left] = 1;
-    w->lead[side] = (mho_lead){1, &w->gamma, &none, vector};
+    w->lead[side] = (mho_lead){1, &w->gamma, &none, vector, NULL};
   }
 }
 

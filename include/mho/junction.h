@@ -3,7 +3,7 @@
  * A junction: the numbers of a molecule between two contacts.
  *
  *   H_ii = eps_i,  H_ij = t_ij cos(theta_ij)      real symmetric
- *   Sigma_side = sum_c (shift_c - i Gamma_c/2) v_c v_c^T    wide band
+ *   Sigma_side = sum_c (shift_c - i Gamma_c/2) v_c v_c^T    wide band, or a chain
  *
  * A contact of independent channels has one unit vector a site; a contact of
  * one channel has the amplitudes of its sites as its only vector.
@@ -14,11 +14,24 @@
 #include <mho/molecule.h>
 #include <mho/status.h>
 
+/* A semi-infinite chain as electrode, joined by a hopping V to the end of a
+ * chain of hoppings t about the energy e: a semi-elliptic band,
+ *   Sigma(E) = V^2 (x - sqrt(x^2 - 4t^2)) / (2t^2),  x = E - e,
+ * so inside the band Gamma = V^2/t^2 sqrt(4t^2 - x^2) and shift = V^2 x/(2t^2);
+ * outside it nothing is transmitted. */
+typedef struct {
+  double center_ev, hopping_ev; /* e, t != 0 */
+  double joint_ev;              /* V */
+} mho_chain_electrode;
+
 typedef struct {
   int channels;        /* 0 where the molecule has no such contact */
   double *coupling_ev; /* Gamma_c [channels] */
   double *shift_ev;    /* [channels] */
   double *vector;      /* v_c, [channels][sites] */
+  /* NULL: wide band.  Else every channel has such a chain, and coupling_ev and
+   * shift_ev are not used. */
+  const mho_chain_electrode *chain;
 } mho_lead;
 
 typedef struct {

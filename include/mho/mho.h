@@ -11,6 +11,7 @@
 #include <mho/gradient.h>
 #include <mho/graph.h>
 #include <mho/histogram.h>
+#include <mho/inside.h>
 #include <mho/interference.h>
 #include <mho/junction.h>
 #include <mho/linker.h>

@@ -22,6 +22,8 @@ typedef enum {
   MHO_MOLAR_ENERGY, /* kJ/mol */
   MHO_TIME,         /* s */
   MHO_RESISTANCE,   /* ohm */
+  MHO_FREQUENCY,    /* Hz */
+  MHO_SPEED,        /* nm/s */
   MHO_DIMENSIONS
 } mho_dimension;
 

@@ -57,7 +57,7 @@ MHO_API const char *mho_plan_describe(const mho_plan *plan, char *buffer,
 MHO_API const char *mho_method_name(mho_method method);
 
 /* Prepares a junction for many energies.  The junction may be cleared
- * afterwards.  The plan is not changed by its use: many threads may share it.
+ * afterwards (a chain electrode is copied).  The plan is not changed by its use: many threads may share it.
  * Errors: MHO_ERR_CONTACTS, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_plan_create(const mho_junction *junction,
                                                 mho_plan **plan,
@@ -88,7 +88,8 @@ MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,
                                                        mho_error *error);
 
 /* All poles, by ascending energy; pole[] has room for one a site.
- * Errors: MHO_ERR_LIMIT (too many sites), MHO_ERR_MEMORY,
+ * Errors: MHO_ERR_LIMIT (too many sites), MHO_ERR_RANGE (a chain as electrode:
+ * its Sigma depends on E, and so would the poles), MHO_ERR_MEMORY,
  * MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_poles(const mho_plan *plan, mho_pole *pole,
                                           mho_error *error);

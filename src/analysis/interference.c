@@ -125,7 +125,10 @@ mho_status mho_pair_plan(const mho_junction *junction, const int site[2], double
   mho_junction own = *junction;
   for (int side = 0; side < 2; side++) {
     vector[(size_t)side * n + (size_t)site[side]] = 1;
-    own.lead[side] = (mho_lead){1, &coupling_ev, &shift, vector + (size_t)side * n};
+    own.lead[side] = (mho_lead){.channels = 1,
+                                .coupling_ev = &coupling_ev,
+                                .shift_ev = &shift,
+                                .vector = vector + (size_t)side * n};
   }
   mho_status status = mho_plan_create(&own, plan, error);
   free(vector);

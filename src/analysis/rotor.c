@@ -229,7 +229,7 @@ mho_status mho_twist_form_find(const mho_rotor *rotor, double energy_ev, mho_twi
   if (!isfinite(energy_ev))
     return mho_fail(error, MHO_ERR_NOT_FINITE, "analysis", "energy",
                     "the energy is not a finite number");
-  if (rotor->bonds > 1) return MHO_OK;
+  if (rotor->bonds > 1 || j->lead[MHO_LEFT].chain || j->lead[MHO_RIGHT].chain) return MHO_OK;
   const int *end = rotor->molecule->bond[rotor->bond[0]].site;
   double complex *matrix = malloc(n * n * sizeof *matrix);
   double complex *column = malloc(n * (size_t)columns * sizeof *column);

@@ -63,6 +63,12 @@ static const unit units[] = {
     {MHO_RESISTANCE, "ohm", 1, 1},
     {MHO_RESISTANCE, "kohm", 1e3, 1},
     {MHO_RESISTANCE, "Mohm", 1e6, 1},
+    {MHO_FREQUENCY, "Hz", 1, 1},
+    {MHO_FREQUENCY, "kHz", 1e3, 1},
+    {MHO_FREQUENCY, "MHz", 1e6, 1},
+    {MHO_SPEED, "nm/s", 1, 1},
+    {MHO_SPEED, "um/s", 1e3, 1},
+    {MHO_SPEED, "µm/s", 1e3, 1},
 };
 
 enum { UNIT_COUNT = sizeof units / sizeof *units };
@@ -82,6 +88,8 @@ static const struct {
     [MHO_MOLAR_ENERGY] = {"molar energy", "a", "kJ/mol or kcal/mol", "kJ/mol"},
     [MHO_TIME] = {"time", "a", "s, ms or us", "s"},
     [MHO_RESISTANCE] = {"resistance", "a", "ohm, kohm or Mohm", "ohm"},
+    [MHO_FREQUENCY] = {"frequency", "a", "Hz, kHz or MHz", "Hz"},
+    [MHO_SPEED] = {"speed", "a", "nm/s or um/s", "nm/s"},
 };
 
 const char *mho_dimension_name(mho_dimension dimension)

@@ -14,6 +14,25 @@ enum { EXIT_DONE = 0, EXIT_RUNTIME = 1, EXIT_INPUT = 2 };
 
 typedef enum { FORMAT_SCREEN, FORMAT_CSV, FORMAT_JSON } output_format;
 
+/* Which table of measured traces is asked for. */
+typedef enum {
+  MEASURED_DEFAULT, MEASURED_MAP, MEASURED_PEAKS, MEASURED_COMB, MEASURED_PLATEAUS,
+  MEASURED_LINEAR, MEASURED_CLUSTERS, MEASURED_CORRELATION, MEASURED_FLICKER, MEASURED_STEPS,
+  MEASURED_DWELLS
+} measured_table;
+
+/* What options say about measured traces. */
+typedef struct {
+  mho_trace_options traces;
+  mho_histogram_options histogram;
+  mho_telegraph_options blink;
+  measured_table table;
+  bool has_search; /* where peaks and clusters are looked for */
+  double search_low_g0, search_high_g0;
+  bool all; /* no rejection */
+  const char *figure;
+} measured_options;
+
 /* Everything that options can say; each verb uses its part. */
 typedef struct {
   const char *verb;
@@ -32,6 +51,7 @@ typedef struct {
   double window_ev;
   bool has_window;
   unsigned long seed;
+  measured_options measured;
   int files;
   char **file;
 } command;
@@ -39,14 +59,38 @@ typedef struct {
 /* A verb returns the exit status; causes are in error. */
 typedef int verb_function(const command *cmd, mho_error *error);
 
-verb_function command_check, command_conductance, command_transmission, command_twist,
-    command_interference, command_run;
+verb_function command_blink, command_check, command_conductance, command_histogram,
+    command_interference, command_run, command_transmission, command_twist;
 
 /* Exit status that belongs to a status. */
 int exit_of(mho_status status);
 
 /* `mho VERB: message` on stderr for a mistake of the command line; returns 2. */
 int usage_error(const char *verb, const char *format, ...) MHO_PRINTF(2, 3);
+
+/* Reads a quantity of an option into the base unit; prints what is wrong. */
+int read_quantity(const char *verb, const char *option, const char *text,
+                  mho_dimension dimension, double low, double high, double *value);
+int read_count(const char *verb, const char *option, const char *text, long low, long high,
+               long *value);
+
+void measured_options_init(measured_options *options);
+/* An option of `histogram` or `blink`. */
+int read_measured_option(command *cmd, const char *name, const char *text);
+
+/* A bar over the bytes that were read, on a terminal after a second. */
+typedef struct {
+  double start;
+  bool shown;
+} byte_progress;
+void begin_byte_progress(const command *cmd, byte_progress *progress, mho_trace_options *traces);
+void end_byte_progress(const byte_progress *progress);
+
+/* MHO_OK where at least one file could be read. */
+MHO_MUST_USE mho_status check_any_file(const mho_trace_report *report);
+/* Renders a script to --figure; without gnuplot it is left out, and says so. */
+MHO_MUST_USE mho_status figure_write(const command *cmd, const mho_buffer *script,
+                                     mho_error *error);
 
 /* A molecule, its numbers and its warnings, as every verb needs them. */
 typedef struct {
@@ -78,5 +122,8 @@ MHO_MUST_USE mho_status output_write(const command *cmd, const mho_output *outpu
 MHO_MUST_USE mho_status text_write(const command *cmd, const mho_buffer *buffer,
                                    mho_error *error);
 int digits_of(const command *cmd);
+
+/* The form that the options and the ending of -o PATH ask for. */
+output_format format_of(const command *cmd);
 
 #endif

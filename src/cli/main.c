@@ -10,8 +10,15 @@
 #include "base/text.h"
 #include "cli/command.h"
 
-enum { CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, TWIST = 16, INTERFERENCE = 32 };
-enum { TABLES = CONDUCTANCE | TRANSMISSION | TWIST | INTERFERENCE, MOLECULES = CHECK | TABLES, ALL = MOLECULES | RUN };
+enum {
+  CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32, TWIST = 64,
+  INTERFERENCE = 128
+};
+enum {
+  TABLES = CONDUCTANCE | TRANSMISSION | TWIST | INTERFERENCE, MOLECULES = CHECK | TABLES,
+  ALL = MOLECULES | RUN
+};
+enum { MEASURED = HISTOGRAM | BLINK, EVERY = ALL | MEASURED };
 
 typedef struct {
   int bit;
@@ -46,6 +53,15 @@ static const verb verbs[] = {
      "benzenoids, what kind of pair it is, its nearest node, and how far the Fermi\n"
      "level may move before the verdict turns.  Needs no contacts, but for --modify.",
      command_interference},
+    {HISTOGRAM, "histogram", "FILE...", "peaks of measured traces that can be trusted",
+     "Histogram of measured conductances of all files together: text (also in gzip)\n"
+     "or .npy, columns named as distance_nm, time_s, conductance_G0, conductance_S,\n"
+     "log10_G0, current_nA.  Intervals are 95 %, by bootstrap over whole traces.",
+     command_histogram},
+    {BLINK, "blink", "FILE...", "levels of a junction that switches, and how long it stays",
+     "Conductance or current against time: levels, their steps and dwell times by a\n"
+     "hidden Markov model.  Files are as for mho histogram.",
+     command_blink},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
@@ -63,9 +79,15 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY,
+  OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED,
+  OPT_FERMI, OPT_TEMPERATURE,
   OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
-  OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
+  OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
+  OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
+  OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
+  OPT_BIAS, OPT_SERIES, OPT_FLOOR, OPT_SATURATION, OPT_COLUMNS, OPT_QUANTITY, OPT_ROWS, OPT_SAMPLING,
+  OPT_SPEED, OPT_KEEP_GOING, OPT_THREADS, OPT_FIGURE, OPT_QUIET, OPT_VERBOSE, OPT_HELP, OPTION_COUNT
 };
 
 static const option_row options[OPTION_COUNT] = {
@@ -75,7 +97,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_ANGLES] = {TWIST, "angles", 0, "'LOW, HIGH'", "range (default '0 deg, 90 deg')"},
     [OPT_ENERGIES] = {TRANSMISSION | TWIST, "energies", 0, "'LOW, HIGH'",
                       "range above the Fermi level (default '-3 eV, 3 eV')"},
-    [OPT_MAP] = {TWIST, "map", 0, NULL, "T against angle and energy, or against two angles"},
+    [OPT_TWIST_MAP] = {TWIST, "map", 0, NULL, "T against angle and energy, or against two angles"},
     [OPT_TORSION] = {TWIST, "torsion", 0, "POTENTIAL",
                      "biphenyl, tolane ..., two barriers '6 kJ/mol, 6.5 kJ/mol' at 0 and 90 deg, "
                      "terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
@@ -96,7 +118,7 @@ static const option_row options[OPTION_COUNT] = {
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
-    [OPT_SEED] = {CONDUCTANCE, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
+    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
     [OPT_FERMI] = {ALL, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
@@ -108,13 +130,57 @@ static const option_row options[OPTION_COUNT] = {
                          "of bonds in a SMILES: formal (default) or none"},
     [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
                    "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
-    [OPT_CSV] = {TABLES, "csv", 0, NULL, "write CSV"},
-    [OPT_JSON] = {MOLECULES, "json", 0, NULL, "write JSON"},
-    [OPT_EXACT] = {MOLECULES, "exact", 0, NULL, "17 digits instead of 6"},
-    [OPT_OUTPUT] = {ALL, "output", 'o', "PATH", "write there instead of to the screen"},
-    [OPT_QUIET] = {ALL, "quiet", 0, NULL, "no progress and no remarks"},
+    [OPT_CSV] = {TABLES | MEASURED, "csv", 0, NULL, "write CSV"},
+    [OPT_JSON] = {MOLECULES | MEASURED, "json", 0, NULL, "write JSON"},
+    [OPT_EXACT] = {MOLECULES | MEASURED, "exact", 0, NULL, "17 digits instead of 6"},
+    [OPT_OUTPUT] = {EVERY, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_PEAKS] = {HISTOGRAM, "peaks", 0, NULL, "list the peaks of the log histogram"},
+    [OPT_COMB] = {HISTOGRAM, "comb", 0, NULL, "list whole multiples of one conductance"},
+    [OPT_LINEAR] = {HISTOGRAM, "linear", 0, NULL, "the linear histogram"},
+    [OPT_MAP] = {HISTOGRAM, "map", 0, NULL, "the 2D histogram, conductance against distance"},
+    [OPT_PLATEAUS] = {HISTOGRAM, "plateaus", 0, NULL, "list the plateaus of every trace"},
+    [OPT_CLUSTERS] = {HISTOGRAM, "clusters", 0, NULL, "list clusters of traces of one shape"},
+    [OPT_CORRELATION] = {HISTOGRAM, "correlation", 0, NULL,
+                         "which conductances come together in a trace (1) or exclude each other (-1)"},
+    [OPT_FLICKER] = {HISTOGRAM, "flicker", 0, NULL, "noise of held junctions against conductance"},
+    [OPT_BINS] = {HISTOGRAM, "bins", 0, "N", "bins a decade, 1 to 1000 (default 100)"},
+    [OPT_CONDUCTANCES] = {HISTOGRAM, "conductances", 0, "'LOW, HIGH'",
+                          "range of the histogram (default '1e-7 G0, 10 G0')"},
+    [OPT_DISTANCES] = {HISTOGRAM, "distances", 0, "'LOW, HIGH'",
+                       "range of the map (default '-0.5 nm, 2.5 nm')"},
+    [OPT_SEARCH] = {HISTOGRAM, "search", 0, "'LOW, HIGH'",
+                    "where peaks may be (default from the floor to 0.35 G0)"},
+    [OPT_CROSSING] = {HISTOGRAM, "crossing", 0, "CONDUCTANCE",
+                      "whose last crossing is distance zero (default '0.5 G0')"},
+    [OPT_SNAP_BACK] = {HISTOGRAM, "snap-back", 0, "LENGTH",
+                       "that the electrodes spring apart on rupture (default '0 nm')"},
+    [OPT_PLATEAU_LENGTH] = {HISTOGRAM, "plateau-length", 0, "LENGTH",
+                            "a trace without such a plateau is rejected (default '0.15 nm')"},
+    [OPT_ALL_TRACES] = {HISTOGRAM, "all", 0, NULL, "reject no trace"},
+    [OPT_STEPS] = {BLINK, "steps", 0, NULL, "list the steps between levels"},
+    [OPT_DWELLS] = {BLINK, "dwells", 0, NULL, "list every stay on a level"},
+    [OPT_LEVELS] = {BLINK, "levels", 0, "N", "that many, 1 to 3, instead of a test"},
+    [OPT_BANDWIDTH] = {BLINK, "bandwidth", 0, "FREQUENCY", "of the instrument (-3 dB)"},
+    [OPT_DEAD_TIME] = {BLINK, "dead-time", 0, "TIME",
+                       "shortest dwell that is seen (default 0.179/bandwidth)"},
+    [OPT_NO_DRIFT] = {BLINK, "no-drift", 0, NULL, "do not take off a straight drift"},
+    [OPT_BIAS] = {MEASURED, "bias", 0, "VOLTAGE", "of a measured current, such as '0.1 V'"},
+    [OPT_SERIES] = {MEASURED, "series-resistance", 0, "R", "to take off (default '0 ohm')"},
+    [OPT_FLOOR] = {MEASURED, "floor", 0, "G-OR-I", "of the preamplifier, such as '1e-6 G0' or '10 pA'"},
+    [OPT_SATURATION] = {MEASURED, "saturation", 0, "G-OR-I", "of the preamplifier"},
+    [OPT_COLUMNS] = {MEASURED, "columns", 0, "NAMES", "such as distance_nm,current_nA"},
+    [OPT_QUANTITY] = {MEASURED, "quantity", 0, "NAME",
+                      "of nameless columns: conductance_G0, conductance_S, log10_G0 or current_A"},
+    [OPT_ROWS] = {MEASURED, "rows", 0, NULL, "each row of a .npy is a trace"},
+    [OPT_SAMPLING] = {MEASURED, "sampling", 0, "FREQUENCY", "makes a time where there is none"},
+    [OPT_SPEED] = {MEASURED, "speed", 0, "SPEED", "makes a distance of a time, such as '20 nm/s'"},
+    [OPT_KEEP_GOING] = {MEASURED, "keep-going", 0, NULL,
+                        "use the other files where one is bad; still exit with 2"},
+    [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
+    [OPT_FIGURE] = {MEASURED, "figure", 0, "FILE.svg", "draw the table with gnuplot"},
+    [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
     [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
-    [OPT_HELP] = {ALL, "help", 'h', NULL, "this help"},
+    [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
 };
 
 enum { VERB_COUNT = sizeof verbs / sizeof *verbs };
@@ -165,7 +231,7 @@ void print_causes(const command *cmd, mho_error *error)
 static void print_help(void)
 {
   printf("mho - conductance of single-molecule junctions from a tight-binding model\n\n"
-         "usage: mho VERB [options] MOLECULE...\n\n");
+         "usage: mho VERB [options] MOLECULE... | FILE...\n\n");
   for (int i = 0; i < VERB_COUNT; i++)
     printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
   printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
@@ -194,9 +260,8 @@ static void print_version(void)
          mho_version(), mho_lapack_description());
 }
 
-/* Reads a quantity of an option; prints what is wrong. */
-static int read_quantity(const char *verb_name, const char *option, const char *text,
-                         mho_dimension dimension, double low, double high, double *value)
+int read_quantity(const char *verb_name, const char *option, const char *text,
+                  mho_dimension dimension, double low, double high, double *value)
 {
   char reason[320];
   if (mho_quantity_read(text, dimension, value, reason, sizeof reason) != MHO_OK)
@@ -237,16 +302,15 @@ static int read_bond(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
-static int read_samples(command *cmd, const char *text)
+int read_count(const char *verb_name, const char *option, const char *text, long low, long high,
+               long *value)
 {
-  enum { SAMPLES_MAX = 1000000 };
   char *end;
   errno = 0;
-  cmd->samples = strtol(text, &end, 10);
-  if (errno || *end || end == text || cmd->samples < 2 || cmd->samples > SAMPLES_MAX)
-    return usage_error(cmd->verb, "--samples: '%s' is not allowed; a whole number from 2 to %d is",
-                       text, SAMPLES_MAX);
-  cmd->has_samples = true;
+  *value = strtol(text, &end, 10);
+  if (errno || *end || end == text || *value < low || *value > high)
+    return usage_error(verb_name, "--%s: '%s' is not allowed; a whole number from %ld to %ld is",
+                       option, text, low, high);
   return EXIT_DONE;
 }
 
@@ -303,9 +367,11 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_RULES: cmd->rules = true; return EXIT_DONE;
   case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;
   case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
-  case OPT_MAP: cmd->map = true; return EXIT_DONE;
+  case OPT_TWIST_MAP: cmd->map = true; return EXIT_DONE;
   case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;
-  case OPT_SAMPLES: return read_samples(cmd, text);
+  case OPT_SAMPLES:
+    cmd->has_samples = true;
+    return read_count(cmd->verb, "samples", text, 2, 1000000, &cmd->samples);
   case OPT_AT:
     cmd->has_at = true;
     if (!strcmp(cmd->verb, "twist"))
@@ -329,7 +395,9 @@ static int read_option(command *cmd, int which, const char *text)
     cmd->format = which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON;
     return EXIT_DONE;
   case OPT_TWIST: return read_twist(cmd, text);
-  default: return read_setting(cmd, options[which].name, text);
+  default:
+    return options[which].verbs & MEASURED ? read_measured_option(cmd, options[which].name, text)
+                                           : read_setting(cmd, options[which].name, text);
   }
 }
 
@@ -364,6 +432,7 @@ static int parse(const verb *v, int argc, char **argv, command *cmd, bool *help)
           options[i].name, options[i].argument ? required_argument : no_argument, NULL, 256 + i};
   table[count] = (struct option){0};
   *cmd = (command){.verb = v->name, .window_ev = MHO_DEFAULT_WINDOW_EV, .seed = 1};
+  measured_options_init(&cmd->measured);
   opterr = 0;
   int code;
   while ((code = getopt_long(argc, argv, ":ho:", table, NULL)) != -1) {

@@ -195,8 +195,7 @@ mho_status text_write(const command *cmd, const mho_buffer *buffer, mho_error *e
                   strerror(errno));
 }
 
-/* Without a format, the ending of PATH decides. */
-static output_format format_of(const command *cmd)
+output_format format_of(const command *cmd)
 {
   const char *dot = cmd->output ? strrchr(cmd->output, '.') : NULL;
   if (cmd->format != FORMAT_SCREEN || !dot) return cmd->format;

@@ -81,10 +81,11 @@ mho_status mho_source_refill(mho_source *source, mho_error *error)
   memmove(source->buffer, source->buffer + source->start, left);
   source->start = 0;
   source->end = left;
-  while (!source->finished && source->end < MHO_SOURCE_SIZE) {
+  size_t full = left + MHO_SOURCE_STEP < MHO_SOURCE_SIZE ? left + MHO_SOURCE_STEP : MHO_SOURCE_SIZE;
+  while (!source->finished && source->end < full) {
     size_t count;
-    mho_status status = read_some(source, source->buffer + source->end,
-                                  MHO_SOURCE_SIZE - source->end, &count, error);
+    mho_status status = read_some(source, source->buffer + source->end, full - source->end,
+                                  &count, error);
     if (status != MHO_OK) return status;
     source->end += count;
     source->finished = count == 0;

@@ -9,7 +9,10 @@
 
 #include <mho/status.h>
 
-enum { MHO_SOURCE_SIZE = 1 << 20 };
+enum {
+  MHO_SOURCE_SIZE = 1 << 20, /* the longest line */
+  MHO_SOURCE_STEP = 1 << 18  /* read at once: stays in the cache until it is parsed */
+};
 
 typedef struct {
   const char *path;

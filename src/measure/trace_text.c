@@ -292,7 +292,7 @@ static const char *run_fast(mho_trace_reader *reader, const char *p, const char 
 static mho_status whole_lines(mho_trace_reader *reader, const char **limit, mho_error *error)
 {
   mho_source *source = &reader->source;
-  for (int attempt = 0;; attempt++) {
+  for (;;) {
     size_t left = mho_source_left(source);
     char *start = source->buffer + source->start;
     char *last = left ? memrchr(start, '\n', left) : NULL;
@@ -302,7 +302,7 @@ static mho_status whole_lines(mho_trace_reader *reader, const char **limit, mho_
     }
     *limit = last ? last + 1 : start;
     if (last || (source->finished && !left)) return MHO_OK;
-    if (attempt == 1)
+    if (left == MHO_SOURCE_SIZE)
       return mho_fail_at(error, MHO_ERR_LIMIT, "measure", source->path,
                          reader->text.line + 1, 1, NULL,
                          "a line of more than %d bytes; a line is one point of "

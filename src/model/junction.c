@@ -168,6 +168,7 @@ static mho_status copy_lead(const mho_lead *from, int sites, mho_lead *to,
   to->vector = malloc(m * n * sizeof(double));
   if (!to->coupling_ev || !to->shift_ev || !to->vector) return fail_memory(error);
   to->channels = from->channels;
+  to->chain = from->chain;
   memcpy(to->coupling_ev, from->coupling_ev, m * sizeof(double));
   memcpy(to->shift_ev, from->shift_ev, m * sizeof(double));
   memcpy(to->vector, from->vector, m * n * sizeof(double));

@@ -9,6 +9,8 @@
 #define MHOLECULE_REPORT_FIGURE_H
 
 #include <mho/compare.h>
+#include <mho/peaks.h>
+#include <mho/telegraph.h>
 #include <mho/transmission.h>
 
 #include "base/buffer.h"
@@ -29,6 +31,18 @@ void mho_figure_transmission(mho_buffer *script, const mho_curve *curve, int cur
                              double window_ev);
 void mho_figure_comparison(mho_buffer *script, const char *const *molecule, const mho_comparison *comparison,
                            int count);
+
+/* Of measured traces: the histogram of `counts` with what was fitted; the 2D
+ * histogram with the peaks as lines; the comb on the linear density of the same
+ * counts; survival of whole dwells with their exponentials. */
+void mho_figure_histogram(mho_buffer *script, const mho_histogram *histogram,
+                          const mho_trace_counts *counts, const mho_peaks *peaks);
+void mho_figure_map(mho_buffer *script, const mho_histogram *histogram, const mho_peaks *peaks);
+void mho_figure_comb(mho_buffer *script, const mho_histogram *histogram,
+                     const mho_trace_counts *counts, const mho_comb *comb);
+void mho_figure_linear(mho_buffer *script, const mho_histogram *histogram);
+void mho_figure_plateaus(mho_buffer *script, const mho_histogram *histogram);
+void mho_figure_dwells(mho_buffer *script, const mho_telegraph *telegraph);
 
 /* Runs gnuplot on a script file, its output into svg_path.  *available is false, and the status MHO_OK,
  * where there is no gnuplot.  Errors: MHO_ERR_WRITE. */

@@ -70,6 +70,7 @@ static const struct {
     {"ratio_computed", "ratio computed"},
     {"ratio_measured", "ratio measured"},
     {"deviation_decades", "deviation (decades)"},
+    {"width_decades", "width (decades)"},
     {"warnings", "warnings"},
 };
 
@@ -182,12 +183,27 @@ static void write_list(mho_buffer *buffer, const char *class_name, char *const *
   mho_buffer_add(buffer, "</ul>\n");
 }
 
+static bool has_table(const mho_output *output, const char *name)
+{
+  for (size_t i = 0; i < output->tables; i++)
+    if (!strcmp(output->table[i].name, name)) return true;
+  return false;
+}
+
+static void write_traces(const mho_report *report, mho_buffer *buffer)
+{
+  if (!has_table(report->output, "traces")) return;
+  begin_section(buffer, "traces", "Measured traces");
+  write_figures(report, "traces", buffer);
+  mho_buffer_add(buffer, "<p>Peaks of the log histograms with 95 % intervals by bootstrap over "
+                         "whole traces.</p>\n");
+  write_table(report->output, "traces", buffer);
+  mho_buffer_add(buffer, "</section>\n");
+}
+
 static void write_results(const mho_report *report, mho_buffer *buffer)
 {
-  bool compared = false;
-  for (size_t i = 0; i < report->output->tables; i++)
-    compared |= !strcmp(report->output->table[i].name, "compare");
-  if (compared) {
+  if (has_table(report->output, "compare")) {
     begin_section(buffer, "comparison", "Measured against computed");
     write_figures(report, "comparison", buffer);
     mho_buffer_add(buffer,
@@ -196,6 +212,7 @@ static void write_results(const mho_report *report, mho_buffer *buffer)
     write_table(report->output, "compare", buffer);
     mho_buffer_add(buffer, "</section>\n");
   }
+  write_traces(report, buffer);
   begin_section(buffer, "predictions", "Predicted conductance");
   write_table(report->output, "conductance", buffer);
   mho_buffer_add(buffer, "</section>\n");

@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * The report: one HTML file that opens offline, with fixed section ids
- * (question, comparison, predictions, transmission, warnings, assumptions,
- * limits).
+ * (question, comparison, traces, predictions, transmission, warnings,
+ * assumptions, limits).
  */
 #ifndef MHOLECULE_REPORT_HTML_H
 #define MHOLECULE_REPORT_HTML_H

@@ -12,7 +12,9 @@
 #include <mho/modify.h>
 #include <mho/molecule.h>
 #include <mho/nodes.h>
+#include <mho/peaks.h>
 #include <mho/sensitivity.h>
+#include <mho/telegraph.h>
 #include <mho/transmission.h>
 #include <mho/twist.h>
 
@@ -81,6 +83,40 @@ mho_table *mho_rules_table(mho_output *output);
 void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map);
 void mho_rules_note(mho_output *output, const mho_molecule *molecule,
                     const mho_interference *map);
+/* Measured traces.  Each opens its table and fills it; traces, peaks and levels
+ * count from 1. */
+void mho_histogram_rows(mho_output *output, const mho_histogram *histogram,
+                        const mho_trace_counts *counts);
+void mho_linear_rows(mho_output *output, const mho_histogram *histogram);
+void mho_map_rows(mho_output *output, const mho_histogram *histogram);
+void mho_peak_rows(mho_output *output, const mho_peaks *peaks);
+void mho_comb_rows(mho_output *output, const mho_comb *comb);
+void mho_plateau_rows(mho_output *output, const mho_histogram *histogram);
+void mho_cluster_rows(mho_output *output, const mho_clusters *clusters);
+void mho_correlation_rows(mho_output *output, const mho_histogram *histogram);
+void mho_flicker_rows(mho_output *output, const mho_flicker *flicker);
+void mho_blink_rows(mho_output *output, const mho_telegraph *telegraph);
+void mho_step_rows(mho_output *output, const mho_telegraph *telegraph);
+void mho_dwell_rows(mho_output *output, const mho_telegraph *telegraph);
+
+/* Of a study: the peaks of each molecule, one row without them if none. */
+mho_table *mho_traces_table(mho_output *output);
+void mho_traces_rows(mho_table *table, const char *molecule, uint64_t traces, uint64_t rejected,
+                     const mho_peaks *peaks);
+
+/* The peak with the largest weight, or NULL. */
+const mho_peak *mho_main_peak(const mho_peaks *peaks);
+
+/* What was read, rejected and found, in words. */
+void mho_reading_note(mho_output *output, const mho_trace_report *report, double floor_g0);
+void mho_rejection_note(mho_output *output, const mho_histogram *histogram);
+void mho_peaks_note(mho_output *output, const mho_peaks *peaks);
+void mho_unrejected_note(mho_output *output, const mho_peaks *peaks);
+void mho_comb_note(mho_output *output, const mho_comb *comb);
+void mho_plateaus_note(mho_output *output, const mho_histogram *histogram);
+void mho_clusters_note(mho_output *output, const mho_clusters *clusters, size_t samples);
+void mho_flicker_note(mho_output *output, const mho_flicker *flicker);
+void mho_blink_note(mho_output *output, const mho_telegraph *telegraph);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

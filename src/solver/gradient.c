@@ -109,7 +109,8 @@ static bool is_finite(const mho_gradient *g)
 mho_status mho_gradient_evaluate(const mho_plan *plan, double energy_ev, mho_gradient *g,
                                  mho_error *error)
 {
-  mho_status status = mho_transmission_sweep(plan, 1, &energy_ev, &g->point, error);
+  mho_status status = mho_plan_require_wide_band(plan, "derivatives", error);
+  if (status == MHO_OK) status = mho_transmission_sweep(plan, 1, &energy_ev, &g->point, error);
   if (status != MHO_OK) return status;
   if (g->point.node) {
     set_zero(g);

@@ -63,6 +63,8 @@ static mho_status collect_channels(const mho_lead *const lead[2], mho_plan *plan
     memcpy(plan->coupling_ev + first, lead[side]->coupling_ev, count * sizeof(double));
     memcpy(plan->shift_ev + first, lead[side]->shift_ev, count * sizeof(double));
     memcpy(plan->vector + first * n, lead[side]->vector, count * n * sizeof(double));
+    plan->has_chain[side] = lead[side]->chain != NULL;
+    if (lead[side]->chain) plan->chain[side] = *lead[side]->chain;
     first += count;
   }
   return collect_support(plan);
@@ -170,6 +172,13 @@ static mho_status start(int sites, const mho_lead *left, const mho_lead *right,
   if (!left->channels || !right->channels)
     return mho_fail(error, MHO_ERR_CONTACTS, "solver", "electrodes",
                     "transmission needs a left and a right contact");
+  for (int side = 0; side < 2; side++) {
+    const mho_chain_electrode *chain = (side == MHO_LEFT ? left : right)->chain;
+    if (chain && !(isfinite(chain->center_ev) && isfinite(chain->joint_ev) &&
+                   isfinite(1 / chain->hopping_ev) && chain->hopping_ev != 0))
+      return mho_fail(error, MHO_ERR_RANGE, "solver", "electrodes",
+                      "a chain electrode needs finite energies and a hopping that is not 0");
+  }
   *plan = calloc(1, sizeof **plan);
   if (!*plan) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   (*plan)->sites = sites;

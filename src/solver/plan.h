@@ -32,6 +32,8 @@ struct mho_plan {
   int *support;
   double *coupling_ev, *shift_ev; /* [channels] */
   double *vector;                 /* [channels][sites] */
+  bool has_chain[2];              /* coupling and shift follow from the energy */
+  mho_chain_electrode chain[2];
   double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
   struct mho_program *program;    /* NULL: does not pay */
@@ -54,6 +56,15 @@ typedef struct {
   bool first_order;      /* false: too near to singular to trust that bound */
   double kappa;
 } mho_estimate;
+
+/* Sigma of every channel at an energy into coupling_ev and shift_ev, both
+ * [channels]; false outside the band of a chain.  electrode.c. */
+bool mho_plan_electrodes(const mho_plan *plan, double energy_ev, double *coupling_ev,
+                         double *shift_ev);
+
+/* MHO_ERR_RANGE where Sigma depends on the energy and `what` needs it not to. */
+MHO_MUST_USE mho_status mho_plan_require_wide_band(const mho_plan *plan, const char *what,
+                                                   mho_error *error);
 
 /* Order that makes the band narrow, over plan->neighbour; order.c. */
 MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
@@ -98,6 +109,14 @@ void mho_elimination_evaluate_quad(const mho_plan *plan,
 void mho_elimination_reduced_quad(const mho_plan *contacts, mho_elimination_quad *workspace,
                                 const mho_quad *value, double *adjoint,
                                 mho_estimate *estimate);
+/* y_c of all channels, [channels][sites], in double. */
+void mho_elimination_solutions_quad(const mho_plan *plan,
+                                    const mho_elimination_quad *workspace,
+                                    double _Complex *solution);
+
+/* Im (G Gamma_L G^+)_ij, which may be far smaller than its terms. */
+double mho_elimination_flow_quad(const mho_plan *plan, const mho_elimination_quad *workspace,
+                                 int i, int j);
 double mho_elimination_differentiate_quad(const mho_plan *plan,
                                         mho_elimination_quad *workspace,
                                         double energy_ev, double relative_error,

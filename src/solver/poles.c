@@ -64,13 +64,14 @@ static void set_widths(const mho_plan *plan, const double complex *x, mho_pole *
 
 mho_status mho_poles(const mho_plan *plan, mho_pole *pole, mho_error *error)
 {
+  mho_status status = mho_plan_require_wide_band(plan, "poles", error);
+  if (status != MHO_OK) return status;
   if (plan->sites > MHO_SITE_LIMIT)
     return mho_fail(error, MHO_ERR_LIMIT, "solver", "poles",
                     "poles need a full matrix; allowed are %d sites", MHO_SITE_LIMIT);
   size_t n = (size_t)plan->sites;
   double complex *matrix = calloc(2 * n * n, sizeof *matrix), *vector = matrix + n * n;
   double complex *value = malloc(n * sizeof *value);
-  mho_status status = MHO_OK;
   if (!matrix || !value)
     status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   if (status == MHO_OK) {

@@ -68,6 +68,12 @@ void mho_program_forward_extended(const mho_program *program, const double *ener
 void mho_program_backward(const mho_program *program, const double *energy_ev,
                           double roundoff, mho_program_trace *trace);
 
+/* For contacts of one site each: T and the relative error of this last step at
+ * every lane, adjoints set.  NaN or an infinite error where T is zero. */
+bool mho_program_is_pair(const mho_plan *plan);
+void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_trace *trace,
+                             double *transmission, double *relative_error);
+
 /* Roundoff of double, and of the double-double operations used: at most 6 2^-106
  * (M. Joldes, J.-M. Muller and V. Popescu, ACM Trans. Math. Softw. 44, 15 (2017)). */
 #define ROUNDOFF_DOUBLE UNIT_ROUNDOFF

@@ -143,6 +143,29 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
   return MHO_OK;
 }
 
+/* T of all lanes and the adjoints of the Schur complements. */
+static mho_status finish_lanes(const mho_plan *plan, workspace *work, bool extended,
+                               mho_estimate *estimate)
+{
+  double transmission[PROGRAM_LANES], error[PROGRAM_LANES];
+  bool pair = mho_program_is_pair(plan);
+  if (pair) mho_program_finish_pair(plan, extended, &work->trace, transmission, error);
+  for (size_t l = 0; l < PROGRAM_LANES; l++) {
+    estimate[l] = (mho_estimate){.relative_error = INFINITY};
+    if (l >= work->lanes || work->trace.broken[l]) continue;
+    if (pair && transmission[l] > 1e-200 && (!extended || error[l] <= CONTRACT_FLOOR))
+      estimate[l] = (mho_estimate){.transmission = transmission[l],
+                                   .log10_transmission = log10(transmission[l]),
+                                   .relative_error = error[l],
+                                   .first_order = true};
+    else if (!pair || extended) {
+      mho_status status = reduced_point(plan, work, l, extended, &estimate[l]);
+      if (status != MHO_OK) return status;
+    }
+  }
+  return MHO_OK;
+}
+
 /* Runs the lanes that wait and settles those that keep the contract; the
  * others stay, moved together. */
 static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
@@ -156,12 +179,8 @@ static mho_status run_program(const mho_plan *plan, workspace *work, bool extend
   (extended ? mho_program_forward_extended : mho_program_forward_double)(
       plan->program, work->energy_ev, plan->norm_ev, trace);
   mho_estimate estimate[PROGRAM_LANES];
-  for (size_t l = 0; l < PROGRAM_LANES; l++) {
-    estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (l < work->lanes && !trace->broken[l] &&
-        reduced_point(plan, work, l, extended, &estimate[l]) != MHO_OK)
-      return MHO_ERR_MEMORY;
-  }
+  mho_status status = finish_lanes(plan, work, extended, estimate);
+  if (status != MHO_OK) return status;
   mho_program_backward(plan->program, work->energy_ev,
                        extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE, trace);
   size_t left = 0;
@@ -253,7 +272,7 @@ static mho_status evaluate(const mho_plan *plan, workspace *work, const double *
   return status;
 }
 
-static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+static mho_status sweep_wide_band(const mho_plan *plan, workspace *work, size_t count,
                         const double *energy_ev, mho_point *point)
 {
   mho_status status = MHO_OK;
@@ -264,6 +283,38 @@ static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
     status = evaluate(plan, work, energy_ev, i,
                       count - i < SPECTRUM_LANES ? count - i : SPECTRUM_LANES, point);
   return status == MHO_OK ? settle(plan, work, point) : status;
+}
+
+/* With chains as electrodes every energy has its own Gamma and shift. */
+static mho_status sweep_chains(const mho_plan *plan, workspace *work, size_t count,
+                               const double *energy_ev, mho_point *point)
+{
+  size_t m = (size_t)plan->channels;
+  double *sigma = malloc(2 * m * sizeof *sigma);
+  if (!sigma) return MHO_ERR_MEMORY;
+  mho_plan at_energy = *plan, contacts;
+  at_energy.coupling_ev = sigma;
+  at_energy.shift_ev = sigma + m;
+  if (plan->contacts) {
+    contacts = *plan->contacts;
+    contacts.coupling_ev = sigma;
+    contacts.shift_ev = sigma + m;
+    at_energy.contacts = &contacts;
+  }
+  mho_status status = MHO_OK;
+  for (size_t i = 0; status == MHO_OK && i < count; i++)
+    if (mho_plan_electrodes(plan, energy_ev[i], sigma, sigma + m))
+      status = sweep_wide_band(&at_energy, work, 1, energy_ev + i, point + i);
+    else point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
+  free(sigma);
+  return status;
+}
+
+static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
+                        const double *energy_ev, mho_point *point)
+{
+  bool chains = plan->has_chain[MHO_LEFT] || plan->has_chain[MHO_RIGHT];
+  return (chains ? sweep_chains : sweep_wide_band)(plan, work, count, energy_ev, point);
 }
 
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,

@@ -8,6 +8,7 @@
 #include <sha2.h>
 
 #include "report/json.h"
+#include "study/measured.h"
 
 static json_t *input_hashes(const mho_study *study, mho_status *status, mho_error *error)
 {
@@ -60,7 +61,9 @@ mho_status mho_write_provenance(const mho_study *study, const char *command,
   object = mho_json_with(object, "inputs", input_hashes(study, &status, error));
   object = mho_json_with(object, "molecules", molecules);
   object = mho_json_with(object, "window_eV", json_real(study->window_ev));
-  object = mho_json_with(object, "seed", json_null()); /* nothing here is random */
+  /* Only the bootstrap over traces is random. */
+  object = mho_json_with(object, "seed",
+                         study->traces_count > 0 ? json_integer(MHO_STUDY_SEED) : json_null());
   if (status != MHO_OK) {
     json_decref(object);
     return status;

@@ -17,6 +17,7 @@
 #include "report/json.h"
 #include "report/stages.h"
 #include "study/folder.h"
+#include "study/measured.h"
 #include "study/provenance.h"
 #include "study/study.h"
 
@@ -39,6 +40,10 @@ typedef struct {
   mho_conductance *conductance;
   mho_comparison *comparison;
   mho_agreement agreement;
+  mho_measured_traces *measured; /* [traces_count of the study] */
+  mho_measured_peak *peak;       /* those of the study, then those of traces */
+  int peak_count;
+  bool compare;
   mho_output output;
   char *answer[ANSWERS_MAX];
   size_t answers;
@@ -132,6 +137,52 @@ static mho_status build_junctions(run *r, mho_error *error)
   return result;
 }
 
+static mho_status read_traces(run *r, mho_error *error)
+{
+  const mho_study *s = r->study;
+  for (int i = 0; i < s->peak_count; i++) r->peak[r->peak_count++] = s->peak[i];
+  for (int i = 0; i < s->traces_count; i++) {
+    mho_status status = step(r, "traces", error);
+    if (status == MHO_OK)
+      status = mho_measured_read(&s->traces[i], r->options->cancel, &r->measured[i], error);
+    if (status != MHO_OK) return status;
+    if (mho_measured_peak_of(&s->traces[i], &r->measured[i], &r->peak[r->peak_count]))
+      r->peak_count++;
+  }
+  return MHO_OK;
+}
+
+/* Traces may show no peak, and then there is less to compare, or nothing. */
+static mho_status compare(run *r, mho_error *error)
+{
+  const mho_study *s = r->study;
+  bool measured = false;
+  for (int i = 0; i < r->peak_count; i++)
+    measured |= s->reference < 0 || r->peak[i].molecule == s->reference;
+  r->compare = s->compare && measured;
+  if (s->compare && !measured)
+    mho_output_note(&r->output, "no comparison: %s",
+                    s->reference < 0 ? "no traces show a peak"
+                                     : "the traces of the reference show no peak");
+  if (!r->compare) return MHO_OK;
+  return mho_compare_ratios(r->conductance, s->molecule_count, r->peak, r->peak_count,
+                            s->reference, r->comparison, &r->agreement, error);
+}
+
+static void fill_traces_table(run *r)
+{
+  const mho_study *s = r->study;
+  mho_table *table = s->traces_count > 0 ? mho_traces_table(&r->output) : NULL;
+  for (int i = 0; i < s->traces_count; i++) {
+    const char *name = s->molecule[s->traces[i].molecule].name;
+    mho_traces_rows(table, name, r->measured[i].traces, r->measured[i].rejected,
+                    &r->measured[i].peaks);
+    mho_output_note(&r->output, "traces of %s:", name);
+    mho_reading_note(&r->output, &r->measured[i].report,
+                     mho_trace_floor_g0(&s->traces[i].options));
+  }
+}
+
 static void fill_tables(run *r)
 {
   const mho_study *s = r->study;
@@ -150,7 +201,8 @@ static void fill_tables(run *r)
                   "conductance is the thermal value at the Fermi level; the window values are its "
                   "5 %% and 95 %% quantiles over +-%g eV around it",
                   s->window_ev);
-  if (!s->compare) return;
+  fill_traces_table(r);
+  if (!r->compare) return;
   table = mho_compare_table(&r->output);
   for (int i = 0; i < s->molecule_count; i++)
     if (r->comparison[i].has_measured)
@@ -176,9 +228,30 @@ static void answer_comparison(run *r)
                           a->compared > 1 ? "s" : "", a->rms_decades, pow(10, a->rms_decades),
                           SCREEN_NAME, molecule[a->largest].name, a->largest_decades));
   if (a->pairs > 0)
-    say(r, mho_print_text("Of the %d pairs that the measurement tells apart, the model puts %d in "
-                          "the measured order.",
-                          a->pairs, a->ordered));
+    say(r, mho_print_text("Of %d pair%s that the measurement tells apart, the model puts %d in the "
+                          "measured order.",
+                          a->pairs, a->pairs == 1 ? "" : "s", a->ordered));
+}
+
+static void answer_traces(run *r)
+{
+  const mho_study *s = r->study;
+  for (int i = 0; i < s->traces_count; i++) {
+    const mho_measured_traces *m = &r->measured[i];
+    const mho_peak *peak = mho_main_peak(&m->peaks);
+    const char *name = s->molecule[s->traces[i].molecule].name;
+    unsigned long long traces = m->traces, rejected = m->rejected;
+    if (peak)
+      say(r, mho_print_text("The traces of %.*s peak at %.2g G0 (95 %%: %.2g to %.2g G0) in the "
+                            "log histogram; %llu of %llu show tunnelling only.%s",
+                            SCREEN_NAME, name, pow(10, peak->log10_g0), pow(10, peak->low),
+                            pow(10, peak->high), rejected, traces,
+                            peak->drift_p < 0.05 ? " The peak drifts from their first half to "
+                                                   "their second." : ""));
+    else
+      say(r, mho_print_text("The %llu traces of %.*s show no peak: there is no measured value.",
+                            traces, SCREEN_NAME, name));
+  }
 }
 
 static void answer(run *r)
@@ -204,7 +277,8 @@ static void answer(run *r)
     say(r, mho_print_text("%d of %d molecules have a node or no pi path at the Fermi level: no "
                           "value is predicted for %s.",
                           nodes, s->molecule_count, nodes > 1 ? "them" : "it"));
-  if (s->compare) answer_comparison(r);
+  if (r->compare) answer_comparison(r);
+  answer_traces(r);
 }
 
 static mho_status add_figure(run *r, const char *section, char *file, char *caption,
@@ -262,7 +336,7 @@ static mho_status draw_transmission(run *r, int first, int count, mho_error *err
                            .count = r->outcome[i].count,
                            .energy_ev = r->outcome[i].energy_ev,
                            .point = r->outcome[i].point,
-                           .has_measured = r->study->compare && m->has_measured,
+                           .has_measured = r->compare && m->has_measured,
                            .measured_log10_g0 = m->measured_log10_g0};
     measured |= curve[c].has_measured;
     curve[c].measured_low = m->has_spread ? m->measured_low : m->measured_log10_g0;
@@ -304,10 +378,24 @@ static mho_status draw_comparison(run *r, mho_error *error)
   return status;
 }
 
+static mho_status draw_traces(run *r, int index, mho_error *error)
+{
+  const mho_study *s = r->study;
+  mho_figure *figure = NULL;
+  mho_status status = add_figure(
+      r, "traces", mho_print_text("traces-%d.svg", index + 1),
+      mho_print_text("Log histogram of the traces of %.*s that show more than tunnelling.",
+                     SCREEN_NAME, s->molecule[s->traces[index].molecule].name),
+      &figure, error);
+  return status == MHO_OK ? draw(r, &r->measured[index].figure, figure, error) : status;
+}
+
 static mho_status draw_figures(run *r, mho_error *error)
 {
   mho_status status = MHO_OK;
-  if (r->study->compare) status = draw_comparison(r, error);
+  if (r->compare) status = draw_comparison(r, error);
+  for (int i = 0; status == MHO_OK && i < r->study->traces_count && !r->without_gnuplot; i++)
+    status = draw_traces(r, i, error);
   int count = r->study->molecule_count;
   for (int i = 0; status == MHO_OK && i < count && !r->without_gnuplot; i += MHO_CURVES_MAX) {
     status = step(r, "figures", error);
@@ -407,11 +495,10 @@ static mho_status execute(run *r, mho_error *error)
 {
   const mho_study *s = r->study;
   mho_status status = build_junctions(r, error);
+  if (status == MHO_OK) status = read_traces(r, error);
   for (int i = 0; status == MHO_OK && i < s->molecule_count; i++)
     status = compute_molecule(r, i, error);
-  if (status == MHO_OK && s->compare)
-    status = mho_compare_ratios(r->conductance, s->molecule_count, s->peak, s->peak_count,
-                                s->reference, r->comparison, &r->agreement, error);
+  if (status == MHO_OK) status = compare(r, error);
   if (status != MHO_OK) return status;
   fill_tables(r);
   answer(r);
@@ -432,6 +519,8 @@ static void run_clear(run *r)
     free(r->outcome[i].energy_ev);
     free(r->outcome[i].point);
   }
+  for (int i = 0; r->measured && i < r->study->traces_count; i++)
+    mho_measured_clear(&r->measured[i]);
   for (size_t i = 0; i < r->answers; i++) free(r->answer[i]);
   for (size_t i = 0; i < r->figures; i++) {
     free(r->figure[i].file);
@@ -442,6 +531,8 @@ static void run_clear(run *r)
   free(r->outcome);
   free(r->conductance);
   free(r->comparison);
+  free(r->measured);
+  free(r->peak);
   mho_output_clear(&r->output);
   mho_folder_close(&r->folder);
 }
@@ -452,13 +543,16 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   size_t n = (size_t)study->molecule_count;
   static const mho_run_options nothing = {0};
   run r = {.study = study, .options = options ? options : &nothing};
-  r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2;
+  r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
+            study->traces_count;
   r.outcome = calloc(n, sizeof *r.outcome);
   r.conductance = calloc(n, sizeof *r.conductance);
   r.comparison = calloc(n, sizeof *r.comparison);
+  r.measured = calloc((size_t)study->traces_count + 1, sizeof *r.measured);
+  r.peak = calloc((size_t)(study->peak_count + study->traces_count) + 1, sizeof *r.peak);
   char *target = r.options->folder ? mho_copy_text(r.options->folder) : default_folder(study);
   mho_status status =
-      r.outcome && r.conductance && r.comparison && target ? MHO_OK : fail_memory(error);
+      r.outcome && r.conductance && r.comparison && r.measured && r.peak && target ? MHO_OK : fail_memory(error);
   if (status == MHO_OK) status = mho_folder_open(target, &r.folder, error);
   if (status == MHO_OK) status = execute(&r, error);
   run_clear(&r);

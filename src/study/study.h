@@ -8,11 +8,20 @@
 #include <mho/compare.h>
 #include <mho/molecule.h>
 #include <mho/study.h>
+#include <mho/traces.h>
 
 typedef struct {
   char *path; /* as opened */
   char *name; /* as the study names it */
 } mho_study_input;
+
+/* Traces of one molecule. */
+typedef struct {
+  int molecule;
+  mho_trace_options options; /* columns is owned */
+  char **path;
+  size_t paths;
+} mho_study_traces;
 
 struct mho_study {
   char *path, *title;
@@ -23,6 +32,8 @@ struct mho_study {
   int input_count;
   mho_measured_peak *peak;
   int peak_count;
+  mho_study_traces *traces;
+  int traces_count;
   /* questions */
   bool has_energies;
   double energy_low_ev, energy_high_ev;

@@ -104,26 +104,32 @@ static int compare_paths(const void *a, const void *b)
   return strcmp(*(char *const *)a, *(char *const *)b);
 }
 
-/* A file, or a pattern of files in bytewise order. */
-static void read_molecule_files(reader *r, const mho_yaml_node *node)
+/* A file, or a pattern of files in bytewise order; glob's to free where true. */
+static bool find_files(reader *r, const mho_yaml_node *node, const char *field, glob_t *found)
 {
   const char *name;
-  if (!mho_yaml_get_text(&r->yaml, node, "file", &name)) return;
+  if (!mho_yaml_get_text(&r->yaml, node, field, &name)) return false;
   char *path = mho_path_beside(r->yaml.file, name);
-  glob_t found = {0};
-  int code = path ? glob(path, GLOB_NOSORT, NULL, &found) : GLOB_NOSPACE;
+  *found = (glob_t){0};
+  int code = path ? glob(path, GLOB_NOSORT, NULL, found) : GLOB_NOSPACE;
   if (code == GLOB_NOSPACE) fail_memory(r);
   else if (code == GLOB_NOMATCH && !strpbrk(name, "*?["))
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, "file",
-                  "file: '%.200s' does not exist; paths are relative to the study", path);
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, field,
+                  "%s: '%.200s' does not exist; paths are relative to the study", field, path);
   else if (code != 0)
-    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, "file",
-                  "file: no file matches '%.200s'; paths are relative to the study", path);
-  if (code == 0) qsort(found.gl_pathv, found.gl_pathc, sizeof *found.gl_pathv, compare_paths);
-  for (size_t i = 0; code == 0 && i < found.gl_pathc; i++)
-    read_molecule_file(r, node, found.gl_pathv[i]);
-  if (code == 0) globfree(&found);
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, field,
+                  "%s: no file matches '%.200s'; paths are relative to the study", field, path);
+  if (code == 0) qsort(found->gl_pathv, found->gl_pathc, sizeof *found->gl_pathv, compare_paths);
   free(path);
+  return code == 0;
+}
+
+static void read_molecule_files(reader *r, const mho_yaml_node *node)
+{
+  glob_t found;
+  if (!find_files(r, node, "file", &found)) return;
+  for (size_t i = 0; i < found.gl_pathc; i++) read_molecule_file(r, node, found.gl_pathv[i]);
+  globfree(&found);
 }
 
 static void read_molecules(reader *r)
@@ -204,6 +210,79 @@ static void read_peak(reader *r, const mho_yaml_node *node, mho_measured_peak *p
   if (good) r->study->peak_count++;
 }
 
+/* A conductance or a current. */
+static void read_limit(reader *r, const mho_yaml_node *node, const char *field, double *g0,
+                       double *ampere)
+{
+  if (node && node->kind == MHO_YAML_TEXT &&
+      mho_quantity_read(node->text, MHO_CURRENT, ampere, NULL, 0) == MHO_OK && *ampere > 0.0)
+    return;
+  *ampere = 0.0;
+  mho_yaml_get_quantity(&r->yaml, node, field, MHO_CONDUCTANCE, PEAK_LOW_G0, PEAK_HIGH_G0, g0);
+}
+
+static void read_trace_options(reader *r, const mho_yaml_node *node, mho_trace_options *o)
+{
+  const struct {
+    const char *name;
+    mho_dimension dimension;
+    double low, high, *value;
+  } quantity[] = {{"bias", MHO_VOLTAGE, -10, 10, &o->bias_v},
+                  {"series-resistance", MHO_RESISTANCE, 0, 1e12, &o->series_ohm},
+                  {"sampling", MHO_FREQUENCY, 1e-3, 1e10, &o->sampling_hz},
+                  {"speed", MHO_SPEED, 1e-6, 1e9, &o->speed_nm_per_s}};
+  mho_trace_options_init(o);
+  for (size_t i = 0; i < COUNT(quantity); i++)
+    mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, quantity[i].name), quantity[i].name,
+                          quantity[i].dimension, quantity[i].low, quantity[i].high,
+                          quantity[i].value);
+  read_limit(r, mho_yaml_find(node, "floor"), "floor", &o->floor_g0, &o->floor_a);
+  read_limit(r, mho_yaml_find(node, "saturation"), "saturation", &o->saturation_g0,
+             &o->saturation_a);
+  const char *columns;
+  const mho_yaml_node *names = mho_yaml_find(node, "columns");
+  if (!names || !mho_yaml_get_text(&r->yaml, names, "columns", &columns)) return;
+  o->columns = mho_copy_text(columns);
+  if (!o->columns) fail_memory(r);
+}
+
+/* The files belong to the inputs of the study. */
+static bool keep_files(reader *r, mho_study_traces *traces, const glob_t *found)
+{
+  traces->path = calloc(found->gl_pathc, sizeof *traces->path);
+  bool good = traces->path != NULL;
+  for (size_t i = 0; good && i < found->gl_pathc; i++) {
+    traces->path[i] = mho_copy_text(found->gl_pathv[i]);
+    good = traces->path[i] && add_input(r, found->gl_pathv[i], found->gl_pathv[i]);
+    traces->paths = i + 1;
+  }
+  if (!good) fail_memory(r);
+  return good;
+}
+
+static void read_traces(reader *r, const mho_yaml_node *node)
+{
+  static const char *const keys[] = {"molecule", "traces", "bias", "series-resistance", "floor",
+                                     "saturation", "columns", "sampling", "speed"};
+  mho_study *s = r->study;
+  mho_study_traces *larger = realloc(s->traces, (size_t)(s->traces_count + 1) * sizeof *larger);
+  if (!larger) {
+    fail_memory(r);
+    return;
+  }
+  s->traces = larger;
+  mho_study_traces *traces = &s->traces[s->traces_count++];
+  *traces = (mho_study_traces){0};
+  mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  read_molecule_name(r, mho_yaml_require(&r->yaml, node, "molecule"), "molecule",
+                     &traces->molecule);
+  read_trace_options(r, node, &traces->options);
+  glob_t found;
+  if (!find_files(r, mho_yaml_find(node, "traces"), "traces", &found)) return;
+  keep_files(r, traces, &found);
+  globfree(&found);
+}
+
 static void read_measured(reader *r)
 {
   const mho_yaml_node *list = mho_yaml_find(r->yaml.root, "measured");
@@ -213,8 +292,12 @@ static void read_measured(reader *r)
     fail_memory(r);
     return;
   }
-  for (size_t i = 0; i < list->count; i++)
-    read_peak(r, list->item[i], &r->study->peak[r->study->peak_count]);
+  for (size_t i = 0; i < list->count; i++) {
+    const mho_yaml_node *item = list->item[i];
+    bool raw = item->kind == MHO_YAML_MAPPING && mho_yaml_find(item, "traces");
+    if (raw) read_traces(r, item);
+    else read_peak(r, item, &r->study->peak[r->study->peak_count]);
+  }
 }
 
 static void read_transmission_question(reader *r, const mho_yaml_node *node)
@@ -248,7 +331,7 @@ static void read_questions(reader *r)
   static const char *const compare_keys[] = {"reference"};
   mho_study *s = r->study;
   const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "questions");
-  s->compare = s->peak_count > 0;
+  s->compare = s->peak_count + s->traces_count > 0;
   if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "questions")) return;
   mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
   read_transmission_question(r, mho_yaml_find(node, "transmission"));
@@ -261,13 +344,14 @@ static void read_questions(reader *r)
   const mho_yaml_node *compare = mho_yaml_find(node, "compare");
   if (!mho_yaml_is(&r->yaml, compare, MHO_YAML_MAPPING, "compare")) return;
   mho_yaml_check_keys(&r->yaml, compare, compare_keys, COUNT(compare_keys));
-  if (s->peak_count == 0)
+  if (s->peak_count + s->traces_count == 0)
     mho_yaml_fail(&r->yaml, compare, MHO_ERR_KEY, "compare",
                   "compare: there is nothing to compare with; give 'measured' values");
   const mho_yaml_node *reference = mho_yaml_find(compare, "reference");
   if (!reference || !read_molecule_name(r, reference, "reference", &s->reference)) return;
   bool measured = false;
   for (int p = 0; p < s->peak_count; p++) measured |= s->peak[p].molecule == s->reference;
+  for (int t = 0; t < s->traces_count; t++) measured |= s->traces[t].molecule == s->reference;
   if (!measured)
     mho_yaml_fail(&r->yaml, reference, MHO_ERR_REFERENCE, "reference",
                   "reference: '%.60s' has no measured value to take ratios to",
@@ -329,6 +413,12 @@ void mho_study_free(mho_study *study)
     free(study->input[i].path);
     free(study->input[i].name);
   }
+  for (int t = 0; t < study->traces_count; t++) {
+    for (size_t i = 0; i < study->traces[t].paths; i++) free(study->traces[t].path[i]);
+    free(study->traces[t].path);
+    free((char *)(size_t)study->traces[t].options.columns);
+  }
+  free(study->traces);
   free(study->molecule);
   free(study->input);
   free(study->peak);

@@ -15,7 +15,7 @@
 static mho_plan *level_plan(double level, double left, double right)
 {
   double vector[] = {1.0}, shift[] = {0.0};
-  mho_lead a = {1, &left, shift, vector}, b = {1, &right, shift, vector};
+  mho_lead a = {1, &left, shift, vector, NULL}, b = {1, &right, shift, vector, NULL};
   mho_junction junction;
   mho_plan *plan = NULL;
   assert_int_equal(mho_junction_from_hamiltonian(1, &level, 2, 0.0, &a, &b, &junction, NULL),

@@ -78,7 +78,7 @@ static void a_node_has_no_gradient(void **state)
   (void)state;
   double h[36] = {0}, one = 0.5, zero = 0, left[6] = {1}, right[6] = {0, 0, 1};
   for (int i = 0; i < 6; i++) h[i * 6 + (i + 1) % 6] = h[(i + 1) % 6 * 6 + i] = -2.7;
-  raw r = {6, h, {{1, &one, &zero, left}, {1, &one, &zero, right}}};
+  raw r = {6, h, {{1, &one, &zero, left, NULL}, {1, &one, &zero, right, NULL}}};
   mho_plan *plan = plan_of(&r, false, false);
   mho_gradient *g;
   assert_int_equal(mho_gradient_create(plan, NULL, 0, &g, NULL), MHO_OK);

@@ -58,7 +58,8 @@ static mho_point plan_value(const subject *s, const int *site, double coupling, 
   mho_point point;
   for (size_t side = 0; side < 2; side++) {
     vector[side * n + (size_t)site[side]] = 1;
-    lead[side] = (mho_lead){1, &coupling, &shift, vector + side * n};
+    lead[side] = (mho_lead){.channels = 1, .coupling_ev = &coupling, .shift_ev = &shift,
+                            .vector = vector + side * n};
   }
   assert_int_equal(mho_junction_from_hamiltonian((int)n, s->junction.hamiltonian_ev, 0, 0, &lead[0],
                                                  &lead[1], &own, NULL), MHO_OK);

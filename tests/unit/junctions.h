@@ -60,6 +60,7 @@ static inline void read_lead(const json_t *channels, int sites, mho_lead *lead)
 
 static inline void raw_read(const json_t *entry, raw *r)
 {
+  *r = (raw){0};
   r->sites = (int)json_integer_value(json_object_get(entry, "n"));
   size_t n = (size_t)r->sites;
   r->h = malloc(n * n * sizeof(double));

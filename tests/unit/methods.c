@@ -7,6 +7,8 @@
  */
 #include "junctions.h"
 
+#include <pthread.h>
+
 #include <mho/nodes.h>
 
 #define BETA (-2.7)
@@ -24,7 +26,7 @@ static raw random_junction(int sites, double gamma[2], double *zero, double *vec
 {
   static const double onsite[] = {0, 0, 0, 0, 0.51, 1.37};
   size_t n = (size_t)sites;
-  raw r = {sites, calloc(n * n, sizeof(double)), {{0}, {0}}};
+  raw r = {.sites = sites, .h = calloc(n * n, sizeof(double))};
   for (size_t i = 0; i < n; i++) r.h[i * n + i] = BETA * onsite[(size_t)(6 * uniform())];
   for (size_t i = 1; i < n; i++)
     for (int bond = 0; bond < 2; bond++) {
@@ -37,7 +39,7 @@ static raw random_junction(int sites, double gamma[2], double *zero, double *vec
   vectors[left] = vectors[n + right] = 1;
   for (int side = 0; side < 2; side++) {
     gamma[side] = pow(10, -9 + 10 * uniform());
-    r.lead[side] = (mho_lead){1, &gamma[side], zero, vectors + (side ? n : 0)};
+    r.lead[side] = (mho_lead){1, &gamma[side], zero, vectors + (side ? n : 0), NULL};
   }
   return r;
 }
@@ -117,7 +119,7 @@ static mho_plan *chain_plan(int sites, double gamma)
   double zero = 0, *left = calloc(n, sizeof(double)), *right = calloc(n, sizeof(double));
   for (int i = 0; i + 1 < sites; i++) entry[i] = (mho_entry){i, i + 1, BETA};
   left[0] = right[n - 1] = 1;
-  mho_lead lead[2] = {{1, &gamma, &zero, left}, {1, &gamma, &zero, right}};
+  mho_lead lead[2] = {{1, &gamma, &zero, left, NULL}, {1, &gamma, &zero, right, NULL}};
   mho_plan *plan;
   assert_int_equal(mho_plan_create_sparse(sites, entry, n - 1, &lead[0], &lead[1], &plan, NULL),
                    MHO_OK);
@@ -186,11 +188,57 @@ static void results_do_not_depend_on_the_company(void **state)
   mho_plan_free(plan);
 }
 
+enum { SHARED_ENERGIES = 400, THREADS = 4 };
+
+typedef struct {
+  const mho_plan *plan;
+  const double *energy;
+  const mho_point *expected;
+  int different;
+} shared_work;
+
+static void *sweep_many_times(void *argument)
+{
+  shared_work *work = argument;
+  mho_point point[SHARED_ENERGIES];
+  for (int repeat = 0; repeat < 20; repeat++) {
+    if (mho_transmission_sweep(work->plan, SHARED_ENERGIES, work->energy, point, NULL) != MHO_OK)
+      work->different++;
+    for (int i = 0; i < SHARED_ENERGIES; i++)
+      work->different += point[i].log10_transmission != work->expected[i].log10_transmission ||
+                         point[i].method != work->expected[i].method;
+  }
+  return NULL;
+}
+
+static void threads_share_a_plan(void **state)
+{
+  (void)state;
+  double gamma[2], zero = 0, vectors[2 * 40], energy[SHARED_ENERGIES];
+  raw r = random_junction(40, gamma, &zero, vectors);
+  mho_plan *plan = plan_of(&r, false, false);
+  mho_point expected[SHARED_ENERGIES];
+  for (int i = 0; i < SHARED_ENERGIES; i++) energy[i] = -4 + 8.0 * i / SHARED_ENERGIES;
+  assert_int_equal(mho_transmission_sweep(plan, SHARED_ENERGIES, energy, expected, NULL), MHO_OK);
+  pthread_t thread[THREADS];
+  shared_work work[THREADS];
+  for (int k = 0; k < THREADS; k++) {
+    work[k] = (shared_work){plan, energy, expected, 0};
+    assert_int_equal(pthread_create(&thread[k], NULL, sweep_many_times, &work[k]), 0);
+  }
+  for (int k = 0; k < THREADS; k++) {
+    pthread_join(thread[k], NULL);
+    assert_int_equal(work[k].different, 0);
+  }
+  mho_plan_free(plan);
+  free(r.h);
+}
+
 static void sparse_plans_refuse_bad_entries(void **state)
 {
   (void)state;
   double gamma = 1, zero = 0, vector[2] = {1, 0};
-  mho_lead lead = {1, &gamma, &zero, vector}, none = {0};
+  mho_lead lead = {1, &gamma, &zero, vector, NULL}, none = {0};
   mho_plan *plan;
   mho_entry good = {0, 1, 1.0}, order = {1, 0, 1.0}, outside = {0, 2, 1.0}, bad = {0, 1, NAN};
   assert_int_equal(mho_plan_create_sparse(2, &order, 1, &lead, &lead, &plan, NULL), MHO_ERR_SIZE);
@@ -208,6 +256,7 @@ int main(void)
       cmocka_unit_test(methods_agree_on_random_graphs),
       cmocka_unit_test(long_chains_follow_the_closed_form),
       cmocka_unit_test(results_do_not_depend_on_the_company),
+      cmocka_unit_test(threads_share_a_plan),
       cmocka_unit_test(sparse_plans_refuse_bad_entries),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);

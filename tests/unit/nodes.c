@@ -27,7 +27,7 @@ static mho_plan *junction_plan(const graph *g, int left, int right, double gamma
 {
   double zero = 0, vector[2][SITES_MAX] = {{0}};
   vector[0][left] = vector[1][right] = 1;
-  raw r = {g->sites, (double *)g->h, {{1, &gamma, &zero, vector[0]}, {1, &gamma, &zero, vector[1]}}};
+  raw r = {g->sites, (double *)g->h, {{1, &gamma, &zero, vector[0], NULL}, {1, &gamma, &zero, vector[1], NULL}}};
   return plan_of(&r, false, false);
 }
 
@@ -242,7 +242,7 @@ static void independent_channels_report_minima(void **state)
   ring(&g, 0, 6);
   double gamma[2] = {0.5, 0.5}, zero[2] = {0}, left[12] = {[0] = 1, [6 + 1] = 1};
   double right[6] = {0, 0, 0, 1};
-  raw r = {6, g.h, {{2, gamma, zero, left}, {1, gamma, zero, right}}};
+  raw r = {6, g.h, {{2, gamma, zero, left, NULL}, {1, gamma, zero, right, NULL}}};
   mho_plan *plan = plan_of(&r, false, false);
   mho_nodes nodes = find(plan);
   assert_true(nodes.count > 0);

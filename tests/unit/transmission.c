@@ -20,6 +20,7 @@ static int random_below(unsigned long long *state, int n)
 static void raw_reverse(const raw *from, raw *to)
 {
   size_t n = (size_t)from->sites;
+  *to = (raw){0};
   to->sites = from->sites;
   to->h = malloc(n * n * sizeof(double));
   for (size_t i = 0; i < n; i++)

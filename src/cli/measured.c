@@ -1,0 +1,273 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * What `histogram` and `blink` share: options of measured traces, a bar over
+ * bytes, and figures.
+ */
+#include <errno.h>
+#include <math.h>
+#include <omp.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <time.h>
+#include <unistd.h>
+
+#include "base/text.h"
+#include "cli/command.h"
+#include "report/figure.h"
+
+#define G0_LOW 1e-15
+#define G0_HIGH 1e3
+
+void measured_options_init(measured_options *options)
+{
+  *options = (measured_options){0};
+  mho_trace_options_init(&options->traces);
+  mho_histogram_options_init(&options->histogram);
+  mho_telegraph_options_init(&options->blink);
+}
+
+static const struct {
+  const char *name;
+  measured_table table;
+} selectors[] = {
+    {"map", MEASURED_MAP},           {"peaks", MEASURED_PEAKS},
+    {"comb", MEASURED_COMB},         {"plateaus", MEASURED_PLATEAUS},
+    {"linear", MEASURED_LINEAR},     {"clusters", MEASURED_CLUSTERS},
+    {"flicker", MEASURED_FLICKER},   {"correlation", MEASURED_CORRELATION},
+    {"steps", MEASURED_STEPS},       {"dwells", MEASURED_DWELLS},
+};
+
+/* EXIT_RUNTIME where the option is no selector. */
+static int read_selector(command *cmd, const char *name)
+{
+  const char *before = NULL;
+  for (size_t i = 0; i < sizeof selectors / sizeof *selectors; i++)
+    if (selectors[i].table == cmd->measured.table) before = selectors[i].name;
+  for (size_t i = 0; i < sizeof selectors / sizeof *selectors; i++) {
+    if (strcmp(selectors[i].name, name)) continue;
+    if (before && selectors[i].table != cmd->measured.table)
+      return usage_error(cmd->verb, "--%s and --%s exclude each other; one table a call", before,
+                         name);
+    cmd->measured.table = selectors[i].table;
+    return EXIT_DONE;
+  }
+  return EXIT_RUNTIME;
+}
+
+static int read_flag(command *cmd, const char *name)
+{
+  measured_options *m = &cmd->measured;
+  const struct { const char *name; bool *flag, value; } flags[] = {
+      {"all", &m->all, true},
+      {"rows", &m->traces.rows_are_traces, true},
+      {"keep-going", &m->traces.keep_going, true},
+      {"no-drift", &m->blink.drift, false}};
+  for (size_t i = 0; i < sizeof flags / sizeof *flags; i++)
+    if (!strcmp(flags[i].name, name)) *flags[i].flag = flags[i].value;
+  return EXIT_DONE;
+}
+
+/* `LOW, HIGH` */
+static int read_range(const command *cmd, const char *name, const char *text,
+                      mho_dimension dimension, double least, double most, double *low,
+                      double *high)
+{
+  const char *comma = strchr(text, ',');
+  if (!comma || strchr(comma + 1, ','))
+    return usage_error(cmd->verb, "--%s: '%s' is not a range; write 'LOW, HIGH', each with its "
+                                  "unit", name, text);
+  char *first = mho_print_text("%.*s", (int)(comma - text), text);
+  if (!first) return usage_error(cmd->verb, "out of memory");
+  int code = read_quantity(cmd->verb, name, first, dimension, least, most, low);
+  free(first);
+  if (code == EXIT_DONE)
+    code = read_quantity(cmd->verb, name, comma + 1, dimension, least, most, high);
+  if (code == EXIT_DONE && !(*low < *high))
+    return usage_error(cmd->verb, "--%s: '%s' runs downwards; the lower end comes first", name,
+                       text);
+  return code;
+}
+
+static int read_conductances(command *cmd, const char *text)
+{
+  mho_histogram_options *h = &cmd->measured.histogram;
+  double low, high;
+  int code = read_range(cmd, "conductances", text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &low, &high);
+  if (code != EXIT_DONE) return code;
+  /* Whole bins: outwards to a tenth of a decade. */
+  h->low_log10_g0 = floor(log10(low) * 10 + 1e-9) / 10;
+  h->high_log10_g0 = ceil(log10(high) * 10 - 1e-9) / 10;
+  h->linear_high_g0 = high;
+  return EXIT_DONE;
+}
+
+/* A conductance or a current. */
+static int read_limit(const command *cmd, const char *name, const char *text, double *g0,
+                      double *ampere)
+{
+  if (mho_quantity_read(text, MHO_CURRENT, ampere, NULL, 0) == MHO_OK)
+    return read_quantity(cmd->verb, name, text, MHO_CURRENT, 1e-18, 1, ampere);
+  return read_quantity(cmd->verb, name, text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, g0);
+}
+
+static int read_trace_quantity(command *cmd, const char *text)
+{
+  static const struct { const char *name; mho_trace_quantity quantity; } known[] = {
+      {"conductance_G0", MHO_TRACE_G0}, {"conductance_S", MHO_TRACE_SIEMENS},
+      {"log10_G0", MHO_TRACE_LOG10_G0}, {"current_A", MHO_TRACE_AMPERE}};
+  for (size_t i = 0; i < sizeof known / sizeof *known; i++) {
+    if (strcmp(known[i].name, text)) continue;
+    cmd->measured.traces.quantity = known[i].quantity;
+    return EXIT_DONE;
+  }
+  return usage_error(cmd->verb, "--quantity: '%s' is not known; allowed are conductance_G0, "
+                                "conductance_S, log10_G0 and current_A", text);
+}
+
+static int read_single(command *cmd, const char *name, const char *text)
+{
+  measured_options *m = &cmd->measured;
+  const struct {
+    const char *name;
+    mho_dimension dimension;
+    double low, high, *value;
+  } quantities[] = {
+      {"bias", MHO_VOLTAGE, -10, 10, &m->traces.bias_v},
+      {"series-resistance", MHO_RESISTANCE, 0, 1e12, &m->traces.series_ohm},
+      {"sampling", MHO_FREQUENCY, 1e-3, 1e10, &m->traces.sampling_hz},
+      {"speed", MHO_SPEED, 1e-6, 1e9, &m->traces.speed_nm_per_s},
+      {"crossing", MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &m->histogram.crossing_g0},
+      {"snap-back", MHO_LENGTH, 0, 100, &m->histogram.snap_back_nm},
+      {"plateau-length", MHO_LENGTH, 0, 100, &m->histogram.plateau_nm},
+      {"bandwidth", MHO_FREQUENCY, 1e-3, 1e10, &m->blink.bandwidth_hz},
+      {"dead-time", MHO_TIME, 0, 1e6, &m->blink.dead_time_s}};
+  for (size_t i = 0; i < sizeof quantities / sizeof *quantities; i++)
+    if (!strcmp(quantities[i].name, name))
+      return read_quantity(cmd->verb, name, text, quantities[i].dimension, quantities[i].low,
+                           quantities[i].high, quantities[i].value);
+  return EXIT_RUNTIME;
+}
+
+static int read_number(command *cmd, const char *name, const char *text)
+{
+  long value;
+  int code;
+  if (!strcmp(name, "bins")) {
+    code = read_count(cmd->verb, name, text, 1, 1000, &value);
+    if (code == EXIT_DONE) cmd->measured.histogram.bins_per_decade = (int)value;
+  } else if (!strcmp(name, "levels")) {
+    code = read_count(cmd->verb, name, text, 1, MHO_LEVEL_LIMIT, &value);
+    if (code == EXIT_DONE) cmd->measured.blink.levels = (int)value;
+  } else {
+    code = read_count(cmd->verb, name, text, 1, 1024, &value);
+    if (code == EXIT_DONE) omp_set_num_threads((int)value);
+  }
+  return code;
+}
+
+static int read_figure(command *cmd, const char *text)
+{
+  size_t length = strlen(text);
+  if (length < 5 || strcmp(text + length - 4, ".svg"))
+    return usage_error(cmd->verb, "--figure: '%s' is not allowed; the name ends in .svg", text);
+  cmd->measured.figure = text;
+  return EXIT_DONE;
+}
+
+int read_measured_option(command *cmd, const char *name, const char *text)
+{
+  measured_options *m = &cmd->measured;
+  if (!text) {
+    int code = read_selector(cmd, name);
+    return code == EXIT_RUNTIME ? read_flag(cmd, name) : code;
+  }
+  int code = read_single(cmd, name, text);
+  if (code != EXIT_RUNTIME) return code;
+  if (!strcmp(name, "floor"))
+    return read_limit(cmd, name, text, &m->traces.floor_g0, &m->traces.floor_a);
+  if (!strcmp(name, "saturation"))
+    return read_limit(cmd, name, text, &m->traces.saturation_g0, &m->traces.saturation_a);
+  if (!strcmp(name, "conductances")) return read_conductances(cmd, text);
+  if (!strcmp(name, "distances"))
+    return read_range(cmd, name, text, MHO_LENGTH, -1000, 1000, &m->histogram.map_low_nm,
+                      &m->histogram.map_high_nm);
+  if (!strcmp(name, "search")) {
+    m->has_search = true;
+    return read_range(cmd, name, text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &m->search_low_g0,
+                      &m->search_high_g0);
+  }
+  if (!strcmp(name, "quantity")) return read_trace_quantity(cmd, text);
+  if (!strcmp(name, "figure")) return read_figure(cmd, text);
+  if (strcmp(name, "columns")) return read_number(cmd, name, text);
+  m->traces.columns = text;
+  return EXIT_DONE;
+}
+
+static double seconds_now(void)
+{
+  struct timespec now;
+  clock_gettime(CLOCK_MONOTONIC, &now);
+  return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
+}
+
+static bool show_bytes(void *context, uint64_t bytes, uint64_t total)
+{
+  enum { BAR = 24 };
+  byte_progress *progress = context;
+  double now = seconds_now();
+  if (now < progress->start) return true;
+  progress->start = now + 0.1; /* of the next drawing */
+  progress->shown = true;
+  int filled = total > 0 && bytes < total ? (int)(BAR * bytes / total) : BAR;
+  fprintf(stderr, "\r\033[K[%.*s%.*s] %.0f of %.0f MB", filled, "########################",
+          BAR - filled, "........................", (double)bytes / 1e6, (double)total / 1e6);
+  return true;
+}
+
+void begin_byte_progress(const command *cmd, byte_progress *progress, mho_trace_options *traces)
+{
+  *progress = (byte_progress){.start = seconds_now() + 1.0};
+  if (cmd->quiet || !isatty(STDERR_FILENO)) return;
+  traces->progress = show_bytes;
+  traces->context = progress;
+}
+
+void end_byte_progress(const byte_progress *progress)
+{
+  if (progress->shown) fprintf(stderr, "\r\033[K");
+}
+
+mho_status check_any_file(const mho_trace_report *report)
+{
+  return report->failed_files < report->files ? MHO_OK : MHO_ERR_FILE; /* told already */
+}
+
+static mho_status fail_write(const char *path, mho_error *error)
+{
+  return mho_fail_at(error, MHO_ERR_WRITE, "cli", path, 0, 0, "figure", "cannot be written: %s",
+                     strerror(errno));
+}
+
+mho_status figure_write(const command *cmd, const mho_buffer *script, mho_error *error)
+{
+  const char *path = cmd->measured.figure, *folder = getenv("TMPDIR");
+  FILE *file = fopen(path, "w"); /* gnuplot could not say why */
+  if (!file || fclose(file) != 0) return fail_write(path, error);
+  char *name = mho_print_text("%s/mho-figure-XXXXXX", folder && *folder ? folder : "/tmp");
+  int handle = name ? mkstemp(name) : -1;
+  bool available = true;
+  mho_status status = MHO_OK;
+  if (!name) status = mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  else if (handle < 0) status = fail_write(name, error);
+  else {
+    close(handle);
+    status = mho_buffer_save(script, name, "cli", error);
+    if (status == MHO_OK) status = mho_figure_render(name, path, &available, error);
+    remove(name);
+  }
+  if (status != MHO_OK || !available) remove(path);
+  if (!available) fprintf(stderr, "mho %s: gnuplot was not found: no figure\n", cmd->verb);
+  free(name);
+  return status;
+}

@@ -1,0 +1,164 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <mho/inside.h>
+
+#include <math.h>
+#include <stdlib.h>
+
+#include "base/lapack.h"
+#include "solver/plan.h"
+
+typedef struct {
+  const mho_junction *junction;
+  const mho_plan *plan;
+  double complex *y;   /* [channels][sites] */
+  double complex *tau; /* [left][right] */
+} view;
+
+static void find_currents(const mho_plan *plan, const mho_elimination_quad *w,
+                          mho_inside *result)
+{
+  for (size_t e = 0; e < plan->entries; e++) {
+    int i = plan->entry[e].i, j = plan->entry[e].j;
+    if (i == j) continue;
+    double flow = 2 * plan->entry[e].value_ev * mho_elimination_flow_quad(plan, w, i, j);
+    result->bond[result->bonds++] = (mho_bond_current){i, j, flow};
+  }
+}
+
+static mho_status solve(view *v, double energy_ev, mho_inside *result, mho_error *error)
+{
+  const mho_plan *plan = v->plan;
+  size_t n = (size_t)plan->sites, m = (size_t)plan->channels;
+  mho_elimination_quad *w = mho_elimination_create_quad(plan);
+  v->y = malloc(m * n * sizeof *v->y);
+  v->tau = calloc((size_t)plan->left * (size_t)plan->right, sizeof *v->tau);
+  mho_status status = MHO_OK;
+  if (!w || !v->y || !v->tau)
+    status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  if (status == MHO_OK) {
+    mho_estimate estimate;
+    mho_elimination_evaluate_quad(plan, w, energy_ev, &estimate);
+    mho_elimination_solutions_quad(plan, w, v->y);
+    find_currents(plan, w, result);
+  }
+  mho_elimination_free_quad(w);
+  for (size_t pair = 0; status == MHO_OK && pair < (size_t)plan->left * (size_t)plan->right; pair++) {
+    size_t a = pair / (size_t)plan->right, b = pair % (size_t)plan->right + (size_t)plan->left;
+    for (size_t k = plan->support_start[b]; k < plan->support_start[b + 1]; k++) {
+      size_t i = (size_t)plan->support[k];
+      v->tau[pair] += plan->vector[b * n + i] * v->y[a * n + i];
+    }
+  }
+  return status;
+}
+
+/* Orbital k's part of tau, and its shares of T. */
+static void find_orbitals(const view *v, mho_inside *result)
+{
+  const mho_plan *plan = v->plan;
+  size_t n = (size_t)plan->sites, m = (size_t)plan->channels;
+  for (size_t k = 0; k < n; k++) {
+    const double *orbital = v->junction->orbital + k * n, *on_contact = plan->amplitude + k * m;
+    mho_orbital_share *share = &result->orbital[result->orbitals++];
+    *share = (mho_orbital_share){.level_ev = plan->level_ev[k]};
+    for (size_t a = 0; a < (size_t)plan->left; a++)
+      for (size_t b = (size_t)plan->left; b < m; b++) {
+        double complex in_a = 0, in_b = 0;
+        for (size_t i = 0; i < n; i++) {
+          in_a += orbital[i] * v->y[a * n + i];
+          in_b += orbital[i] * v->y[b * n + i];
+        }
+        double complex part = 0.5 * (on_contact[b] * in_a + on_contact[a] * in_b);
+        double complex tau = v->tau[a * (size_t)plan->right + b - (size_t)plan->left];
+        double weight = plan->coupling_ev[a] * plan->coupling_ev[b];
+        double alone = weight * creal(part * conj(part));
+        share->alone += alone;
+        share->interference += weight * creal(part * conj(tau)) - alone;
+      }
+  }
+}
+
+static int descending(const void *a, const void *b)
+{
+  double x = *(const double *)a, y = *(const double *)b;
+  return (x < y) - (x > y);
+}
+
+/* Eigenvalues of t^+ t, or of t t^+ where that is smaller. */
+static mho_status find_channels(const view *v, mho_inside *result, mho_error *error)
+{
+  const mho_plan *plan = v->plan;
+  size_t l = (size_t)plan->left, r = (size_t)plan->right, n = result->eigenchannels;
+  double complex *product = calloc(n * n + n, sizeof *product), *value = product + n * n;
+  if (!product) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  for (size_t p = 0; p < n; p++)
+    for (size_t q = 0; q < n; q++)
+      for (size_t k = 0; k < (l <= r ? r : l); k++) {
+        size_t first = l <= r ? p * r + k : k * r + p, second = l <= r ? q * r + k : k * r + q;
+        size_t a = l <= r ? p : k, b = l <= r ? k : p, c = l <= r ? q : k, d = l <= r ? k : q;
+        product[p * n + q] += sqrt(plan->coupling_ev[a] * plan->coupling_ev[l + b]) *
+                              sqrt(plan->coupling_ev[c] * plan->coupling_ev[l + d]) *
+                              v->tau[first] * conj(v->tau[second]);
+      }
+  mho_status status = mho_eigenvalues_complex((int)n, product, value, error);
+  for (size_t k = 0; status == MHO_OK && k < n; k++)
+    result->eigenchannel[k] = fmin(1.0, fmax(0.0, creal(value[k])));
+  if (status == MHO_OK) qsort(result->eigenchannel, n, sizeof(double), descending);
+  free(product);
+  return status;
+}
+
+static mho_status allocate(const mho_plan *plan, mho_inside *result, mho_error *error)
+{
+  result->eigenchannels = (size_t)mho_plan_channels(plan);
+  result->bond = malloc((plan->entries + 1) * sizeof *result->bond);
+  result->orbital = malloc((size_t)plan->sites * sizeof *result->orbital);
+  result->eigenchannel = calloc(result->eigenchannels, sizeof(double));
+  if (!result->bond || !result->orbital || !result->eigenchannel)
+    return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  return MHO_OK;
+}
+
+static bool is_finite(const mho_inside *result)
+{
+  double sum = result->transmission;
+  for (size_t k = 0; k < result->bonds; k++) sum += fabs(result->bond[k].flow);
+  for (size_t k = 0; k < result->orbitals; k++)
+    sum += result->orbital[k].alone + fabs(result->orbital[k].interference);
+  return isfinite(sum);
+}
+
+mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan,
+                              double energy_ev, mho_inside *result, mho_error *error)
+{
+  *result = (mho_inside){0};
+  if (junction->sites != plan->sites || !plan->level_ev)
+    return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
+                    "the plan was not made of this junction");
+  mho_status status = mho_plan_require_wide_band(plan, "inside views", error);
+  if (status != MHO_OK) return status;
+  view v = {junction, plan, NULL, NULL};
+  mho_point point;
+  status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
+  if (status == MHO_OK) status = allocate(plan, result, error);
+  if (status == MHO_OK) status = solve(&v, energy_ev, result, error);
+  if (status == MHO_OK) {
+    result->transmission = point.transmission;
+    find_orbitals(&v, result);
+    status = find_channels(&v, result, error);
+  }
+  if (status == MHO_OK && !is_finite(result))
+    status = mho_fail(error, MHO_ERR_NOT_FINITE, "solver", "inside",
+                      "the solution at %g eV leaves the range of a double", energy_ev);
+  free(v.y);
+  free(v.tau);
+  return status;
+}
+
+void mho_inside_clear(mho_inside *result)
+{
+  free(result->bond);
+  free(result->orbital);
+  free(result->eigenchannel);
+  *result = (mho_inside){0};
+}

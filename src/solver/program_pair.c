@@ -1,0 +1,59 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * The last step of a compiled elimination for contacts of one site each, all
+ * energies of a batch at once.  With the Schur complement [[a, b], [b, c]] and
+ * A = a - Sigma_L, C = c - Sigma_R, D = A C - b^2,
+ *
+ *   T = Gamma_L Gamma_R b^2 / |D|^2,
+ *   dlnT/da = -2 Re(C/D),  dlnT/dc = -2 Re(A/D),  dlnT/db = 2/b + 4 b Re(1/D).
+ */
+#include <math.h>
+
+#include "solver/processor.h"
+#include "solver/program.h"
+
+enum { L = PROGRAM_LANES };
+
+bool mho_program_is_pair(const mho_plan *plan)
+{
+  const mho_program *program = plan->program;
+  return plan->left == 1 && plan->right == 1 && program->kept == 2 &&
+         plan->support_start[1] == 1 && plan->support_start[2] == 2 &&
+         program->kept_slot[0][1] >= 0;
+}
+
+FOR_EVERY_PROCESSOR
+void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_trace *trace,
+                             double *transmission, double *relative_error)
+{
+  const mho_program *program = plan->program;
+  size_t at_a = (size_t)program->kept_slot[0][0] * L, at_b = (size_t)program->kept_slot[0][1] * L;
+  size_t at_c = (size_t)program->kept_slot[1][1] * L;
+  const double *restrict a = trace->high + at_a, *restrict b = trace->high + at_b;
+  const double *restrict c = trace->high + at_c, *restrict a_low = trace->low + at_a;
+  const double *restrict b_low = trace->low + at_b, *restrict c_low = trace->low + at_c;
+  double *restrict a_hat = trace->adjoint + at_a, *restrict b_hat = trace->adjoint + at_b;
+  double *restrict c_hat = trace->adjoint + at_c;
+  double v0 = plan->vector[plan->support[0]];
+  double v1 = plan->vector[plan->sites + plan->support[1]];
+  double x0 = plan->shift_ev[0] * v0 * v0, y0 = 0.5 * plan->coupling_ev[0] * v0 * v0;
+  double x1 = plan->shift_ev[1] * v1 * v1, y1 = 0.5 * plan->coupling_ev[1] * v1 * v1;
+#pragma GCC ivdep
+  for (int l = 0; l < L; l++) {
+    double p = a[l] - x0, q = c[l] - x1, square = b[l] * b[l];
+    double re = p * q - y0 * y1 - square, im = p * y1 + q * y0; /* D */
+    double inverse = 1.0 / (re * re + im * im), small = sqrt(inverse);
+    double t = 4 * y0 * y1 * square * inverse;
+    double to_a = -2 * (q * re + y1 * im) * inverse, to_c = -2 * (p * re + y0 * im) * inverse;
+    double to_b = 2 / b[l] + 4 * b[l] * re * inverse;
+    double size = (fabs(a[l]) + fabs(x0) + y0) * (fabs(c[l]) + fabs(x1) + y1);
+    double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
+    double low = extended ? fabs(to_a * a_low[l]) + fabs(to_b * b_low[l]) + fabs(to_c * c_low[l])
+                          : 0.0;
+    a_hat[l] = to_a;
+    b_hat[l] = to_b;
+    c_hat[l] = to_c;
+    transmission[l] = t;
+    relative_error[l] = error + low;
+  }
+}
