@@ -20,6 +20,7 @@ typedef struct {
   int atom_class; /* 0 where none is given */
   bool aromatic;  /* as written */
   bool bracket;   /* hydrogens are as written, none is implied */
+  long line;      /* in its file; 0 in a SMILES */
   long column;    /* of its first character in the text, from 1 */
 } mho_graph_atom;
 
@@ -41,6 +42,9 @@ typedef struct {
   mho_graph_bond *bond;
   int *start;           /* [atom_count + 1] into link */
   mho_graph_link *link; /* [2 * bond_count], in the order of the bonds */
+  double (*position)[3]; /* [atom_count] in angstrom where the structure is_3d,
+                            in the units of a drawing where not; or NULL */
+  bool is_3d;
 } mho_graph;
 
 /* Where a text stands: file (or NULL), and line and column of its first
@@ -48,6 +52,7 @@ typedef struct {
 typedef struct {
   const char *file;
   long line, column;
+  bool record; /* of a file of structures: atoms have lines of their own */
 } mho_place;
 
 /* Texts that a result owns: notes, warnings. */

@@ -83,6 +83,10 @@ typedef struct {
   int charge;
   mho_contact contact[2]; /* MHO_LEFT, MHO_RIGHT */
   mho_fermi fermi;
+  /* The structure that was drawn (no atoms where the file gives the sites
+   * themselves), and [site_count] the atom of each site. */
+  mho_graph graph;
+  int *site_atom;
   /* What the reader of a structure has to say. */
   int linker_count;
   mho_site_linker *linker;
@@ -90,6 +94,11 @@ typedef struct {
   unsigned warnings; /* bits of mho/warning.h */
   mho_parameter_set *own_parameters; /* of the file, if it names a set */
 } mho_molecule;
+
+/* Where a length comes from: nowhere (contacts missing, or no bonds between
+ * them), the coordinates of a file, or the planar layout with bonds of 0.14
+ * nm. */
+typedef enum { MHO_LENGTH_NONE, MHO_LENGTH_COORDINATES, MHO_LENGTH_IDEALISED } mho_length_kind;
 
 MHO_BEGIN_DECLARATIONS
 
@@ -105,6 +114,16 @@ MHO_API int mho_molecule_find_site(const mho_molecule *molecule,
 /* Energy of a site, and hopping of a bond with its twist, in eV. */
 MHO_API double mho_molecule_onsite_ev(const mho_molecule *molecule, int site);
 MHO_API double mho_molecule_hopping_ev(const mho_molecule *molecule, int bond);
+
+/* Distance between the contacts (the centres of their atoms) in nm.
+ * Errors: MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_molecule_length(const mho_molecule *molecule,
+                                                    double *length_nm,
+                                                    mho_length_kind *kind);
+
+/* Adds MHO_WARN_LONG to molecule->warnings where that exceeds 4 nm; cheap for
+ * short molecules.  Errors: MHO_ERR_MEMORY. */
+MHO_API MHO_MUST_USE mho_status mho_molecule_warn_length(mho_molecule *molecule);
 
 /* cos of an angle in degrees, exact at multiples of 90 and 60 degrees. */
 MHO_API double mho_cos_deg(double angle_deg);

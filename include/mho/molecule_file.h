@@ -31,6 +31,14 @@ MHO_API MHO_MUST_USE mho_status mho_molecule_read_smiles(
     const char *text, const mho_place *place, const mho_settings *settings,
     int charge, mho_molecule *molecule, mho_error *error);
 
+/* The molecule of one record (from 1; 0 is the only one) of a molfile, an SDF or
+ * an XYZ file, by its ending.  It is called by the record's name, or by the file's, and
+ * its notes say what was done.  Errors besides: MHO_ERR_FILE, MHO_ERR_RANGE
+ * (there is no such record, or there are several and none is named). */
+MHO_API MHO_MUST_USE mho_status mho_molecule_read_structure(
+    const char *path, long record, const mho_settings *settings, int charge,
+    mho_molecule *molecule, mho_error *error);
+
 /* Reads a parameter set (YAML): `name`, `source`, optionally `base` (a
  * built-in set to start from, van-catledge by default), `rows` of {element, h,
  * k, electrons} with k to carbon, and `pairs` of {between: [A, B], k}.  The

@@ -31,8 +31,8 @@ typedef struct {
   int zeros;       /* zeros with multiplicity, a dip counting twice */
 } mho_nodes;
 
-/* More states than this that a contact sees, and minima are searched. */
-enum { MHO_NODES_STATES_MAX = 300 };
+/* More sites than this, and minima are searched. */
+enum { MHO_NODES_STATES_MAX = 200 };
 
 MHO_BEGIN_DECLARATIONS
 

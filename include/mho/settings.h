@@ -17,11 +17,13 @@ typedef struct {
 } mho_twist;
 
 typedef struct {
-  bool has_beta, has_temperature, has_coupling, has_fermi, has_alternation, has_alkyl;
+  bool has_beta, has_temperature, has_coupling, has_fermi, has_alternation, has_alkyl,
+      has_hopping;
   double beta_ev, temperature_k, coupling_ev;
   mho_fermi fermi;
   mho_alternation alternation;
   mho_alkyl alkyl;
+  mho_hopping hopping;
   const mho_parameter_set *parameters; /* NULL: not set */
   mho_parameter_set *own_parameters;   /* read from a file; freed by clear */
   int twist_count;
@@ -36,7 +38,8 @@ MHO_BEGIN_DECLARATIONS
  * settings that own the set. */
 MHO_API void mho_settings_clear(mho_settings *settings);
 
-/* Names: beta, temperature, coupling, fermi, parameters, alternation, alkyl. */
+/* Names: beta, temperature, coupling, fermi, parameters, alternation, alkyl,
+ * hopping. */
 MHO_API const char *const *mho_settings_names(size_t *count);
 
 /* Reads one setting from text.  `parameters` is a built-in set or the path of
@@ -74,8 +77,8 @@ MHO_API const char *mho_fermi_write(const mho_fermi *fermi, char *buffer,
                                     size_t size);
 
 /* Puts what is set into a molecule: beta, temperature, Fermi level, the
- * coupling of both contacts, twists.  The parameter set, alternation and alkyl
- * groups have their effect while a molecule is built and are not touched.
+ * coupling of both contacts, twists.  The parameter set, alternation, alkyl
+ * groups and hopping have their effect while a molecule is built and are not touched.
  * Errors: MHO_ERR_REFERENCE (a twist's bond does not exist). */
 MHO_API MHO_MUST_USE mho_status mho_settings_apply(const mho_settings *settings,
                                                    mho_molecule *molecule,

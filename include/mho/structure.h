@@ -24,6 +24,11 @@ typedef enum {
  * them single and double, or all with k = 1. */
 typedef enum { MHO_ALTERNATION_FORMAL, MHO_ALTERNATION_NONE } mho_alternation;
 
+/* Hopping of a C-C bond from the parameter set and the alternation, or from
+ * its length: beta(r) = beta exp[-(r - 1.397 A)/0.2623 A] (J. Phys. Org. Chem.
+ * 2020, poc.4153), which needs coordinates in space. */
+typedef enum { MHO_HOPPING_TABLE, MHO_HOPPING_BOND_LENGTH } mho_hopping;
+
 /* A dihedral angle that replaces the estimate; atoms by name, `C5`. */
 typedef struct {
   const char *atom[2];
@@ -35,6 +40,7 @@ typedef struct {
   double beta_ev;
   mho_alkyl alkyl;
   mho_alternation alternation;
+  mho_hopping hopping;
   double coupling_ev; /* of both contacts; 0 takes each linker's default */
   int charge;         /* on top of the charges that are drawn */
   int twist_count;
@@ -76,7 +82,11 @@ MHO_API MHO_MUST_USE mho_status mho_structure_read_smiles(
     const char *text, const mho_structure_options *options,
     mho_molecule *molecule, mho_structure *structure, mho_error *error);
 
-/* The same for structure->graph, however it was read. */
+/* The same for structure->graph, however it was read.  Of separate parts only
+ * the largest conjugated one is taken, unless atom classes mark contacts in
+ * several.  With coordinates in space, rotatable bonds have their dihedral
+ * angles.  Errors besides: MHO_ERR_REFERENCE (hopping from lengths, and there
+ * are no coordinates). */
 MHO_API MHO_MUST_USE mho_status mho_molecule_from_graph(
     mho_structure *structure, const mho_structure_options *options,
     mho_molecule *molecule, mho_error *error);

@@ -41,6 +41,7 @@ typedef struct {
   output_format format;
   bool exact, quiet, verbose, poles, nodes, sensitivity;
   const char *output; /* -o, or NULL */
+  const char *drawing; /* --draw, or NULL; "-" is stdout */
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;
@@ -105,9 +106,9 @@ typedef struct {
 } subjects;
 
 /* Reads every argument of the command: a molecule file, a list of SMILES
- * (.smi, .csv), or else a SMILES itself.  Names must differ; in a list the row
- * is added where they do not.  A bad row of a list is told on stderr and left
- * out.  With need_contacts a molecule without two contacts is an error.  The
+ * (.smi, .csv), structures (.mol, .sdf, .xyz), or else a SMILES itself.  Names
+ * must differ; in a list the row, in an SDF the record is added where they do
+ * not.  A bad row or record of many is told on stderr and left out.  With need_contacts a molecule without two contacts is an error.  The
  * caller frees, also after a failure. */
 MHO_MUST_USE mho_status subjects_read(const command *cmd, bool need_contacts,
                                       subjects *list, mho_error *error);

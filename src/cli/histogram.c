@@ -65,6 +65,7 @@ static mho_status find_clusters(const command *cmd, findings *f, mho_error *erro
 {
   const measured_options *m = &cmd->measured;
   const mho_histogram_options *o = &f->histogram->options;
+  if (f->histogram->samples == 0) return MHO_OK;
   double low = fmax(f->counts->floor_log10_g0, o->low_log10_g0), high = fmin(-0.45, o->high_log10_g0);
   if (m->has_search) {
     low = log10(m->search_low_g0);

@@ -80,9 +80,9 @@ typedef struct {
 
 enum {
   OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY,
-  OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED,
-  OPT_FERMI, OPT_TEMPERATURE,
-  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
+  OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
+  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
   OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
   OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
@@ -114,6 +114,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
+    [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
     [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
@@ -130,6 +131,8 @@ static const option_row options[OPTION_COUNT] = {
                          "of bonds in a SMILES: formal (default) or none"},
     [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
                    "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
+    [OPT_HOPPING] = {ALL, "hopping", 0, "RULE",
+                     "of C-C bonds: table (default), or bond-length from coordinates"},
     [OPT_CSV] = {TABLES | MEASURED, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES | MEASURED, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES | MEASURED, "exact", 0, NULL, "17 digits instead of 6"},
@@ -235,8 +238,8 @@ static void print_help(void)
   for (int i = 0; i < VERB_COUNT; i++)
     printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
   printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
-         "\nA MOLECULE is a molecule file, a list (.smi, .csv) or a SMILES such as\n"
-         "'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
+         "\nA MOLECULE is a molecule file, a list (.smi, .csv), a file of structures\n"
+         "(.mol, .sdf, .xyz) or a SMILES such as 'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
          "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
 }
 
@@ -385,6 +388,7 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
+  case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_VERBOSE: cmd->verbose = true; return EXIT_DONE;
   case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;

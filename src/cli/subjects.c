@@ -11,6 +11,7 @@
 
 #include "base/text.h"
 #include "cli/command.h"
+#include "input/records.h"
 #include "molecule/list.h"
 
 enum { WIDTH_WITHOUT_TERMINAL = 120 };
@@ -32,8 +33,8 @@ static bool is_list(const char *text)
 /* Ends like a file that holds a molecule, so it is no SMILES. */
 static bool is_file_name(const char *text)
 {
-  static const char *const known[] = {".yaml", ".yml", ".mol", ".sdf", ".xyz"};
-  return is_list(text) || has_extension(text, known, 5);
+  static const char *const known[] = {".yaml", ".yml"};
+  return is_list(text) || mho_records_is_file_name(text) || has_extension(text, known, 2);
 }
 
 /* One more, empty; NULL without memory. */
@@ -88,52 +89,133 @@ static mho_status check_name(const subjects *list, const char *argument, mho_err
                      "molecule '%s' stands in %s already; names must differ", last->name, source);
 }
 
-static mho_status read_row(const command *cmd, const char *file, const mho_list_row *row,
-                           bool need_contacts, subjects *list, mho_error *error)
+/* A file of many molecules: rows of a list or records of structures. */
+typedef struct {
+  const command *cmd;
+  const char *file;
+  mho_list *rows;       /* one of the two */
+  mho_records *records;
+  bool need_contacts;
+} many;
+
+/* The row or record gives a subject its name; the place is added where another
+ * has that name. */
+static mho_status set_name(const many *m, const char *name, const char *unit, long number,
+                           subjects *list, mho_error *error)
 {
-  subject *s = add_subject(list, error);
-  if (!s) return MHO_ERR_MEMORY;
-  const char *name = row->name[0] ? row->name : row->smiles;
+  subject *s = &list->item[list->count - 1];
   bool repeated = find_name(list, name, list->count - 1) != NULL;
-  s->molecule.name = repeated ? mho_print_text("%s (line %ld)", name, row->place.line)
+  s->molecule.name = repeated ? mho_print_text("%s (%s %ld)", name, unit, number)
                               : mho_copy_text(name);
-  s->molecule.source = mho_copy_text(file);
-  if (!s->molecule.name || !s->molecule.source)
-    return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
-  mho_status status = mho_molecule_read_smiles(row->smiles, &row->place, &cmd->overrides, 0,
-                                               &s->molecule, error);
-  return status == MHO_OK ? complete(s, need_contacts, error) : status;
+  s->molecule.source = mho_copy_text(m->file);
+  if (s->molecule.name && s->molecule.source) return MHO_OK;
+  return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
 }
 
-/* A bad row does not stop the rest. */
-static mho_status read_list(const command *cmd, const char *file, bool need_contacts,
-                            subjects *list, mho_error *error)
+static mho_status read_row(const many *m, subjects *list, bool *end, mho_error *error)
 {
-  mho_list *rows = NULL;
   mho_list_row row;
+  mho_status status = mho_list_next(m->rows, &row, error);
+  *end = status == MHO_OK && !row.smiles;
+  if (status != MHO_OK || *end) return status;
+  subject *s = add_subject(list, error);
+  if (!s) return MHO_ERR_MEMORY;
+  status = set_name(m, row.name[0] ? row.name : row.smiles, "line", row.place.line, list, error);
+  if (status == MHO_OK)
+    status = mho_molecule_read_smiles(row.smiles, &row.place, &m->cmd->overrides, 0, &s->molecule,
+                                      error);
+  return status == MHO_OK ? complete(s, m->need_contacts, error) : status;
+}
+
+static mho_status read_record(const many *m, subjects *list, bool *end, mho_error *error)
+{
+  mho_record record;
+  subject *s = add_subject(list, error);
+  if (!s) return MHO_ERR_MEMORY;
+  mho_status status = mho_molecule_read_record(m->records, &m->cmd->overrides, 0, &s->molecule,
+                                               &record, error);
+  *end = status == MHO_OK && !record.number;
+  if (*end) drop_last(list);
+  if (status != MHO_OK || *end) return status;
+  char *number = mho_print_text("record %ld", record.number);
+  status = number ? set_name(m, record.name[0] ? record.name : number, "record", record.number,
+                             list, error)
+                  : mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  free(number);
+  return status == MHO_OK ? complete(s, m->need_contacts, error) : status;
+}
+
+/* A bad one does not stop the rest. */
+static mho_status read_many(const many *m, subjects *list, mho_error *error)
+{
   long bad = 0, total = 0;
-  mho_status status = mho_list_open(file, &rows, error);
-  while (status == MHO_OK) {
+  mho_status status = MHO_OK;
+  for (bool end = false; status == MHO_OK; total++) {
     mho_error own;
     mho_error_init(&own);
-    mho_status read = mho_list_next(rows, &row, &own);
-    if (read == MHO_OK && !row.smiles) break;
     int before = list->count;
-    if (read == MHO_OK) read = read_row(cmd, file, &row, need_contacts, list, &own);
-    total++;
+    mho_status read = m->rows ? read_row(m, list, &end, &own) : read_record(m, list, &end, &own);
+    if (end) break;
     if (read == MHO_OK) continue;
     if (list->count > before) drop_last(list);
     bad++;
-    print_causes(cmd, &own);
+    print_causes(m->cmd, &own);
     if (!mho_status_is_input(read)) status = read;
   }
-  mho_list_close(rows);
   if (bad && status == MHO_OK)
-    fprintf(stderr, "mho %s: %ld of %ld rows of %s are left out\n", cmd->verb, bad, total, file);
+    fprintf(stderr, "mho %s: %ld of %ld %s of %s are left out\n", m->cmd->verb, bad, total,
+            m->rows ? "rows" : "records", m->file);
   if (status == MHO_OK && bad == total)
-    status = mho_fail_at(error, MHO_ERR_SYNTAX, "cli", file, 0, 0, NULL,
+    status = mho_fail_at(error, MHO_ERR_SYNTAX, "cli", m->file, 0, 0, NULL,
                          "holds no molecule that can be used");
   return status;
+}
+
+static mho_status read_list(const command *cmd, const char *file, bool need_contacts,
+                            subjects *list, mho_error *error)
+{
+  many m = {.cmd = cmd, .file = file, .need_contacts = need_contacts};
+  mho_status status = mho_list_open(file, &m.rows, error);
+  if (status == MHO_OK) status = read_many(&m, list, error);
+  mho_list_close(m.rows);
+  return status;
+}
+
+/* Does the file hold more than one record? */
+static mho_status count_records(const char *file, bool *several, mho_error *error)
+{
+  mho_records *records;
+  mho_record record;
+  mho_status status = mho_records_open(file, &records, error);
+  if (status != MHO_OK) return status;
+  for (int i = 0; i < 2; i++) mho_records_skip(records, &record);
+  *several = record.number > 0;
+  mho_records_close(records);
+  return MHO_OK;
+}
+
+static mho_status read_records(const command *cmd, const char *file, bool need_contacts,
+                               subjects *list, mho_error *error)
+{
+  many m = {.cmd = cmd, .file = file, .need_contacts = need_contacts};
+  mho_status status = mho_records_open(file, &m.records, error);
+  if (status == MHO_OK) status = read_many(&m, list, error);
+  mho_records_close(m.records);
+  return status;
+}
+
+/* A file with one molecule, or a SMILES. */
+static mho_status read_molecule(const command *cmd, const char *argument, bool is_file,
+                                mho_molecule *molecule, mho_error *error)
+{
+  mho_place place = {"SMILES", 0, 0, false};
+  if (!is_file)
+    return mho_molecule_read_smiles(argument, &place, &cmd->overrides, 0, molecule, error);
+  if (!mho_records_is_file_name(argument))
+    return mho_molecule_read(argument, NULL, &cmd->overrides, molecule, error);
+  molecule->source = mho_copy_text(argument);
+  if (!molecule->source) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
+  return mho_molecule_read_structure(argument, 0, &cmd->overrides, 0, molecule, error);
 }
 
 static mho_status read_single(const command *cmd, const char *argument, bool is_file,
@@ -141,10 +223,7 @@ static mho_status read_single(const command *cmd, const char *argument, bool is_
 {
   subject *s = add_subject(list, error);
   if (!s) return MHO_ERR_MEMORY;
-  mho_place place = {"SMILES", 0, 0};
-  mho_status status =
-      is_file ? mho_molecule_read(argument, NULL, &cmd->overrides, &s->molecule, error)
-              : mho_molecule_read_smiles(argument, &place, &cmd->overrides, 0, &s->molecule, error);
+  mho_status status = read_molecule(cmd, argument, is_file, &s->molecule, error);
   if (status == MHO_OK) status = complete(s, need_contacts, error);
   if (status == MHO_OK) status = check_name(list, argument, error);
   if (status != MHO_OK) drop_last(list);
@@ -158,10 +237,16 @@ mho_status subjects_read(const command *cmd, bool need_contacts, subjects *list,
   mho_status result = MHO_OK;
   for (int i = 0; i < cmd->files; i++) {
     const char *argument = cmd->file[i];
-    bool is_file = access(argument, F_OK) == 0 || is_file_name(argument);
-    mho_status status = is_file && is_list(argument)
-                            ? read_list(cmd, argument, need_contacts, list, error)
-                            : read_single(cmd, argument, is_file, need_contacts, list, error);
+    bool is_file = access(argument, F_OK) == 0 || is_file_name(argument), several = false;
+    mho_status status = MHO_OK;
+    if (is_file && mho_records_is_file_name(argument))
+      status = count_records(argument, &several, error);
+    if (status == MHO_OK && several)
+      status = read_records(cmd, argument, need_contacts, list, error);
+    else if (status == MHO_OK && is_file && is_list(argument))
+      status = read_list(cmd, argument, need_contacts, list, error);
+    else if (status == MHO_OK)
+      status = read_single(cmd, argument, is_file, need_contacts, list, error);
     if (result == MHO_OK) result = status;
   }
   return result;

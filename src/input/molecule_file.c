@@ -4,6 +4,7 @@
  */
 #include <mho/molecule_file.h>
 
+#include <limits.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -11,6 +12,7 @@
 #include "base/text.h"
 #include "input/molecule_node.h"
 #include "input/yaml.h"
+#include "molecule/records.h"
 
 #define ENERGY_LIMIT_EV 100.0
 #define COUPLING_LOW_EV 1e-9
@@ -380,6 +382,7 @@ static void read_explicit(reader *r, const mho_settings *overrides)
   }
   mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
   (void)status; /* the cause is in the document's error */
+  if (mho_molecule_warn_length(r->molecule) != MHO_OK) fail_memory(r);
 }
 
 static void read_drawn(reader *r, const mho_yaml_node *smiles)
@@ -387,21 +390,48 @@ static void read_drawn(reader *r, const mho_yaml_node *smiles)
   const char *text;
   int charge = read_charge(r);
   if (!mho_yaml_get_text(r->yaml, smiles, "smiles", &text)) return;
-  mho_place place = {r->yaml->file, smiles->line, smiles->column + smiles->quoted};
+  mho_place place = {r->yaml->file, smiles->line, smiles->column + smiles->quoted, false};
   mho_status status = mho_molecule_read_smiles(text, &place, &r->settings, charge, r->molecule,
                                                r->yaml->error);
   (void)status; /* the cause is in the document's error */
 }
 
-static void refuse_mixture(reader *r)
+/* A molfile, an SDF or an XYZ file beside this one. */
+static void read_structure(reader *r, const mho_yaml_node *structure)
 {
-  static const char *const keys[] = {"sites", "bonds", "electrons", "electrodes"};
-  for (int i = 0; i < 4; i++) {
+  const char *name;
+  long record = 0;
+  int charge = read_charge(r);
+  mho_yaml_get_integer(r->yaml, mho_yaml_find(r->node, "record"), "record", 1, LONG_MAX, &record);
+  if (!mho_yaml_get_text(r->yaml, structure, "structure", &name)) return;
+  if (!mho_records_is_file_name(name)) {
+    mho_yaml_fail(r->yaml, structure, MHO_ERR_FILE, "structure",
+                  "structure: '%.100s' is not known by its ending; allowed are .mol, .sdf and .xyz",
+                  name);
+    return;
+  }
+  char *path = mho_path_beside(r->yaml->file, name);
+  if (!path) {
+    fail_memory(r);
+    return;
+  }
+  mho_status status = mho_molecule_read_structure(path, record, &r->settings, charge, r->molecule,
+                                                  r->yaml->error);
+  if (status == MHO_ERR_FILE)
+    mho_yaml_fail(r->yaml, structure, MHO_ERR_FILE, "structure",
+                  "structure: '%.200s' cannot be read; paths are relative to this file", name);
+  free(path);
+}
+
+static void refuse_mixture(reader *r, const char *with)
+{
+  static const char *const keys[] = {"sites", "bonds", "electrons", "electrodes", "smiles"};
+  for (int i = 0; i < 5; i++) {
     const mho_yaml_node *node = mho_yaml_find(r->node, keys[i]);
-    if (node)
+    if (node && strcmp(keys[i], with))
       mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, keys[i],
-                    "key '%s' does not go with 'smiles'; give the structure or the sites",
-                    keys[i]);
+                    "key '%s' does not go with '%s'; give the structure or the sites", keys[i],
+                    with);
   }
 }
 
@@ -411,17 +441,19 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   static const char *const keys[] = {
       "name", "smiles", "sites",      "bonds",       "electrons", "charge",      "electrodes",
       "fermi", "twist", "parameters", "alternation", "alkyl",     "beta", "temperature",
-      "coupling"};
+      "coupling", "structure", "record", "hopping"};
   mho_yaml_check_keys(r->yaml, r->node, keys, sizeof keys / sizeof *keys);
   if (!read_settings(r, defaults, overrides)) return;
   read_name(r);
   const mho_yaml_node *smiles = mho_yaml_find(r->node, "smiles");
-  if (!smiles) {
-    read_explicit(r, overrides);
-    return;
-  }
-  refuse_mixture(r);
-  read_drawn(r, smiles);
+  const mho_yaml_node *structure = mho_yaml_find(r->node, "structure");
+  const mho_yaml_node *record = mho_yaml_find(r->node, "record");
+  if (record && !structure)
+    mho_yaml_fail(r->yaml, record, MHO_ERR_KEY, "record", "record: it belongs to a 'structure'");
+  if (structure || smiles) refuse_mixture(r, structure ? "structure" : "smiles");
+  if (structure) read_structure(r, structure);
+  else if (smiles) read_drawn(r, smiles);
+  else read_explicit(r, overrides);
 }
 
 mho_status mho_molecule_read_node(const mho_yaml *document, const mho_yaml_node *node,

@@ -9,18 +9,20 @@
 
 #include "base/text.h"
 
-enum { BETA, TEMPERATURE, COUPLING, FERMI, PARAMETERS, ALTERNATION, ALKYL, SETTING_COUNT };
+enum { BETA, TEMPERATURE, COUPLING, FERMI, PARAMETERS, ALTERNATION, ALKYL, HOPPING, SETTING_COUNT };
 
 static const char *const names[SETTING_COUNT] = {
     [BETA] = "beta", [TEMPERATURE] = "temperature", [COUPLING] = "coupling",
     [FERMI] = "fermi", [PARAMETERS] = "parameters", [ALTERNATION] = "alternation",
-    [ALKYL] = "alkyl"};
+    [ALKYL] = "alkyl", [HOPPING] = "hopping"};
 
 static const char *const alternation_names[] = {
     [MHO_ALTERNATION_FORMAL] = "formal", [MHO_ALTERNATION_NONE] = "none"};
 static const char *const alkyl_names[] = {[MHO_ALKYL_IGNORED] = "ignored",
                                           [MHO_ALKYL_INDUCTIVE] = "inductive",
                                           [MHO_ALKYL_HETEROATOM] = "heteroatom"};
+static const char *const hopping_names[] = {[MHO_HOPPING_TABLE] = "table",
+                                            [MHO_HOPPING_BOND_LENGTH] = "bond-length"};
 
 static const struct {
   mho_dimension dimension;
@@ -144,6 +146,12 @@ mho_status mho_settings_read(mho_settings *s, const char *name, const char *text
     s->alkyl = (mho_alkyl)choice;
     s->has_alkyl = true;
     return MHO_OK;
+  case HOPPING:
+    status = read_choice(text, hopping_names, 2, &choice, reason, size);
+    if (status != MHO_OK) return status;
+    s->hopping = (mho_hopping)choice;
+    s->has_hopping = true;
+    return MHO_OK;
   default: snprintf(reason, size, "'%.40s' is not a setting", name); return MHO_ERR_KEY;
   }
 }
@@ -192,6 +200,7 @@ mho_status mho_settings_merge(mho_settings *s, const mho_settings *over)
   if (over->has_fermi) s->fermi = over->fermi;
   if (over->has_alternation) s->alternation = over->alternation;
   if (over->has_alkyl) s->alkyl = over->alkyl;
+  if (over->has_hopping) s->hopping = over->hopping;
   if (over->parameters) s->parameters = over->parameters;
   s->has_beta |= over->has_beta;
   s->has_temperature |= over->has_temperature;
@@ -199,6 +208,7 @@ mho_status mho_settings_merge(mho_settings *s, const mho_settings *over)
   s->has_fermi |= over->has_fermi;
   s->has_alternation |= over->has_alternation;
   s->has_alkyl |= over->has_alkyl;
+  s->has_hopping |= over->has_hopping;
   s->contacts_optional |= over->contacts_optional;
   for (int i = 0; i < over->twist_count; i++)
     if (add_twist(s, &over->twist[i]) != MHO_OK) return MHO_ERR_MEMORY;

@@ -26,6 +26,8 @@ void mho_molecule_clear(mho_molecule *molecule)
   free(molecule->site);
   free(molecule->bond);
   free(molecule->linker);
+  mho_graph_clear(&molecule->graph);
+  free(molecule->site_atom);
   mho_texts_clear(&molecule->notes);
   mho_parameters_free(molecule->own_parameters);
   for (int side = 0; side < 2; side++) {

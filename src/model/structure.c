@@ -8,7 +8,9 @@
 
 #include "base/text.h"
 #include "model/alkyl.h"
+#include "model/geometry.h"
 #include "molecule/element.h"
+#include "molecule/fragment.h"
 #include "molecule/graph.h"
 #include "molecule/linker.h"
 #include "molecule/pi.h"
@@ -58,6 +60,8 @@ static mho_status no_memory(mho_error *error)
   return mho_fail(error, MHO_ERR_MEMORY, "model", NULL, "out of memory");
 }
 
+static const char from_coordinates[] = "from the coordinates";
+
 #define NOTE(c, ...)                                                   \
   ((c)->options->quiet ||                                              \
            mho_texts_add(&(c)->structure->notes, __VA_ARGS__) == MHO_OK \
@@ -68,7 +72,10 @@ static mho_status perceive(conversion *c)
 {
   const mho_graph *graph = &c->structure->graph;
   const mho_place *place = &c->options->place;
-  if (mho_linkers_find(graph, &c->linkers) != MHO_OK) return no_memory(c->error);
+  mho_texts *notes = c->options->quiet ? NULL : &c->structure->notes;
+  if (mho_linkers_find(graph, &c->linkers) != MHO_OK ||
+      mho_fragment_choose(graph, &c->linkers, notes) != MHO_OK)
+    return no_memory(c->error);
   mho_status status = mho_contacts_choose(graph, &c->linkers,
                                           c->options->contacts_optional, place,
                                           c->contact, c->error);
@@ -79,8 +86,7 @@ static mho_status perceive(conversion *c)
     for (int i = 0; i < c->contact[side].count; i++)
       touched[c->contact[side].atom[i]] |= (unsigned char)(1 << side);
   status = mho_pi_perceive(graph, c->linkers.removed, touched, place, &c->pi,
-                           c->options->quiet ? NULL : &c->structure->notes,
-                           c->error);
+                           notes, c->error);
   free(touched);
   return status == MHO_OK ? mho_pi_find_bonds(graph, &c->pi, c->error) : status;
 }
@@ -94,9 +100,9 @@ static mho_status fail_row(conversion *c, const mho_pi_site *site)
   for (int i = 0; i < mho_parameters_count(set) && count < 32; i++)
     rows[count++] = mho_parameters_row_name(set, i);
   mho_graph_atom_name(&c->structure->graph, site->atom, name, sizeof name);
-  return mho_fail_column(
+  return mho_fail_atom(
       c->error, MHO_ERR_UNPARAMETERISED, &c->options->place,
-      c->structure->graph.atom[site->atom].column,
+      &c->structure->graph, site->atom,
       "%s needs the row '%s', which the parameter set %s does not have; it has %s",
       name, site->row, mho_parameters_name(set),
       mho_join_words(rows, count, list, sizeof list));
@@ -150,6 +156,33 @@ static void fill_bonds(conversion *c)
                             .rotatable = from->rotatable};
   }
   m->bond_count = c->pi.bond_count;
+}
+
+/* Dihedral angles and, where asked for, hoppings from the coordinates. */
+static mho_status use_coordinates(conversion *c)
+{
+  mho_molecule *m = c->molecule;
+  const mho_graph *graph = &c->structure->graph;
+  bool lengths = c->options->hopping == MHO_HOPPING_BOND_LENGTH;
+  int counted = 0;
+  if (lengths && !graph->is_3d)
+    return mho_fail_column(c->error, MHO_ERR_REFERENCE, &c->options->place, 1,
+                           "hopping: bond-length needs coordinates in space, from a molfile "
+                           "or an XYZ file; there are none");
+  for (int b = 0; b < c->pi.bond_count && graph->is_3d; b++) {
+    mho_pi_bond *from = &c->pi.bond[b];
+    const int *ends = graph->bond[from->bond].atom;
+    if (from->rotatable && mho_geometry_twist(graph, from->bond, &m->bond[b].twist_deg))
+      from->reason = from_coordinates;
+    if (!lengths || graph->atom[ends[0]].element != ELEMENT_C ||
+        graph->atom[ends[1]].element != ELEMENT_C)
+      continue;
+    m->bond[b].strength = mho_geometry_strength(graph, from->bond);
+    counted++;
+  }
+  if (!lengths) return MHO_OK;
+  return NOTE(c, "the hoppings of %d C-C bonds follow from their lengths, beta(r) = beta "
+              "exp[-(r - 1.397 A)/0.2623 A]; others from the parameter set", counted);
 }
 
 /* Pairs of rows whose k is a product, each once. */
@@ -215,9 +248,11 @@ static mho_status set_twists(conversion *c)
   }
   for (int b = 0; b < c->pi.bond_count; b++) {
     if (!m->bond[b].rotatable || !c->pi.bond[b].reason) continue;
-    if (NOTE(c, "twist %s-%s: %g deg, an estimate (%s)",
+    bool exact = c->pi.bond[b].reason == from_coordinates;
+    if (NOTE(c, "twist %s-%s: %g deg, %s%s%s",
              m->site[m->bond[b].site[0]].id, m->site[m->bond[b].site[1]].id,
-             m->bond[b].twist_deg, c->pi.bond[b].reason) != MHO_OK)
+             m->bond[b].twist_deg, exact ? "" : "an estimate (",
+             c->pi.bond[b].reason, exact ? "" : ")") != MHO_OK)
       return MHO_ERR_MEMORY;
   }
   return MHO_OK;
@@ -227,9 +262,9 @@ static mho_status fail_contact(conversion *c, int side, int atom)
 {
   char name[24];
   mho_graph_atom_name(&c->structure->graph, atom, name, sizeof name);
-  return mho_fail_column(c->error, MHO_ERR_CONTACTS, &c->options->place,
-                         c->structure->graph.atom[atom].column,
-                         "the %s contact %s carries no p orbital; mark an atom "
+  return mho_fail_atom(c->error, MHO_ERR_CONTACTS, &c->options->place,
+                       &c->structure->graph, atom,
+                       "the %s contact %s carries no p orbital; mark an atom "
                          "of the pi system", side ? "right" : "left", name);
 }
 
@@ -281,7 +316,8 @@ static mho_status warn(conversion *c)
   const mho_graph *graph = &c->structure->graph;
   unsigned *warnings = &c->structure->warnings;
   for (int a = 0; a < graph->atom_count; a++)
-    if (mho_element_is_metal(graph->atom[a].element) && !c->linkers.removed[a])
+    if (mho_element_is_metal(graph->atom[a].element) &&
+        graph->atom[a].element != ELEMENT_AU)
       *warnings |= MHO_WARN_METAL;
   if (!m->contact[MHO_LEFT].count) return MHO_OK;
   bool *reached = malloc((size_t)m->site_count * sizeof *reached);
@@ -291,7 +327,8 @@ static mho_status warn(conversion *c)
   for (int i = 0; i < m->contact[MHO_RIGHT].count; i++)
     joined |= reached[m->contact[MHO_RIGHT].site[i]];
   if (!joined) *warnings |= MHO_WARN_NO_PI_PATH | MHO_WARN_DIFFERENT_FRAGMENTS;
-  if (c->options->alternation == MHO_ALTERNATION_NONE)
+  if (c->options->alternation == MHO_ALTERNATION_NONE &&
+      c->options->hopping == MHO_HOPPING_TABLE)
     for (int b = 0; b < c->pi.bond_count; b++)
       if (c->pi.bond[b].strength != 1.0 && reached[c->pi.bond[b].site[0]])
         *warnings |= MHO_WARN_UNIFORM_BONDS;
@@ -342,8 +379,9 @@ static mho_status convert(conversion *c)
   if (status == MHO_OK) status = fill_sites(c);
   if (status == MHO_OK) {
     fill_bonds(c);
-    status = note_products(c);
+    status = use_coordinates(c);
   }
+  if (status == MHO_OK) status = note_products(c);
   if (status == MHO_OK) status = set_twists(c);
   if (status == MHO_OK)
     status = mho_alkyl_apply(&c->pi, c->linkers.removed, c->options, c->molecule,

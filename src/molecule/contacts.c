@@ -53,7 +53,7 @@ static mho_status from_classes(const mho_graph *graph,
     int mark = graph->atom[a].atom_class;
     if (mark == 0) continue;
     if (mark > 2)
-      return mho_fail_column(error, MHO_ERR_CONTACTS, place, graph->atom[a].column,
+      return mho_fail_atom(error, MHO_ERR_CONTACTS, place, graph, a,
                              "atom class %d; 1 marks the left contact, 2 the "
                              "right one", mark);
     mho_contact_atoms *c = &contact[mark - 1];

@@ -16,6 +16,7 @@ void mho_graph_clear(mho_graph *graph)
   free(graph->bond);
   free(graph->start);
   free(graph->link);
+  free(graph->position);
   mho_graph_init(graph);
 }
 
@@ -39,14 +40,34 @@ mho_status mho_fail_column(mho_error *error, mho_status status,
   va_start(arguments, format);
   vsnprintf(message, sizeof message, format, arguments);
   va_end(arguments);
+  if (place && place->record)
+    return mho_fail_at(error, status, MOLECULE_STAGE, place->file, place->line,
+                       place->column, "structure", "%s", message);
   long shown = place && place->line ? place->column + column - 1 : 0;
   return mho_fail_at(error, status, MOLECULE_STAGE, place ? place->file : NULL,
                      place ? place->line : 0, shown, "smiles", "column %ld: %s",
                      column, message);
 }
 
+mho_status mho_fail_atom(mho_error *error, mho_status status,
+                         const mho_place *place, const mho_graph *graph,
+                         int atom, const char *format, ...)
+{
+  char message[400];
+  va_list arguments;
+  va_start(arguments, format);
+  vsnprintf(message, sizeof message, format, arguments);
+  va_end(arguments);
+  mho_place own = place ? *place : (mho_place){0};
+  if (own.record) {
+    own.line = graph->atom[atom].line;
+    own.column = graph->atom[atom].column;
+  }
+  return mho_fail_column(error, status, &own, graph->atom[atom].column, "%s", message);
+}
+
 /* Neighbours of each atom, in the order of the bonds. */
-static void link_atoms(mho_graph *graph)
+void mho_graph_link_atoms(mho_graph *graph)
 {
   int n = graph->atom_count;
   memset(graph->start, 0, ((size_t)n + 1) * sizeof *graph->start);
@@ -103,7 +124,7 @@ static void find_ring_bonds(mho_graph *graph, int *memory)
 mho_status mho_graph_complete(mho_graph *graph, const mho_place *place,
                               mho_error *error)
 {
-  link_atoms(graph);
+  mho_graph_link_atoms(graph);
   int *memory = malloc(4 * (size_t)graph->atom_count * sizeof *memory + 1);
   if (!memory) return mho_fail(error, MHO_ERR_MEMORY, MOLECULE_STAGE, NULL, "out of memory");
   find_ring_bonds(graph, memory);

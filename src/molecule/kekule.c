@@ -17,10 +17,10 @@
 
 enum { NAME_SIZE = 16 };
 
-/* Bond orders and written hydrogens at an atom. */
+/* Bond orders, written hydrogens and radicals at an atom. */
 static int used_valence(const mho_graph *graph, int atom)
 {
-  int used = graph->atom[atom].hydrogens;
+  int used = graph->atom[atom].hydrogens + graph->atom[atom].radical;
   for (int i = graph->start[atom]; i < graph->start[atom + 1]; i++)
     used += graph->bond[graph->link[i].bond].order;
   return used;
@@ -53,7 +53,7 @@ static mho_status fail_valence(const mho_graph *graph, int atom, int used,
   int most = 0;
   for (int v = 0; v <= used; v++)
     if (valence_of(graph, atom, v) > most) most = valence_of(graph, atom, v);
-  return mho_fail_column(error, MHO_ERR_SYNTAX, place, a->column,
+  return mho_fail_atom(error, MHO_ERR_SYNTAX, place, graph, atom,
                          "%s has %d bonds; %s with charge %+d forms at most %d",
                          name, used, mho_element_symbol(a->element), a->charge,
                          most);
@@ -77,12 +77,15 @@ static mho_status fail_kekule(const mho_graph *graph, int atom,
     if (graph->atom[a].aromatic && graph->atom[a].element == ELEMENT_N &&
         !graph->atom[a].bracket && mho_graph_degree(graph, a) == 2)
       mho_graph_atom_name(graph, a, nitrogen, sizeof nitrogen);
-  return mho_fail_column(
-      error, MHO_ERR_SYNTAX, place, graph->atom[atom].column,
+  return mho_fail_atom(
+      error, MHO_ERR_SYNTAX, place, graph, atom,
       "no Kekule structure: the aromatic atom %s finds no partner for a double "
       "bond%s%s%s",
       name, nitrogen[0] ? "; a ring nitrogen that bears a hydrogen (" : "",
-      nitrogen, nitrogen[0] ? "?) is written [nH]" : "");
+      nitrogen,
+      !nitrogen[0]              ? ""
+      : place && place->record ? "?) needs it as an atom, or single and double bonds"
+                                : "?) is written [nH]");
 }
 
 /* Marks in `open` the aromatic atoms that need a double bond. */
@@ -96,8 +99,8 @@ static mho_status find_open_atoms(const mho_graph *graph, bool *open,
     for (int i = graph->start[a]; i < graph->start[a + 1]; i++)
       ring |= graph->bond[graph->link[i].bond].ring;
     if (!ring)
-      return mho_fail_column(
-          error, MHO_ERR_SYNTAX, place, graph->atom[a].column,
+      return mho_fail_atom(
+          error, MHO_ERR_SYNTAX, place, graph, a,
           "an aromatic atom stands outside a ring; write it as a capital "
           "letter");
     int left = open_valence(graph, a);
@@ -154,12 +157,12 @@ static mho_status count_hydrogens(mho_graph *graph, const mho_place *place,
     int used = used_valence(graph, a);
     int valence = valence_of(graph, a, used);
     if (valence < 0) return fail_valence(graph, a, used, place, error);
-    if (atom->bracket) atom->radical = valence - used;
+    if (atom->bracket) atom->radical += valence - used;
     else if (!(atom->aromatic && atom->element != ELEMENT_C &&
                atom->element != ELEMENT_B))
       atom->hydrogens = valence - used;
     else
-      atom->radical = valence - used;
+      atom->radical += valence - used;
   }
   return MHO_OK;
 }

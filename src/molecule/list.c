@@ -82,7 +82,7 @@ static mho_status next_line(mho_list *list, mho_list_row *row, mho_error *error)
     char *name = word + size;
     if (*name) *name++ = '\0';
     trim(&name, name + strlen(name));
-    *row = (mho_list_row){word, name, {list->path, line, column_at(start, word)}};
+    *row = (mho_list_row){word, name, {list->path, line, column_at(start, word), false}};
     return MHO_OK;
   }
   return MHO_OK;
@@ -179,7 +179,7 @@ static mho_status next_record(mho_list *list, mho_list_row *row,
     const char *name = list->name_column < 0 ? "" : field[list->name_column].text;
     status = check_text(list, error, name, strlen(name), line);
     if (status != MHO_OK) return status;
-    *row = (mho_list_row){smiles->text, name, {list->path, smiles->line, smiles->column}};
+    *row = (mho_list_row){smiles->text, name, {list->path, smiles->line, smiles->column, false}};
     return MHO_OK;
   }
   return MHO_OK;

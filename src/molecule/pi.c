@@ -66,8 +66,8 @@ static mho_status spread(perception *p)
       if (o->kind == ORBITAL_REFUSED) {
         char name[NAME_SIZE];
         mho_graph_atom_name(g, next, name, sizeof name);
-        return mho_fail_column(p->error, MHO_ERR_UNPARAMETERISED, p->place,
-                               g->atom[next].column,
+        return mho_fail_atom(p->error, MHO_ERR_UNPARAMETERISED, p->place,
+                               g, next,
                                "%s is %s beside a pi system, for which no "
                                "parameters exist", name, o->reason);
       }

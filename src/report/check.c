@@ -8,10 +8,13 @@
 #include <math.h>
 #include <string.h>
 
+#include "report/drawing.h"
 #include "report/json.h"
 #include "report/stages.h"
 
 static const char *const side_name[] = {"left", "right"};
+static const char *const length_origin[] = {
+    [MHO_LENGTH_COORDINATES] = "coordinates", [MHO_LENGTH_IDEALISED] = "idealised"};
 
 static json_t *json_id_list(const mho_molecule *molecule, const int *site, int count)
 {
@@ -21,7 +24,8 @@ static json_t *json_id_list(const mho_molecule *molecule, const int *site, int c
   return list;
 }
 
-static json_t *json_site(const mho_molecule *molecule, int index)
+/* place: of the site in the drawing. */
+static json_t *json_site(const mho_molecule *molecule, int index, const double *place)
 {
   const mho_site *site = &molecule->site[index];
   const char *row = mho_parameters_row_name(molecule->parameters, site->row);
@@ -30,8 +34,8 @@ static json_t *json_site(const mho_molecule *molecule, int index)
   object = mho_json_with(object, "element", row ? mho_json_text(row) : json_null());
   object = mho_json_with(object, "onsite_eV", json_real(mho_molecule_onsite_ev(molecule, index)));
   object = mho_json_with(object, "electrons", row ? json_integer(site->electrons) : json_null());
-  object = mho_json_with(object, "x", json_null());
-  object = mho_json_with(object, "y", json_null());
+  object = mho_json_with(object, "x", json_real(place[0]));
+  object = mho_json_with(object, "y", json_real(place[1]));
   return object;
 }
 
@@ -95,14 +99,21 @@ static json_t *json_molecule(const mho_checked *checked)
 {
   const mho_molecule *molecule = checked->molecule;
   const mho_junction *junction = checked->junction;
+  double length = 0;
+  mho_length_kind kind = MHO_LENGTH_NONE;
+  mho_drawing drawing;
+  mho_status status = mho_drawing_make(molecule, &drawing, NULL);
+  if (status == MHO_OK) status = mho_molecule_length(molecule, &length, &kind);
   json_t *sites = json_array(), *bonds = json_array(), *levels = json_array();
-  for (int i = 0; i < molecule->site_count; i++)
-    sites = mho_json_append(sites, json_site(molecule, i));
+  for (int i = 0; status == MHO_OK && i < molecule->site_count; i++)
+    sites = mho_json_append(sites,
+                            json_site(molecule, i, drawing.position[drawing.site_point[i]]));
+  mho_drawing_clear(&drawing);
   for (int b = 0; b < molecule->bond_count; b++)
     bonds = mho_json_append(bonds, json_bond(molecule, b));
   for (int k = 0; k < junction->sites; k++)
     levels = mho_json_append(levels, json_real(junction->level_ev[k]));
-  json_t *object = json_object();
+  json_t *object = status == MHO_OK ? json_object() : NULL;
   object = mho_json_with(object, "name", mho_json_text(molecule->name));
   object = mho_json_with(object, "parameters",
                       mho_json_text(mho_parameters_name(molecule->parameters)));
@@ -118,6 +129,9 @@ static json_t *json_molecule(const mho_checked *checked)
   object = mho_json_with(object, "fermi_eV", json_real(junction->fermi_ev));
   object = mho_json_with(object, "linkers", json_linkers(molecule));
   object = mho_json_with(object, "contacts", json_contacts(molecule));
+  object = mho_json_with(object, "length_nm", json_optional(kind != MHO_LENGTH_NONE, length));
+  object = mho_json_with(object, "length_from", kind == MHO_LENGTH_NONE ? json_null()
+                                                : mho_json_text(length_origin[kind]));
   object = mho_json_with(object, "warnings", mho_json_warning_words(checked->warnings));
   object = mho_json_with(object, "notes", json_notes(molecule));
   return object;
@@ -204,10 +218,14 @@ static void write_sites(const mho_molecule *molecule, int digits, mho_buffer *bu
 
 static const char *plural(int count) { return count == 1 ? "" : "s"; }
 
-static void write_molecule(const mho_checked *checked, int digits, mho_buffer *buffer)
+static mho_status write_molecule(const mho_checked *checked, int digits, mho_buffer *buffer)
 {
   const mho_molecule *molecule = checked->molecule;
   const mho_junction *junction = checked->junction;
+  double length;
+  mho_length_kind kind;
+  mho_status status = mho_molecule_length(molecule, &length, &kind);
+  if (status != MHO_OK) return status;
   mho_buffer_print(buffer, "%s\n  %d pi site%s, %d bond%s, %d electron%s", molecule->name,
                    molecule->site_count, plural(molecule->site_count), molecule->bond_count,
                    plural(molecule->bond_count), molecule->electrons,
@@ -226,12 +244,20 @@ static void write_molecule(const mho_checked *checked, int digits, mho_buffer *b
     mho_buffer_print(buffer, "%s%s at %s%s", i ? ", " : "  linkers   ",
                      molecule->linker[i].kind, molecule->site[molecule->linker[i].site].id,
                      i + 1 == molecule->linker_count ? "\n" : "");
+  if (kind != MHO_LENGTH_NONE) {
+    mho_buffer_add(buffer, "  length_nm ");
+    mho_buffer_number(buffer, digits < 4 ? digits : 4, length);
+    mho_buffer_add(buffer, kind == MHO_LENGTH_COORDINATES
+                               ? " between the contacts, from the coordinates\n"
+                               : " between the contacts, in an idealised plane\n");
+  }
   write_sites(molecule, digits, buffer);
   for (int i = 0; i < molecule->notes.count; i++)
     mho_buffer_print(buffer, "  note: %s\n", molecule->notes.text[i]);
   for (int k = 0; k < MHO_WARNING_COUNT; k++)
     if (checked->warnings & (1u << k))
       mho_buffer_print(buffer, "  %s: %s\n", mho_warning_word(k), mho_warning_sentence(k));
+  return MHO_OK;
 }
 
 mho_status mho_write_check_screen(const mho_checked *checked, size_t count, int digits,
@@ -239,7 +265,8 @@ mho_status mho_write_check_screen(const mho_checked *checked, size_t count, int 
 {
   for (size_t i = 0; i < count; i++) {
     if (i) mho_buffer_add(buffer, "\n");
-    write_molecule(&checked[i], digits, buffer);
+    if (write_molecule(&checked[i], digits, buffer) != MHO_OK)
+      return mho_fail(error, MHO_ERR_MEMORY, "report", NULL, "out of memory");
   }
   return mho_buffer_check(buffer, "report", error);
 }

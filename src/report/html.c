@@ -43,6 +43,8 @@ static const char style[] =
     "th:first-child,td:first-child,td.text{text-align:left}"
     "td.node{color:#5a6270;font-style:italic}"
     "figure{margin:1rem 0}figure img{width:100%;height:auto}"
+    ".portraits{display:flex;flex-wrap:wrap;gap:1rem}.portraits figure{margin:0;max-width:100%}"
+    ".portraits svg{max-width:100%;height:auto}"
     "figcaption{color:#5a6270;font-size:.88rem}"
     "dt{font-weight:600;margin-top:.6rem}dd{margin:0 0 0 1rem}"
     "footer{color:#5a6270;font-size:.85rem;margin-top:3rem;border-top:1px solid #d8dce2}"
@@ -201,6 +203,23 @@ static void write_traces(const mho_report *report, mho_buffer *buffer)
   mho_buffer_add(buffer, "</section>\n");
 }
 
+static void write_portraits(const mho_report *report, mho_buffer *buffer)
+{
+  begin_section(buffer, "molecules", "The molecules as they were understood");
+  mho_buffer_add(buffer,
+                 "<p>Bars marked L and R are the contacts, rings are linkers, bows are bonds that "
+                 "turn, with their angle. Two dots: the site brings a pair of electrons. Dashed "
+                 "bonds lie outside the π system.</p>\n<div class=\"portraits\">\n");
+  for (size_t i = 0; i < report->portraits; i++) {
+    mho_buffer_add(buffer, "<figure>");
+    mho_buffer_add_bytes(buffer, report->portrait[i].svg.data, report->portrait[i].svg.size);
+    mho_buffer_add(buffer, "<figcaption>");
+    mho_buffer_escape(buffer, report->portrait[i].name);
+    mho_buffer_add(buffer, "</figcaption></figure>\n");
+  }
+  mho_buffer_add(buffer, "</div></section>\n");
+}
+
 static void write_results(const mho_report *report, mho_buffer *buffer)
 {
   if (has_table(report->output, "compare")) {
@@ -235,6 +254,7 @@ mho_status mho_write_html(const mho_report *report, mho_buffer *buffer, mho_erro
   mho_buffer_add(buffer, "</h1>\n");
   if (report->answers) write_list(buffer, "answer", report->answer, report->answers);
   mho_buffer_add(buffer, "</section>\n");
+  write_portraits(report, buffer);
   write_results(report, buffer);
   write_warnings(report, buffer);
   begin_section(buffer, "assumptions", "What was assumed");

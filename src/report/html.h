@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * The report: one HTML file that opens offline, with fixed section ids
- * (question, comparison, traces, predictions, transmission, warnings,
+ * (question, molecules, comparison, traces, predictions, transmission, warnings,
  * assumptions, limits).
  */
 #ifndef MHOLECULE_REPORT_HTML_H
@@ -15,8 +15,16 @@ typedef struct {
   mho_buffer svg;
 } mho_figure;
 
+/* A molecule and its drawing, an <svg> element. */
+typedef struct {
+  const char *name;
+  mho_buffer svg;
+} mho_portrait;
+
 typedef struct {
   const char *title;
+  const mho_portrait *portrait;
+  size_t portraits;
   const mho_output *output;
   char *const *answer; /* sentences */
   size_t answers;

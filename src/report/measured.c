@@ -347,7 +347,8 @@ void mho_plateaus_note(mho_output *output, const mho_histogram *h)
 
 void mho_clusters_note(mho_output *output, const mho_clusters *clusters, size_t samples)
 {
-  if (clusters->count <= 1)
+  if (clusters->count == 0) mho_output_note(output, "no trace is left to divide by its shape");
+  else if (clusters->count == 1)
     mho_output_note(output, "the shapes of %llu traces make one cluster: no division of them is "
                             "stable", BIG(samples));
   else

@@ -15,7 +15,7 @@ enum { OFFSETS = sizeof offset / sizeof *offset };
 
 /* Molecules above this many sites are plotted without their nodes, which would
  * take longer than the plot. */
-enum { NODE_SITES = 80 };
+enum { NODE_SITES = 60 };
 
 static int compare_doubles(const void *a, const void *b)
 {

@@ -13,10 +13,17 @@
 #include "solver/minima.h"
 #include "solver/pencil.h"
 
-enum { ITERATIONS_MAX = 80, CIRCLE_POINTS = 48 };
+enum { ITERATIONS_MAX = 80 };
+
+/* Other zeros are three radii away or more: so many points count well, and
+ * find the mean of a cluster to 16 digits. */
+enum { CIRCLE_POINTS = 8, CLUSTER_POINTS = 48 };
 
 /* Corrections below this (times the norm) are rounding. */
 #define FINISHED ((mho_quad)1e-31)
+
+/* Steps below this (times the norm) that do not shrink fourfold are rounding. */
+#define STANDS ((mho_quad)1e-20)
 
 /* Radius of the circle around a node that stands alone, times the norm. */
 #define CIRCLE ((mho_quad)1e-7)
@@ -99,8 +106,10 @@ static void polish_block(const search *s, int block)
     for (size_t k = first; k < end; k++) {
       if (s->zero[k].radius <= finished) continue;
       mho_quad_complex step = correction(s, block, k);
+      mho_quad size = mho_quad_size(step);
       s->zero[k].z -= step;
-      s->zero[k].radius = mho_quad_size(step);
+      bool stands = size < STANDS * s->pencil->norm && size > s->zero[k].radius / 4;
+      s->zero[k].radius = stands ? 0 : size;
       if (s->zero[k].radius > largest) largest = s->zero[k].radius;
     }
     bool stuck = largest < (mho_quad)1e-3 * s->pencil->norm && largest > last / 2;
@@ -143,15 +152,15 @@ static mho_quad_complex logarithmic_slope(const search *s, mho_quad_complex z)
  * by the trapezoidal rule, which converges geometrically.  A zero alone stays
  * where it was polished to.  -1: not a number of zeros, or P'/P beside the
  * center is not that of a zero there. */
-static int count_inside(const search *s, mho_quad_complex *center, mho_quad radius)
+static int count_inside(const search *s, mho_quad_complex *center, mho_quad radius, int points)
 {
   mho_quad_complex count = 0, moment = 0;
-  for (int k = 0; k < CIRCLE_POINTS; k++) {
-    double angle = 2 * 3.14159265358979324 * (k + 0.5) / CIRCLE_POINTS;
+  for (int k = 0; k < points; k++) {
+    double angle = 2 * 3.14159265358979324 * (k + 0.5) / points;
     mho_quad_complex arm;
     __real__ arm = radius * cos(angle);
     __imag__ arm = radius * sin(angle);
-    mho_quad_complex term = arm * logarithmic_slope(s, *center + arm) / CIRCLE_POINTS;
+    mho_quad_complex term = arm * logarithmic_slope(s, *center + arm) / points;
     count += term;
     moment += arm * term;
   }
@@ -191,7 +200,7 @@ static mho_status make_node(const search *s, int cluster, mho_node *node, bool *
   if (!*exists) return MHO_OK;
   mho_quad radius = CIRCLE * s->pencil->norm > WIDER * size ? CIRCLE * s->pencil->norm : WIDER * size;
   if (radius > gap / 3) radius = gap / 3;
-  int order = count_inside(s, &center, radius);
+  int order = count_inside(s, &center, radius, members > 1 ? CLUSTER_POINTS : CIRCLE_POINTS);
   if (order != members)
     return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
                     "near %g eV %d zeros were found and %d counted", (double)__real__ center,

@@ -119,7 +119,7 @@ static int diagonal_slot(compiler *c, int site)
   return c->diagonal_slot[site];
 }
 
-/* Slot of the number (i, j), loaded from H if need be; INT_MIN: it is zero. */
+/* Slot of the number (i, j), loaded from H if need be; -1: it is zero. */
 static int pair_slot(compiler *c, int i, int j)
 {
   link *here = find_link(&c->row[i], j);

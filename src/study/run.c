@@ -12,6 +12,7 @@
 #include <string.h>
 
 #include "base/text.h"
+#include "report/drawing.h"
 #include "report/figure.h"
 #include "report/html.h"
 #include "report/json.h"
@@ -47,6 +48,7 @@ typedef struct {
   mho_output output;
   char *answer[ANSWERS_MAX];
   size_t answers;
+  mho_portrait *portrait; /* [molecule_count] */
   mho_figure *figure;
   size_t figures;
   bool without_gnuplot;
@@ -178,6 +180,7 @@ static void fill_traces_table(run *r)
     mho_traces_rows(table, name, r->measured[i].traces, r->measured[i].rejected,
                     &r->measured[i].peaks);
     mho_output_note(&r->output, "traces of %s:", name);
+    mho_peaks_note(&r->output, &r->measured[i].peaks);
     mho_reading_note(&r->output, &r->measured[i].report,
                      mho_trace_floor_g0(&s->traces[i].options));
   }
@@ -407,6 +410,30 @@ static mho_status draw_figures(run *r, mho_error *error)
   return status;
 }
 
+/* The drawing of each molecule, in the report and as a file of its own. */
+static mho_status draw_molecules(run *r, mho_error *error)
+{
+  mho_status status = MHO_OK;
+  for (int i = 0; status == MHO_OK && i < r->study->molecule_count; i++) {
+    const mho_molecule *molecule = &r->study->molecule[i];
+    mho_portrait *portrait = &r->portrait[i];
+    mho_drawing drawing;
+    char *file = mho_print_text("molecule-%d.svg", i + 1);
+    if (!file) status = fail_memory(error);
+    portrait->name = molecule->name;
+    mho_status drawn = mho_drawing_make(molecule, &drawing, error);
+    if (status == MHO_OK) status = drawn;
+    if (status == MHO_OK) {
+      mho_drawing_write(&drawing, NULL, &portrait->svg);
+      status = mho_buffer_check(&portrait->svg, "study", error);
+    }
+    if (status == MHO_OK) status = mho_folder_write(&r->folder, file, &portrait->svg, error);
+    mho_drawing_clear(&drawing);
+    free(file);
+  }
+  return status;
+}
+
 static mho_status write_tables(run *r, mho_error *error)
 {
   for (size_t i = 0; i < r->output.tables; i++) {
@@ -465,6 +492,8 @@ static mho_status write_results(run *r, mho_error *error)
 static mho_status write_report(run *r, mho_error *error)
 {
   mho_report report = {.title = r->study->title,
+                       .portrait = r->portrait,
+                       .portraits = (size_t)r->study->molecule_count,
                        .output = &r->output,
                        .answer = r->answer,
                        .answers = r->answers,
@@ -502,7 +531,8 @@ static mho_status execute(run *r, mho_error *error)
   if (status != MHO_OK) return status;
   fill_tables(r);
   answer(r);
-  status = draw_figures(r, error);
+  status = draw_molecules(r, error);
+  if (status == MHO_OK) status = draw_figures(r, error);
   if (status == MHO_OK) status = step(r, "report", error);
   if (status == MHO_OK) status = mho_output_check(&r->output, error);
   if (status == MHO_OK) status = write_tables(r, error);
@@ -527,6 +557,9 @@ static void run_clear(run *r)
     free(r->figure[i].caption);
     mho_buffer_clear(&r->figure[i].svg);
   }
+  for (int i = 0; r->portrait && i < r->study->molecule_count; i++)
+    mho_buffer_clear(&r->portrait[i].svg);
+  free(r->portrait);
   free(r->figure);
   free(r->outcome);
   free(r->conductance);
@@ -546,13 +579,14 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
             study->traces_count;
   r.outcome = calloc(n, sizeof *r.outcome);
+  r.portrait = calloc(n, sizeof *r.portrait);
   r.conductance = calloc(n, sizeof *r.conductance);
   r.comparison = calloc(n, sizeof *r.comparison);
   r.measured = calloc((size_t)study->traces_count + 1, sizeof *r.measured);
   r.peak = calloc((size_t)(study->peak_count + study->traces_count) + 1, sizeof *r.peak);
   char *target = r.options->folder ? mho_copy_text(r.options->folder) : default_folder(study);
   mho_status status =
-      r.outcome && r.conductance && r.comparison && r.measured && r.peak && target ? MHO_OK : fail_memory(error);
+      r.outcome && r.portrait && r.conductance && r.comparison && r.measured && r.peak && target ? MHO_OK : fail_memory(error);
   if (status == MHO_OK) status = mho_folder_open(target, &r.folder, error);
   if (status == MHO_OK) status = execute(&r, error);
   run_clear(&r);

@@ -143,7 +143,8 @@ static void read_molecules(reader *r)
   for (size_t i = 0; i < list->count; i++) {
     const mho_yaml_node *item = list->item[i];
     if (!mho_yaml_is(&r->yaml, item, MHO_YAML_MAPPING, "a molecule")) continue;
-    if (mho_yaml_find(item, "smiles") || mho_yaml_find(item, "sites")) {
+    if (mho_yaml_find(item, "smiles") || mho_yaml_find(item, "structure") ||
+        mho_yaml_find(item, "sites")) {
       molecule = add_molecule(r, item);
       if (molecule && mho_molecule_read_node(&r->yaml, item, &r->study->defaults, r->overrides,
                                              molecule) == MHO_OK)
@@ -155,7 +156,7 @@ static void read_molecules(reader *r)
     if (file) read_molecule_files(r, file);
     else
       mho_yaml_fail(&r->yaml, item, MHO_ERR_KEY, "file",
-                    "a molecule needs a 'file', a 'smiles' or its 'sites'");
+                    "a molecule needs a 'file', a 'smiles', a 'structure' or its 'sites'");
   }
 }
 

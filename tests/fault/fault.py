@@ -13,6 +13,8 @@ ROOT = os.environ["MHO_SOURCE"]
 PRELOAD = sys.argv[1]
 STRIDE_LIMIT = 80  # at most that many runs a command
 MOLECULE = os.path.join(ROOT, "molecules/benzene-1-3-diamine.yaml")
+GOLDEN = os.path.join(ROOT, "tests/golden/files")
+PULLS = os.path.join(GOLDEN, "pulls.csv")
 STUDY = os.path.join(ROOT, "molecules/studies/flat-or-twisted.yaml")
 
 
@@ -27,9 +29,15 @@ def main():
     for arguments in (["check", "--json", MOLECULE], ["conductance", MOLECULE],
                       ["conductance", "--json", MOLECULE],
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
-                      ["run", STUDY, "-o", "results"]):
+                      ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
+                      ["blink", "--levels=2", "blink.txt"],
+                      ["run", STUDY, "-o", "results"],
+                      ["run", os.path.join(GOLDEN, "traces.yaml"), "-o", "results"]):
         scratch = tempfile.mkdtemp()
         os.chdir(scratch)
+        with open("blink.txt", "w") as file:
+            file.writelines(f"{i * 1e-3:.3f} {(1 + i // 40 % 2) * 1e-3 + i % 7 * 1e-5:.5f}\n"
+                            for i in range(400))
         good = run(arguments, scratch, FAIL_COUNT=os.path.join(scratch, "count"))
         total = int(open(os.path.join(scratch, "count")).read())
         shutil.rmtree("results", ignore_errors=True)

@@ -128,7 +128,7 @@ static bool run(const char *text)
   options.alkyl = (mho_alkyl)draw(3);
   options.alternation = (mho_alternation)draw(2);
   options.contacts_optional = draw(2);
-  options.place = (mho_place){"corpus", 1, 1};
+  options.place = (mho_place){"corpus", 1, 1, false};
   mho_status status = mho_structure_read_smiles(text, &options, &molecule, &structure, &error);
   bool read = structure.graph.atom_count > 0;
   if (read) hold_graph(&structure.graph, text);

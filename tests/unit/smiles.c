@@ -86,7 +86,7 @@ static void an_error_stands_where_the_text_stands(void **state)
   mho_error error;
   mho_graph_init(&graph);
   mho_error_init(&error);
-  mho_place place = {"m.yaml", 12, 10};
+  mho_place place = {"m.yaml", 12, 10, false};
   assert_int_equal(mho_smiles_read("c1ccc(", &place, &graph, &error), MHO_ERR_SYNTAX);
   char line[200];
   mho_cause_format(&error.cause[0], line, sizeof line);

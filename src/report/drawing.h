@@ -1,0 +1,56 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * The picture of a molecule: its skeleton with contacts, linkers and
+ * rotatable bonds, and what a stage wants to show on sites and bonds.
+ */
+#ifndef MHOLECULE_REPORT_DRAWING_H
+#define MHOLECULE_REPORT_DRAWING_H
+
+#include <mho/molecule.h>
+
+#include "base/buffer.h"
+
+/* Points are the atoms of the structure, hydrogens at an end left out, or the
+ * sites where there is no structure.  Bond lengths are about 1, y goes up, and
+ * the left contact lies to the left. */
+typedef struct {
+  const mho_molecule *molecule; /* outlives the drawing */
+  int points, bonds;
+  double (*position)[2]; /* [points] */
+  int (*bond)[2];        /* [bonds] points */
+  int *point_atom;       /* [points] atom, or -1 for a site without one */
+  int *bond_order;       /* [bonds] 1 to 4 */
+  int *bond_of;          /* [bonds] bond of the molecule, or -1 */
+  int *site_point;       /* [site_count] */
+  int *point_site;       /* [points] first site of the point, or -1 */
+} mho_drawing;
+
+/* What to show besides; every array may be NULL.  Values run from -1 to 1:
+ * a site gets a disc of that area, filled where positive and hatched where
+ * negative; a bond gets an arrow of that width, from its first to its second
+ * site where positive.  Texts stand beside site and bond; "" or NULL for
+ * none. */
+typedef struct {
+  const char *title;          /* above the picture; NULL for none */
+  const double *site_value;   /* [site_count] */
+  const double *bond_value;   /* [bond_count] of the molecule */
+  const char *const *site_text, *const *bond_text;
+} mho_drawing_marks;
+
+/* Lays a molecule out.  The caller clears the drawing, also after a failure.
+ * Errors: MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_drawing_make(const mho_molecule *molecule,
+                                         mho_drawing *drawing,
+                                         mho_error *error);
+void mho_drawing_clear(mho_drawing *drawing);
+
+/* Appends one <svg> element; marks may be NULL. */
+void mho_drawing_write(const mho_drawing *drawing,
+                       const mho_drawing_marks *marks, mho_buffer *svg);
+
+/* Several drawings below each other, a whole SVG file. */
+MHO_MUST_USE mho_status mho_drawing_write_file(const mho_molecule *const *molecule,
+                                               size_t count, mho_buffer *svg,
+                                               mho_error *error);
+
+#endif
