@@ -48,7 +48,7 @@ typedef struct {
   bool map, has_angles, rules, modify, every_site;
   double angle_low_deg, angle_high_deg, at_deg;
   int bonds;
-  const char *bond[8], *torsion;
+  const char *bond[8], *torsion, *from;
   double window_ev;
   bool has_window;
   unsigned long seed;

@@ -1,6 +1,46 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <stdlib.h>
+
 #include "cli/command.h"
+#include "report/drawing.h"
+#include "report/figure.h"
 #include "report/stages.h"
+
+/* Leaves the pairs with one site; its index into *from. */
+static mho_status keep_from(const command *cmd, const mho_molecule *m, mho_interference *map,
+                            int *from, mho_error *error)
+{
+  *from = mho_molecule_find_site(m, cmd->from);
+  if (*from < 0)
+    return mho_fail_at(error, MHO_ERR_REFERENCE, "cli", m->source ? m->source : m->name, 0, 0,
+                       "from", "--from: there is no site '%.60s' in the pi system", cmd->from);
+  size_t kept = 0;
+  for (size_t p = 0; p < map->count; p++) {
+    mho_pair swap = map->pair[p];
+    if (swap.site[0] != *from && swap.site[1] != *from) {
+      free(swap.magic);
+      continue;
+    }
+    map->pair[kept++] = swap;
+  }
+  map->count = kept;
+  return MHO_OK;
+}
+
+static mho_status draw(const command *cmd, const mho_molecule *m, const mho_interference *map,
+                       int from, mho_error *error)
+{
+  mho_buffer picture = {0};
+  mho_status status = MHO_OK;
+  if (from >= 0) status = mho_drawing_write_pairs(m, map, from, &picture, error);
+  else mho_figure_pairs(&picture, m, map);
+  if (status == MHO_OK) status = mho_buffer_check(&picture, "cli", error);
+  if (status == MHO_OK)
+    status = from >= 0 ? mho_buffer_save(&picture, cmd->measured.figure, "cli", error)
+                       : figure_write(cmd, &picture, error);
+  mho_buffer_clear(&picture);
+  return status;
+}
 
 static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
                                mho_table *table, mho_error *error)
@@ -10,6 +50,10 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   options.every_site = cmd->every_site;
   if (cmd->rules) options.nodes = options.magic = false;
   mho_status status = mho_interference_map(&s->molecule, &s->junction, &options, &map, error);
+  int from = -1;
+  if (status == MHO_OK && cmd->from) status = keep_from(cmd, &s->molecule, &map, &from, error);
+  if (status == MHO_OK && cmd->measured.figure)
+    status = draw(cmd, &s->molecule, &map, from, error);
   if (status == MHO_OK && cmd->rules) mho_rules_rows(table, &s->molecule, &map);
   else if (status == MHO_OK) mho_interference_rows(table, &s->molecule, &map);
   mho_output_warn(output, s->molecule.name, s->warnings);
@@ -39,6 +83,10 @@ static int check_options(const command *cmd)
   if (cmd->modify && (cmd->rules || cmd->every_site))
     return usage_error(cmd->verb, "--modify keeps the contacts; it excludes --rules and "
                                   "--every-site");
+  if ((cmd->from || cmd->measured.figure) && cmd->modify)
+    return usage_error(cmd->verb, "--from and --figure belong to pairs; --modify excludes them");
+  if (cmd->measured.figure && cmd->files > 1)
+    return usage_error(cmd->verb, "--figure draws one molecule");
   if (cmd->has_window && !cmd->modify)
     return usage_error(cmd->verb, "--window belongs to --modify");
   return EXIT_DONE;

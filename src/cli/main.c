@@ -79,7 +79,7 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_FROM,
   OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
   OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
@@ -105,6 +105,8 @@ static const option_row options[OPTION_COUNT] = {
                    "rules of thumb beside the exact result, and where they fail"},
     [OPT_MODIFY] = {INTERFERENCE, "modify", 0, NULL,
                     "what to change instead: CH to N and substituents, largest effect first"},
+    [OPT_FROM] = {INTERFERENCE, "from", 0, "SITE",
+                  "only pairs with this site; --figure then draws them on the molecule"},
     [OPT_EVERY_SITE] = {INTERFERENCE, "every-site", 0, NULL,
                         "also sites with three bonds, which no linker can sit on"},
     [OPT_SAMPLES] = {TRANSMISSION | TWIST, "samples", 0, "N",
@@ -180,7 +182,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_KEEP_GOING] = {MEASURED, "keep-going", 0, NULL,
                         "use the other files where one is bad; still exit with 2"},
     [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
-    [OPT_FIGURE] = {MEASURED, "figure", 0, "FILE.svg", "draw the table with gnuplot"},
+    [OPT_FIGURE] = {MEASURED | TWIST | INTERFERENCE, "figure", 0, "FILE.svg",
+                    "draw the table with gnuplot"},
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
     [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
@@ -369,6 +372,7 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_BOND: return read_bond(cmd, text);
   case OPT_RULES: cmd->rules = true; return EXIT_DONE;
   case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;
+  case OPT_FROM: cmd->from = text; return EXIT_DONE;
   case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
   case OPT_TWIST_MAP: cmd->map = true; return EXIT_DONE;
   case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;

@@ -5,6 +5,7 @@
 
 #include "base/text.h"
 #include "cli/command.h"
+#include "report/figure.h"
 #include "report/stages.h"
 
 #define DEFAULT_REACH_EV 3.0
@@ -248,7 +249,20 @@ static int check_options(const command *cmd)
   if (cmd->torsion && (cmd->map || cmd->has_at || cmd->has_samples || cmd->has_angles))
     return usage_error(cmd->verb, "--torsion averages over all angles; it excludes --map, --at, "
                                   "--angles and --samples");
+  if (cmd->torsion && cmd->measured.figure)
+    return usage_error(cmd->verb, "--figure draws the angles or the map, not --torsion");
   return EXIT_DONE;
+}
+
+static mho_status draw(const command *cmd, const mho_table *table, mho_error *error)
+{
+  mho_buffer script = {0};
+  if (cmd->map) mho_figure_twist_map(&script, table);
+  else mho_figure_twist(&script, table);
+  mho_status status = mho_buffer_check(&script, "cli", error);
+  if (status == MHO_OK) status = figure_write(cmd, &script, error);
+  mho_buffer_clear(&script);
+  return status;
 }
 
 int command_twist(const command *cmd, mho_error *error)
@@ -268,6 +282,10 @@ int command_twist(const command *cmd, mho_error *error)
     mho_output_note(&output, "motional average: <G> over exp(-V/kT), the bond turns faster than "
                              "anyone measures; frozen average: exp <ln G>, every junction keeps "
                              "its angle");
+  if (status == MHO_OK) status = mho_output_check(&output, error);
+  if (status == MHO_OK && cmd->measured.figure && cmd->map && list.count > 1)
+    status = mho_fail(error, MHO_ERR_USAGE, "cli", "figure", "--figure draws the map of one molecule");
+  if (status == MHO_OK && cmd->measured.figure) status = draw(cmd, table, error);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
   subjects_free(&list);
