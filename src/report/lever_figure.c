@@ -89,6 +89,26 @@ static double pair_log10(const mho_pair *pair)
   return pair->transmission > 0 ? log10(pair->transmission) : -INFINITY;
 }
 
+/* Both halves of the matrix, as far as log10 T lies in (low, high]. */
+static void add_cells(mho_buffer *script, const mho_interference *map, const int *place,
+                      double highest, const char *name, double low, double high)
+{
+  mho_buffer_print(script, "$%s << END\n", name);
+  for (size_t p = 0; p < map->count; p++)
+    for (int turn = 0; turn < 2; turn++) {
+      const mho_pair *pair = &map->pair[p];
+      double value = fmax(pair_log10(pair), highest - SHOWN_DECADES);
+      if (!(value > low && value <= high)) continue;
+      add_number(script, place[pair->site[turn]]);
+      add_number(script, place[pair->site[!turn]]);
+      add_number(script, value);
+      mho_buffer_add(script, pair->transmission == 0 ? " o\n" : pair->green_per_ev > 0 ? " +\n"
+                             : pair->green_per_ev < 0 ? " −\n" : " .\n");
+    }
+  if (low > -INFINITY || high < INFINITY) mho_buffer_add(script, "-9 -9 0 .\n"); /* never empty */
+  mho_buffer_add(script, "END\n");
+}
+
 /* Names of the sites that pairs are made of, on one axis. */
 static void add_names(mho_buffer *script, const mho_molecule *molecule, const char *axis,
                       const int *place, int count)
@@ -122,17 +142,9 @@ void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
     if (place[i] == 0) place[i] = count++;
   if (!isfinite(highest)) highest = 0;
   begin_figure(script, SQUARE, SQUARE - 60);
-  mho_buffer_add(script, "$pairs << END\n");
-  for (size_t p = 0; p < map->count; p++)
-    for (int turn = 0; turn < 2; turn++) {
-      const mho_pair *pair = &map->pair[p];
-      add_number(script, place[pair->site[turn]]);
-      add_number(script, place[pair->site[!turn]]);
-      add_number(script, fmax(pair_log10(pair), highest - SHOWN_DECADES));
-      mho_buffer_add(script, pair->transmission == 0 ? " o\n" : pair->green_per_ev > 0 ? " +\n"
-                             : pair->green_per_ev < 0 ? " −\n" : " .\n");
-    }
-  mho_buffer_add(script, "END\n");
+  add_cells(script, map, place, highest, "pairs", -INFINITY, INFINITY);
+  add_cells(script, map, place, highest, "dark", highest - 0.5 * SHOWN_DECADES, INFINITY);
+  add_cells(script, map, place, highest, "light", -INFINITY, highest - 0.5 * SHOWN_DECADES);
   add_names(script, molecule, "xtics rotate", place, count);
   add_names(script, molecule, "ytics", place, count);
   mho_buffer_print(script,
@@ -141,7 +153,8 @@ void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
                    "plot $pairs using 1:2:(0.5):(0.5):3 with boxxyerror palette notitle%s\n",
                    count - 1, count - 1,
                    count <= SITES_NAMED_MAX / 2
-                       ? ", $pairs using 1:2:4 with labels font ',15' textcolor '#b23a1e' notitle"
+                       ? ", $dark using 1:2:4 with labels font ',15' textcolor '#ffffff' notitle, "
+                         "$light using 1:2:4 with labels font ',15' textcolor '#222222' notitle"
                        : "");
   free(place);
 }
