@@ -70,7 +70,7 @@ def check_report(folder):
         expect(section in reader.sections, f"section {section}")
     expect(all(link.startswith("data:") for link in reader.links), "nothing is loaded")
     expect("http" not in re.sub(r"data:[^\"]*", "", text), "no address in the report")
-    expect(len(reader.images) == 3, "three figures")
+    expect(len(reader.images) == 3 + 6, "three figures and the drawings of six molecules")
     for image in reader.images:
         svg = base64.b64decode(image.split(",", 1)[1])
         expect(svg.rstrip().endswith(b"</svg>"), "figures are whole")
