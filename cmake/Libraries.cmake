@@ -21,3 +21,10 @@ find_path(GSL_INCLUDE gsl/gsl_integration.h REQUIRED)
 add_library(mho_gsl INTERFACE)
 target_include_directories(mho_gsl SYSTEM INTERFACE ${GSL_INCLUDE})
 target_link_libraries(mho_gsl INTERFACE ${GSL_LIBRARY} PkgConfig::OPENBLAS m)
+
+# Exact integers; Debian's package has no pkg-config file in every release.
+find_library(FLINT_LIBRARY flint REQUIRED)
+find_path(FLINT_INCLUDE flint/fmpz_mat.h REQUIRED)
+add_library(mho_flint INTERFACE)
+target_include_directories(mho_flint SYSTEM INTERFACE ${FLINT_INCLUDE})
+target_link_libraries(mho_flint INTERFACE ${FLINT_LIBRARY})

@@ -88,18 +88,20 @@ def check_threads():
 def check_figures(scratch):
     tables = {"histogram": (), "peaks": ("--peaks",), "map": ("--map",), "comb": ("--comb",),
               "linear": ("--linear",), "plateaus": ("--plateaus",)}
-    short = os.path.join(scratch, "blink.csv")
+    short = os.path.join(scratch, "blink.csv")  # 2000 points are enough here
     with gzip.open(BLINK) as packed, open(short, "wb") as plain:
-        plain.write(b"".join(packed.readlines()[:3002]))
+        plain.write(b"".join(packed.readlines()[:2002]))
     calls = {name: ("histogram", *flags, "--floor=1e-6G0", PULLS) for name, flags in tables.items()}
     calls["blink"] = ("blink", "--levels=2", "--bias=0.1V", short)
     for name, call in calls.items():
-        one, two = os.path.join(scratch, name + "1.svg"), os.path.join(scratch, name + "2.svg")
+        one = os.path.join(scratch, name + "1.svg")
         done = mho(*call, "--quiet", "--figure", one)
         expect(done.returncode == 0 and not done.stderr, f"{name}: {done.stderr}")
         root = xml.dom.minidom.parse(one).documentElement
         expect(root.tagName == "svg" and root.getElementsByTagName("path"), f"{name}: a figure")
-        mho(*call, "--csv", "-o", os.devnull, "--figure", two)
+    for name in ("peaks", "map"):
+        one, two = os.path.join(scratch, name + "1.svg"), os.path.join(scratch, name + "2.svg")
+        mho(*calls[name], "--csv", "-o", os.devnull, "--figure", two)
         expect(open(one, "rb").read() == open(two, "rb").read(), f"{name}: the same bytes")
     text = open(os.path.join(scratch, "peaks1.svg"), encoding="utf-8").read()
     expect("0.000997 G0" in text, "the figure tells the peak")

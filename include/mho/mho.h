@@ -12,8 +12,10 @@
 #include <mho/graph.h>
 #include <mho/histogram.h>
 #include <mho/inside.h>
+#include <mho/interference.h>
 #include <mho/junction.h>
 #include <mho/linker.h>
+#include <mho/modify.h>
 #include <mho/molecule.h>
 #include <mho/molecule_file.h>
 #include <mho/nodes.h>
@@ -26,8 +28,10 @@
 #include <mho/structure.h>
 #include <mho/study.h>
 #include <mho/telegraph.h>
+#include <mho/torsion.h>
 #include <mho/traces.h>
 #include <mho/transmission.h>
+#include <mho/twist.h>
 #include <mho/version.h>
 #include <mho/warning.h>
 

@@ -51,14 +51,14 @@ mho_status mho_parameter_list(const mho_molecule *molecule, const mho_uncertaint
   return MHO_OK;
 }
 
-/* Sites and bonds of their own; everything else is the original's. */
-static mho_status copy_numbers(const mho_molecule *from, mho_molecule *to)
+mho_status mho_copy_numbers(const mho_molecule *from, mho_molecule *to, mho_error *error)
 {
   size_t sites = (size_t)from->site_count, bonds = (size_t)from->bond_count;
   *to = *from;
   to->site = malloc((sites + 1) * sizeof *to->site);
   to->bond = malloc((bonds + 1) * sizeof *to->bond);
-  if (!to->site || !to->bond) return MHO_ERR_MEMORY;
+  if (!to->site || !to->bond)
+    return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   if (sites) memcpy(to->site, from->site, sites * sizeof *to->site);
   if (bonds) memcpy(to->bond, from->bond, bonds * sizeof *to->bond);
   return MHO_OK;
@@ -106,8 +106,7 @@ mho_status mho_perturbed_log10(const mho_molecule *molecule, double fermi_ev,
   mho_molecule moved;
   mho_junction junction = {0};
   mho_plan *plan = NULL;
-  mho_status status = copy_numbers(molecule, &moved);
-  if (status != MHO_OK) mho_fail(error, status, "analysis", NULL, "out of memory");
+  mho_status status = mho_copy_numbers(molecule, &moved, error);
   moved.fermi = (mho_fermi){.kind = MHO_FERMI_ENERGY, .offset_ev = fermi_ev};
   for (size_t p = 0; p < count; p++)
     if (row[p].kind == MHO_PARAMETER_BETA) moved.beta_ev += shift[p];

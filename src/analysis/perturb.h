@@ -7,6 +7,11 @@
 
 #include <mho/sensitivity.h>
 
+/* A molecule with sites and bonds of its own, freed by freeing those two (also
+ * after a failure); everything else stays the original's. */
+MHO_MUST_USE mho_status mho_copy_numbers(const mho_molecule *from, mho_molecule *to,
+                                         mho_error *error);
+
 /* Every parameter with its sigma, in a fixed order; the caller frees *row. */
 MHO_MUST_USE mho_status mho_parameter_list(const mho_molecule *molecule,
                                            const mho_uncertainties *sigma,

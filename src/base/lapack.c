@@ -2,6 +2,7 @@
 #include "base/lapack.h"
 
 #include <math.h>
+#include <stdlib.h>
 
 #define lapack_complex_float float complex
 #define lapack_complex_double double complex
@@ -12,6 +13,9 @@
 void openblas_set_num_threads(int threads);
 int openblas_get_parallel(void);
 char *openblas_get_config(void);
+void dgemm_(const char *, const char *, const lapack_int *, const lapack_int *, const lapack_int *,
+            const double *, const double *, const lapack_int *, const double *, const lapack_int *,
+            const double *, double *, const lapack_int *);
 
 enum { OPENBLAS_SERIAL = 0 };
 
@@ -78,4 +82,32 @@ mho_status mho_eigenvalues_complex(int n, double complex *matrix,
                                    mho_error *error)
 {
   return mho_eigen_complex(n, matrix, eigenvalues, NULL, error);
+}
+
+mho_status mho_solve_complex(int n, double complex *matrix, int columns,
+                             double complex *column, bool *singular,
+                             mho_error *error)
+{
+  *singular = false;
+  mho_status status = mho_lapack_check(error);
+  if (status != MHO_OK) return status;
+  lapack_int *pivot = malloc((size_t)n * sizeof *pivot);
+  if (!pivot) return mho_fail(error, MHO_ERR_MEMORY, "base", NULL, "out of memory");
+  lapack_int info =
+      LAPACKE_zgesv(LAPACK_COL_MAJOR, n, columns, matrix, n, pivot, column, n);
+  free(pivot);
+  *singular = info > 0;
+  if (info > 0) return MHO_OK;
+  for (size_t i = 0; info == 0 && i < (size_t)n * (size_t)columns; i++)
+    if (!isfinite(creal(column[i])) || !isfinite(cimag(column[i]))) *singular = true;
+  return finish("zgesv", info, error);
+}
+
+mho_status mho_multiply_transposed(int n, const double *a, const double *b, double *product,
+                                   mho_error *error)
+{
+  const double one = 1, zero = 0;
+  mho_status status = mho_lapack_check(error);
+  if (status == MHO_OK) dgemm_("N", "T", &n, &n, &n, &one, a, &n, b, &n, &zero, product, &n);
+  return status;
 }

@@ -35,6 +35,17 @@ MHO_MUST_USE mho_status mho_eigen_complex(int n, double complex *matrix,
                                           double complex *eigenvectors,
                                           mho_error *error);
 
+/* Solves matrix[n*n] x = column for `columns` right-hand sides, which become the
+ * solutions; matrix is destroyed.  *singular, and MHO_OK, where a pivot is
+ * exactly zero or a result overflows: then the columns hold nothing. */
+MHO_MUST_USE mho_status mho_solve_complex(int n, double complex *matrix, int columns,
+                                          double complex *column, bool *singular,
+                                          mho_error *error);
+
+/* product = a b^T, all n x n column-major. */
+MHO_MUST_USE mho_status mho_multiply_transposed(int n, const double *a, const double *b,
+                                                double *product, mho_error *error);
+
 /* One line that names the linear algebra in use, for `mho --version`. */
 const char *mho_lapack_description(void);
 

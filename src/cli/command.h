@@ -45,6 +45,10 @@ typedef struct {
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;
+  bool map, has_angles, rules, modify, every_site;
+  double angle_low_deg, angle_high_deg, at_deg;
+  int bonds;
+  const char *bond[8], *torsion, *from;
   double window_ev;
   bool has_window;
   unsigned long seed;
@@ -57,7 +61,7 @@ typedef struct {
 typedef int verb_function(const command *cmd, mho_error *error);
 
 verb_function command_blink, command_check, command_conductance, command_histogram,
-    command_run, command_transmission;
+    command_interference, command_run, command_transmission, command_twist;
 
 /* Exit status that belongs to a status. */
 int exit_of(mho_status status);

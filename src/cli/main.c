@@ -10,8 +10,14 @@
 #include "base/text.h"
 #include "cli/command.h"
 
-enum { CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32 };
-enum { TABLES = CONDUCTANCE | TRANSMISSION, MOLECULES = CHECK | TABLES, ALL = MOLECULES | RUN };
+enum {
+  CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32, TWIST = 64,
+  INTERFERENCE = 128
+};
+enum {
+  TABLES = CONDUCTANCE | TRANSMISSION | TWIST | INTERFERENCE, MOLECULES = CHECK | TABLES,
+  ALL = MOLECULES | RUN
+};
 enum { MEASURED = HISTOGRAM | BLINK, EVERY = ALL | MEASURED };
 
 typedef struct {
@@ -34,6 +40,19 @@ static const verb verbs[] = {
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
      "follow resonances and nodes, so that none is missed.",
      command_transmission},
+    {TWIST, "twist", "MOLECULE...", "how flat a bond must be, and its thermal average",
+     "T and thermal conductance against the angle of a bond, the Fermi level held\n"
+     "where the molecule as given has it.  With --torsion the average over the\n"
+     "thermal motion instead: of G (motional: it turns faster than anyone measures)\n"
+     "and of log G (frozen: every junction keeps its angle).  Two --bond and --map\n"
+     "give T of both angles.",
+     command_twist},
+    {INTERFERENCE, "interference", "MOLECULE...", "where the linkers should go: all pairs of sites",
+     "T between every two sites that a linker may sit on, at the Fermi level and with\n"
+     "one coupling: the bare Green's function with its sign, magic integers of\n"
+     "benzenoids, what kind of pair it is, its nearest node, and how far the Fermi\n"
+     "level may move before the verdict turns.  Needs no contacts, but for --modify.",
+     command_interference},
     {HISTOGRAM, "histogram", "FILE...", "peaks of measured traces that can be trusted",
      "Histogram of measured conductances of all files together: text (also in gzip)\n"
      "or .npy, columns named as distance_nm, time_s, conductance_G0, conductance_S,\n"
@@ -60,8 +79,10 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_ENERGIES, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY, OPT_SEED, OPT_FERMI, OPT_TEMPERATURE,
-  OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST, OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_FROM,
+  OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
+  OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
+  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
   OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
   OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
@@ -70,15 +91,33 @@ enum {
 };
 
 static const option_row options[OPTION_COUNT] = {
-    [OPT_ENERGIES] = {TRANSMISSION, "energies", 0, "'LOW, HIGH'",
+    [OPT_BOND] = {TWIST, "bond", 0, "BOND",
+                  "such as C5-C8 (default: the only one that can turn), or all; may be repeated, "
+                  "they turn together"},
+    [OPT_ANGLES] = {TWIST, "angles", 0, "'LOW, HIGH'", "range (default '0 deg, 90 deg')"},
+    [OPT_ENERGIES] = {TRANSMISSION | TWIST, "energies", 0, "'LOW, HIGH'",
                       "range above the Fermi level (default '-3 eV, 3 eV')"},
-    [OPT_SAMPLES] = {TRANSMISSION, "samples", 0, "N", "that many even steps, both ends included"},
-    [OPT_AT] = {TRANSMISSION, "at", 0, "ENERGY", "one row, at this energy above the Fermi level"},
+    [OPT_TWIST_MAP] = {TWIST, "map", 0, NULL, "T against angle and energy, or against two angles"},
+    [OPT_TORSION] = {TWIST, "torsion", 0, "POTENTIAL",
+                     "biphenyl, tolane ..., two barriers '6 kJ/mol, 6.5 kJ/mol' at 0 and 90 deg, "
+                     "terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
+    [OPT_RULES] = {INTERFERENCE, "rules", 0, NULL,
+                   "rules of thumb beside the exact result, and where they fail"},
+    [OPT_MODIFY] = {INTERFERENCE, "modify", 0, NULL,
+                    "what to change instead: CH to N and substituents, largest effect first"},
+    [OPT_FROM] = {INTERFERENCE, "from", 0, "SITE",
+                  "only pairs with this site; --figure then draws them on the molecule"},
+    [OPT_EVERY_SITE] = {INTERFERENCE, "every-site", 0, NULL,
+                        "also sites with three bonds, which no linker can sit on"},
+    [OPT_SAMPLES] = {TRANSMISSION | TWIST, "samples", 0, "N",
+                     "that many even steps, both ends included"},
+    [OPT_AT] = {TRANSMISSION | TWIST, "at", 0, "QUANTITY",
+                "one row: an energy above the Fermi level, or an angle for twist"},
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
     [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
-    [OPT_WINDOW] = {CONDUCTANCE, "window", 0, "ENERGY",
+    [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
@@ -143,7 +182,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_KEEP_GOING] = {MEASURED, "keep-going", 0, NULL,
                         "use the other files where one is bad; still exit with 2"},
     [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
-    [OPT_FIGURE] = {MEASURED, "figure", 0, "FILE.svg", "draw the table with gnuplot"},
+    [OPT_FIGURE] = {MEASURED | TWIST | INTERFERENCE, "figure", 0, "FILE.svg",
+                    "draw the table with gnuplot"},
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
     [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
@@ -240,25 +280,32 @@ int read_quantity(const char *verb_name, const char *option, const char *text,
 }
 
 /* `LOW, HIGH` */
-static int read_energies(command *cmd, const char *text)
+static int read_range(const command *cmd, const char *option, const char *text,
+                      mho_dimension dimension, const char *example, double reach, double *low,
+                      double *high)
 {
   const char *comma = strchr(text, ',');
   if (!comma || strchr(comma + 1, ','))
-    return usage_error(cmd->verb,
-                       "--energies: '%s' is not a range; write '-3 eV, 3 eV'", text);
-  char *low = mho_print_text("%.*s", (int)(comma - text), text);
-  if (!low) return usage_error(cmd->verb, "out of memory");
-  int code = read_quantity(cmd->verb, "energies", low, MHO_ENERGY, -1000, 1000,
-                           &cmd->energy_low_ev);
-  free(low);
+    return usage_error(cmd->verb, "--%s: '%s' is not a range; write '%s'", option, text, example);
+  char *first = mho_print_text("%.*s", (int)(comma - text), text);
+  if (!first) return usage_error(cmd->verb, "out of memory");
+  int code = read_quantity(cmd->verb, option, first, dimension, -reach, reach, low);
+  free(first);
   if (code == EXIT_DONE)
-    code = read_quantity(cmd->verb, "energies", comma + 1, MHO_ENERGY, -1000, 1000,
-                         &cmd->energy_high_ev);
-  if (code == EXIT_DONE && !(cmd->energy_low_ev < cmd->energy_high_ev))
-    return usage_error(cmd->verb,
-                       "--energies: '%s' runs downwards; the lower end comes first", text);
-  cmd->has_energies = true;
+    code = read_quantity(cmd->verb, option, comma + 1, dimension, -reach, reach, high);
+  if (code == EXIT_DONE && !(*low < *high))
+    return usage_error(cmd->verb, "--%s: '%s' runs downwards; the lower end comes first", option,
+                       text);
   return code;
+}
+
+static int read_bond(command *cmd, const char *text)
+{
+  const int most = sizeof cmd->bond / sizeof *cmd->bond;
+  if (cmd->bonds == most)
+    return usage_error(cmd->verb, "--bond: at most %d are allowed; all stands for every one", most);
+  cmd->bond[cmd->bonds++] = text;
+  return EXIT_DONE;
 }
 
 int read_count(const char *verb_name, const char *option, const char *text, long low, long high,
@@ -314,12 +361,28 @@ static int read_twist(command *cmd, const char *text)
 static int read_option(command *cmd, int which, const char *text)
 {
   switch (which) {
-  case OPT_ENERGIES: return read_energies(cmd, text);
+  case OPT_ENERGIES:
+    cmd->has_energies = true;
+    return read_range(cmd, "energies", text, MHO_ENERGY, "-3 eV, 3 eV", 1000,
+                      &cmd->energy_low_ev, &cmd->energy_high_ev);
+  case OPT_ANGLES:
+    cmd->has_angles = true;
+    return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", 360, &cmd->angle_low_deg,
+                      &cmd->angle_high_deg);
+  case OPT_BOND: return read_bond(cmd, text);
+  case OPT_RULES: cmd->rules = true; return EXIT_DONE;
+  case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;
+  case OPT_FROM: cmd->from = text; return EXIT_DONE;
+  case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
+  case OPT_TWIST_MAP: cmd->map = true; return EXIT_DONE;
+  case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;
   case OPT_SAMPLES:
     cmd->has_samples = true;
     return read_count(cmd->verb, "samples", text, 2, 1000000, &cmd->samples);
   case OPT_AT:
     cmd->has_at = true;
+    if (!strcmp(cmd->verb, "twist"))
+      return read_quantity(cmd->verb, "at", text, MHO_ANGLE, -360, 360, &cmd->at_deg);
     return read_quantity(cmd->verb, "at", text, MHO_ENERGY, -1000, 1000, &cmd->at_ev);
   case OPT_SEED: return read_seed(cmd, text);
   case OPT_SENSITIVITY: cmd->sensitivity = true; return EXIT_DONE;

@@ -14,6 +14,7 @@
 
 #include "base/text.h"
 #include "cli/command.h"
+#include "measure/settings.h"
 #include "report/figure.h"
 
 #define G0_LOW 1e-15
@@ -102,15 +103,6 @@ static int read_conductances(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
-/* A conductance or a current. */
-static int read_limit(const command *cmd, const char *name, const char *text, double *g0,
-                      double *ampere)
-{
-  if (mho_quantity_read(text, MHO_CURRENT, ampere, NULL, 0) == MHO_OK)
-    return read_quantity(cmd->verb, name, text, MHO_CURRENT, 1e-18, 1, ampere);
-  return read_quantity(cmd->verb, name, text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, g0);
-}
-
 static int read_trace_quantity(command *cmd, const char *text)
 {
   static const struct { const char *name; mho_trace_quantity quantity; } known[] = {
@@ -125,6 +117,7 @@ static int read_trace_quantity(command *cmd, const char *text)
                                 "conductance_S, log10_G0 and current_A", text);
 }
 
+/* EXIT_RUNTIME where the option is no single quantity. */
 static int read_single(command *cmd, const char *name, const char *text)
 {
   measured_options *m = &cmd->measured;
@@ -133,10 +126,6 @@ static int read_single(command *cmd, const char *name, const char *text)
     mho_dimension dimension;
     double low, high, *value;
   } quantities[] = {
-      {"bias", MHO_VOLTAGE, -10, 10, &m->traces.bias_v},
-      {"series-resistance", MHO_RESISTANCE, 0, 1e12, &m->traces.series_ohm},
-      {"sampling", MHO_FREQUENCY, 1e-3, 1e10, &m->traces.sampling_hz},
-      {"speed", MHO_SPEED, 1e-6, 1e9, &m->traces.speed_nm_per_s},
       {"crossing", MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &m->histogram.crossing_g0},
       {"snap-back", MHO_LENGTH, 0, 100, &m->histogram.snap_back_nm},
       {"plateau-length", MHO_LENGTH, 0, 100, &m->histogram.plateau_nm},
@@ -146,7 +135,10 @@ static int read_single(command *cmd, const char *name, const char *text)
     if (!strcmp(quantities[i].name, name))
       return read_quantity(cmd->verb, name, text, quantities[i].dimension, quantities[i].low,
                            quantities[i].high, quantities[i].value);
-  return EXIT_RUNTIME;
+  char reason[320];
+  mho_status status = mho_trace_setting_read(&m->traces, name, text, reason, sizeof reason);
+  if (status == MHO_ERR_KEY) return EXIT_RUNTIME;
+  return status == MHO_OK ? EXIT_DONE : usage_error(cmd->verb, "--%s: %s", name, reason);
 }
 
 static int read_number(command *cmd, const char *name, const char *text)
@@ -184,10 +176,6 @@ int read_measured_option(command *cmd, const char *name, const char *text)
   }
   int code = read_single(cmd, name, text);
   if (code != EXIT_RUNTIME) return code;
-  if (!strcmp(name, "floor"))
-    return read_limit(cmd, name, text, &m->traces.floor_g0, &m->traces.floor_a);
-  if (!strcmp(name, "saturation"))
-    return read_limit(cmd, name, text, &m->traces.saturation_g0, &m->traces.saturation_a);
   if (!strcmp(name, "conductances")) return read_conductances(cmd, text);
   if (!strcmp(name, "distances"))
     return read_range(cmd, name, text, MHO_LENGTH, -1000, 1000, &m->histogram.map_low_nm,

@@ -6,6 +6,7 @@
 #ifndef MHOLECULE_REPORT_DRAWING_H
 #define MHOLECULE_REPORT_DRAWING_H
 
+#include <mho/interference.h>
 #include <mho/molecule.h>
 
 #include "base/buffer.h"
@@ -47,6 +48,13 @@ void mho_drawing_clear(mho_drawing *drawing);
 /* Appends one <svg> element; marks may be NULL. */
 void mho_drawing_write(const mho_drawing *drawing,
                        const mho_drawing_marks *marks, mho_buffer *svg);
+
+/* The molecule with T between the site `from` and each other one as a disc, by
+ * decades, filled where the Green's function is positive, hatched where it is
+ * negative. */
+MHO_MUST_USE mho_status mho_drawing_write_pairs(const mho_molecule *molecule,
+                                                const mho_interference *map, int from,
+                                                mho_buffer *svg, mho_error *error);
 
 /* Several drawings below each other, a whole SVG file. */
 MHO_MUST_USE mho_status mho_drawing_write_file(const mho_molecule *const *molecule,

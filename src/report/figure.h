@@ -9,11 +9,13 @@
 #define MHOLECULE_REPORT_FIGURE_H
 
 #include <mho/compare.h>
+#include <mho/interference.h>
 #include <mho/peaks.h>
 #include <mho/telegraph.h>
 #include <mho/transmission.h>
 
 #include "base/buffer.h"
+#include "report/table.h"
 
 enum { MHO_CURVES_MAX = 4 };
 
@@ -43,6 +45,13 @@ void mho_figure_comb(mho_buffer *script, const mho_histogram *histogram,
 void mho_figure_linear(mho_buffer *script, const mho_histogram *histogram);
 void mho_figure_plateaus(mho_buffer *script, const mho_histogram *histogram);
 void mho_figure_dwells(mho_buffer *script, const mho_telegraph *telegraph);
+
+/* Conductance against angle, up to MHO_CURVES_MAX molecules of the table; the
+ * map of one molecule; the matrix of its pairs. */
+void mho_figure_twist(mho_buffer *script, const mho_table *table);
+void mho_figure_twist_map(mho_buffer *script, const mho_table *table);
+void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
+                      const mho_interference *map);
 
 /* Runs gnuplot on a script file, its output into svg_path.  *available is false, and the status MHO_OK,
  * where there is no gnuplot.  Errors: MHO_ERR_WRITE. */

@@ -290,7 +290,7 @@ void mho_peaks_note(mho_output *output, const mho_peaks *peaks)
   if (peaks->count == 0)
     mho_output_note(output,
                     "no peak in the log histogram between %s and %s (log10 G/G0): nothing stands "
-                    "out of the tunnelling background in 97.5 %% of the resamples",
+                    "out of the tunnelling background beyond chance",
                     SAY(low), SAY(high));
   for (int i = 0; i < peaks->count; i++) {
     const mho_peak *p = &peaks->peak[i];

@@ -6,7 +6,9 @@
 #include <mho/warning.h>
 
 #include <math.h>
+#include <math.h>
 #include <stdio.h>
+#include <stdlib.h>
 #include <string.h>
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
@@ -178,6 +180,236 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
                     g->has_window_high ? two_digits(g->window_high_log10_g0, high, sizeof high)
                                        : "0",
                     window);
+  }
+}
+
+static void add_transmission(mho_table *table, const mho_point *point)
+{
+  if (point->node) mho_table_node(table);
+  else mho_table_number(table, point->transmission);
+}
+
+static void add_conductance(mho_table *table, double log10_g0)
+{
+  if (isinf(log10_g0)) mho_table_node(table);
+  else mho_table_number(table, pow(10, log10_g0));
+}
+
+mho_table *mho_twist_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "transmission",
+                                        "conductance_G0"};
+  return mho_output_table(output, "twist", columns, COUNT(columns));
+}
+
+void mho_twist_row(mho_table *table, const char *molecule, const char *bond, double angle_deg,
+                   const mho_point *point, double log10_g0)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_number(table, angle_deg);
+  add_transmission(table, point);
+  add_conductance(table, log10_g0);
+}
+
+mho_table *mho_twist_map_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "energy_eV",
+                                        "transmission"};
+  return mho_output_table(output, "twist_map", columns, COUNT(columns));
+}
+
+void mho_twist_map_row(mho_table *table, const char *molecule, const char *bond,
+                       double angle_deg, double relative_energy_ev, const mho_point *point)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_number(table, angle_deg);
+  mho_table_number(table, relative_energy_ev);
+  add_transmission(table, point);
+}
+
+mho_table *mho_twist_plane_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "angle_deg", "second_bond",
+                                        "second_angle_deg", "transmission"};
+  return mho_output_table(output, "twist_plane", columns, COUNT(columns));
+}
+
+void mho_twist_plane_row(mho_table *table, const char *molecule, const char *const bond[2],
+                         const double angle_deg[2], const mho_point *point)
+{
+  mho_table_text(table, molecule);
+  for (int k = 0; k < 2; k++) {
+    mho_table_text(table, bond[k]);
+    mho_table_number(table, angle_deg[k]);
+  }
+  add_transmission(table, point);
+}
+
+mho_table *mho_twist_average_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "bond", "torsion", "temperature_K",
+                                        "mean_cos2", "planar_G0", "motional_average_G0",
+                                        "frozen_average_G0"};
+  return mho_output_table(output, "twist_average", columns, COUNT(columns));
+}
+
+void mho_twist_average_row(mho_table *table, const char *molecule, const char *bond,
+                           const char *torsion, const mho_twist_average *average)
+{
+  mho_table_text(table, molecule);
+  mho_table_text(table, bond);
+  mho_table_text(table, torsion);
+  mho_table_number(table, average->temperature_k);
+  mho_table_number(table, average->mean_cos2);
+  add_conductance(table, average->planar_log10_g0);
+  add_conductance(table, average->motional_log10_g0);
+  mho_table_optional(table, average->has_frozen, pow(10, average->frozen_log10_g0));
+}
+
+void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
+                    const double limit_deg[2], const mho_twist_law *law)
+{
+  static const char *const reason[] = {
+      [MHO_TWIST_LAW_HOLDS] = "",
+      [MHO_TWIST_OTHER_PATH] = ": another path stays open at 90 deg",
+      [MHO_TWIST_NEAR_POLE] = ": a resonance lies near the Fermi level",
+      [MHO_TWIST_STRONG_COUPLING] = ": the coupling across the bond is not small against the "
+                                    "levels of its two sides",
+      [MHO_TWIST_SEVERAL_BONDS] = ": several bonds turn together"};
+  if (!law->has_fit) {
+    mho_output_note(output, "%s, %s: no transmission at any angle", molecule, bond);
+    return;
+  }
+  mho_output_note(output,
+                  "%s, %s: flat to within %g deg keeps 80 %% of the planar conductance, to within "
+                  "%g deg half of it",
+                  molecule, bond, limit_deg[0], limit_deg[1]);
+  mho_output_note(output,
+                  "%s, %s: T at the Fermi level goes as (cos^2 angle)^%.2f, residual %.3f decades; "
+                  "cos^2 itself %s %g deg%s",
+                  molecule, bond, law->exponent, law->residual_decades,
+                  law->reason ? "keeps 5 % only to" : "keeps 5 % to", law->holds_to_deg,
+                  reason[law->reason]);
+}
+
+mho_table *mho_interference_table(mho_output *output)
+{
+  static const char *const columns[] = {
+      "molecule", "site_i", "site_j", "transmission", "green_per_eV", "magic", "class", "node_eV",
+      "overturning_shift_eV"};
+  return mho_output_table(output, "interference", columns, COUNT(columns));
+}
+
+static bool is_node(const mho_pair *pair)
+{
+  return pair->kind == MHO_PAIR_NODE_SYMMETRY || pair->kind == MHO_PAIR_NODE_CANCELLATION ||
+         pair->kind == MHO_PAIR_NO_PATH;
+}
+
+static void begin_pair(mho_table *table, const mho_molecule *molecule, const mho_pair *pair)
+{
+  mho_table_text(table, molecule->name);
+  for (int end = 0; end < 2; end++) mho_table_text(table, molecule->site[pair->site[end]].id);
+}
+
+/* A decimal integer as one where it fits, else as its digits. */
+static void add_magic(mho_table *table, const char *magic)
+{
+  enum { DIGITS_OF_LONG = 18 };
+  if (!magic) mho_table_empty(table);
+  else if (strlen(magic) <= DIGITS_OF_LONG) mho_table_integer(table, strtol(magic, NULL, 10));
+  else mho_table_text(table, magic);
+}
+
+void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
+                           const mho_interference *map)
+{
+  for (size_t p = 0; p < map->count; p++) {
+    const mho_pair *pair = &map->pair[p];
+    begin_pair(table, molecule, pair);
+    if (is_node(pair)) mho_table_node(table);
+    else mho_table_number(table, pair->transmission);
+    mho_table_optional(table, pair->has_green, pair->green_per_ev);
+    add_magic(table, pair->magic);
+    mho_table_text(table, mho_pair_word(pair->kind));
+    mho_table_optional(table, pair->has_node, pair->node_ev);
+    mho_table_optional(table, pair->has_shift, pair->overturning_shift_ev);
+  }
+}
+
+mho_table *mho_modify_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "site", "change", "log10_G0",
+                                        "change_decades", "window_low", "window_high"};
+  return mho_output_table(output, "modify", columns, COUNT(columns));
+}
+
+void mho_modify_rows(mho_table *table, const mho_molecule *molecule,
+                     const mho_modifications *modifications)
+{
+  for (size_t i = 0; i < modifications->count; i++) {
+    const mho_modification *row = &modifications->row[i];
+    mho_table_text(table, molecule->name);
+    mho_table_text(table, molecule->site[row->site].id);
+    mho_table_text(table, row->substituent->name);
+    mho_table_optional(table, row->has_log, row->log10_g0);
+    mho_table_optional(table, row->has_change, row->change_decades);
+    mho_table_optional(table, row->has_window, row->window_low_decades);
+    mho_table_optional(table, row->has_window, row->window_high_decades);
+  }
+}
+
+mho_table *mho_rules_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "site_i", "site_j", "class", "starring",
+                                        "orbital", "cross_conjugation", "disagreement"};
+  return mho_output_table(output, "rules", columns, COUNT(columns));
+}
+
+enum { RULES = 3 };
+
+static const char *const rule_name[RULES] = {"starring", "orbital", "cross-conjugation"};
+
+static mho_rule_verdict rule_of(const mho_pair *pair, int rule)
+{
+  return rule == 0 ? pair->starring : rule == 1 ? pair->orbital : pair->cross_conjugation;
+}
+
+void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map)
+{
+  static const char *const verdict[] = {
+      [MHO_RULE_SILENT] = NULL, [MHO_RULE_CONDUCTS] = "conducts", [MHO_RULE_NODE] = "node"};
+  for (size_t p = 0; p < map->count; p++) {
+    const mho_pair *pair = &map->pair[p];
+    char against[80] = "";
+    begin_pair(table, molecule, pair);
+    mho_table_text(table, mho_pair_word(pair->kind));
+    for (int r = 0; r < RULES; r++) {
+      const char *word = verdict[rule_of(pair, r)];
+      if (word) mho_table_text(table, word);
+      else mho_table_empty(table);
+      if (!mho_pair_disagrees(pair, rule_of(pair, r))) continue;
+      size_t used = strlen(against);
+      snprintf(against + used, sizeof against - used, "%s%s", used ? " " : "", rule_name[r]);
+    }
+    if (against[0]) mho_table_text(table, against);
+    else mho_table_empty(table);
+  }
+}
+
+void mho_rules_note(mho_output *output, const mho_molecule *molecule,
+                    const mho_interference *map)
+{
+  for (int r = 0; r < RULES; r++) {
+    size_t wrong = 0, said = 0;
+    for (size_t p = 0; p < map->count; p++) {
+      said += rule_of(&map->pair[p], r) != MHO_RULE_SILENT;
+      wrong += mho_pair_disagrees(&map->pair[p], rule_of(&map->pair[p], r));
+    }
+    mho_output_note(output, "%s: the %s rule contradicts the exact result for %zu of the %zu pairs "
+                            "it speaks of", molecule->name, rule_name[r], wrong, said);
   }
 }
 

@@ -8,12 +8,15 @@
 
 #include <mho/compare.h>
 #include <mho/conductance.h>
+#include <mho/interference.h>
+#include <mho/modify.h>
 #include <mho/molecule.h>
 #include <mho/nodes.h>
 #include <mho/peaks.h>
 #include <mho/sensitivity.h>
 #include <mho/telegraph.h>
 #include <mho/transmission.h>
+#include <mho/twist.h>
 
 #include "report/table.h"
 
@@ -46,6 +49,40 @@ void mho_compare_row(mho_table *table, const char *molecule, const mho_compariso
 void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
                       double window_ev);
 
+/* `bond` names the bonds that turn; log10_g0 is -INFINITY for zero. */
+mho_table *mho_twist_table(mho_output *output);
+void mho_twist_row(mho_table *table, const char *molecule, const char *bond, double angle_deg,
+                   const mho_point *point, double log10_g0);
+
+/* T(theta, E), and T of two angles at the Fermi level. */
+mho_table *mho_twist_map_table(mho_output *output);
+void mho_twist_map_row(mho_table *table, const char *molecule, const char *bond,
+                       double angle_deg, double relative_energy_ev, const mho_point *point);
+mho_table *mho_twist_plane_table(mho_output *output);
+void mho_twist_plane_row(mho_table *table, const char *molecule, const char *const bond[2],
+                         const double angle_deg[2], const mho_point *point);
+
+mho_table *mho_twist_average_table(mho_output *output);
+void mho_twist_average_row(mho_table *table, const char *molecule, const char *bond,
+                           const char *torsion, const mho_twist_average *average);
+
+/* The answer in words: how flat it must be, and how far cos^2 holds. */
+void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
+                    const double limit_deg[2], const mho_twist_law *law);
+
+mho_table *mho_interference_table(mho_output *output);
+void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
+                           const mho_interference *map);
+
+mho_table *mho_modify_table(mho_output *output);
+void mho_modify_rows(mho_table *table, const mho_molecule *molecule,
+                     const mho_modifications *modifications);
+
+/* Rules of thumb beside the exact result; the note counts disagreements. */
+mho_table *mho_rules_table(mho_output *output);
+void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map);
+void mho_rules_note(mho_output *output, const mho_molecule *molecule,
+                    const mho_interference *map);
 /* Measured traces.  Each opens its table and fills it; traces, peaks and levels
  * count from 1. */
 void mho_histogram_rows(mho_output *output, const mho_histogram *histogram,

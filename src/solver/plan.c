@@ -147,6 +147,13 @@ static mho_status project_orbitals(const mho_junction *junction, mho_plan *plan)
       }
       plan->amplitude[k * m + c] = sum;
     }
+  if (plan->left != 1 || plan->right != 1) return MHO_OK;
+  plan->pair = malloc(n * sizeof *plan->pair);
+  if (!plan->pair) return MHO_ERR_MEMORY;
+  for (size_t k = 0; k < n; k++) {
+    double w0 = plan->amplitude[2 * k], w1 = plan->amplitude[2 * k + 1];
+    plan->pair[k] = (mho_pole_pair){plan->level_ev[k], w0 * w0, w0 * w1, w1 * w1};
+  }
   return MHO_OK;
 }
 
@@ -289,6 +296,7 @@ void mho_plan_free(mho_plan *plan)
   free(plan->place);
   free(plan->level_ev);
   free(plan->amplitude);
+  free(plan->pair);
   mho_program_free(plan->program);
   mho_plan_free(plan->contacts);
   mho_spare_free(plan);

@@ -17,6 +17,11 @@
 
 #include "solver/quad.h"
 
+/* A level and the products of its amplitudes at two channels. */
+typedef struct {
+  double level_ev, w00, w01, w11;
+} mho_pole_pair;
+
 struct mho_plan {
   int sites, left, right, channels; /* channels = left + right */
   bool connected;
@@ -36,6 +41,7 @@ struct mho_plan {
   mho_chain_electrode chain[2];
   double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
+  mho_pole_pair *pair;            /* [sites], the same for one channel a contact */
   struct mho_program *program;    /* NULL: does not pay */
   mho_plan *contacts;             /* of the program's kept sites */
   mho_method first;               /* methods before it are left out (tests) */

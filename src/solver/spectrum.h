@@ -19,7 +19,7 @@ enum { SPECTRUM_LANES = 16 };
 void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
                            mho_estimate *estimate);
 
-/* At energy_ev[SPECTRUM_LANES] for one channel a contact; log10 is left out. */
+/* At energy_ev[SPECTRUM_LANES] for one channel a contact. */
 void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
                                 mho_estimate *estimate);
 

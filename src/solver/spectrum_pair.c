@@ -11,52 +11,69 @@
  * Moduli are bounded by |re| + |im|.
  */
 #include <math.h>
+#include <string.h>
 
+#include "solver/logarithm.h"
 #include "solver/plan.h"
 #include "solver/processor.h"
 #include "solver/spectrum.h"
 
-enum { L = SPECTRUM_LANES };
+enum { L = SPECTRUM_LANES, V = 4 };
 
 typedef struct {
   double f00[L], f01[L], f11[L];    /* F */
   double a00[L], a01[L], a11[L];    /* sums of moduli of its terms */
   double s00[L], s01[L], s11[L];    /* sum w w^T / (E - eps)^2 */
-  double nearest[L];                /* distance to a level */
+  double squares[L];                /* sum 1 / (E - eps)^2: how near a level is */
 } sums;
 
+typedef double vector __attribute__((vector_size(V * sizeof(double))));
+typedef long long mask __attribute__((vector_size(V * sizeof(double))));
+
+#define ABSOLUTE(x) ((vector)((mask)(x) & (0 * (mask){0} + 0x7fffffffffffffffLL)))
+
+/* Few energies at a time, so that all sums stay in registers. */
 FOR_EVERY_PROCESSOR
 static void sum_levels(const mho_plan *plan, const double *energy_ev, sums *t)
 {
-  *t = (sums){0};
-  for (int l = 0; l < L; l++) t->nearest[l] = INFINITY;
-  for (int k = 0; k < plan->sites; k++) {
-    double level = plan->level_ev[k];
-    double w0 = plan->amplitude[2 * k], w1 = plan->amplitude[2 * k + 1];
-    double w00 = w0 * w0, w01 = w0 * w1, w11 = w1 * w1;
-#pragma GCC ivdep
-    for (int l = 0; l < L; l++) {
-      double distance = energy_ev[l] - level, inverse = 1.0 / distance, size = fabs(distance);
-      double p = w00 * inverse, q = w01 * inverse, r = w11 * inverse;
-      t->nearest[l] = size < t->nearest[l] ? size : t->nearest[l];
-      t->f00[l] += p;
-      t->f01[l] += q;
-      t->f11[l] += r;
-      t->a00[l] += fabs(p);
-      t->a01[l] += fabs(q);
-      t->a11[l] += fabs(r);
-      t->s00[l] += p * inverse;
-      t->s01[l] += q * inverse;
-      t->s11[l] += r * inverse;
+  for (int at = 0; at < L; at += V) {
+    vector e, f00 = {0}, f01 = {0}, f11 = {0}, a00 = {0}, a01 = {0}, a11 = {0};
+    vector s00 = {0}, s01 = {0}, s11 = {0}, squares = {0};
+    memcpy(&e, energy_ev + at, sizeof e);
+    for (const mho_pole_pair *k = plan->pair, *end = k + plan->sites; k < end; k++) {
+      vector inverse = 1.0 / (e - k->level_ev);
+      vector p = k->w00 * inverse, q = k->w01 * inverse, r = k->w11 * inverse;
+      f00 += p;
+      f01 += q;
+      f11 += r;
+      a00 += ABSOLUTE(p);
+      a01 += ABSOLUTE(q);
+      a11 += ABSOLUTE(r);
+      s00 += p * inverse;
+      s01 += q * inverse;
+      s11 += r * inverse;
+      squares += inverse * inverse;
     }
+    memcpy(t->f00 + at, &f00, sizeof e);
+    memcpy(t->f01 + at, &f01, sizeof e);
+    memcpy(t->f11 + at, &f11, sizeof e);
+    memcpy(t->a00 + at, &a00, sizeof e);
+    memcpy(t->a01 + at, &a01, sizeof e);
+    memcpy(t->a11 + at, &a11, sizeof e);
+    memcpy(t->s00 + at, &s00, sizeof e);
+    memcpy(t->s01 + at, &s01, sizeof e);
+    memcpy(t->s11 + at, &s11, sizeof e);
+    memcpy(t->squares + at, &squares, sizeof e);
   }
 }
 
 /* T and its relative error from the sums. */
 FOR_EVERY_PROCESSOR
 static void combine(const mho_plan *plan, const double *energy_ev, const sums *t,
-                    double *transmission, double *relative_error)
+                    mho_estimate *estimate)
 {
+  double transmission[L], log10_transmission[L], relative_error[L];
+  double nearest = SPECTRUM_NEAREST * plan->norm_ev;
   double x0 = plan->shift_ev[0], y0 = -0.5 * plan->coupling_ev[0];
   double x1 = plan->shift_ev[1], y1 = -0.5 * plan->coupling_ev[1];
   double size0 = fabs(x0) + fabs(y0), size1 = fabs(x1) + fabs(y1);
@@ -70,7 +87,7 @@ static void combine(const mho_plan *plan, const double *energy_ev, const sums *t
     double d_re = m0_re * m1_re - m0_im * m1_im - (x0 * x1 - y0 * y1) * square;
     double d_im = m0_re * m1_im + m0_im * m1_re - (x0 * y1 + y0 * x1) * square;
     double d2 = d_re * d_re + d_im * d_im, inverse = 1.0 / d2;
-    double d = 1.0 / sqrt(d2);
+    double d = sqrt(inverse);
     double k00 = (fabs(m1_re) + fabs(m1_im)) * d, k11 = (fabs(m0_re) + fabs(m0_im)) * d;
     double k01 = size0 * fabs(f) * d, k10 = size1 * fabs(f) * d;
     double g10 = fabs(f) * d;
@@ -90,7 +107,16 @@ static void combine(const mho_plan *plan, const double *energy_ev, const sums *t
     double error = SPECTRUM_SUM_CONSTANT * UNIT_ROUNDOFF * rounding +
                    SPECTRUM_EIGEN_CONSTANT * UNIT_ROUNDOFF * (norm + fabs(energy_ev[l])) * norms;
     transmission[l] = weight * square * inverse;
+    log10_transmission[l] = log10_of_normal(transmission[l]);
     relative_error[l] = 2 * error / g10 + 8 * UNIT_ROUNDOFF;
+  }
+  for (int l = 0; l < L; l++) {
+    bool good = t->squares[l] * nearest * nearest <= 1.0 && transmission[l] > 1e-280 &&
+                isfinite(relative_error[l]);
+    estimate[l] = (mho_estimate){.transmission = transmission[l],
+                                 .log10_transmission = log10_transmission[l],
+                                 .relative_error = good ? relative_error[l] : INFINITY,
+                                 .first_order = good};
   }
 }
 
@@ -98,15 +124,6 @@ void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
                                 mho_estimate *estimate)
 {
   sums t;
-  double transmission[L], error[L];
   sum_levels(plan, energy_ev, &t);
-  combine(plan, energy_ev, &t, transmission, error);
-  for (int l = 0; l < L; l++) {
-    estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    bool near = !(t.nearest[l] >= SPECTRUM_NEAREST * plan->norm_ev);
-    if (near || !(transmission[l] > 1e-280) || !isfinite(error[l])) continue;
-    estimate[l].transmission = transmission[l];
-    estimate[l].relative_error = error[l];
-    estimate[l].first_order = true;
-  }
+  combine(plan, energy_ev, &t, estimate);
 }

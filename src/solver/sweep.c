@@ -6,6 +6,7 @@
 #include <stdatomic.h>
 #include <stdlib.h>
 
+#include "solver/logarithm.h"
 #include "solver/plan.h"
 #include "solver/program.h"
 #include "solver/spectrum.h"
@@ -76,7 +77,7 @@ static void workspace_return(const mho_plan *plan, workspace *work, bool keep)
 static void set_point(const mho_plan *plan, const mho_estimate *estimate,
                       mho_method method, mho_point *point)
 {
-  double most = mho_plan_channels(plan);
+  double most = plan->left < plan->right ? plan->left : plan->right;
   *point = (mho_point){.transmission = estimate->transmission,
                        .log10_transmission = estimate->log10_transmission,
                        .relative_error = estimate->relative_error,
@@ -89,9 +90,10 @@ static void set_point(const mho_plan *plan, const mho_estimate *estimate,
 
 static bool keeps_contract(const mho_estimate *estimate)
 {
-  double allowed = fmax(CONTRACT_FLOOR, CONTRACT_KAPPA * estimate->kappa);
+  double error = estimate->relative_error;
   return estimate->first_order &&
-         estimate->relative_error <= fmin(allowed, CONTRACT_CEILING);
+         (error <= CONTRACT_FLOOR ||
+          (error <= CONTRACT_KAPPA * estimate->kappa && error <= CONTRACT_CEILING));
 }
 
 /* The last rung: what 113 bits cannot tell from zero is a node. */
@@ -155,7 +157,7 @@ static mho_status finish_lanes(const mho_plan *plan, workspace *work, bool exten
     if (l >= work->lanes || work->trace.broken[l]) continue;
     if (pair && transmission[l] > 1e-200 && (!extended || error[l] <= CONTRACT_FLOOR))
       estimate[l] = (mho_estimate){.transmission = transmission[l],
-                                   .log10_transmission = log10(transmission[l]),
+                                   .log10_transmission = log10_of_normal(transmission[l]),
                                    .relative_error = error[l],
                                    .first_order = true};
     else if (!pair || extended) {
@@ -261,11 +263,7 @@ static mho_status evaluate(const mho_plan *plan, workspace *work, const double *
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
     if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
   }
-  if (levels && pair) {
-    mho_spectrum_evaluate_pair(plan, lane, estimate);
-    for (size_t l = 0; l < count; l++)
-      estimate[l].log10_transmission = log10(estimate[l].transmission);
-  }
+  if (levels && pair) mho_spectrum_evaluate_pair(plan, lane, estimate);
   mho_status status = MHO_OK;
   for (size_t l = 0; status == MHO_OK && l < count; l++)
     status = take_or_wait(plan, work, &estimate[l], lane[l], first + l, point);

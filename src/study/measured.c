@@ -3,6 +3,7 @@
 
 #include <math.h>
 
+#include "base/text.h"
 #include "report/figure.h"
 #include "report/stages.h"
 
@@ -58,4 +59,36 @@ bool mho_measured_peak_of(const mho_study_traces *traces, const mho_measured_tra
                               .has_spread = true, .spread_decades = main->width_decades,
                               .histogram = MHO_HISTOGRAM_LOG};
   return true;
+}
+
+void mho_measured_tables(const mho_study *study, const mho_measured_traces *measured,
+                         mho_output *output)
+{
+  mho_table *table = study->traces_count > 0 ? mho_traces_table(output) : NULL;
+  for (int i = 0; i < study->traces_count; i++) {
+    const mho_measured_traces *m = &measured[i];
+    const char *name = study->molecule[study->traces[i].molecule].name;
+    mho_traces_rows(table, name, m->traces, m->rejected, &m->peaks);
+    mho_output_note(output, "traces of %s:", name);
+    mho_peaks_note(output, &m->peaks);
+    mho_reading_note(output, &m->report, mho_trace_floor_g0(&study->traces[i].options));
+  }
+}
+
+char *mho_measured_sentence(const mho_study *study, const mho_study_traces *traces,
+                            const mho_measured_traces *measured)
+{
+  enum { SCREEN_NAME = 80 };
+  const mho_peak *peak = mho_main_peak(&measured->peaks);
+  const char *name = study->molecule[traces->molecule].name;
+  unsigned long long all = measured->traces, rejected = measured->rejected;
+  if (!peak)
+    return mho_print_text("The %llu traces of %.*s show no peak: there is no measured value.", all,
+                          SCREEN_NAME, name);
+  return mho_print_text("The traces of %.*s peak at %.2g G0 (95 %%: %.2g to %.2g G0) in the log "
+                        "histogram; %llu of %llu show tunnelling only.%s",
+                        SCREEN_NAME, name, pow(10, peak->log10_g0), pow(10, peak->low),
+                        pow(10, peak->high), rejected, all,
+                        peak->drift_p < 0.05 ? " The peak drifts from their first half to their "
+                                               "second." : "");
 }

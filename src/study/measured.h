@@ -8,6 +8,7 @@
 #include <mho/peaks.h>
 
 #include "base/buffer.h"
+#include "report/table.h"
 #include "study/study.h"
 
 enum { MHO_STUDY_SEED = 1 }; /* of every bootstrap of a study */
@@ -29,5 +30,14 @@ void mho_measured_clear(mho_measured_traces *measured);
 /* The main peak as a measured value of the molecule; false without a peak. */
 bool mho_measured_peak_of(const mho_study_traces *traces, const mho_measured_traces *measured,
                           mho_measured_peak *peak);
+
+/* The peaks of all traces as a table, and what was read as remarks. */
+void mho_measured_tables(const mho_study *study, const mho_measured_traces *measured,
+                         mho_output *output);
+
+/* What the traces say in one sentence, which the caller frees; NULL without
+ * memory. */
+char *mho_measured_sentence(const mho_study *study, const mho_study_traces *traces,
+                            const mho_measured_traces *measured);
 
 #endif

@@ -171,21 +171,6 @@ static mho_status compare(run *r, mho_error *error)
                             s->reference, r->comparison, &r->agreement, error);
 }
 
-static void fill_traces_table(run *r)
-{
-  const mho_study *s = r->study;
-  mho_table *table = s->traces_count > 0 ? mho_traces_table(&r->output) : NULL;
-  for (int i = 0; i < s->traces_count; i++) {
-    const char *name = s->molecule[s->traces[i].molecule].name;
-    mho_traces_rows(table, name, r->measured[i].traces, r->measured[i].rejected,
-                    &r->measured[i].peaks);
-    mho_output_note(&r->output, "traces of %s:", name);
-    mho_peaks_note(&r->output, &r->measured[i].peaks);
-    mho_reading_note(&r->output, &r->measured[i].report,
-                     mho_trace_floor_g0(&s->traces[i].options));
-  }
-}
-
 static void fill_tables(run *r)
 {
   const mho_study *s = r->study;
@@ -204,7 +189,7 @@ static void fill_tables(run *r)
                   "conductance is the thermal value at the Fermi level; the window values are its "
                   "5 %% and 95 %% quantiles over +-%g eV around it",
                   s->window_ev);
-  fill_traces_table(r);
+  mho_measured_tables(s, r->measured, &r->output);
   if (!r->compare) return;
   table = mho_compare_table(&r->output);
   for (int i = 0; i < s->molecule_count; i++)
@@ -236,27 +221,6 @@ static void answer_comparison(run *r)
                           a->pairs, a->pairs == 1 ? "" : "s", a->ordered));
 }
 
-static void answer_traces(run *r)
-{
-  const mho_study *s = r->study;
-  for (int i = 0; i < s->traces_count; i++) {
-    const mho_measured_traces *m = &r->measured[i];
-    const mho_peak *peak = mho_main_peak(&m->peaks);
-    const char *name = s->molecule[s->traces[i].molecule].name;
-    unsigned long long traces = m->traces, rejected = m->rejected;
-    if (peak)
-      say(r, mho_print_text("The traces of %.*s peak at %.2g G0 (95 %%: %.2g to %.2g G0) in the "
-                            "log histogram; %llu of %llu show tunnelling only.%s",
-                            SCREEN_NAME, name, pow(10, peak->log10_g0), pow(10, peak->low),
-                            pow(10, peak->high), rejected, traces,
-                            peak->drift_p < 0.05 ? " The peak drifts from their first half to "
-                                                   "their second." : ""));
-    else
-      say(r, mho_print_text("The %llu traces of %.*s show no peak: there is no measured value.",
-                            traces, SCREEN_NAME, name));
-  }
-}
-
 static void answer(run *r)
 {
   const mho_study *s = r->study;
@@ -281,7 +245,8 @@ static void answer(run *r)
                           "value is predicted for %s.",
                           nodes, s->molecule_count, nodes > 1 ? "them" : "it"));
   if (r->compare) answer_comparison(r);
-  answer_traces(r);
+  for (int i = 0; i < s->traces_count; i++)
+    say(r, mho_measured_sentence(s, &s->traces[i], &r->measured[i]));
 }
 
 static mho_status add_figure(run *r, const char *section, char *file, char *caption,

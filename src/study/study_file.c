@@ -11,6 +11,7 @@
 #include "base/text.h"
 #include "input/molecule_node.h"
 #include "input/yaml.h"
+#include "measure/settings.h"
 #include "study/study.h"
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
@@ -211,39 +212,22 @@ static void read_peak(reader *r, const mho_yaml_node *node, mho_measured_peak *p
   if (good) r->study->peak_count++;
 }
 
-/* A conductance or a current. */
-static void read_limit(reader *r, const mho_yaml_node *node, const char *field, double *g0,
-                       double *ampere)
-{
-  if (node && node->kind == MHO_YAML_TEXT &&
-      mho_quantity_read(node->text, MHO_CURRENT, ampere, NULL, 0) == MHO_OK && *ampere > 0.0)
-    return;
-  *ampere = 0.0;
-  mho_yaml_get_quantity(&r->yaml, node, field, MHO_CONDUCTANCE, PEAK_LOW_G0, PEAK_HIGH_G0, g0);
-}
-
 static void read_trace_options(reader *r, const mho_yaml_node *node, mho_trace_options *o)
 {
-  const struct {
-    const char *name;
-    mho_dimension dimension;
-    double low, high, *value;
-  } quantity[] = {{"bias", MHO_VOLTAGE, -10, 10, &o->bias_v},
-                  {"series-resistance", MHO_RESISTANCE, 0, 1e12, &o->series_ohm},
-                  {"sampling", MHO_FREQUENCY, 1e-3, 1e10, &o->sampling_hz},
-                  {"speed", MHO_SPEED, 1e-6, 1e9, &o->speed_nm_per_s}};
+  size_t count;
+  const char *const *name = mho_trace_setting_names(&count), *text;
   mho_trace_options_init(o);
-  for (size_t i = 0; i < COUNT(quantity); i++)
-    mho_yaml_get_quantity(&r->yaml, mho_yaml_find(node, quantity[i].name), quantity[i].name,
-                          quantity[i].dimension, quantity[i].low, quantity[i].high,
-                          quantity[i].value);
-  read_limit(r, mho_yaml_find(node, "floor"), "floor", &o->floor_g0, &o->floor_a);
-  read_limit(r, mho_yaml_find(node, "saturation"), "saturation", &o->saturation_g0,
-             &o->saturation_a);
-  const char *columns;
+  for (size_t i = 0; i < count; i++) {
+    const mho_yaml_node *item = mho_yaml_find(node, name[i]);
+    char reason[320];
+    if (!item || !mho_yaml_get_text(&r->yaml, item, name[i], &text)) continue;
+    mho_status status = mho_trace_setting_read(o, name[i], text, reason, sizeof reason);
+    if (status != MHO_OK)
+      mho_yaml_fail(&r->yaml, item, status, name[i], "%s: %s", name[i], reason);
+  }
   const mho_yaml_node *names = mho_yaml_find(node, "columns");
-  if (!names || !mho_yaml_get_text(&r->yaml, names, "columns", &columns)) return;
-  o->columns = mho_copy_text(columns);
+  if (!names || !mho_yaml_get_text(&r->yaml, names, "columns", &text)) return;
+  o->columns = mho_copy_text(text);
   if (!o->columns) fail_memory(r);
 }
 

@@ -5,6 +5,7 @@
  * allocations goes to that file at exit.
  */
 #include <dlfcn.h>
+#include <errno.h>
 #include <stdio.h>
 #include <stdlib.h>
 
@@ -34,7 +35,9 @@ static int fails(void)
 {
   if (fail_at < 0) return 0; /* before main */
   long call = ++calls;
-  return fail_at > 0 && (call == fail_at || (fail_on && call > fail_at));
+  int failing = fail_at > 0 && (call == fail_at || (fail_on && call > fail_at));
+  if (failing) errno = ENOMEM; /* glibc asserts it when a thread is made */
+  return failing;
 }
 
 void *malloc(size_t size)
@@ -49,6 +52,13 @@ void *realloc(void *old, size_t size)
   static void *(*real)(void *, size_t);
   if (!real) *(void **)&real = dlsym(RTLD_NEXT, "realloc");
   return fails() ? NULL : real(old, size);
+}
+
+void *aligned_alloc(size_t alignment, size_t size)
+{
+  static void *(*real)(size_t, size_t);
+  if (!real) *(void **)&real = dlsym(RTLD_NEXT, "aligned_alloc");
+  return fails() ? NULL : real(alignment, size);
 }
 
 void *calloc(size_t count, size_t size)
