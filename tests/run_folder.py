@@ -65,12 +65,12 @@ def check_report(folder):
     reader = Reader()
     reader.feed(text)
     expect(not reader.open, "every element is closed")
-    for section in ("question", "comparison", "predictions", "transmission", "warnings",
+    for section in ("question", "molecules", "comparison", "predictions", "transmission", "warnings",
                     "assumptions", "limits"):
         expect(section in reader.sections, f"section {section}")
     expect(all(link.startswith("data:") for link in reader.links), "nothing is loaded")
     expect("http" not in re.sub(r"data:[^\"]*", "", text), "no address in the report")
-    expect(len(reader.images) == 3, "three figures")
+    expect(len(reader.images) == 3 + 6, "three figures and the drawings of six molecules")
     for image in reader.images:
         svg = base64.b64decode(image.split(",", 1)[1])
         expect(svg.rstrip().endswith(b"</svg>"), "figures are whole")
@@ -119,7 +119,8 @@ def check_no_gnuplot(scratch):
     done = mho("run", STUDY, "-o", folder, env={"PATH": scratch})
     expect(done.returncode == 0, "without gnuplot the run still ends well")
     names = os.listdir(folder)
-    expect("report.html" in names and not any(n.endswith(".svg") for n in names), "no figures")
+    expect("report.html" in names and not any(n.startswith(("transmission", "compare")) and n.endswith(".svg") for n in names),
+           "no figures but the drawings of the molecules")
     expect("gnuplot was not found" in open(os.path.join(folder, "report.html")).read(),
            "the report says that figures are missing")
 

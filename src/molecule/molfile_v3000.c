@@ -184,7 +184,6 @@ static mho_status read_counts(reader *v)
   next_word(v, &length);
   if (!next_integer(v, &v->atoms) || !next_integer(v, &v->bonds) || v->atoms < 0 || v->bonds < 0)
     return fail(v, v->text, "COUNTS needs the numbers of atoms and bonds");
-  /* A bond takes a line: more than the record has bytes cannot be. */
   if (v->atoms > MHO_ATOM_LIMIT || v->bonds > 4 * MHO_ATOM_LIMIT)
     return mho_record_fail(v->r, MHO_ERR_LIMIT, 8, "%d atoms and %d bonds; at most %d and %d are allowed",
                            v->atoms, v->bonds, MHO_ATOM_LIMIT, 4 * MHO_ATOM_LIMIT);
@@ -194,11 +193,14 @@ static mho_status read_counts(reader *v)
 static mho_status read_table(reader *v)
 {
   mho_graph *g = v->r->graph;
-  size_t n = (size_t)v->atoms + 1;
+  /* A line has 14 bytes at least: no more room than the record can fill. */
+  long lines = (long)(v->r->end - v->r->at) / 14 + 2;
+  int atoms = lines < v->atoms ? (int)lines : v->atoms, bonds = lines < v->bonds ? (int)lines : v->bonds;
+  size_t n = (size_t)atoms + 1;
   v->state = calloc(n, sizeof *v->state);
   v->number = malloc(n * sizeof *v->number);
   g->position = calloc(n, sizeof *g->position);
-  if (!v->state || !v->number || !g->position || mho_graph_reserve(g, v->atoms, v->bonds) != MHO_OK)
+  if (!v->state || !v->number || !g->position || mho_graph_reserve(g, atoms, bonds) != MHO_OK)
     return mho_record_fail(v->r, MHO_ERR_MEMORY, 0, "out of memory");
   mho_status status = expect(v, "BEGIN ATOM");
   for (int a = 0; a < v->atoms && status == MHO_OK; a++) status = read_atom(v);

@@ -325,8 +325,10 @@ mho_status mho_xyz_read(mho_record_reader *r)
   if (!mho_record_integer(r, 0, r->length, &atoms) || atoms < 1 || atoms > MHO_ATOM_LIMIT)
     return mho_record_fail(r, MHO_ERR_SYNTAX, 1, "an XYZ record begins with the number of its atoms, 1 to %d",
                            MHO_ATOM_LIMIT);
-  int room = BONDS_PER_ATOM * atoms;
-  size_t n = (size_t)atoms + 1;
+  /* A line of an atom has 8 bytes at least: no more room than the record can fill. */
+  long lines = (long)(r->end - r->at) / 8 + 2;
+  int possible = lines < atoms ? (int)lines : atoms, room = BONDS_PER_ATOM * possible;
+  size_t n = (size_t)possible + 1;
   perception p = {.r = r, .g = r->graph};
   p.length = malloc(((size_t)room + 1) * sizeof *p.length);
   p.degree = calloc(2 * n, sizeof *p.degree);
@@ -334,7 +336,7 @@ mho_status mho_xyz_read(mho_record_reader *r)
   r->graph->position = calloc(n, sizeof *r->graph->position);
   mho_record_state *state = calloc(n, sizeof *state);
   mho_status status = p.length && p.degree && state && r->graph->position &&
-                              mho_graph_reserve(r->graph, atoms, room) == MHO_OK
+                              mho_graph_reserve(r->graph, possible, room) == MHO_OK
                           ? MHO_OK
                           : no_memory(r);
   if (status == MHO_OK) mho_record_line(r); /* the comment */

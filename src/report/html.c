@@ -44,7 +44,7 @@ static const char style[] =
     "td.node{color:#5a6270;font-style:italic}"
     "figure{margin:1rem 0}figure img{width:100%;height:auto}"
     ".portraits{display:flex;flex-wrap:wrap;gap:1rem}.portraits figure{margin:0;max-width:100%}"
-    ".portraits svg{max-width:100%;height:auto}"
+    ".portraits img{width:auto;max-width:100%}"
     "figcaption{color:#5a6270;font-size:.88rem}"
     "dt{font-weight:600;margin-top:.6rem}dd{margin:0 0 0 1rem}"
     "footer{color:#5a6270;font-size:.85rem;margin-top:3rem;border-top:1px solid #d8dce2}"
@@ -211,9 +211,11 @@ static void write_portraits(const mho_report *report, mho_buffer *buffer)
                  "turn, with their angle. Two dots: the site brings a pair of electrons. Dashed "
                  "bonds lie outside the π system.</p>\n<div class=\"portraits\">\n");
   for (size_t i = 0; i < report->portraits; i++) {
-    mho_buffer_add(buffer, "<figure>");
-    mho_buffer_add_bytes(buffer, report->portrait[i].svg.data, report->portrait[i].svg.size);
-    mho_buffer_add(buffer, "<figcaption>");
+    mho_buffer_add(buffer, "<figure><img alt=\"drawing of ");
+    mho_buffer_escape(buffer, report->portrait[i].name);
+    mho_buffer_add(buffer, "\" src=\"data:image/svg+xml;base64,");
+    write_base64(&report->portrait[i].svg, buffer);
+    mho_buffer_add(buffer, "\"><figcaption>");
     mho_buffer_escape(buffer, report->portrait[i].name);
     mho_buffer_add(buffer, "</figcaption></figure>\n");
   }
