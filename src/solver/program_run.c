@@ -33,6 +33,13 @@ enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21 };
 #define PIVOT_DOUBLE 1e-6
 #define PIVOT_EXTENDED 1e-12
 
+/* Lanes in a register, loaded and stored by their address. */
+enum { V = 8 };
+typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
+typedef long long bits __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
+#define AT(array, l) (*(vector *)((array) + (l)))
+#define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
+
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
   size_t slots = ((size_t)program->slots + 1) * L;
@@ -58,62 +65,53 @@ void mho_program_trace_clear(mho_program_trace *trace)
   *trace = (mho_program_trace){0};
 }
 
-INLINED void load_double(const mho_program_load *load, const double *energy_ev,
-                               double *high)
-{
-  double *restrict s = high + (size_t)load->slot * L;
-  double value = load->value;
-  if (load->site >= 0)
-    for (int l = 0; l < L; l++) s[l] = energy_ev[l] - value;
-  else
-    for (int l = 0; l < L; l++) s[l] = -value;
-}
-
 INLINED void keep(double *restrict tape, const double *restrict value)
 {
   for (int l = 0; l < L; l++) tape[l] = value[l];
 }
 
+INLINED void load_double(const mho_program_load *load, double *energy_ev, double *high)
+{
+  double *s = high + (size_t)load->slot * L;
+  double weight = load->site >= 0 ? 1.0 : 0.0;
+  for (int l = 0; l < L; l += V) AT(s, l) = weight * AT(energy_ev, l) - load->value;
+}
+
 FOR_EVERY_PROCESSOR
-void mho_program_forward_double(const mho_program *program, const double *energy_ev,
+void mho_program_forward_double(const mho_program *program, const double *at_ev,
                                 double norm_ev, mho_program_trace *trace)
 {
   const mho_program_load *load = program->load;
   const int *slot = program->slot;
-  double *high = trace->high, *tape = trace->tape, smallest[L];
-  for (int l = 0; l < L; l++) smallest[l] = INFINITY;
+  double *high = trace->high, *tape = trace->tape, largest[L] = {0}, energy_ev[L];
+  keep(energy_ev, at_ev);
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
     for (int i = 0; i < step->loads; i++) load_double(load++, energy_ev, high);
-    const double *d = high + (size_t)step->pivot * L;
-    double *w = tape;
-    for (int l = 0; l < L; l++) {
-      double size = fabs(d[l]);
-      smallest[l] = smallest[l] < size ? smallest[l] : size;
-      w[l] = 1.0 / d[l];
-    }
-    keep(tape + L, d);
-    tape += 2 * L;
-    const int *target = slot + step->row;
-    for (int i = 0; i < step->row; i++, tape += L) keep(tape, high + (size_t)slot[i] * L);
-    for (int i = 0; i < step->row; i++) {
-      const double *restrict a = high + (size_t)slot[i] * L;
-      double aw[L];
-      for (int l = 0; l < L; l++) aw[l] = a[l] * w[l];
-      for (int j = i; j < step->row; j++, target++) {
-        const double *restrict b = high + (size_t)slot[j] * L;
-        bool fresh = *target < 0;
-        double *restrict s = high + (size_t)(fresh ? ~*target : *target) * L;
-        if (fresh)
-          for (int l = 0; l < L; l++) s[l] = -(aw[l] * b[l]);
-        else
-          for (int l = 0; l < L; l++) s[l] -= aw[l] * b[l];
+    for (int l = 0; l < L; l += V) {
+      double *lane = high + l, *taped = tape + l;
+      const int *target = slot + step->row;
+      vector d = AT(lane, (size_t)step->pivot * L), w = 1.0 / d;
+      vector before = AT(largest, l), size = ABSOLUTE(w);
+      bits larger = size > before;
+      AT(largest, l) = (vector)(((bits)size & larger) | ((bits)before & ~larger));
+      AT(taped, 0) = w;
+      AT(taped, L) = d;
+      for (int i = 0; i < step->row; i++) {
+        vector a = AT(lane, (size_t)slot[i] * L), aw = a * w;
+        AT(taped, (2 + i) * L) = a;
+        for (int j = i; j < step->row; j++, target++) {
+          vector product = aw * AT(lane, (size_t)slot[j] * L);
+          if (*target < 0) AT(lane, (size_t)~*target * L) = -product;
+          else AT(lane, (size_t)*target * L) -= product;
+        }
       }
     }
-    slot = target;
+    tape += (2 + step->row) * L;
+    slot += step->row + step->row * (step->row + 1) / 2;
   }
   for (int i = 0; i < program->tail_loads; i++) load_double(load++, energy_ev, high);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(smallest[l] > PIVOT_DOUBLE * norm_ev);
+  for (int l = 0; l < L; l++) trace->broken[l] = !(largest[l] * PIVOT_DOUBLE * norm_ev < 1.0);
 }
 
 INLINED void load_extended(const mho_program_load *load, const double *energy_ev,
@@ -196,13 +194,6 @@ void mho_program_forward_extended(const mho_program *program, const double *ener
   for (int l = 0; l < L; l++) trace->broken[l] = !(smallest[l] > PIVOT_EXTENDED * norm_ev);
 }
 
-/* Lanes in a register, loaded and stored by their address. */
-enum { V = 8 };
-typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-typedef long long bits __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-#define AT(array, l) (*(vector *)((array) + (l)))
-#define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
-
 /* A number's birth: its share of kappa. */
 INLINED void unload(const mho_program_load *load, double *energy_ev, double *adjoint,
                     double *total, double *kappa, double *error)
@@ -276,7 +267,7 @@ INLINED void backward(int kept, const mho_program *program, const double *at_ev,
   const mho_program_load *load = program->load + program->loads;
   const int *slot = program->slot + program->slots_listed;
   double *tape = trace->tape + program->taped * L, energy_ev[L];
-  for (int l = 0; l < L; l++) energy_ev[l] = at_ev[l];
+  keep(energy_ev, at_ev);
   double *hat = trace->adjoint, total[L] = {0}, kappa[L] = {0}, error[L] = {0};
   double form[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L]; /* Q */
   for (int a = 0; a < kept; a++)
