@@ -14,4 +14,11 @@
 #define FOR_EVERY_PROCESSOR
 #endif
 
+/* Part of such functions: apart it would be for the plainest processor only. */
+#ifdef __GNUC__
+#define INLINED static inline __attribute__((always_inline))
+#else
+#define INLINED static inline
+#endif
+
 #endif

@@ -153,7 +153,7 @@ static void eliminate(compiler *c, int site)
     }
   if (!grow((void **)&p->step, &c->step_room, p->steps + 1, sizeof *p->step)) c->failed = true;
   if (c->failed) return;
-  p->taped += 1 + (size_t)count + (size_t)count * (size_t)(count + 1) / 2;
+  p->taped += 2 + (size_t)count;
   p->step[p->steps++] = (mho_program_step){(int)(p->loads - loads), count, pivot};
   c->free_slot[c->free_slots++] = pivot;
   for (int a = 0; a < count; a++) {

@@ -44,9 +44,11 @@ MHO_MUST_USE mho_status mho_program_create(const mho_plan *plan, mho_program **p
 void mho_program_free(mho_program *program);
 
 /* A batch of energies in work.  value = high + low of every slot, and the slots'
- * adjoint dlnT/dvalue, [slots][lanes]; the tape keeps what the way back needs. */
+ * adjoint dlnT/dvalue, [slots][lanes]; a site's response r and Q r stand at the
+ * slot of its diagonal, [slots][2][kept][lanes]; the tape keeps what the way back
+ * needs: of a step 1/d, d and the row. */
 typedef struct {
-  double *high, *low, *adjoint, *tape;
+  double *high, *low, *adjoint, *response, *tape;
   bool broken[PROGRAM_LANES];   /* a pivot was too small for these digits */
   double kappa[PROGRAM_LANES];  /* sum of |p dlnT/dp| over H and E */
   double error[PROGRAM_LANES];  /* of ln T, from rounding in the elimination */
@@ -63,8 +65,8 @@ void mho_program_forward_double(const mho_program *program, const double *energy
 void mho_program_forward_extended(const mho_program *program, const double *energy_ev,
                                   double norm_ev, mho_program_trace *trace);
 
-/* From the adjoints of the kept slots (all others zero), which are used up, to
- * kappa and error; roundoff is that of the numbers' subtraction. */
+/* From the adjoints of the kept slots to kappa and error, using up all numbers;
+ * roundoff is that of the numbers' subtraction. */
 void mho_program_backward(const mho_program *program, const double *energy_ev,
                           double roundoff, mho_program_trace *trace);
 

@@ -18,7 +18,7 @@
 #include "solver/processor.h"
 #include "solver/spectrum.h"
 
-enum { L = SPECTRUM_LANES, V = 4 };
+enum { L = SPECTRUM_LANES, V = 8 };
 
 typedef struct {
   double f00[L], f01[L], f11[L];    /* F */
@@ -32,7 +32,7 @@ typedef long long mask __attribute__((vector_size(V * sizeof(double))));
 
 #define ABSOLUTE(x) ((vector)((mask)(x) & (0 * (mask){0} + 0x7fffffffffffffffLL)))
 
-/* Few energies at a time, so that all sums stay in registers. */
+/* V energies at a time, so that with wide vectors all sums stay in registers. */
 FOR_EVERY_PROCESSOR
 static void sum_levels(const mho_plan *plan, const double *energy_ev, sums *t)
 {
