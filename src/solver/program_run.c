@@ -56,6 +56,7 @@ mho_status mho_program_trace_create(const mho_program *program, mho_program_trac
   trace->adjoint = trace->low + slots;
   trace->response = trace->adjoint + slots;
   trace->tape = trace->response + responses;
+  for (size_t k = 0; k < slots; k++) trace->adjoint[k] = 0; /* of lanes that found no T */
   return MHO_OK;
 }
 
@@ -115,7 +116,7 @@ void mho_program_forward_double(const mho_program *program, const double *at_ev,
 }
 
 INLINED void load_extended(const mho_program_load *load, const double *energy_ev,
-                                 mho_program_trace *trace)
+                           mho_program_trace *trace)
 {
   double *restrict high = trace->high + (size_t)load->slot * L;
   double *restrict low = trace->low + (size_t)load->slot * L;
@@ -133,8 +134,8 @@ INLINED void load_extended(const mho_program_load *load, const double *energy_ev
   double pl = __builtin_fma((ah), (bh), -ph) + ((ah) * (bl) + (al) * (bh))
 
 INLINED void update_extended(const mho_program_trace *trace, size_t b,
-                                   const double *restrict th, const double *restrict tl,
-                                   size_t s, double keep_old)
+                             const double *restrict th, const double *restrict tl,
+                             size_t s, double keep_old)
 {
   const double *restrict bh = trace->high + b, *restrict bl = trace->low + b;
   double *restrict sh = trace->high + s, *restrict sl = trace->low + s;
