@@ -85,12 +85,20 @@ static const char *line_end(const char *at, const char *end)
   return found ? found : end;
 }
 
+/* Lines of the XYZ record at `at`; -1, all that is left, where it does not say:
+ * then nothing tells where the next one begins. */
+static long xyz_lines(const char *at)
+{
+  long atoms = strtol(at, NULL, 10);
+  return atoms >= 1 && atoms <= MHO_ATOM_LIMIT ? atoms + 2 : -1;
+}
+
 /* Behind the record that begins at s->at: its `$$$$` line, or the atoms that
  * an XYZ record announces; *lines is what it passes. */
 static const char *find_end(const mho_records *s, const char **next, long *lines)
 {
   const char *at = s->at;
-  long count = s->xyz ? strtol(at, NULL, 10) + 2 : -1;
+  long count = s->xyz ? xyz_lines(at) : -1;
   for (*lines = 0; at < s->end && count != 0; count--) {
     const char *end = line_end(at, s->end);
     bool separator = !s->xyz && end - at >= 4 && !strncmp(at, "$$$$", 4);
@@ -98,7 +106,7 @@ static const char *find_end(const mho_records *s, const char **next, long *lines
     ++*lines;
     if (separator) return at;
     at = *next;
-    if (s->xyz && count <= 1) break;
+    if (s->xyz && count == 1) break;
   }
   *next = at;
   return at;
