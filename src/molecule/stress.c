@@ -7,6 +7,9 @@
 
 enum { ROUNDS = 120, POLYGON_LIMIT = 8 };
 
+/* Bond lengths that nobody sees any more. */
+#define STILL 1e-3
+
 #define PI 3.14159265358979323846
 #define ZIGZAG 1.7320508075688772 /* across two bonds at 120 degrees */
 
@@ -17,6 +20,7 @@ typedef struct {
   int *place;     /* [points] index among the members, or -1 */
   int *queue;     /* [count] */
   double *target; /* [count][count] */
+  double *weight; /* [count][count] target^-2, behind the targets */
   double (*at)[2]; /* [count] */
 } stress;
 
@@ -104,24 +108,39 @@ static void start(stress *s)
   }
 }
 
-/* One round; weights are target^-2, or target^-4 where the near ones count. */
-static void relax(stress *s, bool local)
+/* One round; weights are target^-2, or target^-4 where the near ones count.
+ * Returns the square of the largest step. */
+static double relax(stress *s, bool local)
 {
   int n = s->count;
+  double largest = 0;
   for (int i = 0; i < n; i++) {
     double sum[2] = {0, 0}, total = 0;
     for (int k = 0; k < n; k++) {
       if (k == i) continue;
-      double d = s->target[i * n + k], weight = 1 / (local ? d * d * d * d : d * d);
+      double d = s->target[i * n + k], weight = s->weight[i * n + k];
+      if (local) weight *= weight;
       double dx = s->at[i][0] - s->at[k][0], dy = s->at[i][1] - s->at[k][1];
       double length = sqrt(dx * dx + dy * dy), scale = length > 1e-6 ? d / length : 0;
       sum[0] += weight * (s->at[k][0] + dx * scale);
       sum[1] += weight * (s->at[k][1] + dy * scale);
       total += weight;
     }
-    s->at[i][0] = sum[0] / total;
-    s->at[i][1] = sum[1] / total;
+    double x = sum[0] / total, y = sum[1] / total;
+    double step = (x - s->at[i][0]) * (x - s->at[i][0]) + (y - s->at[i][1]) * (y - s->at[i][1]);
+    largest = fmax(largest, step);
+    s->at[i][0] = x;
+    s->at[i][1] = y;
   }
+  return largest;
+}
+
+static void relax_all(stress *s)
+{
+  size_t pairs = (size_t)s->count * (size_t)s->count;
+  for (size_t k = 0; k < pairs; k++) s->weight[k] = 1 / (s->target[k] * s->target[k]);
+  for (int local = 0; local < 2; local++)
+    for (int round = 0; round < ROUNDS && relax(s, local) > STILL * STILL; round++) {}
 }
 
 mho_status mho_stress_place(const mho_neighbours *neighbours, const int *member,
@@ -132,7 +151,8 @@ mho_status mho_stress_place(const mho_neighbours *neighbours, const int *member,
   stress s = {.graph = neighbours, .member = member, .count = count};
   s.place = malloc(((size_t)neighbours->points + 1) * sizeof *s.place);
   s.queue = malloc((2 * n + 1) * sizeof *s.queue);
-  s.target = malloc((n * n + 1) * sizeof *s.target);
+  s.target = malloc((2 * n * n + 1) * sizeof *s.target);
+  s.weight = s.target ? s.target + n * n : NULL;
   s.at = malloc((n + 1) * sizeof *s.at);
   mho_status status = s.place && s.queue && s.target && s.at ? MHO_OK : MHO_ERR_MEMORY;
   if (status == MHO_OK && count > 1) {
@@ -145,8 +165,7 @@ mho_status mho_stress_place(const mho_neighbours *neighbours, const int *member,
       s.at[i][1] = position[member[i]][1] + 0.02 * cos(11.0 * i);
     }
     use_polygons(&s, rings);
-    for (int round = 0; round < ROUNDS; round++) relax(&s, false);
-    for (int round = 0; round < ROUNDS; round++) relax(&s, true);
+    relax_all(&s);
     for (int i = 0; i < count; i++) memcpy(position[member[i]], s.at[i], sizeof s.at[i]);
   } else if (status == MHO_OK && count == 1) {
     position[member[0]][0] = position[member[0]][1] = 0;
