@@ -72,6 +72,9 @@ int usage_error(const char *verb, const char *format, ...) MHO_PRINTF(2, 3);
 /* Reads a quantity of an option into the base unit; prints what is wrong. */
 int read_quantity(const char *verb, const char *option, const char *text,
                   mho_dimension dimension, double low, double high, double *value);
+int read_range(const command *cmd, const char *option, const char *text,
+               mho_dimension dimension, const char *example, double least, double most,
+               double *low, double *high); /* `LOW, HIGH` */
 int read_count(const char *verb, const char *option, const char *text, long low, long high,
                long *value);
 

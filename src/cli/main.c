@@ -279,20 +279,19 @@ int read_quantity(const char *verb_name, const char *option, const char *text,
   return EXIT_DONE;
 }
 
-/* `LOW, HIGH` */
-static int read_range(const command *cmd, const char *option, const char *text,
-                      mho_dimension dimension, const char *example, double reach, double *low,
-                      double *high)
+int read_range(const command *cmd, const char *option, const char *text,
+               mho_dimension dimension, const char *example, double least, double most,
+               double *low, double *high)
 {
   const char *comma = strchr(text, ',');
   if (!comma || strchr(comma + 1, ','))
     return usage_error(cmd->verb, "--%s: '%s' is not a range; write '%s'", option, text, example);
   char *first = mho_print_text("%.*s", (int)(comma - text), text);
   if (!first) return usage_error(cmd->verb, "out of memory");
-  int code = read_quantity(cmd->verb, option, first, dimension, -reach, reach, low);
+  int code = read_quantity(cmd->verb, option, first, dimension, least, most, low);
   free(first);
   if (code == EXIT_DONE)
-    code = read_quantity(cmd->verb, option, comma + 1, dimension, -reach, reach, high);
+    code = read_quantity(cmd->verb, option, comma + 1, dimension, least, most, high);
   if (code == EXIT_DONE && !(*low < *high))
     return usage_error(cmd->verb, "--%s: '%s' runs downwards; the lower end comes first", option,
                        text);
@@ -363,11 +362,11 @@ static int read_option(command *cmd, int which, const char *text)
   switch (which) {
   case OPT_ENERGIES:
     cmd->has_energies = true;
-    return read_range(cmd, "energies", text, MHO_ENERGY, "-3 eV, 3 eV", 1000,
+    return read_range(cmd, "energies", text, MHO_ENERGY, "-3 eV, 3 eV", -1000, 1000,
                       &cmd->energy_low_ev, &cmd->energy_high_ev);
   case OPT_ANGLES:
     cmd->has_angles = true;
-    return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", 360, &cmd->angle_low_deg,
+    return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", -360, 360, &cmd->angle_low_deg,
                       &cmd->angle_high_deg);
   case OPT_BOND: return read_bond(cmd, text);
   case OPT_RULES: cmd->rules = true; return EXIT_DONE;

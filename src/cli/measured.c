@@ -69,32 +69,12 @@ static int read_flag(command *cmd, const char *name)
   return EXIT_DONE;
 }
 
-/* `LOW, HIGH` */
-static int read_range(const command *cmd, const char *name, const char *text,
-                      mho_dimension dimension, double least, double most, double *low,
-                      double *high)
-{
-  const char *comma = strchr(text, ',');
-  if (!comma || strchr(comma + 1, ','))
-    return usage_error(cmd->verb, "--%s: '%s' is not a range; write 'LOW, HIGH', each with its "
-                                  "unit", name, text);
-  char *first = mho_print_text("%.*s", (int)(comma - text), text);
-  if (!first) return usage_error(cmd->verb, "out of memory");
-  int code = read_quantity(cmd->verb, name, first, dimension, least, most, low);
-  free(first);
-  if (code == EXIT_DONE)
-    code = read_quantity(cmd->verb, name, comma + 1, dimension, least, most, high);
-  if (code == EXIT_DONE && !(*low < *high))
-    return usage_error(cmd->verb, "--%s: '%s' runs downwards; the lower end comes first", name,
-                       text);
-  return code;
-}
-
 static int read_conductances(command *cmd, const char *text)
 {
   mho_histogram_options *h = &cmd->measured.histogram;
   double low, high;
-  int code = read_range(cmd, "conductances", text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &low, &high);
+  int code = read_range(cmd, "conductances", text, MHO_CONDUCTANCE, "1e-7 G0, 10 G0", G0_LOW, G0_HIGH,
+                        &low, &high);
   if (code != EXIT_DONE) return code;
   /* Whole bins: outwards to a tenth of a decade. */
   h->low_log10_g0 = floor(log10(low) * 10 + 1e-9) / 10;
@@ -178,12 +158,12 @@ int read_measured_option(command *cmd, const char *name, const char *text)
   if (code != EXIT_RUNTIME) return code;
   if (!strcmp(name, "conductances")) return read_conductances(cmd, text);
   if (!strcmp(name, "distances"))
-    return read_range(cmd, name, text, MHO_LENGTH, -1000, 1000, &m->histogram.map_low_nm,
-                      &m->histogram.map_high_nm);
+    return read_range(cmd, name, text, MHO_LENGTH, "-0.5 nm, 2.5 nm", -1000, 1000,
+                      &m->histogram.map_low_nm, &m->histogram.map_high_nm);
   if (!strcmp(name, "search")) {
     m->has_search = true;
-    return read_range(cmd, name, text, MHO_CONDUCTANCE, G0_LOW, G0_HIGH, &m->search_low_g0,
-                      &m->search_high_g0);
+    return read_range(cmd, name, text, MHO_CONDUCTANCE, "1e-5 G0, 0.1 G0", G0_LOW, G0_HIGH,
+                      &m->search_low_g0, &m->search_high_g0);
   }
   if (!strcmp(name, "quantity")) return read_trace_quantity(cmd, text);
   if (!strcmp(name, "figure")) return read_figure(cmd, text);

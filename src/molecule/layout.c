@@ -317,7 +317,8 @@ static double untangle(layout *l, const int *member, int count)
 static mho_status improve(layout *l, const int *member, int count)
 {
   if (5L * count * count > l->work) return MHO_OK;
-  double now = untangle(l, member, count);  if (now < 1e-9 || count > STRESS_LIMIT) return MHO_OK;
+  double now = untangle(l, member, count);
+  if (now < 1e-9 || count > STRESS_LIMIT) return MHO_OK;
   double (*tried)[2] = malloc(((size_t)l->graph->points + 1) * sizeof *tried);
   if (!tried) return MHO_ERR_MEMORY;
   mho_status status = MHO_OK;
