@@ -51,8 +51,9 @@ struct mho_plan {
 /* Unit roundoff of a double. */
 #define UNIT_ROUNDOFF (0.5 * DBL_EPSILON)
 
-/* Up to here the sum over levels is worth its bookkeeping. */
-enum { SPECTRUM_CHANNELS_MAX = 8 };
+/* Up to here the sum over levels is worth its bookkeeping.  Of larger molecules
+ * too few energies keep the contract that way, if there is a program instead. */
+enum { SPECTRUM_CHANNELS_MAX = 8, SPECTRUM_SITES_MAX = 36 };
 
 /* A value with what is known of its error.  `kappa` is a lower bound of the
  * condition of ln T: the part that comes from H and E. */
