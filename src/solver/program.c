@@ -9,7 +9,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-/* Fewest neighbours are searched for up to that size, at O(sites^2). */
+/* In longer molecules the plan's narrow order is as good. */
 enum { GREEDY_SITES = 3000 };
 
 /* More updates a site than this, and pivoting within the band is as good. */
@@ -33,6 +33,7 @@ typedef struct {
   double *diagonal;
   int *diagonal_slot, *diagonal_roundings;
   bool *kept, *gone;
+  int *winner, leaves; /* [2 leaves]: tournament for the fewest neighbours */
   int *free_slot, free_slots, slot_capacity;
   size_t step_room, load_room, slot_room, member_room, updates;
   bool failed; /* out of memory */
@@ -218,13 +219,39 @@ static void eliminate(compiler *c, int site)
   c->gone[site] = true;
 }
 
+/* Of two sites, or -1 for none, that to eliminate first. */
+static int fewer(const compiler *c, int a, int b)
+{
+  if (a < 0 || b < 0) return a < 0 ? b : a;
+  return c->row[b].count < c->row[a].count ? b : a;
+}
+
+/* Replays the matches of a site whose neighbours changed, or that is gone. */
+static void replay(compiler *c, int site)
+{
+  if (!c->winner) return;
+  int at = c->leaves + site;
+  c->winner[at] = c->gone[site] || c->kept[site] ? -1 : site;
+  for (at /= 2; at > 0; at /= 2)
+    c->winner[at] = fewer(c, c->winner[2 * at], c->winner[2 * at + 1]);
+}
+
+static bool start_tournament(compiler *c)
+{
+  int n = c->plan->sites;
+  if (n > GREEDY_SITES) return true;
+  for (c->leaves = 1; c->leaves < n;) c->leaves *= 2;
+  c->winner = malloc(2 * (size_t)c->leaves * sizeof(int));
+  if (!c->winner) return false;
+  for (int i = 0; i < c->leaves; i++) c->winner[c->leaves + i] = i < n && !c->kept[i] ? i : -1;
+  for (int at = c->leaves - 1; at > 0; at--)
+    c->winner[at] = fewer(c, c->winner[2 * at], c->winner[2 * at + 1]);
+  return true;
+}
+
 static int next_site(const compiler *c, size_t turn)
 {
-  if (c->plan->sites > GREEDY_SITES) return c->plan->order[turn];
-  int best = -1;
-  for (int i = 0; i < c->plan->sites; i++)
-    if (!c->gone[i] && !c->kept[i] && (best < 0 || c->row[i].count < c->row[best].count)) best = i;
-  return best;
+  return c->winner ? c->winner[1] : c->plan->order[turn];
 }
 
 static void eliminate_all(compiler *c)
@@ -234,6 +261,9 @@ static void eliminate_all(compiler *c)
     if (c->updates > UPDATES_A_SITE * n) return;
     int site = next_site(c, turn);
     if (site >= 0 && !c->kept[site]) eliminate(c, site);
+    if (site < 0 || !c->winner || c->failed) continue;
+    for (int a = 0; a < c->row[site].count; a++) replay(c, c->row[site].link[a].site);
+    replay(c, site);
   }
   mho_program *p = c->program;
   size_t before = p->loads;
@@ -297,6 +327,7 @@ static void finish(compiler *c)
   free(c->diagonal);
   free(c->diagonal_slot);
   free(c->kept);
+  free(c->winner);
   free(c->free_slot);
 }
 
@@ -306,7 +337,7 @@ mho_status mho_program_create(const mho_plan *plan, mho_program **program)
   *program = NULL;
   bool pays = false;
   if (!c.program || !start(&c)) c.failed = true;
-  else if (keep_contacts(&c)) {
+  else if (keep_contacts(&c) && !(c.failed = !start_tournament(&c))) {
     eliminate_all(&c);
     pays = c.updates <= UPDATES_A_SITE * (size_t)plan->sites;
   }

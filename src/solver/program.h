@@ -107,13 +107,18 @@ void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_tr
 #define PIVOT_DOUBLE 1e-6
 #define PIVOT_EXTENDED 1e-12
 
-/* Lanes in a register, loaded and stored by their address. */
-enum { PROGRAM_VECTOR = 8 };
-typedef double mho_lanes
+/* Lanes in a register, loaded and stored by their address; and all lanes of a
+ * number, kept in registers where loops over VECTORS are innermost. */
+enum { PROGRAM_VECTOR = 8, PROGRAM_VECTORS = PROGRAM_LANES / PROGRAM_VECTOR };
+typedef double mho_vector
     __attribute__((vector_size(PROGRAM_VECTOR * sizeof(double)), aligned(8), may_alias));
-typedef long long mho_lane_bits
+typedef long long mho_vector_bits
     __attribute__((vector_size(PROGRAM_VECTOR * sizeof(double)), aligned(8), may_alias));
-#define LANES_AT(array, l) (*(mho_lanes *)((array) + (l)))
-#define LANES_ABSOLUTE(x) ((mho_lanes)((mho_lane_bits)(x) & ((mho_lane_bits){0} + 0x7fffffffffffffffLL)))
+typedef struct {
+  mho_vector of[PROGRAM_VECTORS];
+} mho_lanes;
+#define EACH_VECTOR(v) for (int v = 0; v < PROGRAM_VECTORS; v++)
+#define VECTOR_AT(array, v) (*(mho_vector *)((array) + (v) * PROGRAM_VECTOR))
+#define ABSOLUTE(x) ((mho_vector)((mho_vector_bits)(x) & ((mho_vector_bits){0} + 0x7fffffffffffffffLL)))
 
 #endif

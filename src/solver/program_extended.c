@@ -9,47 +9,107 @@
 #include "solver/processor.h"
 
 #include <math.h>
+#include <stddef.h>
 
 enum { L = PROGRAM_LANES };
 
-INLINED void keep(double *restrict tape, const double *restrict value)
+typedef mho_vector vector;
+typedef mho_lanes lanes;
+#define AT VECTOR_AT
+
+/* Compiler vectors have no fused multiply-add of their own; of a loop over
+ * elements it makes one. */
+INLINED void fused(const vector *a, const vector *b, const vector *c, vector *result)
 {
-  for (int l = 0; l < L; l++) tape[l] = value[l];
+  for (int k = 0; k < PROGRAM_VECTOR; k++)
+    (*result)[k] = __builtin_fma((*a)[k], (*b)[k], (*c)[k]);
 }
 
+typedef struct {
+  vector high, low;
+} pair;
+
+INLINED pair pair_at(const mho_program_trace *trace, int slot, int v)
+{
+  return (pair){AT(trace->high + (ptrdiff_t)slot * L, v), AT(trace->low + (ptrdiff_t)slot * L, v)};
+}
+
+INLINED void product(const pair *a, const pair *b, pair *p)
+{
+  vector high = a->high * b->high, minus = -high, rest;
+  fused(&a->high, &b->high, &minus, &rest);
+  *p = (pair){high, rest + (a->high * b->low + a->low * b->high)};
+}
+
+/* s - p */
+INLINED void difference(const pair *s, const pair *p, pair *result)
+{
+  vector sum = s->high - p->high, part = sum - s->high;
+  vector rest = (s->high - (sum - part)) - (p->high + part);
+  rest += s->low - p->low;
+  result->high = sum + rest;
+  result->low = rest - (result->high - sum);
+}
+
+/* 1/d by a Newton step; 1 - d w is nearly exact. */
+INLINED void inverse(const pair *d, pair *w)
+{
+  vector first = 1.0 / d->high, minus = -d->high, one = (vector){0} + 1.0, rest;
+  fused(&minus, &first, &one, &rest);
+  rest = first * (rest - d->low * first);
+  w->high = first + rest;
+  w->low = rest - (w->high - first);
+}
+
+/* E - value exactly: D. E. Knuth's two-sum. */
 INLINED void load_extended(const mho_program_load *load, const double *energy_ev,
                            mho_program_trace *trace)
 {
-  double *restrict high = trace->high + (size_t)load->slot * L;
-  double *restrict low = trace->low + (size_t)load->slot * L;
+  double *high = trace->high + (ptrdiff_t)load->slot * L, *low = trace->low + (ptrdiff_t)load->slot * L;
   double value = load->value, weight = load->site >= 0 ? 1.0 : 0.0;
-  for (int l = 0; l < L; l++) { /* E - value exactly: D. E. Knuth's two-sum */
-    double first = weight * energy_ev[l], sum = first - value, part = sum - first;
-    high[l] = sum;
-    low[l] = (first - (sum - part)) - (value + part);
+  EACH_VECTOR(v)
+  {
+    vector first = weight * AT(energy_ev, v), sum = first - value, part = sum - first;
+    AT(high, v) = sum;
+    AT(low, v) = (first - (sum - part)) - (value + part);
   }
 }
 
-/* (high, low) of the product of two double-doubles. */
-#define MULTIPLY(ph, pl, ah, al, bh, bl)                                       \
-  double ph = (ah) * (bh);                                                     \
-  double pl = __builtin_fma((ah), (bh), -ph) + ((ah) * (bl) + (al) * (bh))
-
-INLINED void update_extended(const mho_program_trace *trace, size_t b,
-                             const double *restrict th, const double *restrict tl,
-                             size_t s, double keep_old)
+/* One pivot; `row` is a constant where this is inlined for a short row. */
+INLINED void eliminate(int row, int pivot, const int *slot, double *tape, lanes *squares,
+                       mho_program_trace *trace)
 {
-  const double *restrict bh = trace->high + b, *restrict bl = trace->low + b;
-  double *restrict sh = trace->high + s, *restrict sl = trace->low + s;
-  for (int l = 0; l < L; l++) {
-    MULTIPLY(ph, pl, th[l], tl[l], bh[l], bl[l]);
-    double before = keep_old != 0 ? sh[l] : 0.0, before_low = keep_old != 0 ? sl[l] : 0.0;
-    double sum = before - ph, part = sum - before;
-    double rest = (before - (sum - part)) - (ph + part);
-    rest += before_low - pl;
-    double high = sum + rest;
-    sl[l] = rest - (high - sum);
-    sh[l] = high;
+  const int *target = slot + 2 * row;
+  pair w[PROGRAM_VECTORS];
+  EACH_VECTOR(v)
+  {
+    pair d = pair_at(trace, pivot, v);
+    inverse(&d, &w[v]);
+    AT(tape, v) = w[v].high;
+    squares->of[v] += w[v].high * w[v].high;
+  }
+  for (int i = 0; i < row; i++)
+    EACH_VECTOR(v) AT(tape + (1 + i) * L, v) = AT(trace->high + (ptrdiff_t)slot[i] * L, v);
+  for (int i = 0; i < row; i++) {
+    pair aw[PROGRAM_VECTORS];
+    EACH_VECTOR(v)
+    {
+      pair a = pair_at(trace, slot[i], v);
+      product(&a, &w[v], &aw[v]);
+    }
+    for (int j = i; j < row; j++, target++) {
+      bool fresh = *target < 0;
+      int to = fresh ? ~*target : *target;
+      EACH_VECTOR(v)
+      {
+        pair a = pair_at(trace, slot[j], v), before = {{0}, {0}}, p;
+        if (!fresh) before = pair_at(trace, to, v);
+        product(&aw[v], &a, &p);
+        difference(&before, &p, &before);
+        AT(trace->high + (ptrdiff_t)to * L, v) = before.high;
+        AT(trace->low + (ptrdiff_t)to * L, v) = before.low;
+      }
+    }
   }
 }
 
@@ -59,39 +119,23 @@ void mho_program_forward_extended(const mho_program *program, const double *ener
 {
   const mho_program_load *load = program->load;
   const int *slot = program->slot;
-  double *high = trace->high, *low = trace->low, *tape = trace->tape, smallest[L];
-  for (int l = 0; l < L; l++) smallest[l] = INFINITY;
+  double *tape = trace->tape;
+  lanes squares = {{{0}}}; /* of all 1/d */
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
+    int row = step->row;
     for (int i = 0; i < step->loads; i++) load_extended(load++, energy_ev, trace);
-    const double *dh = high + (size_t)step->pivot * L, *dl = low + (size_t)step->pivot * L;
-    double *restrict w = tape, w_low[L];
-    for (int l = 0; l < L; l++) { /* a Newton step from 1/d; 1 - d w is nearly exact */
-      double size = fabs(dh[l]), first = 1.0 / dh[l];
-      double rest = first * (__builtin_fma(-dh[l], first, 1.0) - dl[l] * first);
-      smallest[l] = smallest[l] < size ? smallest[l] : size;
-      w[l] = first + rest;
-      w_low[l] = rest - (w[l] - first);
+    switch (row) {
+    case 1: eliminate(1, step->pivot, slot, tape, &squares, trace); break;
+    case 2: eliminate(2, step->pivot, slot, tape, &squares, trace); break;
+    case 3: eliminate(3, step->pivot, slot, tape, &squares, trace); break;
+    default: eliminate(row, step->pivot, slot, tape, &squares, trace);
     }
-    tape += L;
-    const int *target = slot + 2 * step->row;
-    for (int i = 0; i < step->row; i++, tape += L) keep(tape, high + (size_t)slot[i] * L);
-    for (int i = 0; i < step->row; i++) {
-      const double *restrict ah = high + (size_t)slot[i] * L, *restrict al = low + (size_t)slot[i] * L;
-      double th[L], tl[L];
-      for (int l = 0; l < L; l++) {
-        MULTIPLY(ph, pl, ah[l], al[l], w[l], w_low[l]);
-        th[l] = ph;
-        tl[l] = pl;
-      }
-      for (int j = i; j < step->row; j++, target++) {
-        bool fresh = *target < 0;
-        update_extended(trace, (size_t)slot[j] * L, th, tl,
-                        (size_t)(fresh ? ~*target : *target) * L, fresh ? 0.0 : 1.0);
-      }
-    }
-    slot = target;
+    tape += (1 + row) * L;
+    slot += 2 * row + row * (row + 1) / 2;
   }
   for (int i = 0; i < program->tail_loads; i++) load_extended(load++, energy_ev, trace);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(smallest[l] > PIVOT_EXTENDED * norm_ev);
+  double most = 1 / (PIVOT_EXTENDED * norm_ev);
+  for (int l = 0; l < L; l++)
+    trace->broken[l] = !(squares.of[l / PROGRAM_VECTOR][l % PROGRAM_VECTOR] < most * most);
 }

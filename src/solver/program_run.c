@@ -32,14 +32,15 @@
 #include "solver/processor.h"
 
 #include <math.h>
+#include <stddef.h>
 #include <stdlib.h>
 #include <sys/mman.h>
 
-enum { L = PROGRAM_LANES, V = PROGRAM_VECTOR, LARGE_PAGE = 1 << 21, UNROLLED = 4 };
+enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = 3 };
 
-typedef mho_lanes vector;
-#define AT LANES_AT
-#define ABSOLUTE LANES_ABSOLUTE
+typedef mho_vector vector;
+typedef mho_lanes lanes;
+#define AT VECTOR_AT
 
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
@@ -66,29 +67,41 @@ void mho_program_trace_clear(mho_program_trace *trace)
 
 INLINED void load_double(const mho_program_load *load, const double *energy_ev, double *high)
 {
-  double *s = high + (size_t)load->slot * L;
+  double *s = high + (ptrdiff_t)load->slot * L;
   double weight = load->site >= 0 ? 1.0 : 0.0;
-  for (int l = 0; l < L; l += V) AT(s, l) = weight * AT(energy_ev, l) - load->value;
+  EACH_VECTOR(v) AT(s, v) = weight * AT(energy_ev, v) - load->value;
 }
 
 /* One pivot; `row` is a constant where this is inlined for a short row. */
 INLINED void eliminate(int row, int pivot, const int *slot, double *high, double *tape,
-                       double *squares)
+                       lanes *squares)
 {
   const int *target = slot + 2 * row;
-  for (int l = 0; l < L; l += V) {
-    double *lane = high + l, *taped = tape + l;
-    const int *at = target;
-    vector w = 1.0 / AT(lane, (size_t)pivot * L);
-    AT(squares, l) += w * w;
-    AT(taped, 0) = w;
-    for (int i = 0; i < row; i++) AT(taped, (1 + i) * L) = AT(lane, (size_t)slot[i] * L);
-    for (int i = 0; i < row; i++) {
-      vector aw = AT(taped, (1 + i) * L) * w;
-      for (int j = i; j < row; j++, at++) {
-        vector a = AT(taped, (1 + j) * L);
-        if (*at < 0) AT(lane, (size_t)~*at * L) = -(aw * a);
-        else AT(lane, (size_t)*at * L) -= aw * a;
+  lanes w, a[UNROLLED];
+  EACH_VECTOR(v)
+  {
+    AT(tape, v) = w.of[v] = 1.0 / AT(high + (ptrdiff_t)pivot * L, v);
+    squares->of[v] += w.of[v] * w.of[v];
+  }
+  for (int i = 0; i < row; i++)
+    EACH_VECTOR(v)
+    {
+      vector entry = AT(high + (ptrdiff_t)slot[i] * L, v);
+      AT(tape + (1 + i) * L, v) = entry;
+      if (row <= UNROLLED) a[i].of[v] = entry;
+    }
+  for (int i = 0; i < row; i++) {
+    lanes aw;
+    EACH_VECTOR(v)
+      aw.of[v] = w.of[v] * (row <= UNROLLED ? a[i].of[v] : AT(tape + (1 + i) * L, v));
+    for (int j = i; j < row; j++, target++) {
+      bool fresh = *target < 0;
+      double *s = high + (ptrdiff_t)(fresh ? ~*target : *target) * L;
+      EACH_VECTOR(v)
+      {
+        vector entry = row <= UNROLLED ? a[j].of[v] : AT(tape + (1 + j) * L, v);
+        vector before = fresh ? (vector){0} : AT(s, v);
+        AT(s, v) = before - aw.of[v] * entry;
       }
     }
   }
@@ -100,23 +113,24 @@ void mho_program_forward_double(const mho_program *program, const double *energy
 {
   const mho_program_load *load = program->load;
   const int *slot = program->slot;
-  double *high = trace->high, *tape = trace->tape, squares[L] = {0}; /* of all 1/d */
+  double *high = trace->high, *tape = trace->tape;
+  lanes squares = {{{0}}}; /* of all 1/d */
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
     int row = step->row;
     for (int i = 0; i < step->loads; i++) load_double(load++, energy_ev, high);
     switch (row) {
-    case 1: eliminate(1, step->pivot, slot, high, tape, squares); break;
-    case 2: eliminate(2, step->pivot, slot, high, tape, squares); break;
-    case 3: eliminate(3, step->pivot, slot, high, tape, squares); break;
-    default: eliminate(row, step->pivot, slot, high, tape, squares);
+    case 1: eliminate(1, step->pivot, slot, high, tape, &squares); break;
+    case 2: eliminate(2, step->pivot, slot, high, tape, &squares); break;
+    case 3: eliminate(3, step->pivot, slot, high, tape, &squares); break;
+    default: eliminate(row, step->pivot, slot, high, tape, &squares);
     }
     tape += (1 + row) * L;
     slot += 2 * row + row * (row + 1) / 2;
   }
   for (int i = 0; i < program->tail_loads; i++) load_double(load++, energy_ev, high);
   double most = 1 / (PIVOT_DOUBLE * norm_ev);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(squares[l] < most * most);
+  for (int l = 0; l < L; l++) trace->broken[l] = !(squares.of[l / PROGRAM_VECTOR][l % PROGRAM_VECTOR] < most * most);
 }
 
 /* What the way back gathers of every lane. */
@@ -131,32 +145,64 @@ typedef struct {
 INLINED vector modulus(vector x, vector y)
 {
   vector a = ABSOLUTE(x), b = ABSOLUTE(y);
-  mho_lane_bits larger = a > b;
-  vector most = (vector)(((mho_lane_bits)a & larger) | ((mho_lane_bits)b & ~larger));
-  vector least = (vector)(((mho_lane_bits)b & larger) | ((mho_lane_bits)a & ~larger));
+  mho_vector_bits larger = a > b;
+  vector most = (vector)(((mho_vector_bits)a & larger) | ((mho_vector_bits)b & ~larger));
+  vector least = (vector)(((mho_vector_bits)b & larger) | ((mho_vector_bits)a & ~larger));
   return most + 0.5 * least;
 }
 
-/* n of a site from its answer r, for lanes l and on. */
-INLINED void measure(int kept, bool pair, const mho_program_trace *trace, int l,
-                     const vector *r, vector *n)
+/* n of a site from its answer r. */
+INLINED void measure(int kept, bool pair, const mho_program_trace *trace, int v,
+                     const lanes *r, lanes *n)
 {
   const mho_program_pair *p = &trace->pair;
-  for (int c = 0; c < kept && !pair; c++) n[c] = ABSOLUTE(r[c]);
+  for (int c = 0; c < kept && !pair; c++) n[c].of[v] = ABSOLUTE(r[c].of[v]);
   if (!pair) return;
-  n[0] = modulus(r[0] * AT(p->c_re, l) - r[1] * AT(p->b, l), r[0] * p->c_im);
-  n[1] = modulus(r[1] * AT(p->a_re, l) - r[0] * AT(p->b, l), r[1] * p->a_im);
+  vector left = r[0].of[v], right = r[1].of[v], b = AT(p->b, v);
+  n[0].of[v] = modulus(left * AT(p->c_re, v) - right * b, left * p->c_im);
+  n[1].of[v] = modulus(right * AT(p->a_re, v) - left * b, right * p->a_im);
 }
 
 /* <x, y> but for the weight of a pair. */
-INLINED vector form(int kept, bool pair, const gathered *all, int l, const vector *x,
-                    const vector *y)
+INLINED vector form(int kept, bool pair, const gathered *all, int v, const lanes *x,
+                    const lanes *y)
 {
-  if (pair) return x[0] * y[1] + x[1] * y[0];
+  if (pair) return x[0].of[v] * y[1].of[v] + x[1].of[v] * y[0].of[v];
   vector sum = {0};
   for (int c = 0; c < kept; c++)
-    for (int d = 0; d < kept; d++) sum += AT(all->size + l, (c * kept + d) * L) * x[c] * y[d];
+    for (int d = 0; d < kept; d++)
+      sum += AT(all->size + (c * kept + d) * L, v) * x[c].of[v] * y[d].of[v];
   return sum;
+}
+
+/* The step's share of kappa, from r of its site. */
+INLINED void weigh_step(int row, int kept, const int *diagonal, const mho_program_member *member,
+                        const double *response, const lanes *r, gathered *all)
+{
+  lanes u[PROGRAM_KEPT_MAX];
+  EACH_VECTOR(v)
+  {
+    vector hat = {0};
+    for (int c = 0; c < kept; c++) {
+      u[c].of[v] = AT(all->form + c * kept * L, v) * r[0].of[v];
+      for (int d = 1; d < kept; d++)
+        u[c].of[v] += AT(all->form + (c * kept + d) * L, v) * r[d].of[v];
+      hat += u[c].of[v] * r[c].of[v];
+    }
+    AT(all->total, v) += 0.5 * hat;
+    AT(all->kappa, v) += ABSOLUTE(hat) * (0.5 * fabs(member[0].value_ev));
+  }
+  for (int i = 0; i < row; i++) {
+    double value_ev = fabs(member[1 + i].value_ev);
+    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
+    if (value_ev == 0) continue;
+    EACH_VECTOR(v)
+    {
+      vector hat = u[0].of[v] * AT(other, v);
+      for (int c = 1; c < kept; c++) hat += u[c].of[v] * AT(other + c * L, v);
+      AT(all->kappa, v) += ABSOLUTE(hat) * value_ev;
+    }
+  }
 }
 
 /* Back over one step: the answer of its site from those of its row.  `row`, `kept`
@@ -166,65 +212,50 @@ INLINED void return_step(int row, int kept, bool pair, bool with_kappa,
                          const mho_program_member *member, const double *tape,
                          mho_program_trace *trace, gathered *all)
 {
-  size_t each = 2 * (size_t)kept * L;
-  double *response = trace->response;
-  for (int l = 0; l < L; l += V) {
-    double *own = response + (size_t)step->pivot * each + l;
-    vector w = AT(tape, l), r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX], u[PROGRAM_KEPT_MAX];
-    vector size[PROGRAM_KEPT_MAX], weighted[PROGRAM_KEPT_MAX]; /* R */
-    for (int c = 0; c < kept; c++) r[c] = size[c] = weighted[c] = (vector){0};
-    for (int i = 0; i < row; i++) {
-      const double *other = response + (size_t)diagonal[i] * each + l;
-      vector a = AT(tape, (1 + i) * L + l), light = ABSOLUTE(a);
-      vector heavy = light * member[1 + i].weight;
+  double *response = trace->response, *own = response + (ptrdiff_t)step->pivot * 2 * kept * L;
+  lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
+  lanes size[PROGRAM_KEPT_MAX], weighted[PROGRAM_KEPT_MAX]; /* R */
+  for (int c = 0; c < kept; c++) r[c] = size[c] = weighted[c] = (lanes){{{0}}};
+  for (int i = 0; i < row; i++) {
+    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
+    double weight = member[1 + i].weight;
+    EACH_VECTOR(v)
+    {
+      vector a = AT(tape + (1 + i) * L, v), light = ABSOLUTE(a), heavy = light * weight;
       for (int c = 0; c < kept; c++) {
-        r[c] -= a * AT(other, c * L);
-        size[c] += light * AT(other, (kept + c) * L);
-        weighted[c] += heavy * AT(other, (kept + c) * L);
+        vector moduli = AT(other + (kept + c) * L, v);
+        r[c].of[v] -= a * AT(other + c * L, v);
+        size[c].of[v] += light * moduli;
+        weighted[c].of[v] += heavy * moduli;
       }
     }
-    for (int c = 0; c < kept; c++) r[c] *= w;
-    measure(kept, pair, trace, l, r, n);
-    vector products = form(kept, pair, all, l, weighted, size);
-    vector ends = form(kept, pair, all, l, n, size);
-    AT(all->error, l) += ABSOLUTE(w) * products + member[0].weight * ends;
-    for (int c = 0; c < kept; c++) {
-      AT(own, c * L) = r[c];
-      AT(own, (kept + c) * L) = n[c];
-    }
-    if (!with_kappa) continue;
-    vector hat = {0}, kappa = AT(all->kappa, l);
-    for (int c = 0; c < kept; c++) {
-      u[c] = AT(all->form + l, c * kept * L) * r[0];
-      for (int d = 1; d < kept; d++) u[c] += AT(all->form + l, (c * kept + d) * L) * r[d];
-      hat += u[c] * r[c];
-    }
-    AT(all->total, l) += 0.5 * hat;
-    kappa += ABSOLUTE(hat) * (0.5 * fabs(member[0].value_ev));
-    for (int i = 0; i < row; i++) {
-      if (member[1 + i].value_ev == 0) continue;
-      const double *other = response + (size_t)diagonal[i] * each + l;
-      hat = u[0] * AT(other, 0);
-      for (int c = 1; c < kept; c++) hat += u[c] * AT(other, c * L);
-      kappa += ABSOLUTE(hat) * fabs(member[1 + i].value_ev);
-    }
-    AT(all->kappa, l) = kappa;
   }
+  EACH_VECTOR(v)
+  {
+    vector w = AT(tape, v);
+    for (int c = 0; c < kept; c++) AT(own + c * L, v) = r[c].of[v] *= w;
+    measure(kept, pair, trace, v, r, n);
+    for (int c = 0; c < kept; c++) AT(own + (kept + c) * L, v) = n[c].of[v];
+    AT(all->error, v) += ABSOLUTE(w) * form(kept, pair, all, v, weighted, size) +
+                         member[0].weight * form(kept, pair, all, v, n, size);
+  }
+  if (with_kappa) weigh_step(row, kept, diagonal, member, response, r, all);
 }
 
-/* Q, the kept sites' answers to themselves alone, and what falls on the Schur
- * complement itself. */
+/* Q and the kept sites' answers to themselves alone. */
 INLINED void start_back(int kept, bool pair, const mho_program *program,
                         const mho_program_trace *trace, gathered *all)
 {
   *all = (gathered){.total = {0}};
   for (int a = 0; a < kept; a++) {
     double *own = trace->response + (size_t)program->kept_slot[a][a] * 2 * (size_t)kept * L;
-    for (int l = 0; l < L; l += V) {
-      vector r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
-      for (int b = 0; b < kept; b++) AT(own + l, b * L) = r[b] = (vector){0} + (a == b ? 1.0 : 0.0);
-      measure(kept, pair, trace, l, r, n);
-      for (int b = 0; b < kept; b++) AT(own + l, (kept + b) * L) = n[b];
+    lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
+    EACH_VECTOR(v)
+    {
+      for (int b = 0; b < kept; b++)
+        AT(own + b * L, v) = r[b].of[v] = (vector){0} + (a == b ? 1.0 : 0.0);
+      measure(kept, pair, trace, v, r, n);
+      for (int b = 0; b < kept; b++) AT(own + (kept + b) * L, v) = n[b].of[v];
     }
     for (int b = 0; b < kept; b++) {
       int at = program->kept_slot[a][b];
