@@ -7,8 +7,8 @@
 #include <stdlib.h>
 
 #include "analysis/perturb.h"
+#include "analysis/samples.h"
 #include "analysis/thermal.h"
-#include "base/random.h"
 
 #define LN_10 2.302585092994045684
 #define RADIANS_PER_DEGREE 0.017453292519943295769
@@ -152,28 +152,6 @@ static int compare_doubles(const void *a, const void *b)
   return (x > y) - (x < y);
 }
 
-/* Samples first .. end-1: log10 G, and what the linear rule makes of the same
- * shifts (without the unmoved value). */
-static mho_status draw(const mho_molecule *m, double fermi_ev, uint64_t seed,
-                       const mho_sensitivity *result, size_t first, size_t end, double *value,
-                       double *linear, mho_error *error)
-{
-  double *shift = malloc(result->count * sizeof *shift);
-  if (!shift) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  mho_status status = MHO_OK;
-  for (size_t i = first; status == MHO_OK && i < end; i++) {
-    mho_random random = mho_random_stream(seed, i);
-    linear[i] = 0;
-    for (size_t p = 0; p < result->count; p++) {
-      shift[p] = result->row[p].sigma * mho_random_normal(&random);
-      linear[i] += result->row[p].derivative_log10_g0 * shift[p];
-    }
-    status = mho_perturbed_log10(m, fermi_ev, result->row, result->count, shift, &value[i], error);
-  }
-  free(shift);
-  return status;
-}
-
 /* Root mean square of what the linear rule leaves over, about its mean. */
 static double left_over(const double *value, const double *linear, size_t count)
 {
@@ -206,7 +184,7 @@ static int compare_rows(const void *a, const void *b)
 }
 
 /* A few samples tell whether the linear rule holds; if not, the rest follows. */
-static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
+static mho_status estimate_error(const mho_molecule *m, const mho_plan *plan, double fermi_ev,
                                  const mho_sensitivity_options *options,
                                  mho_sensitivity *result, mho_error *error)
 {
@@ -222,12 +200,13 @@ static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
   double *value = malloc(2 * samples * sizeof *value);
   if (!value) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   double *linear = value + samples;
-  mho_status status =
-      draw(m, fermi_ev, options->seed, result, 0, few, value, linear, error);
+  mho_status status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count,
+                                       options->seed, 0, few, value, linear, error);
   bool holds = result->has_derivatives &&
                left_over(value, linear, few) <= LINEAR_TOLERANCE * result->linear_decades;
   if (status == MHO_OK && !holds)
-    status = draw(m, fermi_ev, options->seed, result, few, samples, value, linear, error);
+    status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count, options->seed, few,
+                              samples, value, linear, error);
   if (status == MHO_OK && !holds) set_range(value, samples, result);
   free(value);
   return status;
@@ -264,7 +243,7 @@ mho_status mho_sensitivity_compute(const mho_molecule *molecule, const mho_junct
     status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
   if (status == MHO_OK) status = differentiate(plan, molecule, junction->fermi_ev, result, error);
   if (status == MHO_OK)
-    status = estimate_error(molecule, junction->fermi_ev, options, result, error);
+    status = estimate_error(molecule, plan, junction->fermi_ev, options, result, error);
   if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
   mho_plan_free(plan);
   return status;

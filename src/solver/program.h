@@ -27,6 +27,7 @@ struct mho_program {
   mho_program_step *step;
   size_t steps;
   mho_program_load *load;
+  int (*between)[2]; /* [loads]: the sites of each number, equal on the diagonal */
   size_t loads;
   int *slot; /* a step's row slots, then a target for each pair; ~slot: new */
   size_t slots_listed;
