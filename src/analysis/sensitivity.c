@@ -9,6 +9,7 @@
 #include "analysis/perturb.h"
 #include "analysis/samples.h"
 #include "analysis/thermal.h"
+#include "solver/gradient_sum.h"
 
 #define LN_10 2.302585092994045684
 #define RADIANS_PER_DEGREE 0.017453292519943295769
@@ -93,8 +94,8 @@ static mho_status create_gradient(const mho_plan *plan, const mho_molecule *m,
   return status;
 }
 
-/* Share of the thermal average that each energy of the grid carries. */
-static bool thermal_shares(const mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
+/* Energies that carry the thermal average and the share of each, in place. */
+static size_t thermal_shares(mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
 {
   double total = 0;
   for (size_t i = 0; i < grid->count; i++) {
@@ -102,44 +103,42 @@ static bool thermal_shares(const mho_thermal_grid *grid, double fermi_ev, double
     share[i] = grid->weight_ev[i] * grid->value[i] * f / ((1 + f) * (1 + f));
     total += share[i];
   }
-  for (size_t i = 0; total > 0 && i < grid->count; i++) share[i] /= total;
-  return total > 0;
+  size_t kept = 0;
+  for (size_t i = 0; i < grid->count; i++) {
+    if (!(share[i] > WEIGHT_FLOOR * total)) continue;
+    grid->energy_ev[kept] = grid->energy_ev[i];
+    share[kept++] = share[i] / total;
+  }
+  return kept;
 }
 
-/* Adds share * dlog10T/dp at one energy to every row. */
-static mho_status add_energy(const mho_plan *plan, const mho_molecule *m, mho_gradient *g,
-                             double energy_ev, double share, mho_sensitivity *result,
-                             mho_error *error)
+static void set_rows(const mho_molecule *m, const mho_gradient *g, mho_sensitivity *result)
 {
-  mho_status status = mho_gradient_evaluate(plan, energy_ev, g, error);
-  if (status != MHO_OK || g->point.node) return status;
-  result->has_derivatives = true;
   for (size_t p = 0; p < result->count; p++)
-    result->row[p].derivative_log10_g0 += share * chain_rule(&result->row[p], m, g) / LN_10;
-  return MHO_OK;
+    result->row[p].derivative_log10_g0 = chain_rule(&result->row[p], m, g) / LN_10;
 }
 
 static mho_status differentiate(const mho_plan *plan, const mho_molecule *m, double fermi_ev,
                                 mho_sensitivity *result, mho_error *error)
 {
-  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k;
+  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k, one = 1, *share = NULL;
   mho_gradient *g;
+  mho_thermal_grid grid = {0};
   mho_status status = create_gradient(plan, m, &g, error);
-  if (status == MHO_OK && kt < MHO_COLD_EV)
-    status = add_energy(plan, m, g, fermi_ev, 1.0, result, error);
-  if (status != MHO_OK || kt < MHO_COLD_EV) {
-    mho_gradient_free(g);
-    return status;
+  if (status != MHO_OK) return status;
+  if (kt < MHO_COLD_EV) {
+    status = mho_gradient_sum(plan, 1, &fermi_ev, &one, g, &result->has_derivatives, error);
+  } else {
+    status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
+    if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
+      status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+    if (status == MHO_OK) {
+      size_t count = thermal_shares(&grid, fermi_ev, kt, share);
+      status = mho_gradient_sum(plan, count, grid.energy_ev, share, g, &result->has_derivatives,
+                                error);
+    }
   }
-  mho_thermal_grid grid;
-  double *share = NULL;
-  status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
-  if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
-    status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  bool any = status == MHO_OK && thermal_shares(&grid, fermi_ev, kt, share);
-  for (size_t i = 0; any && status == MHO_OK && i < grid.count; i++)
-    if (share[i] > WEIGHT_FLOOR)
-      status = add_energy(plan, m, g, grid.energy_ev[i], share[i], result, error);
+  if (status == MHO_OK && result->has_derivatives) set_rows(m, g, result);
   free(share);
   mho_thermal_grid_clear(&grid);
   mho_gradient_free(g);

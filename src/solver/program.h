@@ -50,6 +50,7 @@ void mho_program_free(mho_program *program);
  * needs: of a step 1/d, d and the row. */
 typedef struct {
   double *high, *low, *adjoint, *response, *tape;
+  double *gradient; /* NULL, or the caller's: dlnT/dnumber of every load, [loads][lanes] */
   bool broken[PROGRAM_LANES];   /* a pivot was too small for these digits */
   double kappa[PROGRAM_LANES];  /* sum of |p dlnT/dp| over H and E */
   double error[PROGRAM_LANES];  /* of ln T, from rounding in the elimination */
