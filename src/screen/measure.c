@@ -50,21 +50,20 @@ static mho_status measure_nodes(const mho_plan *plan, const mho_junction *juncti
   if (!junction->has_homo || !junction->has_lumo) return MHO_OK;
   if (junction->lead[MHO_LEFT].channels != 1 || junction->lead[MHO_RIGHT].channels != 1)
     return MHO_OK;
+  if (junction->lumo_ev <= junction->homo_ev) {
+    set(out, true, MHO_SCREEN_nodes, 0);
+    return MHO_OK;
+  }
   mho_nodes nodes;
-  mho_status status = mho_nodes_find(plan, &nodes, error);
-  int count = 0;
+  mho_status status =
+      mho_nodes_between(plan, junction->homo_ev, junction->lumo_ev, &nodes, error);
   double nearest = INFINITY;
   for (size_t k = 0; status == MHO_OK && k < nodes.count; k++) {
-    const mho_node *node = &nodes.node[k];
-    if (node->kind != MHO_NODE_EXACT || node->energy_ev <= junction->homo_ev ||
-        node->energy_ev >= junction->lumo_ev)
-      continue;
-    count++;
-    double distance = node->energy_ev - junction->fermi_ev;
+    double distance = nodes.node[k].energy_ev - junction->fermi_ev;
     if (fabs(distance) < fabs(nearest)) nearest = distance;
   }
-  set(out, status == MHO_OK && !nodes.everywhere, MHO_SCREEN_nodes, count);
-  set(out, count > 0, MHO_SCREEN_node_ev, nearest);
+  set(out, status == MHO_OK && !nodes.everywhere, MHO_SCREEN_nodes, (double)nodes.count);
+  set(out, nodes.count > 0, MHO_SCREEN_node_ev, nearest);
   mho_nodes_clear(&nodes);
   return status;
 }
