@@ -2,8 +2,7 @@
  *
  * The elimination of program_run.c in double-double after T. J. Dekker, Numer.
  * Math. 18, 224 (1971), products by fused multiply-add.  The way back is the same:
- * it wants the leading parts only.  Compiled without contraction, which would
- * spoil what makes the low parts exact.
+ * it wants the leading parts only.
  */
 #include "solver/program.h"
 #include "solver/processor.h"
@@ -12,6 +11,8 @@
 #include <stddef.h>
 
 enum { L = PROGRAM_LANES };
+
+#pragma GCC diagnostic ignored "-Wpsabi"
 
 typedef mho_vector vector;
 typedef mho_lanes lanes;
