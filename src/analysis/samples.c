@@ -27,12 +27,14 @@ enum { L = SAMPLER_LANES, SIX = 3, EIGHT = 4, HALVINGS = 5 };
 
 #define LN_10 2.302585092994045684
 
-/* Relative, of one conductance. */
+/* Relative, of one conductance; the two rules of Gauss differ by ten times what
+ * the better one errs. */
 #define TOLERANCE 1e-4
+#define GAUSS_DIFFERENCE 1e-3
 
 /* Trapezoid rule: reach and first step in kT. */
-#define REACH_KT 36.0
-#define STEP_KT 2.0
+#define REACH_KT 24.0
+#define STEP_KT 1.5
 
 /* Positive points in kT and weights for -df/dx = 1/(4 cosh^2(x/2)), from its
  * moments 2 (2k)! (1 - 2^(1-2k)) zeta(2k). */
@@ -199,7 +201,7 @@ static void average_gauss(drawer *d, double *average, bool *good)
       add_offset(d, &d->batch, side * eight[k][0], eight[k][1], average, broken);
   }
   for (int l = 0; l < L; l++)
-    good[l] = !broken[l] && fabs(few[l] - average[l]) <= TOLERANCE * average[l] && average[l] > 0;
+    good[l] = !broken[l] && fabs(few[l] - average[l]) <= GAUSS_DIFFERENCE * average[l] && average[l] > 0;
 }
 
 static void average_cold(drawer *d, double *average, bool *good)
@@ -210,40 +212,41 @@ static void average_cold(drawer *d, double *average, bool *good)
   for (int l = 0; l < L; l++) good[l] = !broken[l] && average[l] > 0;
 }
 
-/* Differences q and q^2 of two halvings leave an error of about their ratio
- * squared times the last. */
+/* A difference of q c leaves q^2 c after the next halving, of which only one or
+ * two are known: q is taken from both, or from c = 1. */
 static bool has_converged(double before, double last, double value)
 {
   if (!(value > 0)) return false;
-  double ratio = before > 0 ? fmin(last / before, 1) : 1;
-  return last * ratio * ratio <= TOLERANCE * value;
+  double q = isfinite(before) ? fmin(last / before, 1) : fmin(3 * last / value, 1);
+  return last * q <= TOLERANCE * value;
 }
 
 /* The trapezoid rule, halved until all lanes stand. */
 static void average_trapezoid(drawer *d, double *average, bool *good)
 {
-  double sum[L] = {0}, before[L], last[L];
+  double sum[L] = {0}, last[L];
   bool broken[L] = {false};
   double step = STEP_KT;
-  for (int l = 0; l < L; l++) before[l] = last[l] = average[l] = INFINITY;
-  for (int halving = 0; halving <= HALVINGS; halving++) {
+  for (int l = 0; l < L; l++) {
+    last[l] = average[l] = INFINITY;
+    good[l] = false;
+  }
+  for (int halving = 0; halving <= HALVINGS; halving++, step *= 0.5) {
     int stride = halving ? 2 : 1, from = halving ? 1 : 0, points = (int)(REACH_KT / step);
     for (int k = from; k <= points; k += stride)
       for (int side = k ? -1 : 1; side <= 1; side += 2) {
         double x = side * k * step, f = exp(-fabs(x));
         add_offset(d, &d->late, x, f / ((1 + f) * (1 + f)), sum, broken);
       }
-    bool all = halving >= 2;
+    bool all = true;
     for (int l = 0; l < L; l++) {
-      double value = step * sum[l];
-      before[l] = last[l];
+      double value = step * sum[l], before = last[l];
       last[l] = fabs(value - average[l]);
       average[l] = value;
-      good[l] = !broken[l] && halving >= 2 && has_converged(before[l], last[l], value);
+      good[l] = !broken[l] && has_converged(before, last[l], value);
       all = all && (good[l] || broken[l]);
     }
     if (all) return;
-    step *= 0.5;
   }
 }
 

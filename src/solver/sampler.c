@@ -11,7 +11,7 @@
 enum { L = SAMPLER_LANES, V = 8 };
 
 /* Pivots below this (times the norm) leave too few digits. */
-#define PIVOT 1e-6
+#define PIVOT 1e-9
 
 typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
 typedef long long bits __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
