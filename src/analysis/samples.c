@@ -110,6 +110,15 @@ static void fill_unmoved(drawer *d, double *beta)
     for (int l = 0; l < L; l++) d->cosine[b * L + l] = mho_cos_deg(m->bond[b].twist_deg);
 }
 
+FOR_EVERY_PROCESSOR
+static void turn(double twist_deg, const double *shift, double *cosine)
+{
+  for (int l = 0; l < L; l++) {
+    double turns = (twist_deg + shift[l]) / 360.0;
+    cosine[l] = cosine_of_turn(turns - floor(turns));
+  }
+}
+
 /* Moves one parameter of every lane; beta comes before what it multiplies, and
  * every site and bond has a row of its own. */
 static void move(drawer *d, const mho_sensitivity_row *row, const double *shift, double *beta)
@@ -146,8 +155,7 @@ static void move(drawer *d, const mho_sensitivity_row *row, const double *shift,
     for (int l = 0; l < L; l++) hopping[l] = m->bond[at].hopping_ev + shift[l];
     break;
   case MHO_PARAMETER_TWIST:
-    for (int l = 0; l < L; l++)
-      d->cosine[at * L + l] = mho_cos_deg(m->bond[at].twist_deg + shift[l]);
+    turn(m->bond[at].twist_deg, shift, d->cosine + at * L);
     break;
   }
 }
@@ -181,35 +189,36 @@ static void draw_batch(drawer *d, size_t first, double *linear, size_t lanes)
 
 /* --- thermal averages ------------------------------------------------------- */
 
-static void add_offset(drawer *d, const mho_sample_batch *batch, double kt, double weight,
-                       double *sum, bool *broken)
+/* Both sides of the Fermi level; NaN beyond the lanes that count does no harm. */
+static void add_offset(drawer *d, const mho_sample_batch *batch, int lanes, double kt,
+                       double weight, double *sum, bool *broken)
 {
   double transmission[L];
-  mho_sampler_evaluate(&d->sampler, batch, kt * d->kt_ev, transmission, broken);
-  for (int l = 0; l < L; l++) sum[l] += weight * transmission[l];
+  mho_sampler_evaluate(&d->sampler, batch, lanes, kt * d->kt_ev, transmission, broken);
+  for (int l = 0; l < lanes; l++) sum[l] += weight * transmission[l];
 }
 
 /* Both rules by Gauss; good where they agree. */
-static void average_gauss(drawer *d, double *average, bool *good)
+static void average_gauss(drawer *d, int lanes, double *average, bool *good)
 {
   double few[L] = {0};
   bool broken[L] = {false};
   memset(average, 0, L * sizeof *average);
-  for (int side = -1; side <= 1; side += 2) {
-    for (int k = 0; k < SIX; k++) add_offset(d, &d->batch, side * six[k][0], six[k][1], few, broken);
-    for (int k = 0; k < EIGHT; k++)
-      add_offset(d, &d->batch, side * eight[k][0], eight[k][1], average, broken);
-  }
-  for (int l = 0; l < L; l++)
-    good[l] = !broken[l] && fabs(few[l] - average[l]) <= GAUSS_DIFFERENCE * average[l] && average[l] > 0;
+  for (int k = 0; k < SIX; k++)
+    add_offset(d, &d->batch, lanes, six[k][0], six[k][1], few, broken);
+  for (int k = 0; k < EIGHT; k++)
+    add_offset(d, &d->batch, lanes, eight[k][0], eight[k][1], average, broken);
+  for (int l = 0; l < lanes; l++)
+    good[l] = !broken[l] && fabs(few[l] - average[l]) <= GAUSS_DIFFERENCE * average[l] &&
+              average[l] > 0;
 }
 
-static void average_cold(drawer *d, double *average, bool *good)
+static void average_cold(drawer *d, int lanes, double *average, bool *good)
 {
   bool broken[L] = {false};
   memset(average, 0, L * sizeof *average);
-  add_offset(d, &d->batch, 0, 1, average, broken);
-  for (int l = 0; l < L; l++) good[l] = !broken[l] && average[l] > 0;
+  add_offset(d, &d->batch, lanes, 0, 0.5, average, broken);
+  for (int l = 0; l < lanes; l++) good[l] = !broken[l] && average[l] > 0;
 }
 
 /* A difference of q c leaves q^2 c after the next halving, of which only one or
@@ -233,13 +242,12 @@ static void average_trapezoid(drawer *d, double *average, bool *good)
   }
   for (int halving = 0; halving <= HALVINGS; halving++, step *= 0.5) {
     int stride = halving ? 2 : 1, from = halving ? 1 : 0, points = (int)(REACH_KT / step);
-    for (int k = from; k <= points; k += stride)
-      for (int side = k ? -1 : 1; side <= 1; side += 2) {
-        double x = side * k * step, f = exp(-fabs(x));
-        add_offset(d, &d->late, x, f / ((1 + f) * (1 + f)), sum, broken);
-      }
+    for (int k = from; k <= points; k += stride) {
+      double f = exp(-k * step), weight = f / ((1 + f) * (1 + f));
+      add_offset(d, &d->late, d->late_count, k * step, k ? weight : 0.5 * weight, sum, broken);
+    }
     bool all = true;
-    for (int l = 0; l < L; l++) {
+    for (int l = 0; l < d->late_count; l++) {
       double value = step * sum[l], before = last[l];
       last[l] = fabs(value - average[l]);
       average[l] = value;
@@ -291,16 +299,14 @@ static void copy_lane(const double *from, int lane, double *to, int at, size_t n
   for (size_t k = 0; k < numbers; k++) to[k * L + (size_t)at] = from[k * L + (size_t)lane];
 }
 
-/* A lane joins those that wait; all lanes hold it until others follow. */
+/* A lane joins those that wait. */
 static mho_status put_off(drawer *d, int lane, size_t index, double *linear)
 {
-  int first = d->late_count, end = first ? first + 1 : L;
-  for (int at = first; at < end; at++) {
-    copy_lane(d->batch.value, lane, d->late.value, at, d->sampler.plan->program->loads);
-    copy_lane(d->batch.coupling, lane, d->late.coupling, at, (size_t)d->sampler.plan->channels);
-    d->late.energy_ev[at] = d->batch.energy_ev[lane];
-  }
-  d->late_index[d->late_count++] = index;
+  int at = d->late_count++;
+  copy_lane(d->batch.value, lane, d->late.value, at, d->sampler.plan->program->loads);
+  copy_lane(d->batch.coupling, lane, d->late.coupling, at, (size_t)d->sampler.plan->channels);
+  d->late.energy_ev[at] = d->batch.energy_ev[lane];
+  d->late_index[at] = index;
   return d->late_count == L ? settle_late(d, linear) : MHO_OK;
 }
 
@@ -313,8 +319,8 @@ static mho_status draw_lanes(drawer *d, size_t first, size_t end, double *linear
     double average[L];
     bool good[L];
     draw_batch(d, i, linear, lanes);
-    if (cold) average_cold(d, average, good);
-    else average_gauss(d, average, good);
+    if (cold) average_cold(d, (int)lanes, average, good);
+    else average_gauss(d, (int)lanes, average, good);
     for (size_t l = 0; status == MHO_OK && l < lanes; l++)
       if (good[l]) d->log10_g0[i + l] = log10(average[l]);
       else status = cold ? draw_alone(d, i + l, linear) : put_off(d, (int)l, i + l, linear);

@@ -20,7 +20,7 @@ typedef struct {
 
 typedef struct {
   const mho_plan *plan;
-  double *slot;                    /* [slots][lanes] */
+  double *slot;                    /* [slots][2][lanes] */
   mho_plan contacts;               /* of one lane */
   double *coupling;                /* [channels], its */
   mho_elimination_double *reduced; /* NULL for one site a contact */
@@ -37,9 +37,10 @@ void mho_sampler_clear(mho_sampler *sampler);
 MHO_MUST_USE mho_status mho_sample_batch_init(const mho_plan *plan, mho_sample_batch *batch);
 void mho_sample_batch_clear(mho_sample_batch *batch);
 
-/* T at energy_ev + offset_ev of every lane; broken[lane] is set (never unset)
- * where a pivot left fewer than eight digits or so. */
-void mho_sampler_evaluate(mho_sampler *sampler, const mho_sample_batch *batch, double offset_ev,
-                          double *transmission, bool *broken);
+/* T(energy_ev - offset_ev) + T(energy_ev + offset_ev) of the first `lanes` lanes
+ * (or a few more); broken[lane] is set (never unset) where a pivot left fewer
+ * than seven digits or so. */
+void mho_sampler_evaluate(mho_sampler *sampler, const mho_sample_batch *batch, int lanes,
+                          double offset_ev, double *transmission, bool *broken);
 
 #endif
