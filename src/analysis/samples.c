@@ -20,7 +20,6 @@
 #include "base/random.h"
 #include "solver/logarithm.h"
 #include "solver/processor.h"
-#include "solver/program.h"
 #include "solver/sampler.h"
 
 enum { L = SAMPLER_LANES, SIX = 3, EIGHT = 4, HALVINGS = 5 };
@@ -56,7 +55,7 @@ typedef struct {
   mho_sample_batch batch, late; /* late: those that need the trapezoid rule */
   size_t late_index[L];
   int late_count;
-  int *load_of_site, *load_of_bond; /* which number of the batch each one is */
+  int *slot_of_bond; /* which number of the batch each one is; a site's is its own */
   double *onsite, *hopping, *cosine; /* [sites], [bonds], [bonds] of [L] */
   double *log10_g0;
   mho_error *error;
@@ -177,13 +176,11 @@ static void draw_batch(drawer *d, size_t first, double *linear, size_t lanes)
     }
     move(d, &d->row[p], shift, beta);
   }
-  memset(d->batch.value, 0, d->sampler.plan->program->loads * L * sizeof(double));
-  for (int i = 0; i < m->site_count; i++)
-    for (int l = 0; l < L; l++)
-      d->batch.value[d->load_of_site[i] * L + l] = d->onsite[i * L + l];
+  memset(d->batch.value_ev, 0, (size_t)d->sampler.reduction->slots * L * sizeof(double));
+  memcpy(d->batch.value_ev, d->onsite, (size_t)m->site_count * L * sizeof(double));
   for (int b = 0; b < m->bond_count; b++)
     for (int l = 0; l < L; l++)
-      d->batch.value[d->load_of_bond[b] * L + l] += d->hopping[b * L + l] * d->cosine[b * L + l];
+      d->batch.value_ev[d->slot_of_bond[b] * L + l] += d->hopping[b * L + l] * d->cosine[b * L + l];
   for (size_t l = 0; l < lanes; l++) linear[first + l] = sum[l];
 }
 
@@ -303,7 +300,7 @@ static void copy_lane(const double *from, int lane, double *to, int at, size_t n
 static mho_status put_off(drawer *d, int lane, size_t index, double *linear)
 {
   int at = d->late_count++;
-  copy_lane(d->batch.value, lane, d->late.value, at, d->sampler.plan->program->loads);
+  copy_lane(d->batch.value_ev, lane, d->late.value_ev, at, (size_t)d->sampler.reduction->slots);
   copy_lane(d->batch.coupling, lane, d->late.coupling, at, (size_t)d->sampler.plan->channels);
   d->late.energy_ev[at] = d->batch.energy_ev[lane];
   d->late_index[at] = index;
@@ -330,23 +327,15 @@ static mho_status draw_lanes(drawer *d, size_t first, size_t end, double *linear
 
 /* --- all ---------------------------------------------------------------------- */
 
-/* Which number of the plan's program is which site and bond; false where some
- * bond has none, as its hopping is zero. */
-static bool find_loads(drawer *d)
+/* False where some bond has no number, as its hopping is zero. */
+static bool find_bonds(drawer *d)
 {
   const mho_molecule *m = d->molecule;
-  const mho_program *program = d->sampler.plan->program;
-  for (int b = 0; b < m->bond_count; b++) d->load_of_bond[b] = -1;
-  for (size_t k = 0; k < program->loads; k++) {
-    int i = program->between[k][0], j = program->between[k][1];
-    if (i == j) d->load_of_site[i] = (int)k;
-    for (int b = 0; i != j && b < m->bond_count; b++) {
-      const int *end = m->bond[b].site;
-      if ((end[0] == i && end[1] == j) || (end[0] == j && end[1] == i)) d->load_of_bond[b] = (int)k;
-    }
+  for (int b = 0; b < m->bond_count; b++) {
+    const int *end = m->bond[b].site;
+    d->slot_of_bond[b] = mho_reduction_find(d->sampler.reduction, end[0], end[1]);
+    if (d->slot_of_bond[b] < 0 || mho_molecule_hopping_ev(m, b) == 0) return false;
   }
-  for (int b = 0; b < m->bond_count; b++)
-    if (d->load_of_bond[b] < 0) return false;
   return true;
 }
 
@@ -355,7 +344,7 @@ static void clear(drawer *d)
   mho_sampler_clear(&d->sampler);
   mho_sample_batch_clear(&d->batch);
   mho_sample_batch_clear(&d->late);
-  free(d->load_of_site);
+  free(d->slot_of_bond);
   free(d->onsite);
 }
 
@@ -363,13 +352,13 @@ static mho_status init(drawer *d, const mho_plan *plan)
 {
   size_t sites = (size_t)d->molecule->site_count, bonds = (size_t)d->molecule->bond_count;
   mho_status status = mho_sampler_init(plan, &d->sampler);
-  if (status == MHO_OK) status = mho_sample_batch_init(plan, &d->batch);
-  if (status == MHO_OK) status = mho_sample_batch_init(plan, &d->late);
-  d->load_of_site = malloc((sites + bonds + 1) * sizeof(int));
+  if (status == MHO_OK && !d->sampler.reduction) return MHO_OK;
+  if (status == MHO_OK) status = mho_sample_batch_init(&d->sampler, &d->batch);
+  if (status == MHO_OK) status = mho_sample_batch_init(&d->sampler, &d->late);
+  d->slot_of_bond = malloc((bonds + 1) * sizeof(int));
   d->onsite = malloc((sites + 2 * bonds + 1) * L * sizeof(double));
-  if (status != MHO_OK || !d->load_of_site || !d->onsite)
+  if (status != MHO_OK || !d->slot_of_bond || !d->onsite)
     return mho_fail(d->error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  d->load_of_bond = d->load_of_site + sites;
   d->hopping = d->onsite + sites * L;
   d->cosine = d->hopping + bonds * L;
   return MHO_OK;
@@ -388,12 +377,11 @@ mho_status mho_samples_draw(const mho_molecule *molecule, const mho_plan *plan, 
               .seed = seed,
               .log10_g0 = value,
               .error = error};
-  mho_status status = MHO_OK;
-  bool serves = mho_sampler_serves(plan), never = !plan->connected;
+  bool never = !plan->connected;
   for (int b = 0; b < molecule->bond_count; b++)
     never = never && mho_molecule_hopping_ev(molecule, b) != 0;
-  if (serves) status = init(&d, plan);
-  if (serves && status == MHO_OK && find_loads(&d))
+  mho_status status = init(&d, plan);
+  if (status == MHO_OK && d.sampler.reduction && find_bonds(&d))
     status = draw_lanes(&d, first, end, linear);
   else
     for (size_t i = first; status == MHO_OK && i < end; i++)
