@@ -18,7 +18,6 @@ enum { UPDATES_A_SITE = 600 };
 typedef struct {
   int site, slot; /* slot < 0: still in H only */
   int roundings;  /* of the number so far; -1: fill, whose first is exact */
-  int load;       /* which brought it, or -1 */
   double value;   /* of H */
 } link;
 
@@ -32,11 +31,11 @@ typedef struct {
   mho_program *program;
   row *row; /* [sites], without the diagonal */
   double *diagonal;
-  int *diagonal_slot, *diagonal_roundings, *diagonal_load;
+  int *diagonal_slot, *diagonal_roundings;
   bool *kept, *gone;
   int *winner, leaves; /* [2 leaves]: tournament for the fewest neighbours */
   int *free_slot, free_slots, slot_capacity;
-  size_t step_room, load_room, between_room, slot_room, member_room, updates;
+  size_t step_room, load_room, slot_room, member_room, updates;
   bool failed; /* out of memory */
 } compiler;
 
@@ -72,7 +71,7 @@ static link *add_link(compiler *c, int from, int to, int slot, double value)
     r->link = moved;
     r->capacity = capacity;
   }
-  r->link[r->count] = (link){to, slot, slot < 0 ? 0 : -1, -1, value};
+  r->link[r->count] = (link){to, slot, slot < 0 ? 0 : -1, value};
   return &r->link[r->count++];
 }
 
@@ -98,19 +97,12 @@ static int take_slot(compiler *c)
   return c->program->slots++;
 }
 
-/* The number between two sites; of one site, its diagonal. */
-static int emit_load(compiler *c, int i, int j, double value)
+static int emit_load(compiler *c, int site, double value)
 {
   mho_program *p = c->program;
   int slot = take_slot(c);
-  if (!grow((void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load) ||
-      !grow((void **)&p->between, &c->between_room, p->loads + 1, sizeof *p->between)) {
-    c->failed = true;
-    return slot;
-  }
-  p->between[p->loads][0] = i;
-  p->between[p->loads][1] = j;
-  p->load[p->loads++] = (mho_program_load){slot, i == j ? i : -1, value};
+  if (!grow((void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load)) c->failed = true;
+  else p->load[p->loads++] = (mho_program_load){slot, site, value};
   return slot;
 }
 
@@ -122,20 +114,22 @@ static void emit_slot(compiler *c, int slot)
   else p->slot[p->slots_listed++] = slot;
 }
 
-static void emit_member(compiler *c, double value_ev, int load)
+static mho_program_member *emit_member(compiler *c, double value_ev)
 {
   mho_program *p = c->program;
-  if (!grow((void **)&p->member, &c->member_room, p->members + 1, sizeof *p->member))
+  if (!grow((void **)&p->member, &c->member_room, p->members + 1, sizeof *p->member)) {
     c->failed = true;
-  else p->member[p->members++] = (mho_program_member){value_ev, 0, load};
+    return NULL;
+  }
+  p->member[p->members] = (mho_program_member){value_ev, 0};
+  return &p->member[p->members++];
 }
 
 /* E - h is rounded once, unless h is zero. */
 static int diagonal_slot(compiler *c, int site)
 {
   if (c->diagonal_slot[site] < 0) {
-    c->diagonal_slot[site] = emit_load(c, site, site, c->diagonal[site]);
-    c->diagonal_load[site] = (int)c->program->loads - 1;
+    c->diagonal_slot[site] = emit_load(c, site, c->diagonal[site]);
     c->diagonal_roundings[site] = c->diagonal[site] != 0;
   }
   return c->diagonal_slot[site];
@@ -147,9 +141,8 @@ static int pair_slot(compiler *c, int i, int j)
   link *here = find_link(&c->row[i], j);
   if (!here) return -1;
   if (here->slot < 0) {
-    link *there = find_link(&c->row[j], i);
-    here->slot = there->slot = emit_load(c, i, j, here->value);
-    here->load = there->load = (int)c->program->loads - 1;
+    here->slot = emit_load(c, -1, here->value);
+    find_link(&c->row[j], i)->slot = here->slot;
   }
   return here->slot;
 }
@@ -209,8 +202,8 @@ static void eliminate(compiler *c, int site)
   row *r = &c->row[site];
   size_t loads = p->loads, member = p->members;
   int pivot = diagonal_slot(c, site), count = r->count, most = emit_row(c, site);
-  emit_member(c, c->diagonal[site], c->diagonal_load[site]);
-  for (int a = 0; a < count; a++) emit_member(c, r->link[a].value, r->link[a].load);
+  emit_member(c, c->diagonal[site]);
+  for (int a = 0; a < count; a++) emit_member(c, r->link[a].value);
   if (!grow((void **)&p->step, &c->step_room, p->steps + 1, sizeof *p->step)) c->failed = true;
   if (c->failed) return;
   p->member[member].weight = most + 0.5 * c->diagonal_roundings[site];
@@ -280,13 +273,8 @@ static void eliminate_all(compiler *c)
       p->kept_slot[a][b] = p->kept_slot[b][a] =
           i == j ? diagonal_slot(c, i) : pair_slot(c, i, j);
       const link *pair = find_link(&c->row[i], j);
-      if (i == j)
-        p->kept_member[a][b] = (mho_program_member){c->diagonal[i], c->diagonal_roundings[i],
-                                                    c->diagonal_load[i]};
-      else if (pair)
-        p->kept_member[a][b] = (mho_program_member){
-            pair->value, pair->roundings > 0 ? pair->roundings : 0, pair->load};
-      else p->kept_member[a][b] = (mho_program_member){0, 0, -1};
+      p->kept_value_ev[a][b] = i == j ? c->diagonal[i] : pair ? pair->value : 0;
+      p->kept_roundings[a][b] = i == j ? c->diagonal_roundings[i] : pair && pair->roundings > 0 ? pair->roundings : 0;
     }
   p->tail_loads = (int)(p->loads - before);
 }
@@ -297,12 +285,11 @@ static bool start(compiler *c)
   size_t n = (size_t)plan->sites;
   c->row = calloc(n, sizeof *c->row);
   c->diagonal = calloc(n, sizeof(double));
-  c->diagonal_slot = calloc(3 * n, sizeof(int));
+  c->diagonal_slot = calloc(2 * n, sizeof(int));
   c->kept = calloc(2 * n, sizeof(bool));
   if (!c->row || !c->diagonal || !c->diagonal_slot || !c->kept) return false;
   c->gone = c->kept + n;
   c->diagonal_roundings = c->diagonal_slot + n;
-  c->diagonal_load = c->diagonal_slot + 2 * n;
   for (size_t i = 0; i < n; i++) c->diagonal_slot[i] = -1;
   for (size_t e = 0; e < plan->entries && !c->failed; e++) {
     int i = plan->entry[e].i, j = plan->entry[e].j;
@@ -365,7 +352,6 @@ void mho_program_free(mho_program *program)
   if (!program) return;
   free(program->step);
   free(program->load);
-  free(program->between);
   free(program->slot);
   free(program->member);
   free(program);

@@ -23,18 +23,16 @@ typedef struct {
   int loads, row, pivot; /* numbers of loads and of row entries; slot of d */
 } mho_program_step;
 
-/* A number of a row: H, zero where it is fill, how its roundings weigh in the
- * bound (program_run.c), and which load brought it, or -1. */
+/* A number of a row: H, zero where it is fill, and how its roundings weigh in
+ * the bound (program_run.c). */
 typedef struct {
   double value_ev, weight;
-  int load;
 } mho_program_member;
 
 struct mho_program {
   mho_program_step *step;
   size_t steps;
   mho_program_load *load;
-  int (*between)[2]; /* [loads]: the sites of each number, equal on the diagonal */
   size_t loads;
   int *slot; /* a step's row, the diagonals of the row's sites, then a target for
               * each pair; ~slot: new */
@@ -45,7 +43,8 @@ struct mho_program {
   int kept;  /* sites of the contacts */
   int kept_site[PROGRAM_KEPT_MAX];
   int kept_slot[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
-  mho_program_member kept_member[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX]; /* weight: roundings */
+  int kept_roundings[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
+  double kept_value_ev[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
   int tail_loads; /* that no pivot asked for */
   size_t taped;   /* numbers a lane puts on the tape */
 };
@@ -69,7 +68,6 @@ typedef struct {
  * keeps what the way back needs: of a step 1/d and the row. */
 typedef struct {
   double *high, *low, *response, *tape;
-  double *gradient; /* NULL, or the caller's: dlnT/dnumber of every load, [loads][lanes] */
   double adjoint[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * PROGRAM_LANES];
   mho_program_pair pair; /* if the plan is one of a pair */
   bool broken[PROGRAM_LANES];   /* a pivot was too small for these digits */
@@ -90,8 +88,7 @@ void mho_program_forward_extended(const mho_program *program, const double *ener
                                   double norm_ev, mho_program_trace *trace);
 
 /* From the adjoints of the Schur complement to the error and, if asked for,
- * kappa (and the gradient, if there is one); roundoff is that of the numbers'
- * subtraction.  `pair`: trace->pair is set. */
+ * kappa; roundoff is that of the numbers' subtraction.  `pair`: trace->pair is set. */
 void mho_program_backward(const mho_program *program, const double *energy_ev, bool pair,
                           double roundoff, bool with_kappa, mho_program_trace *trace);
 

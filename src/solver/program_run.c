@@ -178,17 +178,9 @@ INLINED vector form(int kept, bool pair, const gathered *all, int v, const lanes
   return sum;
 }
 
-/* A number's share of kappa, and its place in the gradient. */
-INLINED void weigh(const mho_program_member *member, vector hat, int v,
-                   const mho_program_trace *trace, gathered *all)
-{
-  AT(all->kappa, v) += ABSOLUTE(hat) * fabs(member->value_ev);
-  if (trace->gradient) AT(trace->gradient + (ptrdiff_t)member->load * L, v) = hat;
-}
-
 /* The step's share of kappa, from r of its site. */
 INLINED void weigh_step(int row, int kept, const int *diagonal, const mho_program_member *member,
-                        const mho_program_trace *trace, const lanes *r, gathered *all)
+                        const double *response, const lanes *r, gathered *all)
 {
   lanes u[PROGRAM_KEPT_MAX];
   EACH_VECTOR(v)
@@ -201,16 +193,17 @@ INLINED void weigh_step(int row, int kept, const int *diagonal, const mho_progra
       hat += u[c].of[v] * r[c].of[v];
     }
     AT(all->total, v) += 0.5 * hat;
-    weigh(member, 0.5 * hat, v, trace, all);
+    AT(all->kappa, v) += ABSOLUTE(hat) * (0.5 * fabs(member[0].value_ev));
   }
   for (int i = 0; i < row; i++) {
-    const double *other = trace->response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
-    if (member[1 + i].load < 0) continue;
+    double value_ev = fabs(member[1 + i].value_ev);
+    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
+    if (value_ev == 0) continue;
     EACH_VECTOR(v)
     {
       vector hat = u[0].of[v] * AT(other, v);
       for (int c = 1; c < kept; c++) hat += u[c].of[v] * AT(other + c * L, v);
-      weigh(&member[1 + i], hat, v, trace, all);
+      AT(all->kappa, v) += ABSOLUTE(hat) * value_ev;
     }
   }
 }
@@ -249,7 +242,7 @@ INLINED void return_step(int row, int kept, bool pair, bool with_kappa,
     AT(all->error, v) += ABSOLUTE(w) * form(kept, pair, all, v, weighted, size) +
                          member[0].weight * form(kept, pair, all, v, n, size);
   }
-  if (with_kappa) weigh_step(row, kept, diagonal, member, trace, r, all);
+  if (with_kappa) weigh_step(row, kept, diagonal, member, response, r, all);
 }
 
 /* Q and the kept sites' answers to themselves alone. */
@@ -291,11 +284,9 @@ INLINED void finish_back(int kept, bool pair, const mho_program *program,
         int at = program->kept_slot[a][b];
         if (at < 0) continue;
         double hat = trace->adjoint[(a * kept + b) * L + l];
-        const mho_program_member *member = &program->kept_member[a][b];
-        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * member->weight;
-        all->kappa[l] += fabs(hat * member->value_ev);
+        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * program->kept_roundings[a][b];
+        all->kappa[l] += fabs(hat * program->kept_value_ev[a][b]);
         if (a == b) all->total[l] += hat;
-        if (trace->gradient && member->load >= 0) trace->gradient[member->load * L + l] = hat;
       }
     trace->error[l] = roundoff * error;
     trace->kappa[l] = all->kappa[l] + fabs(all->total[l] * energy_ev[l]);
