@@ -42,6 +42,7 @@ struct mho_plan {
   double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
   mho_pole_pair *pair;            /* [sites], the same for one channel a contact */
+  struct mho_repeat *repeat;      /* NULL: not a run of equal units */
   struct mho_program *program;    /* NULL: does not pay */
   mho_plan *contacts;             /* of the program's kept sites */
   mho_method first;               /* methods before it are left out (tests) */
@@ -89,6 +90,7 @@ void mho_spare_free(mho_plan *plan);
  * workspace belongs to one thread; create returns NULL without memory.
  * differentiate follows an evaluate that found T, fills all derivatives and
  * returns an estimate of the error of the sum of all p dlnT/dp. */
+typedef struct mho_repeat mho_repeat;
 typedef struct mho_program mho_program;
 typedef struct mho_elimination_double mho_elimination_double;
 typedef struct mho_elimination_quad mho_elimination_quad;

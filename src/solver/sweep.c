@@ -9,6 +9,7 @@
 #include "solver/logarithm.h"
 #include "solver/plan.h"
 #include "solver/program.h"
+#include "solver/repeat.h"
 #include "solver/spectrum.h"
 
 /* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
@@ -36,7 +37,7 @@ typedef struct {
 /* What one thread needs besides the plan; all but the queues only on demand. */
 typedef struct {
   mho_elimination_double *plain, *reduced;
-  mho_elimination_quad *extended, *reduced_extended;
+  mho_elimination_quad *extended, *reduced_extended, *repeated;
   mho_program_trace trace;
   queue queue[2]; /* for the program in double, and in double-double */
 } workspace;
@@ -52,6 +53,7 @@ static void workspace_free(workspace *work)
   mho_elimination_free_double(work->reduced);
   mho_elimination_free_quad(work->extended);
   mho_elimination_free_quad(work->reduced_extended);
+  mho_elimination_free_quad(work->repeated);
   mho_program_trace_clear(&work->trace);
   free(work);
 }
@@ -267,33 +269,40 @@ static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point
   return status == MHO_OK ? run_program(plan, work, true, point) : status;
 }
 
-/* Takes an estimate of the sum over levels if it is good. */
+/* Takes an estimate if it is good. */
 static mho_status take_or_pass(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
-                               double energy_ev, size_t index, mho_point *point)
+                               mho_method method, double energy_ev, size_t index, mho_point *point)
 {
   if (!keeps_contract(estimate)) return pass_on(plan, work, false, energy_ev, index, point);
-  set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
+  set_point(plan, estimate, method, &point[index]);
   return MHO_OK;
 }
 
-/* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
+/* The first method for energies first .. first + count - 1, at most SPECTRUM_LANES. */
 static mho_status evaluate(const mho_plan *plan, workspace *work, const double *energy_ev,
                            size_t first, size_t count, mho_point *point)
 {
   mho_estimate estimate[SPECTRUM_LANES];
   double lane[SPECTRUM_LANES];
-  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
+  bool repeat = plan->repeat && plan->first <= MHO_METHOD_REPEAT;
+  bool levels = !repeat && plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
                 (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
   bool pair = plan->left == 1 && plan->right == 1;
+  if (repeat && !work->repeated) work->repeated = mho_elimination_create_quad(plan->repeat->plan);
+  if (repeat && !work->repeated) return MHO_ERR_MEMORY;
   for (size_t l = 0; l < SPECTRUM_LANES; l++) {
     lane[l] = energy_ev[first + (l < count ? l : 0)];
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
+    if (l >= count) continue;
+    if (repeat) mho_repeat_evaluate(plan->repeat, work->repeated, lane[l], &estimate[l]);
+    else if (levels && !pair) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
   }
   if (levels && pair) mho_spectrum_evaluate_pair(plan, lane, estimate);
   mho_status status = MHO_OK;
   for (size_t l = 0; status == MHO_OK && l < count; l++)
-    status = take_or_pass(plan, work, &estimate[l], lane[l], first + l, point);
+    status = take_or_pass(plan, work, &estimate[l],
+                          repeat ? MHO_METHOD_REPEAT : MHO_METHOD_SPECTRUM, lane[l], first + l,
+                          point);
   return status;
 }
 
@@ -361,6 +370,7 @@ const char *mho_method_name(mho_method method)
   static const char *const name[MHO_METHOD_COUNT] = {
       [MHO_METHOD_NO_PATH] = "no path joins the contacts",
       [MHO_METHOD_SPECTRUM] = "sum over levels",
+      [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_SPARSE] = "compiled sparse elimination",
       [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
       [MHO_METHOD_ELIMINATION] = "pivoted elimination",
