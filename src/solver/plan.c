@@ -13,9 +13,9 @@
 #include "solver/program.h"
 #include "solver/repeat.h"
 
-/* Smaller molecules are as fast without a compiled elimination; longer ones of
- * equal units would seldom use it. */
-enum { PROGRAM_SITES_MIN = 4, REPEAT_ALONE = 3000 };
+/* Smaller molecules are as fast without a compiled elimination, and longer ones of
+ * equal units faster. */
+enum { PROGRAM_SITES_MIN = 4, REPEAT_ALONE = 20000 };
 
 static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
 {

@@ -8,7 +8,7 @@
 
 #include "solver/plan.h"
 
-enum { REPEAT_UNIT_MAX = 64, REPEAT_REST_MAX = 16 };
+enum { REPEAT_UNIT_MAX = 64, REPEAT_REST_MAX = 24 };
 
 /* E - H of `units` equal units is taken as that of two sites, numbers rest and
  * rest + 1 of the plan of what is left. */

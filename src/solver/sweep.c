@@ -196,11 +196,21 @@ static void weigh_lanes(const mho_plan *plan, workspace *work, const queue *wait
   for (size_t l = 0; l < wait->lanes; l++) estimate[l].kappa = trace->kappa[l];
 }
 
-/* One energy by pivoted elimination, in double and then in 113 bits. */
+/* One energy by doubling of units if there are any, then by pivoted elimination in
+ * double and in 113 bits. */
 static mho_status eliminate(const mho_plan *plan, workspace *work, double energy_ev,
                             mho_point *point)
 {
   mho_estimate estimate;
+  if (plan->repeat && plan->first <= MHO_METHOD_REPEAT) {
+    if (!work->repeated) work->repeated = mho_elimination_create_quad(plan->repeat->plan);
+    if (!work->repeated) return MHO_ERR_MEMORY;
+    mho_repeat_evaluate(plan->repeat, work->repeated, energy_ev, &estimate);
+    if (keeps_contract(&estimate)) {
+      set_point(plan, &estimate, MHO_METHOD_REPEAT, point);
+      return MHO_OK;
+    }
+  }
   if (plan->first <= MHO_METHOD_ELIMINATION) {
     if (!work->plain) work->plain = mho_elimination_create_double(plan);
     if (!work->plain) return MHO_ERR_MEMORY;
@@ -269,40 +279,33 @@ static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point
   return status == MHO_OK ? run_program(plan, work, true, point) : status;
 }
 
-/* Takes an estimate if it is good. */
+/* Takes an estimate of the sum over levels if it is good. */
 static mho_status take_or_pass(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
-                               mho_method method, double energy_ev, size_t index, mho_point *point)
+                               double energy_ev, size_t index, mho_point *point)
 {
   if (!keeps_contract(estimate)) return pass_on(plan, work, false, energy_ev, index, point);
-  set_point(plan, estimate, method, &point[index]);
+  set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
   return MHO_OK;
 }
 
-/* The first method for energies first .. first + count - 1, at most SPECTRUM_LANES. */
+/* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
 static mho_status evaluate(const mho_plan *plan, workspace *work, const double *energy_ev,
                            size_t first, size_t count, mho_point *point)
 {
   mho_estimate estimate[SPECTRUM_LANES];
   double lane[SPECTRUM_LANES];
-  bool repeat = plan->repeat && plan->first <= MHO_METHOD_REPEAT;
-  bool levels = !repeat && plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
+  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
                 (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
   bool pair = plan->left == 1 && plan->right == 1;
-  if (repeat && !work->repeated) work->repeated = mho_elimination_create_quad(plan->repeat->plan);
-  if (repeat && !work->repeated) return MHO_ERR_MEMORY;
   for (size_t l = 0; l < SPECTRUM_LANES; l++) {
     lane[l] = energy_ev[first + (l < count ? l : 0)];
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (l >= count) continue;
-    if (repeat) mho_repeat_evaluate(plan->repeat, work->repeated, lane[l], &estimate[l]);
-    else if (levels && !pair) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
+    if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
   }
   if (levels && pair) mho_spectrum_evaluate_pair(plan, lane, estimate);
   mho_status status = MHO_OK;
   for (size_t l = 0; status == MHO_OK && l < count; l++)
-    status = take_or_pass(plan, work, &estimate[l],
-                          repeat ? MHO_METHOD_REPEAT : MHO_METHOD_SPECTRUM, lane[l], first + l,
-                          point);
+    status = take_or_pass(plan, work, &estimate[l], lane[l], first + l, point);
   return status;
 }
 
@@ -370,9 +373,9 @@ const char *mho_method_name(mho_method method)
   static const char *const name[MHO_METHOD_COUNT] = {
       [MHO_METHOD_NO_PATH] = "no path joins the contacts",
       [MHO_METHOD_SPECTRUM] = "sum over levels",
-      [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_SPARSE] = "compiled sparse elimination",
       [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_ELIMINATION] = "pivoted elimination",
       [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};
   return method >= 0 && method < MHO_METHOD_COUNT ? name[method] : "unknown";

@@ -162,7 +162,7 @@ static void equal_units_are_doubled(void **state)
     assert_non_null(plan->repeat);
     for (int k = 0; k < 10; k++) {
       double energy = k == 0 ? 0 : k == 1 ? BETA : 12 * uniform() - 6;
-      plan->first = MHO_METHOD_NO_PATH;
+      plan->first = MHO_METHOD_REPEAT;
       mho_point point = at(plan, energy);
       plan->first = MHO_METHOD_EXTENDED;
       mho_point exact = at(plan, energy);
