@@ -40,7 +40,8 @@ typedef struct {
   size_t stride;   /* sites, filled up to a multiple of V */
   double *row;     /* orbitals by site: [site][level] */
   double *level;   /* [stride] */
-  double *weighted; /* [stride]: a row over E - level */
+  double *inverse;  /* [stride]: 1/(E - level) */
+  double *weighted; /* [stride]: a row times that */
   double *before;  /* [pairs]: g at the sample before */
   size_t *active;  /* [pairs] that may still find something */
   bool *turned;    /* [pairs] in this direction */
@@ -190,13 +191,14 @@ static void visit(scan *s, size_t step, bool signs, const double *reference, siz
   int site = -1;
   size_t kept = 0;
   double energy = s->sample[step].energy, distance = fabs(energy - s->junction->fermi_ev);
+  for (size_t k = 0; k < s->stride; k++) s->inverse[k] = 1 / (energy - s->level[k]);
   for (size_t q = 0; q < *actives; q++) {
     size_t p = s->active[q];
     mho_pair *pair = &map->pair[p];
     if (site != pair->site[0]) {
       site = pair->site[0];
       for (size_t k = 0; k < s->stride; k++)
-        s->weighted[k] = s->row[(size_t)site * s->stride + k] / (energy - s->level[k]);
+        s->weighted[k] = s->row[(size_t)site * s->stride + k] * s->inverse[k];
     }
     double now = dot(s->stride, s->weighted, s->row + (size_t)pair->site[1] * s->stride);
     if (step > 0) look_at(s, step, signs, reference[p], s->before[p], now, pair, &s->turned[p]);
@@ -207,13 +209,13 @@ static void visit(scan *s, size_t step, bool signs, const double *reference, siz
 }
 
 static void walk(scan *s, int direction, bool signs, const double *reference,
-                 mho_interference *map)
+                 const size_t *leader, mho_interference *map)
 {
   size_t actives = 0;
   place_samples(s, direction);
   for (size_t p = 0; p < map->count; p++) {
     s->turned[p] = false;
-    if (map->pair[p].kind != MHO_PAIR_NO_PATH) s->active[actives++] = p;
+    if (leader[p] == p && map->pair[p].kind != MHO_PAIR_NO_PATH) s->active[actives++] = p;
   }
   for (size_t step = 0; actives > 0 && step < s->count; step++)
     visit(s, step, signs, reference, &actives, map);
@@ -223,13 +225,14 @@ static mho_status scan_create(const mho_junction *junction, size_t pairs, scan *
 {
   size_t n = (size_t)junction->sites, stride = (n + V - 1) / V * V;
   *s = (scan){.junction = junction, .stride = stride};
-  s->row = calloc((n + 2) * stride, sizeof *s->row);
+  s->row = calloc((n + 3) * stride, sizeof *s->row);
   s->before = malloc((pairs + 1) * sizeof *s->before);
   s->active = malloc((pairs + 1) * sizeof *s->active);
   s->turned = malloc((pairs + 1) * sizeof *s->turned);
   if (!s->row || !s->before || !s->active || !s->turned) return MHO_ERR_MEMORY;
   s->level = s->row + n * stride;
-  s->weighted = s->level + stride;
+  s->inverse = s->level + stride;
+  s->weighted = s->inverse + stride;
   for (size_t k = 0; k < stride; k++) s->level[k] = k < n ? junction->level_ev[k] : HUGE_VAL;
   for (size_t i = 0; i < n; i++)
     for (size_t k = 0; k < n; k++) s->row[i * stride + k] = junction->orbital[k * n + i];
@@ -267,7 +270,8 @@ static mho_status find_nearest(const mho_junction *j, double coupling_ev, mho_pa
 }
 
 mho_status mho_pairs_nodes(const mho_junction *junction, double coupling_ev,
-                           const double *reference, mho_interference *map, mho_error *error)
+                           const double *reference, const size_t *leader, mho_interference *map,
+                           mho_error *error)
 {
   bool exact = junction->sites <= MHO_INTERFERENCE_NODES_MAX;
   scan s;
@@ -275,6 +279,7 @@ mho_status mho_pairs_nodes(const mho_junction *junction, double coupling_ev,
   if (status != MHO_OK) mho_fail(error, status, "analysis", NULL, "out of memory");
   for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
     mho_pair *pair = &map->pair[p];
+    if (leader[p] != p) continue;
     bool at_fermi = pair->kind == MHO_PAIR_NODE_SYMMETRY || pair->kind == MHO_PAIR_NODE_CANCELLATION;
     if (exact && pair->kind != MHO_PAIR_NO_PATH)
       status = find_nearest(junction, coupling_ev, pair, error);
@@ -284,7 +289,7 @@ mho_status mho_pairs_nodes(const mho_junction *junction, double coupling_ev,
     }
   }
   for (int direction = -1; status == MHO_OK && direction < 2; direction += 2)
-    walk(&s, direction, !exact, reference, map);
+    walk(&s, direction, !exact, reference, leader, map);
   for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
     mho_pair *pair = &map->pair[p];
     /* Two levels at one energy make a node that g, which diverges, hides. */
