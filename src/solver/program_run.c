@@ -21,7 +21,7 @@
  * by fused multiply-add.
  */
 #include "solver/program.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 
 #include <math.h>
 #include <stdlib.h>
