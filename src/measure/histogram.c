@@ -80,6 +80,14 @@ static uint32_t *allocate_units(size_t bins)
   return units;
 }
 
+static bool counts_allocate(mho_trace_counts *counts)
+{
+  counts->count = calloc((size_t)counts->bins, sizeof *counts->count);
+  counts->unit_traces = calloc(MHO_UNIT_LIMIT, sizeof *counts->unit_traces);
+  counts->unit_count = allocate_units((size_t)counts->bins);
+  return counts->count && counts->unit_traces && counts->unit_count;
+}
+
 static bool counts_init(mho_trace_counts *counts, const mho_histogram_options *options,
                         int bins, double floor_g0)
 {
@@ -88,10 +96,7 @@ static bool counts_init(mho_trace_counts *counts, const mho_histogram_options *o
   counts->bins = bins;
   counts->floor_log10_g0 = floor_g0 > 0.0 ? log10(floor_g0) : -INFINITY;
   counts->traces_per_unit = 1;
-  counts->count = calloc((size_t)bins, sizeof *counts->count);
-  counts->unit_traces = calloc(MHO_UNIT_LIMIT, sizeof *counts->unit_traces);
-  counts->unit_count = allocate_units((size_t)bins);
-  return counts->count && counts->unit_traces && counts->unit_count;
+  return counts_allocate(counts);
 }
 
 static void counts_clear(mho_trace_counts *counts)
@@ -119,6 +124,16 @@ static void merge_units(mho_trace_counts *counts)
   counts->traces_per_unit *= 2;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_row(const uint64_t *row, size_t bins, uint64_t *count, uint32_t *unit)
+{
+  for (size_t i = 0; i < bins; i++) {
+    uint64_t sum = unit[i] + row[i];
+    unit[i] = sum < row[i] || sum > UINT32_MAX ? UINT32_MAX : (uint32_t)sum;
+    count[i] += row[i];
+  }
+}
+
 static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t censored)
 {
   size_t bins = (size_t)counts->bins, unit = counts->units;
@@ -133,16 +148,29 @@ static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t c
     counts->unit_traces[unit] = 0;
     memset(counts->unit_count + unit * bins, 0, bins * sizeof *counts->unit_count);
   }
-  uint32_t *to = counts->unit_count + unit * bins;
-  for (size_t i = 0; i < bins; i++) {
-    to[i] = add_capped(to[i], row[i + 1]);
-    counts->count[i] += row[i + 1];
-  }
+  add_row(row + 1, bins, counts->count, counts->unit_count + unit * bins);
   counts->unit_traces[unit]++;
   counts->traces++;
   counts->censored += censored;
   counts->below += row[0];
   counts->above += row[bins + 1];
+}
+
+/* Accepted traces are counted in the arrays of all until one is rejected. */
+static bool counts_part(mho_histogram *h)
+{
+  const mho_trace_counts *all = &h->all;
+  size_t bins = (size_t)all->bins;
+  mho_trace_counts *to = &h->accepted;
+  if (to->unit_count != all->unit_count) return true;
+  *to = *all;
+  bool good = counts_allocate(to);
+  if (good) {
+    memcpy(to->count, all->count, bins * sizeof *to->count);
+    memcpy(to->unit_traces, all->unit_traces, all->units * sizeof *to->unit_traces);
+    memcpy(to->unit_count, all->unit_count, all->units * bins * sizeof *to->unit_count);
+  }
+  return good;
 }
 
 static mho_status allocate(collector *c, const mho_histogram_options *o, mho_error *error)
@@ -157,7 +185,6 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
   h->coarse_bins = (int)ceil(decades * COARSE_PER_DECADE - 1e-9);
   size_t coarse = (size_t)h->coarse_bins;
   bool good = counts_init(&h->all, o, (int)bins, c->floor_g0) &&
-              counts_init(&h->accepted, o, (int)bins, c->floor_g0) &&
               mho_tally_init(&c->row, slots) &&
               mho_tally_init(&c->linear, (size_t)o->linear_bins + 2);
   h->edge_g0 = malloc((bins + 1) * sizeof(double));
@@ -175,6 +202,7 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
     h->sample_count = malloc((size_t)MHO_UNIT_LIMIT * bins * sizeof(uint32_t));
     good = good && h->sample_trace && h->sample_count;
   }
+  h->accepted = h->all;
   if (!good) return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
   memcpy(h->edge_g0, c->logbin.edge, (bins + 1) * sizeof(double));
   for (int slot = 0; slot < (int)slots; slot++)
@@ -288,21 +316,37 @@ static bool add_plateaus(collector *c, uint64_t trace, size_t start)
   return true;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_multiple(double *to, const double *from, double factor, int n)
+{
+  for (int i = 0; i < n; i++) to[i] += factor * from[i];
+}
+
+/* Whole numbers, so that sums are exact; of the products the upper triangle. */
 static void add_coarse(collector *c)
 {
   mho_histogram *h = c->histogram;
-  int n = h->coarse_bins;
+  int n = h->coarse_bins, per_decade = h->options.bins_per_decade;
+  const uint64_t *count = c->row.sum + 1;
   double *coarse = c->coarse;
-  memset(coarse, 0, (size_t)n * sizeof *coarse);
-  for (int i = 0; i < c->logbin.bins; i++) {
-    int j = i * COARSE_PER_DECADE / h->options.bins_per_decade;
-    if (j < n) coarse[j] += (double)c->row.sum[i + 1];
+  for (int i = 0, bin = 0; i < n; i++) {
+    int end = ((i + 1) * per_decade + COARSE_PER_DECADE - 1) / COARSE_PER_DECADE;
+    uint64_t sum = 0;
+    for (end = end < c->logbin.bins ? end : c->logbin.bins; bin < end; bin++) sum += count[bin];
+    coarse[i] = (double)sum;
   }
   for (int i = 0; i < n; i++) {
     if (coarse[i] == 0.0) continue;
     h->coarse_sum[i] += coarse[i];
-    for (int j = 0; j < n; j++) h->coarse_product[i * n + j] += coarse[i] * coarse[j];
+    add_multiple(h->coarse_product + i * n + i, coarse + i, coarse[i], n - i);
   }
+}
+
+static void mirror_coarse(mho_histogram *h)
+{
+  int n = h->coarse_bins;
+  for (int i = 0; i < n; i++)
+    for (int j = 0; j < i; j++) h->coarse_product[i * n + j] = h->coarse_product[j * n + i];
 }
 
 /* Reservoir sampling: every accepted trace stays with equal probability. */
@@ -349,6 +393,12 @@ static bool accept_trace(collector *c, bool aligned, size_t start)
   return false;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_counts(uint64_t *to, const uint64_t *from, size_t n)
+{
+  for (size_t i = 0; i < n; i++) to[i] += from[i];
+}
+
 static bool end_trace(collector *c, uint64_t trace)
 {
   mho_histogram *h = c->histogram;
@@ -362,11 +412,15 @@ static bool end_trace(collector *c, uint64_t trace)
   bool aligned = c->has_x && !c->too_long &&
                  mho_pull_align(&c->pull, h->options.crossing_g0, &start, &zero_nm);
   h->aligned += aligned;
+  bool accepted = accept_trace(c, aligned, start);
+  if (!accepted && !counts_part(h)) return false;
+  bool apart = h->accepted.unit_count != h->all.unit_count;
+  if (accepted) add_sample(c, trace);
+  if (accepted && apart) counts_add(&h->accepted, c->row.sum, c->censored);
   counts_add(&h->all, c->row.sum, c->censored);
-  if (!accept_trace(c, aligned, start)) return true;
-  add_sample(c, trace);
-  counts_add(&h->accepted, c->row.sum, c->censored);
-  for (int i = 0; i < h->options.linear_bins; i++) h->linear[i] += c->linear.sum[i + 1];
+  if (!accepted) return true;
+  if (!apart) h->accepted = h->all;
+  add_counts(h->linear, c->linear.sum + 1, (size_t)h->options.linear_bins);
   h->linear_above += c->linear.sum[h->options.linear_bins + 1];
   add_coarse(c);
   if (!aligned) return true;
@@ -404,6 +458,7 @@ mho_status mho_histogram_read(const char *const *paths, size_t count,
     status = mho_trace_reader_create(paths, count, traces, MHO_ABSCISSA_DISTANCE, &reader, error);
   if (status == MHO_OK) {
     status = collect(&c, reader, error);
+    mirror_coarse(histogram);
     histogram->report = *mho_trace_reader_report(reader);
   }
   mho_trace_reader_free(reader);
@@ -425,8 +480,9 @@ mho_status mho_histogram_read(const char *const *paths, size_t count,
 void mho_histogram_free(mho_histogram *histogram)
 {
   if (!histogram) return;
+  if (histogram->accepted.unit_count != histogram->all.unit_count)
+    counts_clear(&histogram->accepted);
   counts_clear(&histogram->all);
-  counts_clear(&histogram->accepted);
   free(histogram->edge_g0);
   free(histogram->linear);
   free(histogram->map);

@@ -27,7 +27,7 @@ void mho_tally_clear(mho_tally *tally)
 void mho_tally_reset(mho_tally *tally)
 {
   memset(tally->sum, 0, tally->slots * sizeof *tally->sum);
-  memset(tally->part, 0, PARTS * tally->slots * sizeof *tally->part);
+  if (tally->waiting) memset(tally->part, 0, PARTS * tally->slots * sizeof *tally->part);
   tally->waiting = 0;
 }
 
