@@ -82,6 +82,9 @@ mho_status mho_trace_reader_create(const char *const *paths, size_t count,
   reader->path_count = count;
   reader->options = *options;
   reader->wanted = wanted;
+#ifdef MHO_HAS_NUMBER_SHAPES
+  reader->shapes = __builtin_cpu_supports("x86-64-v3");
+#endif
   reader->floor_g0 = mho_trace_floor_g0(options);
   reader->saturation_g0 = mho_trace_saturation_g0(options);
   status = mho_source_init(&reader->source, error);
