@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "measure/fit.h"
 
+#include "base/processor.h"
+
 #include <math.h>
 #include <string.h>
 
@@ -18,6 +20,7 @@ static double deviance(int bins, const double *rate, const double *count)
   return sum;
 }
 
+FOR_EVERY_PROCESSOR
 static void normal_equations(int bins, int n, const double *rate, const double *jacobian,
                              const double *count, double h[P][P], double *gradient)
 {
@@ -94,7 +97,7 @@ double mho_fit_counts(const mho_fit_problem *problem, const double *count, doubl
     double before = best;
     while (!moved && damping < 1e9) {
       if (propose(problem, h, gradient, damping, parameter, next)) {
-        problem->model(problem->context, next, rate, NULL);
+        problem->model(problem->context, next, rate, jacobian); /* most steps are taken */
         double there = deviance(bins, rate, count);
         moved = there < best;
         if (moved) best = there;
@@ -105,7 +108,6 @@ double mho_fit_counts(const mho_fit_problem *problem, const double *count, doubl
     if (!moved) break;
     memcpy(parameter, next, (size_t)n * sizeof *next);
     if (before - best < GAIN_AT_LEAST) break;
-    problem->model(problem->context, parameter, rate, jacobian);
   }
   return best;
 }
