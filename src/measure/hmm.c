@@ -14,9 +14,6 @@
 
 enum { S = MHO_STATES, ROUNDS = 40, TRIAL_ROUNDS = 6 };
 
-/* Fewer points are not worth the waking of threads, a hundred times an estimate. */
-enum { POINTS_FOR_THREADS = 200000 };
-
 #define LOG_2PI 1.83787706640934548356
 #define CONVERGED 1e-6 /* of the log likelihood a point */
 
@@ -118,21 +115,15 @@ static bool belongs(size_t block, int parity)
   return parity > 1 || (int)(block % 2) == parity;
 }
 
-/* Evidence of every block; the sum is taken in order afterwards. */
 static mho_status gather_all(const mho_blocks *blocks, int parity, const mho_hmm *model,
                              evidence *each)
 {
-  bool failed = false;
-#pragma omp parallel reduction(|| : failed) if (blocks->count * blocks->length > POINTS_FOR_THREADS)
-  {
-    double *work = malloc((2 * S + 1) * blocks->length * sizeof *work);
-    failed = work == NULL;
-#pragma omp for schedule(static)
-    for (size_t b = 0; b < blocks->count; b++)
-      if (work && belongs(b, parity)) gather(model, blocks->block[b], blocks->length, work, &each[b]);
-    free(work);
-  }
-  return failed ? MHO_ERR_MEMORY : MHO_OK;
+  double *work = malloc((2 * S + 1) * blocks->length * sizeof *work);
+  if (!work) return MHO_ERR_MEMORY;
+  for (size_t b = 0; b < blocks->count; b++)
+    if (belongs(b, parity)) gather(model, blocks->block[b], blocks->length, work, &each[b]);
+  free(work);
+  return MHO_OK;
 }
 
 static void add_evidence(evidence *to, const evidence *e)

@@ -11,6 +11,7 @@
 #include "measure/sample.h"
 
 #include <math.h>
+#include <omp.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -164,16 +165,21 @@ static mho_status make_blocks(const signal *s, mho_blocks *blocks)
   return MHO_OK;
 }
 
-/* Each half of the blocks judges a model of the other half. */
+/* Each half of the blocks judges a model of the other half.  Two threads with
+ * much work each: threads that meet in every round of an estimate spend more
+ * on waiting than they save. */
 static mho_status unseen_likelihood(const mho_blocks *blocks, int states, double *likelihood)
 {
-  mho_status status = MHO_OK;
-  for (int parity = 0; parity < 2 && status == MHO_OK; parity++) {
+  mho_status status[2];
+  int threads = omp_get_max_threads() < 2 ? 1 : 2;
+#pragma omp parallel for num_threads(threads)
+  for (int parity = 0; parity < 2; parity++) {
     mho_hmm model;
-    status = mho_hmm_estimate(blocks, parity, states, &model);
-    if (status == MHO_OK) status = mho_hmm_score(blocks, 1 - parity, &model, likelihood);
+    status[parity] = mho_hmm_estimate(blocks, parity, states, &model);
+    if (status[parity] == MHO_OK)
+      status[parity] = mho_hmm_score(blocks, 1 - parity, &model, likelihood);
   }
-  return status;
+  return status[0] != MHO_OK ? status[0] : status[1];
 }
 
 /* A level on which the signal stays for less than three samples on the average
