@@ -48,4 +48,5 @@ void mho_shape_learn(mho_number_shape *shape, const char *s, const char *end)
   set_order(shape, 0, mantissa, EXPONENT_DIGITS + DIGITS - 1);
   set_order(shape, mantissa, length, EXPONENT_DIGITS - 1);
   shape->length = length;
+  shape->seen = (2u << length) - 1;
 }

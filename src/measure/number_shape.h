@@ -4,8 +4,7 @@
  *
  * The form of a number is learned once; after that sixteen bytes are compared
  * with it and their digits summed in one go.  The digits and the power of ten
- * are those that mho_decimal_read finds, and go through the same
- * mho_decimal_scale: so does the value.
+ * are those that mho_decimal_read finds, and so is the value.
  */
 #ifndef MHOLECULE_MEASURE_NUMBER_SHAPE_H
 #define MHOLECULE_MEASURE_NUMBER_SHAPE_H
@@ -23,7 +22,8 @@ typedef struct {
   int length;       /* bytes behind a minus sign; 0: no form is known */
   int fraction;     /* digits behind the point */
   int sign_at;      /* of the exponent, 0: there is no exponent */
-  uint32_t digits;  /* bit i: byte i is a digit; length + 1 bits count */
+  uint32_t seen;    /* the bits of the number and of the byte behind it */
+  uint32_t digits;  /* bit i: byte i is a digit */
   uint32_t fixed;   /* bit i: byte i is that of `same` */
   uint8_t same[16]; /* point and letter of the exponent */
   uint8_t order[16]; /* byte for a digit: 4 of the exponent, 12 of the rest */
@@ -44,8 +44,7 @@ mho_shape_read(const mho_number_shape *shape, const char *s, const char **end, d
   __m128i digit = _mm_sub_epi8(text, _mm_set1_epi8('0'));
   __m128i is_digit = _mm_cmpeq_epi8(_mm_min_epu8(digit, _mm_set1_epi8(9)), digit);
   __m128i is_same = _mm_cmpeq_epi8(text, _mm_loadu_si128((const __m128i *)shape->same));
-  uint32_t seen = (2u << shape->length) - 1;
-  uint32_t other = ((uint32_t)_mm_movemask_epi8(is_digit) & seen) ^ shape->digits;
+  uint32_t other = ((uint32_t)_mm_movemask_epi8(is_digit) & shape->seen) ^ shape->digits;
   other |= ~(uint32_t)_mm_movemask_epi8(is_same) & shape->fixed;
   if (other || !shape->length) return false;
   /* Digits to pairs, pairs to fours: the exponent and 3 times four digits. */
@@ -60,7 +59,9 @@ mho_shape_read(const mho_number_shape *shape, const char *s, const char **end, d
     if (sign != '-' && sign != '+') return false;
     if (sign == '-') exponent = -exponent;
   }
-  if (!mho_decimal_scale(m, exponent - shape->fraction, value)) return false;
+  exponent -= shape->fraction;
+  if (exponent < 0 && exponent >= -22) *value = (double)(int64_t)m / mho_power10[-exponent];
+  else if (!mho_decimal_scale(m, exponent, value)) return false;
   if (negative) *value = -*value;
   *end = s + shape->length;
   return true;

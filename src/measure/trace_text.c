@@ -21,6 +21,10 @@ static inline const char *skip_blanks(const char *p, char separator)
   return p;
 }
 
+/* A line earns 1, a number that has another form than the one before costs 8:
+ * where forms change often the general reader is the faster one. */
+enum { CREDIT = 512, MOST_CREDIT = MHO_TRACE_CHUNK, CREDIT_PRICE = 8 };
+
 /* A number by its form, or else in general, and what form it has is learned
  * where there is credit. */
 typedef bool number_reader(mho_number_shape *shape, int *credit, const char *s, const char **end,
@@ -303,14 +307,11 @@ INLINED const char *fast_columns(mho_trace_reader *reader, number_reader *read, 
   }
 }
 
-enum { CREDIT = 512, CREDIT_PRICE = 16 }; /* of a number that has another form */
-
 #ifdef MHO_HAS_NUMBER_SHAPES
 MHO_SHAPE_PROCESSOR INLINED bool read_shaped(mho_number_shape *shape, int *credit, const char *s,
                                              const char **end, double *value)
 {
   const char *start = s;
-  *credit += *credit < CREDIT;
   if (mho_shape_read(shape, s, end, value)) return true;
   if (!mho_decimal_read(s, end, value)) return false;
   mho_shape_learn(shape, start, *end);
@@ -321,7 +322,12 @@ MHO_SHAPE_PROCESSOR INLINED bool read_shaped(mho_number_shape *shape, int *credi
 MHO_SHAPE_PROCESSOR static const char *run_shaped(mho_trace_reader *reader, const char *p,
                                                   const char *limit, bool *restart)
 {
-  return fast_columns(reader, read_shaped, p, limit, restart);
+  size_t before = reader->count;
+  p = fast_columns(reader, read_shaped, p, limit, restart);
+  int credit = reader->text.credit + (int)(reader->count - before);
+  if (reader->text.credit > 0)
+    reader->text.credit = credit < MOST_CREDIT ? credit : MOST_CREDIT;
+  return p;
 }
 #endif
 
