@@ -6,13 +6,13 @@
 #include <math.h>
 #include <stdlib.h>
 
-#if defined(__x86_64__) && defined(__GNUC__)
+#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__)
 #define HAS_WIDE_VECTORS 1
 #endif
 
-enum { BLOCK = 64 }; /* numbers that one doubtful among them sends to the table */
-
 enum { BIN_LIMIT = 20000, SIGNIFICAND_BITS = 52 };
+
+enum { BLOCK = 64 }; /* numbers that one doubtful among them sends to the table */
 
 static int64_t bits_of(double value)
 {
@@ -61,7 +61,7 @@ static mho_status build_table(mho_logbin *logbin, int per_decade)
 /* Doubles a vector of this processor. */
 static int vector_lanes(void)
 {
-#if HAS_WIDE_VECTORS
+#ifdef HAS_WIDE_VECTORS
   if (__builtin_cpu_supports("x86-64-v4")) return 8;
   if (__builtin_cpu_supports("x86-64-v3")) return 4;
 #endif
@@ -127,7 +127,7 @@ static void slots_by_table(const mho_logbin *logbin, double floor, const double 
     slot[i] = value[i] >= floor ? mho_logbin_slot(logbin, value[i]) : 0;
 }
 
-#if HAS_WIDE_VECTORS
+#ifdef HAS_WIDE_VECTORS
 #define FMA __builtin_fma /* these processors have it */
 
 /* BLOCK slots, true where all are sure.  value = 2^e (1.5 + x); log2(1.5 + x)
@@ -176,11 +176,11 @@ SLOTS_FOR(slots_of_eight, "arch=x86-64-v4,prefer-vector-width=512")
 void mho_logbin_slots(const mho_logbin *logbin, double floor, const double *value, size_t n,
                       int32_t *slot)
 {
-  size_t whole = 0;
-#if HAS_WIDE_VECTORS
-  whole = logbin->lanes > 1 ? n / BLOCK * BLOCK : 0;
+  size_t whole = 0; /* points in whole blocks */
+#ifdef HAS_WIDE_VECTORS
+  if (logbin->lanes > 1) whole = n / BLOCK * BLOCK;
   if (logbin->lanes == 8) slots_of_eight(logbin, floor, value, whole, slot);
-  else slots_of_four(logbin, floor, value, whole, slot);
+  if (logbin->lanes == 4) slots_of_four(logbin, floor, value, whole, slot);
 #endif
   slots_by_table(logbin, floor, value + whole, n - whole, slot + whole);
 }

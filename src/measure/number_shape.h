@@ -12,7 +12,7 @@
 #include "base/processor.h"
 #include "measure/decimal.h"
 
-#if defined(__x86_64__) && defined(__GNUC__)
+#if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__)
 #include <immintrin.h>
 #define MHO_HAS_NUMBER_SHAPES 1
 #define MHO_SHAPE_PROCESSOR __attribute__((target("arch=x86-64-v3")))
