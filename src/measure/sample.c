@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "measure/sample.h"
 
+#include "base/processor.h"
 #include "base/random.h"
 
 #include <math.h>
@@ -48,10 +49,12 @@ void mho_sample_clear(mho_sample *sample)
   *sample = (mho_sample){0};
 }
 
+FOR_EVERY_PROCESSOR
 static void add(const mho_sample *sample, size_t unit, double *count)
 {
-  const double *from = sample->count + unit * (size_t)sample->bins;
-  for (int i = 0; i < sample->bins; i++) count[i] += from[i];
+  int bins = sample->bins;
+  const double *from = sample->count + unit * (size_t)bins;
+  for (int i = 0; i < bins; i++) count[i] += from[i];
 }
 
 static void clear_counts(const mho_sample *sample, double *count)
