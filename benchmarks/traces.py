@@ -7,7 +7,7 @@ the counts agree, then compares times.  NumPy reads with loadtxt and with
 fromstring, both, and bins log10 with np.histogram; both sides on one thread.
 Runs alternate, and a ratio is the median over pairs, its range beside it.
 `bound` is the share of the speed at which the same bytes can be read at all:
-a file through a buffer, an array by its sum.
+a file through a buffer (inflated where it is packed), an array by its sum.
 
     traces.py BUILD_FOLDER [--megabytes N] [--repeats N] [--json FILE]
 """
@@ -45,7 +45,7 @@ def ours(program, mode, path):
 
 def read_through(path):
     buffer = bytearray(1 << 18)
-    with open(path, "rb", buffering=0) as file:
+    with gzip.open(path) if path.endswith(".gz") else open(path, "rb", buffering=0) as file:
         while file.readinto(buffer):
             pass
 
