@@ -302,7 +302,9 @@ INLINED const char *fast_columns(mho_trace_reader *reader, number_reader *read, 
   char separator = reader->text.separator;
   switch (reader->columns.count) {
   case 1: return fast_lines(reader, read, p, limit, 1, separator, restart);
-  case 2: return fast_lines(reader, read, p, limit, 2, separator, restart);
+  case 2:
+    if (separator == ' ') return fast_lines(reader, read, p, limit, 2, ' ', restart);
+    return fast_lines(reader, read, p, limit, 2, separator, restart);
   default: return fast_lines(reader, read, p, limit, reader->columns.count, separator, restart);
   }
 }
