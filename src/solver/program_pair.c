@@ -11,7 +11,7 @@
  */
 #include <math.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 #include "solver/program.h"
 
 enum { L = PROGRAM_LANES };

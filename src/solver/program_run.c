@@ -29,7 +29,7 @@
  * <R, n> of the step that eliminates it.
  */
 #include "solver/program.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 
 #include <math.h>
 #include <stddef.h>
