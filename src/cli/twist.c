@@ -203,7 +203,7 @@ static mho_status add_average(const work *w, mho_error *error)
 {
   mho_torsion torsion[MHO_TWIST_AVERAGE_BONDS_MAX];
   mho_twist_average average;
-  mho_status status = mho_torsion_read(w->cmd->torsion, &torsion[0], error);
+  mho_status status = mho_torsion_read(w->cmd->torsion, NULL, &torsion[0], error);
   for (int k = 1; k < MHO_TWIST_AVERAGE_BONDS_MAX; k++) torsion[k] = torsion[0];
   if (status == MHO_OK) status = mho_twist_average_compute(w->rotor, torsion, &average, error);
   if (status != MHO_OK) return status;

@@ -172,14 +172,14 @@ static void two_barriers_make_a_potential(void **state)
   (void)state;
   mho_torsion t;
   /* Bastiansen and Samdal: 6.0 and 6.5 kJ/mol with the minimum at 44.4 deg. */
-  assert_int_equal(mho_torsion_read("6.0 kJ/mol, 6.5 kJ/mol", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("6.0 kJ/mol, 6.5 kJ/mol", NULL, &t, NULL), MHO_OK);
   double lowest = 0;
   for (double a = 0; a <= 90; a += 0.01)
     if (mho_torsion_energy(&t, a) < mho_torsion_energy(&t, lowest)) lowest = a;
   assert_near(lowest, 44.4, 0.06);
   assert_near(mho_torsion_energy(&t, 0) - mho_torsion_energy(&t, lowest), 6.0, 1e-6);
   assert_near(mho_torsion_energy(&t, 90) - mho_torsion_energy(&t, lowest), 6.5, 1e-6);
-  assert_int_equal(mho_torsion_read("0 kJ/mol, 2.7 kJ/mol", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("0 kJ/mol, 2.7 kJ/mol", NULL, &t, NULL), MHO_OK);
   assert_near(mho_torsion_energy(&t, 90) - mho_torsion_energy(&t, 0), 2.7, 1e-12);
   assert_near(mho_torsion_energy(&t, 45) - mho_torsion_energy(&t, 0), 1.35, 1e-12);
   static const char *const bad[] = {"", "6 kJ/mol", "6 eV, 7 eV", "6, 7", "-1 kJ/mol, 2 kJ/mol",
@@ -188,7 +188,7 @@ static void two_barriers_make_a_potential(void **state)
   for (size_t i = 0; i < sizeof bad / sizeof *bad; i++) {
     mho_error error;
     mho_error_init(&error);
-    mho_status status = mho_torsion_read(bad[i], &t, &error);
+    mho_status status = mho_torsion_read(bad[i], NULL, &t, &error);
     assert_true(mho_status_is_input(status));
     assert_int_equal(error.count, 1);
   }
@@ -199,7 +199,7 @@ static void a_table_gives_its_potential_back(void **state)
   (void)state;
   mho_torsion from, to;
   double angle[19], energy[19];
-  assert_int_equal(mho_torsion_read("v1 = 1 kJ/mol, v2 = -2 kJ/mol, v4 = 3 kJ/mol", &from, NULL),
+  assert_int_equal(mho_torsion_read("v1 = 1 kJ/mol, v2 = -2 kJ/mol, v4 = 3 kJ/mol", NULL, &from, NULL),
                    MHO_OK);
   for (int i = 0; i < 19; i++) {
     angle[i] = 10 * i;
@@ -223,7 +223,7 @@ static void thermal_averages_have_their_values(void **state)
   mho_rotor *rotor = rotor_of(&s, rotatable(&s));
   mho_torsion t;
   mho_twist_average average;
-  assert_int_equal(mho_torsion_read("biphenyl-diffraction", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("biphenyl-diffraction", NULL, &t, NULL), MHO_OK);
   assert_int_equal(mho_twist_average_compute(rotor, &t, &average, NULL), MHO_OK);
   assert_true(average.converged && average.has_frozen);
   assert_near(average.mean_cos2, 0.512, 5e-4);
