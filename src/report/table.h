@@ -58,6 +58,11 @@ void mho_output_clear(mho_output *output);
  * until the next call. */
 mho_table *mho_output_table(mho_output *output, const char *name,
                             const char *const *column, size_t columns);
+
+/* The table of that name, or NULL; the pointer holds as long. */
+mho_table *mho_output_find(const mho_output *output, const char *name);
+
+/* Warnings of one molecule stand together. */
 void mho_output_warn(mho_output *output, const char *molecule, unsigned warnings);
 void mho_output_note(mho_output *output, const char *format, ...) MHO_PRINTF(2, 3);
 
