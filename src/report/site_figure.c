@@ -259,8 +259,10 @@ mho_status mho_drawing_write_sensitivity(const mho_molecule *m, const mho_sensit
   canvas c;
   mho_status status = open_canvas(m, &c, error);
   if (status == MHO_OK && some) fill_sensitivity(m, sensitivity, &c);
+  bool bars = false;
+  for (int b = 0; status == MHO_OK && b < m->bond_count; b++) bars |= c.value[of_bond(&c, b)] != 0;
   if (status == MHO_OK)
-    status = paint(m, &c, some ? key : node, some ? 4 : 1, true, 0, svg, error);
+    status = paint(m, &c, some ? key : node, !some ? 1 : bars ? 4 : 2, true, 0, svg, error);
   close_canvas(&c);
   return status;
 }
@@ -279,7 +281,9 @@ mho_status mho_drawing_write_modifications(const mho_molecule *m, const mho_modi
     if (mods->row[i].has_change) most = fmax(most, fabs(mods->row[i].change_decades));
   for (size_t i = 0; status == MHO_OK && i < mods->count; i++) {
     const mho_modification *row = &mods->row[i]; /* largest first */
-    if (!row->has_change || c.value[row->site] != 0 || most == 0) continue;
+    if (!row->has_change || c.value[row->site] != 0 ||
+        fabs(row->change_decades) <= LEAST * most)
+      continue;
     char before[44];
     c.value[row->site] = row->change_decades / most;
     snprintf(before, sizeof before, "%.30s\n", row->substituent->name);

@@ -57,8 +57,9 @@ static void measure(picture *p)
   for (int k = 0; k < p->marks->keys; k++)
     p->width = fmax(p->width, 6.7 * count_characters(p->marks->key[k].words) + 56);
   p->left = (p->width - wide) / 2;
-  p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75;
-  p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE + key_height(p));
+  double words = p->marks->site_text ? 13 : 0; /* above and below the molecule */
+  p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75 + words;
+  p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE + key_height(p) + words);
 }
 
 static bool is_carbon(const picture *p, int point)

@@ -437,6 +437,8 @@ void mho_interference_note(mho_output *output, const mho_molecule *m, const mho_
                   m->site[own->site[0]].id, m->site[own->site[1]].id, verdict[own->kind], until);
 }
 
+#define LEAST_CHANGE 0.005 /* decades, 1 % */
+
 void mho_modify_note(mho_output *output, const mho_molecule *m, const mho_modifications *mods)
 {
   const mho_modification *up = NULL, *down = NULL;
@@ -446,12 +448,19 @@ void mho_modify_note(mho_output *output, const mho_molecule *m, const mho_modifi
     if (!up || row->change_decades > up->change_decades) up = row;
     if (!down || row->change_decades < down->change_decades) down = row;
   }
+  char factor[2][32];
   if (!up) return;
-  mho_output_note(output, "%s: of %zu single changes %s at %s raises the conductance most, by a "
-                          "factor of %.2g, and %s at %s lowers it most, to %.2g of it",
-                  m->name, mods->count, up->substituent->name, m->site[up->site].id,
-                  pow(10, up->change_decades), down->substituent->name, m->site[down->site].id,
-                  pow(10, down->change_decades));
+  two_digits(up->change_decades, factor[0], sizeof factor[0]);
+  two_digits(down->change_decades, factor[1], sizeof factor[1]);
+  bool rises = up->change_decades > LEAST_CHANGE, falls = down->change_decades < -LEAST_CHANGE;
+  if (rises)
+    mho_output_note(output, "%s: of %zu single changes %s at %s raises the conductance most, by a "
+                            "factor of %s", m->name, mods->count, up->substituent->name,
+                    m->site[up->site].id, factor[0]);
+  if (falls)
+    mho_output_note(output, "%s: of %zu single changes %s at %s lowers the conductance most, to %s "
+                            "of it", m->name, mods->count, down->substituent->name,
+                    m->site[down->site].id, factor[1]);
 }
 
 mho_table *mho_modify_table(mho_output *output)

@@ -131,6 +131,57 @@ void mho_twist_bonds_clear(mho_twist_bonds *bonds)
   *bonds = (mho_twist_bonds){0};
 }
 
+/* --- potentials ------------------------------------------------------------ */
+
+/* The two bonds of an alkyne between rings: only the angle between the rings
+ * has a potential. */
+static mho_status check_alkynes(const mho_molecule *m, const mho_twist_bonds *bonds,
+                                mho_error *error)
+{
+  for (int i = 0; i < bonds->count; i++)
+    for (int k = 0; k < i; k++) {
+      const mho_bond *a = &m->bond[bonds->bond[i]], *b = &m->bond[bonds->bond[k]];
+      if (!a->torsion || !b->torsion || strcmp(a->torsion, "tolane") || strcmp(b->torsion, "tolane"))
+        continue;
+      for (int other = 0; other < m->bond_count; other++)
+        for (int end = 0; end < 4; end++) {
+          int from = a->site[end & 1], to = b->site[end >> 1];
+          const int *s = m->bond[other].site;
+          if (!((s[0] == from && s[1] == to) || (s[0] == to && s[1] == from))) continue;
+          return mho_fail(error, MHO_ERR_REFERENCE, "study", "bond",
+                          "bond: of %s only the angle between the two rings has a potential; turn "
+                          "one of these bonds", bonds->name);
+        }
+    }
+  return MHO_OK;
+}
+
+mho_status mho_twist_potentials(const mho_twist_question *q, const mho_molecule *m,
+                                const mho_twist_bonds *bonds, mho_torsion *torsion, char **names,
+                                mho_error *error)
+{
+  const char *given = q->torsion.text;
+  mho_status status = MHO_OK;
+  *names = NULL;
+  if (bonds->count > MHO_TWIST_AVERAGE_BONDS_MAX)
+    return mho_fail(error, MHO_ERR_SIZE, "study", "bond",
+                    "bond: %d bonds are to be averaged; at most %d are", bonds->count,
+                    MHO_TWIST_AVERAGE_BONDS_MAX);
+  if (!given[0] && m->torsion_count == 0) status = check_alkynes(m, bonds, error);
+  for (int k = 0; status == MHO_OK && k < bonds->count; k++) {
+    const char *name = given;
+    status = given[0] ? mho_torsion_read(given, NULL, &torsion[k], error)
+                      : mho_molecule_torsion(m, bonds->bond[k], &torsion[k], &name,
+                                             error);
+    if (status != MHO_OK || (k && *names && !strcmp(*names, name))) continue;
+    char *longer = mho_print_text("%s%s%s", *names ? *names : "", *names ? "; " : "", name);
+    free(*names);
+    *names = longer;
+    if (!longer) status = fail_memory(error);
+  }
+  return status;
+}
+
 /* --- tables --------------------------------------------------------------- */
 
 typedef struct {
@@ -241,62 +292,13 @@ static mho_status add_plane(const work *w, mho_error *error)
   return status;
 }
 
-/* The two bonds of an alkyne between rings: only the angle between the rings
- * has a potential. */
-static mho_status check_alkynes(const work *w, mho_error *error)
-{
-  const mho_molecule *m = w->molecule;
-  for (int i = 0; i < w->bonds->count; i++)
-    for (int k = 0; k < i; k++) {
-      const mho_bond *a = &m->bond[w->bonds->bond[i]], *b = &m->bond[w->bonds->bond[k]];
-      if (!a->torsion || !b->torsion || strcmp(a->torsion, "tolane") || strcmp(b->torsion, "tolane"))
-        continue;
-      for (int other = 0; other < m->bond_count; other++)
-        for (int end = 0; end < 4; end++) {
-          int from = a->site[end & 1], to = b->site[end >> 1];
-          const int *s = m->bond[other].site;
-          if (!((s[0] == from && s[1] == to) || (s[0] == to && s[1] == from))) continue;
-          return mho_fail(error, MHO_ERR_REFERENCE, "study", "bond",
-                          "bond: of %s only the angle between the two rings has a potential; turn "
-                          "one of these bonds", w->bonds->name);
-        }
-    }
-  return MHO_OK;
-}
-
-/* The potential of each bond; their names in one text, which the caller frees. */
-static mho_status find_potentials(const work *w, mho_torsion *torsion, char **names,
-                                  mho_error *error)
-{
-  const char *given = w->question->torsion.text;
-  mho_status status = MHO_OK;
-  *names = NULL;
-  if (w->bonds->count > MHO_TWIST_AVERAGE_BONDS_MAX)
-    return mho_fail(error, MHO_ERR_SIZE, "study", "bond",
-                    "bond: %d bonds are to be averaged; at most %d are", w->bonds->count,
-                    MHO_TWIST_AVERAGE_BONDS_MAX);
-  if (!given[0] && w->molecule->torsion_count == 0) status = check_alkynes(w, error);
-  for (int k = 0; status == MHO_OK && k < w->bonds->count; k++) {
-    const char *name = given;
-    status = given[0] ? mho_torsion_read(given, NULL, &torsion[k], error)
-                      : mho_molecule_torsion(w->molecule, w->bonds->bond[k], &torsion[k], &name,
-                                             error);
-    if (status != MHO_OK || (k && *names && !strcmp(*names, name))) continue;
-    char *longer = mho_print_text("%s%s%s", *names ? *names : "", *names ? "; " : "", name);
-    free(*names);
-    *names = longer;
-    if (!longer) status = fail_memory(error);
-  }
-  return status;
-}
-
 static mho_status add_average(const work *w, mho_error *error)
 {
   mho_torsion torsion[MHO_TWIST_AVERAGE_BONDS_MAX];
   mho_twist_average average;
   char *names;
   mho_table *table = table_of(w->output, "twist_average", mho_twist_average_table);
-  mho_status status = find_potentials(w, torsion, &names, error);
+  mho_status status = mho_twist_potentials(w->question, w->molecule, w->bonds, torsion, &names, error);
   if (status == MHO_OK) status = mho_twist_average_compute(w->rotor, torsion, &average, error);
   if (status == MHO_OK) {
     mho_twist_average_row(table, w->molecule->name, w->bonds->name, names, &average);

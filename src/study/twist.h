@@ -39,6 +39,14 @@ MHO_MUST_USE mho_status mho_twist_choose(const mho_twist_question *question,
                                          char *reason, size_t size);
 void mho_twist_bonds_clear(mho_twist_bonds *bonds);
 
+/* Potential torsion[MHO_TWIST_AVERAGE_BONDS_MAX] of each bond; their names in
+ * one text, which the caller frees.  Errors: MHO_ERR_SIZE (too many bonds),
+ * MHO_ERR_REFERENCE (no potential is known), those of mho_torsion_read. */
+MHO_MUST_USE mho_status mho_twist_potentials(const mho_twist_question *question,
+                                             const mho_molecule *molecule,
+                                             const mho_twist_bonds *bonds, mho_torsion *torsion,
+                                             char **names, mho_error *error);
+
 /* Does any bond turn? */
 bool mho_twist_applies(const mho_molecule *molecule);
 
