@@ -220,6 +220,13 @@ int command_transmission(const command *cmd, mho_error *error)
                    : mho_transmission_table(&output);
   for (int i = 0; status == MHO_OK && table && i < list.count; i++)
     status = add_molecule(cmd, &list.item[i], &kept, &output, table, error);
+  if (cmd->orbitals && !cmd->quiet)
+    mho_output_note(&output, "diagonal: T if the orbital were alone; interference: with all others; "
+                             "all of both add up to T, and of levels of one energy only their sum "
+                             "has a meaning");
+  if (cmd->currents && !cmd->quiet)
+    mho_output_note(&output, "currents of electrons that come from the left, as parts of T; more "
+                             "than 1 is a current that goes round");
   if (status == MHO_OK) status = mho_output_check(&output, error);
   if (status == MHO_OK && kept.count > 0) status = draw_curves(cmd, &kept, error);
   curves_clear(&kept);

@@ -24,7 +24,8 @@ static void add_potential(const mho_yaml *y, const mho_yaml_node *node, mho_mole
       mho_fail_at(y->error, cause->status, "input", cause->file, cause->line, cause->column,
                   "torsion", "%s", cause->message);
     else
-      mho_yaml_fail(y, node, cause->status, "torsion", "%s", cause->message);
+      mho_yaml_fail(y, node, cause->status, "torsion", "%s%s%s%s", cause->file[0] ? "torsion: " : "",
+                    cause->file, cause->file[0] ? " " : "", cause->message);
   }
   if (status != MHO_OK) return;
   mho_bond_torsion *larger =

@@ -108,8 +108,8 @@ mho_status mho_molecule_torsion(const mho_molecule *molecule, int bond, mho_tors
   if (b->torsion) return mho_torsion_read(b->torsion, NULL, torsion, error);
   return mho_fail_at(error, MHO_ERR_REFERENCE, "model",
                      molecule->source ? molecule->source : molecule->name, 0, 0, "torsion",
-                     "torsion: no potential is known for the bond %s-%s of '%.60s'; give one here or "
-                     "by the key torsion of the molecule",
+                     "torsion: no potential is known for the bond %s-%s of '%.60s'; give one as "
+                     "torsion, here or in the molecule file",
                      molecule->site[b->site[0]].id, molecule->site[b->site[1]].id,
                      molecule->name ? molecule->name : "");
 }

@@ -134,7 +134,7 @@ static void add_names(mho_buffer *script, const mho_molecule *molecule, const ch
 void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
                       const mho_interference *map)
 {
-  double highest = -INFINITY;
+  double highest = -INFINITY, lowest = INFINITY;
   int count = 0, *place = calloc((size_t)molecule->site_count + 1, sizeof *place);
   if (!place) {
     script->failed = true;
@@ -148,10 +148,19 @@ void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
   for (int i = 0; i < molecule->site_count; i++)
     if (place[i] == 0) place[i] = count++;
   if (!isfinite(highest)) highest = 0;
+  for (size_t p = 0; p < map->count; p++)
+    lowest = fmin(lowest, fmax(pair_log10(&map->pair[p]), highest - SHOWN_DECADES));
+  if (!(lowest < highest - 0.5)) lowest = highest - 0.5;
+  double middle = 0.5 * (lowest + highest); /* of the palette: words turn white */
   begin_figure(script, SQUARE, SQUARE - 60);
   add_cells(script, map, place, highest, "pairs", -INFINITY, INFINITY);
-  add_cells(script, map, place, highest, "dark", highest - 0.5 * SHOWN_DECADES, INFINITY);
-  add_cells(script, map, place, highest, "light", -INFINITY, highest - 0.5 * SHOWN_DECADES);
+  add_cells(script, map, place, highest, "dark", middle, INFINITY);
+  add_cells(script, map, place, highest, "light", -INFINITY, middle);
+  mho_buffer_add(script, "set cbrange [");
+  mho_buffer_number(script, 8, lowest);
+  mho_buffer_add(script, ":");
+  mho_buffer_number(script, 8, highest);
+  mho_buffer_add(script, "]\n");
   add_names(script, molecule, "xtics rotate", place, count);
   add_names(script, molecule, "ytics", place, count);
   mho_buffer_print(script,

@@ -55,7 +55,7 @@ static void measure(picture *p)
   p->width = fmax(ceil(wide + 2 * MARGIN), NARROWEST);
   if (p->marks->title) p->width = fmax(p->width, 10.5 * count_characters(p->marks->title) + 20);
   for (int k = 0; k < p->marks->keys; k++)
-    p->width = fmax(p->width, 6.7 * count_characters(p->marks->key[k].words) + 56);
+    p->width = fmax(p->width, ceil(6.7 * count_characters(p->marks->key[k].words)) + 56);
   p->left = (p->width - wide) / 2;
   double words = p->marks->site_text ? 13 : 0; /* above and below the molecule */
   p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75 + words;

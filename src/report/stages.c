@@ -450,7 +450,10 @@ void mho_modify_note(mho_output *output, const mho_molecule *m, const mho_modifi
   }
   char factor[2][32];
   if (!up) return;
-  two_digits(up->change_decades, factor[0], sizeof factor[0]);
+  double shown = pow(10, fmax(floor(up->change_decades) - 1, 0)); /* 1600, not 1.6e+03 */
+  mho_number_write(factor[0], sizeof factor[0], shown > 1 ? 15 : 2,
+                   shown > 1 ? shown * round(pow(10, up->change_decades) / shown)
+                             : pow(10, up->change_decades));
   two_digits(down->change_decades, factor[1], sizeof factor[1]);
   bool rises = up->change_decades > LEAST_CHANGE, falls = down->change_decades < -LEAST_CHANGE;
   if (rises)

@@ -383,7 +383,8 @@ static void check_twist(reader *r, const mho_yaml_node *node, const mho_molecule
                   own.cause[i].column, "torsion", "%s", own.cause[i].message);
     else
       mho_yaml_fail(&r->yaml, torsion_node ? torsion_node : node, own.cause[i].status, "torsion",
-                    "%s", own.cause[i].message);
+                    "%s%s", own.cause[i].status == MHO_ERR_FILE ? "torsion: the table " : "",
+                    own.cause[i].message);
   free(names);
   mho_twist_bonds_clear(&bonds);
 }
