@@ -73,8 +73,8 @@ def check_report(folder):
     plain = re.sub(r"data:[^\"]*", "", text).replace('xmlns="http://www.w3.org/2000/svg"', "")
     expect("http" not in plain, "no address in the report")
     # comparison, 2 x T(E), twist and its map, 2 pair matrices; six molecules, what
-    # to change in each, 2 maps of pairs, 2 of changes, currents but for the node
-    expect(len(reader.images) == 7 + 6 + 6 + 2 + 2 + 5, f"{len(reader.images)} images")
+    # to change in each, how flat one must be, 2 maps of pairs, 2 of changes, currents but for the node
+    expect(len(reader.images) == 7 + 6 + 6 + 1 + 2 + 2 + 5, f"{len(reader.images)} images")
     check_levers(folder, text)
     for image in reader.images:
         svg = base64.b64decode(image.split(",", 1)[1])
@@ -95,6 +95,8 @@ def check_levers(folder, text):
                 if float(row["conductance_G0"] or 0) >= 0.8 * flat)
     expect(f"flat to within {limit:g} deg keeps 80 % of the planar conductance" in text,
            f"80 % to {limit} deg")
+    drawn = open(os.path.join(folder, "twist-limit-2.svg"), encoding="utf-8").read()
+    expect(f">≤ {limit:g}°<" in drawn, "the same on the molecule")
     average, = read_rows(folder, "twist_average")
     expect(average["torsion"] == "biphenyl", "the potential of the molecule file")
     kept = 100 * float(average["motional_average_G0"]) / float(average["planar_G0"])

@@ -15,7 +15,7 @@ static mho_status add_molecule(const command *cmd, const subject *s, int part, m
                          "--bond: %s", reason);
   if (status == MHO_OK)
     status = mho_twist_answer(&cmd->twist, m, &s->junction, &bonds, part, output,
-                              cmd->quiet ? NULL : output, error);
+                              cmd->quiet ? NULL : output, NULL, error);
   mho_twist_bonds_clear(&bonds);
   mho_output_warn(output, m->name, s->warnings & ~(unsigned)MHO_WARN_STRONG_TWIST);
   if (status == MHO_OK && !cmd->quiet) mho_assumption_note(output, m, &s->junction);

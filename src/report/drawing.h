@@ -83,6 +83,12 @@ MHO_MUST_USE mho_status mho_drawing_write_currents(const mho_molecule *molecule,
                                                    const mho_inside *inside,
                                                    mho_buffer *svg, mho_error *error);
 
+/* The angles within which bond[bonds] keep 80 % and half of the planar
+ * conductance. */
+MHO_MUST_USE mho_status mho_drawing_write_twist(const mho_molecule *molecule, const int *bond,
+                                                int bonds, const double limit_deg[2],
+                                                mho_buffer *svg, mho_error *error);
+
 /* What should I change?  Where a donor and where an acceptor raises the
  * conductance, and what a weaker bond does where one can turn. */
 MHO_MUST_USE mho_status mho_drawing_write_sensitivity(const mho_molecule *molecule,

@@ -181,6 +181,29 @@ mho_status mho_drawing_write_currents(const mho_molecule *m, const mho_inside *i
   return status;
 }
 
+/* --- how flat ------------------------------------------------------------- */
+
+mho_status mho_drawing_write_twist(const mho_molecule *m, const int *bond, int bonds,
+                                   const double limit_deg[2], mho_buffer *svg, mho_error *error)
+{
+  char half[WORDS_SIZE];
+  canvas c;
+  mho_status status = open_canvas(m, &c, error);
+  for (int k = 0; status == MHO_OK && k < bonds; k++) {
+    int place = of_bond(&c, bond[k]);
+    c.value[place] = 1;
+    snprintf(text_of(&c, place), WORDS_SIZE, "≤ %g°", limit_deg[0]);
+    snprintf(note_of(&c, place), WORDS_SIZE, "80 %% to %g deg", limit_deg[0]);
+  }
+  snprintf(half, sizeof half, "twisted by at most this%s it keeps 80 %%, by %g° half",
+           bonds > 1 ? " together" : "", limit_deg[1]);
+  const mho_drawing_key key[] = {{MHO_SHAPE_BAR, half},
+                                 {MHO_SHAPE_NONE, "of the conductance of the flat molecule"}};
+  if (status == MHO_OK) status = paint(m, &c, key, 2, true, 0, svg, error);
+  close_canvas(&c);
+  return status;
+}
+
 /* --- what to change ------------------------------------------------------- */
 
 /* Change of log10 G when a donor raises the energy of a site by 0.1 |beta|, and

@@ -123,11 +123,18 @@ static mho_status add_twist(const work *w, mho_error *error)
   int parts = MHO_TWIST_SWEEP | (q->map ? MHO_TWIST_MAP : 0) | (average ? MHO_TWIST_AVERAGE : 0);
   mho_twist_bonds bonds;
   mho_output words = {0};
+  double limit[2];
   char reason[480];
   mho_status status = mho_twist_choose(q, w->molecule, &bonds, reason, sizeof reason);
   if (status != MHO_OK) mho_fail(error, status, "study", "bond", "bond: %s", reason);
   else
-    status = mho_twist_answer(q, w->molecule, w->junction, &bonds, parts, w->output, &words, error);
+    status = mho_twist_answer(q, w->molecule, w->junction, &bonds, parts, w->output, &words, limit,
+                              error);
+  mho_buffer *svg;
+  if (status == MHO_OK)
+    status = open_picture(w, "twist", "twist-limit", "how flat it must be.", false, &svg, error);
+  if (status == MHO_OK)
+    status = mho_drawing_write_twist(w->molecule, bonds.bond, bonds.count, limit, svg, error);
   mho_twist_bonds_clear(&bonds);
   if (status == MHO_OK) status = take_remarks(&words, "twist", w->levers, error);
   mho_output_clear(&words);

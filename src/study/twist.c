@@ -235,10 +235,9 @@ static mho_status add_sweep(const work *w, mho_error *error)
   return status;
 }
 
-static mho_status add_words(const work *w, mho_error *error)
+static mho_status add_words(const work *w, double limit[2], mho_error *error)
 {
   static const double fraction[] = {0.8, 0.5};
-  double limit[2];
   mho_twist_law law;
   mho_status status = mho_twist_fit_law(w->rotor, w->fermi_ev, &law, error);
   if (status == MHO_OK) status = mho_twist_find_limits(w->rotor, 2, fraction, limit, error);
@@ -313,14 +312,16 @@ static mho_status add_average(const work *w, mho_error *error)
 
 mho_status mho_twist_answer(const mho_twist_question *question, const mho_molecule *molecule,
                             const mho_junction *junction, const mho_twist_bonds *bonds, int parts,
-                            mho_output *output, mho_output *words, mho_error *error)
+                            mho_output *output, mho_output *words, double *limit_deg,
+                            mho_error *error)
 {
   mho_rotor *rotor = NULL;
+  double limit[2];
   mho_status status =
       mho_rotor_create(molecule, junction, bonds->bond, bonds->count, &rotor, error);
   work w = {question, molecule, bonds, rotor, junction->fermi_ev, output, words};
   if (status == MHO_OK && parts & MHO_TWIST_SWEEP) status = add_sweep(&w, error);
-  if (status == MHO_OK && parts & MHO_TWIST_SWEEP && words) status = add_words(&w, error);
+  if (status == MHO_OK && parts & MHO_TWIST_SWEEP && words) status = add_words(&w, limit_deg ? limit_deg : limit, error);
   if (status == MHO_OK && parts & MHO_TWIST_MAP)
     status = question->bond.count == 2 ? add_plane(&w, error) : add_map(&w, error);
   if (status == MHO_OK && parts & MHO_TWIST_AVERAGE) status = add_average(&w, error);

@@ -53,12 +53,14 @@ bool mho_twist_applies(const mho_molecule *molecule);
 enum { MHO_TWIST_SWEEP = 1, MHO_TWIST_MAP = 2, MHO_TWIST_AVERAGE = 4 };
 
 /* Fills the tables of `parts` in output, opened where they are not yet there,
- * and what they say as notes of `words` (may be output; NULL: none). */
+ * and what they say as notes of `words` (may be output; NULL: none).  With
+ * words and a sweep limit_deg[2] (may be NULL) are the angles within which the
+ * conductance keeps 80 % and half of its planar value. */
 MHO_MUST_USE mho_status mho_twist_answer(const mho_twist_question *question,
                                          const mho_molecule *molecule,
                                          const mho_junction *junction,
                                          const mho_twist_bonds *bonds, int parts,
                                          mho_output *output, mho_output *words,
-                                         mho_error *error);
+                                         double *limit_deg, mho_error *error);
 
 #endif
