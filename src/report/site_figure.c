@@ -93,7 +93,7 @@ static void add_signed(char *words, const char *before, double value, const char
 {
   char number[40];
   mho_number_write(number, sizeof number, 2, fabs(value));
-  snprintf(words, WORDS_SIZE, "%.40s%s%s%.40s", before, value < 0 ? "−" : "+", number, after);
+  snprintf(words, WORDS_SIZE, "%.40s%s%.20s%.40s", before, value < 0 ? "−" : "+", number, after);
 }
 
 /* --- pairs ---------------------------------------------------------------- */
