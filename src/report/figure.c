@@ -13,6 +13,8 @@
 
 extern char **environ;
 
+enum { MARKED_SITES_MAX = 120 }; /* of larger molecules finding all nodes takes seconds */
+
 /* Below this a node is drawn as running out of the figure. */
 #define LOWEST_LOG10 (-9.0)
 
@@ -43,6 +45,7 @@ mho_status mho_figure_nodes(const mho_plan *plan, double fermi_ev, double **node
   mho_nodes found;
   *node_ev = NULL;
   *nodes = 0;
+  if (mho_plan_sites(plan) > MARKED_SITES_MAX) return MHO_OK;
   mho_status status = mho_nodes_find(plan, &found, error);
   if (status == MHO_OK && found.count > 0) {
     *node_ev = malloc(found.count * sizeof **node_ev);

@@ -31,8 +31,8 @@ typedef struct {
   const double *node_ev;
 } mho_curve;
 
-/* Energies of the exact nodes of a plan above the Fermi level, for a curve; the
- * caller frees them.  Errors: those of mho_nodes_find. */
+/* Energies of the exact nodes of a plan above the Fermi level, for a curve, none
+ * for more than 120 sites; the caller frees them.  Errors: those of mho_nodes_find. */
 MHO_MUST_USE mho_status mho_figure_nodes(const mho_plan *plan, double fermi_ev, double **node_ev,
                                          size_t *nodes, mho_error *error);
 
