@@ -42,8 +42,8 @@ static const verb verbs[] = {
      command_transmission},
     {TWIST, "twist", "MOLECULE...", "how flat a bond must be, and its thermal average",
      "T and thermal conductance against the angle of a bond, the Fermi level held\n"
-     "where the molecule as given has it.  With --torsion the average over the\n"
-     "thermal motion instead: of G (motional: it turns faster than anyone measures)\n"
+     "where the molecule as given has it.  With --average or --torsion the average over\n"
+     "the thermal motion instead: of G (motional: it turns faster than anyone measures)\n"
      "and of log G (frozen: every junction keeps its angle).  Two --bond and --map\n"
      "give T of both angles.",
      command_twist},

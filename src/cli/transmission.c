@@ -7,7 +7,6 @@
 #include "report/stages.h"
 
 #define DEFAULT_REACH_EV 3.0
-#define LEAST_FLOWING 1e-20 /* of T; below, currents are rounding (mho/inside.h) */
 
 enum { EVEN_POINTS = 601 };
 
@@ -130,17 +129,14 @@ static mho_status add_inside(const command *cmd, const subject *s, const mho_pla
 {
   double energy = s->junction.fermi_ev + (cmd->has_at ? cmd->at_ev : 0);
   const mho_molecule *m = &s->molecule;
-  mho_inside inside = {0};
-  mho_point point;
+  mho_inside inside;
   mho_buffer svg = {0};
-  mho_status status = mho_transmission_sweep(plan, 1, &energy, &point, error);
-  if (status == MHO_OK) status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
-  bool node = status == MHO_OK && (point.node || !(inside.transmission > LEAST_FLOWING));
-  if (node) *warnings |= point.method == MHO_METHOD_NO_PATH ? MHO_WARN_NO_PI_PATH : MHO_WARN_NEAR_NODE;
+  mho_status status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
+  if (status == MHO_OK && !inside.flows) *warnings |= MHO_WARN_NEAR_NODE;
   if (status == MHO_OK && cmd->orbitals)
     mho_orbitals_rows(table, m->name, s->junction.fermi_ev, &inside);
-  if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside, node);
-  if (status == MHO_OK && cmd->measured.figure && node)
+  if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside);
+  if (status == MHO_OK && cmd->measured.figure && !inside.flows)
     status = mho_fail(error, MHO_ERR_NOT_FINITE, "cli", "figure",
                       "--figure: nothing flows, T has a node at this energy");
   if (status == MHO_OK && cmd->measured.figure) {

@@ -156,16 +156,16 @@ mho_table *mho_currents_table(mho_output *output)
   return mho_output_table(output, "currents", columns, COUNT(columns));
 }
 
-void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside,
-                       bool node)
+void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside)
 {
   for (size_t i = 0; i < inside->bonds; i++) {
     const mho_bond_current *current = &inside->bond[i];
-    bool back = current->flow < 0 && !node;
+    bool back = inside->flows && current->flow < 0;
     mho_table_text(table, molecule->name);
     mho_table_text(table, molecule->site[back ? current->to : current->from].id);
     mho_table_text(table, molecule->site[back ? current->from : current->to].id);
-    mho_table_optional(table, !node, node ? 0 : fabs(current->flow) / inside->transmission);
+    mho_table_optional(table, inside->flows,
+                       inside->flows ? fabs(current->flow) / inside->transmission : 0);
   }
 }
 

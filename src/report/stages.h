@@ -43,11 +43,11 @@ mho_table *mho_nodes_table(mho_output *output);
 void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_node *node);
 
-/* Currents relative to T, each from where it comes to where it goes; with
- * `node` they have no value.  What each orbital adds to T. */
+/* Currents relative to T, each from where it comes to where it goes, without a
+ * value where nothing flows.  What each orbital adds to T. */
 mho_table *mho_currents_table(mho_output *output);
-void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside,
-                       bool node);
+void mho_currents_rows(mho_table *table, const mho_molecule *molecule,
+                       const mho_inside *inside);
 mho_table *mho_orbitals_table(mho_output *output);
 void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
                        const mho_inside *inside);

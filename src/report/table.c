@@ -37,9 +37,18 @@ static bool grow(void **array, size_t count, size_t size)
   return larger != NULL;
 }
 
+mho_table *mho_output_find(const mho_output *output, const char *name)
+{
+  for (size_t i = 0; i < output->tables; i++)
+    if (!strcmp(output->table[i].name, name)) return &output->table[i];
+  return NULL;
+}
+
 mho_table *mho_output_table(mho_output *output, const char *name,
                             const char *const *column, size_t columns)
 {
+  mho_table *known = mho_output_find(output, name);
+  if (known) return known;
   if (!grow((void **)&output->table, output->tables, sizeof *output->table)) {
     output->failed = true;
     return NULL;
@@ -47,13 +56,6 @@ mho_table *mho_output_table(mho_output *output, const char *name,
   mho_table *table = &output->table[output->tables++];
   *table = (mho_table){.name = name, .column = column, .columns = columns};
   return table;
-}
-
-mho_table *mho_output_find(const mho_output *output, const char *name)
-{
-  for (size_t i = 0; i < output->tables; i++)
-    if (!strcmp(output->table[i].name, name)) return &output->table[i];
-  return NULL;
 }
 
 void mho_output_warn(mho_output *output, const char *molecule, unsigned warnings)

@@ -54,8 +54,8 @@ typedef struct {
 
 void mho_output_clear(mho_output *output);
 
-/* A new table of the output, or NULL (and output->failed).  The pointer holds
- * until the next call. */
+/* The table of the output by that name, opened where it is not yet there, or
+ * NULL (and output->failed).  The pointer holds until the next call. */
 mho_table *mho_output_table(mho_output *output, const char *name,
                             const char *const *column, size_t columns);
 

@@ -13,8 +13,6 @@
 #include "report/stages.h"
 #include "study/measured.h"
 
-#define LEAST_FLOWING 1e-20 /* of T; below, currents are rounding (mho/inside.h) */
-
 enum { SCREEN_NAME = 80 };
 
 typedef struct {
@@ -102,8 +100,7 @@ static mho_status add_sensitivity(const work *w, mho_error *error)
   mho_sensitivity result;
   mho_sensitivity_options options = mho_sensitivity_defaults();
   options.seed = MHO_STUDY_SEED;
-  mho_table *table = mho_output_find(w->output, "sensitivity");
-  if (!table) table = mho_sensitivity_table(w->output);
+  mho_table *table = mho_sensitivity_table(w->output);
   mho_buffer *svg;
   mho_status status =
       mho_sensitivity_compute(w->molecule, w->junction, &options, &result, error);
@@ -170,8 +167,7 @@ static mho_status add_modifications(const work *w, mho_output *words, mho_error 
 {
   mho_modifications ranked;
   mho_buffer *svg;
-  mho_table *table = mho_output_find(w->output, "modify");
-  if (!table) table = mho_modify_table(w->output);
+  mho_table *table = mho_modify_table(w->output);
   mho_status status = mho_modify_rank(w->molecule, w->junction,
                                       mho_interference_window(&w->study->interference), &ranked,
                                       error);
@@ -195,14 +191,12 @@ static mho_status add_interference(const work *w, mho_error *error)
   int from;
   mho_status status = mho_interference_find(q, w->molecule, w->junction, true, &map, &from, error);
   if (status == MHO_OK) {
-    mho_table *table = mho_output_find(w->output, "interference");
-    if (!table) table = mho_interference_table(w->output);
+    mho_table *table = mho_interference_table(w->output);
     mho_interference_rows(table, w->molecule, &map);
     mho_interference_note(&words, w->molecule, &map);
   }
   if (status == MHO_OK && q->rules) {
-    mho_table *table = mho_output_find(w->output, "rules");
-    if (!table) table = mho_rules_table(w->output);
+    mho_table *table = mho_rules_table(w->output);
     mho_rules_rows(table, w->molecule, &map);
     mho_rules_note(&words, w->molecule, &map);
   }
@@ -214,33 +208,35 @@ static mho_status add_interference(const work *w, mho_error *error)
   return status;
 }
 
+static mho_status draw_currents(const work *w, const mho_inside *inside, mho_error *error)
+{
+  mho_output words = {0};
+  mho_buffer *svg;
+  mho_status status;
+  if (inside->flows) {
+    status = open_picture(w, "currents", "currents", "currents at the Fermi level.", false, &svg,
+                          error);
+    return status == MHO_OK ? mho_drawing_write_currents(w->molecule, inside, svg, error) : status;
+  }
+  mho_output_note(&words, "%s: T has a node at the Fermi level, so no current is told",
+                  w->molecule->name);
+  status = take_remarks(&words, "currents", w->levers, error);
+  mho_output_clear(&words);
+  return status;
+}
+
 static mho_status add_inside(const work *w, mho_error *error)
 {
   double energy = w->junction->fermi_ev;
   mho_plan *plan = NULL;
   mho_inside inside = {0};
-  mho_point point;
-  mho_buffer *svg;
   mho_status status = mho_plan_create(w->junction, &plan, error);
-  if (status == MHO_OK) status = mho_transmission_sweep(plan, 1, &energy, &point, error);
   if (status == MHO_OK) status = mho_inside_compute(w->junction, plan, energy, &inside, error);
-  bool node = status == MHO_OK && (point.node || !(inside.transmission > LEAST_FLOWING));
-  if (status == MHO_OK && w->study->orbitals) {
-    mho_table *table = mho_output_find(w->output, "orbitals");
-    if (!table) table = mho_orbitals_table(w->output);
-    mho_orbitals_rows(table, w->molecule->name, energy, &inside);
-  }
+  if (status == MHO_OK && w->study->orbitals)
+    mho_orbitals_rows(mho_orbitals_table(w->output), w->molecule->name, energy, &inside);
   if (status == MHO_OK && w->study->currents) {
-    mho_table *table = mho_output_find(w->output, "currents");
-    if (!table) table = mho_currents_table(w->output);
-    mho_currents_rows(table, w->molecule, &inside, node);
-    if (node) mho_output_note(w->output, "%s: T has a node at the Fermi level, so no current is told",
-                              w->molecule->name);
-    else {
-      status = open_picture(w, "currents", "currents", "currents at the Fermi level.", false, &svg,
-                            error);
-      if (status == MHO_OK) status = mho_drawing_write_currents(w->molecule, &inside, svg, error);
-    }
+    mho_currents_rows(mho_currents_table(w->output), w->molecule, &inside);
+    status = draw_currents(w, &inside, error);
   }
   mho_inside_clear(&inside);
   mho_plan_free(plan);

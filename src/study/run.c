@@ -236,7 +236,7 @@ static void say_levers(run *r)
     size_t name = colon ? (size_t)(colon - remark->text) : 0;
     bool first = i == 0 || strcmp(remark->section, remark[-1].section) ||
                  strncmp(remark->text, remark[-1].text, name + 1);
-    if (first) say(r, mho_print_text("%s.", remark->text));
+    if (first && strcmp(remark->section, "currents")) say(r, mho_print_text("%s.", remark->text));
   }
 }
 

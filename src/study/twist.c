@@ -209,19 +209,13 @@ static double *choose_angles(const mho_twist_question *q, long standard, long *c
   return angle;
 }
 
-static mho_table *table_of(mho_output *output, const char *name, mho_table *open(mho_output *))
-{
-  mho_table *table = mho_output_find(output, name);
-  return table ? table : open(output);
-}
-
 static mho_status add_sweep(const work *w, mho_error *error)
 {
   long count;
   double *angle = choose_angles(w->question, SWEEP_ANGLES, &count);
   double *log10_g0 = malloc((size_t)count * sizeof *log10_g0);
   mho_point *point = malloc((size_t)count * sizeof *point);
-  mho_table *table = table_of(w->output, "twist", mho_twist_table);
+  mho_table *table = mho_twist_table(w->output);
   mho_status status = angle && log10_g0 && point ? MHO_OK : fail_memory(error);
   if (status == MHO_OK)
     status = mho_rotor_sweep(w->rotor, w->fermi_ev, (size_t)count, angle, point, error);
@@ -254,7 +248,7 @@ static mho_status add_map(const work *w, mho_error *error)
   mho_point *point = malloc((size_t)count * sizeof *point);
   double low = q->energies.given ? q->energies.low : -DEFAULT_REACH_EV;
   double high = q->energies.given ? q->energies.high : DEFAULT_REACH_EV;
-  mho_table *table = table_of(w->output, "twist_map", mho_twist_map_table);
+  mho_table *table = mho_twist_map_table(w->output);
   mho_status status = angle && point ? MHO_OK : fail_memory(error);
   for (long e = 0; status == MHO_OK && e < MAP_ENERGIES; e++) {
     double energy = on_grid(low, high, e, MAP_ENERGIES);
@@ -275,7 +269,7 @@ static mho_status add_plane(const work *w, mho_error *error)
                                bond_name(m, w->bonds->bond[1], second)};
   long count;
   double *angle = choose_angles(w->question, MAP_ANGLES, &count);
-  mho_table *table = table_of(w->output, "twist_plane", mho_twist_plane_table);
+  mho_table *table = mho_twist_plane_table(w->output);
   mho_status status = angle ? MHO_OK : fail_memory(error);
   if (status == MHO_OK && count > PLANE_ANGLES_MAX)
     status = mho_fail(error, MHO_ERR_LIMIT, "study", "samples",
@@ -296,7 +290,7 @@ static mho_status add_average(const work *w, mho_error *error)
   mho_torsion torsion[MHO_TWIST_AVERAGE_BONDS_MAX];
   mho_twist_average average;
   char *names;
-  mho_table *table = table_of(w->output, "twist_average", mho_twist_average_table);
+  mho_table *table = mho_twist_average_table(w->output);
   mho_status status = mho_twist_potentials(w->question, w->molecule, w->bonds, torsion, &names, error);
   if (status == MHO_OK) status = mho_twist_average_compute(w->rotor, torsion, &average, error);
   if (status == MHO_OK) {
