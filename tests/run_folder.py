@@ -4,6 +4,7 @@
 results or the earlier ones, no gnuplot, interruption, and a report that opens
 offline."""
 import base64
+import csv
 import hashlib
 import html.parser
 import json
@@ -65,17 +66,59 @@ def check_report(folder):
     reader = Reader()
     reader.feed(text)
     expect(not reader.open, "every element is closed")
-    for section in ("question", "molecules", "comparison", "predictions", "transmission", "warnings",
-                    "assumptions", "limits"):
-        expect(section in reader.sections, f"section {section}")
+    expect(reader.sections == ["question", "molecules", "comparison", "predictions", "sensitivity",
+                               "twist", "interference", "transmission", "currents", "warnings",
+                               "assumptions", "limits"], f"sections {reader.sections}")
     expect(all(link.startswith("data:") for link in reader.links), "nothing is loaded")
     plain = re.sub(r"data:[^\"]*", "", text).replace('xmlns="http://www.w3.org/2000/svg"', "")
     expect("http" not in plain, "no address in the report")
-    expect(len(reader.images) == 3 + 6, "three figures and the drawings of six molecules")
+    # comparison, 2 x T(E), twist and its map, 2 pair matrices; six molecules, what
+    # to change in each, how flat one must be, 2 maps of pairs, 2 of changes, currents but for the node
+    expect(len(reader.images) == 7 + 6 + 6 + 1 + 2 + 2 + 5, f"{len(reader.images)} images")
+    check_levers(folder, text)
     for image in reader.images:
         svg = base64.b64decode(image.split(",", 1)[1])
         expect(svg.rstrip().endswith(b"</svg>"), "figures are whole")
     expect("biphenyl-4,4&#39;-diamine" in text, "names are escaped")
+
+
+def read_rows(folder, name):
+    with open(os.path.join(folder, name + ".csv"), encoding="utf-8") as f:
+        return list(csv.DictReader(f))
+
+
+def check_levers(folder, text):
+    """The sentences of twist and interference say what their tables say."""
+    twist = read_rows(folder, "twist")
+    flat = float(twist[0]["conductance_G0"])
+    limit = max(float(row["angle_deg"]) for row in twist
+                if float(row["conductance_G0"] or 0) >= 0.8 * flat)
+    expect(f"flat to within {limit:g} deg keeps 80 % of the planar conductance" in text,
+           f"80 % to {limit} deg")
+    drawn = open(os.path.join(folder, "twist-limit-2.svg"), encoding="utf-8").read()
+    expect(f">≤ {limit:g}°<" in drawn, "the same on the molecule")
+    average, = read_rows(folder, "twist_average")
+    expect(average["torsion"] == "biphenyl", "the potential of the molecule file")
+    kept = 100 * float(average["motional_average_G0"]) / float(average["planar_G0"])
+    expect(f"leaves {kept:.0f} % of the planar conductance" in text, "what thermal motion leaves")
+    expect(len(read_rows(folder, "twist_map")) == 46 * 201, "the map over angle and energy")
+    pairs = [row for row in read_rows(folder, "interference") if row["molecule"].startswith("benzene")]
+    nodes = sum(row["class"].startswith("node") for row in pairs)
+    good = sum(row["class"] == "constructive" for row in pairs)
+    expect(f"of {len(pairs)} pairs of sites {good} conduct, {nodes} are nodes" in text, "pairs in words")
+    own, = (row for row in pairs if {row["site_i"], row["site_j"]} == {"n1", "n3"})
+    shift = abs(float(own["overturning_shift_eV"]))
+    expect(f"that ends once the Fermi level moves by {shift:.2g} eV" in text, "how far E_F may move")
+    for molecule, sum_ in currents_out(folder).items():
+        expect(abs(sum_ - 1) < 1e-5, f"{molecule}: what leaves the left contact is T")
+
+
+def currents_out(folder):
+    out = {}
+    for row in read_rows(folder, "currents"):
+        if row["current"] and row["from"] in ("n1", "n2", "n4") and row["to"].startswith("c"):
+            out[row["molecule"]] = out.get(row["molecule"], 0) + float(row["current"])
+    return out
 
 
 def check_tables(folder):

@@ -9,6 +9,7 @@
 #include <mho/graph.h>
 #include <mho/parameters.h>
 #include <mho/status.h>
+#include <mho/torsion.h>
 
 #define MHO_DEFAULT_BETA_EV (-2.7)
 #define MHO_DEFAULT_TEMPERATURE_K 300.0
@@ -31,7 +32,15 @@ typedef struct {
   double hopping_ev;     /* untwisted */
   double twist_deg;      /* always multiplies: t = hopping * cos(twist) */
   bool rotatable;
+  const char *torsion; /* kind: a name of mho_torsion_table, or NULL */
 } mho_bond;
+
+/* The torsion potential that a file gives. */
+typedef struct {
+  int bond; /* -1: of every bond without one of its own */
+  char *name; /* as the file writes it */
+  mho_torsion potential;
+} mho_bond_torsion;
 
 typedef enum {
   MHO_CHANNELS_INDEPENDENT, /* Gamma_ij = coupling * delta_ij on the sites */
@@ -83,6 +92,9 @@ typedef struct {
   int charge;
   mho_contact contact[2]; /* MHO_LEFT, MHO_RIGHT */
   mho_fermi fermi;
+  int torsion_count;
+  mho_bond_torsion *torsion;
+  bool frozen; /* every junction keeps its angles: log G is averaged, not G */
   /* The structure that was drawn (no atoms where the file gives the sites
    * themselves), and [site_count] the atom of each site. */
   mho_graph graph;
@@ -111,9 +123,21 @@ MHO_API void mho_molecule_clear(mho_molecule *molecule);
 MHO_API int mho_molecule_find_site(const mho_molecule *molecule,
                                    const char *id);
 
+/* Index of the bond between two sites that is written `C5-C8`, or -1. */
+MHO_API int mho_molecule_find_bond(const mho_molecule *molecule,
+                                   const char *text);
+
 /* Energy of a site, and hopping of a bond with its twist, in eV. */
 MHO_API double mho_molecule_onsite_ev(const mho_molecule *molecule, int site);
 MHO_API double mho_molecule_hopping_ev(const mho_molecule *molecule, int bond);
+
+/* Torsion potential of a bond and its name: of the file, else of its kind.
+ * Errors: MHO_ERR_REFERENCE (neither is known). */
+MHO_API MHO_MUST_USE mho_status mho_molecule_torsion(const mho_molecule *molecule,
+                                                     int bond,
+                                                     mho_torsion *torsion,
+                                                     const char **name,
+                                                     mho_error *error);
 
 /* Distance between the contacts (the centres of their atoms) in nm.
  * Errors: MHO_ERR_MEMORY. */

@@ -16,7 +16,8 @@ typedef struct {
 /* A potential of the literature, by the name of its bond. */
 typedef struct {
   const char *name, *source;
-  double planar_kj_per_mol, perpendicular_kj_per_mol; /* the two barriers */
+  double barrier_kj_per_mol[2]; /* at 0 and 90 degrees, or */
+  double term_kj_per_mol[MHO_TORSION_TERMS + 1]; /* both barriers are 0: the v_n */
 } mho_torsion_row;
 
 MHO_BEGIN_DECLARATIONS
@@ -40,9 +41,11 @@ MHO_API MHO_MUST_USE mho_status mho_torsion_from_table(
 
 /* Reads what a user writes: a name of the table below, two barriers
  * `6.0 kJ/mol, 6.5 kJ/mol`, terms `v2 = -0.25 kJ/mol, v4 = 3.1 kJ/mol`, or the
- * path of a CSV with the columns angle_deg,energy_kJ_per_mol.
+ * path of a CSV with the columns angle_deg,energy_kJ_per_mol, as seen from the
+ * folder of the file `beside` (NULL: from here).
  * Errors: any that mho_status_is_input tells, MHO_ERR_MEMORY. */
 MHO_API MHO_MUST_USE mho_status mho_torsion_read(const char *text,
+                                                 const char *beside,
                                                  mho_torsion *torsion,
                                                  mho_error *error);
 

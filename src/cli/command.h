@@ -9,6 +9,8 @@
 #include <mho/mho.h>
 
 #include "report/table.h"
+#include "study/interference.h"
+#include "study/twist.h"
 
 enum { EXIT_DONE = 0, EXIT_RUNTIME = 1, EXIT_INPUT = 2 };
 
@@ -45,10 +47,9 @@ typedef struct {
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;
-  bool map, has_angles, rules, modify, every_site;
-  double angle_low_deg, angle_high_deg, at_deg;
-  int bonds;
-  const char *bond[8], *torsion, *from;
+  bool currents, orbitals;
+  mho_twist_question twist;
+  mho_interference_question interference;
   double window_ev;
   bool has_window;
   unsigned long seed;

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "cli/command.h"
+#include "report/drawing.h"
 #include "report/stages.h"
 
 static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
@@ -39,6 +40,12 @@ static mho_status add_sensitivity(const command *cmd, const subject *s, mho_outp
     mho_output_warn(output, s->molecule.name, s->warnings | node);
     if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
   }
+  mho_buffer svg = {0};
+  if (status == MHO_OK && cmd->measured.figure) {
+    status = mho_drawing_write_sensitivity(&s->molecule, &result, &svg, error);
+    if (status == MHO_OK) status = mho_buffer_save(&svg, cmd->measured.figure, "cli", error);
+  }
+  mho_buffer_clear(&svg);
   mho_sensitivity_clear(&result);
   return status;
 }
@@ -51,6 +58,8 @@ static int list_sensitivities(const command *cmd, mho_error *error)
   subjects list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
+  if (status == MHO_OK && cmd->measured.figure && list.count > 1)
+    status = mho_fail(error, MHO_ERR_USAGE, "cli", "figure", "--figure draws one molecule");
   mho_table *table = mho_sensitivity_table(&output);
   for (int i = 0; status == MHO_OK && table && i < list.count; i++)
     status = add_sensitivity(cmd, &list.item[i], &output, table, error);
@@ -66,6 +75,8 @@ static int list_sensitivities(const command *cmd, mho_error *error)
 int command_conductance(const command *cmd, mho_error *error)
 {
   if (cmd->sensitivity) return list_sensitivities(cmd, error);
+  if (cmd->measured.figure)
+    return usage_error(cmd->verb, "--figure draws the molecule with its --sensitivity");
   subjects list;
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);

@@ -42,8 +42,8 @@ static const verb verbs[] = {
      command_transmission},
     {TWIST, "twist", "MOLECULE...", "how flat a bond must be, and its thermal average",
      "T and thermal conductance against the angle of a bond, the Fermi level held\n"
-     "where the molecule as given has it.  With --torsion the average over the\n"
-     "thermal motion instead: of G (motional: it turns faster than anyone measures)\n"
+     "where the molecule as given has it.  With --average or --torsion the average over\n"
+     "the thermal motion instead: of G (motional: it turns faster than anyone measures)\n"
      "and of log G (frozen: every junction keeps its angle).  Two --bond and --map\n"
      "give T of both angles.",
      command_twist},
@@ -79,8 +79,9 @@ typedef struct {
 } option_row;
 
 enum {
-  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_FROM,
-  OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
+  OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_AVERAGE, OPT_TORSION, OPT_RULES,
+  OPT_MODIFY, OPT_FROM, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_CURRENTS,
+  OPT_ORBITALS, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
   OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
@@ -98,9 +99,11 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_ENERGIES] = {TRANSMISSION | TWIST, "energies", 0, "'LOW, HIGH'",
                       "range above the Fermi level (default '-3 eV, 3 eV')"},
     [OPT_TWIST_MAP] = {TWIST, "map", 0, NULL, "T against angle and energy, or against two angles"},
+    [OPT_AVERAGE] = {TWIST, "average", 0, NULL,
+                     "over the thermal motion, by the molecule file's torsion or the kind of bond"},
     [OPT_TORSION] = {TWIST, "torsion", 0, "POTENTIAL",
-                     "biphenyl, tolane ..., two barriers '6 kJ/mol, 6.5 kJ/mol' at 0 and 90 deg, "
-                     "terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
+                     "the average over biphenyl, tolane ..., two barriers '6 kJ/mol, 6.5 kJ/mol' at "
+                     "0 and 90 deg, terms 'v2 = 1 kJ/mol, v4 = 3 kJ/mol' of cos, or a CSV"},
     [OPT_RULES] = {INTERFERENCE, "rules", 0, NULL,
                    "rules of thumb beside the exact result, and where they fail"},
     [OPT_MODIFY] = {INTERFERENCE, "modify", 0, NULL,
@@ -116,6 +119,10 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
+    [OPT_CURRENTS] = {TRANSMISSION, "currents", 0, NULL,
+                      "list the currents through bonds at one energy, as parts of T"},
+    [OPT_ORBITALS] = {TRANSMISSION, "orbitals", 0, NULL,
+                      "list what each molecular orbital adds to T at one energy"},
     [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
     [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
@@ -182,8 +189,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_KEEP_GOING] = {MEASURED, "keep-going", 0, NULL,
                         "use the other files where one is bad; still exit with 2"},
     [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
-    [OPT_FIGURE] = {MEASURED | TWIST | INTERFERENCE, "figure", 0, "FILE.svg",
-                    "draw the table with gnuplot"},
+    [OPT_FIGURE] = {MEASURED | TABLES, "figure", 0, "FILE.svg",
+                    "draw the table; curves and maps need gnuplot"},
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
     [OPT_VERBOSE] = {TABLES, "verbose", 0, NULL, "say which methods were used, and why"},
     [OPT_HELP] = {EVERY, "help", 'h', NULL, "this help"},
@@ -298,15 +305,6 @@ int read_range(const command *cmd, const char *option, const char *text,
   return code;
 }
 
-static int read_bond(command *cmd, const char *text)
-{
-  const int most = sizeof cmd->bond / sizeof *cmd->bond;
-  if (cmd->bonds == most)
-    return usage_error(cmd->verb, "--bond: at most %d are allowed; all stands for every one", most);
-  cmd->bond[cmd->bonds++] = text;
-  return EXIT_DONE;
-}
-
 int read_count(const char *verb_name, const char *option, const char *text, long low, long high,
                long *value)
 {
@@ -357,31 +355,36 @@ static int read_twist(command *cmd, const char *text)
   return EXIT_DONE;
 }
 
+/* An option of a question that a study may ask too; EXIT_RUNTIME: none. */
+static int read_question(command *cmd, const char *name, const char *text)
+{
+  bool twist = !strcmp(cmd->verb, "twist");
+  if (!twist && strcmp(cmd->verb, "interference")) return EXIT_RUNTIME;
+  size_t count;
+  const mho_option *table = twist ? mho_twist_options(&count)
+                                  : mho_interference_question_options(&count);
+  const mho_option *option = mho_option_find(table, count, name);
+  void *question = twist ? (void *)&cmd->twist : (void *)&cmd->interference;
+  char reason[320];
+  if (!option) return EXIT_RUNTIME;
+  if (mho_option_read(option, text, question, reason, sizeof reason) == MHO_OK) return EXIT_DONE;
+  return usage_error(cmd->verb, "--%s: %s", name, reason);
+}
+
 static int read_option(command *cmd, int which, const char *text)
 {
+  int code = read_question(cmd, options[which].name, text);
+  if (code != EXIT_RUNTIME) return code;
   switch (which) {
   case OPT_ENERGIES:
     cmd->has_energies = true;
     return read_range(cmd, "energies", text, MHO_ENERGY, "-3 eV, 3 eV", -1000, 1000,
                       &cmd->energy_low_ev, &cmd->energy_high_ev);
-  case OPT_ANGLES:
-    cmd->has_angles = true;
-    return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", -360, 360, &cmd->angle_low_deg,
-                      &cmd->angle_high_deg);
-  case OPT_BOND: return read_bond(cmd, text);
-  case OPT_RULES: cmd->rules = true; return EXIT_DONE;
-  case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;
-  case OPT_FROM: cmd->from = text; return EXIT_DONE;
-  case OPT_EVERY_SITE: cmd->every_site = true; return EXIT_DONE;
-  case OPT_TWIST_MAP: cmd->map = true; return EXIT_DONE;
-  case OPT_TORSION: cmd->torsion = text; return EXIT_DONE;
   case OPT_SAMPLES:
     cmd->has_samples = true;
     return read_count(cmd->verb, "samples", text, 2, 1000000, &cmd->samples);
   case OPT_AT:
     cmd->has_at = true;
-    if (!strcmp(cmd->verb, "twist"))
-      return read_quantity(cmd->verb, "at", text, MHO_ANGLE, -360, 360, &cmd->at_deg);
     return read_quantity(cmd->verb, "at", text, MHO_ENERGY, -1000, 1000, &cmd->at_ev);
   case OPT_SEED: return read_seed(cmd, text);
   case OPT_SENSITIVITY: cmd->sensitivity = true; return EXIT_DONE;
@@ -390,6 +393,8 @@ static int read_option(command *cmd, int which, const char *text)
     return read_quantity(cmd->verb, "window", text, MHO_ENERGY, 0, 10, &cmd->window_ev);
   case OPT_POLES: cmd->poles = true; return EXIT_DONE;
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
+  case OPT_CURRENTS: cmd->currents = true; return EXIT_DONE;
+  case OPT_ORBITALS: cmd->orbitals = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;

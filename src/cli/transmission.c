@@ -2,6 +2,8 @@
 #include <stdlib.h>
 
 #include "cli/command.h"
+#include "report/drawing.h"
+#include "report/figure.h"
 #include "report/stages.h"
 
 #define DEFAULT_REACH_EV 3.0
@@ -32,7 +34,39 @@ static mho_status choose_energies(const command *cmd, const subject *s, const mh
   return MHO_OK;
 }
 
-static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan,
+/* Curves for --figure, which own their numbers. */
+typedef struct {
+  int count;
+  mho_curve curve[MHO_CURVES_MAX];
+  double *energy_ev[MHO_CURVES_MAX], *node_ev[MHO_CURVES_MAX];
+  mho_point *point[MHO_CURVES_MAX];
+} curves;
+
+static void curves_clear(curves *c)
+{
+  for (int i = 0; i < c->count; i++) {
+    free(c->energy_ev[i]);
+    free(c->node_ev[i]);
+    free(c->point[i]);
+  }
+}
+
+/* Takes energies and points over. */
+static mho_status keep_curve(curves *c, const subject *s, const mho_plan *plan, double *energy,
+                             mho_point *point, size_t count, mho_error *error)
+{
+  int k = c->count++;
+  mho_curve *curve = &c->curve[k];
+  *curve = (mho_curve){.name = s->molecule.name, .count = count, .energy_ev = energy, .point = point};
+  c->energy_ev[k] = energy;
+  c->point[k] = point;
+  mho_status status = mho_figure_nodes(plan, s->junction.fermi_ev, &c->node_ev[k], &curve->nodes,
+                                       error);
+  curve->node_ev = c->node_ev[k];
+  return status;
+}
+
+static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan, curves *kept,
                             mho_output *output, mho_table *table, unsigned *warnings, mho_error *error)
 {
   double *relative = NULL, *energy = NULL;
@@ -56,8 +90,10 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
   }
   if (status == MHO_OK && cmd->verbose)
     mho_method_note(output, s->molecule.name, plan, point, count);
-  free(relative);
   free(energy);
+  if (status == MHO_OK && cmd->measured.figure)
+    return keep_curve(kept, s, plan, relative, point, count, error);
+  free(relative);
   free(point);
   return status;
 }
@@ -87,8 +123,33 @@ static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *t
   return status;
 }
 
-static mho_status add_molecule(const command *cmd, const subject *s, mho_output *output,
-                               mho_table *table, mho_error *error)
+/* Currents or orbitals at one energy. */
+static mho_status add_inside(const command *cmd, const subject *s, const mho_plan *plan,
+                             mho_table *table, unsigned *warnings, mho_error *error)
+{
+  double energy = s->junction.fermi_ev + (cmd->has_at ? cmd->at_ev : 0);
+  const mho_molecule *m = &s->molecule;
+  mho_inside inside;
+  mho_buffer svg = {0};
+  mho_status status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
+  if (status == MHO_OK && !inside.flows) *warnings |= MHO_WARN_NEAR_NODE;
+  if (status == MHO_OK && cmd->orbitals)
+    mho_orbitals_rows(table, m->name, s->junction.fermi_ev, &inside);
+  if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside);
+  if (status == MHO_OK && cmd->measured.figure && !inside.flows)
+    status = mho_fail(error, MHO_ERR_NOT_FINITE, "cli", "figure",
+                      "--figure: nothing flows, T has a node at this energy");
+  if (status == MHO_OK && cmd->measured.figure) {
+    status = mho_drawing_write_currents(m, &inside, &svg, error);
+    if (status == MHO_OK) status = mho_buffer_save(&svg, cmd->measured.figure, "cli", error);
+  }
+  mho_buffer_clear(&svg);
+  mho_inside_clear(&inside);
+  return status;
+}
+
+static mho_status add_molecule(const command *cmd, const subject *s, curves *kept,
+                               mho_output *output, mho_table *table, mho_error *error)
 {
   mho_plan *plan = NULL;
   unsigned warnings = s->warnings;
@@ -96,7 +157,8 @@ static mho_status add_molecule(const command *cmd, const subject *s, mho_output 
   if (status == MHO_OK)
     status = cmd->poles   ? add_poles(s, plan, table, error)
              : cmd->nodes ? add_nodes(s, plan, table, &warnings, error)
-                          : add_sweep(cmd, s, plan, output, table, &warnings, error);
+             : cmd->currents || cmd->orbitals ? add_inside(cmd, s, plan, table, &warnings, error)
+                          : add_sweep(cmd, s, plan, kept, output, table, &warnings, error);
   mho_plan_free(plan);
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
@@ -107,8 +169,16 @@ static int check_options(const command *cmd)
 {
   if (cmd->has_at && (cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb, "--at gives one row; it excludes --energies and --samples");
-  if (cmd->poles && cmd->nodes)
-    return usage_error(cmd->verb, "--poles and --nodes exclude each other; one table a call");
+  if (cmd->poles + cmd->nodes + cmd->currents + cmd->orbitals > 1)
+    return usage_error(cmd->verb, "--poles, --nodes, --currents and --orbitals exclude each other; "
+                                  "one table a call");
+  if ((cmd->currents || cmd->orbitals) && (cmd->has_samples || cmd->has_energies))
+    return usage_error(cmd->verb, "--%s looks at one energy (--at, default the Fermi level); it "
+                                  "excludes --energies and --samples",
+                       cmd->currents ? "currents" : "orbitals");
+  if (cmd->measured.figure && (cmd->poles || cmd->nodes || cmd->orbitals || cmd->has_at) &&
+      !cmd->currents)
+    return usage_error(cmd->verb, "--figure draws T(E) with its nodes, or --currents");
   if ((cmd->poles || cmd->nodes) && (cmd->has_at || cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb,
                        "--%s lists all there are; it excludes --at, --energies and --samples",
@@ -116,19 +186,46 @@ static int check_options(const command *cmd)
   return EXIT_DONE;
 }
 
+static mho_status draw_curves(const command *cmd, const curves *kept, mho_error *error)
+{
+  mho_buffer script = {0};
+  mho_figure_transmission(&script, kept->curve, kept->count, MHO_DEFAULT_WINDOW_EV);
+  mho_status status = mho_buffer_check(&script, "cli", error);
+  if (status == MHO_OK) status = figure_write(cmd, &script, error);
+  mho_buffer_clear(&script);
+  return status;
+}
+
 int command_transmission(const command *cmd, mho_error *error)
 {
   int code = check_options(cmd);
   if (code != EXIT_DONE) return code;
   subjects list;
+  curves kept = {0};
   mho_output output = {0};
   mho_status status = subjects_read(cmd, true, &list, error);
+  int most = cmd->currents ? 1 : MHO_CURVES_MAX;
+  if (status == MHO_OK && cmd->measured.figure && list.count > most)
+    status = mho_fail(error, MHO_ERR_USAGE, "cli", "figure", "--figure draws at most %d molecule%s",
+                      most, most > 1 ? "s" : "");
   mho_table *table =
       cmd->poles   ? mho_poles_table(&output)
       : cmd->nodes ? mho_nodes_table(&output)
+      : cmd->currents ? mho_currents_table(&output)
+      : cmd->orbitals ? mho_orbitals_table(&output)
                    : mho_transmission_table(&output);
   for (int i = 0; status == MHO_OK && table && i < list.count; i++)
-    status = add_molecule(cmd, &list.item[i], &output, table, error);
+    status = add_molecule(cmd, &list.item[i], &kept, &output, table, error);
+  if (cmd->orbitals && !cmd->quiet)
+    mho_output_note(&output, "diagonal: T if the orbital were alone; interference: with all others; "
+                             "all of both add up to T, and of levels of one energy only their sum "
+                             "has a meaning");
+  if (cmd->currents && !cmd->quiet)
+    mho_output_note(&output, "currents of electrons that come from the left, as parts of T; more "
+                             "than 1 is a current that goes round");
+  if (status == MHO_OK) status = mho_output_check(&output, error);
+  if (status == MHO_OK && kept.count > 0) status = draw_curves(cmd, &kept, error);
+  curves_clear(&kept);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
   subjects_free(&list);

@@ -167,6 +167,38 @@ bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
   return false;
 }
 
+bool mho_yaml_get_flag(const mho_yaml *document, const mho_yaml_node *node,
+                       const char *field, bool *value)
+{
+  static const char *const words[] = {"false", "true"};
+  size_t index;
+  if (!mho_yaml_get_choice(document, node, field, words, 2, &index)) return false;
+  *value = index == 1;
+  return true;
+}
+
+bool mho_yaml_get_joined(const mho_yaml *document, const mho_yaml_node *node,
+                         const char *field, char *buffer, size_t size)
+{
+  const char *text;
+  size_t used = 0;
+  buffer[0] = '\0';
+  if (node->kind == MHO_YAML_TEXT) {
+    if (!mho_yaml_get_text(document, node, field, &text)) return false;
+    used = (size_t)snprintf(buffer, size, "%s", text);
+  }
+  for (size_t i = 0; node->kind != MHO_YAML_TEXT && i < node->count && used < size; i++) {
+    bool pair = node->kind == MHO_YAML_MAPPING;
+    if (!mho_yaml_get_text(document, node->item[i], field, &text)) return false;
+    used += (size_t)snprintf(buffer + used, size - used, "%s%s%s%s", i ? ", " : "",
+                             pair ? node->key[i]->text : "", pair ? " = " : "", text);
+  }
+  if (used > 0 && used < size) return true;
+  mho_yaml_fail(document, node, MHO_ERR_LIMIT, field, used ? "%s is too long; up to %zu characters "
+                "are allowed" : "%s is empty", field, size - 1);
+  return false;
+}
+
 void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mapping,
                            mho_settings *settings)
 {

@@ -444,7 +444,8 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   static const char *const keys[] = {
       "name", "smiles", "sites",      "bonds",       "electrons", "charge",      "electrodes",
       "fermi", "twist", "parameters", "alternation", "alkyl",     "beta", "temperature",
-      "coupling", "structure", "record", "hopping"};
+      "coupling", "structure", "record", "hopping", "torsion"};
+  int before = r->yaml->error->count;
   mho_yaml_check_keys(r->yaml, r->node, keys, sizeof keys / sizeof *keys);
   if (!read_settings(r, defaults, overrides)) return;
   read_name(r);
@@ -457,6 +458,8 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   if (structure) read_structure(r, structure);
   else if (smiles) read_drawn(r, smiles);
   else read_explicit(r, overrides);
+  if (r->yaml->error->count == before)
+    mho_yaml_get_torsions(r->yaml, mho_yaml_find(r->node, "torsion"), r->molecule);
 }
 
 mho_status mho_molecule_read_node(const mho_yaml *document, const mho_yaml_node *node,

@@ -85,6 +85,15 @@ bool mho_yaml_get_choice(const mho_yaml *document, const mho_yaml_node *node,
 void mho_yaml_get_settings(const mho_yaml *document, const mho_yaml_node *mapping,
                            mho_settings *settings);
 
+/* true or false. */
+bool mho_yaml_get_flag(const mho_yaml *document, const mho_yaml_node *node,
+                       const char *field, bool *value);
+
+/* A text, or a list or mapping of texts as `a, b` or `key = a, other = b`, in
+ * buffer; what does not fit is an error. */
+bool mho_yaml_get_joined(const mho_yaml *document, const mho_yaml_node *node,
+                         const char *field, char *buffer, size_t size);
+
 /* A list of {bond: C5-C8, angle: 38 deg}. */
 void mho_yaml_get_twists(const mho_yaml *document, const mho_yaml_node *list,
                          mho_settings *settings);

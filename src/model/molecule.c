@@ -26,6 +26,8 @@ void mho_molecule_clear(mho_molecule *molecule)
   free(molecule->site);
   free(molecule->bond);
   free(molecule->linker);
+  for (int i = 0; i < molecule->torsion_count; i++) free(molecule->torsion[i].name);
+  free(molecule->torsion);
   mho_graph_clear(&molecule->graph);
   free(molecule->site_atom);
   mho_texts_clear(&molecule->notes);
@@ -76,4 +78,38 @@ double mho_cos_deg(double angle_deg)
   if (angle == 90.0) return 0.0;
   if (angle == 60.0) return 0.5 * sign;
   return sign * cos(angle * RADIANS_PER_DEGREE);
+}
+
+int mho_molecule_find_bond(const mho_molecule *m, const char *text)
+{
+  for (int b = 0; b < m->bond_count; b++)
+    for (int end = 0; end < 2; end++) {
+      const char *first = m->site[m->bond[b].site[end]].id;
+      size_t length = strlen(first);
+      if (!strncmp(text, first, length) && text[length] == '-' &&
+          !strcmp(text + length + 1, m->site[m->bond[b].site[!end]].id))
+        return b;
+    }
+  return -1;
+}
+
+mho_status mho_molecule_torsion(const mho_molecule *molecule, int bond, mho_torsion *torsion,
+                                const char **name, mho_error *error)
+{
+  const mho_bond_torsion *found = NULL;
+  for (int i = 0; i < molecule->torsion_count; i++) {
+    const mho_bond_torsion *t = &molecule->torsion[i];
+    if (t->bond == bond || (t->bond < 0 && !found)) found = t;
+  }
+  const mho_bond *b = &molecule->bond[bond];
+  *name = found ? found->name : b->torsion;
+  if (found) *torsion = found->potential;
+  if (found) return MHO_OK;
+  if (b->torsion) return mho_torsion_read(b->torsion, NULL, torsion, error);
+  return mho_fail_at(error, MHO_ERR_REFERENCE, "model",
+                     molecule->source ? molecule->source : molecule->name, 0, 0, "torsion",
+                     "torsion: no potential is known for the bond %s-%s of '%.60s'; give one as "
+                     "torsion, here or in the molecule file",
+                     molecule->site[b->site[0]].id, molecule->site[b->site[1]].id,
+                     molecule->name ? molecule->name : "");
 }

@@ -153,7 +153,8 @@ static void fill_bonds(conversion *c)
     m->bond[b] = (mho_bond){.site = {from->site[0], from->site[1]},
                             .strength = formal ? from->strength : 1.0,
                             .twist_deg = from->twist_deg,
-                            .rotatable = from->rotatable};
+                            .rotatable = from->rotatable,
+                            .torsion = from->kind};
   }
   m->bond_count = c->pi.bond_count;
 }

@@ -182,9 +182,10 @@ static void describe(bond_finder *f)
     bond->strength = strength_of(f, bond, order);
     bond->rotatable = order == ORDER_SINGLE && can_turn(f, bond->site[0]) &&
                       can_turn(f, bond->site[1]);
-    if (bond->rotatable)
-      bond->twist_deg = mho_torsion_estimate(
-          f->graph, f->pi, f->graph->bond[bond->bond].atom, &bond->reason);
+    if (!bond->rotatable) continue;
+    const int *atom = f->graph->bond[bond->bond].atom;
+    bond->twist_deg = mho_torsion_estimate(f->graph, f->pi, atom, &bond->reason);
+    bond->kind = mho_torsion_kind(f->graph, f->pi, atom);
   }
 }
 

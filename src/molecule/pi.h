@@ -24,6 +24,7 @@ typedef struct {
   bool rotatable;
   double twist_deg; /* estimate, and what it rests on */
   const char *reason;
+  const char *kind; /* of its torsion potential (mho/torsion.h), or NULL */
 } mho_pi_bond;
 
 typedef struct {
@@ -47,7 +48,7 @@ MHO_MUST_USE mho_status mho_pi_perceive(const mho_graph *graph,
                                         mho_texts *notes, mho_error *error);
 void mho_pi_clear(mho_pi *pi);
 
-/* Fills strength, rotatable, twist_deg and reason of the bonds.
+/* Fills strength, rotatable, twist_deg, reason and kind of the bonds.
  * Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_pi_find_bonds(const mho_graph *graph, mho_pi *pi,
                                           mho_error *error);
@@ -60,5 +61,8 @@ int mho_pi_ring_size(const mho_graph *graph, const mho_pi *pi, int atom);
  * and what the estimate rests on (in torsion.c). */
 double mho_torsion_estimate(const mho_graph *graph, const mho_pi *pi,
                             const int atom[2], const char **reason);
+
+/* Name of the torsion potential of such a bond, or NULL where there is none. */
+const char *mho_torsion_kind(const mho_graph *graph, const mho_pi *pi, const int atom[2]);
 
 #endif

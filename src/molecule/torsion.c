@@ -11,6 +11,7 @@ typedef struct {
   int size;     /* of the ring */
   int lone;     /* ortho ring atoms without a substituent: N, O, S */
   bool sulfur;  /* one of them is S */
+  bool oxygen;
   int fluorine; /* ortho C-F */
   int crowded;  /* other ortho substituents, fused rings included */
 } ortho_side;
@@ -37,6 +38,7 @@ static ortho_side look_at(const mho_graph *g, const mho_pi *pi, int atom)
     } else if (element != ELEMENT_C && mho_graph_hydrogens(g, ortho) == 0) {
       side.lone++;
       side.sulfur |= element == ELEMENT_S;
+      side.oxygen |= element == ELEMENT_O;
     }
   }
   return side;
@@ -118,4 +120,91 @@ double mho_torsion_estimate(const mho_graph *graph, const mho_pi *pi,
   *reason = flat && !crowded ? "flat as stilbene and azobenzene"
                              : "no value in the table; taken as flat";
   return 0.0;
+}
+
+/* The atom across a ring of six from `atom` is a bare nitrogen. */
+static bool has_para_nitrogen(const mho_graph *g, int atom)
+{
+  int across = -1;
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++) {
+    int at = atom, to = g->link[i].atom, steps = 0;
+    if (!g->bond[g->link[i].bond].ring) continue;
+    for (; steps < 2; steps++) { /* round the ring without turning back */
+      int next = -1;
+      for (int k = g->start[to]; k < g->start[to + 1]; k++)
+        if (g->bond[g->link[k].bond].ring && g->link[k].atom != at) {
+          if (next >= 0) return false; /* fused */
+          next = g->link[k].atom;
+        }
+      if (next < 0) return false;
+      at = to;
+      to = next;
+    }
+    if (across >= 0 && across != to) return false;
+    across = to;
+  }
+  return across >= 0 && g->atom[across].element == ELEMENT_N &&
+         mho_graph_hydrogens(g, across) == 0;
+}
+
+/* The neighbour of `atom` by a bond of that order outside the rings, or -1. */
+static int beyond(const mho_graph *g, int atom, int order)
+{
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++)
+    if (g->bond[g->link[i].bond].order == order && !g->bond[g->link[i].bond].ring)
+      return g->link[i].atom;
+  return -1;
+}
+
+static bool bears_phenyl(const mho_graph *g, const mho_pi *pi, int atom)
+{
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++)
+    if (!g->bond[g->link[i].bond].ring && mho_pi_ring_size(g, pi, g->link[i].atom) == 6) return true;
+  return false;
+}
+
+/* Atoms on a carbon besides its hydrogens. */
+static int count_heavy(const mho_graph *g, int atom)
+{
+  int count = 0;
+  for (int i = g->start[atom]; i < g->start[atom + 1]; i++)
+    count += g->atom[g->link[i].atom].element != ELEMENT_H;
+  return count;
+}
+
+/* A bare ring of six on a vinyl or ethynyl carbon. */
+static const char *ring_and_chain(const mho_graph *g, const mho_pi *pi, int chain)
+{
+  int triple = beyond(g, chain, 3), twin = beyond(g, chain, 2);
+  if (triple >= 0) return bears_phenyl(g, pi, triple) ? "tolane" : NULL;
+  if (twin < 0 || g->atom[chain].element != ELEMENT_C || g->atom[twin].element != ELEMENT_C ||
+      count_heavy(g, chain) > 2)
+    return NULL;
+  if (bears_phenyl(g, pi, twin) && count_heavy(g, twin) == 2) return "stilbene";
+  return count_heavy(g, twin) == 1 ? "styrene" : NULL;
+}
+
+const char *mho_torsion_kind(const mho_graph *graph, const mho_pi *pi, const int atom[2])
+{
+  ortho_side side[2];
+  for (int end = 0; end < 2; end++) side[end] = look_at(graph, pi, atom[end]);
+  const ortho_side *a = &side[0], *b = &side[1];
+  if (a->crowded + b->crowded + a->fluorine + b->fluorine) return NULL;
+  bool carbon = graph->atom[atom[0]].element == ELEMENT_C && graph->atom[atom[1]].element == ELEMENT_C;
+  for (int end = 0; end < 2; end++)
+    if (side[end].size == 6 && side[end].lone == 0 && side[!end].size == 0)
+      return ring_and_chain(graph, pi, atom[!end]);
+  if (a->size == 6 && b->size == 6 && carbon) {
+    if (a->lone + b->lone == 0)
+      return has_para_nitrogen(graph, atom[0]) && has_para_nitrogen(graph, atom[1])
+                 ? "bipyridine-4-4" : "biphenyl";
+    return a->lone == 1 && b->lone == 1 ? "bipyridine-2-2" : NULL;
+  }
+  if (a->size == 5 && b->size == 5 && carbon && a->lone == 1 && b->lone == 1)
+    return a->sulfur && b->sulfur ? "bithiophene-2-2" : a->oxygen && b->oxygen ? "bifuran-2-2" : NULL;
+  for (int end = 0; end < 2; end++)
+    if (side[end].size == 5 && graph->atom[atom[end]].element == ELEMENT_N && side[end].lone == 0 &&
+        side[!end].size == 6 && side[!end].lone == 0)
+      return "phenylpyrrole";
+  return NULL;
 }

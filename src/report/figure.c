@@ -5,12 +5,15 @@
 #include <fcntl.h>
 #include <math.h>
 #include <spawn.h>
+#include <stdlib.h>
 #include <string.h>
 #include <sys/wait.h>
 
 #include "report/plot.h"
 
 extern char **environ;
+
+enum { MARKED_SITES_MAX = 120 }; /* of larger molecules finding all nodes takes seconds */
 
 /* Below this a node is drawn as running out of the figure. */
 #define LOWEST_LOG10 (-9.0)
@@ -36,6 +39,25 @@ static void find_range(const mho_curve *curve, int curves, double *low, double *
   if (*high - *low < 2) *low = *high - 2;
 }
 
+mho_status mho_figure_nodes(const mho_plan *plan, double fermi_ev, double **node_ev, size_t *nodes,
+                            mho_error *error)
+{
+  mho_nodes found;
+  *node_ev = NULL;
+  *nodes = 0;
+  if (mho_plan_sites(plan) > MARKED_SITES_MAX) return MHO_OK;
+  mho_status status = mho_nodes_find(plan, &found, error);
+  if (status == MHO_OK && found.count > 0) {
+    *node_ev = malloc(found.count * sizeof **node_ev);
+    if (!*node_ev) status = mho_fail(error, MHO_ERR_MEMORY, "report", NULL, "out of memory");
+  }
+  for (size_t i = 0; status == MHO_OK && i < found.count; i++)
+    if (found.node[i].kind == MHO_NODE_EXACT)
+      (*node_ev)[(*nodes)++] = found.node[i].energy_ev - fermi_ev;
+  mho_nodes_clear(&found);
+  return status;
+}
+
 static void add_curve_data(mho_buffer *script, const mho_curve *curve, int index, double low)
 {
   mho_buffer_print(script, "$curve%d << END\n", index);
@@ -47,6 +69,13 @@ static void add_curve_data(mho_buffer *script, const mho_curve *curve, int index
     mho_buffer_add(script, "\n");
   }
   mho_buffer_add(script, "END\n");
+  if (curve->nodes > 0) mho_buffer_print(script, "$nodes%d << END\n", index);
+  for (size_t i = 0; i < curve->nodes; i++) {
+    add_number(script, curve->node_ev[i]);
+    add_number(script, low);
+    mho_buffer_add(script, "\n");
+  }
+  if (curve->nodes > 0) mho_buffer_add(script, "END\n");
   if (!curve->has_measured) return;
   mho_buffer_print(script, "$measured%d << END\n 0", index);
   add_number(script, curve->measured_log10_g0);
@@ -59,6 +88,7 @@ void mho_figure_transmission(mho_buffer *script, const mho_curve *curve,
                              int curves, double window_ev)
 {
   double low, high;
+  bool noted = false;
   find_range(curve, curves, &low, &high);
   begin_figure(script, 820, 480);
   for (int c = 0; c < curves; c++) add_curve_data(script, &curve[c], c, low);
@@ -86,6 +116,14 @@ void mho_figure_transmission(mho_buffer *script, const mho_curve *curve,
     mho_buffer_print(script, "%s$curve%d using 1:2 with lines linewidth 2 linecolor '%s' dashtype %s title ",
                      c ? ", " : "", c, ink[c], dash[c]);
     add_quoted(script, curve[c].name);
+    if (curve[c].nodes > 0)
+      mho_buffer_print(script,
+                       ", $nodes%d using 1:2:(0):(%.3f) with vectors nohead linewidth 1 "
+                       "linecolor '%s' dashtype '.' notitle, $nodes%d using 1:2 with points "
+                       "pointtype %d pointsize 1.5 linecolor '%s' title '%s'",
+                       c, 0.12 * (high - low), ink[c], c, 8 + c % 2, ink[c],
+                       noted ? "" : "node");
+    noted |= curve[c].nodes > 0;
     if (!curve[c].has_measured) continue;
     mho_buffer_print(script,
                      ", $measured%d using 1:2:3:4 with yerrorbars linewidth 2 pointtype 12 "

@@ -10,6 +10,7 @@
 
 #include <mho/compare.h>
 #include <mho/interference.h>
+#include <mho/nodes.h>
 #include <mho/peaks.h>
 #include <mho/telegraph.h>
 #include <mho/transmission.h>
@@ -26,7 +27,14 @@ typedef struct {
   const mho_point *point;
   bool has_measured;
   double measured_log10_g0, measured_low, measured_high;
+  size_t nodes; /* energies above the Fermi level where T vanishes */
+  const double *node_ev;
 } mho_curve;
+
+/* Energies of the exact nodes of a plan above the Fermi level, for a curve, none
+ * for more than 120 sites; the caller frees them.  Errors: those of mho_nodes_find. */
+MHO_MUST_USE mho_status mho_figure_nodes(const mho_plan *plan, double fermi_ev, double **node_ev,
+                                         size_t *nodes, mho_error *error);
 
 /* Scripts that write an SVG to standard output. */
 void mho_figure_transmission(mho_buffer *script, const mho_curve *curve, int curves,
@@ -46,10 +54,11 @@ void mho_figure_linear(mho_buffer *script, const mho_histogram *histogram);
 void mho_figure_plateaus(mho_buffer *script, const mho_histogram *histogram);
 void mho_figure_dwells(mho_buffer *script, const mho_telegraph *telegraph);
 
-/* Conductance against angle, up to MHO_CURVES_MAX molecules of the table; the
- * map of one molecule; the matrix of its pairs. */
-void mho_figure_twist(mho_buffer *script, const mho_table *table);
-void mho_figure_twist_map(mho_buffer *script, const mho_table *table);
+/* Conductance against angle, up to MHO_CURVES_MAX molecules of the table from
+ * the one counted `first` on; returns how many.  The map of one molecule (NULL:
+ * the table has no other); the matrix of its pairs. */
+int mho_figure_twist(mho_buffer *script, const mho_table *table, int first);
+void mho_figure_twist_map(mho_buffer *script, const mho_table *table, const char *molecule);
 void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
                       const mho_interference *map);
 

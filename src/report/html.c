@@ -6,7 +6,7 @@
 
 #include <string.h>
 
-enum { REPORT_DIGITS = 3 };
+enum { REPORT_DIGITS = 3, FOLDED_MAX = 1000 /* rows */ };
 
 const char *const *mho_limits(size_t *count)
 {
@@ -44,9 +44,10 @@ static const char style[] =
     "td.node{color:#5a6270;font-style:italic}"
     "figure{margin:1rem 0}figure img{width:100%;height:auto}"
     ".portraits{display:flex;flex-wrap:wrap;gap:1rem}.portraits figure{margin:0;max-width:100%}"
-    ".portraits img{width:auto;max-width:100%}"
+    ".portraits img{width:auto;max-width:100%}.portraits figcaption{contain:inline-size}"
     "figcaption{color:#5a6270;font-size:.88rem}"
     "dt{font-weight:600;margin-top:.6rem}dd{margin:0 0 0 1rem}"
+    "summary{cursor:pointer;color:#5a6270;font-size:.9rem}"
     "footer{color:#5a6270;font-size:.85rem;margin-top:3rem;border-top:1px solid #d8dce2}"
     "@media print{body{margin:0;max-width:none;font-size:11pt}h2{break-after:avoid}"
     "figure,tr{break-inside:avoid}}";
@@ -74,6 +75,24 @@ static const struct {
     {"deviation_decades", "deviation (decades)"},
     {"width_decades", "width (decades)"},
     {"warnings", "warnings"},
+    {"angle_deg", "angle (°)"},
+    {"second_angle_deg", "second angle (°)"},
+    {"energy_eV", "E − E<sub>F</sub> (eV)"},
+    {"temperature_K", "T (K)"},
+    {"mean_cos2", "mean cos²"},
+    {"planar_G0", "flat (G<sub>0</sub>)"},
+    {"motional_average_G0", "motional average (G<sub>0</sub>)"},
+    {"frozen_average_G0", "frozen average (G<sub>0</sub>)"},
+    {"green_per_eV", "Green's function (1/eV)"},
+    {"node_eV", "nearest node (eV)"},
+    {"overturning_shift_eV", "overturning shift (eV)"},
+    {"change_decades", "change (decades)"},
+    {"window_low", "window 5 %"},
+    {"window_high", "window 95 %"},
+    {"cross_conjugation", "cross-conjugation"},
+    {"derivative_log10_G0", "derivative of log<sub>10</sub> G"},
+    {"contribution_decades", "contribution (decades)"},
+    {"current", "current (of T)"},
 };
 
 static const char *heading_of(const char *column)
@@ -104,9 +123,7 @@ static void write_cell(const mho_cell *cell, mho_buffer *buffer)
 
 static void write_table(const mho_output *output, const char *name, mho_buffer *buffer)
 {
-  const mho_table *table = NULL;
-  for (size_t i = 0; i < output->tables; i++)
-    if (!strcmp(output->table[i].name, name)) table = &output->table[i];
+  const mho_table *table = mho_output_find(output, name);
   if (!table) return;
   mho_buffer_add(buffer, "<div class=\"wide\"><table><thead><tr>");
   for (size_t c = 0; c < table->columns; c++)
@@ -134,18 +151,29 @@ static void write_base64(const mho_buffer *data, mho_buffer *buffer)
   }
 }
 
+static void write_figure(const mho_figure *figure, mho_buffer *buffer)
+{
+  mho_buffer_add(buffer, "<figure><img alt=\"");
+  mho_buffer_escape(buffer, figure->caption);
+  mho_buffer_add(buffer, "\" src=\"data:image/svg+xml;base64,");
+  write_base64(&figure->svg, buffer);
+  mho_buffer_add(buffer, "\"><figcaption>");
+  mho_buffer_escape(buffer, figure->caption);
+  mho_buffer_print(buffer, " <code>%s</code></figcaption></figure>\n", figure->file);
+}
+
+/* Plots in full width, then what is drawn on molecules, side by side. */
 static void write_figures(const mho_report *report, const char *section, mho_buffer *buffer)
 {
-  for (size_t i = 0; i < report->figures; i++) {
-    const mho_figure *figure = &report->figure[i];
-    if (strcmp(figure->section, section)) continue;
-    mho_buffer_add(buffer, "<figure><img alt=\"");
-    mho_buffer_escape(buffer, figure->caption);
-    mho_buffer_add(buffer, "\" src=\"data:image/svg+xml;base64,");
-    write_base64(&figure->svg, buffer);
-    mho_buffer_add(buffer, "\"><figcaption>");
-    mho_buffer_escape(buffer, figure->caption);
-    mho_buffer_print(buffer, " <code>%s</code></figcaption></figure>\n", figure->file);
+  for (int drawn = 0; drawn < 2; drawn++) {
+    size_t count = 0;
+    for (size_t i = 0; i < report->figures; i++) {
+      const mho_figure *figure = &report->figure[i];
+      if (strcmp(figure->section, section) || figure->drawn != (drawn == 1)) continue;
+      if (drawn && count++ == 0) mho_buffer_add(buffer, "<div class=\"portraits\">\n");
+      write_figure(figure, buffer);
+    }
+    if (count > 0) mho_buffer_add(buffer, "</div>\n");
   }
 }
 
@@ -185,16 +213,9 @@ static void write_list(mho_buffer *buffer, const char *class_name, char *const *
   mho_buffer_add(buffer, "</ul>\n");
 }
 
-static bool has_table(const mho_output *output, const char *name)
-{
-  for (size_t i = 0; i < output->tables; i++)
-    if (!strcmp(output->table[i].name, name)) return true;
-  return false;
-}
-
 static void write_traces(const mho_report *report, mho_buffer *buffer)
 {
-  if (!has_table(report->output, "traces")) return;
+  if (!mho_output_find(report->output, "traces")) return;
   begin_section(buffer, "traces", "Measured traces");
   write_figures(report, "traces", buffer);
   mho_buffer_add(buffer, "<p>Peaks of the log histograms with 95 % intervals by bootstrap over "
@@ -222,9 +243,65 @@ static void write_portraits(const mho_report *report, mho_buffer *buffer)
   mho_buffer_add(buffer, "</div></section>\n");
 }
 
+/* A long table, to be opened. */
+static void write_folded(const mho_output *output, const char *name, mho_buffer *buffer)
+{
+  const mho_table *table = mho_output_find(output, name);
+  if (!table) return;
+  if (mho_table_rows(table) > FOLDED_MAX) {
+    mho_buffer_print(buffer, "<p class=\"of\">%zu rows are in <code>%s.csv</code>.</p>\n",
+                     mho_table_rows(table), name);
+    return;
+  }
+  mho_buffer_print(buffer, "<details><summary>%zu rows, as in <code>%s.csv</code></summary>\n",
+                   mho_table_rows(table), name);
+  write_table(output, name, buffer);
+  mho_buffer_add(buffer, "</details>\n");
+}
+
+/* A stage that a study may ask for; `table` tells whether it did. */
+static void write_stage(const mho_report *report, const char *id, const char *title,
+                        const char *words, const char *table, const char *const *folded,
+                        mho_buffer *buffer)
+{
+  if (!mho_output_find(report->output, table)) return;
+  begin_section(buffer, id, title);
+  mho_buffer_print(buffer, "<p>%s</p>\n", words);
+  bool list = false;
+  for (size_t i = 0; i < report->remarks; i++) {
+    if (strcmp(report->remark[i].section, id)) continue;
+    mho_buffer_add(buffer, list ? "<li>" : "<ul>\n<li>");
+    mho_buffer_escape(buffer, report->remark[i].text);
+    mho_buffer_add(buffer, "</li>\n");
+    list = true;
+  }
+  if (list) mho_buffer_add(buffer, "</ul>\n");
+  write_figures(report, id, buffer);
+  for (; *folded; folded++) write_folded(report->output, *folded, buffer);
+  mho_buffer_add(buffer, "</section>\n");
+}
+
+static void write_levers(const mho_report *report, mho_buffer *buffer)
+{
+  static const char *const sensitivity[] = {"sensitivity", NULL};
+  static const char *const twist[] = {"twist_average", "twist", "twist_map", "twist_plane", NULL};
+  static const char *const interference[] = {"modify", "rules", "interference", NULL};
+  write_stage(report, "sensitivity", "What decides it, and what to change",
+              "Derivatives of log10 G at the Fermi level: where a donor or an acceptor, and where a "
+              "twist, raises or lowers the conductance.", "sensitivity", sensitivity, buffer);
+  write_stage(report, "twist", "How flat it must be",
+              "Conductance against the angle of a bond, the Fermi level held where the molecule as "
+              "given has it.", "twist", twist, buffer);
+  write_stage(report, "interference", "Where the linkers should go",
+              "T between every two sites that a linker may sit on, at the Fermi level: which pairs "
+              "conduct, which are nodes, and how far the Fermi level may move before that turns.",
+              "interference", interference, buffer);
+}
+
 static void write_results(const mho_report *report, mho_buffer *buffer)
 {
-  if (has_table(report->output, "compare")) {
+  static const char *const currents[] = {"currents", NULL};
+  if (mho_output_find(report->output, "compare")) {
     begin_section(buffer, "comparison", "Measured against computed");
     write_figures(report, "comparison", buffer);
     mho_buffer_add(buffer,
@@ -237,12 +314,17 @@ static void write_results(const mho_report *report, mho_buffer *buffer)
   begin_section(buffer, "predictions", "Predicted conductance");
   write_table(report->output, "conductance", buffer);
   mho_buffer_add(buffer, "</section>\n");
+  write_levers(report, buffer);
   begin_section(buffer, "transmission", "Transmission");
   if (report->without_gnuplot)
     mho_buffer_add(buffer, "<p>Figures are missing because gnuplot was not found; the curves are "
                            "in <code>transmission.csv</code>.</p>\n");
   write_figures(report, "transmission", buffer);
+  write_folded(report->output, "orbitals", buffer);
   mho_buffer_add(buffer, "</section>\n");
+  write_stage(report, "currents", "Where the current flows",
+              "Currents through bonds at the Fermi level, of electrons that come from the left "
+              "contact; what goes round a ring is marked in it.", "currents", currents, buffer);
 }
 
 mho_status mho_write_html(const mho_report *report, mho_buffer *buffer, mho_error *error)

@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * The report: one HTML file that opens offline, with fixed section ids
- * (question, molecules, comparison, traces, predictions, transmission, warnings,
- * assumptions, limits).
+ * (question, molecules, comparison, traces, predictions, sensitivity, twist,
+ * interference, transmission, currents, warnings, assumptions, limits).
  */
 #ifndef MHOLECULE_REPORT_HTML_H
 #define MHOLECULE_REPORT_HTML_H
@@ -13,7 +13,14 @@ typedef struct {
   const char *section; /* id of the section it stands in */
   char *file, *caption;
   mho_buffer svg;
+  bool drawn; /* on a molecule, so shown in its own size */
 } mho_figure;
+
+/* A sentence of a section. */
+typedef struct {
+  const char *section;
+  char *text;
+} mho_remark;
 
 /* A molecule and its drawing, an <svg> element. */
 typedef struct {
@@ -30,6 +37,8 @@ typedef struct {
   size_t answers;
   const mho_figure *figure;
   size_t figures;
+  const mho_remark *remark;
+  size_t remarks;
   bool without_gnuplot;
 } mho_report;
 

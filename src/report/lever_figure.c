@@ -8,7 +8,6 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "report/drawing.h"
 #include "report/plot.h"
 
 enum { WIDTH = 820, HEIGHT = 480, SQUARE = 760, SITES_NAMED_MAX = 60 };
@@ -23,54 +22,62 @@ static const mho_cell *cell_at(const mho_table *table, size_t row, size_t column
   return &table->cell[row * table->columns + column];
 }
 
-void mho_figure_twist(mho_buffer *script, const mho_table *table)
+static bool begins_curve(const mho_table *table, size_t row)
 {
-  size_t rows = mho_table_rows(table), start = 0;
-  int curves = 0;
+  return row == 0 || strcmp(cell_at(table, row, 0)->text, cell_at(table, row - 1, 0)->text) != 0;
+}
+
+int mho_figure_twist(mho_buffer *script, const mho_table *table, int first)
+{
+  size_t rows = mho_table_rows(table);
+  const char *name[MHO_CURVES_MAX];
+  int curves = 0, seen = 0;
   begin_figure(script, WIDTH, HEIGHT);
-  for (size_t i = 0; i < rows; i++) {
-    const char *name = cell_at(table, i, 0)->text;
-    if (i == 0 || strcmp(name, cell_at(table, start, 0)->text)) {
-      start = i;
+  for (size_t i = 0; i < rows && curves <= MHO_CURVES_MAX; i++) {
+    if (begins_curve(table, i) && seen++ >= first) {
       if (curves == MHO_CURVES_MAX) break;
       mho_buffer_print(script, "%s$curve%d << END\n", curves ? "END\n" : "", curves);
-      curves++;
+      name[curves++] = cell_at(table, i, 0)->text;
     }
     const mho_cell *value = cell_at(table, i, 4);
-    if (value->kind != MHO_CELL_NUMBER) continue;
+    if (curves == 0 || value->kind != MHO_CELL_NUMBER) continue;
     add_number(script, cell_at(table, i, 2)->number);
     add_number(script, log10(value->number));
     mho_buffer_add(script, "\n");
   }
   mho_buffer_add(script, "END\nset xlabel 'angle (deg)'\nset ylabel 'conductance (G_0)'\n"
                          "set format y '10^{%.1f}'\nplot ");
-  int curve = 0;
-  for (size_t i = 0; i < rows && curve < curves; i++) {
-    const char *name = cell_at(table, i, 0)->text;
-    if (i > 0 && !strcmp(name, cell_at(table, i - 1, 0)->text)) continue;
+  for (int c = 0; c < curves; c++) {
     mho_buffer_print(script,
                      "%s$curve%d using 1:2 with lines linewidth 2 linecolor '%s' dashtype %s title ",
-                     curve ? ", " : "", curve, ink[curve], dash[curve]);
-    add_quoted(script, name);
-    curve++;
+                     c ? ", " : "", c, ink[c], dash[c]);
+    add_quoted(script, name[c]);
   }
   mho_buffer_add(script, "\n");
+  return curves;
 }
 
-/* log10 T over two columns of a table of one molecule. */
-void mho_figure_twist_map(mho_buffer *script, const mho_table *table)
+static bool is_of(const mho_table *table, size_t row, const char *molecule)
+{
+  return !molecule || !strcmp(cell_at(table, row, 0)->text, molecule);
+}
+
+/* log10 T over two columns of a table. */
+void mho_figure_twist_map(mho_buffer *script, const mho_table *table, const char *molecule)
 {
   bool plane = table->columns == 6; /* of two angles */
   size_t x = 2, y = plane ? 4 : 3, z = table->columns - 1, rows = mho_table_rows(table);
   double highest = -INFINITY;
   for (size_t i = 0; i < rows; i++)
-    if (cell_at(table, i, z)->kind == MHO_CELL_NUMBER && cell_at(table, i, z)->number > 0)
+    if (is_of(table, i, molecule) && cell_at(table, i, z)->kind == MHO_CELL_NUMBER &&
+        cell_at(table, i, z)->number > 0)
       highest = fmax(highest, log10(cell_at(table, i, z)->number));
   if (!isfinite(highest)) highest = 0;
   begin_figure(script, WIDTH, HEIGHT + 60);
   mho_buffer_add(script, "$map << END\n");
   for (size_t i = 0; i < rows; i++) {
     const mho_cell *value = cell_at(table, i, z);
+    if (!is_of(table, i, molecule)) continue;
     bool some = value->kind == MHO_CELL_NUMBER && value->number > 0;
     double log10_t = some ? log10(value->number) : highest - SHOWN_DECADES;
     add_number(script, cell_at(table, i, x)->number);
@@ -127,7 +134,7 @@ static void add_names(mho_buffer *script, const mho_molecule *molecule, const ch
 void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
                       const mho_interference *map)
 {
-  double highest = -INFINITY;
+  double highest = -INFINITY, lowest = INFINITY;
   int count = 0, *place = calloc((size_t)molecule->site_count + 1, sizeof *place);
   if (!place) {
     script->failed = true;
@@ -141,10 +148,19 @@ void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
   for (int i = 0; i < molecule->site_count; i++)
     if (place[i] == 0) place[i] = count++;
   if (!isfinite(highest)) highest = 0;
+  for (size_t p = 0; p < map->count; p++)
+    lowest = fmin(lowest, fmax(pair_log10(&map->pair[p]), highest - SHOWN_DECADES));
+  if (!(lowest < highest - 0.5)) lowest = highest - 0.5;
+  double middle = 0.5 * (lowest + highest); /* of the palette: words turn white */
   begin_figure(script, SQUARE, SQUARE - 60);
   add_cells(script, map, place, highest, "pairs", -INFINITY, INFINITY);
-  add_cells(script, map, place, highest, "dark", highest - 0.5 * SHOWN_DECADES, INFINITY);
-  add_cells(script, map, place, highest, "light", -INFINITY, highest - 0.5 * SHOWN_DECADES);
+  add_cells(script, map, place, highest, "dark", middle, INFINITY);
+  add_cells(script, map, place, highest, "light", -INFINITY, middle);
+  mho_buffer_add(script, "set cbrange [");
+  mho_buffer_number(script, 8, lowest);
+  mho_buffer_add(script, ":");
+  mho_buffer_number(script, 8, highest);
+  mho_buffer_add(script, "]\n");
   add_names(script, molecule, "xtics rotate", place, count);
   add_names(script, molecule, "ytics", place, count);
   mho_buffer_print(script,
@@ -157,34 +173,4 @@ void mho_figure_pairs(mho_buffer *script, const mho_molecule *molecule,
                          "$light using 1:2:4 with labels font ',15' textcolor '#222222' notitle"
                        : "");
   free(place);
-}
-
-mho_status mho_drawing_write_pairs(const mho_molecule *molecule, const mho_interference *map,
-                                   int from, mho_buffer *svg, mho_error *error)
-{
-  size_t sites = (size_t)molecule->site_count;
-  double highest = -INFINITY, *value = calloc(sites + 1, sizeof *value);
-  const char **text = calloc(sites + 1, sizeof *text);
-  mho_drawing drawing = {0};
-  mho_status status = value && text ? mho_drawing_make(molecule, &drawing, error)
-                                    : mho_fail(error, MHO_ERR_MEMORY, "report", NULL,
-                                               "out of memory");
-  for (size_t p = 0; p < map->count; p++) highest = fmax(highest, pair_log10(&map->pair[p]));
-  for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
-    const mho_pair *pair = &map->pair[p];
-    if (pair->site[0] != from && pair->site[1] != from) continue;
-    int other = pair->site[0] == from ? pair->site[1] : pair->site[0];
-    double size = 1 - (highest - pair_log10(pair)) / SHOWN_DECADES;
-    value[other] = pair->transmission > 0 ? copysign(fmax(size, 0.05), pair->green_per_ev) : 0;
-    text[other] = pair->transmission > 0 ? "" : "node";
-  }
-  if (status == MHO_OK) {
-    text[from] = "from";
-    mho_drawing_marks marks = {.title = molecule->name, .site_value = value, .site_text = text};
-    mho_drawing_write(&drawing, &marks, svg);
-  }
-  mho_drawing_clear(&drawing);
-  free(value);
-  free(text);
-  return status;
 }

@@ -12,72 +12,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "report/drawing.h"
-
-#define NEUTRAL "#5a6270"
-#define INK "#14213d"
-#define ACCENT "#b23a1e"
-#define FAINT "#eef0f3"
-
-#define SCALE 46.0 /* pixels a bond */
-#define MARGIN 62.0
-#define LINE 17.0
-#define PI 3.14159265358979323846
-
-enum { NARROWEST = 300, TITLE_LIMIT = 70 };
-
-typedef struct {
-  const mho_drawing *d;
-  const mho_drawing_marks *marks;
-  mho_buffer *svg;
-  double left, top; /* of the first point, in the picture */
-  double low[2], high[2];
-  double width, height;
-} picture;
-
-static double x_of(const picture *p, int point)
-{
-  return p->left + (p->d->position[point][0] - p->low[0]) * SCALE;
-}
-
-static double y_of(const picture *p, int point)
-{
-  return p->top + (p->high[1] - p->d->position[point][1]) * SCALE;
-}
-
-/* Pixels to a tenth, without the locale and without -0. */
-static void put(picture *p, const char *before, double value)
-{
-  long tenths = lround(value * 10);
-  mho_buffer_print(p->svg, "%s%s%ld", before, tenths < 0 ? "-" : "", labs(tenths) / 10);
-  if (tenths % 10) mho_buffer_print(p->svg, ".%ld", labs(tenths) % 10);
-}
-
-static void line(picture *p, double x1, double y1, double x2, double y2, const char *style)
-{
-  put(p, "<path d=\"M", x1);
-  put(p, " ", y1);
-  put(p, "L", x2);
-  put(p, " ", y2);
-  mho_buffer_print(p->svg, "\" %s/>\n", style);
-}
-
-static void circle(picture *p, double x, double y, double r, const char *style)
-{
-  put(p, "<circle cx=\"", x);
-  put(p, "\" cy=\"", y);
-  put(p, "\" r=\"", r);
-  mho_buffer_print(p->svg, "\" %s/>\n", style);
-}
-
-static void text(picture *p, double x, double y, const char *style, const char *words)
-{
-  put(p, "<text x=\"", x);
-  put(p, "\" y=\"", y);
-  mho_buffer_print(p->svg, "\" %s>", style);
-  mho_buffer_escape(p->svg, words);
-  mho_buffer_add(p->svg, "</text>\n");
-}
+#include "report/picture.h"
 
 static int count_characters(const char *words)
 {
@@ -106,6 +41,8 @@ static void draw_title(picture *p)
        "font-size=\"14\" font-weight=\"bold\" fill=\"#1c2028\" text-anchor=\"middle\"", words);
 }
 
+static double key_height(const picture *p) { return p->marks->keys ? (p->marks->keys + 0.7) * LINE : 0; }
+
 static void measure(picture *p)
 {
   const mho_drawing *d = p->d;
@@ -117,9 +54,12 @@ static void measure(picture *p)
   double wide = (p->high[0] - p->low[0]) * SCALE, high = (p->high[1] - p->low[1]) * SCALE;
   p->width = fmax(ceil(wide + 2 * MARGIN), NARROWEST);
   if (p->marks->title) p->width = fmax(p->width, 10.5 * count_characters(p->marks->title) + 20);
+  for (int k = 0; k < p->marks->keys; k++)
+    p->width = fmax(p->width, ceil(6.7 * count_characters(p->marks->key[k].words)) + 56);
   p->left = (p->width - wide) / 2;
-  p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75;
-  p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE);
+  double words = p->marks->site_text ? 13 : 0; /* above and below the molecule */
+  p->top = (p->marks->title ? 30 : 8) + MARGIN * 0.75 + words;
+  p->height = ceil(p->top + high + MARGIN * 0.75 + 2 * LINE + key_height(p) + words);
 }
 
 static bool is_carbon(const picture *p, int point)
@@ -143,11 +83,6 @@ static double clearance(const picture *p, int point)
 {
   if (is_bare(p, point)) return 5;
   return is_carbon(p, point) ? 0 : 13;
-}
-
-static double value_of(const double *value, int index)
-{
-  return value && index >= 0 ? fmax(-1, fmin(1, value[index])) : 0;
 }
 
 /* --- bonds ---------------------------------------------------------------- */
@@ -210,29 +145,6 @@ static void draw_bond(picture *p, int bond)
   }
 }
 
-/* A bond's value: an arrow beneath the skeleton. */
-static void draw_arrow(picture *p, int bond)
-{
-  const mho_drawing *d = p->d;
-  double value = value_of(p->marks->bond_value, d->bond_of[bond]);
-  if (value == 0) return;
-  const mho_bond *of = &d->molecule->bond[d->bond_of[bond]];
-  int a = d->site_point[of->site[value < 0]], b = d->site_point[of->site[value > 0]];
-  double x1 = x_of(p, a), y1 = y_of(p, a), dx = x_of(p, b) - x1, dy = y_of(p, b) - y1;
-  double width = 1.5 + 9.5 * fabs(value), head = 0.28;
-  double length = sqrt(dx * dx + dy * dy);
-  if (length < 1) return;
-  double nx = -dy / length, ny = dx / length;
-  const double along[] = {0.12, 1 - head, 1 - head, 0.95, 1 - head, 1 - head, 0.12};
-  const double across[] = {-0.5, -0.5, -1.1, 0, 1.1, 0.5, 0.5};
-  for (int i = 0; i < 7; i++) {
-    put(p, i ? "L" : "<path d=\"M", x1 + along[i] * dx + across[i] * width * nx);
-    put(p, " ", y1 + along[i] * dy + across[i] * width * ny);
-  }
-  mho_buffer_add(p->svg, "Z\" fill=\"" INK "\" fill-opacity=\"0.35\" stroke=\"" INK
-                         "\" stroke-width=\"0.8\"/>\n");
-}
-
 static bool touches(const picture *p, int side, int point)
 {
   const mho_contact *c = &p->d->molecule->contact[side];
@@ -255,7 +167,7 @@ static bool is_blocked(const picture *p, int point, double way)
 
 /* Middle of the largest gap between the bonds and leads at a point, as an angle
  * in the picture. */
-static double free_direction(const picture *p, int point)
+double mho_picture_free_direction(const picture *p, int point)
 {
   const mho_drawing *d = p->d;
   double best = -PI / 2, most = -1;
@@ -359,19 +271,10 @@ static bool is_linker(const picture *p, int point)
   return false;
 }
 
-static void draw_value(picture *p, int point)
-{
-  double value = value_of(p->marks->site_value, p->d->point_site[point]);
-  if (value == 0) return;
-  circle(p, x_of(p, point), y_of(p, point), 19 * sqrt(fabs(value)),
-         value > 0 ? "fill=\"" INK "\" fill-opacity=\"0.35\" stroke=\"" INK "\""
-                   : "fill=\"url(#hatch)\" stroke=\"" INK "\" stroke-dasharray=\"3 2\"");
-}
-
 static void draw_atom(picture *p, int point)
 {
   char name[MHO_ID_SIZE + 16];
-  double x = x_of(p, point), y = y_of(p, point), angle = free_direction(p, point);
+  double x = x_of(p, point), y = y_of(p, point), angle = mho_picture_free_direction(p, point);
   bool corner = is_carbon(p, point), bare = is_bare(p, point);
   name_of(p, point, name, sizeof name);
   if (is_linker(p, point))
@@ -387,32 +290,12 @@ static void draw_atom(picture *p, int point)
     return;
   }
   double away = 12 + 1.5 * fabs(cos(angle)) * (double)strlen(name);
+  bool marked = p->marks->site_value || p->marks->bond_value;
   text(p, x + away * cos(angle), y + away * sin(angle) + 3.5,
-       "font-size=\"10\" fill=\"" NEUTRAL "\" text-anchor=\"middle\"", name);
+       marked ? "font-size=\"10\" fill=\"#1c2028\" text-anchor=\"middle\" " HALO
+              : "font-size=\"10\" fill=\"" NEUTRAL "\" text-anchor=\"middle\"", name);
   draw_electrons(p, point, angle + PI / 5, 11);
   draw_charge(p, point, 8);
-}
-
-static void draw_site_text(picture *p, int site)
-{
-  const char *words = p->marks->site_text ? p->marks->site_text[site] : NULL;
-  int point = p->d->site_point[site];
-  if (!words || !*words || p->d->point_site[point] != site) return;
-  double angle = free_direction(p, point);
-  text(p, x_of(p, point) + 27 * cos(angle), y_of(p, point) + 27 * sin(angle) + 4,
-       "font-size=\"11\" fill=\"" INK "\" text-anchor=\"middle\"", words);
-}
-
-static void draw_bond_text(picture *p, int bond)
-{
-  int of = p->d->bond_of[bond];
-  const char *words = p->marks->bond_text && of >= 0 ? p->marks->bond_text[of] : NULL;
-  if (!words || !*words) return;
-  int a = p->d->bond[bond][0], b = p->d->bond[bond][1];
-  text(p, (x_of(p, a) + x_of(p, b)) / 2, (y_of(p, a) + y_of(p, b)) / 2 + 4,
-       "font-size=\"11\" fill=\"" INK "\" text-anchor=\"middle\" stroke=\"#ffffff\" "
-       "stroke-width=\"3\" paint-order=\"stroke\"",
-       words);
 }
 
 /* --- contacts ------------------------------------------------------------- */
@@ -426,7 +309,7 @@ static void draw_contact(picture *p, int side)
   if (!c->count) return;
   double way = side == MHO_LEFT ? -1 : 1, angle = side == MHO_LEFT ? PI : 0;
   bool single = c->count == 1 && is_blocked(p, d->site_point[c->site[0]], way);
-  if (single) angle = free_direction(p, d->site_point[c->site[0]]);
+  if (single) angle = mho_picture_free_direction(p, d->site_point[c->site[0]]);
   double ux = cos(angle), uy = sin(angle), far = -1e9, low = 1e9, high = -1e9;
   for (int i = 0; i < c->count; i++) {
     int point = d->site_point[c->site[i]];
@@ -457,7 +340,7 @@ static void write_caption(picture *p)
   int charge = m->charge;
   int size = snprintf(words, sizeof words, "%d π electrons on %d sites", m->electrons, m->site_count);
   if (charge) snprintf(words + size, sizeof words - (size_t)size, ", charge %+d", charge);
-  text(p, p->width / 2, p->height - LINE - 4,
+  text(p, p->width / 2, p->height - key_height(p) - LINE - 4,
        "font-size=\"12\" fill=\"" NEUTRAL "\" text-anchor=\"middle\"", words);
 }
 
@@ -465,15 +348,14 @@ static void draw(picture *p)
 {
   const mho_drawing *d = p->d;
   if (p->marks->title) draw_title(p);
-  for (int i = 0; i < d->points; i++) draw_value(p, i);
-  for (int b = 0; b < d->bonds; b++) draw_arrow(p, b);
+  mho_marks_draw_below(p);
   for (int b = 0; b < d->bonds; b++) draw_bond(p, b);
   for (int side = 0; side < 2; side++) draw_contact(p, side);
   for (int i = 0; i < d->points; i++) draw_atom(p, i);
   for (int b = 0; b < d->bonds; b++) draw_twist(p, b);
-  for (int s = 0; s < d->molecule->site_count; s++) draw_site_text(p, s);
-  for (int b = 0; b < d->bonds; b++) draw_bond_text(p, b);
+  mho_marks_draw_above(p);
   write_caption(p);
+  mho_marks_draw_key(p, p->height - p->marks->keys * LINE - 8);
 }
 
 static const char hatch[] =
@@ -488,7 +370,7 @@ static void begin(picture *p, double width, double height)
   put(p, "\" viewBox=\"0 0 ", width);
   put(p, " ", height);
   mho_buffer_print(p->svg, "\" font-family=\"'DejaVu Sans',Verdana,sans-serif\">\n%s",
-                   p->marks && p->marks->site_value ? hatch : "");
+                   p->marks && (p->marks->site_value || p->marks->bars) ? hatch : "");
 }
 
 void mho_drawing_write(const mho_drawing *drawing, const mho_drawing_marks *marks,

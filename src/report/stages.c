@@ -6,7 +6,6 @@
 #include <mho/warning.h>
 
 #include <math.h>
-#include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -149,6 +148,44 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
   if (zero) mho_table_integer(table, node->order);
   else mho_table_empty(table);
   mho_table_text(table, kind[node->kind]);
+}
+
+mho_table *mho_currents_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "from", "to", "current"};
+  return mho_output_table(output, "currents", columns, COUNT(columns));
+}
+
+void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside)
+{
+  for (size_t i = 0; i < inside->bonds; i++) {
+    const mho_bond_current *current = &inside->bond[i];
+    bool back = inside->flows && current->flow < 0;
+    mho_table_text(table, molecule->name);
+    mho_table_text(table, molecule->site[back ? current->to : current->from].id);
+    mho_table_text(table, molecule->site[back ? current->from : current->to].id);
+    mho_table_optional(table, inside->flows,
+                       inside->flows ? fabs(current->flow) / inside->transmission : 0);
+  }
+}
+
+mho_table *mho_orbitals_table(mho_output *output)
+{
+  static const char *const columns[] = {"molecule", "level", "energy_eV", "diagonal",
+                                        "interference"};
+  return mho_output_table(output, "orbitals", columns, COUNT(columns));
+}
+
+void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
+                       const mho_inside *inside)
+{
+  for (size_t k = 0; k < inside->orbitals; k++) {
+    mho_table_text(table, molecule);
+    mho_table_integer(table, (long)k + 1);
+    mho_table_number(table, inside->orbital[k].level_ev - fermi_ev);
+    mho_table_number(table, inside->orbital[k].alone);
+    mho_table_number(table, inside->orbital[k].interference);
+  }
 }
 
 /* 10^log10 with two digits, in a buffer. */
@@ -294,6 +331,22 @@ void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
                   reason[law->reason]);
 }
 
+void mho_twist_average_note(mho_output *output, const mho_molecule *molecule, const char *bond,
+                            const char *torsion, const mho_twist_average *a)
+{
+  char motional[32], frozen[32] = "no value";
+  if (!isfinite(a->planar_log10_g0) || !isfinite(a->motional_log10_g0)) return;
+  two_digits(a->motional_log10_g0, motional, sizeof motional);
+  if (a->has_frozen) two_digits(a->frozen_log10_g0, frozen, sizeof frozen);
+  mho_output_note(output,
+                  "%s, %s: thermal motion at %g K over the potential %s leaves %.0f %% of the planar "
+                  "conductance: %s G0%s, or %s G0 if every junction kept its angle%s",
+                  molecule->name, bond, a->temperature_k, torsion,
+                  100 * pow(10, a->motional_log10_g0 - a->planar_log10_g0), motional,
+                  molecule->frozen ? "" : " (motional average, what is measured)", frozen,
+                  molecule->frozen ? " (frozen average, as asked in the file)" : "");
+}
+
 mho_table *mho_interference_table(mho_output *output)
 {
   static const char *const columns[] = {
@@ -337,6 +390,80 @@ void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
     mho_table_optional(table, pair->has_node, pair->node_ev);
     mho_table_optional(table, pair->has_shift, pair->overturning_shift_ev);
   }
+}
+
+/* The pair of the molecule's own contacts, or NULL. */
+static const mho_pair *own_pair(const mho_molecule *m, const mho_interference *map)
+{
+  const mho_contact *l = &m->contact[MHO_LEFT], *r = &m->contact[MHO_RIGHT];
+  for (size_t p = 0; l->count == 1 && r->count == 1 && p < map->count; p++) {
+    const int *site = map->pair[p].site;
+    if ((site[0] == l->site[0] && site[1] == r->site[0]) ||
+        (site[1] == l->site[0] && site[0] == r->site[0]))
+      return &map->pair[p];
+  }
+  return NULL;
+}
+
+void mho_interference_note(mho_output *output, const mho_molecule *m, const mho_interference *map)
+{
+  static const char *const verdict[] = {
+      [MHO_PAIR_CONSTRUCTIVE] = "conduct", [MHO_PAIR_NEAR_NODE] = "are near a node",
+      [MHO_PAIR_NODE_SYMMETRY] = "are a node by symmetry",
+      [MHO_PAIR_NODE_CANCELLATION] = "are a node by cancellation",
+      [MHO_PAIR_NO_PATH] = "have no path"};
+  size_t conducting = 0, nodes = 0;
+  const mho_pair *best = NULL, *own = own_pair(m, map);
+  for (size_t p = 0; p < map->count; p++) {
+    const mho_pair *pair = &map->pair[p];
+    conducting += pair->kind == MHO_PAIR_CONSTRUCTIVE;
+    nodes += is_node(pair);
+    if (!best || pair->transmission > best->transmission) best = pair;
+  }
+  if (!best) return;
+  mho_output_note(output,
+                  "%s: of %zu pairs of sites %zu conduct, %zu are nodes and %zu near one; the best "
+                  "is %s and %s, T %.2g",
+                  m->name, map->count, conducting, nodes, map->count - conducting - nodes,
+                  m->site[best->site[0]].id, m->site[best->site[1]].id, best->transmission);
+  if (!own) return;
+  char until[80] = "";
+  if (own->has_shift)
+    snprintf(until, sizeof until, "%s %.2g eV",
+             own->kind == MHO_PAIR_CONSTRUCTIVE ? ", and do so until the Fermi level moves by"
+                                                : "; that ends once the Fermi level moves by",
+             fabs(own->overturning_shift_ev));
+  mho_output_note(output, "%s: its own contacts %s and %s %s%s", m->name,
+                  m->site[own->site[0]].id, m->site[own->site[1]].id, verdict[own->kind], until);
+}
+
+#define LEAST_CHANGE 0.005 /* decades, 1 % */
+
+void mho_modify_note(mho_output *output, const mho_molecule *m, const mho_modifications *mods)
+{
+  const mho_modification *up = NULL, *down = NULL;
+  for (size_t i = 0; i < mods->count; i++) {
+    const mho_modification *row = &mods->row[i];
+    if (!row->has_change) continue;
+    if (!up || row->change_decades > up->change_decades) up = row;
+    if (!down || row->change_decades < down->change_decades) down = row;
+  }
+  char factor[2][32];
+  if (!up) return;
+  double shown = pow(10, fmax(floor(up->change_decades) - 1, 0)); /* 1600, not 1.6e+03 */
+  mho_number_write(factor[0], sizeof factor[0], shown > 1 ? 15 : 2,
+                   shown > 1 ? shown * round(pow(10, up->change_decades) / shown)
+                             : pow(10, up->change_decades));
+  two_digits(down->change_decades, factor[1], sizeof factor[1]);
+  bool rises = up->change_decades > LEAST_CHANGE, falls = down->change_decades < -LEAST_CHANGE;
+  if (rises)
+    mho_output_note(output, "%s: of %zu single changes %s at %s raises the conductance most, by a "
+                            "factor of %s", m->name, mods->count, up->substituent->name,
+                    m->site[up->site].id, factor[0]);
+  if (falls)
+    mho_output_note(output, "%s: of %zu single changes %s at %s lowers the conductance most, to %s "
+                            "of it", m->name, mods->count, down->substituent->name,
+                    m->site[down->site].id, factor[1]);
 }
 
 mho_table *mho_modify_table(mho_output *output)

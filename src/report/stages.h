@@ -8,6 +8,7 @@
 
 #include <mho/compare.h>
 #include <mho/conductance.h>
+#include <mho/inside.h>
 #include <mho/interference.h>
 #include <mho/modify.h>
 #include <mho/molecule.h>
@@ -42,6 +43,15 @@ mho_table *mho_nodes_table(mho_output *output);
 void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_node *node);
 
+/* Currents relative to T, each from where it comes to where it goes, without a
+ * value where nothing flows.  What each orbital adds to T. */
+mho_table *mho_currents_table(mho_output *output);
+void mho_currents_rows(mho_table *table, const mho_molecule *molecule,
+                       const mho_inside *inside);
+mho_table *mho_orbitals_table(mho_output *output);
+void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
+                       const mho_inside *inside);
+
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
 
@@ -66,12 +76,21 @@ mho_table *mho_twist_average_table(mho_output *output);
 void mho_twist_average_row(mho_table *table, const char *molecule, const char *bond,
                            const char *torsion, const mho_twist_average *average);
 
+/* What thermal motion leaves, by the names of the potentials. */
+void mho_twist_average_note(mho_output *output, const mho_molecule *molecule, const char *bond,
+                            const char *torsion, const mho_twist_average *average);
+
 /* The answer in words: how flat it must be, and how far cos^2 holds. */
 void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
                     const double limit_deg[2], const mho_twist_law *law);
 
 mho_table *mho_interference_table(mho_output *output);
 void mho_interference_rows(mho_table *table, const mho_molecule *molecule,
+                           const mho_interference *map);
+
+/* How many pairs conduct, which best, and what holds for the contacts of the
+ * molecule. */
+void mho_interference_note(mho_output *output, const mho_molecule *molecule,
                            const mho_interference *map);
 
 mho_table *mho_modify_table(mho_output *output);
@@ -83,6 +102,11 @@ mho_table *mho_rules_table(mho_output *output);
 void mho_rules_rows(mho_table *table, const mho_molecule *molecule, const mho_interference *map);
 void mho_rules_note(mho_output *output, const mho_molecule *molecule,
                     const mho_interference *map);
+
+/* The best change upwards and downwards. */
+void mho_modify_note(mho_output *output, const mho_molecule *molecule,
+                     const mho_modifications *modifications);
+
 /* Measured traces.  Each opens its table and fills it; traces, peaks and levels
  * count from 1. */
 void mho_histogram_rows(mho_output *output, const mho_histogram *histogram,

@@ -37,9 +37,18 @@ static bool grow(void **array, size_t count, size_t size)
   return larger != NULL;
 }
 
+mho_table *mho_output_find(const mho_output *output, const char *name)
+{
+  for (size_t i = 0; i < output->tables; i++)
+    if (!strcmp(output->table[i].name, name)) return &output->table[i];
+  return NULL;
+}
+
 mho_table *mho_output_table(mho_output *output, const char *name,
                             const char *const *column, size_t columns)
 {
+  mho_table *known = mho_output_find(output, name);
+  if (known) return known;
   if (!grow((void **)&output->table, output->tables, sizeof *output->table)) {
     output->failed = true;
     return NULL;
@@ -51,7 +60,13 @@ mho_table *mho_output_table(mho_output *output, const char *name,
 
 void mho_output_warn(mho_output *output, const char *molecule, unsigned warnings)
 {
+  enum { REACH = 2000 }; /* lists are longer, and theirs come one by one */
   if (!warnings) return;
+  for (size_t i = output->warnings; i-- > 0 && i + REACH > output->warnings;)
+    if (!strcmp(output->warning[i].molecule, molecule)) {
+      output->warning[i].warnings |= warnings;
+      return;
+    }
   char *copy = mho_copy_text(molecule);
   if (!copy || !grow((void **)&output->warning, output->warnings, sizeof *output->warning)) {
     free(copy);

@@ -54,10 +54,15 @@ typedef struct {
 
 void mho_output_clear(mho_output *output);
 
-/* A new table of the output, or NULL (and output->failed).  The pointer holds
- * until the next call. */
+/* The table of the output by that name, opened where it is not yet there, or
+ * NULL (and output->failed).  The pointer holds until the next call. */
 mho_table *mho_output_table(mho_output *output, const char *name,
                             const char *const *column, size_t columns);
+
+/* The table of that name, or NULL; the pointer holds as long. */
+mho_table *mho_output_find(const mho_output *output, const char *name);
+
+/* Warnings of one molecule stand together. */
 void mho_output_warn(mho_output *output, const char *molecule, unsigned warnings);
 void mho_output_note(mho_output *output, const char *format, ...) MHO_PRINTF(2, 3);
 

@@ -7,6 +7,8 @@
 #include "base/lapack.h"
 #include "solver/plan.h"
 
+#define LEAST_FLOWING 1e-20
+
 typedef struct {
   const mho_junction *junction;
   const mho_plan *plan;
@@ -144,6 +146,7 @@ mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan
   if (status == MHO_OK) status = solve(&v, energy_ev, result, error);
   if (status == MHO_OK) {
     result->transmission = point.transmission;
+    result->flows = !point.node && point.transmission > LEAST_FLOWING;
     find_orbitals(&v, result);
     status = find_channels(&v, result, error);
   }

@@ -18,11 +18,12 @@
 #include "report/json.h"
 #include "report/stages.h"
 #include "study/folder.h"
+#include "study/levers.h"
 #include "study/measured.h"
 #include "study/provenance.h"
 #include "study/study.h"
 
-enum { EVEN_POINTS = 401, EXACT_DIGITS = 17, TABLE_DIGITS = 6, ANSWERS_MAX = 8, SCREEN_NAME = 80 };
+enum { EVEN_POINTS = 401, EXACT_DIGITS = 17, TABLE_DIGITS = 6, ANSWERS_MAX = 40, SCREEN_NAME = 80 };
 
 /* What was computed for one molecule. */
 typedef struct {
@@ -31,6 +32,8 @@ typedef struct {
   size_t count;
   double *energy_ev; /* above the Fermi level */
   mho_point *point;
+  size_t nodes;
+  double *node_ev;
 } outcome;
 
 typedef struct {
@@ -48,6 +51,7 @@ typedef struct {
   mho_output output;
   char *answer[ANSWERS_MAX];
   size_t answers;
+  mho_levers levers;
   mho_portrait *portrait; /* [molecule_count] */
   mho_figure *figure;
   size_t figures;
@@ -120,6 +124,8 @@ static mho_status compute_molecule(run *r, int index, mho_error *error)
     status = mho_conductance_compute(plan, o->junction.fermi_ev, o->junction.temperature_k,
                                      &options, g, error);
   if (status == MHO_OK) status = sweep(s, plan, o, error);
+  if (status == MHO_OK)
+    status = mho_figure_nodes(plan, o->junction.fermi_ev, &o->node_ev, &o->nodes, error);
   mho_plan_free(plan);
   if (status == MHO_OK) o->warnings = g->warnings | mho_molecule_warnings(molecule, &o->junction);
   return status;
@@ -221,6 +227,19 @@ static void answer_comparison(run *r)
                           a->pairs, a->pairs == 1 ? "" : "s", a->ordered));
 }
 
+/* The first sentence of each question of each molecule. */
+static void say_levers(run *r)
+{
+  for (size_t i = 0; i < r->levers.remarks; i++) {
+    const mho_remark *remark = &r->levers.remark[i];
+    const char *colon = strchr(remark->text, ':');
+    size_t name = colon ? (size_t)(colon - remark->text) : 0;
+    bool first = i == 0 || strcmp(remark->section, remark[-1].section) ||
+                 strncmp(remark->text, remark[-1].text, name + 1);
+    if (first && strcmp(remark->section, "currents")) say(r, mho_print_text("%s.", remark->text));
+  }
+}
+
 static void answer(run *r)
 {
   const mho_study *s = r->study;
@@ -245,6 +264,7 @@ static void answer(run *r)
                           "value is predicted for %s.",
                           nodes, s->molecule_count, nodes > 1 ? "them" : "it"));
   if (r->compare) answer_comparison(r);
+  say_levers(r);
   for (int i = 0; i < s->traces_count; i++)
     say(r, mho_measured_sentence(s, &s->traces[i], &r->measured[i]));
 }
@@ -304,6 +324,8 @@ static mho_status draw_transmission(run *r, int first, int count, mho_error *err
                            .count = r->outcome[i].count,
                            .energy_ev = r->outcome[i].energy_ev,
                            .point = r->outcome[i].point,
+                           .nodes = r->outcome[i].nodes,
+                           .node_ev = r->outcome[i].node_ev,
                            .has_measured = r->compare && m->has_measured,
                            .measured_log10_g0 = m->measured_log10_g0};
     measured |= curve[c].has_measured;
@@ -358,6 +380,41 @@ static mho_status draw_traces(run *r, int index, mho_error *error)
   return status == MHO_OK ? draw(r, &r->measured[index].figure, figure, error) : status;
 }
 
+static mho_status compute_levers(run *r, mho_error *error)
+{
+  mho_status status = MHO_OK;
+  if (!mho_levers_asked(r->study)) return MHO_OK;
+  for (int i = 0; status == MHO_OK && i < r->study->molecule_count; i++) {
+    status = step(r, r->study->molecule[i].name, error);
+    if (status == MHO_OK)
+      status = mho_levers_add(r->study, i, &r->outcome[i].junction, &r->output, &r->levers, error);
+  }
+  return status == MHO_OK ? mho_levers_finish(r->study, &r->output, &r->levers, error) : status;
+}
+
+/* Pictures are written, scripts are drawn where gnuplot is there. */
+static mho_status draw_levers(run *r, mho_error *error)
+{
+  mho_status status = MHO_OK;
+  for (size_t i = 0; status == MHO_OK && i < r->levers.pictures; i++) {
+    mho_lever_picture *from = &r->levers.picture[i];
+    mho_figure *figure = NULL;
+    if (from->script && r->without_gnuplot) continue;
+    status = mho_buffer_check(&from->figure.svg, "study", error);
+    if (status == MHO_OK)
+      status = add_figure(r, from->figure.section, mho_copy_text(from->figure.file),
+                          mho_copy_text(from->figure.caption), &figure, error);
+    if (status == MHO_OK) figure->drawn = !from->script;
+    if (status == MHO_OK && from->script) status = draw(r, &from->figure.svg, figure, error);
+    else if (status == MHO_OK) {
+      status = mho_folder_write(&r->folder, figure->file, &from->figure.svg, error);
+      figure->svg = from->figure.svg;
+      from->figure.svg = (mho_buffer){0};
+    }
+  }
+  return status;
+}
+
 static mho_status draw_figures(run *r, mho_error *error)
 {
   mho_status status = MHO_OK;
@@ -370,6 +427,7 @@ static mho_status draw_figures(run *r, mho_error *error)
     int in_figure = count - i < MHO_CURVES_MAX ? count - i : MHO_CURVES_MAX;
     if (status == MHO_OK) status = draw_transmission(r, i, in_figure, error);
   }
+  if (status == MHO_OK) status = draw_levers(r, error);
   if (status == MHO_OK && r->without_gnuplot)
     mho_output_note(&r->output, "gnuplot was not found: figures are left out");
   return status;
@@ -464,6 +522,8 @@ static mho_status write_report(run *r, mho_error *error)
                        .answers = r->answers,
                        .figure = r->figure,
                        .figures = r->figures,
+                       .remark = r->levers.remark,
+                       .remarks = r->levers.remarks,
                        .without_gnuplot = r->without_gnuplot};
   mho_buffer buffer = {0};
   mho_status status = mho_write_html(&report, &buffer, error);
@@ -495,6 +555,8 @@ static mho_status execute(run *r, mho_error *error)
   if (status == MHO_OK) status = compare(r, error);
   if (status != MHO_OK) return status;
   fill_tables(r);
+  status = compute_levers(r, error);
+  if (status != MHO_OK) return status;
   answer(r);
   status = draw_molecules(r, error);
   if (status == MHO_OK) status = draw_figures(r, error);
@@ -513,6 +575,7 @@ static void run_clear(run *r)
     mho_junction_clear(&r->outcome[i].junction);
     free(r->outcome[i].energy_ev);
     free(r->outcome[i].point);
+    free(r->outcome[i].node_ev);
   }
   for (int i = 0; r->measured && i < r->study->traces_count; i++)
     mho_measured_clear(&r->measured[i]);
@@ -524,6 +587,7 @@ static void run_clear(run *r)
   }
   for (int i = 0; r->portrait && i < r->study->molecule_count; i++)
     mho_buffer_clear(&r->portrait[i].svg);
+  mho_levers_clear(&r->levers);
   free(r->portrait);
   free(r->figure);
   free(r->outcome);
@@ -542,7 +606,7 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   static const mho_run_options nothing = {0};
   run r = {.study = study, .options = options ? options : &nothing};
   r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
-            study->traces_count;
+            study->traces_count + (mho_levers_asked(study) ? study->molecule_count : 0);
   r.outcome = calloc(n, sizeof *r.outcome);
   r.portrait = calloc(n, sizeof *r.portrait);
   r.conductance = calloc(n, sizeof *r.conductance);

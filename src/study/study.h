@@ -10,6 +10,9 @@
 #include <mho/study.h>
 #include <mho/traces.h>
 
+#include "study/interference.h"
+#include "study/twist.h"
+
 typedef struct {
   char *path; /* as opened */
   char *name; /* as the study names it */
@@ -39,6 +42,10 @@ struct mho_study {
   double energy_low_ev, energy_high_ev;
   long samples; /* 0: as the resonances ask for */
   double window_ev;
+  bool sensitivity, currents, orbitals;
+  mho_twist_question twist;
+  mho_interference_question interference;
+  bool *asks_twist, *asks_interference; /* [molecule_count] */
   bool compare;
   int reference; /* index, or -1 */
 };

@@ -5,6 +5,7 @@
 #include <glob.h>
 #include <stdlib.h>
 #include <string.h>
+#include <unistd.h>
 
 #include <mho/molecule_file.h>
 
@@ -287,10 +288,12 @@ static void read_measured(reader *r)
 
 static void read_transmission_question(reader *r, const mho_yaml_node *node)
 {
-  static const char *const keys[] = {"energies", "samples"};
+  static const char *const keys[] = {"energies", "samples", "currents", "orbitals"};
   mho_study *s = r->study;
   if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "transmission")) return;
   mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  mho_yaml_get_flag(&r->yaml, mho_yaml_find(node, "currents"), "currents", &s->currents);
+  mho_yaml_get_flag(&r->yaml, mho_yaml_find(node, "orbitals"), "orbitals", &s->orbitals);
   mho_yaml_get_integer(&r->yaml, mho_yaml_find(node, "samples"), "samples", 2, 100000,
                        &s->samples);
   const mho_yaml_node *range = mho_yaml_find(node, "energies");
@@ -309,10 +312,135 @@ static void read_transmission_question(reader *r, const mho_yaml_node *node)
                   "energies: the range runs downwards; the lower end comes first");
 }
 
+/* The molecules that a question names, one or a list; without them every one
+ * to which it applies (NULL: to all). */
+static bool *read_asked(reader *r, const mho_yaml_node *node, const char *field,
+                        bool (*applies)(const mho_molecule *))
+{
+  const mho_study *s = r->study;
+  const mho_yaml_node *named = mho_yaml_find(node, "molecule");
+  bool list = named && named->kind == MHO_YAML_LIST, any = false;
+  bool *asked = calloc((size_t)s->molecule_count + 1, sizeof *asked);
+  int index;
+  if (!asked) {
+    fail_memory(r);
+    return NULL;
+  }
+  for (size_t i = 0; named && i < (list ? named->count : 1); i++)
+    if (read_molecule_name(r, list ? named->item[i] : named, "molecule", &index)) asked[index] = true;
+  for (int i = 0; !named && i < s->molecule_count; i++)
+    any |= asked[i] = !applies || applies(&s->molecule[i]);
+  if (!named && !any && r->yaml.error->count == 0)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_REFERENCE, field,
+                  "%s: no molecule has a bond that can turn; name a molecule and a bond", field);
+  return asked;
+}
+
+/* Keys of a question: its options, and `molecule`. */
+static bool read_options(reader *r, const mho_yaml_node *node, const char *field,
+                         const mho_option *table, size_t count, void *options)
+{
+  const char *keys[16] = {"molecule"};
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, field)) return false;
+  for (size_t i = 0; i < count; i++) keys[i + 1] = table[i].name;
+  mho_yaml_check_keys(&r->yaml, node, keys, count + 1);
+  mho_yaml_get_options(&r->yaml, node, table, count, options);
+  return true;
+}
+
+/* What excludes each other, without the dashes of the command line. */
+static void fail_conflict(reader *r, const mho_yaml_node *node, const char *field,
+                          const char *conflict)
+{
+  char words[200];
+  size_t used = 0;
+  for (const char *c = conflict; *c && used < sizeof words - 1; c++)
+    if (*c != '-' || (c[1] != '-' && (c == conflict || c[-1] != '-'))) words[used++] = *c;
+  words[used] = '\0';
+  mho_yaml_fail(&r->yaml, node, MHO_ERR_KEY, field, "%s: %s", field, words);
+}
+
+/* Bonds and potentials of a molecule, at the place that asks for them. */
+static void check_twist(reader *r, const mho_yaml_node *node, const mho_molecule *molecule)
+{
+  const mho_twist_question *q = &r->study->twist;
+  const mho_yaml_node *bond = mho_yaml_find(node, "bond");
+  const mho_yaml_node *torsion_node = mho_yaml_find(node, "torsion");
+  mho_twist_bonds bonds;
+  mho_torsion torsion[MHO_TWIST_AVERAGE_BONDS_MAX];
+  char reason[480], *names = NULL;
+  mho_error own;
+  mho_error_init(&own);
+  mho_status status = mho_twist_choose(q, molecule, &bonds, reason, sizeof reason);
+  if (status != MHO_OK)
+    mho_yaml_fail(&r->yaml, bond ? bond : node, status, "bond", "bond: in '%.60s', %s",
+                  molecule->name ? molecule->name : "", reason);
+  else if (q->average || q->torsion.text[0])
+    status = mho_twist_potentials(q, molecule, &bonds, torsion, &names, &own);
+  for (int i = 0; i < own.count; i++)
+    if (own.cause[i].line > 0) /* of the table */
+      mho_fail_at(r->yaml.error, own.cause[i].status, "study", own.cause[i].file, own.cause[i].line,
+                  own.cause[i].column, "torsion", "%s", own.cause[i].message);
+    else
+      mho_yaml_fail(&r->yaml, torsion_node ? torsion_node : node, own.cause[i].status, "torsion",
+                    "%s%s", own.cause[i].status == MHO_ERR_FILE ? "torsion: the table " : "",
+                    own.cause[i].message);
+  free(names);
+  mho_twist_bonds_clear(&bonds);
+}
+
+/* A table of energies is beside the study, and one of its inputs. */
+static void find_torsion_table(reader *r)
+{
+  mho_option_text *torsion = &r->study->twist.torsion;
+  size_t length = strlen(torsion->text);
+  if (length < 5 || strcmp(torsion->text + length - 4, ".csv")) return;
+  char *path = mho_path_beside(r->yaml.file, torsion->text);
+  if (!path) fail_memory(r);
+  else if (strlen(path) < sizeof torsion->text) {
+    memcpy(torsion->text, path, strlen(path) + 1);
+    if (access(path, R_OK) == 0) add_input(r, path, path);
+  }
+  free(path);
+}
+
+static void read_twist_question(reader *r, const mho_yaml_node *node)
+{
+  mho_study *s = r->study;
+  size_t count;
+  const mho_option *table = mho_twist_options(&count);
+  if (!read_options(r, node, "twist", table, count, &s->twist)) return;
+  const char *conflict = mho_twist_conflict(&s->twist, false);
+  if (conflict) fail_conflict(r, node, "twist", conflict);
+  find_torsion_table(r);
+  s->asks_twist = read_asked(r, node, "twist", mho_twist_applies);
+  for (int i = 0; r->yaml.error->count == 0 && s->asks_twist && i < s->molecule_count; i++)
+    if (s->asks_twist[i]) check_twist(r, node, &s->molecule[i]);
+}
+
+static void read_interference_question(reader *r, const mho_yaml_node *node)
+{
+  mho_study *s = r->study;
+  size_t count;
+  const mho_option *table = mho_interference_question_options(&count);
+  if (!read_options(r, node, "interference", table, count, &s->interference)) return;
+  const char *conflict = mho_interference_conflict(&s->interference, false);
+  if (conflict) fail_conflict(r, node, "interference", conflict);
+  s->asks_interference = read_asked(r, node, "interference", NULL);
+  const mho_yaml_node *from = mho_yaml_find(node, "from");
+  for (int i = 0; from && s->asks_interference && i < s->molecule_count; i++)
+    if (s->asks_interference[i] && s->molecule[i].site_count > 0 &&
+        mho_molecule_find_site(&s->molecule[i], s->interference.from.text) < 0)
+      mho_yaml_fail(&r->yaml, from, MHO_ERR_REFERENCE, "from",
+                    "from: there is no site '%.60s' in the pi system of '%.60s'",
+                    s->interference.from.text, s->molecule[i].name ? s->molecule[i].name : "");
+}
+
 static void read_questions(reader *r)
 {
-  static const char *const keys[] = {"conductance", "transmission", "compare"};
-  static const char *const conductance_keys[] = {"window"};
+  static const char *const keys[] = {"conductance", "transmission", "twist", "interference",
+                                     "compare"};
+  static const char *const conductance_keys[] = {"window", "sensitivity"};
   static const char *const compare_keys[] = {"reference"};
   mho_study *s = r->study;
   const mho_yaml_node *node = mho_yaml_find(r->yaml.root, "questions");
@@ -320,11 +448,15 @@ static void read_questions(reader *r)
   if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "questions")) return;
   mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
   read_transmission_question(r, mho_yaml_find(node, "transmission"));
+  read_twist_question(r, mho_yaml_find(node, "twist"));
+  read_interference_question(r, mho_yaml_find(node, "interference"));
   const mho_yaml_node *conductance = mho_yaml_find(node, "conductance");
   if (mho_yaml_is(&r->yaml, conductance, MHO_YAML_MAPPING, "conductance")) {
     mho_yaml_check_keys(&r->yaml, conductance, conductance_keys, COUNT(conductance_keys));
     mho_yaml_get_quantity(&r->yaml, mho_yaml_find(conductance, "window"), "window", MHO_ENERGY,
                           0.0, 10.0, &s->window_ev);
+    mho_yaml_get_flag(&r->yaml, mho_yaml_find(conductance, "sensitivity"), "sensitivity",
+                      &s->sensitivity);
   }
   const mho_yaml_node *compare = mho_yaml_find(node, "compare");
   if (!mho_yaml_is(&r->yaml, compare, MHO_YAML_MAPPING, "compare")) return;
@@ -404,6 +536,8 @@ void mho_study_free(mho_study *study)
     free((char *)(size_t)study->traces[t].options.columns);
   }
   free(study->traces);
+  free(study->asks_twist);
+  free(study->asks_interference);
   free(study->molecule);
   free(study->input);
   free(study->peak);

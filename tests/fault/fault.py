@@ -15,7 +15,7 @@ STRIDE_LIMIT = 80  # at most that many runs a command
 MOLECULE = os.path.join(ROOT, "molecules/benzene-1-3-diamine.yaml")
 GOLDEN = os.path.join(ROOT, "tests/golden/files")
 PULLS = os.path.join(GOLDEN, "pulls.csv")
-STUDY = os.path.join(ROOT, "molecules/studies/flat-or-twisted.yaml")
+STUDY = os.path.join(GOLDEN, "levers-small.yaml")
 
 
 def run(arguments, scratch, **variables):

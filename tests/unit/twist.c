@@ -172,14 +172,14 @@ static void two_barriers_make_a_potential(void **state)
   (void)state;
   mho_torsion t;
   /* Bastiansen and Samdal: 6.0 and 6.5 kJ/mol with the minimum at 44.4 deg. */
-  assert_int_equal(mho_torsion_read("6.0 kJ/mol, 6.5 kJ/mol", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("6.0 kJ/mol, 6.5 kJ/mol", NULL, &t, NULL), MHO_OK);
   double lowest = 0;
   for (double a = 0; a <= 90; a += 0.01)
     if (mho_torsion_energy(&t, a) < mho_torsion_energy(&t, lowest)) lowest = a;
   assert_near(lowest, 44.4, 0.06);
   assert_near(mho_torsion_energy(&t, 0) - mho_torsion_energy(&t, lowest), 6.0, 1e-6);
   assert_near(mho_torsion_energy(&t, 90) - mho_torsion_energy(&t, lowest), 6.5, 1e-6);
-  assert_int_equal(mho_torsion_read("0 kJ/mol, 2.7 kJ/mol", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("0 kJ/mol, 2.7 kJ/mol", NULL, &t, NULL), MHO_OK);
   assert_near(mho_torsion_energy(&t, 90) - mho_torsion_energy(&t, 0), 2.7, 1e-12);
   assert_near(mho_torsion_energy(&t, 45) - mho_torsion_energy(&t, 0), 1.35, 1e-12);
   static const char *const bad[] = {"", "6 kJ/mol", "6 eV, 7 eV", "6, 7", "-1 kJ/mol, 2 kJ/mol",
@@ -188,9 +188,86 @@ static void two_barriers_make_a_potential(void **state)
   for (size_t i = 0; i < sizeof bad / sizeof *bad; i++) {
     mho_error error;
     mho_error_init(&error);
-    mho_status status = mho_torsion_read(bad[i], &t, &error);
+    mho_status status = mho_torsion_read(bad[i], NULL, &t, &error);
     assert_true(mho_status_is_input(status));
     assert_int_equal(error.count, 1);
+  }
+}
+
+/* Energy above the lowest, in kJ/mol. */
+static double above_lowest(const mho_torsion *t, double angle, double *lowest)
+{
+  *lowest = 0;
+  for (double a = 0; a <= 180; a += 0.1)
+    if (mho_torsion_energy(t, a) < mho_torsion_energy(t, *lowest)) *lowest = a;
+  return mho_torsion_energy(t, angle) - mho_torsion_energy(t, *lowest);
+}
+
+/* The published numbers come out of the table: barriers as in the sources named
+ * there, in their units (1 kcal = 4.184 kJ, 1 cm-1 = 0.0119627 kJ/mol). */
+static void the_literature_comes_out_of_its_table(void **state)
+{
+  (void)state;
+  static const struct {
+    const char *name;
+    double planar, perpendicular, across, minimum; /* across: at 180 deg */
+  } rows[] = {
+      {"biphenyl", 8.0, 8.3, 8.0, 44.7},
+      {"bipyridine-4-4", 1.65 * 4.184, 2.1 * 4.184, 1.65 * 4.184, 43.3},
+      /* J. Chem. Phys. 109, 7185: 38.7 deg from 457 and 748 cm-1 and more terms */
+      {"phenylpyrrole", 457 * 0.0119627, 748 * 0.0119627, 457 * 0.0119627, 41.5},
+      {"bithiophene-2-2", 0, 2 * 4.184, 0.4 * 4.184, 0},
+      {"bifuran-2-2", 0, 4 * 4.184, 2 * 4.184, 0},
+      {"bipyridine-2-2", 0, 28, 25, 0},
+      {"styrene", 0, 1077 * 0.0119627, 0, 0},
+      {"stilbene", 0, 1550 * 0.0119627, 0, 0},
+      {"tolane", 0, 227.5 * 0.0119627, 0, 0}};
+  size_t count;
+  const mho_torsion_row *table = mho_torsion_table(&count);
+  for (size_t i = 0; i < count; i++) assert_true(strlen(table[i].source) > 20);
+  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
+    mho_torsion t;
+    double lowest;
+    assert_int_equal(mho_torsion_read(rows[i].name, NULL, &t, NULL), MHO_OK);
+    assert_near(above_lowest(&t, 0, &lowest), rows[i].planar, 5e-3);
+    assert_near(above_lowest(&t, 90, &lowest), rows[i].perpendicular, 5e-3);
+    assert_near(above_lowest(&t, 180, &lowest), rows[i].across, 5e-3);
+    assert_near(lowest > 90 ? 180 - lowest : lowest, rows[i].minimum, 0.2);
+  }
+}
+
+static void bonds_know_their_potential(void **state)
+{
+  (void)state;
+  static const struct {
+    const char *smiles, *kind;
+  } rows[] = {
+      {"Nc1ccc(cc1)-c1ccc(N)cc1", "biphenyl"},
+      {"Nc1ccc(cc1)-c1ccncc1", "biphenyl"},
+      {"c1cc(ccn1)-c1ccncc1", "bipyridine-4-4"},
+      {"[cH:1]1ccnc(c1)-c1cc[cH:2]cn1", "bipyridine-2-2"},
+      {"[cH:1]1cc(cs1)-c1cc[cH:2]s1", NULL}, /* linked at its 3 */
+      {"[cH:1]1ccc(s1)-c1cc[cH:2]s1", "bithiophene-2-2"},
+      {"[cH:1]1ccc(o1)-c1cc[cH:2]o1", "bifuran-2-2"},
+      {"[cH:1]1ccc(s1)-c1cc[cH:2]o1", NULL},
+      {"[cH:1]1ccc(s1)-c1cc[cH:2]cc1", NULL},          /* no value for it */
+      {"Nc1ccc(cc1)-c1ccc(N)cc1C", NULL},              /* crowded */
+      {"Nc1ccc(cc1)-c1ccc(N)cc1F", NULL},
+      {"[cH:1]1ccn(c1)-c1cc[cH:2]cc1", "phenylpyrrole"},
+      {"[cH:1]1ccc(cc1)C=[CH2:2]", "styrene"},
+      {"[cH:1]1ccc(cc1)C(C)=[CH2:2]", NULL},
+      {"Nc1ccc(cc1)C=Cc1ccc(N)cc1", "stilbene"},
+      {"Nc1ccc(cc1)C#Cc1ccc(N)cc1", "tolane"}};
+  for (size_t i = 0; i < sizeof rows / sizeof *rows; i++) {
+    subject s = drawn(rows[i].smiles, 1.0);
+    int found = -1;
+    for (int b = 0; b < s.molecule.bond_count && found < 0; b++)
+      if (s.molecule.bond[b].rotatable) found = b;
+    assert_true(found >= 0);
+    const char *kind = s.molecule.bond[found].torsion;
+    if (rows[i].kind) assert_string_equal(kind ? kind : "none", rows[i].kind);
+    else if (kind) fail_msg("%s: %s", rows[i].smiles, kind);
+    clear(&s);
   }
 }
 
@@ -199,7 +276,7 @@ static void a_table_gives_its_potential_back(void **state)
   (void)state;
   mho_torsion from, to;
   double angle[19], energy[19];
-  assert_int_equal(mho_torsion_read("v1 = 1 kJ/mol, v2 = -2 kJ/mol, v4 = 3 kJ/mol", &from, NULL),
+  assert_int_equal(mho_torsion_read("v1 = 1 kJ/mol, v2 = -2 kJ/mol, v4 = 3 kJ/mol", NULL, &from, NULL),
                    MHO_OK);
   for (int i = 0; i < 19; i++) {
     angle[i] = 10 * i;
@@ -223,7 +300,7 @@ static void thermal_averages_have_their_values(void **state)
   mho_rotor *rotor = rotor_of(&s, rotatable(&s));
   mho_torsion t;
   mho_twist_average average;
-  assert_int_equal(mho_torsion_read("biphenyl-diffraction", &t, NULL), MHO_OK);
+  assert_int_equal(mho_torsion_read("biphenyl-diffraction", NULL, &t, NULL), MHO_OK);
   assert_int_equal(mho_twist_average_compute(rotor, &t, &average, NULL), MHO_OK);
   assert_true(average.converged && average.has_frozen);
   assert_near(average.mean_cos2, 0.512, 5e-4);
@@ -321,6 +398,8 @@ int main(void)
       cmocka_unit_test(the_law_says_where_it_fails),
       cmocka_unit_test(two_barriers_make_a_potential),
       cmocka_unit_test(a_table_gives_its_potential_back),
+      cmocka_unit_test(the_literature_comes_out_of_its_table),
+      cmocka_unit_test(bonds_know_their_potential),
       cmocka_unit_test(thermal_averages_have_their_values),
       cmocka_unit_test(the_amine_series_lies_on_its_line),
       cmocka_unit_test(limits_are_those_of_the_curve),
