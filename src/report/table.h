@@ -32,6 +32,7 @@ typedef struct {
   const char *const *column; /* static texts */
   size_t columns, cells, capacity;
   mho_cell *cell; /* [rows][columns] */
+  bool prose; /* the last column is a sentence: set to the left for the eye */
   mho_status failed;
 } mho_table;
 
@@ -67,6 +68,7 @@ void mho_table_integer(mho_table *table, long value);
 void mho_table_text(mho_table *table, const char *text);
 void mho_table_node(mho_table *table);
 void mho_table_empty(mho_table *table);
+void mho_table_warnings(mho_table *table, unsigned warnings); /* their words */
 size_t mho_table_rows(const mho_table *table);
 
 /* MHO_OK, or what went wrong while the output was built. */

@@ -1,0 +1,131 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <mho/screen_store.h>
+#include <mho/warning.h>
+
+#include <stdlib.h>
+#include <string.h>
+
+#include "base/text.h"
+#include "report/stages.h"
+
+#define COUNT(array) (sizeof(array) / sizeof *(array))
+
+/* Characters that the other columns take at most, for the eye. */
+enum { OTHER_COLUMNS = 86, NAME_MOST = 24, SMILES_LEAST = 12 };
+
+/* At most `room` characters of a text, with dots where it goes on. */
+static void add_cut(mho_table *table, const char *text, int room)
+{
+  int used = 0;
+  const char *at = text, *cut = text;
+  for (; *at; at++) {
+    if (((unsigned char)*at & 0xC0) == 0x80) continue;
+    if (used == room - 3) cut = at;
+    if (++used > room) break;
+  }
+  char *shorter = *at && room > 3 ? mho_print_text("%.*s...", (int)(cut - text), text) : NULL;
+  if (*at && room > 3 && !shorter && table) table->failed = MHO_ERR_MEMORY;
+  mho_table_text(table, shorter ? shorter : text);
+  free(shorter);
+}
+
+static void add_value(mho_table *table, const mho_screen_quantities *quantities, int index)
+{
+  double value;
+  bool there = mho_screen_value(quantities, index, &value);
+  mho_table_optional(table, there, value);
+}
+
+mho_table *mho_screening_table(mho_output *output, int width)
+{
+  static const char *const columns[] = {"rank",   "candidate", "smiles",    "log10_G0",
+                                        "low",    "high",      "gap_eV",    "length_nm",
+                                        "top_probability", "warnings"};
+  static const char *const narrow[] = {"rank",   "candidate", "log10_G0",  "low",
+                                       "high",   "gap_eV",    "length_nm", "top_probability",
+                                       "warnings"};
+  if (width > 0 && width - OTHER_COLUMNS - NAME_MOST < SMILES_LEAST)
+    return mho_output_table(output, "screen", narrow, COUNT(narrow));
+  return mho_output_table(output, "screen", columns, COUNT(columns));
+}
+
+void mho_screening_row(mho_table *table, int width, const mho_screen_text *text,
+                       const mho_screen_place *place, const mho_screen_quantities *quantities)
+{
+  mho_table_integer(table, (long)place->rank);
+  int smiles_room = width - OTHER_COLUMNS - NAME_MOST;
+  add_cut(table, text->name, width > 0 ? NAME_MOST : 0);
+  if (width <= 0 || smiles_room >= SMILES_LEAST) {
+    if (text->smiles) add_cut(table, text->smiles, width > 0 ? smiles_room : 0);
+    else mho_table_empty(table);
+  }
+  add_value(table, quantities, MHO_SCREEN_log10_g0);
+  add_value(table, quantities, MHO_SCREEN_low_log10_g0);
+  add_value(table, quantities, MHO_SCREEN_high_log10_g0);
+  add_value(table, quantities, MHO_SCREEN_gap_ev);
+  add_value(table, quantities, MHO_SCREEN_length_nm);
+  mho_table_number(table, place->top_probability);
+  mho_table_warnings(table, (unsigned)quantities->warnings);
+}
+
+mho_table *mho_failures_table(mho_output *output)
+{
+  static const char *const columns[] = {"candidate", "line", "reason"};
+  mho_table *table = mho_output_table(output, "failures", columns, COUNT(columns));
+  if (table) table->prose = true;
+  return table;
+}
+
+void mho_failures_row(mho_table *table, const mho_screen_text *text)
+{
+  mho_table_text(table, text->name);
+  if (text->line > 0) mho_table_integer(table, text->line);
+  else mho_table_empty(table);
+  mho_table_text(table, text->reason);
+}
+
+/* Each warning once, with its meaning. */
+static void note_warnings(mho_output *output, unsigned warnings)
+{
+  for (int i = 0; i < MHO_WARNING_COUNT; i++)
+    if (warnings >> i & 1)
+      mho_output_note(output, "%s: %s", mho_warning_word(i), mho_warning_sentence(i));
+}
+
+void mho_screening_note(mho_output *output, const mho_screen_rank_options *options,
+                        const mho_screen_ranking *ranking, unsigned warnings)
+{
+  char text[200];
+  mho_buffer requirements = {0};
+  for (size_t i = 0; i < options->requirements; i++)
+    mho_buffer_print(&requirements, "%s%s", i ? ", " : "; required: ",
+                     mho_screen_require_write(&options->requirement[i], text, sizeof text));
+  output->failed |= requirements.failed;
+  mho_output_note(output, "goal: %s%s", mho_screen_goal_write(&options->goal, text, sizeof text),
+                  requirements.data ? requirements.data : "");
+  mho_buffer_clear(&requirements);
+  if (ranking->refused)
+    mho_output_note(output, "%zu do not meet what is required and are left out", ranking->refused);
+  if (ranking->undefined)
+    mho_output_note(output, "%zu have no %s and stand last", ranking->undefined,
+                    mho_screen_quantity_at(options->goal.quantity)->name);
+  if (ranking->top > 1 && ranking->distinguishable == 1)
+    mho_output_note(output, "the first %zu cannot be told apart: their differences are smaller "
+                            "than the errors of the parameters (90 %%)", ranking->top);
+  else if (ranking->top > 1)
+    mho_output_note(output, "the first %zu fall into %zu groups that can be told apart (90 %%); "
+                            "within a group the order means nothing",
+                    ranking->top, ranking->distinguishable);
+  note_warnings(output, warnings);
+}
+
+void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts)
+{
+  unsigned long long done = counts->good + counts->bad, rows = counts->rows;
+  if (done < rows)
+    mho_output_note(output, "unfinished: %llu of %llu rows are done; mho screen LIST --store "
+                            "... --resume goes on", done, rows);
+  if (counts->bad)
+    mho_output_note(output, "%llu of %llu rows are bad; --failed lists them",
+                    (unsigned long long)counts->bad, done);
+}
