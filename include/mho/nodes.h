@@ -49,6 +49,18 @@ MHO_API MHO_MUST_USE mho_status mho_nodes_find(const mho_plan *plan,
                                                mho_error *error);
 MHO_API void mho_nodes_clear(mho_nodes *result);
 
+/* The exact nodes at low_ev < E < high_ev alone, in the time of some sums over
+ * the levels: for the gap between HOMO and LUMO of many molecules.  An end that
+ * is a level may be given; a node within 1e-10 eV of it counts as one at the
+ * level, not between.  `zeros` is the sum of orders, `unseen` is not counted.
+ * Where rounding hides a zero, or contacts have several channels (minima), it
+ * takes mho_nodes_find and its time.
+ * Errors: MHO_ERR_RANGE (energies), and those of mho_nodes_find. */
+MHO_API MHO_MUST_USE mho_status mho_nodes_between(const mho_plan *plan,
+                                                  double low_ev, double high_ev,
+                                                  mho_nodes *result,
+                                                  mho_error *error);
+
 MHO_END_DECLARATIONS
 
 #endif

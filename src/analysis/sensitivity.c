@@ -7,8 +7,9 @@
 #include <stdlib.h>
 
 #include "analysis/perturb.h"
+#include "analysis/samples.h"
 #include "analysis/thermal.h"
-#include "base/random.h"
+#include "solver/gradient_sum.h"
 
 #define LN_10 2.302585092994045684
 #define RADIANS_PER_DEGREE 0.017453292519943295769
@@ -93,8 +94,8 @@ static mho_status create_gradient(const mho_plan *plan, const mho_molecule *m,
   return status;
 }
 
-/* Share of the thermal average that each energy of the grid carries. */
-static bool thermal_shares(const mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
+/* Energies that carry the thermal average and the share of each, in place. */
+static size_t thermal_shares(mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
 {
   double total = 0;
   for (size_t i = 0; i < grid->count; i++) {
@@ -102,44 +103,42 @@ static bool thermal_shares(const mho_thermal_grid *grid, double fermi_ev, double
     share[i] = grid->weight_ev[i] * grid->value[i] * f / ((1 + f) * (1 + f));
     total += share[i];
   }
-  for (size_t i = 0; total > 0 && i < grid->count; i++) share[i] /= total;
-  return total > 0;
+  size_t kept = 0;
+  for (size_t i = 0; i < grid->count; i++) {
+    if (!(share[i] > WEIGHT_FLOOR * total)) continue;
+    grid->energy_ev[kept] = grid->energy_ev[i];
+    share[kept++] = share[i] / total;
+  }
+  return kept;
 }
 
-/* Adds share * dlog10T/dp at one energy to every row. */
-static mho_status add_energy(const mho_plan *plan, const mho_molecule *m, mho_gradient *g,
-                             double energy_ev, double share, mho_sensitivity *result,
-                             mho_error *error)
+static void set_rows(const mho_molecule *m, const mho_gradient *g, mho_sensitivity *result)
 {
-  mho_status status = mho_gradient_evaluate(plan, energy_ev, g, error);
-  if (status != MHO_OK || g->point.node) return status;
-  result->has_derivatives = true;
   for (size_t p = 0; p < result->count; p++)
-    result->row[p].derivative_log10_g0 += share * chain_rule(&result->row[p], m, g) / LN_10;
-  return MHO_OK;
+    result->row[p].derivative_log10_g0 = chain_rule(&result->row[p], m, g) / LN_10;
 }
 
 static mho_status differentiate(const mho_plan *plan, const mho_molecule *m, double fermi_ev,
                                 mho_sensitivity *result, mho_error *error)
 {
-  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k;
+  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k, one = 1, *share = NULL;
   mho_gradient *g;
+  mho_thermal_grid grid = {0};
   mho_status status = create_gradient(plan, m, &g, error);
-  if (status == MHO_OK && kt < MHO_COLD_EV)
-    status = add_energy(plan, m, g, fermi_ev, 1.0, result, error);
-  if (status != MHO_OK || kt < MHO_COLD_EV) {
-    mho_gradient_free(g);
-    return status;
+  if (status != MHO_OK) return status;
+  if (kt < MHO_COLD_EV) {
+    status = mho_gradient_sum(plan, 1, &fermi_ev, &one, g, &result->has_derivatives, error);
+  } else {
+    status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
+    if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
+      status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+    if (status == MHO_OK) {
+      size_t count = thermal_shares(&grid, fermi_ev, kt, share);
+      status = mho_gradient_sum(plan, count, grid.energy_ev, share, g, &result->has_derivatives,
+                                error);
+    }
   }
-  mho_thermal_grid grid;
-  double *share = NULL;
-  status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
-  if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
-    status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  bool any = status == MHO_OK && thermal_shares(&grid, fermi_ev, kt, share);
-  for (size_t i = 0; any && status == MHO_OK && i < grid.count; i++)
-    if (share[i] > WEIGHT_FLOOR)
-      status = add_energy(plan, m, g, grid.energy_ev[i], share[i], result, error);
+  if (status == MHO_OK && result->has_derivatives) set_rows(m, g, result);
   free(share);
   mho_thermal_grid_clear(&grid);
   mho_gradient_free(g);
@@ -150,28 +149,6 @@ static int compare_doubles(const void *a, const void *b)
 {
   double x = *(const double *)a, y = *(const double *)b;
   return (x > y) - (x < y);
-}
-
-/* Samples first .. end-1: log10 G, and what the linear rule makes of the same
- * shifts (without the unmoved value). */
-static mho_status draw(const mho_molecule *m, double fermi_ev, uint64_t seed,
-                       const mho_sensitivity *result, size_t first, size_t end, double *value,
-                       double *linear, mho_error *error)
-{
-  double *shift = malloc(result->count * sizeof *shift);
-  if (!shift) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  mho_status status = MHO_OK;
-  for (size_t i = first; status == MHO_OK && i < end; i++) {
-    mho_random random = mho_random_stream(seed, i);
-    linear[i] = 0;
-    for (size_t p = 0; p < result->count; p++) {
-      shift[p] = result->row[p].sigma * mho_random_normal(&random);
-      linear[i] += result->row[p].derivative_log10_g0 * shift[p];
-    }
-    status = mho_perturbed_log10(m, fermi_ev, result->row, result->count, shift, &value[i], error);
-  }
-  free(shift);
-  return status;
 }
 
 /* Root mean square of what the linear rule leaves over, about its mean. */
@@ -206,7 +183,7 @@ static int compare_rows(const void *a, const void *b)
 }
 
 /* A few samples tell whether the linear rule holds; if not, the rest follows. */
-static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
+static mho_status estimate_error(const mho_molecule *m, const mho_plan *plan, double fermi_ev,
                                  const mho_sensitivity_options *options,
                                  mho_sensitivity *result, mho_error *error)
 {
@@ -222,12 +199,13 @@ static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
   double *value = malloc(2 * samples * sizeof *value);
   if (!value) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   double *linear = value + samples;
-  mho_status status =
-      draw(m, fermi_ev, options->seed, result, 0, few, value, linear, error);
+  mho_status status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count,
+                                       options->seed, 0, few, value, linear, error);
   bool holds = result->has_derivatives &&
                left_over(value, linear, few) <= LINEAR_TOLERANCE * result->linear_decades;
   if (status == MHO_OK && !holds)
-    status = draw(m, fermi_ev, options->seed, result, few, samples, value, linear, error);
+    status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count, options->seed, few,
+                              samples, value, linear, error);
   if (status == MHO_OK && !holds) set_range(value, samples, result);
   free(value);
   return status;
@@ -264,7 +242,7 @@ mho_status mho_sensitivity_compute(const mho_molecule *molecule, const mho_junct
     status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
   if (status == MHO_OK) status = differentiate(plan, molecule, junction->fermi_ev, result, error);
   if (status == MHO_OK)
-    status = estimate_error(molecule, junction->fermi_ev, options, result, error);
+    status = estimate_error(molecule, plan, junction->fermi_ev, options, result, error);
   if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
   mho_plan_free(plan);
   return status;
