@@ -118,8 +118,9 @@ static void set_rows(const mho_molecule *m, const mho_gradient *g, mho_sensitivi
     result->row[p].derivative_log10_g0 = chain_rule(&result->row[p], m, g) / LN_10;
 }
 
-static mho_status differentiate(const mho_plan *plan, const mho_molecule *m, double fermi_ev,
-                                mho_sensitivity *result, mho_error *error)
+static mho_status differentiate(const mho_plan *plan, const mho_pole *pole,
+                                const mho_molecule *m, double fermi_ev, mho_sensitivity *result,
+                                mho_error *error)
 {
   double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k, one = 1, *share = NULL;
   mho_gradient *g;
@@ -129,7 +130,7 @@ static mho_status differentiate(const mho_plan *plan, const mho_molecule *m, dou
   if (kt < MHO_COLD_EV) {
     status = mho_gradient_sum(plan, 1, &fermi_ev, &one, g, &result->has_derivatives, error);
   } else {
-    status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
+    status = mho_thermal_grid_build(plan, pole, &fermi_ev, 1, kt, &grid, error);
     if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
       status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
     if (status == MHO_OK) {
@@ -228,22 +229,33 @@ static mho_status check_options(const mho_sensitivity_options *options, mho_erro
   return MHO_OK;
 }
 
+mho_status mho_sensitivity_with_poles(const mho_molecule *molecule, const mho_plan *plan,
+                                      const mho_pole *pole, double fermi_ev,
+                                      const mho_sensitivity_options *options,
+                                      mho_sensitivity *result, mho_error *error)
+{
+  *result = (mho_sensitivity){0};
+  mho_sensitivity_options defaults = mho_sensitivity_defaults();
+  if (!options) options = &defaults;
+  mho_status status = check_options(options, error);
+  if (status == MHO_OK)
+    status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
+  if (status == MHO_OK) status = differentiate(plan, pole, molecule, fermi_ev, result, error);
+  if (status == MHO_OK) status = estimate_error(molecule, plan, fermi_ev, options, result, error);
+  if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
+  return status;
+}
+
 mho_status mho_sensitivity_compute(const mho_molecule *molecule, const mho_junction *junction,
                                    const mho_sensitivity_options *options,
                                    mho_sensitivity *result, mho_error *error)
 {
   *result = (mho_sensitivity){0};
-  mho_sensitivity_options defaults = mho_sensitivity_defaults();
-  if (!options) options = &defaults;
   mho_plan *plan = NULL;
-  mho_status status = check_options(options, error);
-  if (status == MHO_OK) status = mho_plan_create(junction, &plan, error);
+  mho_status status = mho_plan_create(junction, &plan, error);
   if (status == MHO_OK)
-    status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
-  if (status == MHO_OK) status = differentiate(plan, molecule, junction->fermi_ev, result, error);
-  if (status == MHO_OK)
-    status = estimate_error(molecule, plan, junction->fermi_ev, options, result, error);
-  if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
+    status = mho_sensitivity_with_poles(molecule, plan, NULL, junction->fermi_ev, options, result,
+                                        error);
   mho_plan_free(plan);
   return status;
 }

@@ -6,11 +6,13 @@
 #include <math.h>
 #include <stdlib.h>
 
+#include "analysis/thermal.h"
 #include "screen/counts.h"
 #include "screen/errors.h"
 
 struct mho_screen_workspace {
-  char unused;
+  mho_pole *pole; /* [room] */
+  int room;
 };
 
 mho_screen_workspace *mho_screen_workspace_create(void)
@@ -18,21 +20,39 @@ mho_screen_workspace *mho_screen_workspace_create(void)
   return calloc(1, sizeof(mho_screen_workspace));
 }
 
-void mho_screen_workspace_free(mho_screen_workspace *workspace) { free(workspace); }
+void mho_screen_workspace_free(mho_screen_workspace *workspace)
+{
+  if (workspace) free(workspace->pole);
+  free(workspace);
+}
+
+static mho_status find_poles(mho_screen_workspace *workspace, const mho_plan *plan,
+                             mho_error *error)
+{
+  int sites = mho_plan_sites(plan);
+  if (sites > workspace->room) {
+    mho_pole *pole = realloc(workspace->pole, (size_t)sites * sizeof *pole);
+    if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "screen", NULL, "out of memory");
+    workspace->pole = pole;
+    workspace->room = sites;
+  }
+  return mho_poles(plan, workspace->pole, error);
+}
 
 static void set(mho_screen_quantities *out, bool has, int index, double value)
 {
   if (has) mho_screen_set_value(out, index, value);
 }
 
-static mho_status measure_conductance(const mho_plan *plan, const mho_junction *junction,
+static mho_status measure_conductance(const mho_plan *plan, const mho_pole *pole,
+                                      const mho_junction *junction,
                                       const mho_screen_settings *settings,
                                       mho_screen_quantities *out, mho_error *error)
 {
   mho_conductance c;
   mho_conductance_options options = {.window_ev = settings->window_ev};
-  mho_status status = mho_conductance_compute(plan, junction->fermi_ev, junction->temperature_k,
-                                              &options, &c, error);
+  mho_status status = mho_conductance_with_poles(plan, pole, junction->fermi_ev,
+                                                 junction->temperature_k, &options, &c, error);
   if (status != MHO_OK) return status;
   set(out, true, MHO_SCREEN_fermi_ev, c.fermi_ev);
   set(out, !c.at_fermi.node, MHO_SCREEN_transmission, c.at_fermi.transmission);
@@ -50,32 +70,32 @@ static mho_status measure_nodes(const mho_plan *plan, const mho_junction *juncti
   if (!junction->has_homo || !junction->has_lumo) return MHO_OK;
   if (junction->lead[MHO_LEFT].channels != 1 || junction->lead[MHO_RIGHT].channels != 1)
     return MHO_OK;
+  if (junction->lumo_ev <= junction->homo_ev) {
+    set(out, true, MHO_SCREEN_nodes, 0);
+    return MHO_OK;
+  }
   mho_nodes nodes;
-  mho_status status = mho_nodes_find(plan, &nodes, error);
-  int count = 0;
+  mho_status status =
+      mho_nodes_between(plan, junction->homo_ev, junction->lumo_ev, &nodes, error);
   double nearest = INFINITY;
   for (size_t k = 0; status == MHO_OK && k < nodes.count; k++) {
-    const mho_node *node = &nodes.node[k];
-    if (node->kind != MHO_NODE_EXACT || node->energy_ev <= junction->homo_ev ||
-        node->energy_ev >= junction->lumo_ev)
-      continue;
-    count++;
-    double distance = node->energy_ev - junction->fermi_ev;
+    double distance = nodes.node[k].energy_ev - junction->fermi_ev;
     if (fabs(distance) < fabs(nearest)) nearest = distance;
   }
-  set(out, status == MHO_OK && !nodes.everywhere, MHO_SCREEN_nodes, count);
-  set(out, count > 0, MHO_SCREEN_node_ev, nearest);
+  set(out, status == MHO_OK && !nodes.everywhere, MHO_SCREEN_nodes, (double)nodes.count);
+  set(out, nodes.count > 0, MHO_SCREEN_node_ev, nearest);
   mho_nodes_clear(&nodes);
   return status;
 }
 
-static mho_status measure_errors(const mho_molecule *molecule, const mho_junction *junction,
+static mho_status measure_errors(const mho_molecule *molecule, const mho_plan *plan,
+                                 const mho_pole *pole, double fermi_ev,
                                  const mho_screen_settings *settings, mho_screen_quantities *out,
                                  mho_error *error)
 {
   mho_sensitivity sensitivity;
-  mho_status status = mho_sensitivity_compute(molecule, junction, &settings->sensitivity,
-                                              &sensitivity, error);
+  mho_status status = mho_sensitivity_with_poles(molecule, plan, pole, fermi_ev,
+                                                 &settings->sensitivity, &sensitivity, error);
   if (status == MHO_OK)
     mho_screen_set_errors(molecule, &sensitivity, settings->sensitivity.sigma.twist_deg, out);
   mho_sensitivity_clear(&sensitivity);
@@ -103,7 +123,6 @@ mho_status mho_screen_measure(mho_screen_workspace *workspace, const mho_molecul
                               const mho_screen_settings *settings, mho_screen_quantities *out,
                               mho_error *error)
 {
-  (void)workspace;
   *out = (mho_screen_quantities){0};
   mho_screen_settings defaults = mho_screen_defaults();
   if (!settings) settings = &defaults;
@@ -113,9 +132,12 @@ mho_status mho_screen_measure(mho_screen_workspace *workspace, const mho_molecul
   if (status == MHO_OK) status = mho_junction_require_contacts(&junction, molecule, error);
   if (status == MHO_OK) status = mho_plan_create(&junction, &plan, error);
   if (status == MHO_OK) status = measure_structure(molecule, &junction, out, error);
-  if (status == MHO_OK) status = measure_conductance(plan, &junction, settings, out, error);
+  if (status == MHO_OK) status = find_poles(workspace, plan, error);
+  const mho_pole *pole = workspace->pole;
+  if (status == MHO_OK) status = measure_conductance(plan, pole, &junction, settings, out, error);
   if (status == MHO_OK) status = measure_nodes(plan, &junction, out, error);
-  if (status == MHO_OK) status = measure_errors(molecule, &junction, settings, out, error);
+  if (status == MHO_OK)
+    status = measure_errors(molecule, plan, pole, junction.fermi_ev, settings, out, error);
   mho_plan_free(plan);
   mho_junction_clear(&junction);
   return status;
