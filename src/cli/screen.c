@@ -118,7 +118,7 @@ static mho_status list_places(const command *cmd, const shelf *sh, mho_output *o
                               mho_error *error)
 {
   bool eye = format_of(cmd) == FORMAT_SCREEN;
-  int width = eye ? screen_width_of(cmd) : 0;
+  int width = eye && !cmd->exact ? screen_width_of(cmd) : 0;
   size_t shown = sh->ranking.ranked;
   if (cmd->screen.has_top || eye)
     shown = shown < sh->aims.rank.top ? shown : sh->aims.rank.top;

@@ -1,4 +1,5 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
+#include <mho/quantity.h>
 #include <mho/screen_store.h>
 #include <mho/warning.h>
 
@@ -10,8 +11,10 @@
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
 
-/* Characters that the other columns take at most, for the eye. */
-enum { OTHER_COLUMNS = 86, NAME_MOST = 24, SMILES_LEAST = 12 };
+/* For the eye: at most so many characters a name; of the narrowest screens for
+ * SMILES, and for gap and length; and what the columns before the warnings take
+ * with and without the latter two. */
+enum { NAME_MOST = 20, WIDE = 132, MIDDLE = 108, BEFORE = 88, BEFORE_NARROW = 71, EYE_DIGITS = 4 };
 
 /* At most `room` characters of a text, with dots where it goes on. */
 static void add_cut(mho_table *table, const char *text, int room)
@@ -29,43 +32,59 @@ static void add_cut(mho_table *table, const char *text, int room)
   free(shorter);
 }
 
-static void add_value(mho_table *table, const mho_screen_quantities *quantities, int index)
+static void add_value(mho_table *table, int width, const mho_screen_quantities *quantities,
+                      int index)
 {
   double value;
+  char text[32];
+  const char *end;
   bool there = mho_screen_value(quantities, index, &value);
+  mho_number_write(text, sizeof text, EYE_DIGITS, value);
+  if (width > 0 && !mho_number_read(text, &end, &value)) there = false;
   mho_table_optional(table, there, value);
 }
 
 mho_table *mho_screening_table(mho_output *output, int width)
 {
-  static const char *const columns[] = {"rank",   "candidate", "smiles",    "log10_G0",
-                                        "low",    "high",      "gap_eV",    "length_nm",
-                                        "top_probability", "warnings"};
-  static const char *const narrow[] = {"rank",   "candidate", "log10_G0",  "low",
-                                       "high",   "gap_eV",    "length_nm", "top_probability",
-                                       "warnings"};
-  if (width > 0 && width - OTHER_COLUMNS - NAME_MOST < SMILES_LEAST)
-    return mho_output_table(output, "screen", narrow, COUNT(narrow));
-  return mho_output_table(output, "screen", columns, COUNT(columns));
+  static const char *const wide[] = {"rank",   "candidate", "smiles",    "log10_G0",
+                                     "low",    "high",      "gap_eV",    "length_nm",
+                                     "top_probability", "warnings"};
+  static const char *const middle[] = {"rank",   "candidate", "log10_G0",  "low", "high",
+                                       "gap_eV", "length_nm", "top_probability", "warnings"};
+  static const char *const narrow[] = {"rank", "candidate", "log10_G0", "low", "high",
+                                       "top_probability", "warnings"};
+  if (width <= 0 || width >= WIDE) return mho_output_table(output, "screen", wide, COUNT(wide));
+  if (width >= MIDDLE) return mho_output_table(output, "screen", middle, COUNT(middle));
+  return mho_output_table(output, "screen", narrow, COUNT(narrow));
+}
+
+static void add_warnings(mho_table *table, int width, unsigned warnings)
+{
+  mho_buffer words = {0};
+  int before = width >= WIDE ? WIDE - MIDDLE + BEFORE : width >= MIDDLE ? BEFORE : BEFORE_NARROW;
+  mho_write_warning_words(&words, warnings);
+  if (table && words.failed) table->failed = MHO_ERR_MEMORY;
+  add_cut(table, words.data ? words.data : "", width > before ? width - before : 0);
+  mho_buffer_clear(&words);
 }
 
 void mho_screening_row(mho_table *table, int width, const mho_screen_text *text,
                        const mho_screen_place *place, const mho_screen_quantities *quantities)
 {
+  bool all = width <= 0 || width >= WIDE;
   mho_table_integer(table, (long)place->rank);
-  int smiles_room = width - OTHER_COLUMNS - NAME_MOST;
   add_cut(table, text->name, width > 0 ? NAME_MOST : 0);
-  if (width <= 0 || smiles_room >= SMILES_LEAST) {
-    if (text->smiles) add_cut(table, text->smiles, width > 0 ? smiles_room : 0);
-    else mho_table_empty(table);
+  if (all && text->smiles) add_cut(table, text->smiles, width > 0 ? WIDE - MIDDLE - 2 : 0);
+  else if (all) mho_table_empty(table);
+  add_value(table, width, quantities, MHO_SCREEN_log10_g0);
+  add_value(table, width, quantities, MHO_SCREEN_low_log10_g0);
+  add_value(table, width, quantities, MHO_SCREEN_high_log10_g0);
+  if (all || width >= MIDDLE) {
+    add_value(table, width, quantities, MHO_SCREEN_gap_ev);
+    add_value(table, width, quantities, MHO_SCREEN_length_nm);
   }
-  add_value(table, quantities, MHO_SCREEN_log10_g0);
-  add_value(table, quantities, MHO_SCREEN_low_log10_g0);
-  add_value(table, quantities, MHO_SCREEN_high_log10_g0);
-  add_value(table, quantities, MHO_SCREEN_gap_ev);
-  add_value(table, quantities, MHO_SCREEN_length_nm);
   mho_table_number(table, place->top_probability);
-  mho_table_warnings(table, (unsigned)quantities->warnings);
+  add_warnings(table, width, (unsigned)quantities->warnings);
 }
 
 mho_table *mho_failures_table(mho_output *output)

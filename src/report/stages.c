@@ -13,7 +13,7 @@
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
 
-void mho_table_warnings(mho_table *table, unsigned warnings)
+static void add_warning_words(mho_table *table, unsigned warnings)
 {
   mho_buffer words = {0};
   mho_write_warning_words(&words, warnings);
@@ -47,7 +47,7 @@ void mho_conductance_row(mho_table *table, const char *molecule,
   mho_table_optional(table, g->has_log, g->log10_g0);
   mho_table_optional(table, g->has_window_low, g->window_low_log10_g0);
   mho_table_optional(table, g->has_window_high, g->window_high_log10_g0);
-  mho_table_warnings(table, warnings);
+  add_warning_words(table, warnings);
 }
 
 mho_table *mho_sensitivity_table(mho_output *output)

@@ -119,8 +119,8 @@ void mho_clusters_note(mho_output *output, const mho_clusters *clusters, size_t 
 void mho_flicker_note(mho_output *output, const mho_flicker *flicker);
 void mho_blink_note(mho_output *output, const mho_telegraph *telegraph);
 
-/* A screening.  width 0 is for machines; else texts are cut to that many
- * characters, or left out, for the eye. */
+/* A screening.  width 0: whole; else for the eye on a screen of that width, with
+ * fewer digits, texts cut and columns left out. */
 mho_table *mho_screening_table(mho_output *output, int width);
 void mho_screening_row(mho_table *table, int width, const mho_screen_text *text,
                        const mho_screen_place *place, const mho_screen_quantities *quantities);

@@ -68,7 +68,6 @@ void mho_table_integer(mho_table *table, long value);
 void mho_table_text(mho_table *table, const char *text);
 void mho_table_node(mho_table *table);
 void mho_table_empty(mho_table *table);
-void mho_table_warnings(mho_table *table, unsigned warnings); /* their words */
 size_t mho_table_rows(const mho_table *table);
 
 /* MHO_OK, or what went wrong while the output was built. */

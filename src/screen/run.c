@@ -146,8 +146,10 @@ static mho_status run_batches(crew *c, mho_screen_store *store, mho_screen_count
     if (status != MHO_OK) break;
     compute_batch(c);
     status = write_batch(c, store, error);
-    counts->good = mho_screen_store_counts(store)->good;
-    counts->bad = mho_screen_store_counts(store)->bad;
+    if (status == MHO_OK) {
+      counts->good = mho_screen_store_counts(store)->good;
+      counts->bad = mho_screen_store_counts(store)->bad;
+    }
     double taken = now_s() - start;
     if (taken < BATCH_SHORT_S && 2 * c->size <= BATCH_MOST) c->size *= 2;
     if (taken > BATCH_LONG_S && c->size > c->threads) c->size /= 2;
