@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <errno.h>
 #include <getopt.h>
+#include <sqlite3.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -284,9 +285,9 @@ static void print_verb_help(const verb *v)
 
 static void print_version(void)
 {
-  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\n"
+  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\nstores: SQLite %s\n"
          "licence: GPL-3.0-or-later\n",
-         mho_version(), mho_lapack_description());
+         mho_version(), mho_lapack_description(), sqlite3_libversion());
 }
 
 int read_quantity(const char *verb_name, const char *option, const char *text,

@@ -14,7 +14,10 @@
 /* For the eye: at most so many characters a name; of the narrowest screens for
  * SMILES, and for gap and length; and what the columns before the warnings take
  * with and without the latter two. */
-enum { NAME_MOST = 20, WIDE = 132, MIDDLE = 108, BEFORE = 88, BEFORE_NARROW = 71, EYE_DIGITS = 4 };
+enum {
+  NAME_MOST = 24, NAME_NARROW = 20, WIDE = 136, MIDDLE = 112, BEFORE = 92, BEFORE_NARROW = 71,
+  EYE_DIGITS = 4
+};
 
 /* At most `room` characters of a text, with dots where it goes on. */
 static void add_cut(mho_table *table, const char *text, int room)
@@ -53,9 +56,13 @@ mho_table *mho_screening_table(mho_output *output, int width)
                                        "gap_eV", "length_nm", "top_probability", "warnings"};
   static const char *const narrow[] = {"rank", "candidate", "log10_G0", "low", "high",
                                        "top_probability", "warnings"};
-  if (width <= 0 || width >= WIDE) return mho_output_table(output, "screen", wide, COUNT(wide));
-  if (width >= MIDDLE) return mho_output_table(output, "screen", middle, COUNT(middle));
-  return mho_output_table(output, "screen", narrow, COUNT(narrow));
+  mho_table *table = width <= 0 || width >= WIDE
+                         ? mho_output_table(output, "screen", wide, COUNT(wide))
+                     : width >= MIDDLE ? mho_output_table(output, "screen", middle, COUNT(middle))
+                                       : mho_output_table(output, "screen", narrow, COUNT(narrow));
+  /* candidate, SMILES where there are any, and warnings */
+  if (table) table->left = 1u << 1 | (table->columns == COUNT(wide)) << 2 | 1u << (table->columns - 1);
+  return table;
 }
 
 static void add_warnings(mho_table *table, int width, unsigned warnings)
@@ -73,7 +80,7 @@ void mho_screening_row(mho_table *table, int width, const mho_screen_text *text,
 {
   bool all = width <= 0 || width >= WIDE;
   mho_table_integer(table, (long)place->rank);
-  add_cut(table, text->name, width > 0 ? NAME_MOST : 0);
+  add_cut(table, text->name, width <= 0 ? 0 : width < MIDDLE ? NAME_NARROW : NAME_MOST);
   if (all && text->smiles) add_cut(table, text->smiles, width > 0 ? WIDE - MIDDLE - 2 : 0);
   else if (all) mho_table_empty(table);
   add_value(table, width, quantities, MHO_SCREEN_log10_g0);
@@ -91,7 +98,7 @@ mho_table *mho_failures_table(mho_output *output)
 {
   static const char *const columns[] = {"candidate", "line", "reason"};
   mho_table *table = mho_output_table(output, "failures", columns, COUNT(columns));
-  if (table) table->prose = true;
+  if (table) table->left = 1u << 2;
   return table;
 }
 

@@ -208,11 +208,11 @@ static void pad(mho_buffer *buffer, size_t count)
 static void write_grid_cell(const mho_table *table, size_t column, const char *text, size_t width,
                             mho_buffer *buffer)
 {
-  bool last = column + 1 == table->columns, prose = last && table->prose;
+  bool left = column == 0 || table->left >> column & 1;
   size_t gap = width - screen_width(text);
-  if (column > 0) pad(buffer, 2 + (prose ? 0 : gap));
+  if (column > 0) pad(buffer, 2 + (left ? 0 : gap));
   mho_buffer_add(buffer, text);
-  if (column == 0) pad(buffer, gap);
+  if (left && column + 1 < table->columns) pad(buffer, gap);
 }
 
 static void write_grid(const mho_table *table, char *const *text, const size_t *width,

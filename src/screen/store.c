@@ -144,11 +144,16 @@ static mho_status read_meta(mho_screen_store *s, mho_error *error)
 }
 
 /* The rows 1 to n are there, so that the last one tells their number. */
+static mho_status read_last(mho_screen_store *s, sqlite3_int64 *last, mho_error *error)
+{
+  return ask(s, "SELECT max(coalesce((SELECT max(row) FROM candidate), 0), "
+                "coalesce((SELECT max(row) FROM failure), 0))", last, error);
+}
+
 static mho_status read_counts(mho_screen_store *s, mho_error *error)
 {
   sqlite3_int64 last = 0, bad = 0;
-  mho_status status = ask(s, "SELECT max(coalesce((SELECT max(row) FROM candidate), 0), "
-                             "coalesce((SELECT max(row) FROM failure), 0))", &last, error);
+  mho_status status = read_last(s, &last, error);
   if (status == MHO_OK) status = ask(s, "SELECT count(*) FROM failure", &bad, error);
   const char *rows = mho_meta_find(&s->meta, "rows");
   s->counts.rows = rows ? strtoull(rows, NULL, 10) : 0;
@@ -281,10 +286,10 @@ const char *mho_screen_store_meta(const mho_screen_store *s, const char *key)
 
 mho_status mho_store_begin_batch(mho_screen_store *s, mho_error *error)
 {
-  uint64_t good = s->counts.good, bad = s->counts.bad;
+  sqlite3_int64 last = 0;
   mho_status status = execute(s, "BEGIN IMMEDIATE", error);
-  if (status == MHO_OK) status = read_counts(s, error);
-  if (status != MHO_OK || (s->counts.good == good && s->counts.bad == bad)) return status;
+  if (status == MHO_OK) status = read_last(s, &last, error);
+  if (status != MHO_OK || (uint64_t)last == s->counts.good + s->counts.bad) return status;
   return mho_fail_at(error, MHO_ERR_WRITE, "screen", s->path, 0, 0, "store",
                      "another program is writing to it at the same time");
 }
