@@ -20,19 +20,20 @@
 #include "base/random.h"
 #include "solver/logarithm.h"
 #include "solver/processor.h"
-#include "solver/program.h"
 #include "solver/sampler.h"
 
 enum { L = SAMPLER_LANES, SIX = 3, EIGHT = 4, HALVINGS = 5 };
 
 #define LN_10 2.302585092994045684
 
-/* Relative, of one conductance. */
+/* Relative, of one conductance; the two rules of Gauss differ by ten times what
+ * the better one errs. */
 #define TOLERANCE 1e-4
+#define GAUSS_DIFFERENCE 1e-3
 
 /* Trapezoid rule: reach and first step in kT. */
-#define REACH_KT 36.0
-#define STEP_KT 2.0
+#define REACH_KT 24.0
+#define STEP_KT 1.5
 
 /* Positive points in kT and weights for -df/dx = 1/(4 cosh^2(x/2)), from its
  * moments 2 (2k)! (1 - 2^(1-2k)) zeta(2k). */
@@ -54,7 +55,7 @@ typedef struct {
   mho_sample_batch batch, late; /* late: those that need the trapezoid rule */
   size_t late_index[L];
   int late_count;
-  int *load_of_site, *load_of_bond; /* which number of the batch each one is */
+  int *slot_of_bond; /* which number of the batch each one is; a site's is its own */
   double *onsite, *hopping, *cosine; /* [sites], [bonds], [bonds] of [L] */
   double *log10_g0;
   mho_error *error;
@@ -108,6 +109,15 @@ static void fill_unmoved(drawer *d, double *beta)
     for (int l = 0; l < L; l++) d->cosine[b * L + l] = mho_cos_deg(m->bond[b].twist_deg);
 }
 
+FOR_EVERY_PROCESSOR
+static void turn(double twist_deg, const double *shift, double *cosine)
+{
+  for (int l = 0; l < L; l++) {
+    double turns = (twist_deg + shift[l]) / 360.0;
+    cosine[l] = cosine_of_turn(turns - floor(turns));
+  }
+}
+
 /* Moves one parameter of every lane; beta comes before what it multiplies, and
  * every site and bond has a row of its own. */
 static void move(drawer *d, const mho_sensitivity_row *row, const double *shift, double *beta)
@@ -144,8 +154,7 @@ static void move(drawer *d, const mho_sensitivity_row *row, const double *shift,
     for (int l = 0; l < L; l++) hopping[l] = m->bond[at].hopping_ev + shift[l];
     break;
   case MHO_PARAMETER_TWIST:
-    for (int l = 0; l < L; l++)
-      d->cosine[at * L + l] = mho_cos_deg(m->bond[at].twist_deg + shift[l]);
+    turn(m->bond[at].twist_deg, shift, d->cosine + at * L);
     break;
   }
 }
@@ -167,83 +176,82 @@ static void draw_batch(drawer *d, size_t first, double *linear, size_t lanes)
     }
     move(d, &d->row[p], shift, beta);
   }
-  memset(d->batch.value, 0, d->sampler.plan->program->loads * L * sizeof(double));
-  for (int i = 0; i < m->site_count; i++)
-    for (int l = 0; l < L; l++)
-      d->batch.value[d->load_of_site[i] * L + l] = d->onsite[i * L + l];
+  memset(d->batch.value_ev, 0, (size_t)d->sampler.reduction->slots * L * sizeof(double));
+  memcpy(d->batch.value_ev, d->onsite, (size_t)m->site_count * L * sizeof(double));
   for (int b = 0; b < m->bond_count; b++)
     for (int l = 0; l < L; l++)
-      d->batch.value[d->load_of_bond[b] * L + l] += d->hopping[b * L + l] * d->cosine[b * L + l];
+      d->batch.value_ev[d->slot_of_bond[b] * L + l] += d->hopping[b * L + l] * d->cosine[b * L + l];
   for (size_t l = 0; l < lanes; l++) linear[first + l] = sum[l];
 }
 
 /* --- thermal averages ------------------------------------------------------- */
 
-static void add_offset(drawer *d, const mho_sample_batch *batch, double kt, double weight,
-                       double *sum, bool *broken)
+/* Both sides of the Fermi level; NaN beyond the lanes that count does no harm. */
+static void add_offset(drawer *d, const mho_sample_batch *batch, int lanes, double kt,
+                       double weight, double *sum, bool *broken)
 {
   double transmission[L];
-  mho_sampler_evaluate(&d->sampler, batch, kt * d->kt_ev, transmission, broken);
-  for (int l = 0; l < L; l++) sum[l] += weight * transmission[l];
+  mho_sampler_evaluate(&d->sampler, batch, lanes, kt * d->kt_ev, transmission, broken);
+  for (int l = 0; l < lanes; l++) sum[l] += weight * transmission[l];
 }
 
 /* Both rules by Gauss; good where they agree. */
-static void average_gauss(drawer *d, double *average, bool *good)
+static void average_gauss(drawer *d, int lanes, double *average, bool *good)
 {
   double few[L] = {0};
   bool broken[L] = {false};
   memset(average, 0, L * sizeof *average);
-  for (int side = -1; side <= 1; side += 2) {
-    for (int k = 0; k < SIX; k++) add_offset(d, &d->batch, side * six[k][0], six[k][1], few, broken);
-    for (int k = 0; k < EIGHT; k++)
-      add_offset(d, &d->batch, side * eight[k][0], eight[k][1], average, broken);
-  }
-  for (int l = 0; l < L; l++)
-    good[l] = !broken[l] && fabs(few[l] - average[l]) <= TOLERANCE * average[l] && average[l] > 0;
+  for (int k = 0; k < SIX; k++)
+    add_offset(d, &d->batch, lanes, six[k][0], six[k][1], few, broken);
+  for (int k = 0; k < EIGHT; k++)
+    add_offset(d, &d->batch, lanes, eight[k][0], eight[k][1], average, broken);
+  for (int l = 0; l < lanes; l++)
+    good[l] = !broken[l] && fabs(few[l] - average[l]) <= GAUSS_DIFFERENCE * average[l] &&
+              average[l] > 0;
 }
 
-static void average_cold(drawer *d, double *average, bool *good)
+static void average_cold(drawer *d, int lanes, double *average, bool *good)
 {
   bool broken[L] = {false};
   memset(average, 0, L * sizeof *average);
-  add_offset(d, &d->batch, 0, 1, average, broken);
-  for (int l = 0; l < L; l++) good[l] = !broken[l] && average[l] > 0;
+  add_offset(d, &d->batch, lanes, 0, 0.5, average, broken);
+  for (int l = 0; l < lanes; l++) good[l] = !broken[l] && average[l] > 0;
 }
 
-/* Differences q and q^2 of two halvings leave an error of about their ratio
- * squared times the last. */
+/* A difference of q c leaves q^2 c after the next halving, of which only one or
+ * two are known: q is taken from both, or from c = 1. */
 static bool has_converged(double before, double last, double value)
 {
   if (!(value > 0)) return false;
-  double ratio = before > 0 ? fmin(last / before, 1) : 1;
-  return last * ratio * ratio <= TOLERANCE * value;
+  double q = isfinite(before) ? fmin(last / before, 1) : fmin(3 * last / value, 1);
+  return last * q <= TOLERANCE * value;
 }
 
 /* The trapezoid rule, halved until all lanes stand. */
 static void average_trapezoid(drawer *d, double *average, bool *good)
 {
-  double sum[L] = {0}, before[L], last[L];
+  double sum[L] = {0}, last[L];
   bool broken[L] = {false};
   double step = STEP_KT;
-  for (int l = 0; l < L; l++) before[l] = last[l] = average[l] = INFINITY;
-  for (int halving = 0; halving <= HALVINGS; halving++) {
+  for (int l = 0; l < L; l++) {
+    last[l] = average[l] = INFINITY;
+    good[l] = false;
+  }
+  for (int halving = 0; halving <= HALVINGS; halving++, step *= 0.5) {
     int stride = halving ? 2 : 1, from = halving ? 1 : 0, points = (int)(REACH_KT / step);
-    for (int k = from; k <= points; k += stride)
-      for (int side = k ? -1 : 1; side <= 1; side += 2) {
-        double x = side * k * step, f = exp(-fabs(x));
-        add_offset(d, &d->late, x, f / ((1 + f) * (1 + f)), sum, broken);
-      }
-    bool all = halving >= 2;
-    for (int l = 0; l < L; l++) {
-      double value = step * sum[l];
-      before[l] = last[l];
+    for (int k = from; k <= points; k += stride) {
+      double f = exp(-k * step), weight = f / ((1 + f) * (1 + f));
+      add_offset(d, &d->late, d->late_count, k * step, k ? weight : 0.5 * weight, sum, broken);
+    }
+    bool all = true;
+    for (int l = 0; l < d->late_count; l++) {
+      double value = step * sum[l], before = last[l];
       last[l] = fabs(value - average[l]);
       average[l] = value;
-      good[l] = !broken[l] && halving >= 2 && has_converged(before[l], last[l], value);
+      good[l] = !broken[l] && has_converged(before, last[l], value);
       all = all && (good[l] || broken[l]);
     }
     if (all) return;
-    step *= 0.5;
   }
 }
 
@@ -288,16 +296,14 @@ static void copy_lane(const double *from, int lane, double *to, int at, size_t n
   for (size_t k = 0; k < numbers; k++) to[k * L + (size_t)at] = from[k * L + (size_t)lane];
 }
 
-/* A lane joins those that wait; all lanes hold it until others follow. */
+/* A lane joins those that wait. */
 static mho_status put_off(drawer *d, int lane, size_t index, double *linear)
 {
-  int first = d->late_count, end = first ? first + 1 : L;
-  for (int at = first; at < end; at++) {
-    copy_lane(d->batch.value, lane, d->late.value, at, d->sampler.plan->program->loads);
-    copy_lane(d->batch.coupling, lane, d->late.coupling, at, (size_t)d->sampler.plan->channels);
-    d->late.energy_ev[at] = d->batch.energy_ev[lane];
-  }
-  d->late_index[d->late_count++] = index;
+  int at = d->late_count++;
+  copy_lane(d->batch.value_ev, lane, d->late.value_ev, at, (size_t)d->sampler.reduction->slots);
+  copy_lane(d->batch.coupling, lane, d->late.coupling, at, (size_t)d->sampler.plan->channels);
+  d->late.energy_ev[at] = d->batch.energy_ev[lane];
+  d->late_index[at] = index;
   return d->late_count == L ? settle_late(d, linear) : MHO_OK;
 }
 
@@ -310,8 +316,8 @@ static mho_status draw_lanes(drawer *d, size_t first, size_t end, double *linear
     double average[L];
     bool good[L];
     draw_batch(d, i, linear, lanes);
-    if (cold) average_cold(d, average, good);
-    else average_gauss(d, average, good);
+    if (cold) average_cold(d, (int)lanes, average, good);
+    else average_gauss(d, (int)lanes, average, good);
     for (size_t l = 0; status == MHO_OK && l < lanes; l++)
       if (good[l]) d->log10_g0[i + l] = log10(average[l]);
       else status = cold ? draw_alone(d, i + l, linear) : put_off(d, (int)l, i + l, linear);
@@ -321,23 +327,15 @@ static mho_status draw_lanes(drawer *d, size_t first, size_t end, double *linear
 
 /* --- all ---------------------------------------------------------------------- */
 
-/* Which number of the plan's program is which site and bond; false where some
- * bond has none, as its hopping is zero. */
-static bool find_loads(drawer *d)
+/* False where some bond has no number, as its hopping is zero. */
+static bool find_bonds(drawer *d)
 {
   const mho_molecule *m = d->molecule;
-  const mho_program *program = d->sampler.plan->program;
-  for (int b = 0; b < m->bond_count; b++) d->load_of_bond[b] = -1;
-  for (size_t k = 0; k < program->loads; k++) {
-    int i = program->between[k][0], j = program->between[k][1];
-    if (i == j) d->load_of_site[i] = (int)k;
-    for (int b = 0; i != j && b < m->bond_count; b++) {
-      const int *end = m->bond[b].site;
-      if ((end[0] == i && end[1] == j) || (end[0] == j && end[1] == i)) d->load_of_bond[b] = (int)k;
-    }
+  for (int b = 0; b < m->bond_count; b++) {
+    const int *end = m->bond[b].site;
+    d->slot_of_bond[b] = mho_reduction_find(d->sampler.reduction, end[0], end[1]);
+    if (d->slot_of_bond[b] < 0 || mho_molecule_hopping_ev(m, b) == 0) return false;
   }
-  for (int b = 0; b < m->bond_count; b++)
-    if (d->load_of_bond[b] < 0) return false;
   return true;
 }
 
@@ -346,7 +344,7 @@ static void clear(drawer *d)
   mho_sampler_clear(&d->sampler);
   mho_sample_batch_clear(&d->batch);
   mho_sample_batch_clear(&d->late);
-  free(d->load_of_site);
+  free(d->slot_of_bond);
   free(d->onsite);
 }
 
@@ -354,13 +352,13 @@ static mho_status init(drawer *d, const mho_plan *plan)
 {
   size_t sites = (size_t)d->molecule->site_count, bonds = (size_t)d->molecule->bond_count;
   mho_status status = mho_sampler_init(plan, &d->sampler);
-  if (status == MHO_OK) status = mho_sample_batch_init(plan, &d->batch);
-  if (status == MHO_OK) status = mho_sample_batch_init(plan, &d->late);
-  d->load_of_site = malloc((sites + bonds + 1) * sizeof(int));
+  if (status == MHO_OK && !d->sampler.reduction) return MHO_OK;
+  if (status == MHO_OK) status = mho_sample_batch_init(&d->sampler, &d->batch);
+  if (status == MHO_OK) status = mho_sample_batch_init(&d->sampler, &d->late);
+  d->slot_of_bond = malloc((bonds + 1) * sizeof(int));
   d->onsite = malloc((sites + 2 * bonds + 1) * L * sizeof(double));
-  if (status != MHO_OK || !d->load_of_site || !d->onsite)
+  if (status != MHO_OK || !d->slot_of_bond || !d->onsite)
     return mho_fail(d->error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  d->load_of_bond = d->load_of_site + sites;
   d->hopping = d->onsite + sites * L;
   d->cosine = d->hopping + bonds * L;
   return MHO_OK;
@@ -379,12 +377,11 @@ mho_status mho_samples_draw(const mho_molecule *molecule, const mho_plan *plan, 
               .seed = seed,
               .log10_g0 = value,
               .error = error};
-  mho_status status = MHO_OK;
-  bool serves = mho_sampler_serves(plan), never = !plan->connected;
+  bool never = !plan->connected;
   for (int b = 0; b < molecule->bond_count; b++)
     never = never && mho_molecule_hopping_ev(molecule, b) != 0;
-  if (serves) status = init(&d, plan);
-  if (serves && status == MHO_OK && find_loads(&d))
+  mho_status status = init(&d, plan);
+  if (status == MHO_OK && d.sampler.reduction && find_bonds(&d))
     status = draw_lanes(&d, first, end, linear);
   else
     for (size_t i = first; status == MHO_OK && i < end; i++)

@@ -94,20 +94,21 @@ static mho_status create_gradient(const mho_plan *plan, const mho_molecule *m,
   return status;
 }
 
-/* Energies that carry the thermal average and the share of each, in place. */
-static size_t thermal_shares(mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
+/* Energies that carry the thermal average, their T and share, in place. */
+static size_t thermal_shares(mho_thermal_grid *grid, double fermi_ev, double kt)
 {
-  double total = 0;
+  double total = 0, scale = pow(10, grid->scale_log10);
   for (size_t i = 0; i < grid->count; i++) {
     double f = exp(-fabs(grid->energy_ev[i] - fermi_ev) / kt);
-    share[i] = grid->weight_ev[i] * grid->value[i] * f / ((1 + f) * (1 + f));
-    total += share[i];
+    grid->weight_ev[i] *= grid->value[i] * f / ((1 + f) * (1 + f));
+    total += grid->weight_ev[i];
   }
   size_t kept = 0;
   for (size_t i = 0; i < grid->count; i++) {
-    if (!(share[i] > WEIGHT_FLOOR * total)) continue;
+    if (!(grid->weight_ev[i] > WEIGHT_FLOOR * total)) continue;
     grid->energy_ev[kept] = grid->energy_ev[i];
-    share[kept++] = share[i] / total;
+    grid->value[kept] = grid->value[i] * scale;
+    grid->weight_ev[kept++] = grid->weight_ev[i] / total;
   }
   return kept;
 }
@@ -118,29 +119,37 @@ static void set_rows(const mho_molecule *m, const mho_gradient *g, mho_sensitivi
     result->row[p].derivative_log10_g0 = chain_rule(&result->row[p], m, g) / LN_10;
 }
 
+/* At 0 K the Fermi level alone. */
+static mho_status differentiate_cold(const mho_plan *plan, double fermi_ev, mho_gradient *g,
+                                     bool *any, mho_error *error)
+{
+  mho_point point;
+  double one = 1;
+  mho_status status = mho_transmission_sweep(plan, 1, &fermi_ev, &point, error);
+  *any = status == MHO_OK && !point.node;
+  if (!*any) return status;
+  return mho_gradient_sum(plan, 1, &fermi_ev, &point.transmission, &one, g, error);
+}
+
 static mho_status differentiate(const mho_plan *plan, const mho_pole *pole,
                                 const mho_molecule *m, double fermi_ev, mho_sensitivity *result,
                                 mho_error *error)
 {
-  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k, one = 1, *share = NULL;
+  double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k;
   mho_gradient *g;
   mho_thermal_grid grid = {0};
   mho_status status = create_gradient(plan, m, &g, error);
   if (status != MHO_OK) return status;
   if (kt < MHO_COLD_EV) {
-    status = mho_gradient_sum(plan, 1, &fermi_ev, &one, g, &result->has_derivatives, error);
+    status = differentiate_cold(plan, fermi_ev, g, &result->has_derivatives, error);
   } else {
     status = mho_thermal_grid_build(plan, pole, &fermi_ev, 1, kt, &grid, error);
-    if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
-      status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-    if (status == MHO_OK) {
-      size_t count = thermal_shares(&grid, fermi_ev, kt, share);
-      status = mho_gradient_sum(plan, count, grid.energy_ev, share, g, &result->has_derivatives,
-                                error);
-    }
+    size_t count = status == MHO_OK ? thermal_shares(&grid, fermi_ev, kt) : 0;
+    result->has_derivatives = count > 0;
+    if (status == MHO_OK)
+      status = mho_gradient_sum(plan, count, grid.energy_ev, grid.value, grid.weight_ev, g, error);
   }
   if (status == MHO_OK && result->has_derivatives) set_rows(m, g, result);
-  free(share);
   mho_thermal_grid_clear(&grid);
   mho_gradient_free(g);
   return status;

@@ -33,7 +33,7 @@ typedef struct {
   int *diagonal_slot;
   bool *kept, *gone;
   int *free_slot, free_slots, slot_capacity;
-  size_t step_room, load_room, between_room, slot_room, updates;
+  size_t step_room, load_room, slot_room, updates;
   bool failed; /* out of memory */
 } compiler;
 
@@ -95,19 +95,12 @@ static int take_slot(compiler *c)
   return c->program->slots++;
 }
 
-/* The number between two sites; of one site, its diagonal. */
-static int emit_load(compiler *c, int i, int j, double value)
+static int emit_load(compiler *c, int site, double value)
 {
   mho_program *p = c->program;
   int slot = take_slot(c);
-  if (!grow((void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load) ||
-      !grow((void **)&p->between, &c->between_room, p->loads + 1, sizeof *p->between)) {
-    c->failed = true;
-    return slot;
-  }
-  p->between[p->loads][0] = i;
-  p->between[p->loads][1] = j;
-  p->load[p->loads++] = (mho_program_load){slot, i == j ? i : -1, value};
+  if (!grow((void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load)) c->failed = true;
+  else p->load[p->loads++] = (mho_program_load){slot, site, value};
   return slot;
 }
 
@@ -122,7 +115,7 @@ static void emit_slot(compiler *c, int slot)
 static int diagonal_slot(compiler *c, int site)
 {
   if (c->diagonal_slot[site] < 0)
-    c->diagonal_slot[site] = emit_load(c, site, site, c->diagonal[site]);
+    c->diagonal_slot[site] = emit_load(c, site, c->diagonal[site]);
   return c->diagonal_slot[site];
 }
 
@@ -132,7 +125,7 @@ static int pair_slot(compiler *c, int i, int j)
   link *here = find_link(&c->row[i], j);
   if (!here) return -1;
   if (here->slot < 0) {
-    here->slot = emit_load(c, i, j, here->value);
+    here->slot = emit_load(c, -1, here->value);
     find_link(&c->row[j], i)->slot = here->slot;
   }
   return here->slot;
@@ -269,7 +262,6 @@ void mho_program_free(mho_program *program)
   if (!program) return;
   free(program->step);
   free(program->load);
-  free(program->between);
   free(program->slot);
   free(program);
 }

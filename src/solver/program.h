@@ -27,7 +27,6 @@ struct mho_program {
   mho_program_step *step;
   size_t steps;
   mho_program_load *load;
-  int (*between)[2]; /* [loads]: the sites of each number, equal on the diagonal */
   size_t loads;
   int *slot; /* a step's row slots, then a target for each pair; ~slot: new */
   size_t slots_listed;
@@ -50,7 +49,6 @@ void mho_program_free(mho_program *program);
  * needs: of a step 1/d, d and the row. */
 typedef struct {
   double *high, *low, *adjoint, *response, *tape;
-  double *gradient; /* NULL, or the caller's: dlnT/dnumber of every load, [loads][lanes] */
   bool broken[PROGRAM_LANES];   /* a pivot was too small for these digits */
   double kappa[PROGRAM_LANES];  /* sum of |p dlnT/dp| over H and E */
   double error[PROGRAM_LANES];  /* of ln T, from rounding in the elimination */

@@ -195,13 +195,11 @@ void mho_program_forward_extended(const mho_program *program, const double *ener
   for (int l = 0; l < L; l++) trace->broken[l] = !(smallest[l] > PIVOT_EXTENDED * norm_ev);
 }
 
-/* A number's birth: its share of kappa.  gradient: its place there, or NULL. */
+/* A number's birth: its share of kappa. */
 INLINED void unload(const mho_program_load *load, double *energy_ev, double *adjoint,
-                    double *gradient, double *total, double *kappa, double *error)
+                    double *total, double *kappa, double *error)
 {
   double value = fabs(load->value);
-  if (gradient)
-    for (int l = 0; l < L; l += V) AT(gradient, l) = AT(adjoint, l);
   for (int l = 0; l < L; l += V) {
     vector hat = AT(adjoint, l), size = ABSOLUTE(hat);
     AT(kappa, l) += size * value;
@@ -209,12 +207,6 @@ INLINED void unload(const mho_program_load *load, double *energy_ev, double *adj
     AT(total, l) += hat;
     AT(error, l) += size * (ABSOLUTE(AT(energy_ev, l)) + value);
   }
-}
-
-INLINED double *gradient_of(const mho_program *program, const mho_program_load *load,
-                            const mho_program_trace *trace)
-{
-  return trace->gradient ? trace->gradient + (load - program->load) * L : NULL;
 }
 
 /* Back over one step: the answer of its site from those of its row, then all pairs,
@@ -287,7 +279,7 @@ INLINED void backward(int kept, const mho_program *program, const double *at_ev,
             at < 0 ? 0 : (a == b ? 2 : 1) * hat[(size_t)at * L + (size_t)l];
     }
   for (int i = 0; i < program->tail_loads; i++, load--)
-    unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, gradient_of(program, load - 1, trace), total, kappa, error);
+    unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, total, kappa, error);
   for (int a = 0; a < kept; a++) { /* a kept site answers to itself alone */
     double *r = trace->response + (size_t)program->kept_slot[a][a] * 2 * (size_t)kept * L;
     for (int b = 0; b < kept; b++)
@@ -302,7 +294,7 @@ INLINED void backward(int kept, const mho_program *program, const double *at_ev,
     tape -= (size_t)(step->row + 2) * L;
     return_step(kept, step, row, target, tape, form, trace, error);
     for (int i = 0; i < step->loads; i++, load--)
-      unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, gradient_of(program, load - 1, trace), total, kappa, error);
+      unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, total, kappa, error);
     slot = row;
   }
   for (int l = 0; l < L; l++) {
