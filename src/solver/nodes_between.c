@@ -20,10 +20,7 @@
 #include <math.h>
 #include <stdlib.h>
 
-#include "solver/plan.h"
-
-/* Levels this many roundings of ||H|| apart are one. */
-#define SAME_LEVEL (64 * UNIT_ROUNDOFF)
+#include "solver/levels.h"
 
 /* Amplitudes below the first are zero, below the second perhaps. */
 #define ZERO_AMPLITUDE 1e-13
@@ -40,13 +37,13 @@
 #define UNRESOLVED 1e-6
 
 /* Largest error of an energy that is good enough. */
-#define ENERGY_ERROR_EV 1e-10
+#define ENERGY_ERROR_EV 1e-12
 
 enum { PENDING_MAX = 256, NEWTON_MAX = 60 };
 
 typedef struct {
-  size_t count;
-  double *level, *weight, *left, *right; /* w and |<level|v>|^2, levels merged */
+  int count;
+  mho_level_group *group;
   double scale_ev;
 } poles;
 
@@ -59,38 +56,13 @@ typedef struct {
   double low, high;
 } interval;
 
-static mho_status merge_levels(const mho_plan *plan, poles *p)
-{
-  size_t n = (size_t)plan->sites;
-  p->level = malloc(4 * n * sizeof *p->level);
-  if (!p->level) return MHO_ERR_MEMORY;
-  p->weight = p->level + n;
-  p->left = p->weight + n;
-  p->right = p->left + n;
-  p->scale_ev = plan->norm_ev;
-  for (size_t k = 0; k < n; k++) {
-    const mho_pole_pair *pair = &plan->pair[k];
-    size_t at = p->count;
-    if (at > 0 && pair->level_ev - p->level[at - 1] <= SAME_LEVEL * plan->norm_ev) at--;
-    else {
-      p->level[at] = pair->level_ev;
-      p->weight[at] = p->left[at] = p->right[at] = 0;
-      p->count++;
-    }
-    p->weight[at] += pair->w01;
-    p->left[at] += pair->w00;
-    p->right[at] += pair->w11;
-  }
-  return MHO_OK;
-}
-
 static disc look(const poles *p, double center, double radius)
 {
   disc d = {.nearest = INFINITY};
   double size = 0, left = 0, right = 0;
-  for (size_t k = 0; k < p->count; k++) {
-    double inverse = 1 / (center - p->level[k]), away = fabs(inverse);
-    double term = p->weight[k] * inverse, part = radius * away, far = 1 / (1 - part);
+  for (int k = 0; k < p->count; k++) {
+    double inverse = 1 / (center - p->group[k].level_ev), away = fabs(inverse);
+    double term = p->group[k].weight * inverse, part = radius * away, far = 1 / (1 - part);
     double bend = fabs(term) * away;
     d.value += term;
     d.slope -= term * inverse;
@@ -98,8 +70,8 @@ static disc look(const poles *p, double center, double radius)
     d.bend += bend * part * (2 - part) * far * far;
     d.nearest = fmin(d.nearest, 1 / away);
     size += fabs(term);
-    left += p->left[k] * inverse * inverse;
-    right += p->right[k] * inverse * inverse;
+    left += p->group[k].left * inverse * inverse;
+    right += p->group[k].right * inverse * inverse;
   }
   double scale = p->scale_ev + fabs(center);
   d.noise = 8 * UNIT_ROUNDOFF * size + 16 * UNIT_ROUNDOFF * scale * sqrt(left * right);
@@ -169,7 +141,7 @@ static bool search(const poles *p, double low, double high, mho_nodes *result)
     }
     if (width < AT_LEVEL_EV && d.nearest <= width) continue;
     if (width < UNRESOLVED * d.nearest || count + 2 > PENDING_MAX ||
-        result->count + 2 > p->count)
+        (int)result->count + 2 > p->count)
       return false;
     /* off the middle, where symmetry likes to put a zero */
     double cut = piece.low + 0.46875 * width;
@@ -180,14 +152,15 @@ static bool search(const poles *p, double low, double high, mho_nodes *result)
 }
 
 /* Is it beyond doubt that no node comes of level k, but where it stands? */
-static bool is_clear(poles *p, size_t k, bool inside)
+static bool is_clear(poles *p, int k, bool inside)
 {
-  double left = sqrt(p->left[k]), right = sqrt(p->right[k]), weight = p->weight[k];
+  mho_level_group *g = &p->group[k];
+  double left = sqrt(g->left), right = sqrt(g->right), weight = g->weight;
   if (fabs(weight) > SMALL_WEIGHT && left * right - fabs(weight) < SMALL_WEIGHT) return true;
   if (inside || (left < SMALL_AMPLITUDE && right < SMALL_AMPLITUDE)) return false;
   if (fabs(weight) > SMALL_WEIGHT) return true;
-  p->weight[k] = p->left[k] = p->right[k] = 0;
-  disc rest = look(p, nextafter(p->level[k], INFINITY), 0);
+  g->weight = g->left = g->right = 0;
+  disc rest = look(p, nextafter(g->level_ev, INFINITY), 0);
   double doubt = fabs(weight) + SAME_LEVEL * left * right + SAME_LEVEL * SAME_LEVEL;
   return doubt < AT_LEVEL_EV * (fabs(rest.value) - rest.noise);
 }
@@ -195,21 +168,18 @@ static bool is_clear(poles *p, size_t k, bool inside)
 /* What no contact sees, and what stands at an end without a weight. */
 static void drop_unseen(poles *p)
 {
-  size_t kept = 0;
-  for (size_t k = 0; k < p->count; k++) {
-    if (sqrt(p->left[k]) < ZERO_AMPLITUDE && sqrt(p->right[k]) < ZERO_AMPLITUDE) continue;
-    p->level[kept] = p->level[k];
-    p->weight[kept] = p->weight[k];
-    p->left[kept] = p->left[k];
-    p->right[kept++] = p->right[k];
+  int kept = 0;
+  for (int k = 0; k < p->count; k++) {
+    double seen = sqrt(fmax(p->group[k].left, p->group[k].right));
+    if (seen >= ZERO_AMPLITUDE) p->group[kept++] = p->group[k];
   }
   p->count = kept;
 }
 
 static bool is_nothing(const poles *p)
 {
-  for (size_t k = 0; k < p->count; k++)
-    if (fabs(p->weight[k]) > SMALL_WEIGHT) return false;
+  for (int k = 0; k < p->count; k++)
+    if (fabs(p->group[k].weight) > SMALL_WEIGHT) return false;
   return true;
 }
 
@@ -219,15 +189,16 @@ static bool between_levels(poles *p, double low, double high, mho_nodes *result)
   double near = SAME_LEVEL * p->scale_ev, from = low;
   drop_unseen(p);
   if (is_nothing(p)) return false;
-  for (size_t k = 0; k < p->count; k++) {
-    if (p->level[k] < low - near || p->level[k] > high + near) continue;
-    if (!is_clear(p, k, p->level[k] > low + near && p->level[k] < high - near)) return false;
+  for (int k = 0; k < p->count; k++) {
+    double level_ev = p->group[k].level_ev;
+    if (level_ev < low - near || level_ev > high + near) continue;
+    if (!is_clear(p, k, level_ev > low + near && level_ev < high - near)) return false;
   }
   drop_unseen(p);
-  for (size_t k = 0; k < p->count; k++) {
-    if (!(p->level[k] > low + near && p->level[k] < high - near)) continue;
-    if (!search(p, from, p->level[k], result)) return false;
-    from = p->level[k];
+  for (int k = 0; k < p->count; k++) {
+    if (!(p->group[k].level_ev > low + near && p->group[k].level_ev < high - near)) continue;
+    if (!search(p, from, p->group[k].level_ev, result)) return false;
+    from = p->group[k].level_ev;
   }
   return search(p, from, high, result);
 }
@@ -265,12 +236,16 @@ mho_status mho_nodes_between(const mho_plan *plan, double low_ev, double high_ev
                     "the lower energy must be below the upper one");
   bool found = false;
   if (plan->connected && plan->pair) {
-    poles p = {0};
+    poles p = {.scale_ev = plan->norm_ev};
+    p.group = malloc((size_t)plan->sites * sizeof *p.group);
     result->node = malloc((size_t)plan->sites * sizeof *result->node);
-    if (!result->node || merge_levels(plan, &p) != MHO_OK)
+    if (p.group && result->node) {
+      p.count = mho_levels_group(plan, p.group);
+      found = between_levels(&p, low_ev, high_ev, result);
+    }
+    free(p.group);
+    if (!p.group || !result->node)
       return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-    found = between_levels(&p, low_ev, high_ev, result);
-    free(p.level);
   }
   mho_status status = MHO_OK;
   if (!found) {

@@ -48,24 +48,25 @@ typedef struct {
   double norm_ev;
 } secular;
 
-/* A cluster's amplitudes by two states at most: its QR decomposition. */
+/* A cluster's amplitudes by two states at most: QR, the larger column first. */
 static void see_cluster(const mho_plan *plan, size_t first, size_t end, secular *s,
                         double complex *value, size_t *unseen)
 {
-  double rows[2][2] = {{0, 0}, {0, 0}}, projection = 0, level = 0;
+  double square[2] = {0, 0}, level = 0, projection = 0, rest = 0;
+  const double(*w)[2] = (const double(*)[2])plan->amplitude;
   for (size_t k = first; k < end; k++) {
     level += plan->level_ev[k] / (double)(end - first);
-    rows[0][0] += plan->pair[k].w00;
-    projection += plan->pair[k].w01;
-    rows[1][1] += plan->pair[k].w11;
+    for (int c = 0; c < 2; c++) square[c] += w[k][c] * w[k][c];
+    projection += w[k][0] * w[k][1];
   }
-  bool left = rows[0][0] >= rows[1][1]; /* the larger column first */
-  double first_column = sqrt(left ? rows[0][0] : rows[1][1]);
-  double second = left ? rows[1][1] : rows[0][0], along = 0, across = 0;
-  if (first_column > 0) {
-    along = projection / first_column;
-    across = end - first > 1 ? sqrt(fmax(second - along * along, 0)) : 0;
+  bool left = square[0] >= square[1];
+  double largest = left ? square[0] : square[1];
+  for (size_t k = first; largest > 0 && k < end; k++) { /* what is left of the other column */
+    double part = w[k][left] - w[k][!left] * (projection / largest);
+    rest += part * part;
   }
+  double first_column = sqrt(largest), along = largest > 0 ? projection / first_column : 0;
+  double across = end - first > 1 ? sqrt(rest) : 0;
   double state[2][2] = {{first_column, along}, {0, across}};
   for (size_t k = 0; k < end - first; k++) {
     bool seen = k < 2 && hypot(state[k < 2 ? k : 0][0], state[k < 2 ? k : 0][1]) > UNSEEN;

@@ -163,7 +163,7 @@ static void touching_zeros_are_counted(void **state)
     mho_nodes_clear(&nodes);
     mho_plan_free(plan);
   }
-  for (double apart = 1e-2; apart > 2e-9; apart /= 10) {
+  for (double apart = 1e-2; apart > 2e-12; apart /= 10) {
     graph g = {.sites = 6};
     for (int i = 0; i < 3; i++) join(&g, i, i + 1, -2.7);
     join(&g, 1, 4, -0.8);
