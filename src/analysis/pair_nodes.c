@@ -49,9 +49,10 @@ typedef struct {
   size_t count;
 } scan;
 
-static double total(vector v)
+INLINED double total(const vector *v)
 {
-  return ((v[0] + v[4]) + (v[2] + v[6])) + ((v[1] + v[5]) + (v[3] + v[7]));
+  const vector s = *v;
+  return ((s[0] + s[4]) + (s[2] + s[6])) + ((s[1] + s[5]) + (s[3] + s[7]));
 }
 
 FOR_EVERY_PROCESSOR
@@ -64,7 +65,8 @@ static double dot(size_t n, const double *a, const double *b)
     more += AT(a, k + V) * AT(b, k + V);
   }
   for (; k < n; k += V) sum += AT(a, k) * AT(b, k);
-  return total(sum + more);
+  sum += more;
+  return total(&sum);
 }
 
 /* sum a b/(E - level) and its slope. */
@@ -78,8 +80,8 @@ static void sum_levels(size_t n, const double *a, const double *b, const double 
     sum += term;
     steep -= term * inverse;
   }
-  *value = total(sum);
-  *slope = total(steep);
+  *value = total(&sum);
+  *slope = total(&steep);
 }
 
 /* Samples on one side of the Fermi level (direction +-1), outwards. */
