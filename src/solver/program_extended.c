@@ -5,7 +5,7 @@
  * it wants the leading parts only.
  */
 #include "solver/program.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 
 #include <math.h>
 #include <stddef.h>
