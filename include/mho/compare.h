@@ -23,7 +23,7 @@ typedef struct {
 typedef struct {
   bool has_computed; /* false at a node */
   double computed_log10_g0;
-  bool has_low, has_high; /* over the alignment window */
+  bool has_error;       /* of the parameters, one sigma down and up */
   double computed_low, computed_high;
   bool has_measured;
   double measured_log10_g0; /* peak of the log histogram; mean over several */
@@ -50,12 +50,13 @@ MHO_BEGIN_DECLARATIONS
  * against median); it cannot be converted without a spread. */
 MHO_API double mho_peak_log10_g0(const mho_measured_peak *peak);
 
-/* Fills comparison[count] from computed[count] and the peaks.
+/* Fills comparison[count] from computed[count], the error of each log10 G (NULL, or
+ * negative: not known; mho_sensitivity has it) and the peaks.
  * reference = -1 takes the first molecule with a computed and a measured value.
  * Errors: MHO_ERR_REFERENCE (no molecule, or the chosen one lacks a value). */
 MHO_API MHO_MUST_USE mho_status mho_compare_ratios(
-    const mho_conductance *computed, int count, const mho_measured_peak *peak,
-    int peaks, int reference, mho_comparison *comparison,
+    const mho_conductance *computed, const double *error_decades, int count,
+    const mho_measured_peak *peak, int peaks, int reference, mho_comparison *comparison,
     mho_agreement *agreement, mho_error *error);
 
 MHO_END_DECLARATIONS

@@ -15,16 +15,15 @@ double mho_peak_log10_g0(const mho_measured_peak *peak)
   return log10_g0;
 }
 
-static void set_computed(const mho_conductance *g, mho_comparison *c)
+static void set_computed(const mho_conductance *g, double error_decades, mho_comparison *c)
 {
   *c = (mho_comparison){0};
   bool node = g->warnings & MHO_WARN_NEAR_NODE;
   c->has_computed = g->has_log && !node;
-  c->has_low = g->has_window_low;
-  c->has_high = g->has_window_high;
+  c->has_error = c->has_computed && error_decades >= 0;
   c->computed_log10_g0 = g->log10_g0;
-  c->computed_low = g->window_low_log10_g0;
-  c->computed_high = g->window_high_log10_g0;
+  c->computed_low = g->log10_g0 - error_decades;
+  c->computed_high = g->log10_g0 + error_decades;
 }
 
 /* Mean of the logarithms, and the envelope of peak -+ spread. */
@@ -93,14 +92,14 @@ static void count_order(const mho_comparison *comparison, int count, mho_agreeme
     }
 }
 
-mho_status mho_compare_ratios(const mho_conductance *computed, int count,
-                              const mho_measured_peak *peak, int peaks, int reference,
+mho_status mho_compare_ratios(const mho_conductance *computed, const double *error_decades,
+                              int count, const mho_measured_peak *peak, int peaks, int reference,
                               mho_comparison *comparison, mho_agreement *agreement,
                               mho_error *error)
 {
   *agreement = (mho_agreement){.reference = reference};
   for (int i = 0; i < count; i++) {
-    set_computed(&computed[i], &comparison[i]);
+    set_computed(&computed[i], error_decades ? error_decades[i] : -1, &comparison[i]);
     set_measured(peak, peaks, i, &comparison[i]);
   }
   for (int i = 0; reference < 0 && i < count; i++)

@@ -148,8 +148,8 @@ void mho_figure_comparison(mho_buffer *script, const char *const *molecule, cons
     if (c->has_computed) {
       add_number(script, c->computed_log10_g0);
       add_number(script, row + 0.14);
-      add_number(script, c->has_low ? c->computed_low : c->computed_log10_g0);
-      add_number(script, c->has_high ? c->computed_high : c->computed_log10_g0);
+      add_number(script, c->has_error ? c->computed_low : c->computed_log10_g0);
+      add_number(script, c->has_error ? c->computed_high : c->computed_log10_g0);
       mho_buffer_add(script, "\n");
     }
     row--;

@@ -65,8 +65,8 @@ static const struct {
     {"window_low_log10_G0", "window 5 %"},
     {"window_high_log10_G0", "window 95 %"},
     {"computed_log10_G0", "computed log<sub>10</sub>"},
-    {"computed_low", "window 5 %"},
-    {"computed_high", "window 95 %"},
+    {"computed_low", "low"},
+    {"computed_high", "high"},
     {"measured_log10_G0", "measured log<sub>10</sub>"},
     {"measured_low", "low"},
     {"measured_high", "high"},
@@ -306,7 +306,8 @@ static void write_results(const mho_report *report, mho_buffer *buffer)
     write_figures(report, "comparison", buffer);
     mho_buffer_add(buffer,
                    "<p>Ratios are to the reference molecule; the deviation is the logarithm of "
-                   "computed over measured ratio.</p>\n");
+                   "computed over measured ratio. Low and high are one standard deviation: of the "
+                   "model's parameters, and of the measured spread.</p>\n");
     write_table(report->output, "compare", buffer);
     mho_buffer_add(buffer, "</section>\n");
   }

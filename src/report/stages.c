@@ -120,8 +120,8 @@ void mho_compare_row(mho_table *table, const char *molecule, const mho_compariso
 {
   mho_table_text(table, molecule);
   mho_table_optional(table, c->has_computed, c->computed_log10_g0);
-  mho_table_optional(table, c->has_low, c->computed_low);
-  mho_table_optional(table, c->has_high, c->computed_high);
+  mho_table_optional(table, c->has_error, c->computed_low);
+  mho_table_optional(table, c->has_error, c->computed_high);
   mho_table_optional(table, c->has_measured, c->measured_log10_g0);
   mho_table_optional(table, c->has_spread, c->measured_low);
   mho_table_optional(table, c->has_spread, c->measured_high);

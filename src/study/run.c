@@ -43,6 +43,7 @@ typedef struct {
   outcome *outcome;
   mho_conductance *conductance;
   mho_comparison *comparison;
+  double *error_decades; /* of log10 G, -1 unknown; for the comparison */
   mho_agreement agreement;
   mho_measured_traces *measured; /* [traces_count of the study] */
   mho_measured_peak *peak;       /* those of the study, then those of traces */
@@ -160,6 +161,23 @@ static mho_status read_traces(run *r, mho_error *error)
   return MHO_OK;
 }
 
+/* What the parameters' own errors make of each conductance. */
+static mho_status find_errors(run *r, mho_error *error)
+{
+  mho_sensitivity_options options = mho_sensitivity_defaults();
+  mho_status status = MHO_OK;
+  for (int i = 0; status == MHO_OK && i < r->study->molecule_count; i++) {
+    const mho_molecule *molecule = &r->study->molecule[i];
+    mho_sensitivity s = {0};
+    status = step(r, molecule->name, error);
+    if (status == MHO_OK)
+      status = mho_sensitivity_compute(molecule, &r->outcome[i].junction, &options, &s, error);
+    r->error_decades[i] = s.has_error ? s.error_decades : -1;
+    mho_sensitivity_clear(&s);
+  }
+  return status;
+}
+
 /* Traces may show no peak, and then there is less to compare, or nothing. */
 static mho_status compare(run *r, mho_error *error)
 {
@@ -173,7 +191,9 @@ static mho_status compare(run *r, mho_error *error)
                     s->reference < 0 ? "no traces show a peak"
                                      : "the traces of the reference show no peak");
   if (!r->compare) return MHO_OK;
-  return mho_compare_ratios(r->conductance, s->molecule_count, r->peak, r->peak_count,
+  mho_status status = find_errors(r, error);
+  if (status != MHO_OK) return status;
+  return mho_compare_ratios(r->conductance, r->error_decades, s->molecule_count, r->peak, r->peak_count,
                             s->reference, r->comparison, &r->agreement, error);
 }
 
@@ -355,7 +375,8 @@ static mho_status draw_comparison(run *r, mho_error *error)
   mho_status status = name ? MHO_OK : fail_memory(error);
   if (status == MHO_OK)
     status = add_figure(r, "comparison", mho_copy_text("compare.svg"),
-                        mho_copy_text("Computed and measured conductance of each molecule."),
+                        mho_copy_text("Computed and measured conductance of each molecule; bars are the error "
+                                      "of the parameters and the spread of the measurement."),
                         &figure, error);
   mho_buffer script = {0};
   if (status == MHO_OK) {
@@ -593,6 +614,7 @@ static void run_clear(run *r)
   free(r->outcome);
   free(r->conductance);
   free(r->comparison);
+  free(r->error_decades);
   free(r->measured);
   free(r->peak);
   mho_output_clear(&r->output);
@@ -606,16 +628,21 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   static const mho_run_options nothing = {0};
   run r = {.study = study, .options = options ? options : &nothing};
   r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
-            study->traces_count + (mho_levers_asked(study) ? study->molecule_count : 0);
+            study->traces_count + (mho_levers_asked(study) ? study->molecule_count : 0) +
+            (study->compare ? study->molecule_count : 0);
   r.outcome = calloc(n, sizeof *r.outcome);
   r.portrait = calloc(n, sizeof *r.portrait);
   r.conductance = calloc(n, sizeof *r.conductance);
   r.comparison = calloc(n, sizeof *r.comparison);
+  r.error_decades = calloc(n, sizeof *r.error_decades);
   r.measured = calloc((size_t)study->traces_count + 1, sizeof *r.measured);
   r.peak = calloc((size_t)(study->peak_count + study->traces_count) + 1, sizeof *r.peak);
   char *target = r.options->folder ? mho_copy_text(r.options->folder) : default_folder(study);
   mho_status status =
-      r.outcome && r.portrait && r.conductance && r.comparison && r.measured && r.peak && target ? MHO_OK : fail_memory(error);
+      r.outcome && r.portrait && r.conductance && r.comparison && r.error_decades && r.measured &&
+              r.peak && target
+          ? MHO_OK
+          : fail_memory(error);
   if (status == MHO_OK) status = mho_folder_open(target, &r.folder, error);
   if (status == MHO_OK) status = execute(&r, error);
   run_clear(&r);

@@ -160,9 +160,10 @@ static void ratios_are_taken_in_decades(void **state)
                               {1, 1e-3, true, 0.3, MHO_HISTOGRAM_LINEAR},
                               {2, 1e-4, false, 0, MHO_HISTOGRAM_LOG},
                               {2, 1e-5, false, 0, MHO_HISTOGRAM_LOG}};
+  double error_decades[] = {0.4, 0.5, -1};
   mho_comparison c[3];
   mho_agreement a;
-  assert_int_equal(mho_compare_ratios(computed, 3, peak, 4, -1, c, &a, NULL), MHO_OK);
+  assert_int_equal(mho_compare_ratios(computed, error_decades, 3, peak, 4, -1, c, &a, NULL), MHO_OK);
   assert_int_equal(a.reference, 0);
   /* Mode of a log-normal in G lies exp(-sigma^2) below its median; at 0.3
    * decades that is a factor of 0.62. */
@@ -174,7 +175,10 @@ static void ratios_are_taken_in_decades(void **state)
   assert_int_equal(a.compared, 2);
   assert_int_equal(a.pairs, 3);
   assert_int_equal(a.ordered, 3);
-  assert_int_equal(mho_compare_ratios(computed, 3, peak, 0, -1, c, &a, NULL), MHO_ERR_REFERENCE);
+  assert_near(c[1].computed_low, -3.5, 1e-12);
+  assert_near(c[1].computed_high, -2.5, 1e-12);
+  assert_true(c[0].has_error && !c[2].has_error);
+  assert_int_equal(mho_compare_ratios(computed, error_decades, 3, peak, 0, -1, c, &a, NULL), MHO_ERR_REFERENCE);
 }
 
 int main(void)
