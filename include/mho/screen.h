@@ -21,7 +21,7 @@
   X(fermi_ev, double, "fermi_eV", "fermi", ENERGY,                             \
     "Fermi level on the scale of alpha")                                       \
   X(transmission, double, "transmission", "transmission", NUMBER,              \
-    "T at the Fermi level; none at a node")                                    \
+    "T at the Fermi level; 0 at a node")                                       \
   X(conductance_g0, double, "conductance_G0", "", NUMBER,                      \
     "thermal conductance in G0")                                               \
   X(log10_g0, double, "log10_G0", "conductance", CONDUCTANCE,                  \
@@ -97,7 +97,7 @@ enum {
 };
 
 /* One candidate.  No pointers: it may be stored as it is.  A quantity that does
- * not exist (a node at E_F has no T, a file of sites no atoms) is 0, and its
+ * not exist (no node, a file of sites without atoms) is 0, and its
  * bit 1 << MHO_SCREEN_member of `has` is not set. */
 typedef struct {
 #define MHO_SCREEN_MEMBER(member, type, column, name, form, what) type member;

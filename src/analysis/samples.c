@@ -19,7 +19,7 @@
 #include "analysis/thermal.h"
 #include "base/random.h"
 #include "solver/logarithm.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 #include "solver/sampler.h"
 
 enum { L = SAMPLER_LANES, SIX = 3, EIGHT = 4, HALVINGS = 5 };

@@ -18,7 +18,7 @@
 #include <gsl/gsl_errno.h>
 #include <gsl/gsl_integration.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 
 enum { GAUSS_POINTS = 16, HALVINGS_MAX = 60 };
 

@@ -55,7 +55,7 @@ static mho_status measure_conductance(const mho_plan *plan, const mho_pole *pole
                                                  junction->temperature_k, &options, &c, error);
   if (status != MHO_OK) return status;
   set(out, true, MHO_SCREEN_fermi_ev, c.fermi_ev);
-  set(out, !c.at_fermi.node, MHO_SCREEN_transmission, c.at_fermi.transmission);
+  set(out, true, MHO_SCREEN_transmission, c.at_fermi.transmission);
   set(out, c.has_log, MHO_SCREEN_conductance_g0, c.conductance_g0);
   set(out, c.has_log, MHO_SCREEN_log10_g0, c.log10_g0);
   set(out, c.has_window_low, MHO_SCREEN_window_low_log10_g0, c.window_low_log10_g0);

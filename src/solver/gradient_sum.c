@@ -12,7 +12,7 @@
 #include <math.h>
 #include <stdlib.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 #include "solver/reduction.h"
 
 enum { W = REDUCTION_LANES };

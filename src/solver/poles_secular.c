@@ -20,7 +20,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 
 enum { L = 8, ROUNDS = 40 };
 

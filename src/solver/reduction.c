@@ -4,7 +4,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 
 enum { W = REDUCTION_LANES, V = 8, SITES_MAX = 400, ROW_MAX = 24 };
 

@@ -5,7 +5,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 
 enum { L = SAMPLER_LANES, W = REDUCTION_LANES, KEPT = REDUCTION_KEPT_MAX };
 
