@@ -23,6 +23,7 @@
 #include <mho/peaks.h>
 #include <mho/quantity.h>
 #include <mho/screen.h>
+#include <mho/screen_store.h>
 #include <mho/sensitivity.h>
 #include <mho/settings.h>
 #include <mho/status.h>

@@ -33,6 +33,17 @@ typedef struct {
   const char *figure;
 } measured_options;
 
+/* What options say about a screening. */
+typedef struct {
+  const char *store; /* --store, or NULL */
+  bool resume, show, failed, dry_run, has_top;
+  long top;
+  bool has_goal;
+  mho_screen_goal goal;
+  int requirements;
+  mho_screen_requirement requirement[32];
+} screen_options;
+
 /* Everything that options can say; each verb uses its part. */
 typedef struct {
   const char *verb;
@@ -53,6 +64,7 @@ typedef struct {
   bool has_window;
   unsigned long seed;
   measured_options measured;
+  screen_options screen;
   int files;
   char **file;
 } command;
@@ -61,7 +73,7 @@ typedef struct {
 typedef int verb_function(const command *cmd, mho_error *error);
 
 verb_function command_blink, command_check, command_conductance, command_histogram,
-    command_interference, command_run, command_transmission, command_twist;
+    command_interference, command_run, command_screen, command_transmission, command_twist;
 
 /* Exit status that belongs to a status. */
 int exit_of(mho_status status);
@@ -78,7 +90,21 @@ int read_range(const command *cmd, const char *option, const char *text,
 int read_count(const char *verb, const char *option, const char *text, long low, long high,
                long *value);
 
+/* Seconds of a clock that only runs forward. */
+double seconds_now(void);
+
+/* A bar with a text on stderr in place of the one before, and none. */
+void draw_bar(double fraction, const char *format, ...) MHO_PRINTF(2, 3);
+void clear_bar(void);
+
+/* Becomes non-zero by SIGINT, SIGTERM or SIGHUP, which end nothing from now on. */
+const volatile int *catch_signals(void);
+
 void measured_options_init(measured_options *options);
+/* Adds a --require, or sets the goal. */
+int read_require(command *cmd, const char *text);
+int read_goal(command *cmd, const char *text);
+
 /* An option of `histogram` or `blink`. */
 int read_measured_option(command *cmd, const char *name, const char *text);
 
@@ -126,6 +152,7 @@ MHO_MUST_USE mho_status output_write(const command *cmd, const mho_output *outpu
 MHO_MUST_USE mho_status text_write(const command *cmd, const mho_buffer *buffer,
                                    mho_error *error);
 int digits_of(const command *cmd);
+int screen_width_of(const command *cmd);
 
 /* The form that the options and the ending of -o PATH ask for. */
 output_format format_of(const command *cmd);

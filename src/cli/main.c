@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <errno.h>
 #include <getopt.h>
+#include <sqlite3.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -12,13 +13,13 @@
 
 enum {
   CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32, TWIST = 64,
-  INTERFERENCE = 128
+  INTERFERENCE = 128, SCREEN = 256
 };
 enum {
   TABLES = CONDUCTANCE | TRANSMISSION | TWIST | INTERFERENCE, MOLECULES = CHECK | TABLES,
-  ALL = MOLECULES | RUN
+  ALL = MOLECULES | RUN, SETTINGS = ALL | SCREEN
 };
-enum { MEASURED = HISTOGRAM | BLINK, EVERY = ALL | MEASURED };
+enum { MEASURED = HISTOGRAM | BLINK, EVERY = SETTINGS | MEASURED };
 
 typedef struct {
   int bit;
@@ -62,6 +63,15 @@ static const verb verbs[] = {
      "Conductance or current against time: levels, their steps and dwell times by a\n"
      "hidden Markov model.  Files are as for mho histogram.",
      command_blink},
+    {SCREEN, "screen", "LIST | STORE", "which of these many to make: a list becomes a ranked store",
+     "Computes every candidate of a list (.smi, .csv with smiles and name, .sdf, or a\n"
+     "folder of molecule files) into the store of --store, one SQLite file, and shows\n"
+     "the best.  What is done is kept, whatever happens: --resume goes on.  A bad row\n"
+     "is kept with its reason and stops nothing.  With --show or --failed the argument\n"
+     "is a store, and nothing is computed.\n"
+     "QUANTITY is conductance, gap, length, nodes, error, twist, window-low, rings ...;\n"
+     "a wrong one is answered with all of them.",
+     command_screen},
     {RUN, "run", "STUDY.yaml", "the whole study: predictions against measured values",
      "Reads a study file and writes a results folder: report.html, results.json,\n"
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
@@ -79,6 +89,7 @@ typedef struct {
 } option_row;
 
 enum {
+  OPT_STORE, OPT_RESUME, OPT_SHOW, OPT_FAILED, OPT_DRY_RUN, OPT_GOAL, OPT_REQUIRE, OPT_TOP,
   OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_TORSION, OPT_RULES, OPT_MODIFY, OPT_FROM,
   OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
@@ -91,6 +102,19 @@ enum {
 };
 
 static const option_row options[OPTION_COUNT] = {
+    [OPT_STORE] = {SCREEN, "store", 0, "FILE.db", "where the results go; must not exist yet"},
+    [OPT_RESUME] = {SCREEN, "resume", 0, NULL, "go on with a store that was interrupted"},
+    [OPT_SHOW] = {SCREEN, "show", 0, NULL, "list the candidates of a store, best first"},
+    [OPT_FAILED] = {SCREEN, "failed", 0, NULL, "list the bad rows of a store"},
+    [OPT_DRY_RUN] = {SCREEN, "dry-run", 0, NULL, "count, and estimate time and size from a sample"},
+    [OPT_GOAL] = {SCREEN, "goal", 0, "GOAL",
+                  "'maximise QUANTITY' (default conductance), 'minimise QUANTITY' or "
+                  "'match QUANTITY VALUE'"},
+    [OPT_REQUIRE] = {SCREEN, "require", 0, "CONDITION",
+                     "such as 'gap > 2 eV' or 'warnings != near-node'; may be repeated, all must "
+                     "hold"},
+    [OPT_TOP] = {SCREEN, "top", 0, "N",
+                 "list the best N only, and say how sure it is that a candidate is one of them"},
     [OPT_BOND] = {TWIST, "bond", 0, "BOND",
                   "such as C5-C8 (default: the only one that can turn), or all; may be repeated, "
                   "they turn together"},
@@ -117,27 +141,27 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
     [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
-    [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE, "window", 0, "ENERGY",
+    [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE | SCREEN, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
-    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
-    [OPT_FERMI] = {ALL, "fermi", 0, "LEVEL",
+    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM | SCREEN, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
+    [OPT_FERMI] = {SETTINGS, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
-    [OPT_TEMPERATURE] = {ALL, "temperature", 0, "KELVIN", "such as '300 K'"},
-    [OPT_COUPLING] = {ALL, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
-    [OPT_BETA] = {ALL, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
-    [OPT_PARAMETERS] = {ALL, "parameters", 0, "SET", "van-catledge (default), streitwieser, or a file"},
+    [OPT_TEMPERATURE] = {SETTINGS, "temperature", 0, "KELVIN", "such as '300 K'"},
+    [OPT_COUPLING] = {SETTINGS, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
+    [OPT_BETA] = {SETTINGS, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
+    [OPT_PARAMETERS] = {SETTINGS, "parameters", 0, "SET", "van-catledge (default), streitwieser, or a file"},
     [OPT_TWIST] = {ALL, "twist", 0, "'BOND = ANGLE'", "such as 'C5-C8 = 38 deg'; may be repeated"},
-    [OPT_ALTERNATION] = {ALL, "alternation", 0, "RULE",
+    [OPT_ALTERNATION] = {SETTINGS, "alternation", 0, "RULE",
                          "of bonds in a SMILES: formal (default) or none"},
-    [OPT_ALKYL] = {ALL, "alkyl", 0, "RULE",
+    [OPT_ALKYL] = {SETTINGS, "alkyl", 0, "RULE",
                    "alkyl groups of a SMILES: ignored (default), inductive or heteroatom"},
-    [OPT_HOPPING] = {ALL, "hopping", 0, "RULE",
+    [OPT_HOPPING] = {SETTINGS, "hopping", 0, "RULE",
                      "of C-C bonds: table (default), or bond-length from coordinates"},
-    [OPT_CSV] = {TABLES | MEASURED, "csv", 0, NULL, "write CSV"},
-    [OPT_JSON] = {MOLECULES | MEASURED, "json", 0, NULL, "write JSON"},
-    [OPT_EXACT] = {MOLECULES | MEASURED, "exact", 0, NULL, "17 digits instead of 6"},
+    [OPT_CSV] = {TABLES | MEASURED | SCREEN, "csv", 0, NULL, "write CSV"},
+    [OPT_JSON] = {MOLECULES | MEASURED | SCREEN, "json", 0, NULL, "write JSON"},
+    [OPT_EXACT] = {MOLECULES | MEASURED | SCREEN, "exact", 0, NULL, "17 digits instead of 6"},
     [OPT_OUTPUT] = {EVERY, "output", 'o', "PATH", "write there instead of to the screen"},
     [OPT_PEAKS] = {HISTOGRAM, "peaks", 0, NULL, "list the peaks of the log histogram"},
     [OPT_COMB] = {HISTOGRAM, "comb", 0, NULL, "list whole multiples of one conductance"},
@@ -181,7 +205,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_SPEED] = {MEASURED, "speed", 0, "SPEED", "makes a distance of a time, such as '20 nm/s'"},
     [OPT_KEEP_GOING] = {MEASURED, "keep-going", 0, NULL,
                         "use the other files where one is bad; still exit with 2"},
-    [OPT_THREADS] = {HISTOGRAM, "threads", 0, "N", "1 to 1024; results do not depend on it"},
+    [OPT_THREADS] = {HISTOGRAM | SCREEN, "threads", 0, "N", "1 to 1024; results do not depend on it"},
     [OPT_FIGURE] = {MEASURED | TWIST | INTERFERENCE, "figure", 0, "FILE.svg",
                     "draw the table with gnuplot"},
     [OPT_QUIET] = {EVERY, "quiet", 0, NULL, "no progress and no remarks"},
@@ -261,9 +285,9 @@ static void print_verb_help(const verb *v)
 
 static void print_version(void)
 {
-  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\n"
+  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\nstores: SQLite %s\n"
          "licence: GPL-3.0-or-later\n",
-         mho_version(), mho_lapack_description());
+         mho_version(), mho_lapack_description(), sqlite3_libversion());
 }
 
 int read_quantity(const char *verb_name, const char *option, const char *text,
@@ -368,6 +392,16 @@ static int read_option(command *cmd, int which, const char *text)
     cmd->has_angles = true;
     return read_range(cmd, "angles", text, MHO_ANGLE, "0 deg, 90 deg", -360, 360, &cmd->angle_low_deg,
                       &cmd->angle_high_deg);
+  case OPT_STORE: cmd->screen.store = text; return EXIT_DONE;
+  case OPT_RESUME: cmd->screen.resume = true; return EXIT_DONE;
+  case OPT_SHOW: cmd->screen.show = true; return EXIT_DONE;
+  case OPT_FAILED: cmd->screen.failed = true; return EXIT_DONE;
+  case OPT_DRY_RUN: cmd->screen.dry_run = true; return EXIT_DONE;
+  case OPT_GOAL: return read_goal(cmd, text);
+  case OPT_REQUIRE: return read_require(cmd, text);
+  case OPT_TOP:
+    cmd->screen.has_top = true;
+    return read_count(cmd->verb, "top", text, 1, 1000000000, &cmd->screen.top);
   case OPT_BOND: return read_bond(cmd, text);
   case OPT_RULES: cmd->rules = true; return EXIT_DONE;
   case OPT_MODIFY: cmd->modify = true; return EXIT_DONE;

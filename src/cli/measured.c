@@ -9,7 +9,6 @@
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-#include <time.h>
 #include <unistd.h>
 
 #include "base/text.h"
@@ -172,24 +171,15 @@ int read_measured_option(command *cmd, const char *name, const char *text)
   return EXIT_DONE;
 }
 
-static double seconds_now(void)
-{
-  struct timespec now;
-  clock_gettime(CLOCK_MONOTONIC, &now);
-  return (double)now.tv_sec + 1e-9 * (double)now.tv_nsec;
-}
-
 static bool show_bytes(void *context, uint64_t bytes, uint64_t total)
 {
-  enum { BAR = 24 };
   byte_progress *progress = context;
   double now = seconds_now();
   if (now < progress->start) return true;
   progress->start = now + 0.1; /* of the next drawing */
   progress->shown = true;
-  int filled = total > 0 && bytes < total ? (int)(BAR * bytes / total) : BAR;
-  fprintf(stderr, "\r\033[K[%.*s%.*s] %.0f of %.0f MB", filled, "########################",
-          BAR - filled, "........................", (double)bytes / 1e6, (double)total / 1e6);
+  draw_bar(total > 0 ? (double)bytes / (double)total : 1, "%.0f of %.0f MB", (double)bytes / 1e6,
+           (double)total / 1e6);
   return true;
 }
 
@@ -203,7 +193,7 @@ void begin_byte_progress(const command *cmd, byte_progress *progress, mho_trace_
 
 void end_byte_progress(const byte_progress *progress)
 {
-  if (progress->shown) fprintf(stderr, "\r\033[K");
+  if (progress->shown) clear_bar();
 }
 
 mho_status check_any_file(const mho_trace_report *report)

@@ -261,7 +261,7 @@ void subjects_free(subjects *list)
 
 int digits_of(const command *cmd) { return cmd->exact ? 17 : 6; }
 
-static int screen_width_of(const command *cmd)
+int screen_width_of(const command *cmd)
 {
   struct winsize size;
   if (cmd->output || !isatty(STDOUT_FILENO) ||

@@ -7,17 +7,18 @@
 #include <strings.h>
 
 #include "base/text.h"
+#include "base/window.h"
 #include "molecule/record_reader.h"
 #include "molecule/texts.h"
 
-/* Largest file, as for lists. */
-#define FILE_LIMIT ((size_t)1 << 29)
+/* Largest record; a file may be of any length. */
+#define RECORD_LIMIT ((size_t)1 << 26)
 
 struct mho_records {
-  char *path, *text, *name;
-  const char *at, *end;
-  long line;   /* of `at`, from 1 */
-  long number; /* of the record before `at` */
+  mho_window file; /* from the next record on */
+  char *name;
+  long line;       /* of it, from 1 */
+  long number;     /* of the record before it */
   bool xyz;
 };
 
@@ -39,30 +40,26 @@ bool mho_records_is_file_name(const char *path)
 
 static mho_status fail_file(const mho_records *s, mho_error *error, const char *message)
 {
-  return mho_fail_at(error, MHO_ERR_SYNTAX, MOLECULE_STAGE, s->path, 1, 1, "structure", "%s", message);
+  return mho_fail_at(error, MHO_ERR_SYNTAX, MOLECULE_STAGE, s->file.path, 1, 1, "structure", "%s", message);
 }
 
 mho_status mho_records_open(const char *path, mho_records **records, mho_error *error)
 {
-  size_t size;
   *records = NULL;
   mho_records *s = calloc(1, sizeof *s);
-  if (!s || !(s->path = mho_copy_text(path))) {
-    free(s);
-    return mho_fail(error, MHO_ERR_MEMORY, MOLECULE_STAGE, NULL, "out of memory");
-  }
-  mho_status status = mho_read_file(path, FILE_LIMIT, MOLECULE_STAGE, &s->text, &size, error);
+  if (!s) return mho_fail(error, MHO_ERR_MEMORY, MOLECULE_STAGE, NULL, "out of memory");
+  mho_window *w = &s->file;
+  mho_status status = mho_window_open(w, path, RECORD_LIMIT, MOLECULE_STAGE, error);
   if (status == MHO_OK) {
-    s->at = s->text;
-    s->end = s->text + size;
+    size_t size = (size_t)(w->end - w->at);
     s->line = 1;
     s->xyz = has_ending(path, xyz_endings);
-    if (size >= 3 && !memcmp(s->text, "\xEF\xBB\xBF", 3)) s->at += 3;
-    if (size >= 2 && (!memcmp(s->text, "\xFF\xFE", 2) || !memcmp(s->text, "\xFE\xFF", 2)))
+    if (size >= 3 && !memcmp(w->at, "\xEF\xBB\xBF", 3)) w->at += 3;
+    if (size >= 2 && (!memcmp(w->text, "\xFF\xFE", 2) || !memcmp(w->text, "\xFE\xFF", 2)))
       status = fail_file(s, error, "the file is UTF-16; save it as UTF-8");
-    else if (memchr(s->text, 0, size))
+    else if (memchr(w->text, 0, size))
       status = fail_file(s, error, "the file holds a NUL byte; is it a text file?");
-    else if (strspn(s->at, " \t\r\n") == (size_t)(s->end - s->at))
+    else if (w->at_end && strspn(w->at, " \t\r\n") == (size_t)(w->end - w->at))
       status = fail_file(s, error, "the file is empty; a molfile, an SDF or an XYZ file is needed");
   }
   if (status != MHO_OK) mho_records_close(s);
@@ -73,8 +70,7 @@ mho_status mho_records_open(const char *path, mho_records **records, mho_error *
 void mho_records_close(mho_records *s)
 {
   if (!s) return;
-  free(s->path);
-  free(s->text);
+  mho_window_close(&s->file);
   free(s->name);
   free(s);
 }
@@ -93,20 +89,20 @@ static long xyz_lines(const char *at)
   return atoms >= 1 && atoms <= MHO_ATOM_LIMIT ? atoms + 2 : -1;
 }
 
-/* Behind the record that begins at s->at: its `$$$$` line, or the atoms that
- * an XYZ record announces; *lines is what it passes. */
+/* The end of the record at the beginning of the window: its `$$$$` line, or
+ * the atoms that an XYZ record announces; *lines is what it passes, *next what
+ * follows.  Both are the end of the window where it may go on. */
 static const char *find_end(const mho_records *s, const char **next, long *lines)
 {
-  const char *at = s->at;
+  const char *at = s->file.at, *last = s->file.end;
   long count = s->xyz ? xyz_lines(at) : -1;
-  for (*lines = 0; at < s->end && count != 0; count--) {
-    const char *end = line_end(at, s->end);
+  for (*lines = 0; at < last && count != 0; count--) {
+    const char *end = line_end(at, last);
     bool separator = !s->xyz && end - at >= 4 && !strncmp(at, "$$$$", 4);
-    *next = end < s->end ? end + 1 : end;
+    *next = end < last ? end + 1 : end;
     ++*lines;
     if (separator) return at;
     at = *next;
-    if (s->xyz && count == 1) break;
   }
   *next = at;
   return at;
@@ -166,42 +162,73 @@ static mho_status read_xyz(mho_record_reader *r, char **name)
   return mho_xyz_read(r);
 }
 
-/* The record ahead, or number 0 where only blank lines are left. */
-static const char *begin(mho_records *s, mho_record *record)
+/* Passes the blank lines of an XYZ file, and those at the end of any. */
+static mho_status pass_blanks(mho_records *s, mho_error *error)
 {
-  *record = (mho_record){.name = ""};
-  if (is_blank(s->at, s->end)) return NULL;
-  while (s->xyz && is_blank(s->at, line_end(s->at, s->end))) {
-    s->at = line_end(s->at, s->end) + 1;
+  mho_window *w = &s->file;
+  mho_status status = MHO_OK;
+  while (status == MHO_OK && is_blank(w->at, w->end) && !w->at_end)
+    status = mho_window_more(w, error);
+  if (is_blank(w->at, w->end)) w->at = w->end;
+  while (s->xyz && w->at < w->end && is_blank(w->at, line_end(w->at, w->end))) {
+    w->at += line_end(w->at, w->end) + 1 - w->at;
     s->line++;
   }
-  record->number = ++s->number;
-  record->place = (mho_place){s->path, s->line, 1, true};
-  long lines;
-  const char *next, *start = s->at;
-  const char *end = find_end(s, &next, &lines);
-  s->at = next;
-  s->line += lines;
-  return end > start ? end : start;
+  return status;
 }
 
-void mho_records_skip(mho_records *s, mho_record *record) { begin(s, record); }
+/* Takes the record ahead off the window, [*start, *end); number 0 where only
+ * blank lines are left. */
+static mho_status take_record(mho_records *s, mho_record *record, const char **start,
+                              const char **end, mho_error *error)
+{
+  mho_window *w = &s->file;
+  const char *next;
+  long lines;
+  *record = (mho_record){.name = ""};
+  mho_status status = pass_blanks(s, error);
+  if (w->at < w->end) {
+    record->number = ++s->number;
+    record->place = (mho_place){w->path, s->line, 1, true};
+  }
+  while (status == MHO_OK && w->at < w->end) {
+    *end = find_end(s, &next, &lines);
+    *start = w->at;
+    if (next < w->end || w->at_end) {
+      w->at += next - w->at;
+      s->line += lines;
+      return MHO_OK;
+    }
+    status = mho_window_more(w, error);
+  }
+  if (status != MHO_ERR_LIMIT) return status;
+  w->at_end = true;
+  w->at = w->end;
+  return mho_fail_at(error, status, MOLECULE_STAGE, w->path, record->place.line, 1, "structure",
+                     "the record is larger than 67108864 bytes; it and what follows are left out");
+}
+
+void mho_records_skip(mho_records *s, mho_record *record)
+{
+  const char *start, *end;
+  if (take_record(s, record, &start, &end, NULL) != MHO_OK) s->file.at = s->file.end;
+}
 
 mho_status mho_records_next(mho_records *s, mho_graph *graph, mho_record *record,
                             mho_texts *notes, mho_error *error)
 {
-  const char *start = s->at;
-  const char *end = begin(s, record);
+  const char *start, *end;
   mho_graph_clear(graph);
-  if (!end) return MHO_OK;
-  if (s->xyz) /* blank lines before it are passed over */
-    while (is_blank(start, line_end(start, s->end))) start = line_end(start, s->end) + 1;
+  mho_status status = take_record(s, record, &start, &end, error);
+  if (status != MHO_OK || record->number == 0) return status;
   mho_record_reader r = {.at = start, .end = end, .number = record->place.line - 1,
                          .line = start, .place = &record->place,
                          .graph = graph, .notes = notes, .error = error};
   free(s->name);
   s->name = NULL;
-  mho_status status = s->xyz ? read_xyz(&r, &s->name) : read_molfile(&r, &s->name);
+  if (memchr(start, 0, (size_t)(end - start)))
+    return mho_record_fail(&r, MHO_ERR_SYNTAX, 1, "the record holds a NUL byte");
+  status = s->xyz ? read_xyz(&r, &s->name) : read_molfile(&r, &s->name);
   if (!s->name && status == MHO_OK)
     status = mho_fail(error, MHO_ERR_MEMORY, MOLECULE_STAGE, NULL, "out of memory");
   record->name = s->name ? s->name : "";

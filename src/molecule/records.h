@@ -21,8 +21,8 @@ typedef struct {
 /* .mol, .sdf, .sd, .mdl or .xyz, in any case. */
 bool mho_records_is_file_name(const char *path);
 
-/* Errors: MHO_ERR_FILE, MHO_ERR_LIMIT, MHO_ERR_SYNTAX (encoding, an empty
- * file), MHO_ERR_MEMORY. */
+/* Opens a file, of which a record is held at a time.  Errors: MHO_ERR_FILE,
+ * MHO_ERR_SYNTAX (encoding, an empty file), MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_records_open(const char *path, mho_records **records,
                                          mho_error *error);
 void mho_records_close(mho_records *records);

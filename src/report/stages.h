@@ -13,6 +13,7 @@
 #include <mho/molecule.h>
 #include <mho/nodes.h>
 #include <mho/peaks.h>
+#include <mho/screen_store.h>
 #include <mho/sensitivity.h>
 #include <mho/telegraph.h>
 #include <mho/transmission.h>
@@ -117,6 +118,20 @@ void mho_plateaus_note(mho_output *output, const mho_histogram *histogram);
 void mho_clusters_note(mho_output *output, const mho_clusters *clusters, size_t samples);
 void mho_flicker_note(mho_output *output, const mho_flicker *flicker);
 void mho_blink_note(mho_output *output, const mho_telegraph *telegraph);
+
+/* A screening.  width 0: whole; else for the eye on a screen of that width, with
+ * fewer digits, texts cut and columns left out. */
+mho_table *mho_screening_table(mho_output *output, int width);
+void mho_screening_row(mho_table *table, int width, const mho_screen_text *text,
+                       const mho_screen_place *place, const mho_screen_quantities *quantities);
+mho_table *mho_failures_table(mho_output *output);
+void mho_failures_row(mho_table *table, const mho_screen_text *text);
+
+/* What is wanted, how far the ranking can be trusted, and a set of warnings in
+ * words; how far the screening has come. */
+void mho_screening_note(mho_output *output, const mho_screen_rank_options *options,
+                        const mho_screen_ranking *ranking, unsigned warnings);
+void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

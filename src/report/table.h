@@ -32,6 +32,7 @@ typedef struct {
   const char *const *column; /* static texts */
   size_t columns, cells, capacity;
   mho_cell *cell; /* [rows][columns] */
+  unsigned left; /* bits of the columns, beside the first, that are set to the left for the eye */
   mho_status failed;
 } mho_table;
 

@@ -204,23 +204,27 @@ static void pad(mho_buffer *buffer, size_t count)
   while (count-- > 0) mho_buffer_add(buffer, " ");
 }
 
+/* The first column stands to the left, numbers to the right. */
+static void write_grid_cell(const mho_table *table, size_t column, const char *text, size_t width,
+                            mho_buffer *buffer)
+{
+  bool left = column == 0 || table->left >> column & 1;
+  size_t gap = width - screen_width(text);
+  if (column > 0) pad(buffer, 2 + (left ? 0 : gap));
+  mho_buffer_add(buffer, text);
+  if (left && column + 1 < table->columns) pad(buffer, gap);
+}
+
 static void write_grid(const mho_table *table, char *const *text, const size_t *width,
                        mho_buffer *buffer)
 {
   for (size_t c = 0; c < table->columns; c++) {
-    size_t gap = width[c] - screen_width(table->column[c]);
-    bool left = c == 0;
-    if (!left) pad(buffer, gap + 2);
-    mho_buffer_add(buffer, table->column[c]);
-    if (left) pad(buffer, gap);
+    write_grid_cell(table, c, table->column[c], width[c], buffer);
   }
   mho_buffer_add(buffer, "\n");
   for (size_t i = 0; i < table->cells; i++) {
-    size_t c = i % table->columns, gap = width[c] - screen_width(text[i]);
-    bool left = c == 0;
-    if (!left) pad(buffer, gap + 2);
-    mho_buffer_add(buffer, text[i]);
-    if (left) pad(buffer, gap);
+    size_t c = i % table->columns;
+    write_grid_cell(table, c, text[i], width[c], buffer);
     if (c + 1 == table->columns) mho_buffer_add(buffer, "\n");
   }
 }

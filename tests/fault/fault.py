@@ -31,6 +31,7 @@ def main():
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
                       ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
                       ["blink", "--levels=2", "blink.txt"],
+                      ["screen", "list.smi", "--store", "r.db", "--threads=1", "--csv"],
                       ["run", STUDY, "-o", "results"],
                       ["run", os.path.join(GOLDEN, "traces.yaml"), "-o", "results"]):
         scratch = tempfile.mkdtemp()
@@ -38,9 +39,13 @@ def main():
         with open("blink.txt", "w") as file:
             file.writelines(f"{i * 1e-3:.3f} {(1 + i // 40 % 2) * 1e-3 + i % 7 * 1e-5:.5f}\n"
                             for i in range(400))
+        with open("list.smi", "w") as file:
+            file.write("Nc1ccc(N)cc1 good\nNc1ccc( bad\nNc1cccc(N)c1 good too\n")
         good = run(arguments, scratch, FAIL_COUNT=os.path.join(scratch, "count"))
         total = int(open(os.path.join(scratch, "count")).read())
         shutil.rmtree("results", ignore_errors=True)
+        if arguments[0] == "screen":
+            os.remove("r.db")
         stride = max(1, total // STRIDE_LIMIT)
         for at in list(range(1, min(total, 40))) + list(range(40, total + 1, stride)):
             variables = {"FAIL_AT": str(at)}
@@ -54,6 +59,8 @@ def main():
             if result.returncode == 0:
                 shutil.rmtree("results", ignore_errors=True)
                 left = [n for n in left if n != "results"]
+            if os.path.exists("r.db"):
+                os.remove("r.db")
             if not (fine or told) or left:
                 failures += 1
                 print(f"allocation {at} of {total} in {arguments[0]}: exit {result.returncode}, "

@@ -155,6 +155,50 @@ static void what_is_no_list_is_refused(void **state)
   assert_null(list);
 }
 
+/* Lists are read a piece of 64 KiB at a time; rows lie across the borders. */
+static void long_lists_and_rows(void **state)
+{
+  (void)state;
+  enum { ROWS = 20000, LONG = 2 << 20 };
+  char *text = malloc(ROWS * 64 + LONG + 100), *at = text, smiles[80], name[80];
+  assert_non_null(text);
+  at += sprintf(at, "name,smiles,note\n");
+  for (int i = 0; i < ROWS; i++)
+    at += sprintf(at, "\"n, %d\",%.*sC,\"two\nlines %d\"\n", i, i % 20, "CCCCCCCCCCCCCCCCCCCC", i);
+  at += sprintf(at, "long,");
+  memset(at, 'C', LONG);
+  at += LONG;
+  at += sprintf(at, ",\nlast,C,\n");
+  mho_error error;
+  mho_list *list = list_of("csv", text, (size_t)(at - text), &error);
+  for (int i = 0; i < ROWS; i++) {
+    snprintf(smiles, sizeof smiles, "%.*sC", i % 20, "CCCCCCCCCCCCCCCCCCCC");
+    int length = snprintf(name, sizeof name, "n, %d", i);
+    expect_row(list, smiles, name, 2 + 2 * i, length + 4); /* after quotes and comma */
+  }
+  expect_bad(list, 2 + 2 * ROWS, 1, "longer than");
+  expect_row(list, "C", "last", 3 + 2 * ROWS, 6);
+  expect_row(list, NULL, NULL, 0, 0);
+  mho_list_close(list);
+  free(text);
+}
+
+/* Whatever a quote that is left open swallows, the next line is a row. */
+static void an_open_quote_ends_with_its_line(void **state)
+{
+  (void)state;
+  static const char text[] = "smiles,name\nC,\"open\nCC,two\nCCC,\"three\"\nCCCC,\"x\nCCCCC,five\n";
+  mho_error error;
+  mho_list *list = list_of("csv", text, sizeof text - 1, &error);
+  expect_bad(list, 2, 3, "closed");
+  expect_row(list, "CC", "two", 3, 1);
+  expect_row(list, "CCC", "three", 4, 1);
+  expect_bad(list, 5, 6, "closed");
+  expect_row(list, "CCCCC", "five", 6, 1);
+  expect_row(list, NULL, NULL, 0, 0);
+  mho_list_close(list);
+}
+
 int main(void)
 {
   const struct CMUnitTest tests[] = {
@@ -163,6 +207,8 @@ int main(void)
       cmocka_unit_test(csv_finds_its_columns_by_the_header),
       cmocka_unit_test(a_bad_smiles_is_reported_where_it_stands),
       cmocka_unit_test(what_is_no_list_is_refused),
+      cmocka_unit_test(long_lists_and_rows),
+      cmocka_unit_test(an_open_quote_ends_with_its_line),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
 }
