@@ -12,7 +12,7 @@
 #include <mho/nodes.h>
 
 #include "analysis/pairs.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 
 /* Samples in the gap about the Fermi level, and in each gap beyond it. */
 enum { FIRST_SAMPLES = 16, NEXT_SAMPLES = 8, SAMPLES_MAX = 48, STEPS_MAX = 60 };

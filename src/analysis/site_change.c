@@ -226,7 +226,7 @@ mho_status mho_site_changes(const mho_junction *junction, const mho_site_change 
     return MHO_OK;
   mho_status status = mho_plan_create(junction, &plan, error);
   if (status == MHO_OK)
-    status = mho_thermal_grid_build(plan, fermi_ev, levels, kt_ev, &grid, error);
+    status = mho_thermal_grid_build(plan, NULL, fermi_ev, levels, kt_ev, &grid, error);
   size_t n = (size_t)junction->sites;
   work w = {.junction = junction, .n = n, .points = grid.count, .levels = levels,
             .energy_ev = grid.energy_ev};

@@ -350,7 +350,7 @@ static void changed_log10(const mho_junction *j, const mho_site_change *c, const
   }
   assert_int_equal(mho_junction_from_hamiltonian((int)all, h, 0, 0, &lead[0], &lead[1], &own, NULL), MHO_OK);
   assert_int_equal(mho_plan_create(&own, &plan, NULL), MHO_OK);
-  assert_int_equal(mho_thermal_log10(plan, fermi, levels, 0.0259, log10_g0, NULL), MHO_OK);
+  assert_int_equal(mho_thermal_log10(plan, NULL, fermi, levels, 0.0259, log10_g0, NULL), MHO_OK);
   mho_plan_free(plan);
   mho_junction_clear(&own);
   free(h);
