@@ -5,7 +5,7 @@ before times; ratios on stdout and in screen.json.
 
     /usr/bin/python3 benchmarks/screen.py build [molecules]
 
-The list is invented: five left and five right linkers around three to five of
+The list is invented: five left and five right linkers around two to four of
 seven units (1,4- and 1,3-phenylene, 2,5-thienylene, 2,5-pyridylene, ethynylene,
 vinylene, 2,6-naphthylene) in all orders, shuffled; without bridging pyridine where a
 linker is one.  Both sides start from the Hamiltonian's parameters; ours also
@@ -46,9 +46,9 @@ def smiles(left, units, right, depth=2):
     return left.replace("{}", body) if "{}" in left else left + body
 
 
-def make_list(count, sites=range(15, 40)):
+def make_list(count):
     every = []
-    for n in (3, 4, 5):
+    for n in (2, 3, 4):
         for units in itertools.product(UNIT, repeat=n):
             rings = any("c" in u for u in units)
             for left, right in itertools.product(LEFT, RIGHT):

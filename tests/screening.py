@@ -63,6 +63,20 @@ def mixed(count):
             for i in range(count)]
 
 
+def busy(name, seconds):
+    """Writes a list that takes at least so long; returns its rows, and a time."""
+    rows = 200
+    while True:
+        rows *= 2
+        write(name, mixed(rows))
+        start = time.monotonic()
+        mho("screen", name, "--store", "busy.db", "--quiet")
+        taken = time.monotonic() - start
+        os.remove("busy.db")
+        if taken > seconds or rows > 50000:
+            return rows, taken
+
+
 def failed(store):
     return [(row["candidate"], row["line"], row["reason"]) for row in
             csv.DictReader(io.StringIO(mho("screen", store, "--failed", "--csv").stdout))]
@@ -138,7 +152,7 @@ def check_structures():
     write("folder/notes.txt", ["nothing"])
     done = mho("screen", "folder/", "--store", "folder.db")
     expect(done.returncode == 0 and "10 candidates" in done.stderr, "a folder is screened", done.stderr)
-    expect("1 files there are no molecule files" in done.stderr, "other files are counted")
+    expect("1 other files are passed over" in done.stderr, "other files are counted")
     expect(sorted(row["candidate"] for row in listed("folder.db")) ==
            ["azulene, 1,3 contacts", "benzene-1,4-diamine", "drawn", "four (record 2)", "one", "one"],
            "by its files", listed("folder.db"))
@@ -201,13 +215,11 @@ def check_threads():
 
 def check_killed():
     """Killed at random moments and resumed: nothing lost, nothing twice."""
-    write("killed.smi", mixed(400))
+    total, taken = busy("killed.smi", 0.3)
     command = [MHO, "screen", "killed.smi", "--store", "killed.db", "--resume", "--quiet", "--csv"]
-    start = time.monotonic()
     whole = subprocess.run(command, capture_output=True)
-    taken = time.monotonic() - start
     reference = content("killed.db")
-    expect(reference[1] == 400 and whole.returncode == 0, "the list is screened")
+    expect(reference[1] == total and whole.returncode == 0, "the list is screened")
     os.remove("killed.db")
     draw = random.Random(8)
     kills = middle = 0
@@ -218,8 +230,8 @@ def check_killed():
         kills += process.wait() != 0
         rows = content("killed.db")[1] if os.path.exists("killed.db") and \
             os.path.getsize("killed.db") else 0
-        middle += 0 < rows < 400
-        if rows == 400 and kills < KILLS:
+        middle += 0 < rows < total
+        if rows == total and kills < KILLS:
             expect(content("killed.db") == reference, "a resumed run has the same content")
             os.remove("killed.db")
     done = subprocess.run(command, capture_output=True)
@@ -230,21 +242,35 @@ def check_killed():
 
 
 def check_interrupted():
-    write("stop.smi", mixed(4000))
+    total, _ = busy("stop.smi", 1.0)
     process = subprocess.Popen([MHO, "screen", "stop.smi", "--store", "stop.db"], text=True,
                                stdout=subprocess.PIPE, stderr=subprocess.PIPE)
     for _ in range(600):
-        time.sleep(0.05)
-        if os.path.exists("stop.db") and os.path.getsize("stop.db") > 30000:
+        time.sleep(0.02)
+        if os.path.exists("stop.db") and os.path.getsize("stop.db") > 20000:
             break
     process.send_signal(signal.SIGINT)
     _, errors = process.communicate(timeout=60)
     rows = content("stop.db")[1]
-    expect(process.returncode == 1 and 0 < rows < 4000, "an interruption keeps what is done", rows)
-    expect(f"{rows} of 4000 rows are kept in stop.db" in errors and "--resume" in errors,
+    expect(process.returncode == 1 and 0 < rows < total, "an interruption keeps what is done", rows)
+    expect(f"{rows} of {total} rows are kept in stop.db" in errors and "--resume" in errors,
            "and says how to go on", errors)
     shown = mho("screen", "stop.db", "--show")
-    expect(f"unfinished: {rows} of 4000" in shown.stdout, "the store says that it is unfinished")
+    expect(f"unfinished: {rows} of {total}" in shown.stdout, "the store says that it is unfinished")
+
+
+def check_two_writers():
+    """Two programs on one store: the second ends, and nothing is there twice."""
+    write("two.smi", mixed(300))
+    mho("screen", "two.smi", "--store", "one.db")
+    command = [MHO, "screen", "two.smi", "--store", "two.db", "--resume", "--quiet", "--csv"]
+    both = [subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True)
+            for _ in range(2)]
+    told = [process.communicate(timeout=120)[1] for process in both]
+    codes = sorted(process.returncode for process in both)
+    expect(codes == [0, 0] or (codes[0] == 0 and ("another program" in "".join(told))),
+           "one of two writers ends", (codes, told))
+    expect(content("two.db") == content("one.db"), "and the store is whole")
 
 
 def check_disk_full():
@@ -366,7 +392,7 @@ def check_memory():
 
 def main():
     checks = [check_lists, check_structures, check_numbers, check_threads, check_refusals, check_show,
-              check_disk_full, check_interrupted, check_memory, check_killed]
+              check_two_writers, check_disk_full, check_interrupted, check_memory, check_killed]
     for check in checks:
         scratch = tempfile.mkdtemp()
         os.chdir(scratch)

@@ -195,7 +195,7 @@ static void announce(const progress *p, const mho_screen_counts *counts)
   fprintf(stderr, "%llu candidates in %s", (unsigned long long)counts->rows, list);
   if (p->before) fprintf(stderr, ", of which %llu are done", (unsigned long long)p->before);
   if (counts->ignored)
-    fprintf(stderr, "; %llu files there are no molecule files", (unsigned long long)counts->ignored);
+    fprintf(stderr, "; %llu other files are passed over", (unsigned long long)counts->ignored);
   fprintf(stderr, "\n");
 }
 
@@ -241,7 +241,7 @@ static mho_status estimate(const command *cmd, mho_error *error)
   mho_status status = mho_screen_estimate_run(&job, &e, error);
   if (status != MHO_OK) return status;
   printf("%llu candidates in %s", (unsigned long long)e.rows, job.list);
-  if (e.ignored) printf("; %llu files there are no molecule files", (unsigned long long)e.ignored);
+  if (e.ignored) printf("; %llu other files are passed over", (unsigned long long)e.ignored);
   bool minutes = e.seconds >= 120, hours = e.seconds >= 7200;
   printf("\nabout %.2g %s and %.2g MB, from %llu rows computed just now",
          hours ? e.seconds / 3600 : minutes ? e.seconds / 60 : e.seconds,
@@ -260,6 +260,10 @@ static void tell_resume(const command *cmd, const mho_screen_counts *counts)
                   "--resume\n", done, (unsigned long long)counts->rows, cmd->screen.store);
 }
 
+/* Ranking holds all candidates, and so is left to --show where they are very
+ * many; computing them holds a batch. */
+enum { SHOW_MOST = 200000 };
+
 static mho_status compute(const command *cmd, mho_error *error)
 {
   mho_screen_counts counts;
@@ -276,6 +280,11 @@ static mho_status compute(const command *cmd, mho_error *error)
   if (counts.bad)
     fprintf(stderr, "mho screen: %llu of %llu rows are bad; mho screen %s --failed lists them\n",
             (unsigned long long)counts.bad, (unsigned long long)counts.rows, cmd->screen.store);
+  if (counts.good > SHOW_MOST && cmd->format == FORMAT_SCREEN && !cmd->output) {
+    printf("%llu candidates are in %s; mho screen %s --show ranks them\n",
+           (unsigned long long)counts.good, cmd->screen.store, cmd->screen.store);
+    return MHO_OK;
+  }
   return show(cmd, cmd->screen.store, error);
 }
 

@@ -31,6 +31,7 @@ typedef struct {
   mho_candidates *list;
   int threads;
   mho_screen_workspace **workspace; /* [threads] */
+  uint64_t rows; /* of the list */
   int count, size;
   task *task; /* [BATCH_MOST], the first `count` are filled */
 } crew;
@@ -103,6 +104,12 @@ static void compute_batch(crew *c)
     if (!cancelled(c->job)) compute(c->job, c->workspace[omp_get_thread_num()], &c->task[i]);
 }
 
+static mho_status fail_changed(const crew *c, mho_error *error)
+{
+  return mho_fail_at(error, MHO_ERR_FILE, "screen", c->job->list, 0, 0, NULL,
+                     "has changed while it was read");
+}
+
 static mho_status read_batch(crew *c, bool *end, mho_error *error)
 {
   mho_status status = MHO_OK;
@@ -113,12 +120,14 @@ static mho_status read_batch(crew *c, bool *end, mho_error *error)
     status = mho_candidates_next(c->list, &t->candidate, error);
     *end = t->candidate.row == 0;
     if (*end) break;
+    if (t->candidate.row > c->rows) status = fail_changed(c, error);
   }
   return status;
 }
 
 /* The first ones that are done, up to the first that ends the work. */
-static mho_status write_batch(const crew *c, mho_screen_store *store, mho_error *error)
+static mho_status write_batch(const crew *c, mho_screen_store *store, mho_screen_counts *counts,
+                              mho_error *error)
 {
   if (c->count == 0 || !c->task[0].done) return MHO_OK;
   mho_status status = mho_store_begin_batch(store, error), ended = MHO_OK;
@@ -128,7 +137,10 @@ static mho_status write_batch(const crew *c, mho_screen_store *store, mho_error 
       status = mho_store_add(store, &c->task[i].candidate, &c->task[i].quantities, error);
   }
   if (status == MHO_OK) status = mho_store_commit(store, error);
-  return status == MHO_OK && ended != MHO_OK ? no_memory(error) : status;
+  if (status != MHO_OK) return status;
+  counts->good = mho_screen_store_counts(store)->good;
+  counts->bad = mho_screen_store_counts(store)->bad;
+  return ended == MHO_OK ? MHO_OK : no_memory(error);
 }
 
 static void report(const mho_screen_job *job, const mho_screen_counts *counts)
@@ -145,16 +157,14 @@ static mho_status run_batches(crew *c, mho_screen_store *store, mho_screen_count
     status = read_batch(c, &end, error);
     if (status != MHO_OK) break;
     compute_batch(c);
-    status = write_batch(c, store, error);
-    if (status == MHO_OK) {
-      counts->good = mho_screen_store_counts(store)->good;
-      counts->bad = mho_screen_store_counts(store)->bad;
-    }
+    status = write_batch(c, store, counts, error);
     double taken = now_s() - start;
     if (taken < BATCH_SHORT_S && 2 * c->size <= BATCH_MOST) c->size *= 2;
     if (taken > BATCH_LONG_S && c->size > c->threads) c->size /= 2;
     if (status == MHO_OK) report(c->job, counts);
-    if (status == MHO_OK && cancelled(c->job)) status = fail_cancelled(error);
+    bool complete = counts->good + counts->bad == c->rows;
+    if (status == MHO_OK && !complete && cancelled(c->job)) status = fail_cancelled(error);
+    else if (status == MHO_OK && !complete && end) status = fail_changed(c, error);
   }
   return status;
 }
@@ -186,10 +196,10 @@ mho_status mho_screen_run(const mho_screen_job *job, const char *path, bool resu
   crew c;
   mho_meta meta = {0};
   mho_screen_store *store = NULL;
-  uint64_t rows = 0, passed;
+  uint64_t passed;
   mho_status status = crew_create(job, &c, error);
-  if (status == MHO_OK) status = count_rows(job, &rows, error);
-  if (status == MHO_OK) status = mho_meta_of_job(job, c.list, rows, &meta, error);
+  if (status == MHO_OK) status = count_rows(job, &c.rows, error);
+  if (status == MHO_OK) status = mho_meta_of_job(job, c.list, c.rows, &meta, error);
   if (status == MHO_OK) status = mho_store_begin(path, resume, &meta, &store, error);
   if (status == MHO_OK) {
     *counts = *mho_screen_store_counts(store);
@@ -260,13 +270,14 @@ static mho_status size_sample(crew *c, const mho_meta *meta, uint64_t rows,
 {
   mho_screen_store *store;
   double empty = 0, full = 0;
+  mho_screen_counts counts = {0};
   mho_status status = mho_store_begin(":memory:", false, meta, &store, error);
   if (status == MHO_OK) status = mho_store_bytes(store, &empty, error);
-  if (status == MHO_OK) status = write_batch(c, store, error);
+  if (status == MHO_OK) status = write_batch(c, store, &counts, error);
   if (status == MHO_OK) status = mho_store_bytes(store, &full, error);
   if (status == MHO_OK) {
     estimate->bytes = empty + (full - empty) * (double)rows / (double)estimate->sample;
-    estimate->sample_bad = mho_screen_store_counts(store)->bad;
+    estimate->sample_bad = counts.bad;
   }
   mho_screen_store_close(store);
   return status;
