@@ -51,17 +51,36 @@ static double run_map(const mho_rotor *rotor, double fermi, double *cosine, doub
   return now() - start;
 }
 
-static double run_pairs(const mho_molecule *m, const mho_junction *junction, double *value,
-                        size_t *count)
+static double run_pairs(const mho_molecule *m, const mho_junction *junction, bool whole,
+                        double *value, size_t *count)
 {
   mho_interference map;
-  mho_interference_options options = {.coupling_ev = 0.5, .every_site = true};
+  mho_interference_options options = {.coupling_ev = 0.5, .every_site = true,
+                                      .nodes = whole, .rules = whole, .magic = whole};
   double start = now();
   need(mho_interference_map(m, junction, &options, &map, NULL));
   double spent = now() - start;
   *count = map.count < ANGLES ? map.count : ANGLES;
   for (size_t p = 0; p < *count; p++) value[p] = map.pair[p].transmission;
   mho_interference_clear(&map);
+  return spent;
+}
+
+/* All nodes between the molecule's own contacts, or those between its frontier levels. */
+static double run_nodes(const mho_junction *junction, bool gap, double *value, size_t *count)
+{
+  mho_plan *plan;
+  mho_nodes nodes;
+  need(mho_plan_create(junction, &plan, NULL));
+  double start = now();
+  if (gap) need(mho_nodes_between(plan, junction->homo_ev, junction->lumo_ev, &nodes, NULL));
+  else need(mho_nodes_find(plan, &nodes, NULL));
+  double spent = now() - start;
+  *count = 0;
+  for (size_t k = 0; k < nodes.count; k++)
+    if (nodes.node[k].kind == MHO_NODE_EXACT) value[(*count)++] = nodes.node[k].energy_ev;
+  mho_nodes_clear(&nodes);
+  mho_plan_free(plan);
   return spent;
 }
 
@@ -86,11 +105,13 @@ int main(int argc, char **argv)
   for (int pass = 0; pass < PASSES; pass++) {
     double spent = argv[1][0] == 't'   ? run_twist(rotor, junction.fermi_ev, cosine, value)
                    : argv[1][0] == 'm' ? run_map(rotor, junction.fermi_ev, cosine, value)
-                                       : run_pairs(&m, &junction, value, &count);
+                        : argv[1][0] == 'n' ? run_nodes(&junction, false, value, &count)
+                        : argv[1][0] == 'g' ? run_nodes(&junction, true, value, &count)
+                                            : run_pairs(&m, &junction, argv[1][0] == 'a', value, &count);
     if (spent < 0) return 1;
     if (spent < best) best = spent;
   }
-  if (argv[1][0] == 'p') best += levels; /* the one factorisation */
+  if (argv[1][0] == 'p' || argv[1][0] == 'a') best += levels; /* the one factorisation */
   FILE *file = fopen(argv[3], "wb");
   if (!file || fwrite(value, sizeof *value, count, file) != count || fclose(file) != 0) return 1;
   printf("{\"seconds\": %.9g, \"count\": %zu}\n", best, count);

@@ -1,5 +1,5 @@
 # SPDX-License-Identifier: GPL-3.0-or-later
-"""Twists and the map of all pairs against NumPy, in one run, one thread each.
+"""Twists, the map of all pairs and nodes against NumPy, in one run, one thread each.
 Values are compared before times; ratios on stdout and in levers.json.
 
     /usr/bin/python3 benchmarks/levers.py build
@@ -13,6 +13,7 @@ import time
 
 os.environ["OPENBLAS_NUM_THREADS"] = "1"
 import numpy as np  # noqa: E402
+import scipy.linalg  # noqa: E402
 
 HERE = os.path.dirname(os.path.abspath(__file__))
 SAMPLE = 4000  # of the million that NumPy solves; its time is scaled up
@@ -70,14 +71,14 @@ def twist(build, what, energies, angles, total):
             "largest_difference": worst}
 
 
-def ribbon(rings):
+def ribbon(rings, contacts=""):
     n = 2 * rings + 1
     lines = ["name: acene", "sites:"]
     lines += [f"  - {{id: {r}{i}, element: C}}" for r in "tb" for i in range(n)]
     lines += ["bonds:"]
     lines += [f"  - {{between: [{r}{i}, {r}{i + 1}]}}" for r in "tb" for i in range(n - 1)]
     lines += [f"  - {{between: [t{i}, b{i}]}}" for i in range(0, n, 2)]
-    return "\n".join(lines + ["fermi: 0.01 eV"]) + "\n"
+    return "\n".join(lines + [contacts, "fermi: 0.01 eV"]) + "\n"
 
 
 def pairs(build):
@@ -86,6 +87,8 @@ def pairs(build):
         file.flush()
         h, _ = matrix(build, file.name)
         seconds, value = ours(build, "pairs", file.name)
+        whole, same = ours(build, "all pairs", file.name)
+    assert np.allclose(value, same, rtol=1e-9, atol=1e-300)
     n, gamma = len(h), 0.5
     start = time.perf_counter()
     g = np.linalg.inv(0.01 * np.eye(n) - h)
@@ -104,9 +107,39 @@ def pairs(build):
     worst = np.max(np.abs(value / theirs - 1)[keep])
     assert worst < 1e-5, f"pairs: off by {worst}"
     assert abs(gamma ** 2 * abs(column[5, 0]) ** 2 / t[0, 5] - 1) < 1e-8
-    return {"sites": n, "seconds": seconds, "numpy_inverse_s": numpy_s, "ratio": numpy_s / seconds,
+    return {"sites": n, "seconds": seconds, "with_nodes_rules_magic_s": whole, "numpy_inverse_s": numpy_s, "ratio": numpy_s / seconds,
             "numpy_each_pair_s": each_s, "ratio_each_pair": each_s / seconds,
             "largest_difference": worst}
+
+
+def nodes(build, rings):
+    """Nodes of an acene, top left to bottom right, as eigenvalues of the pencil
+    [[H, v], [w, 0]] - E diag(1, 0)."""
+    ends = "electrodes:\n  left: {sites: [t1], coupling: 0.5 eV}\n" \
+           f"  right: {{sites: [b{2 * rings - 1}], coupling: 0.5 eV}}"
+    with tempfile.NamedTemporaryFile("w", suffix=".yaml") as file:
+        file.write(ribbon(rings, ends))
+        file.flush()
+        h, _ = matrix(build, file.name)
+        seconds, value = ours(build, "nodes", file.name)
+        gap_s, _ = ours(build, "gap", file.name)
+    n = len(h)
+    left, right = 1, 2 * (2 * rings + 1) - 2
+    a, b = np.zeros((n + 1, n + 1)), np.diag([1.0] * n + [0.0])
+    a[:n, :n], a[left, n], a[n, right] = h, 1, 1
+    start = time.perf_counter()
+    theirs = scipy.linalg.eigvals(a, b)
+    scipy_s = time.perf_counter() - start
+    levels = np.linalg.eigvalsh(h)
+    for energy in value:  # g changes sign there, or E is a level that one contact sees
+        if np.min(np.abs(levels - energy)) < 1e-6:
+            continue
+        g = [np.linalg.solve(e * np.eye(n) - h, np.eye(n)[:, left])[right]
+             for e in (energy - 1e-7, energy, energy + 1e-7)]
+        assert abs(g[1]) < 1e-3 * max(abs(g[0]), abs(g[2])), f"no node at {energy}"
+    return {"sites": n, "nodes": len(value), "seconds": seconds, "gap_alone_s": gap_s,
+            "scipy_pencil_s": scipy_s, "ratio": scipy_s / seconds,
+            "finite_by_scipy": int(np.sum(np.isfinite(theirs)))}
 
 
 ENDS = (0, 13)  # the nitrogens of the diamine
@@ -119,7 +152,8 @@ def main():
         "1e6 angles": twist(build, "twist", zero, lambda k: 90.0 * k / 999999, 10 ** 6),
         "1e3 x 1e3 map": twist(build, "map", lambda k: -1 + 2.0 * (k // 1000) / 999,
                                lambda k: 90.0 * (k % 1000) / 999, 10 ** 6),
-        "pairs": pairs(build)}
+        "pairs": pairs(build), "nodes of 26 sites": nodes(build, 6),
+        "nodes of 198 sites": nodes(build, 49)}
     for name, r in result.items():
         print(name + ": " + ", ".join(f"{k} {v:.3g}" for k, v in r.items()))
     with open(os.path.join(build, "levers.json"), "w", encoding="utf-8") as file:

@@ -4,26 +4,31 @@
 
 Makes about 300 MB of invented traces (fewer with --megabytes), checks that
 the counts agree, then compares times.  NumPy reads with loadtxt and with
-fromstring, both, and bins log10 with np.histogram.
+fromstring, both, and bins log10 with np.histogram; both sides on one thread.
+Runs alternate, and a ratio is the median over pairs, its range beside it.
+`bound` is the share of the speed at which the same bytes can be read at all:
+a file through a buffer (inflated where it is packed), an array by its sum.
 
-    traces.py BUILD_FOLDER [--megabytes N] [--json FILE]
+    traces.py BUILD_FOLDER [--megabytes N] [--repeats N] [--json FILE]
 """
 import argparse
 import gzip
 import json
 import os
+import statistics
 import subprocess
 import sys
 import tempfile
 import time
 
-os.environ.setdefault("OMP_WAIT_POLICY", "passive")
+for library in "OMP", "OPENBLAS":
+    os.environ[f"{library}_NUM_THREADS"] = "1"
 import numpy as np
 
 BINS, LOW, HIGH = 800, -7.0, 1.0
 
 
-def best(work, repeats=2):
+def timed(work, repeats=1):
     times = []
     for _ in range(repeats):
         start = time.perf_counter()
@@ -33,13 +38,28 @@ def best(work, repeats=2):
 
 
 def ours(program, mode, path):
-    seconds, counts = [], None
-    for _ in range(3):
-        lines = subprocess.run([program, mode, path], check=True, capture_output=True,
-                               text=True).stdout.split()
-        seconds.append(float(lines[0]))
-        counts = np.array([int(x) for x in lines[1:]])
-    return min(seconds), counts
+    lines = subprocess.run([program, mode, path], check=True, capture_output=True,
+                           text=True).stdout.split()
+    return float(lines[0]), np.array([int(x) for x in lines[1:]])
+
+
+def read_through(path):
+    buffer = bytearray(1 << 18)
+    with gzip.open(path) if path.endswith(".gz") else open(path, "rb", buffering=0) as file:
+        while file.readinto(buffer):
+            pass
+
+
+def compare(name, against, size, mine, theirs, bound, repeats):
+    """mine and theirs give seconds and counts, bound seconds."""
+    agree(name, mine()[1], theirs()[1])
+    times = [(mine()[0], theirs()[0], bound()) for _ in range(repeats)]
+    ratios = sorted(b / a for a, b, _ in times)
+    seconds = statistics.median(a for a, _, _ in times)
+    return {"case": name, "against": against, "megabytes": round(size, 1), "seconds": seconds,
+            "numpy_seconds": statistics.median(b for _, b, _ in times), "MB_per_s": size / seconds,
+            "ratio": statistics.median(ratios), "ratio_range": [ratios[0], ratios[-1]],
+            "bound_share": statistics.median(c / a for a, _, c in times)}
 
 
 def binned(g):
@@ -78,6 +98,7 @@ def main():
     parser = argparse.ArgumentParser()
     parser.add_argument("build")
     parser.add_argument("--megabytes", type=float, default=300)
+    parser.add_argument("--repeats", type=int, default=3)
     parser.add_argument("--json")
     options = parser.parse_args()
     program = os.path.join(options.build, "benchmarks", "bench_traces")
@@ -88,13 +109,11 @@ def main():
             return os.path.join(folder, name)
 
         def case(name, file, load, against):
-            mine, counts = ours(program, "read", path(file))
-            theirs, reference = best(lambda: binned(load()))
-            agree(name, counts, reference)
-            size = os.path.getsize(path(file)) / 1e6
-            rows.append({"case": name, "against": against, "megabytes": round(size, 1),
-                         "seconds": mine, "numpy_seconds": theirs,
-                         "MB_per_s": size / mine, "ratio": theirs / mine})
+            at = path(file)
+            rows.append(compare(name, against, os.path.getsize(at) / 1e6,
+                                lambda: ours(program, "read", at),
+                                lambda: timed(lambda: binned(load())),
+                                lambda: timed(lambda: read_through(at))[0], options.repeats))
 
         def text(file):
             with open(path(file), "rb") as opened:
@@ -118,16 +137,15 @@ def main():
         np.save(path("one.npy"), g.reshape(-1, points))
         case("npy float64", "one.npy", lambda: np.load(path("one.npy")).ravel(), "load + histogram")
         g.tofile(path("one.raw"))
-        mine, counts = ours(program, "bin", path("one.raw"))
-        theirs, reference = best(lambda: binned(g))
-        agree("binning", counts, reference)
-        rows.append({"case": "binning", "against": "log10 + histogram",
-                     "megabytes": round(g.nbytes / 1e6, 1), "seconds": mine,
-                     "numpy_seconds": theirs, "MB_per_s": g.nbytes / 1e6 / mine,
-                     "ratio": theirs / mine, "ns_per_point": mine / len(g) * 1e9})
+        rows.append(compare("binning", "log10 + histogram", g.nbytes / 1e6,
+                            lambda: ours(program, "bin", path("one.raw")),
+                            lambda: timed(lambda: binned(g), 3),
+                            lambda: timed(g.sum, 3)[0], options.repeats))
+        rows[-1]["ns_per_point"] = rows[-1]["seconds"] / len(g) * 1e9
     for row in rows:
-        print(f"{row['case']:20s} {row['megabytes']:7.1f} MB {row['MB_per_s']:8.0f} MB/s  "
-              f"{row['ratio']:6.1f} x {row['against']}")
+        print(f"{row['case']:12s} {row['megabytes']:6.1f} MB {row['MB_per_s']:6.0f} MB/s, "
+              f"{100 * row['bound_share']:3.0f} % of the bound  {row['ratio']:5.1f} x "
+              f"({row['ratio_range'][0]:.1f} to {row['ratio_range'][1]:.1f}) {row['against']}")
     if options.json:
         with open(options.json, "w") as file:
             json.dump(rows, file, indent=1)

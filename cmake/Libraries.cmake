@@ -28,3 +28,10 @@ find_path(FLINT_INCLUDE flint/fmpz_mat.h REQUIRED)
 add_library(mho_flint INTERFACE)
 target_include_directories(mho_flint SYSTEM INTERFACE ${FLINT_INCLUDE})
 target_link_libraries(mho_flint INTERFACE ${FLINT_LIBRARY})
+
+# Automorphisms of graphs.
+find_library(NAUTY_LIBRARY nauty REQUIRED)
+find_path(NAUTY_INCLUDE nauty/nausparse.h REQUIRED)
+add_library(mho_nauty INTERFACE)
+target_include_directories(mho_nauty SYSTEM INTERFACE ${NAUTY_INCLUDE})
+target_link_libraries(mho_nauty INTERFACE ${NAUTY_LIBRARY})

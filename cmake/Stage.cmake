@@ -30,7 +30,7 @@ function(mho_library)
     target_sources(mho PRIVATE $<TARGET_OBJECTS:${stage}>)
     target_sources(mho_all INTERFACE $<TARGET_OBJECTS:${stage}>)
   endforeach()
-  set(libraries mho_linear_algebra mho_gsl mho_flint PkgConfig::YAML PkgConfig::JANSSON PkgConfig::MD
+  set(libraries mho_linear_algebra mho_gsl mho_flint mho_nauty PkgConfig::YAML PkgConfig::JANSSON PkgConfig::MD
                 PkgConfig::ZLIB OpenMP::OpenMP_C m)
   target_link_libraries(mho PRIVATE ${libraries})
   target_link_libraries(mho_all INTERFACE ${libraries})

@@ -74,7 +74,7 @@ typedef struct {
   mho_histogram_options options;
   mho_trace_report report;
   double *edge_g0; /* [bins + 1] of the logarithmic bins */
-  mho_trace_counts all, accepted;
+  mho_trace_counts all, accepted; /* the same arrays where none is rejected */
   uint64_t *linear;                     /* [linear_bins], accepted */
   uint64_t linear_below, linear_above;  /* above: from linear_high_g0 on */
   bool has_distance;

@@ -22,6 +22,7 @@
 #include <mho/parameters.h>
 #include <mho/peaks.h>
 #include <mho/quantity.h>
+#include <mho/screen.h>
 #include <mho/sensitivity.h>
 #include <mho/settings.h>
 #include <mho/status.h>

@@ -38,16 +38,32 @@ MHO_BEGIN_DECLARATIONS
 
 /* All nodes of a plan; the caller clears the result, also after a failure.
  *
- * In 113 bits: states that neither contact sees are deflated by a block
- * Krylov basis, the infinite zeros of the bordered pencil
- * [[H, v_l], [v_r^T, 0]] - E diag(1, 0) by its staircase form (A. Emami-Naeini
- * and P. Van Dooren, Automatica 18, 415 (1982)); the finite ones are polished
- * on P itself, counted by the argument principle and checked by evaluation.
+ * How many zeros P has is counted in exact arithmetic modulo a prime (states
+ * that neither contact sees cancel; amplitudes below 1e-13 at both are none).
+ * They start from the closed-loop matrix of the bordered pencil
+ * [[H, v_l], [v_r^T, 0]] - E diag(1, 0) without its infinite zeros (A.
+ * Emami-Naeini and P. Van Dooren, Automatica 18, 415 (1982)), are polished on P
+ * itself to twice the digits of a double, kept apart by discs that hold one
+ * each, and where discs meet counted by the argument principle.  Zeros within
+ * 1e-13 of the largest level are one node of their joint order.  What doubles
+ * do not separate is searched in 113 bits.
  * Errors: MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA, MHO_ERR_NOT_CONVERGED. */
 MHO_API MHO_MUST_USE mho_status mho_nodes_find(const mho_plan *plan,
                                                mho_nodes *result,
                                                mho_error *error);
 MHO_API void mho_nodes_clear(mho_nodes *result);
+
+/* The exact nodes at low_ev < E < high_ev alone, in the time of some sums over
+ * the levels: for the gap between HOMO and LUMO of many molecules.  An end that
+ * is a level may be given; a node within 1e-10 eV of it counts as one at the
+ * level, not between.  `zeros` is the sum of orders, `unseen` is not counted.
+ * Where rounding hides a zero, or contacts have several channels (minima), it
+ * takes mho_nodes_find and its time.
+ * Errors: MHO_ERR_RANGE (energies), and those of mho_nodes_find. */
+MHO_API MHO_MUST_USE mho_status mho_nodes_between(const mho_plan *plan,
+                                                  double low_ev, double high_ev,
+                                                  mho_nodes *result,
+                                                  mho_error *error);
 
 MHO_END_DECLARATIONS
 

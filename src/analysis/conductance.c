@@ -41,7 +41,7 @@ static double quantile(const double *value, size_t count, double p)
   return value[below] + fraction * (value[below + 1] - value[below]);
 }
 
-static mho_status fermi_warnings(const mho_plan *plan, double kt_ev,
+static mho_status fermi_warnings(const mho_plan *plan, const mho_pole *pole, double kt_ev,
                                  mho_conductance *result, mho_error *error)
 {
   double fermi = result->fermi_ev;
@@ -49,22 +49,16 @@ static mho_status fermi_warnings(const mho_plan *plan, double kt_ev,
     result->warnings |= MHO_WARN_NO_PI_PATH;
     return MHO_OK;
   }
-  int n = mho_plan_sites(plan);
-  mho_pole *pole = malloc((size_t)n * sizeof *pole);
-  if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  mho_status status = mho_poles(plan, pole, error);
-  for (int k = 0; status == MHO_OK && k < n; k++) {
+  for (int k = 0; k < mho_plan_sites(plan); k++) {
     double reach = 0.5 * pole[k].width_ev + NEAR_POLE_KT * kt_ev;
     bool seen = pole[k].width_ev > 1e-12;
     if (seen && fabs(pole[k].energy_ev - fermi) <= reach)
       result->warnings |= MHO_WARN_NEAR_POLE;
   }
-  free(pole);
-  if (status != MHO_OK) return status;
   double beside = fmax(NEAR_NODE_KT * kt_ev, 1e-6);
   double energy[2] = {fermi - beside, fermi + beside};
   mho_point point[2];
-  status = mho_transmission_sweep(plan, 2, energy, point, error);
+  mho_status status = mho_transmission_sweep(plan, 2, energy, point, error);
   if (status != MHO_OK) return status;
   double rise = log10(NEAR_NODE_RISE) + result->at_fermi.log10_transmission;
   bool rises = !point[0].node && !point[1].node &&
@@ -82,10 +76,21 @@ static void set_conductance(mho_conductance *result, double log10_g0)
   result->conductance_s = result->conductance_g0 * MHO_CONDUCTANCE_QUANTUM_S;
 }
 
-mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
-                                   double temperature_k,
-                                   const mho_conductance_options *options,
-                                   mho_conductance *result, mho_error *error)
+static void set_window(double *value, mho_conductance *result)
+{
+  qsort(value, WINDOW_SAMPLES, sizeof *value, compare_doubles);
+  result->window_low_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_LOW_QUANTILE);
+  result->window_high_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_HIGH_QUANTILE);
+  result->has_window_low = result->window_low_log10_g0 > -INFINITY;
+  result->has_window_high = result->window_high_log10_g0 > -INFINITY;
+  if (!result->has_window_low) result->window_low_log10_g0 = 0;
+  if (!result->has_window_high) result->window_high_log10_g0 = 0;
+}
+
+mho_status mho_conductance_with_poles(const mho_plan *plan, const mho_pole *pole, double fermi_ev,
+                                      double temperature_k,
+                                      const mho_conductance_options *options,
+                                      mho_conductance *result, mho_error *error)
 {
   *result = (mho_conductance){.fermi_ev = fermi_ev, .temperature_k = temperature_k};
   double window = options ? options->window_ev : MHO_DEFAULT_WINDOW_EV;
@@ -95,22 +100,30 @@ mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
   double kt = MHO_BOLTZMANN_EV_PER_K * temperature_k;
   mho_status status =
       mho_transmission_sweep(plan, 1, &fermi_ev, &result->at_fermi, error);
-  double log10_g0 = 0, fermi[WINDOW_SAMPLES], value[WINDOW_SAMPLES];
+  double fermi[WINDOW_SAMPLES], value[WINDOW_SAMPLES];
   for (int i = 0; i < WINDOW_SAMPLES; i++)
     fermi[i] = fermi_ev + window * (2.0 * i / (WINDOW_SAMPLES - 1) - 1.0);
   if (status == MHO_OK)
-    status = mho_thermal_log10(plan, fermi, WINDOW_SAMPLES, kt, value, error);
+    status = mho_thermal_log10(plan, pole, fermi, WINDOW_SAMPLES, kt, value, error);
   if (status != MHO_OK) return status;
-  log10_g0 = value[WINDOW_SAMPLES / 2];
-  set_conductance(result, log10_g0);
-  qsort(value, WINDOW_SAMPLES, sizeof *value, compare_doubles);
-  result->window_low_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_LOW_QUANTILE);
-  result->window_high_log10_g0 = quantile(value, WINDOW_SAMPLES, MHO_WINDOW_HIGH_QUANTILE);
-  result->has_window_low = result->window_low_log10_g0 > -INFINITY;
-  result->has_window_high = result->window_high_log10_g0 > -INFINITY;
-  if (!result->has_window_low) result->window_low_log10_g0 = 0;
-  if (!result->has_window_high) result->window_high_log10_g0 = 0;
-  return fermi_warnings(plan, kt, result, error);
+  set_conductance(result, value[WINDOW_SAMPLES / 2]);
+  set_window(value, result);
+  return fermi_warnings(plan, pole, kt, result, error);
+}
+
+mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
+                                   double temperature_k,
+                                   const mho_conductance_options *options,
+                                   mho_conductance *result, mho_error *error)
+{
+  *result = (mho_conductance){.fermi_ev = fermi_ev};
+  mho_pole *pole = malloc((size_t)mho_plan_sites(plan) * sizeof *pole);
+  if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+  mho_status status = mho_poles(plan, pole, error);
+  if (status == MHO_OK)
+    status = mho_conductance_with_poles(plan, pole, fermi_ev, temperature_k, options, result, error);
+  free(pole);
+  return status;
 }
 
 unsigned mho_molecule_warnings(const mho_molecule *molecule,

@@ -248,6 +248,21 @@ static void classify(const mho_junction *j, const mho_pair_graph *graph, const d
   }
 }
 
+/* What symmetry makes equal is one number, not two that rounding tells apart. */
+static void copy_leaders(const size_t *leader, mho_interference *map)
+{
+  for (size_t p = 0; p < map->count; p++) {
+    mho_pair *pair = &map->pair[p], own = *pair;
+    if (leader[p] == p) continue;
+    *pair = map->pair[leader[p]];
+    memcpy(pair->site, own.site, sizeof own.site);
+    pair->magic = own.magic;
+    pair->starring = own.starring;
+    pair->orbital = own.orbital;
+    pair->cross_conjugation = own.cross_conjugation;
+  }
+}
+
 static mho_status evaluate(const mho_junction *j, double coupling_ev, const mho_pair_graph *graph,
                            bool nodes, mho_interference *map, mho_error *error)
 {
@@ -256,16 +271,21 @@ static mho_status evaluate(const mho_junction *j, double coupling_ev, const mho_
     if (fabs(j->fermi_ev - j->level_ev[k]) < LEVEL_REACH_EV)
       return evaluate_by_plans(j, coupling_ev, map, error);
   double *green = malloc(2 * n * n * sizeof *green), *reference = NULL;
-  mho_status status = green ? mho_bare_green(j, j->fermi_ev, green + n * n, green, error)
-                            : mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+  size_t *leader = malloc((map->count + 1) * sizeof *leader);
+  mho_status status = green && leader ? mho_pairs_orbits(j, graph, map, leader) : MHO_ERR_MEMORY;
+  if (status == MHO_OK) status = mho_bare_green(j, j->fermi_ev, green + n * n, green, error);
   for (size_t p = 0; status == MHO_OK && p < map->count; p++)
-    evaluate_pair(j, coupling_ev, green, &map->pair[p]);
+    if (leader[p] == p) evaluate_pair(j, coupling_ev, green, &map->pair[p]);
+  if (status == MHO_OK) copy_leaders(leader, map);
   free(green);
-  if (status == MHO_OK && !(reference = references(graph, map)))
+  if (status == MHO_OK && !(reference = references(graph, map))) status = MHO_ERR_MEMORY;
+  if (status == MHO_ERR_MEMORY)
     status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   if (status == MHO_OK) classify(j, graph, reference, map);
   if (status == MHO_OK && nodes)
-    status = mho_pairs_nodes(j, coupling_ev, reference, map, error);
+    status = mho_pairs_nodes(j, coupling_ev, reference, leader, map, error);
+  if (status == MHO_OK) copy_leaders(leader, map);
+  free(leader);
   free(reference);
   return status;
 }

@@ -109,7 +109,7 @@ static mho_status evaluate(const mho_molecule *m, const double *fermi_ev, double
   mho_status status = mho_junction_build(&own, &junction, error);
   if (status == MHO_OK) status = mho_plan_create(&junction, &plan, error);
   if (status == MHO_OK)
-    status = mho_thermal_log10(plan, fermi_ev, LEVELS, MHO_BOLTZMANN_EV_PER_K * m->temperature_k,
+    status = mho_thermal_log10(plan, NULL, fermi_ev, LEVELS, MHO_BOLTZMANN_EV_PER_K * m->temperature_k,
                                log10_g0, error);
   mho_plan_free(plan);
   mho_junction_clear(&junction);

@@ -26,15 +26,20 @@ MHO_MUST_USE mho_status mho_pairs_magic(const mho_junction *junction, const mho_
 MHO_MUST_USE mho_status mho_pairs_rules(const mho_junction *junction, const mho_pair_graph *graph,
                                         mho_interference *map);
 
+/* leader[pair]: the first of the pairs that symmetry makes equal; symmetry.c. */
+MHO_MUST_USE mho_status mho_pairs_orbits(const mho_junction *junction,
+                                         const mho_pair_graph *graph,
+                                         const mho_interference *map, size_t *leader);
+
 /* G = C diag(1/(E - level)) C^T into green[n*n]; work[n*n]. */
 MHO_MUST_USE mho_status mho_bare_green(const mho_junction *junction, double energy_ev,
                                        double *work, double *green, mho_error *error);
 
-/* Nodes and overturning shifts; pair_nodes.c.  reference[pair] is the |g| that
- * a conducting pair is measured by. */
+/* Nodes and overturning shifts of the leaders; pair_nodes.c.  reference[pair] is
+ * the |g| that a conducting pair is measured by. */
 MHO_MUST_USE mho_status mho_pairs_nodes(const mho_junction *junction, double coupling_ev,
-                                        const double *reference, mho_interference *map,
-                                        mho_error *error);
+                                        const double *reference, const size_t *leader,
+                                        mho_interference *map, mho_error *error);
 
 /* A plan with one-site contacts of Gamma on two sites. */
 MHO_MUST_USE mho_status mho_pair_plan(const mho_junction *junction, const int site[2],

@@ -114,7 +114,7 @@ mho_status mho_perturbed_log10(const mho_molecule *molecule, double fermi_ev,
   if (status == MHO_OK) status = mho_junction_build(&moved, &junction, error);
   if (status == MHO_OK) status = mho_plan_create(&junction, &plan, error);
   if (status == MHO_OK)
-    status = mho_thermal_log10(plan, &junction.fermi_ev, 1,
+    status = mho_thermal_log10(plan, NULL, &junction.fermi_ev, 1,
                                MHO_BOLTZMANN_EV_PER_K * molecule->temperature_k, log10_g0, error);
   mho_plan_free(plan);
   mho_junction_clear(&junction);

@@ -64,7 +64,7 @@ mho_status mho_rotor_log10(const mho_rotor *rotor, const double *angle_deg, doub
   mho_plan *plan;
   mho_status status = mho_rotor_turn(rotor, angle_deg, &plan, error);
   if (status == MHO_OK)
-    status = mho_thermal_log10(plan, &rotor->fermi_ev, 1,
+    status = mho_thermal_log10(plan, NULL, &rotor->fermi_ev, 1,
                                MHO_BOLTZMANN_EV_PER_K * rotor->molecule->temperature_k, log10_g0,
                                error);
   mho_plan_free(plan);

@@ -40,28 +40,30 @@ static int frontier(const mho_junction *j)
 }
 
 typedef struct {
-  int *start, *next, *mate, *place;
+  int *start, *next, *mate;
+  bool *missed;
 } remainder_graph;
 
-/* A perfect matching of the molecule without two sites? */
-static mho_status by_structures(const mho_pair_graph *g, const int *site, remainder_graph *r,
-                                mho_rule_verdict *verdict)
+/* Of site i in the molecule without another. */
+#define PLACE(i, without) ((i) - ((i) > (without)))
+
+/* missed[j]: has the molecule without the site and j a Kekule structure?  One
+ * matching without the site tells it for all j (T. Gallai and J. Edmonds). */
+static mho_status by_structures(const mho_pair_graph *g, int site, remainder_graph *r)
 {
-  int count = 0, links = 0;
-  for (int i = 0; i < g->count; i++) r->place[i] = i == site[0] || i == site[1] ? -1 : count++;
+  int count = g->count - 1, links = 0, vacant = 0;
   for (int i = 0; i < g->count; i++) {
-    if (r->place[i] < 0) continue;
-    r->start[r->place[i]] = links;
-    r->mate[r->place[i]] = -1;
+    if (i == site) continue;
+    r->start[PLACE(i, site)] = links;
+    r->mate[PLACE(i, site)] = -1;
     for (int k = g->start[i]; k < g->start[i + 1]; k++)
-      if (r->place[g->next[k]] >= 0) r->next[links++] = r->place[g->next[k]];
+      if (g->next[k] != site) r->next[links++] = PLACE(g->next[k], site);
   }
   r->start[count] = links;
   mho_match_graph rest = {count, r->start, r->next};
-  mho_status status = mho_match_maximum(&rest, r->mate, NULL);
-  *verdict = MHO_RULE_CONDUCTS;
-  for (int i = 0; status == MHO_OK && i < count; i++)
-    if (r->mate[i] < 0) *verdict = MHO_RULE_NODE;
+  mho_status status = mho_match_maximum(&rest, r->mate, r->missed);
+  for (int i = 0; i < count; i++) vacant += r->mate[i] < 0;
+  for (int i = 0; i < count && vacant > 1; i++) r->missed[i] = false;
   return status;
 }
 
@@ -72,9 +74,10 @@ mho_status mho_pairs_rules(const mho_junction *junction, const mho_pair_graph *g
   int homo = frontier(junction);
   remainder_graph rest = {malloc((n + 1) * sizeof(int)),
                           malloc(((size_t)graph->start[n] + 1) * sizeof(int)),
-                          malloc((n + 1) * sizeof(int)), malloc((n + 1) * sizeof(int))};
+                          malloc((n + 1) * sizeof(int)), malloc((n + 1) * sizeof(bool))};
   mho_status status =
-      rest.start && rest.next && rest.mate && rest.place ? MHO_OK : MHO_ERR_MEMORY;
+      rest.start && rest.next && rest.mate && rest.missed ? MHO_OK : MHO_ERR_MEMORY;
+  int done = -1; /* pairs come in order of their first site */
   for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
     mho_pair *pair = &map->pair[p];
     int distance = graph->distance[(size_t)pair->site[0] * n + (size_t)pair->site[1]];
@@ -82,13 +85,16 @@ mho_status mho_pairs_rules(const mho_junction *junction, const mho_pair_graph *g
                      : distance % 2 ? MHO_RULE_CONDUCTS
                                     : MHO_RULE_NODE;
     pair->orbital = homo < 0 ? MHO_RULE_SILENT : by_orbitals(junction, homo, pair->site);
-    if (distance >= 0 && n % 2 == 0)
-      status = by_structures(graph, pair->site, &rest, &pair->cross_conjugation);
+    if (distance < 0 || n % 2) continue;
+    if (done != pair->site[0]) status = by_structures(graph, done = pair->site[0], &rest);
+    if (status != MHO_OK) break;
+    pair->cross_conjugation =
+        rest.missed[PLACE(pair->site[1], done)] ? MHO_RULE_CONDUCTS : MHO_RULE_NODE;
   }
   free(rest.start);
   free(rest.next);
   free(rest.mate);
-  free(rest.place);
+  free(rest.missed);
   return status;
 }
 

@@ -7,8 +7,9 @@
 #include <stdlib.h>
 
 #include "analysis/perturb.h"
+#include "analysis/samples.h"
 #include "analysis/thermal.h"
-#include "base/random.h"
+#include "solver/gradient_sum.h"
 
 #define LN_10 2.302585092994045684
 #define RADIANS_PER_DEGREE 0.017453292519943295769
@@ -93,54 +94,62 @@ static mho_status create_gradient(const mho_plan *plan, const mho_molecule *m,
   return status;
 }
 
-/* Share of the thermal average that each energy of the grid carries. */
-static bool thermal_shares(const mho_thermal_grid *grid, double fermi_ev, double kt, double *share)
+/* Energies that carry the thermal average, their T and share, in place. */
+static size_t thermal_shares(mho_thermal_grid *grid, double fermi_ev, double kt)
 {
-  double total = 0;
+  double total = 0, scale = pow(10, grid->scale_log10);
   for (size_t i = 0; i < grid->count; i++) {
     double f = exp(-fabs(grid->energy_ev[i] - fermi_ev) / kt);
-    share[i] = grid->weight_ev[i] * grid->value[i] * f / ((1 + f) * (1 + f));
-    total += share[i];
+    grid->weight_ev[i] *= grid->value[i] * f / ((1 + f) * (1 + f));
+    total += grid->weight_ev[i];
   }
-  for (size_t i = 0; total > 0 && i < grid->count; i++) share[i] /= total;
-  return total > 0;
+  size_t kept = 0;
+  for (size_t i = 0; i < grid->count; i++) {
+    if (!(grid->weight_ev[i] > WEIGHT_FLOOR * total)) continue;
+    grid->energy_ev[kept] = grid->energy_ev[i];
+    grid->value[kept] = grid->value[i] * scale;
+    grid->weight_ev[kept++] = grid->weight_ev[i] / total;
+  }
+  return kept;
 }
 
-/* Adds share * dlog10T/dp at one energy to every row. */
-static mho_status add_energy(const mho_plan *plan, const mho_molecule *m, mho_gradient *g,
-                             double energy_ev, double share, mho_sensitivity *result,
-                             mho_error *error)
+static void set_rows(const mho_molecule *m, const mho_gradient *g, mho_sensitivity *result)
 {
-  mho_status status = mho_gradient_evaluate(plan, energy_ev, g, error);
-  if (status != MHO_OK || g->point.node) return status;
-  result->has_derivatives = true;
   for (size_t p = 0; p < result->count; p++)
-    result->row[p].derivative_log10_g0 += share * chain_rule(&result->row[p], m, g) / LN_10;
-  return MHO_OK;
+    result->row[p].derivative_log10_g0 = chain_rule(&result->row[p], m, g) / LN_10;
 }
 
-static mho_status differentiate(const mho_plan *plan, const mho_molecule *m, double fermi_ev,
-                                mho_sensitivity *result, mho_error *error)
+/* At 0 K the Fermi level alone. */
+static mho_status differentiate_cold(const mho_plan *plan, double fermi_ev, mho_gradient *g,
+                                     bool *any, mho_error *error)
+{
+  mho_point point;
+  double one = 1;
+  mho_status status = mho_transmission_sweep(plan, 1, &fermi_ev, &point, error);
+  *any = status == MHO_OK && !point.node;
+  if (!*any) return status;
+  return mho_gradient_sum(plan, 1, &fermi_ev, &point.transmission, &one, g, error);
+}
+
+static mho_status differentiate(const mho_plan *plan, const mho_pole *pole,
+                                const mho_molecule *m, double fermi_ev, mho_sensitivity *result,
+                                mho_error *error)
 {
   double kt = MHO_BOLTZMANN_EV_PER_K * m->temperature_k;
   mho_gradient *g;
+  mho_thermal_grid grid = {0};
   mho_status status = create_gradient(plan, m, &g, error);
-  if (status == MHO_OK && kt < MHO_COLD_EV)
-    status = add_energy(plan, m, g, fermi_ev, 1.0, result, error);
-  if (status != MHO_OK || kt < MHO_COLD_EV) {
-    mho_gradient_free(g);
-    return status;
+  if (status != MHO_OK) return status;
+  if (kt < MHO_COLD_EV) {
+    status = differentiate_cold(plan, fermi_ev, g, &result->has_derivatives, error);
+  } else {
+    status = mho_thermal_grid_build(plan, pole, &fermi_ev, 1, kt, &grid, error);
+    size_t count = status == MHO_OK ? thermal_shares(&grid, fermi_ev, kt) : 0;
+    result->has_derivatives = count > 0;
+    if (status == MHO_OK)
+      status = mho_gradient_sum(plan, count, grid.energy_ev, grid.value, grid.weight_ev, g, error);
   }
-  mho_thermal_grid grid;
-  double *share = NULL;
-  status = mho_thermal_grid_build(plan, &fermi_ev, 1, kt, &grid, error);
-  if (status == MHO_OK && !(share = malloc(grid.count * sizeof *share)))
-    status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  bool any = status == MHO_OK && thermal_shares(&grid, fermi_ev, kt, share);
-  for (size_t i = 0; any && status == MHO_OK && i < grid.count; i++)
-    if (share[i] > WEIGHT_FLOOR)
-      status = add_energy(plan, m, g, grid.energy_ev[i], share[i], result, error);
-  free(share);
+  if (status == MHO_OK && result->has_derivatives) set_rows(m, g, result);
   mho_thermal_grid_clear(&grid);
   mho_gradient_free(g);
   return status;
@@ -150,28 +159,6 @@ static int compare_doubles(const void *a, const void *b)
 {
   double x = *(const double *)a, y = *(const double *)b;
   return (x > y) - (x < y);
-}
-
-/* Samples first .. end-1: log10 G, and what the linear rule makes of the same
- * shifts (without the unmoved value). */
-static mho_status draw(const mho_molecule *m, double fermi_ev, uint64_t seed,
-                       const mho_sensitivity *result, size_t first, size_t end, double *value,
-                       double *linear, mho_error *error)
-{
-  double *shift = malloc(result->count * sizeof *shift);
-  if (!shift) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  mho_status status = MHO_OK;
-  for (size_t i = first; status == MHO_OK && i < end; i++) {
-    mho_random random = mho_random_stream(seed, i);
-    linear[i] = 0;
-    for (size_t p = 0; p < result->count; p++) {
-      shift[p] = result->row[p].sigma * mho_random_normal(&random);
-      linear[i] += result->row[p].derivative_log10_g0 * shift[p];
-    }
-    status = mho_perturbed_log10(m, fermi_ev, result->row, result->count, shift, &value[i], error);
-  }
-  free(shift);
-  return status;
 }
 
 /* Root mean square of what the linear rule leaves over, about its mean. */
@@ -206,7 +193,7 @@ static int compare_rows(const void *a, const void *b)
 }
 
 /* A few samples tell whether the linear rule holds; if not, the rest follows. */
-static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
+static mho_status estimate_error(const mho_molecule *m, const mho_plan *plan, double fermi_ev,
                                  const mho_sensitivity_options *options,
                                  mho_sensitivity *result, mho_error *error)
 {
@@ -222,12 +209,13 @@ static mho_status estimate_error(const mho_molecule *m, double fermi_ev,
   double *value = malloc(2 * samples * sizeof *value);
   if (!value) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   double *linear = value + samples;
-  mho_status status =
-      draw(m, fermi_ev, options->seed, result, 0, few, value, linear, error);
+  mho_status status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count,
+                                       options->seed, 0, few, value, linear, error);
   bool holds = result->has_derivatives &&
                left_over(value, linear, few) <= LINEAR_TOLERANCE * result->linear_decades;
   if (status == MHO_OK && !holds)
-    status = draw(m, fermi_ev, options->seed, result, few, samples, value, linear, error);
+    status = mho_samples_draw(m, plan, fermi_ev, result->row, result->count, options->seed, few,
+                              samples, value, linear, error);
   if (status == MHO_OK && !holds) set_range(value, samples, result);
   free(value);
   return status;
@@ -250,22 +238,33 @@ static mho_status check_options(const mho_sensitivity_options *options, mho_erro
   return MHO_OK;
 }
 
+mho_status mho_sensitivity_with_poles(const mho_molecule *molecule, const mho_plan *plan,
+                                      const mho_pole *pole, double fermi_ev,
+                                      const mho_sensitivity_options *options,
+                                      mho_sensitivity *result, mho_error *error)
+{
+  *result = (mho_sensitivity){0};
+  mho_sensitivity_options defaults = mho_sensitivity_defaults();
+  if (!options) options = &defaults;
+  mho_status status = check_options(options, error);
+  if (status == MHO_OK)
+    status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
+  if (status == MHO_OK) status = differentiate(plan, pole, molecule, fermi_ev, result, error);
+  if (status == MHO_OK) status = estimate_error(molecule, plan, fermi_ev, options, result, error);
+  if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
+  return status;
+}
+
 mho_status mho_sensitivity_compute(const mho_molecule *molecule, const mho_junction *junction,
                                    const mho_sensitivity_options *options,
                                    mho_sensitivity *result, mho_error *error)
 {
   *result = (mho_sensitivity){0};
-  mho_sensitivity_options defaults = mho_sensitivity_defaults();
-  if (!options) options = &defaults;
   mho_plan *plan = NULL;
-  mho_status status = check_options(options, error);
-  if (status == MHO_OK) status = mho_plan_create(junction, &plan, error);
+  mho_status status = mho_plan_create(junction, &plan, error);
   if (status == MHO_OK)
-    status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
-  if (status == MHO_OK) status = differentiate(plan, molecule, junction->fermi_ev, result, error);
-  if (status == MHO_OK)
-    status = estimate_error(molecule, junction->fermi_ev, options, result, error);
-  if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
+    status = mho_sensitivity_with_poles(molecule, plan, NULL, junction->fermi_ev, options, result,
+                                        error);
   mho_plan_free(plan);
   return status;
 }

@@ -18,6 +18,8 @@
 #include <gsl/gsl_errno.h>
 #include <gsl/gsl_integration.h>
 
+#include "base/processor.h"
+
 enum { GAUSS_POINTS = 16, HALVINGS_MAX = 60 };
 
 #define ELLIPSE 1.4
@@ -40,9 +42,10 @@ typedef struct {
 
 static bool is_smooth(const builder *b, double low, double high)
 {
+  double middle = 0.5 * (low + high), reach = 0.5 * ELLIPSE * (high - low);
   for (size_t k = 0; k < b->poles; k++) {
     double width = b->pole[k].width_ev;
-    if (width < b->smallest_width) continue;
+    if (width < b->smallest_width || fabs(b->pole[k].energy_ev - middle) >= reach) continue;
     double to_low = hypot(b->pole[k].energy_ev - low, 0.5 * width);
     double to_high = hypot(b->pole[k].energy_ev - high, 0.5 * width);
     if (to_low + to_high < ELLIPSE * (high - low)) return false;
@@ -126,24 +129,25 @@ static mho_status evaluate(const mho_plan *plan, mho_thermal_grid *grid,
   return status;
 }
 
-mho_status mho_thermal_grid_build(const mho_plan *plan, const double *center_ev,
-                                  size_t centers, double kt_ev,
+mho_status mho_thermal_grid_build(const mho_plan *plan, const mho_pole *pole,
+                                  const double *center_ev, size_t centers, double kt_ev,
                                   mho_thermal_grid *grid, mho_error *error)
 {
   *grid = (mho_thermal_grid){0};
   size_t n = (size_t)mho_plan_sites(plan);
-  mho_pole *pole = malloc(n * sizeof *pole);
+  mho_pole *own = pole ? NULL : malloc(n * sizeof *own);
   gsl_set_error_handler_off(); /* its default aborts the program */
   gsl_integration_glfixed_table *rule = gsl_integration_glfixed_table_alloc(GAUSS_POINTS);
-  mho_status status = MHO_ERR_MEMORY;
-  if (pole && rule) status = mho_poles(plan, pole, error);
+  mho_status status = (pole || own) && rule ? MHO_OK : MHO_ERR_MEMORY;
+  if (status == MHO_OK && own) status = mho_poles(plan, own, error);
   if (status == MHO_OK) {
+    if (own) pole = own;
     double scale = fmax(fabs(pole[0].energy_ev), fabs(pole[n - 1].energy_ev));
     builder b = {pole, n, WIDTH_RELATIVE * scale, rule, grid, 0};
     status = add_intervals(&b, center_ev, centers, kt_ev);
   }
   if (status == MHO_OK) status = evaluate(plan, grid, error);
-  free(pole);
+  free(own);
   if (rule) gsl_integration_glfixed_table_free(rule);
   if (status == MHO_ERR_MEMORY && error && error->count == 0)
     mho_fail(error, status, "analysis", NULL, "out of memory");
@@ -158,21 +162,107 @@ void mho_thermal_grid_clear(mho_thermal_grid *grid)
   *grid = (mho_thermal_grid){0};
 }
 
-double mho_thermal_average_log10(const mho_thermal_grid *grid, double fermi_ev,
-                                 double kt_ev)
+/* --- averages ----------------------------------------------------------------
+ *
+ * -df/dx = y/(1+y)^2 with y = e^x.  Within NEAR_KT of the Fermi level it is taken
+ * as it stands, with y = e^((E-R)/kT) e^((R-F)/kT) for a reference R of many
+ * Fermi levels; farther off it is the series
+ *
+ *   sum_n (-1)^(n+1) n e^(-n|x|),
+ *
+ * whose sums over all points on one side go from one Fermi level to the next by
+ * a factor. */
+
+#define NEAR_KT 8.0
+
+enum { TERMS = 5, V = 8 }; /* the first term left out is e^(-5 NEAR_KT) of the sum */
+
+typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
+
+/* sum c u b / (1 + u b)^2 over points[count]. */
+FOR_EVERY_PROCESSOR
+static double sum_near(const double *c, const double *u, size_t count, double b)
 {
-  double sum = 0;
-  for (size_t i = 0; i < grid->count; i++) {
-    double x = (grid->energy_ev[i] - fermi_ev) / kt_ev;
-    if (fabs(x) > REACH_KT) continue;
-    double f = exp(-fabs(x)), g = 1.0 + f; /* -df/dE = f / (kT (1+f)^2) */
-    sum += grid->weight_ev[i] * grid->value[i] * f / (g * g);
+  vector sum = {0};
+  size_t i = 0;
+  for (; i + V <= count; i += V) {
+    vector y = *(const vector *)(u + i) * b, g = 1.0 + y;
+    sum += *(const vector *)(c + i) * y / (g * g);
   }
-  return sum > 0 ? log10(sum / kt_ev) + grid->scale_log10 : -INFINITY;
+  double total = 0;
+  for (; i < count; i++) {
+    double y = u[i] * b, g = 1.0 + y;
+    total += c[i] * y / (g * g);
+  }
+  for (int l = 0; l < V; l++) total += sum[l];
+  return total;
 }
 
-mho_status mho_thermal_log10(const mho_plan *plan, const double *fermi_ev, size_t count,
-                               double kt_ev, double *log10_g0, mho_error *error)
+/* The points beyond `reach` on one side (side 1: above) of ascending Fermi
+ * levels, added to sum[count]; *edge[i] becomes the first point that is near
+ * (of the upper side: the first that is not). */
+static void add_far(const mho_thermal_grid *grid, const double *c, const double *fermi_ev,
+                    size_t count, double kt, int side, double *sum, size_t *edge)
+{
+  double term[TERMS] = {0};
+  size_t done = 0, points = grid->count;
+  for (size_t k = 0; k < count; k++) {
+    size_t at = side > 0 ? count - 1 - k : k;
+    double fermi = fermi_ev[at];
+    double moved = k ? exp(-fabs(fermi - fermi_ev[side > 0 ? at + 1 : at - 1]) / kt) : 1;
+    double power = 1;
+    for (int n = 0; n < TERMS; n++) term[n] *= power *= moved;
+    for (; done < points; done++) {
+      size_t i = side > 0 ? points - 1 - done : done;
+      double x = side * (grid->energy_ev[i] - fermi) / kt;
+      if (x <= NEAR_KT) break;
+      double f = exp(-x);
+      power = c[i];
+      for (int n = 0; n < TERMS; n++) term[n] += power *= f;
+    }
+    edge[at] = side > 0 ? points - done : done;
+    for (int n = 0; n < TERMS; n++) sum[at] += (n % 2 ? -1 : 1) * (n + 1) * term[n];
+  }
+}
+
+static void add_near(const mho_thermal_grid *grid, const double *c, const double *fermi_ev,
+                     size_t count, double kt, const size_t *from, const size_t *to, double *u,
+                     double *sum)
+{
+  for (size_t first = 0, end; first < count; first = end) {
+    double reference = fermi_ev[first];
+    for (end = first + 1; end < count && fermi_ev[end] - reference <= NEAR_KT * kt;) end++;
+    for (size_t i = from[first]; i < to[end - 1]; i++)
+      u[i] = exp((grid->energy_ev[i] - reference) / kt);
+    for (size_t k = first; k < end; k++)
+      sum[k] += sum_near(c + from[k], u + from[k], to[k] - from[k],
+                         exp((reference - fermi_ev[k]) / kt));
+  }
+}
+
+/* log10 of the thermal average of T at ascending Fermi levels. */
+static mho_status average(const mho_thermal_grid *grid, const double *fermi_ev, size_t count,
+                          double kt, double *log10_g0)
+{
+  double *c = malloc((2 * grid->count + 1) * sizeof *c);
+  size_t *edge = malloc(2 * count * sizeof *edge);
+  mho_status status = c && edge ? MHO_OK : MHO_ERR_MEMORY;
+  if (status == MHO_OK) {
+    for (size_t i = 0; i < grid->count; i++) c[i] = grid->weight_ev[i] * grid->value[i];
+    for (size_t k = 0; k < count; k++) log10_g0[k] = 0;
+    add_far(grid, c, fermi_ev, count, kt, -1, log10_g0, edge);
+    add_far(grid, c, fermi_ev, count, kt, 1, log10_g0, edge + count);
+    add_near(grid, c, fermi_ev, count, kt, edge, edge + count, c + grid->count, log10_g0);
+    for (size_t k = 0; k < count; k++)
+      log10_g0[k] = log10_g0[k] > 0 ? log10(log10_g0[k] / kt) + grid->scale_log10 : -INFINITY;
+  }
+  free(c);
+  free(edge);
+  return status;
+}
+
+mho_status mho_thermal_log10(const mho_plan *plan, const mho_pole *pole, const double *fermi_ev,
+                             size_t count, double kt_ev, double *log10_g0, mho_error *error)
 {
   if (kt_ev < MHO_COLD_EV) {
     mho_point *point = malloc(count * sizeof *point);
@@ -184,9 +274,9 @@ mho_status mho_thermal_log10(const mho_plan *plan, const double *fermi_ev, size_
     return status;
   }
   mho_thermal_grid grid;
-  mho_status status = mho_thermal_grid_build(plan, fermi_ev, count, kt_ev, &grid, error);
-  for (size_t i = 0; status == MHO_OK && i < count; i++)
-    log10_g0[i] = mho_thermal_average_log10(&grid, fermi_ev[i], kt_ev);
+  mho_status status = mho_thermal_grid_build(plan, pole, fermi_ev, count, kt_ev, &grid, error);
+  if (status == MHO_OK && average(&grid, fermi_ev, count, kt_ev, log10_g0) != MHO_OK)
+    status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   mho_thermal_grid_clear(&grid);
   return status;
 }

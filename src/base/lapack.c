@@ -16,6 +16,11 @@ char *openblas_get_config(void);
 void dgemm_(const char *, const char *, const lapack_int *, const lapack_int *, const lapack_int *,
             const double *, const double *, const lapack_int *, const double *, const lapack_int *,
             const double *, double *, const lapack_int *);
+void zgbtrf_(const lapack_int *, const lapack_int *, const lapack_int *, const lapack_int *,
+             double complex *, const lapack_int *, lapack_int *, lapack_int *);
+void zgbtrs_(const char *, const lapack_int *, const lapack_int *, const lapack_int *,
+             const lapack_int *, const double complex *, const lapack_int *, const lapack_int *,
+             double complex *, const lapack_int *, lapack_int *, size_t);
 
 enum { OPENBLAS_SERIAL = 0 };
 
@@ -82,6 +87,40 @@ mho_status mho_eigenvalues_complex(int n, double complex *matrix,
                                    mho_error *error)
 {
   return mho_eigen_complex(n, matrix, eigenvalues, NULL, error);
+}
+
+mho_status mho_eigenvalues_real(int n, double *matrix, double complex *eigenvalues,
+                                mho_error *error)
+{
+  mho_status status = mho_lapack_check(error);
+  double *part = malloc(2 * (size_t)n * sizeof *part), unused = 0;
+  if (status == MHO_OK && !part)
+    status = mho_fail(error, MHO_ERR_MEMORY, "base", NULL, "out of memory");
+  if (status == MHO_OK)
+    status = finish("dgeev", LAPACKE_dgeev(LAPACK_COL_MAJOR, 'N', 'N', n, matrix, n, part,
+                                           part + n, &unused, 1, &unused, 1), error);
+  for (int i = 0; status == MHO_OK && i < n; i++) {
+    eigenvalues[i] = CMPLX(part[i], part[n + i]);
+    if (!isfinite(part[i]) || !isfinite(part[n + i]))
+      status = mho_fail(error, MHO_ERR_NOT_FINITE, "base", NULL,
+                        "dgeev gave an eigenvalue that is not finite");
+  }
+  free(part);
+  return status;
+}
+
+bool mho_band_factor(int n, int band, double complex *matrix, int *pivot)
+{
+  int rows = 3 * band + 1, info;
+  zgbtrf_(&n, &n, &band, &band, matrix, &rows, pivot, &info);
+  return info == 0;
+}
+
+void mho_band_solve(int n, int band, const double complex *factor, const int *pivot, int columns,
+                    double complex *column)
+{
+  int rows = 3 * band + 1, info;
+  zgbtrs_("N", &n, &band, &band, &columns, factor, &rows, pivot, column, &n, &info, 1);
 }
 
 mho_status mho_solve_complex(int n, double complex *matrix, int columns,

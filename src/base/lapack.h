@@ -29,7 +29,11 @@ MHO_MUST_USE mho_status mho_eigenvalues_complex(int n, double complex *matrix,
                                                 double complex *eigenvalues,
                                                 mho_error *error);
 
-/* The same with right eigenvectors, column k for eigenvalue k. */
+/* Eigenvalues of a general real matrix[n*n], which is destroyed. */
+MHO_MUST_USE mho_status mho_eigenvalues_real(int n, double *matrix, double complex *eigenvalues,
+                                             mho_error *error);
+
+/* As mho_eigenvalues_complex, with right eigenvectors, column k for eigenvalue k. */
 MHO_MUST_USE mho_status mho_eigen_complex(int n, double complex *matrix,
                                           double complex *eigenvalues,
                                           double complex *eigenvectors,
@@ -41,6 +45,14 @@ MHO_MUST_USE mho_status mho_eigen_complex(int n, double complex *matrix,
 MHO_MUST_USE mho_status mho_solve_complex(int n, double complex *matrix, int columns,
                                           double complex *column, bool *singular,
                                           mho_error *error);
+
+/* Factors, in place, a matrix with so many diagonals on either side; its columns
+ * have 3 band + 1 rows, entry (i, j) in row 2 band + i - j.  False where a pivot
+ * is exactly zero.  Cheap enough for many small ones: the caller has had
+ * mho_lapack_check. */
+bool mho_band_factor(int n, int band, double complex *matrix, int *pivot);
+void mho_band_solve(int n, int band, const double complex *factor, const int *pivot, int columns,
+                    double complex *column);
 
 /* product = a b^T, all n x n column-major. */
 MHO_MUST_USE mho_status mho_multiply_transposed(int n, const double *a, const double *b,

@@ -251,28 +251,12 @@ static void cross_validate(search *s, const comb_model *m, const double *start,
   }
 }
 
-/* Comb and free peaks in every resample, [resamples * 2 * P]. */
-static mho_status bootstrap(const search *s, double *resampled)
+/* Comb and free peaks, parameter[2 * P]. */
+static void refit_both(const void *context, const double *count, double *parameter, double *work)
 {
-  size_t doubles = MHO_FIT_WORK(s->sample.bins, P) + (size_t)s->sample.bins;
-  bool failed = false;
-#pragma omp parallel reduction(|| : failed)
-  {
-    double *work = malloc(doubles * sizeof *work);
-    failed = work == NULL;
-#pragma omp for schedule(static)
-    for (int b = 0; b < s->options->resamples; b++) {
-      if (!work) continue;
-      double *count = work + MHO_FIT_WORK(s->sample.bins, P);
-      double *to = resampled + (size_t)b * 2 * P;
-      memcpy(to, s->parameter, sizeof s->parameter);
-      mho_sample_draw(&s->sample, s->options->seed, (uint64_t)b, count);
-      fit(&s->comb, count, to, work);
-      fit(&s->unrelated, count, to + P, work);
-    }
-    free(work);
-  }
-  return failed ? MHO_ERR_MEMORY : MHO_OK;
+  const search *s = context;
+  fit(&s->comb, count, parameter, work);
+  fit(&s->unrelated, count, parameter + P, work);
 }
 
 static void judge_tooth(const search *s, int tooth, const double *resampled, double *value,
@@ -301,7 +285,11 @@ static mho_status judge(search *s, mho_comb *comb)
   size_t resamples = (size_t)s->options->resamples, units = s->sample.units;
   double *resampled = malloc(resamples * 2 * P * sizeof *resampled);
   double *value = malloc(resamples * sizeof *value);
-  mho_status status = resampled && value ? bootstrap(s, resampled) : MHO_ERR_MEMORY;
+  mho_status status = MHO_ERR_MEMORY;
+  if (resampled && value)
+    status = mho_sample_bootstrap(&s->sample, s->options->seed, s->options->resamples, refit_both,
+                                  s, MHO_FIT_WORK(s->sample.bins, P), s->parameter[0], 2 * P,
+                                  resampled);
   if (status == MHO_OK) {
     int where = centre_of(&s->comb, 0), supported = 0;
     comb->g1_g0 = exp(s->parameter[0][where]);

@@ -50,8 +50,8 @@ static inline int mho_decimal_digits(const char *s, uint64_t *value)
 static inline bool mho_decimal_scale(uint64_t m, int exponent, double *value)
 {
   if (m < (UINT64_C(1) << 53) && exponent >= -22 && exponent <= 22) {
-    *value = exponent < 0 ? (double)m / mho_power10[-exponent]
-                          : (double)m * mho_power10[exponent];
+    *value = exponent < 0 ? (double)(int64_t)m / mho_power10[-exponent]
+                          : (double)(int64_t)m * mho_power10[exponent];
     return true;
   }
 #if LDBL_MANT_DIG == 64

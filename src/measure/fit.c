@@ -1,10 +1,12 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "measure/fit.h"
 
+#include "base/processor.h"
+
 #include <math.h>
 #include <string.h>
 
-enum { P = MHO_FIT_PARAMETERS, ITERATIONS = 100 };
+enum { P = MHO_FIT_PARAMETERS, ITERATIONS = 100, LANES = 8 };
 
 /* Of the log likelihood: 0.03 standard errors of independent counts, and
  * points of a trace are far from independent. */
@@ -18,18 +20,21 @@ static double deviance(int bins, const double *rate, const double *count)
   return sum;
 }
 
+FOR_EVERY_PROCESSOR
 static void normal_equations(int bins, int n, const double *rate, const double *jacobian,
                              const double *count, double h[P][P], double *gradient)
 {
   memset(h, 0, sizeof(double[P][P]));
   memset(gradient, 0, (size_t)n * sizeof *gradient);
+  double row[P] = {0};
   for (int i = 0; i < bins; i++) {
-    const double *row = jacobian + (size_t)i * (size_t)n;
+    memcpy(row, jacobian + (size_t)i * (size_t)n, (size_t)n * sizeof *row);
     double weight = 1.0 / rate[i], slope = 1.0 - count[i] * weight;
     for (int j = 0; j < n; j++) {
       gradient[j] += slope * row[j];
       double part = weight * row[j];
-      for (int k = 0; k <= j; k++) h[j][k] += part * row[k];
+      for (int k = 0; k <= j; k += LANES) /* a little beyond the triangle */
+        for (int l = 0; l < LANES; l++) h[j][k + l] += part * row[k + l];
     }
   }
 }
@@ -94,7 +99,7 @@ double mho_fit_counts(const mho_fit_problem *problem, const double *count, doubl
     double before = best;
     while (!moved && damping < 1e9) {
       if (propose(problem, h, gradient, damping, parameter, next)) {
-        problem->model(problem->context, next, rate, NULL);
+        problem->model(problem->context, next, rate, jacobian); /* most steps are taken */
         double there = deviance(bins, rate, count);
         moved = there < best;
         if (moved) best = there;
@@ -105,7 +110,6 @@ double mho_fit_counts(const mho_fit_problem *problem, const double *count, doubl
     if (!moved) break;
     memcpy(parameter, next, (size_t)n * sizeof *next);
     if (before - best < GAIN_AT_LEAST) break;
-    problem->model(problem->context, parameter, rate, jacobian);
   }
   return best;
 }

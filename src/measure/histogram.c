@@ -8,6 +8,8 @@
 
 #include "measure/logbin.h"
 #include "measure/pull.h"
+#include "measure/tally.h"
+#include "base/processor.h"
 #include "base/random.h"
 
 #include <math.h>
@@ -22,12 +24,8 @@ typedef struct {
   mho_histogram *histogram;
   mho_logbin logbin;
   double floor_g0;
-  /* Points of this trace by slot.  Even and odd points count in halves of
-   * their own, [2 * slots]: neighbours often meet in a bin, and a sum that
-   * waits for the sum before it is slow.  The end of the trace joins them. */
-  uint64_t *row, *linear;
-  size_t slots, linear_slots; /* bins + 2, linear_bins + 2 */
-  uint64_t censored;
+  mho_tally row, linear; /* points of this trace by slot; slot 0 of linear: left out */
+  uint64_t censored, left_out; /* points; the first are among the second */
   double *spent;     /* [bins + 2] */
   double *coarse;    /* [coarse_bins] */
   int *map_slot;     /* [bins + 2] conductance bin of the map, or -1 */
@@ -82,6 +80,14 @@ static uint32_t *allocate_units(size_t bins)
   return units;
 }
 
+static bool counts_allocate(mho_trace_counts *counts)
+{
+  counts->count = calloc((size_t)counts->bins, sizeof *counts->count);
+  counts->unit_traces = calloc(MHO_UNIT_LIMIT, sizeof *counts->unit_traces);
+  counts->unit_count = allocate_units((size_t)counts->bins);
+  return counts->count && counts->unit_traces && counts->unit_count;
+}
+
 static bool counts_init(mho_trace_counts *counts, const mho_histogram_options *options,
                         int bins, double floor_g0)
 {
@@ -90,10 +96,7 @@ static bool counts_init(mho_trace_counts *counts, const mho_histogram_options *o
   counts->bins = bins;
   counts->floor_log10_g0 = floor_g0 > 0.0 ? log10(floor_g0) : -INFINITY;
   counts->traces_per_unit = 1;
-  counts->count = calloc((size_t)bins, sizeof *counts->count);
-  counts->unit_traces = calloc(MHO_UNIT_LIMIT, sizeof *counts->unit_traces);
-  counts->unit_count = allocate_units((size_t)bins);
-  return counts->count && counts->unit_traces && counts->unit_count;
+  return counts_allocate(counts);
 }
 
 static void counts_clear(mho_trace_counts *counts)
@@ -121,6 +124,16 @@ static void merge_units(mho_trace_counts *counts)
   counts->traces_per_unit *= 2;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_row(const uint64_t *row, size_t bins, uint64_t *count, uint32_t *unit)
+{
+  for (size_t i = 0; i < bins; i++) {
+    uint64_t sum = unit[i] + row[i];
+    unit[i] = sum < row[i] || sum > UINT32_MAX ? UINT32_MAX : (uint32_t)sum;
+    count[i] += row[i];
+  }
+}
+
 static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t censored)
 {
   size_t bins = (size_t)counts->bins, unit = counts->units;
@@ -135,16 +148,29 @@ static void counts_add(mho_trace_counts *counts, const uint64_t *row, uint64_t c
     counts->unit_traces[unit] = 0;
     memset(counts->unit_count + unit * bins, 0, bins * sizeof *counts->unit_count);
   }
-  uint32_t *to = counts->unit_count + unit * bins;
-  for (size_t i = 0; i < bins; i++) {
-    to[i] = add_capped(to[i], row[i + 1]);
-    counts->count[i] += row[i + 1];
-  }
+  add_row(row + 1, bins, counts->count, counts->unit_count + unit * bins);
   counts->unit_traces[unit]++;
   counts->traces++;
   counts->censored += censored;
   counts->below += row[0];
   counts->above += row[bins + 1];
+}
+
+/* Accepted traces are counted in the arrays of all until one is rejected. */
+static bool counts_part(mho_histogram *h)
+{
+  const mho_trace_counts *all = &h->all;
+  size_t bins = (size_t)all->bins;
+  mho_trace_counts *to = &h->accepted;
+  if (to->unit_count != all->unit_count) return true;
+  *to = *all;
+  bool good = counts_allocate(to);
+  if (good) {
+    memcpy(to->count, all->count, bins * sizeof *to->count);
+    memcpy(to->unit_traces, all->unit_traces, all->units * sizeof *to->unit_traces);
+    memcpy(to->unit_count, all->unit_count, all->units * bins * sizeof *to->unit_count);
+  }
+  return good;
 }
 
 static mho_status allocate(collector *c, const mho_histogram_options *o, mho_error *error)
@@ -159,26 +185,24 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
   h->coarse_bins = (int)ceil(decades * COARSE_PER_DECADE - 1e-9);
   size_t coarse = (size_t)h->coarse_bins;
   bool good = counts_init(&h->all, o, (int)bins, c->floor_g0) &&
-              counts_init(&h->accepted, o, (int)bins, c->floor_g0);
+              mho_tally_init(&c->row, slots) &&
+              mho_tally_init(&c->linear, (size_t)o->linear_bins + 2);
   h->edge_g0 = malloc((bins + 1) * sizeof(double));
   h->linear = calloc((size_t)o->linear_bins, sizeof(uint64_t));
   h->map = calloc((size_t)o->map_bins * (size_t)h->map_g_bins, sizeof(uint64_t));
   h->coarse_sum = calloc(coarse, sizeof(double));
   h->coarse_product = calloc(coarse * coarse, sizeof(double));
-  c->slots = slots;
-  c->linear_slots = (size_t)o->linear_bins + 2;
-  c->row = malloc(2 * c->slots * sizeof *c->row);
-  c->linear = malloc(2 * c->linear_slots * sizeof *c->linear);
   c->spent = malloc(slots * sizeof *c->spent);
   c->coarse = malloc(coarse * sizeof *c->coarse);
   c->map_slot = malloc(slots * sizeof *c->map_slot);
   good = good && h->edge_g0 && h->linear && h->map && h->coarse_sum &&
-         h->coarse_product && c->row && c->linear && c->spent && c->coarse && c->map_slot;
+         h->coarse_product && c->spent && c->coarse && c->map_slot;
   if (o->clusters) {
     h->sample_trace = malloc(MHO_UNIT_LIMIT * sizeof(uint64_t));
     h->sample_count = malloc((size_t)MHO_UNIT_LIMIT * bins * sizeof(uint32_t));
     good = good && h->sample_trace && h->sample_count;
   }
+  h->accepted = h->all;
   if (!good) return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
   memcpy(h->edge_g0, c->logbin.edge, (bins + 1) * sizeof(double));
   for (int slot = 0; slot < (int)slots; slot++)
@@ -189,40 +213,51 @@ static mho_status allocate(collector *c, const mho_histogram_options *o, mho_err
 
 static void start_trace(collector *c, bool has_x)
 {
-  memset(c->row, 0, 2 * c->slots * sizeof *c->row);
-  memset(c->linear, 0, 2 * c->linear_slots * sizeof *c->linear);
-  c->censored = 0;
+  mho_tally_reset(&c->row);
+  mho_tally_reset(&c->linear);
+  c->censored = c->left_out = 0;
   c->pull.count = 0;
   c->too_long = false;
   c->has_x = has_x;
 }
 
-static void join_halves(uint64_t *count, size_t slots)
+/* What points below the floor, and those that are missing, come to. */
+typedef struct {
+  uint64_t censored, left_out;
+} dropped_points;
+
+/* Slots of the linear histogram, 0 for points left out. */
+FOR_EVERY_PROCESSOR
+static dropped_points linear_slots(const mho_histogram_options *options, double floor_g0,
+                                   const double *g0, size_t n, int32_t *slot)
 {
-  for (size_t i = 0; i < slots; i++) count[i] += count[slots + i];
+  const double top = options->linear_bins, scale = top / options->linear_high_g0;
+  dropped_points dropped = {0, 0};
+  for (size_t i = 0; i < n; i++) {
+    double at = g0[i] * scale;
+    at = at < top ? at : top;
+    slot[i] = g0[i] >= floor_g0 ? (int32_t)at + 1 : 0;
+    dropped.censored += g0[i] < floor_g0;
+    dropped.left_out += !(g0[i] >= floor_g0);
+  }
+  return dropped;
 }
 
 /* Bins points; slot[n] is filled, 0 for what is missing or censored. */
-static void bin_points(collector *c, const double *g0, size_t n, uint16_t *slot)
+static void bin_points(collector *c, const double *g0, size_t n, int32_t *slot)
 {
-  const double top = c->histogram->options.linear_bins;
-  const double scale = top / c->histogram->options.linear_high_g0;
-  const double least = fmax(c->floor_g0, 5e-324);
-  uint64_t censored = 0;
-  for (size_t i = 0; i < n; i++) {
-    double g = g0[i];
-    slot[i] = 0;
-    if (!(g >= least)) {
-      censored += g == g;
-      continue;
-    }
-    size_t half = i & 1;
-    slot[i] = (uint16_t)mho_logbin_slot(&c->logbin, g);
-    c->row[half * c->slots + slot[i]]++;
-    double at = g * scale;
-    c->linear[half * c->linear_slots + (at < top ? (size_t)at : (size_t)top) + 1]++;
+  enum { AT_ONCE = 1024 };
+  const double floor_g0 = fmax(c->floor_g0, 5e-324);
+  int32_t linear[AT_ONCE];
+  mho_logbin_slots(&c->logbin, floor_g0, g0, n, slot);
+  mho_tally_add(&c->row, slot, n);
+  for (size_t i = 0; i < n; i += AT_ONCE) {
+    size_t now = n - i < AT_ONCE ? n - i : AT_ONCE;
+    dropped_points dropped = linear_slots(&c->histogram->options, floor_g0, g0 + i, now, linear);
+    mho_tally_add(&c->linear, linear, now);
+    c->censored += dropped.censored;
+    c->left_out += dropped.left_out;
   }
-  c->censored += censored;
 }
 
 /* Bins the points of a piece: 1D, and what alignment will need. */
@@ -281,21 +316,37 @@ static bool add_plateaus(collector *c, uint64_t trace, size_t start)
   return true;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_multiple(double *to, const double *from, double factor, int n)
+{
+  for (int i = 0; i < n; i++) to[i] += factor * from[i];
+}
+
+/* Whole numbers, so that sums are exact; of the products the upper triangle. */
 static void add_coarse(collector *c)
 {
   mho_histogram *h = c->histogram;
-  int n = h->coarse_bins;
+  int n = h->coarse_bins, per_decade = h->options.bins_per_decade;
+  const uint64_t *count = c->row.sum + 1;
   double *coarse = c->coarse;
-  memset(coarse, 0, (size_t)n * sizeof *coarse);
-  for (int i = 0; i < c->logbin.bins; i++) {
-    int j = i * COARSE_PER_DECADE / h->options.bins_per_decade;
-    if (j < n) coarse[j] += (double)c->row[i + 1];
+  for (int i = 0, bin = 0; i < n; i++) {
+    int end = ((i + 1) * per_decade + COARSE_PER_DECADE - 1) / COARSE_PER_DECADE;
+    uint64_t sum = 0;
+    for (end = end < c->logbin.bins ? end : c->logbin.bins; bin < end; bin++) sum += count[bin];
+    coarse[i] = (double)sum;
   }
   for (int i = 0; i < n; i++) {
     if (coarse[i] == 0.0) continue;
     h->coarse_sum[i] += coarse[i];
-    for (int j = 0; j < n; j++) h->coarse_product[i * n + j] += coarse[i] * coarse[j];
+    add_multiple(h->coarse_product + i * n + i, coarse + i, coarse[i], n - i);
   }
+}
+
+static void mirror_coarse(mho_histogram *h)
+{
+  int n = h->coarse_bins;
+  for (int i = 0; i < n; i++)
+    for (int j = 0; j < i; j++) h->coarse_product[i * n + j] = h->coarse_product[j * n + i];
 }
 
 /* Reservoir sampling: every accepted trace stays with equal probability. */
@@ -316,7 +367,7 @@ static void add_sample(collector *c, uint64_t trace)
   size_t bins = (size_t)c->logbin.bins;
   h->sample_trace[place] = trace;
   for (size_t i = 0; i < bins; i++)
-    h->sample_count[place * bins + i] = add_capped(0, c->row[i + 1]);
+    h->sample_count[place * bins + i] = add_capped(0, c->row.sum[i + 1]);
 }
 
 /* True where the trace shows more than tunnelling; counts why not. */
@@ -342,24 +393,35 @@ static bool accept_trace(collector *c, bool aligned, size_t start)
   return false;
 }
 
+FOR_EVERY_PROCESSOR
+static void add_counts(uint64_t *to, const uint64_t *from, size_t n)
+{
+  for (size_t i = 0; i < n; i++) to[i] += from[i];
+}
+
 static bool end_trace(collector *c, uint64_t trace)
 {
   mho_histogram *h = c->histogram;
   size_t start = 0;
   double zero_nm = 0.0;
-  join_halves(c->row, c->slots);
-  join_halves(c->linear, c->linear_slots);
+  mho_tally_join(&c->row);
+  mho_tally_join(&c->linear);
+  c->row.sum[0] -= c->left_out;
   h->has_distance |= c->has_x;
   h->too_long += c->too_long;
   bool aligned = c->has_x && !c->too_long &&
                  mho_pull_align(&c->pull, h->options.crossing_g0, &start, &zero_nm);
   h->aligned += aligned;
-  counts_add(&h->all, c->row, c->censored);
-  if (!accept_trace(c, aligned, start)) return true;
-  add_sample(c, trace);
-  counts_add(&h->accepted, c->row, c->censored);
-  for (int i = 0; i < h->options.linear_bins; i++) h->linear[i] += c->linear[i + 1];
-  h->linear_above += c->linear[h->options.linear_bins + 1];
+  bool accepted = accept_trace(c, aligned, start);
+  if (!accepted && !counts_part(h)) return false;
+  bool apart = h->accepted.unit_count != h->all.unit_count;
+  if (accepted) add_sample(c, trace);
+  if (accepted && apart) counts_add(&h->accepted, c->row.sum, c->censored);
+  counts_add(&h->all, c->row.sum, c->censored);
+  if (!accepted) return true;
+  if (!apart) h->accepted = h->all;
+  add_counts(h->linear, c->linear.sum + 1, (size_t)h->options.linear_bins);
+  h->linear_above += c->linear.sum[h->options.linear_bins + 1];
   add_coarse(c);
   if (!aligned) return true;
   add_map(c, zero_nm);
@@ -396,13 +458,14 @@ mho_status mho_histogram_read(const char *const *paths, size_t count,
     status = mho_trace_reader_create(paths, count, traces, MHO_ABSCISSA_DISTANCE, &reader, error);
   if (status == MHO_OK) {
     status = collect(&c, reader, error);
+    mirror_coarse(histogram);
     histogram->report = *mho_trace_reader_report(reader);
   }
   mho_trace_reader_free(reader);
   mho_pull_clear(&c.pull);
   mho_logbin_clear(&c.logbin);
-  free(c.row);
-  free(c.linear);
+  mho_tally_clear(&c.row);
+  mho_tally_clear(&c.linear);
   free(c.spent);
   free(c.coarse);
   free(c.map_slot);
@@ -417,8 +480,9 @@ mho_status mho_histogram_read(const char *const *paths, size_t count,
 void mho_histogram_free(mho_histogram *histogram)
 {
   if (!histogram) return;
+  if (histogram->accepted.unit_count != histogram->all.unit_count)
+    counts_clear(&histogram->accepted);
   counts_clear(&histogram->all);
-  counts_clear(&histogram->accepted);
   free(histogram->edge_g0);
   free(histogram->linear);
   free(histogram->map);
@@ -468,6 +532,14 @@ void mho_histogram_correlation(const mho_histogram *histogram, double *correlati
     }
 }
 
+FOR_EVERY_PROCESSOR
+static size_t count_missing(const double *g0, size_t n)
+{
+  size_t missing = 0;
+  for (size_t i = 0; i < n; i++) missing += g0[i] != g0[i];
+  return missing;
+}
+
 mho_status mho_histogram_bin(const double *g0, size_t n, double low_log10_g0,
                              double high_log10_g0, int bins_per_decade, uint64_t *count,
                              uint64_t *below, uint64_t *above, mho_error *error)
@@ -475,17 +547,26 @@ mho_status mho_histogram_bin(const double *g0, size_t n, double low_log10_g0,
   mho_logbin logbin;
   mho_status status = mho_logbin_init(&logbin, low_log10_g0, high_log10_g0, bins_per_decade, error);
   if (status != MHO_OK) return status;
-  uint64_t *slots = calloc((size_t)logbin.bins + 2, sizeof *slots);
-  if (!slots) {
+  mho_tally tally = {0};
+  if (!mho_tally_init(&tally, (size_t)logbin.bins + 2)) {
+    mho_tally_clear(&tally);
     mho_logbin_clear(&logbin);
     return mho_fail(error, MHO_ERR_MEMORY, "measure", NULL, "out of memory");
   }
-  for (size_t i = 0; i < n; i++)
-    if (!isnan(g0[i])) slots[mho_logbin_slot(&logbin, g0[i])]++;
-  for (int i = 0; i < logbin.bins; i++) count[i] += slots[i + 1];
-  *below += slots[0];
-  *above += slots[logbin.bins + 1];
-  free(slots);
+  enum { AT_ONCE = 1024 };
+  int32_t slot[AT_ONCE];
+  uint64_t missing = 0;
+  for (size_t i = 0; i < n; i += AT_ONCE) {
+    size_t now = n - i < AT_ONCE ? n - i : AT_ONCE;
+    mho_logbin_slots(&logbin, -INFINITY, g0 + i, now, slot);
+    mho_tally_add(&tally, slot, now);
+    missing += count_missing(g0 + i, now);
+  }
+  mho_tally_join(&tally);
+  for (int i = 0; i < logbin.bins; i++) count[i] += tally.sum[i + 1];
+  *below += tally.sum[0] - missing;
+  *above += tally.sum[logbin.bins + 1];
+  mho_tally_clear(&tally);
   mho_logbin_clear(&logbin);
   return MHO_OK;
 }

@@ -6,6 +6,8 @@
  */
 #include "measure/hmm.h"
 
+#include "base/processor.h"
+
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
@@ -28,30 +30,28 @@ static double log_density(const mho_hmm *m, int k, double y)
 
 /* Densities of one point up to a factor; returns the log of the factor.
  * constant[k] is ln of the deviation. */
-static inline double densities(const mho_hmm *m, const double *constant, double y,
-                               double *density)
+INLINED double densities(const mho_hmm *m, int states, const double *constant, double y,
+                         double *density)
 {
   double top = -INFINITY;
-  for (int k = 0; k < m->states; k++) {
+  for (int k = 0; k < states; k++) {
     double z = (y - m->mean[k]) / m->deviation[k];
     density[k] = -0.5 * z * z - constant[k];
     if (density[k] > top) top = density[k];
   }
-  for (int k = 0; k < m->states; k++)
-    density[k] = density[k] == top ? 1.0 : exp(density[k] - top);
+  for (int k = 0; k < states; k++) density[k] = density[k] == top ? 1.0 : exp(density[k] - top);
   return top - 0.5 * LOG_2PI;
 }
 
 /* Forward variables, normalised a point: alpha[n * S], scale[n], density[n * S]. */
-static double forward(const mho_hmm *m, const double *y, size_t n, double *alpha, double *scale,
-                      double *density)
+INLINED double forward(const mho_hmm *m, int states, const double *y, size_t n, double *alpha,
+                       double *scale, double *density)
 {
-  double likelihood = 0.0, constant[S];
-  int states = m->states;
+  double likelihood = 0.0, product = 1.0, constant[S];
   for (int k = 0; k < states; k++) constant[k] = log(m->deviation[k]);
   for (size_t t = 0; t < n; t++) {
     double *a = alpha + t * S, *d = density + t * S, sum = 0.0;
-    likelihood += densities(m, constant, y[t], d);
+    likelihood += densities(m, states, constant, y[t], d);
     for (int k = 0; k < states; k++) {
       double come = t == 0 ? m->start[k] : 0.0;
       for (int j = 0; t > 0 && j < states; j++) come += a[j - S] * m->go[j][k];
@@ -61,18 +61,19 @@ static double forward(const mho_hmm *m, const double *y, size_t n, double *alpha
     if (!(sum > 1e-300)) sum = 1e-300;
     for (int k = 0; k < states; k++) a[k] /= sum;
     scale[t] = sum;
-    likelihood += log(sum);
+    if (product * sum > 1e-200) product *= sum; /* one logarithm for many points */
+    else likelihood += log(product) + log(sum), product = 1.0;
   }
-  return likelihood;
+  return likelihood + log(product);
 }
 
-static void gather(const mho_hmm *m, const double *y, size_t n, double *work, evidence *e)
+INLINED void gather_states(const mho_hmm *m, int states, const double *y, size_t n, double *work,
+                           evidence *e)
 {
   double *alpha = work, *density = work + n * S, *scale = work + 2 * n * S;
   double beta[S], next[S];
-  int states = m->states;
   memset(e, 0, sizeof *e);
-  e->likelihood = forward(m, y, n, alpha, scale, density);
+  e->likelihood = forward(m, states, y, n, alpha, scale, density);
   for (int k = 0; k < states; k++) beta[k] = 1.0;
   for (size_t t = n; t-- > 0;) {
     const double *a = alpha + t * S;
@@ -85,15 +86,27 @@ static void gather(const mho_hmm *m, const double *y, size_t n, double *work, ev
     }
     if (t == 0) break;
     const double *d = density + t * S, *before = a - S;
+    for (int k = 0; k < states; k++) beta[k] *= d[k] / scale[t];
     for (int j = 0; j < states; j++) {
       next[j] = 0.0;
       for (int k = 0; k < states; k++) {
-        double part = m->go[j][k] * d[k] * beta[k] / scale[t];
+        double part = m->go[j][k] * beta[k];
         next[j] += part;
         e->go[j][k] += before[j] * part;
       }
     }
-    memcpy(beta, next, sizeof beta);
+    for (int k = 0; k < states; k++) beta[k] = next[k];
+  }
+}
+
+/* With the number of states known its loops are short lines of arithmetic. */
+static void gather(const mho_hmm *m, const double *y, size_t n, double *work, evidence *e)
+{
+  _Static_assert(S == 3, "a case for every number of states");
+  switch (m->states) {
+  case 1: gather_states(m, 1, y, n, work, e); break;
+  case 2: gather_states(m, 2, y, n, work, e); break;
+  default: gather_states(m, S, y, n, work, e); break;
   }
 }
 
@@ -102,21 +115,15 @@ static bool belongs(size_t block, int parity)
   return parity > 1 || (int)(block % 2) == parity;
 }
 
-/* Evidence of every block; the sum is taken in order afterwards. */
 static mho_status gather_all(const mho_blocks *blocks, int parity, const mho_hmm *model,
                              evidence *each)
 {
-  bool failed = false;
-#pragma omp parallel reduction(|| : failed)
-  {
-    double *work = malloc((2 * S + 1) * blocks->length * sizeof *work);
-    failed = work == NULL;
-#pragma omp for schedule(static)
-    for (size_t b = 0; b < blocks->count; b++)
-      if (work && belongs(b, parity)) gather(model, blocks->block[b], blocks->length, work, &each[b]);
-    free(work);
-  }
-  return failed ? MHO_ERR_MEMORY : MHO_OK;
+  double *work = malloc((2 * S + 1) * blocks->length * sizeof *work);
+  if (!work) return MHO_ERR_MEMORY;
+  for (size_t b = 0; b < blocks->count; b++)
+    if (belongs(b, parity)) gather(model, blocks->block[b], blocks->length, work, &each[b]);
+  free(work);
+  return MHO_OK;
 }
 
 static void add_evidence(evidence *to, const evidence *e)

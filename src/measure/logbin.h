@@ -5,6 +5,10 @@
  * The exponent and the first bits of the significand of a double name a cell
  * narrower than a bin, so a cell touches at most two bins; a table gives the
  * lower of them and one comparison with the edge between them decides.
+ *
+ * Where the processor has wide vectors, a polynomial for the logarithm tells
+ * the slots of many numbers at once, and which of them lie so near an edge
+ * that the table has to decide: the slots are the same on every processor.
  */
 #ifndef MHOLECULE_MEASURE_LOGBIN_H
 #define MHOLECULE_MEASURE_LOGBIN_H
@@ -21,6 +25,10 @@ typedef struct {
   uint16_t *table;  /* a cell's slot */
   int64_t first, last; /* cells of the table */
   int shift;
+  /* The polynomial: numbers are held between `least` and `most`, which lie in
+   * the outer slots; slot = slope log2(value) + offset to within `doubt`. */
+  double least, most, slope, offset, doubt;
+  int lanes; /* doubles a vector, 1 to use the table alone */
 } mho_logbin;
 
 /* Bins from 10^low up to 10^high.
@@ -41,5 +49,9 @@ static inline int mho_logbin_slot(const mho_logbin *logbin, double value)
   int slot = logbin->table[cell - logbin->first];
   return slot + (value >= logbin->upper[slot]);
 }
+
+/* slot[n] of many numbers; 0 for NaN and what is below `floor` too. */
+void mho_logbin_slots(const mho_logbin *logbin, double floor, const double *value,
+                      size_t n, int32_t *slot);
 
 #endif

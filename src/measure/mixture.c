@@ -12,9 +12,15 @@ enum { G = MHO_GAUSSIAN_PARAMETERS };
 /* A little everywhere, so that no count is impossible. */
 #define RATE_FLOOR 1e-6
 
+/* 0 as exp() has it, without the handling of its underflow. */
 static double normal(double z)
 {
-  return SQRT_1_2PI * exp(-0.5 * z * z);
+  return z * z < 1492.0 ? SQRT_1_2PI * exp(-0.5 * z * z) : 0.0;
+}
+
+static double upper_half(double z)
+{
+  return z < 39.6 ? 0.5 * erfc(z * SQRT1_2) : 0.0;
 }
 
 static void add_gaussian(const mho_mixture *m, const double *p, int column, int n,
@@ -46,7 +52,7 @@ static void add_tail(const mho_mixture *m, const double *p, int column, int n, d
   for (int i = 0; i < m->bins; i++) {
     double z = (0.5 * (m->edge[i + 1] + m->edge[i]) - edge) / sigma;
     double scale = height * (m->edge[i + 1] - m->edge[i]);
-    double part = scale * 0.5 * erfc(z * SQRT1_2);
+    double part = scale * upper_half(z);
     rate[i] += part;
     if (!jacobian) continue;
     double slope = scale * normal(z), *row = jacobian + i * n + column;

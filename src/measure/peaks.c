@@ -156,26 +156,9 @@ static void choose_mixture(search *s, mho_peaks *peaks)
   peaks->components = s->mixture.gaussians;
 }
 
-/* Parameters of the mixture in every resample, [resamples * P]. */
-static mho_status bootstrap(const search *s, double *resampled)
+static void refit_resample(const void *mixture, const double *count, double *parameter, double *work)
 {
-  size_t doubles = MHO_FIT_WORK(s->sample.bins, P) + (size_t)s->sample.bins;
-  bool failed = false;
-#pragma omp parallel reduction(|| : failed)
-  {
-    double *work = malloc(doubles * sizeof *work);
-    failed = work == NULL;
-#pragma omp for schedule(static)
-    for (int b = 0; b < s->options->resamples; b++) {
-      if (!work) continue;
-      double *count = work + MHO_FIT_WORK(s->sample.bins, P);
-      memcpy(resampled + (size_t)b * P, s->parameter, P * sizeof(double));
-      mho_sample_draw(&s->sample, s->options->seed, (uint64_t)b, count);
-      refit(&s->mixture, count, false, resampled + (size_t)b * P, work);
-    }
-    free(work);
-  }
-  return failed ? MHO_ERR_MEMORY : MHO_OK;
+  refit(mixture, count, false, parameter, work);
 }
 
 /* First and second half of the traces, each fitted alone. */
@@ -230,7 +213,11 @@ static mho_status judge_all(const search *s, mho_peaks *peaks)
   size_t resamples = (size_t)s->options->resamples;
   double *resampled = malloc(resamples * P * sizeof *resampled);
   double *value = malloc(resamples * sizeof *value);
-  mho_status status = resampled && value ? bootstrap(s, resampled) : MHO_ERR_MEMORY;
+  mho_status status = MHO_ERR_MEMORY;
+  if (resampled && value)
+    status = mho_sample_bootstrap(&s->sample, s->options->seed, s->options->resamples,
+                                  refit_resample, &s->mixture, MHO_FIT_WORK(s->sample.bins, P),
+                                  s->parameter, P, resampled);
   for (int k = 0; status == MHO_OK && k < s->mixture.gaussians; k++) {
     mho_peak *peak = &peaks->peak[peaks->count];
     if (!judge(s, k, resampled, value, peak)) continue;

@@ -24,7 +24,7 @@ bool mho_pull_reserve(mho_pull *pull, size_t more)
   if (g0) pull->g0 = g0;
   double *x = realloc(pull->x, capacity * sizeof *x);
   if (x) pull->x = x;
-  uint16_t *slot = realloc(pull->slot, capacity * sizeof *slot);
+  int32_t *slot = realloc(pull->slot, capacity * sizeof *slot);
   if (slot) pull->slot = slot;
   if (!g0 || !x || !slot) return false;
   pull->capacity = capacity;

@@ -12,7 +12,7 @@ enum { MHO_PULL_LIMIT = 1 << 22 }; /* points that are kept for alignment */
 typedef struct {
   size_t count, capacity;
   double *g0, *x; /* x in nm */
-  uint16_t *slot; /* of mho_logbin */
+  int32_t *slot;  /* of mho_logbin */
 } mho_pull;
 
 /* Room for `more` points; false without memory. */

@@ -7,6 +7,7 @@
 #define MHOLECULE_MEASURE_READER_H
 
 #include "measure/columns.h"
+#include "measure/number_shape.h"
 #include "measure/source.h"
 
 /* What ended a filling. */
@@ -29,6 +30,8 @@ typedef struct {
   bool named;          /* by a header in the file */
   double number;       /* of the trace, from its column */
   bool has_number;
+  int credit; /* numbers that have the form of the one before earn it */
+  mho_number_shape shape[MHO_TRACE_COLUMN_LIMIT];
 } mho_text_state;
 
 typedef struct {
@@ -45,6 +48,7 @@ struct mho_trace_reader {
   double floor_g0, saturation_g0;
   mho_source source;
   bool open, npy;
+  bool shapes; /* the processor reads numbers by their form */
   mho_columns columns;
   mho_sweep sweep;
   mho_text_state text;

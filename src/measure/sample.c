@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "measure/sample.h"
 
+#include "base/processor.h"
 #include "base/random.h"
 
 #include <math.h>
@@ -48,10 +49,12 @@ void mho_sample_clear(mho_sample *sample)
   *sample = (mho_sample){0};
 }
 
+FOR_EVERY_PROCESSOR
 static void add(const mho_sample *sample, size_t unit, double *count)
 {
-  const double *from = sample->count + unit * (size_t)sample->bins;
-  for (int i = 0; i < sample->bins; i++) count[i] += from[i];
+  int bins = sample->bins;
+  const double *from = sample->count + unit * (size_t)bins;
+  for (int i = 0; i < bins; i++) count[i] += from[i];
 }
 
 static void clear_counts(const mho_sample *sample, double *count)
@@ -59,12 +62,34 @@ static void clear_counts(const mho_sample *sample, double *count)
   memset(count, 0, (size_t)sample->bins * sizeof *count);
 }
 
-void mho_sample_draw(const mho_sample *sample, uint64_t seed, uint64_t index, double *count)
+static void draw(const mho_sample *sample, uint64_t seed, uint64_t index, double *count)
 {
   mho_random random = mho_random_stream(seed, index);
   clear_counts(sample, count);
   for (size_t i = 0; i < sample->units; i++)
     add(sample, (size_t)mho_random_below(&random, sample->units), count);
+}
+
+mho_status mho_sample_bootstrap(const mho_sample *sample, uint64_t seed, int resamples,
+                                mho_sample_fit *fit, const void *context, size_t work,
+                                const double *parameter, size_t n, double *resampled)
+{
+  bool failed = false;
+#pragma omp parallel reduction(|| : failed)
+  {
+    double *count = malloc(((size_t)sample->bins + work) * sizeof *count);
+    failed = count == NULL;
+#pragma omp for schedule(dynamic)
+    for (int b = 0; b < resamples; b++) {
+      if (!count) continue;
+      double *to = resampled + (size_t)b * n;
+      memcpy(to, parameter, n * sizeof *to);
+      draw(sample, seed, (uint64_t)b, count);
+      fit(context, count, to, count + sample->bins);
+    }
+    free(count);
+  }
+  return failed ? MHO_ERR_MEMORY : MHO_OK;
 }
 
 void mho_sample_sum(const mho_sample *sample, size_t first, size_t last, double *count)

@@ -24,8 +24,19 @@ MHO_MUST_USE mho_status mho_sample_init(mho_sample *sample, const mho_trace_coun
                                         mho_error *error);
 void mho_sample_clear(mho_sample *sample);
 
-/* Sum of as many units as there are, drawn with replacement; stream `index`. */
-void mho_sample_draw(const mho_sample *sample, uint64_t seed, uint64_t index, double *count);
+/* Fits to count[bins] from parameter[] on; work is for one fit. */
+typedef void mho_sample_fit(const void *context, const double *count, double *parameter,
+                            double *work);
+
+/* Bootstrap over whole traces: fits to sums of as many units as there are,
+ * drawn with replacement, from parameter[n] on, into resampled[resamples * n].
+ * `work` doubles are given to a fit.  The same at any number of threads.
+ * Errors: MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_sample_bootstrap(const mho_sample *sample, uint64_t seed,
+                                             int resamples, mho_sample_fit *fit,
+                                             const void *context, size_t work,
+                                             const double *parameter, size_t n,
+                                             double *resampled);
 
 /* Sum of the units from first to before last. */
 void mho_sample_sum(const mho_sample *sample, size_t first, size_t last, double *count);

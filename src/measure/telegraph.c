@@ -11,6 +11,7 @@
 #include "measure/sample.h"
 
 #include <math.h>
+#include <omp.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -164,48 +165,53 @@ static mho_status make_blocks(const signal *s, mho_blocks *blocks)
   return MHO_OK;
 }
 
-/* Each half of the blocks judges a model of the other half. */
+/* Each half of the blocks judges a model of the other half.  Two threads with
+ * much work each: threads that meet in every round of an estimate spend more
+ * on waiting than they save. */
 static mho_status unseen_likelihood(const mho_blocks *blocks, int states, double *likelihood)
 {
-  mho_status status = MHO_OK;
-  for (int parity = 0; parity < 2 && status == MHO_OK; parity++) {
+  mho_status status[2];
+  int threads = omp_get_max_threads() < 2 ? 1 : 2;
+#pragma omp parallel for num_threads(threads)
+  for (int parity = 0; parity < 2; parity++) {
     mho_hmm model;
-    status = mho_hmm_estimate(blocks, parity, states, &model);
-    if (status == MHO_OK) status = mho_hmm_score(blocks, 1 - parity, &model, likelihood);
+    status[parity] = mho_hmm_estimate(blocks, parity, states, &model);
+    if (status[parity] == MHO_OK)
+      status[parity] = mho_hmm_score(blocks, 1 - parity, &model, likelihood);
   }
-  return status;
+  return status[0] != MHO_OK ? status[0] : status[1];
 }
 
 /* A level on which the signal stays for less than three samples on the average
  * is no level but the passage between two others. */
-static mho_status is_passage(const mho_blocks *blocks, int states, bool *passage)
+static bool has_passage(const mho_hmm *model)
 {
-  mho_hmm model;
-  mho_status status = mho_hmm_estimate(blocks, 2, states, &model);
-  *passage = false;
-  for (int k = 0; status == MHO_OK && k < states; k++)
-    *passage |= 1.0 - model.go[k][k] > 1.0 / 3.0;
-  return status;
+  bool passage = false;
+  for (int k = 0; k < model->states; k++) passage |= 1.0 - model->go[k][k] > 1.0 / 3.0;
+  return passage;
 }
 
+/* The number of levels, and the model with as many. */
 static mho_status choose_levels(const mho_blocks *blocks, const mho_telegraph_options *options,
-                                mho_telegraph *t)
+                                mho_telegraph *t, mho_hmm *model)
 {
   t->levels = options->levels ? options->levels : 1;
-  if (options->levels || blocks->count < 4) return MHO_OK;
+  mho_status status = mho_hmm_estimate(blocks, 2, t->levels, model);
+  if (options->levels || blocks->count < 4 || status != MHO_OK) return status;
   double *before = malloc(2 * blocks->count * sizeof *before);
   if (!before) return MHO_ERR_MEMORY;
   double *after = before + blocks->count;
-  mho_status status = unseen_likelihood(blocks, 1, before);
+  status = unseen_likelihood(blocks, 1, before);
   for (int k = 2; k <= options->most_levels && status == MHO_OK; k++) {
     status = unseen_likelihood(blocks, k, after);
     if (status != MHO_OK) break;
     mho_paired_gain(after, before, blocks->count, &t->gain[k], &t->gain_error[k]);
     if (!(t->gain[k] > STANDARD_ERRORS * t->gain_error[k])) break;
-    bool passage;
-    status = is_passage(blocks, k, &passage);
-    if (passage) break;
+    mho_hmm larger;
+    status = mho_hmm_estimate(blocks, 2, k, &larger);
+    if (status != MHO_OK || has_passage(&larger)) break;
     t->levels = k;
+    *model = larger;
     memcpy(before, after, blocks->count * sizeof *before);
   }
   free(before);
@@ -247,8 +253,7 @@ static mho_status fit_paths(signal *s, const mho_telegraph_options *options, mho
   mho_status status = make_blocks(s, &blocks);
   if (status == MHO_OK && blocks.count == 0) status = MHO_ERR_RANGE;
   for (int round = 0; round < 3 && status == MHO_OK; round++) {
-    status = choose_levels(&blocks, options, t);
-    if (status == MHO_OK) status = mho_hmm_estimate(&blocks, 2, t->levels, model);
+    status = choose_levels(&blocks, options, t, model);
     if (status != MHO_OK) break;
     find_paths(s, model, back, path);
     if (!options->drift) break;

@@ -5,6 +5,7 @@
  * by slow_line, which also knows the column of a mistake.
  */
 #include "measure/decimal.h"
+#include "measure/number_shape.h"
 #include "measure/reader.h"
 
 #include <math.h>
@@ -20,13 +21,30 @@ static inline const char *skip_blanks(const char *p, char separator)
   return p;
 }
 
+/* A line earns 1, a number that has another form than the one before costs 8:
+ * where forms change often the general reader is the faster one. */
+enum { CREDIT = 512, MOST_CREDIT = MHO_TRACE_CHUNK, CREDIT_PRICE = 8 };
+
+/* A number by its form, or else in general, and what form it has is learned
+ * where there is credit. */
+typedef bool number_reader(mho_number_shape *shape, int *credit, const char *s, const char **end,
+                           double *value);
+
+INLINED bool read_any(mho_number_shape *shape, int *credit, const char *s, const char **end,
+                      double *value)
+{
+  (void)shape;
+  (void)credit;
+  return mho_decimal_read(s, end, value);
+}
+
 /* Reads `count` numbers and the line end; NULL where it is not so simple. */
-static inline __attribute__((always_inline)) const char *
-fast_line(const char *p, int count, char separator, double *field)
+INLINED const char *fast_line(mho_text_state *text, number_reader *read, const char *p, int count,
+                              char separator, double *field, int *credit)
 {
   for (int i = 0; i < count; i++) {
     p = skip_blanks(p, separator);
-    if (!mho_decimal_read(p, &p, &field[i])) return NULL;
+    if (!read(&text->shape[i], credit, p, &p, &field[i])) return NULL;
     if (i + 1 == count) break;
     if (separator == ' ') {
       if (*p != ' ' && *p != '\t') return NULL;
@@ -247,19 +265,19 @@ static inline bool store_point(mho_trace_reader *reader, const double *field)
   return true;
 }
 
-/* Fast lines up to the first that is not, or the end of the whole lines.  What
- * changes with every point is kept out of memory. */
-static inline __attribute__((always_inline)) const char *
-fast_lines(mho_trace_reader *reader, const char *p, const char *limit, int count,
-           char separator, bool *restart)
+/* Fast lines up to the first that is not, or the end of the whole lines, or of
+ * the credit.  What changes with every point is kept out of memory. */
+INLINED const char *fast_lines(mho_trace_reader *reader, number_reader *read, const char *p,
+                               const char *limit, int count, char separator, bool *restart)
 {
   double field[MHO_TRACE_COLUMN_LIMIT], *value = reader->value, *x = reader->x;
   const int value_at = reader->columns.value, x_at = reader->columns.x;
   bool has_number = reader->columns.number >= 0;
   mho_sweep sweep = reader->sweep;
+  int credit = reader->text.credit;
   size_t n = reader->count, start = n;
-  while (p < limit && n < MHO_TRACE_CHUNK) {
-    const char *next = fast_line(p, count, separator, field);
+  while (p < limit && n < MHO_TRACE_CHUNK && credit > 0) {
+    const char *next = fast_line(&reader->text, read, p, count, separator, field, &credit);
     if (!next) break;
     if (has_number ? number_changes(reader, field)
                    : x_at >= 0 && mho_sweep_restarts(&sweep, field[x_at])) {
@@ -273,19 +291,56 @@ fast_lines(mho_trace_reader *reader, const char *p, const char *limit, int count
   }
   reader->sweep = sweep;
   reader->text.line += (long)(n - start);
+  reader->text.credit = credit;
   reader->count = n;
   return p;
 }
 
-static const char *run_fast(mho_trace_reader *reader, const char *p, const char *limit,
-                            bool *restart)
+INLINED const char *fast_columns(mho_trace_reader *reader, number_reader *read, const char *p,
+                                 const char *limit, bool *restart)
 {
   char separator = reader->text.separator;
   switch (reader->columns.count) {
-  case 1: return fast_lines(reader, p, limit, 1, separator, restart);
-  case 2: return fast_lines(reader, p, limit, 2, separator, restart);
-  default: return fast_lines(reader, p, limit, reader->columns.count, separator, restart);
+  case 1: return fast_lines(reader, read, p, limit, 1, separator, restart);
+  case 2:
+    if (separator == ' ') return fast_lines(reader, read, p, limit, 2, ' ', restart);
+    return fast_lines(reader, read, p, limit, 2, separator, restart);
+  default: return fast_lines(reader, read, p, limit, reader->columns.count, separator, restart);
   }
+}
+
+#ifdef MHO_HAS_NUMBER_SHAPES
+MHO_SHAPE_PROCESSOR INLINED bool read_shaped(mho_number_shape *shape, int *credit, const char *s,
+                                             const char **end, double *value)
+{
+  const char *start = s;
+  if (mho_shape_read(shape, s, end, value)) return true;
+  if (!mho_decimal_read(s, end, value)) return false;
+  mho_shape_learn(shape, start, *end);
+  *credit -= CREDIT_PRICE;
+  return true;
+}
+
+MHO_SHAPE_PROCESSOR static const char *run_shaped(mho_trace_reader *reader, const char *p,
+                                                  const char *limit, bool *restart)
+{
+  size_t before = reader->count;
+  p = fast_columns(reader, read_shaped, p, limit, restart);
+  int credit = reader->text.credit + (int)(reader->count - before);
+  if (reader->text.credit > 0)
+    reader->text.credit = credit < MOST_CREDIT ? credit : MOST_CREDIT;
+  return p;
+}
+#endif
+
+static const char *run_fast(mho_trace_reader *reader, const char *p, const char *limit,
+                            bool *restart)
+{
+#ifdef MHO_HAS_NUMBER_SHAPES
+  if (reader->shapes && reader->text.credit > 0) return run_shaped(reader, p, limit, restart);
+#endif
+  reader->text.credit = CREDIT;
+  return fast_columns(reader, read_any, p, limit, restart);
 }
 
 /* Makes at least one whole line available, or finds the file used up. */

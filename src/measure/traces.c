@@ -8,6 +8,8 @@
 
 #include <mho/constants.h>
 
+#include "base/processor.h"
+
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
@@ -80,6 +82,9 @@ mho_status mho_trace_reader_create(const char *const *paths, size_t count,
   reader->path_count = count;
   reader->options = *options;
   reader->wanted = wanted;
+#ifdef MHO_HAS_NUMBER_SHAPES
+  reader->shapes = __builtin_cpu_supports("x86-64-v3");
+#endif
   reader->floor_g0 = mho_trace_floor_g0(options);
   reader->saturation_g0 = mho_trace_saturation_g0(options);
   status = mho_source_init(&reader->source, error);
@@ -190,28 +195,39 @@ static void convert_values(mho_trace_reader *reader)
     for (size_t i = 0; i < n; i++) g[i] = without_series(g[i], reader->options.series_ohm);
 }
 
+typedef struct {
+  uint64_t missing, low, below, high;
+} kinds;
+
+FOR_EVERY_PROCESSOR
+static kinds count_kinds(const double *g, size_t n, double floor_g0, double top)
+{
+  const double largest = 1.7976931348623157e308;
+  kinds k = {0, 0, 0, 0};
+  for (size_t i = 0; i < n; i++) {
+    bool finite = fabs(g[i]) <= largest, over = g[i] >= top;
+    k.missing += !finite & !over;
+    k.low += (g[i] <= 0.0) & finite;
+    k.below += (g[i] > 0.0) & (g[i] < floor_g0);
+    k.high += over;
+  }
+  return k;
+}
+
 /* Counts points by kind; an infinite one is saturated where that is known. */
 static void count_values(mho_trace_reader *reader)
 {
-  double *g = reader->value, floor_g0 = reader->floor_g0, top = reader->saturation_g0;
   bool series = reader->options.series_ohm > 0.0;
-  uint64_t missing = 0, low = 0, below = 0, high = 0;
-  for (size_t i = 0; i < reader->count; i++) {
-    bool finite = fabs(g[i]) <= 1.7976931348623157e308;
-    bool over = g[i] >= top || (series && g[i] > 0.0 && !finite);
-    missing += !finite && !over;
-    low += g[i] <= 0.0 && finite;
-    below += g[i] > 0.0 && g[i] < floor_g0;
-    high += over;
-  }
-  if (missing + high > 0)
+  double *g = reader->value;
+  kinds k = count_kinds(g, reader->count, reader->floor_g0, reader->saturation_g0);
+  if (k.missing + k.high > 0)
     for (size_t i = 0; i < reader->count; i++)
       if (!isfinite(g[i])) g[i] = series && g[i] > 0.0 ? 1.7976931348623157e308 : NAN;
   reader->report.points += reader->count;
-  reader->report.not_finite += missing;
-  reader->report.not_positive += low;
-  reader->report.below_floor += below;
-  reader->report.saturated += high;
+  reader->report.not_finite += k.missing;
+  reader->report.not_positive += k.low;
+  reader->report.below_floor += k.below;
+  reader->report.saturated += k.high;
 }
 
 /* The abscissa that is wanted, or none. */

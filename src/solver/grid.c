@@ -6,6 +6,7 @@
 #include <stdlib.h>
 
 #include "solver/grid.h"
+#include "solver/zeros.h"
 
 /* Distances, in widths, that draw a Lorentzian well. */
 static const double offset[] = {0,   0.05, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.65,
@@ -13,9 +14,9 @@ static const double offset[] = {0,   0.05, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.65,
                                 40,  80,   160, 320,  640, 1280};
 enum { OFFSETS = sizeof offset / sizeof *offset };
 
-/* Molecules above this many sites are plotted without their nodes, which would
- * take longer than the plot. */
-enum { NODE_SITES = 60 };
+/* Molecules above this many sites are plotted without their nodes, or without
+ * those that are hard to tell apart, which would take longer than the plot. */
+enum { NODE_SITES = MHO_NODES_STATES_MAX, PATIENT_SITES = 60 };
 
 static int compare_doubles(const void *a, const void *b)
 {
@@ -86,7 +87,7 @@ mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev, 
   mho_feature *feature = NULL;
   mho_status status = MHO_OK;
   if (plan->sites <= NODE_SITES) {
-    status = mho_nodes_find(plan, &nodes, error);
+    status = mho_nodes_search(plan, plan->sites <= PATIENT_SITES, &nodes, error);
     if (status == MHO_ERR_NOT_CONVERGED) status = MHO_OK; /* a plot can do without */
   }
   if (status == MHO_OK) status = mho_pole_features(plan, nodes.count, &feature, error);

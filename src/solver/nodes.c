@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
- * Zeros of the pencil's polynomial: started from the double eigenvalues of its
+ * Nodes in double precision (zeros.c) where that tells them apart, else in 113
+ * bits.  There: zeros of the pencil's polynomial, started from the double eigenvalues of its
  * matrix, polished together (O. Aberth, Math. Comp. 27, 339 (1973)), joined
  * where 113 bits cannot tell them apart, and counted on a circle around.
  */
@@ -12,6 +13,7 @@
 #include "base/lapack.h"
 #include "solver/minima.h"
 #include "solver/pencil.h"
+#include "solver/zeros.h"
 
 enum { ITERATIONS_MAX = 80 };
 
@@ -245,15 +247,9 @@ static mho_status find_zeros(const mho_pencil *pencil, mho_nodes *result, mho_er
   return status;
 }
 
-mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *error)
+/* In 113 bits, where doubles do not tell zeros apart. */
+static mho_status find_extended(const mho_plan *plan, mho_nodes *result, mho_error *error)
 {
-  *result = (mho_nodes){0};
-  bool single = plan->left == 1 && plan->right == 1;
-  if (!plan->connected) {
-    result->everywhere = true;
-    return MHO_OK;
-  }
-  if (!single || plan->sites > MHO_NODES_STATES_MAX) return mho_minima_find(plan, result, error);
   mho_pencil pencil;
   mho_status status = mho_pencil_create(plan, &pencil);
   if (status != MHO_OK) mho_fail(error, status, "solver", NULL, "out of memory");
@@ -263,6 +259,40 @@ mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *er
   if (status == MHO_OK && !pencil.everywhere) status = find_zeros(&pencil, result, error);
   mho_pencil_clear(&pencil);
   return status;
+}
+
+mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result, mho_error *error)
+{
+  *result = (mho_nodes){0};
+  bool single = plan->left == 1 && plan->right == 1, sure = false;
+  if (!plan->connected) {
+    result->everywhere = true;
+    return MHO_OK;
+  }
+  if (!single || plan->sites > MHO_NODES_STATES_MAX) return mho_minima_find(plan, result, error);
+  if (!plan->pair) return find_extended(plan, result, error);
+  mho_exact_counts counts;
+  mho_status status = mho_exact_count(plan, &counts);
+  result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
+  if (status != MHO_OK || !result->node)
+    return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  result->everywhere = counts.poles == 0;
+  result->unseen = plan->sites - counts.visible;
+  if (result->everywhere) return MHO_OK;
+  status = mho_zeros_find(plan, &counts, result, &sure, error);
+  if (status != MHO_OK || sure) {
+    qsort(result->node, result->count, sizeof(mho_node), compare_nodes);
+    return status;
+  }
+  mho_nodes_clear(result);
+  if (patient) return find_extended(plan, result, error);
+  return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
+                  "doubles do not tell the nodes apart");
+}
+
+mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *error)
+{
+  return mho_nodes_search(plan, true, result, error);
 }
 
 void mho_nodes_clear(mho_nodes *result)

@@ -11,9 +11,11 @@
 #include <string.h>
 
 #include "solver/program.h"
+#include "solver/repeat.h"
 
-/* Smaller molecules are as fast without a compiled elimination. */
-enum { PROGRAM_SITES_MIN = 4 };
+/* Smaller molecules are as fast without a compiled elimination, and longer ones of
+ * equal units faster. */
+enum { PROGRAM_SITES_MIN = 4, REPEAT_ALONE = 20000 };
 
 static mho_status collect_entries(const mho_junction *junction, mho_plan *plan)
 {
@@ -200,8 +202,10 @@ static mho_status prepare(const mho_lead *left, const mho_lead *right, mho_plan 
   if (status == MHO_OK) status = collect_neighbours(plan);
   if (status == MHO_OK) status = find_connection(plan);
   if (status == MHO_OK) status = mho_plan_order(plan);
-  if (status == MHO_OK && plan->sites >= PROGRAM_SITES_MIN)
-    status = mho_program_create(plan, &plan->program);
+  if (status == MHO_OK) status = mho_repeat_create(plan, &plan->repeat);
+  bool compile = plan->sites >= PROGRAM_SITES_MIN &&
+                 !(plan->repeat && plan->sites > REPEAT_ALONE);
+  if (status == MHO_OK && compile) status = mho_program_create(plan, &plan->program);
   if (status == MHO_OK && plan->program)
     status = mho_plan_contacts(plan, plan->program->kept_site, plan->program->kept,
                                &plan->contacts);
@@ -297,6 +301,7 @@ void mho_plan_free(mho_plan *plan)
   free(plan->level_ev);
   free(plan->amplitude);
   free(plan->pair);
+  mho_repeat_free(plan->repeat);
   mho_program_free(plan->program);
   mho_plan_free(plan->contacts);
   mho_spare_free(plan);
@@ -322,7 +327,11 @@ const char *mho_plan_describe(const mho_plan *plan, char *buffer, size_t size)
     snprintf(band, sizeof band, "pivoting within a band of %zu, of %d sites", plan->band,
              plan->sites);
   else snprintf(band, sizeof band, "full pivoting, as the matrix is small or has no narrow band");
-  snprintf(buffer, size, "%s; %s; %s",
+  char repeat[80] = "";
+  if (plan->repeat)
+    snprintf(repeat, sizeof repeat, "doubling of %d equal units of %d sites; ",
+             plan->repeat->units, plan->repeat->unit);
+  snprintf(buffer, size, "%s%s; %s; %s", repeat,
            plan->level_ev ? "sum over levels, as the molecule is diagonalised"
                           : "no sum over levels, as only the non-zero entries are given",
            compiled, band);

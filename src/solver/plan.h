@@ -42,6 +42,7 @@ struct mho_plan {
   double *level_ev;               /* [sites]; NULL: not diagonalised */
   double *amplitude;              /* [sites][channels]: <orbital k|v_c> */
   mho_pole_pair *pair;            /* [sites], the same for one channel a contact */
+  struct mho_repeat *repeat;      /* NULL: not a run of equal units */
   struct mho_program *program;    /* NULL: does not pay */
   mho_plan *contacts;             /* of the program's kept sites */
   mho_method first;               /* methods before it are left out (tests) */
@@ -51,8 +52,9 @@ struct mho_plan {
 /* Unit roundoff of a double. */
 #define UNIT_ROUNDOFF (0.5 * DBL_EPSILON)
 
-/* Up to here the sum over levels is worth its bookkeeping. */
-enum { SPECTRUM_CHANNELS_MAX = 8 };
+/* Up to here the sum over levels is worth its bookkeeping.  Of larger molecules
+ * too few energies keep the contract that way, if there is a program instead. */
+enum { SPECTRUM_CHANNELS_MAX = 8, SPECTRUM_SITES_MAX = 36 };
 
 /* A value with what is known of its error.  `kappa` is a lower bound of the
  * condition of ln T: the part that comes from H and E. */
@@ -88,6 +90,7 @@ void mho_spare_free(mho_plan *plan);
  * workspace belongs to one thread; create returns NULL without memory.
  * differentiate follows an evaluate that found T, fills all derivatives and
  * returns an estimate of the error of the sum of all p dlnT/dp. */
+typedef struct mho_repeat mho_repeat;
 typedef struct mho_program mho_program;
 typedef struct mho_elimination_double mho_elimination_double;
 typedef struct mho_elimination_quad mho_elimination_quad;

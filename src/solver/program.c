@@ -9,7 +9,7 @@
 #include <stdlib.h>
 #include <string.h>
 
-/* Fewest neighbours are searched for up to that size, at O(sites^2). */
+/* In longer molecules the plan's narrow order is as good. */
 enum { GREEDY_SITES = 3000 };
 
 /* More updates a site than this, and pivoting within the band is as good. */
@@ -17,7 +17,8 @@ enum { UPDATES_A_SITE = 600 };
 
 typedef struct {
   int site, slot; /* slot < 0: still in H only */
-  double value;
+  int roundings;  /* of the number so far; -1: fill, whose first is exact */
+  double value;   /* of H */
 } link;
 
 typedef struct {
@@ -30,10 +31,11 @@ typedef struct {
   mho_program *program;
   row *row; /* [sites], without the diagonal */
   double *diagonal;
-  int *diagonal_slot;
+  int *diagonal_slot, *diagonal_roundings;
   bool *kept, *gone;
+  int *winner, leaves; /* [2 leaves]: tournament for the fewest neighbours */
   int *free_slot, free_slots, slot_capacity;
-  size_t step_room, load_room, slot_room, updates;
+  size_t step_room, load_room, slot_room, member_room, updates;
   bool failed; /* out of memory */
 } compiler;
 
@@ -69,7 +71,7 @@ static link *add_link(compiler *c, int from, int to, int slot, double value)
     r->link = moved;
     r->capacity = capacity;
   }
-  r->link[r->count] = (link){to, slot, value};
+  r->link[r->count] = (link){to, slot, slot < 0 ? 0 : -1, value};
   return &r->link[r->count++];
 }
 
@@ -112,10 +114,24 @@ static void emit_slot(compiler *c, int slot)
   else p->slot[p->slots_listed++] = slot;
 }
 
+static mho_program_member *emit_member(compiler *c, double value_ev)
+{
+  mho_program *p = c->program;
+  if (!grow((void **)&p->member, &c->member_room, p->members + 1, sizeof *p->member)) {
+    c->failed = true;
+    return NULL;
+  }
+  p->member[p->members] = (mho_program_member){value_ev, 0};
+  return &p->member[p->members++];
+}
+
+/* E - h is rounded once, unless h is zero. */
 static int diagonal_slot(compiler *c, int site)
 {
-  if (c->diagonal_slot[site] < 0)
+  if (c->diagonal_slot[site] < 0) {
     c->diagonal_slot[site] = emit_load(c, site, c->diagonal[site]);
+    c->diagonal_roundings[site] = c->diagonal[site] != 0;
+  }
   return c->diagonal_slot[site];
 }
 
@@ -131,29 +147,69 @@ static int pair_slot(compiler *c, int i, int j)
   return here->slot;
 }
 
-/* A step: loads, row slots, then targets of all pairs (a <= b) of the row. */
+/* Emits the target of a pair and counts one more rounding of it; returns how
+ * often it was rounded before. */
+static int update(compiler *c, int i, int j)
+{
+  c->updates++;
+  if (i == j) {
+    emit_slot(c, diagonal_slot(c, i));
+    return c->diagonal_roundings[i]++;
+  }
+  int target = pair_slot(c, i, j);
+  if (target >= 0) emit_slot(c, target);
+  else { /* fill */
+    target = take_slot(c);
+    if (!add_link(c, i, j, target, 0) || !add_link(c, j, i, target, 0)) return 0;
+    emit_slot(c, ~target);
+  }
+  find_link(&c->row[j], i)->roundings++;
+  int before = find_link(&c->row[i], j)->roundings++;
+  return before > 0 ? before : 0;
+}
+
+/* Slots of the row and of its sites' diagonals; returns the most roundings of a
+ * number that ends here. */
+static int emit_row(compiler *c, int site)
+{
+  const row *r = &c->row[site];
+  int most = 0;
+  for (int a = 0; a < r->count; a++) {
+    emit_slot(c, pair_slot(c, site, r->link[a].site));
+    if (r->link[a].roundings > most) most = r->link[a].roundings;
+  }
+  for (int a = 0; a < r->count; a++) emit_slot(c, diagonal_slot(c, r->link[a].site));
+  return most;
+}
+
+/* Targets of all pairs (a <= b) of the row.  A pair's earlier roundings are
+ * shared between its two members: half of the most of each. */
+static void emit_updates(compiler *c, const row *r, mho_program_member *member)
+{
+  for (int a = 0; a < r->count; a++) member[a].weight = 1.5;
+  for (int a = 0; a < r->count && !c->failed; a++)
+    for (int b = a; b < r->count && !c->failed; b++) {
+      double weight = 1.5 + 0.5 * update(c, r->link[a].site, r->link[b].site);
+      if (weight > member[a].weight) member[a].weight = weight;
+      if (weight > member[b].weight) member[b].weight = weight;
+    }
+}
+
+/* A step: loads, row slots, then targets. */
 static void eliminate(compiler *c, int site)
 {
   mho_program *p = c->program;
   row *r = &c->row[site];
-  size_t loads = p->loads;
-  int pivot = diagonal_slot(c, site), count = r->count;
-  for (int a = 0; a < count; a++) emit_slot(c, pair_slot(c, site, r->link[a].site));
-  for (int a = 0; a < count && !c->failed; a++)
-    for (int b = a; b < count && !c->failed; b++) {
-      int i = r->link[a].site, j = r->link[b].site;
-      int target = i == j ? diagonal_slot(c, i) : pair_slot(c, i, j);
-      if (target < 0) { /* fill */
-        target = take_slot(c);
-        add_link(c, i, j, target, 0);
-        add_link(c, j, i, target, 0);
-        emit_slot(c, ~target);
-      } else emit_slot(c, target);
-      c->updates++;
-    }
+  size_t loads = p->loads, member = p->members;
+  int pivot = diagonal_slot(c, site), count = r->count, most = emit_row(c, site);
+  emit_member(c, c->diagonal[site]);
+  for (int a = 0; a < count; a++) emit_member(c, r->link[a].value);
   if (!grow((void **)&p->step, &c->step_room, p->steps + 1, sizeof *p->step)) c->failed = true;
   if (c->failed) return;
-  p->taped += 2 + (size_t)count;
+  p->member[member].weight = most + 0.5 * c->diagonal_roundings[site];
+  emit_updates(c, r, p->member + member + 1);
+  if (c->failed) return;
+  p->taped += 1 + (size_t)count;
   p->step[p->steps++] = (mho_program_step){(int)(p->loads - loads), count, pivot};
   c->free_slot[c->free_slots++] = pivot;
   for (int a = 0; a < count; a++) {
@@ -163,13 +219,39 @@ static void eliminate(compiler *c, int site)
   c->gone[site] = true;
 }
 
+/* Of two sites, or -1 for none, that to eliminate first. */
+static int fewer(const compiler *c, int a, int b)
+{
+  if (a < 0 || b < 0) return a < 0 ? b : a;
+  return c->row[b].count < c->row[a].count ? b : a;
+}
+
+/* Replays the matches of a site whose neighbours changed, or that is gone. */
+static void replay(compiler *c, int site)
+{
+  if (!c->winner) return;
+  int at = c->leaves + site;
+  c->winner[at] = c->gone[site] || c->kept[site] ? -1 : site;
+  for (at /= 2; at > 0; at /= 2)
+    c->winner[at] = fewer(c, c->winner[2 * at], c->winner[2 * at + 1]);
+}
+
+static bool start_tournament(compiler *c)
+{
+  int n = c->plan->sites;
+  if (n > GREEDY_SITES) return true;
+  for (c->leaves = 1; c->leaves < n;) c->leaves *= 2;
+  c->winner = malloc(2 * (size_t)c->leaves * sizeof(int));
+  if (!c->winner) return false;
+  for (int i = 0; i < c->leaves; i++) c->winner[c->leaves + i] = i < n && !c->kept[i] ? i : -1;
+  for (int at = c->leaves - 1; at > 0; at--)
+    c->winner[at] = fewer(c, c->winner[2 * at], c->winner[2 * at + 1]);
+  return true;
+}
+
 static int next_site(const compiler *c, size_t turn)
 {
-  if (c->plan->sites > GREEDY_SITES) return c->plan->order[turn];
-  int best = -1;
-  for (int i = 0; i < c->plan->sites; i++)
-    if (!c->gone[i] && !c->kept[i] && (best < 0 || c->row[i].count < c->row[best].count)) best = i;
-  return best;
+  return c->winner ? c->winner[1] : c->plan->order[turn];
 }
 
 static void eliminate_all(compiler *c)
@@ -179,6 +261,9 @@ static void eliminate_all(compiler *c)
     if (c->updates > UPDATES_A_SITE * n) return;
     int site = next_site(c, turn);
     if (site >= 0 && !c->kept[site]) eliminate(c, site);
+    if (site < 0 || !c->winner || c->failed) continue;
+    for (int a = 0; a < c->row[site].count; a++) replay(c, c->row[site].link[a].site);
+    replay(c, site);
   }
   mho_program *p = c->program;
   size_t before = p->loads;
@@ -187,6 +272,9 @@ static void eliminate_all(compiler *c)
       int i = p->kept_site[a], j = p->kept_site[b];
       p->kept_slot[a][b] = p->kept_slot[b][a] =
           i == j ? diagonal_slot(c, i) : pair_slot(c, i, j);
+      const link *pair = find_link(&c->row[i], j);
+      p->kept_value_ev[a][b] = i == j ? c->diagonal[i] : pair ? pair->value : 0;
+      p->kept_roundings[a][b] = i == j ? c->diagonal_roundings[i] : pair && pair->roundings > 0 ? pair->roundings : 0;
     }
   p->tail_loads = (int)(p->loads - before);
 }
@@ -197,10 +285,11 @@ static bool start(compiler *c)
   size_t n = (size_t)plan->sites;
   c->row = calloc(n, sizeof *c->row);
   c->diagonal = calloc(n, sizeof(double));
-  c->diagonal_slot = malloc(n * sizeof(int));
+  c->diagonal_slot = calloc(2 * n, sizeof(int));
   c->kept = calloc(2 * n, sizeof(bool));
   if (!c->row || !c->diagonal || !c->diagonal_slot || !c->kept) return false;
   c->gone = c->kept + n;
+  c->diagonal_roundings = c->diagonal_slot + n;
   for (size_t i = 0; i < n; i++) c->diagonal_slot[i] = -1;
   for (size_t e = 0; e < plan->entries && !c->failed; e++) {
     int i = plan->entry[e].i, j = plan->entry[e].j;
@@ -238,6 +327,7 @@ static void finish(compiler *c)
   free(c->diagonal);
   free(c->diagonal_slot);
   free(c->kept);
+  free(c->winner);
   free(c->free_slot);
 }
 
@@ -247,7 +337,7 @@ mho_status mho_program_create(const mho_plan *plan, mho_program **program)
   *program = NULL;
   bool pays = false;
   if (!c.program || !start(&c)) c.failed = true;
-  else if (keep_contacts(&c)) {
+  else if (keep_contacts(&c) && !(c.failed = !start_tournament(&c))) {
     eliminate_all(&c);
     pays = c.updates <= UPDATES_A_SITE * (size_t)plan->sites;
   }
@@ -263,5 +353,6 @@ void mho_program_free(mho_program *program)
   free(program->step);
   free(program->load);
   free(program->slot);
+  free(program->member);
   free(program);
 }

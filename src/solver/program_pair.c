@@ -6,10 +6,12 @@
  *
  *   T = Gamma_L Gamma_R b^2 / |D|^2,
  *   dlnT/da = -2 Re(C/D),  dlnT/dc = -2 Re(A/D),  dlnT/db = 2/b + 4 b Re(1/D).
+ *
+ * G v_L has (r_L C - r_R b) / D at a site that answers r_L, r_R to the contacts.
  */
 #include <math.h>
 
-#include "solver/processor.h"
+#include "base/processor.h"
 #include "solver/program.h"
 
 enum { L = PROGRAM_LANES };
@@ -32,12 +34,15 @@ void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_tr
   const double *restrict a = trace->high + at_a, *restrict b = trace->high + at_b;
   const double *restrict c = trace->high + at_c, *restrict a_low = trace->low + at_a;
   const double *restrict b_low = trace->low + at_b, *restrict c_low = trace->low + at_c;
-  double *restrict a_hat = trace->adjoint + at_a, *restrict b_hat = trace->adjoint + at_b;
-  double *restrict c_hat = trace->adjoint + at_c;
+  double *restrict a_hat = trace->adjoint, *restrict b_hat = trace->adjoint + 2 * L;
+  double *restrict c_hat = trace->adjoint + 3 * L;
   double v0 = plan->vector[plan->support[0]];
   double v1 = plan->vector[plan->sites + plan->support[1]];
   double x0 = plan->shift_ev[0] * v0 * v0, y0 = 0.5 * plan->coupling_ev[0] * v0 * v0;
   double x1 = plan->shift_ev[1] * v1 * v1, y1 = 0.5 * plan->coupling_ev[1] * v1 * v1;
+  mho_program_pair *pair = &trace->pair;
+  pair->a_im = y0;
+  pair->c_im = y1;
 #pragma GCC ivdep
   for (int l = 0; l < L; l++) {
     double p = a[l] - x0, q = c[l] - x1, square = b[l] * b[l];
@@ -50,6 +55,10 @@ void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_tr
     double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
     double low = extended ? fabs(to_a * a_low[l]) + fabs(to_b * b_low[l]) + fabs(to_c * c_low[l])
                           : 0.0;
+    pair->a_re[l] = p;
+    pair->b[l] = b[l];
+    pair->c_re[l] = q;
+    pair->weight[l] = 2 * small / fabs(b[l]);
     a_hat[l] = to_a;
     b_hat[l] = to_b;
     c_hat[l] = to_c;

@@ -1,62 +1,64 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * A compiled elimination over a batch of energies, and back.  For every pivot d
- * and pair (a, b) of its row
+ * and pair (i, j) of its row a,
  *
- *   w = 1/d,   s' = s - a w b;
- *   rounding of s' <= u (3 |a w b| + |s'|),
+ *   w = 1/d,   s' = s - a_i w a_j,
  *
- * and ln T changes by adjoint(s') times that (first order; S. Linnainmaa, BIT
- * 16, 146 (1976)).  Going back, the answer r_i of site i to each kept site (the
- * kept sites' own: one and zero) follows by substitution, r_i = -w sum_j a_j r_j.
- * The Schur complement is the quadratic form of M on the answers, so
+ * rounds s' by at most u (3 |a_i w a_j| + |s'|), and ln T changes by adjoint(s')
+ * times that (first order; S. Linnainmaa, BIT 16, 146 (1976)).  Going back, the
+ * answer r_k of site k to each kept site (the kept sites' own: one and zero)
+ * follows by substitution, r_k = -w sum_i a_i r_i.  The Schur complement is the
+ * quadratic form of M on the answers, so at every stage of m
  *
  *   adjoint(m_ij) = r_i^T Q r_j,   adjoint(m_ii) = r_i^T Q r_i / 2
  *
- * at every stage of m, with Q_cd the adjoint of the Schur complement's (c, d),
- * twice that for c = d.  The way back restores the numbers by s = s' + a w b;
- * only the error bound looks at them.
+ * with Q_cd the adjoint of the Schur complement's (c, d), twice that for c = d,
+ * and for contacts of one site each adjoint(m_ij) = -2 Re (y_i z_j + z_i y_j) / g_LR,
+ * y and z columns of G.  So |adjoint(m_ij)| <= <n_i, n_j>, a form of moduli: with n
+ * = |r| that of |Q|, or with n = (|y|, |z|) (y_i z_j + z_i y_j) 2 / |g|, which
+ * cannot be far too large where answers are large and cancel, next to levels of
+ * the inner sites.  With R = sum_i |a_i| n_i
+ * the products of a step cost at most 3/2 u |w| <R, R>, so no pair need be
+ * visited.  Of the numbers themselves, rounded m times each,
  *
- * Double-double after T. J. Dekker, Numer. Math. 18, 224 (1971), its products
- * by fused multiply-add.
+ *   |s_1| + .. + |s_m| <= m |s_m| + sum_l (l - 1) |a w a|_l:
+ *
+ * a product counts once more for every rounding before it, which its two members
+ * share (so 3/2 R becomes a sum with weights), and a last value m times, which is
+ * <R, n> of the step that eliminates it.
  */
 #include "solver/program.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 
 #include <math.h>
+#include <stddef.h>
 #include <stdlib.h>
 #include <sys/mman.h>
 
-enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21 };
+enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = 3 };
 
-/* Pivots below this (times the norm) leave too few digits for first order. */
-#define PIVOT_DOUBLE 1e-6
-#define PIVOT_EXTENDED 1e-12
+/* All functions with vectors as values are inlined. */
+#pragma GCC diagnostic ignored "-Wpsabi"
 
-/* Lanes in a register, loaded and stored by their address. */
-enum { V = 8 };
-typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-typedef long long bits __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-#define AT(array, l) (*(vector *)((array) + (l)))
-#define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
+typedef mho_vector vector;
+typedef mho_lanes lanes;
+#define AT VECTOR_AT
 
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
   size_t slots = ((size_t)program->slots + 1) * L;
   size_t responses = 2 * slots * (size_t)program->kept;
-  size_t bytes = (3 * slots + responses + program->taped * L) * sizeof(double);
+  size_t bytes = (2 * slots + responses + program->taped * L) * sizeof(double);
   size_t page = bytes > LARGE_PAGE ? LARGE_PAGE : 64;
-  *trace = (mho_program_trace){0};
   trace->high = aligned_alloc(page, (bytes + page - 1) / page * page);
   if (!trace->high) return MHO_ERR_MEMORY;
 #ifdef MADV_HUGEPAGE
   if (page == LARGE_PAGE) (void)madvise(trace->high, bytes, MADV_HUGEPAGE); /* only a hint */
 #endif
   trace->low = trace->high + slots;
-  trace->adjoint = trace->low + slots;
-  trace->response = trace->adjoint + slots;
+  trace->response = trace->low + slots;
   trace->tape = trace->response + responses;
-  for (size_t k = 0; k < slots; k++) trace->adjoint[k] = 0; /* of lanes that found no T */
   return MHO_OK;
 }
 
@@ -66,247 +68,265 @@ void mho_program_trace_clear(mho_program_trace *trace)
   *trace = (mho_program_trace){0};
 }
 
-INLINED void keep(double *restrict tape, const double *restrict value)
+INLINED void load_double(const mho_program_load *load, const double *energy_ev, double *high)
 {
-  for (int l = 0; l < L; l++) tape[l] = value[l];
+  double *s = high + (ptrdiff_t)load->slot * L;
+  double weight = load->site >= 0 ? 1.0 : 0.0;
+  EACH_VECTOR(v) AT(s, v) = weight * AT(energy_ev, v) - load->value;
 }
 
-INLINED void load_double(const mho_program_load *load, double *energy_ev, double *high)
+/* One pivot; `row` is a constant where this is inlined for a short row. */
+INLINED void eliminate(int row, int pivot, const int *slot, double *high, double *tape,
+                       lanes *squares)
 {
-  double *s = high + (size_t)load->slot * L;
-  double weight = load->site >= 0 ? 1.0 : 0.0;
-  for (int l = 0; l < L; l += V) AT(s, l) = weight * AT(energy_ev, l) - load->value;
+  const int *target = slot + 2 * row;
+  lanes w, a[UNROLLED];
+  EACH_VECTOR(v)
+  {
+    AT(tape, v) = w.of[v] = 1.0 / AT(high + (ptrdiff_t)pivot * L, v);
+    squares->of[v] += w.of[v] * w.of[v];
+  }
+  for (int i = 0; i < row; i++)
+    EACH_VECTOR(v)
+    {
+      vector entry = AT(high + (ptrdiff_t)slot[i] * L, v);
+      AT(tape + (1 + i) * L, v) = entry;
+      if (row <= UNROLLED) a[i].of[v] = entry;
+    }
+  for (int i = 0; i < row; i++) {
+    lanes aw;
+    EACH_VECTOR(v)
+      aw.of[v] = w.of[v] * (row <= UNROLLED ? a[i].of[v] : AT(tape + (1 + i) * L, v));
+    for (int j = i; j < row; j++, target++) {
+      bool fresh = *target < 0;
+      double *s = high + (ptrdiff_t)(fresh ? ~*target : *target) * L;
+      EACH_VECTOR(v)
+      {
+        vector entry = row <= UNROLLED ? a[j].of[v] : AT(tape + (1 + j) * L, v);
+        vector before = fresh ? (vector){0} : AT(s, v);
+        AT(s, v) = before - aw.of[v] * entry;
+      }
+    }
+  }
 }
 
 FOR_EVERY_PROCESSOR
-void mho_program_forward_double(const mho_program *program, const double *at_ev,
+void mho_program_forward_double(const mho_program *program, const double *energy_ev,
                                 double norm_ev, mho_program_trace *trace)
 {
   const mho_program_load *load = program->load;
   const int *slot = program->slot;
-  double *high = trace->high, *tape = trace->tape, largest[L] = {0}, energy_ev[L];
-  keep(energy_ev, at_ev);
+  double *high = trace->high, *tape = trace->tape;
+  lanes squares = {{{0}}}; /* of all 1/d */
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
+    int row = step->row;
     for (int i = 0; i < step->loads; i++) load_double(load++, energy_ev, high);
-    for (int l = 0; l < L; l += V) {
-      double *lane = high + l, *taped = tape + l;
-      const int *target = slot + step->row;
-      vector d = AT(lane, (size_t)step->pivot * L), w = 1.0 / d;
-      vector before = AT(largest, l), size = ABSOLUTE(w);
-      bits larger = size > before;
-      AT(largest, l) = (vector)(((bits)size & larger) | ((bits)before & ~larger));
-      AT(taped, 0) = w;
-      AT(taped, L) = d;
-      for (int i = 0; i < step->row; i++) {
-        vector a = AT(lane, (size_t)slot[i] * L), aw = a * w;
-        AT(taped, (2 + i) * L) = a;
-        for (int j = i; j < step->row; j++, target++) {
-          vector product = aw * AT(lane, (size_t)slot[j] * L);
-          if (*target < 0) AT(lane, (size_t)~*target * L) = -product;
-          else AT(lane, (size_t)*target * L) -= product;
-        }
-      }
+    switch (row) {
+    case 1: eliminate(1, step->pivot, slot, high, tape, &squares); break;
+    case 2: eliminate(2, step->pivot, slot, high, tape, &squares); break;
+    case 3: eliminate(3, step->pivot, slot, high, tape, &squares); break;
+    default: eliminate(row, step->pivot, slot, high, tape, &squares);
     }
-    tape += (2 + step->row) * L;
-    slot += step->row + step->row * (step->row + 1) / 2;
+    tape += (1 + row) * L;
+    slot += 2 * row + row * (row + 1) / 2;
   }
   for (int i = 0; i < program->tail_loads; i++) load_double(load++, energy_ev, high);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(largest[l] * PIVOT_DOUBLE * norm_ev < 1.0);
+  double most = 1 / (PIVOT_DOUBLE * norm_ev);
+  for (int l = 0; l < L; l++) trace->broken[l] = !(squares.of[l / PROGRAM_VECTOR][l % PROGRAM_VECTOR] < most * most);
 }
 
-INLINED void load_extended(const mho_program_load *load, const double *energy_ev,
-                           mho_program_trace *trace)
-{
-  double *restrict high = trace->high + (size_t)load->slot * L;
-  double *restrict low = trace->low + (size_t)load->slot * L;
-  double value = load->value, weight = load->site >= 0 ? 1.0 : 0.0;
-  for (int l = 0; l < L; l++) { /* E - value exactly: D. E. Knuth's two-sum */
-    double first = weight * energy_ev[l], sum = first - value, part = sum - first;
-    high[l] = sum;
-    low[l] = (first - (sum - part)) - (value + part);
-  }
-}
-
-/* (high, low) of the product of two double-doubles. */
-#define MULTIPLY(ph, pl, ah, al, bh, bl)                                       \
-  double ph = (ah) * (bh);                                                     \
-  double pl = __builtin_fma((ah), (bh), -ph) + ((ah) * (bl) + (al) * (bh))
-
-INLINED void update_extended(const mho_program_trace *trace, size_t b,
-                             const double *restrict th, const double *restrict tl,
-                             size_t s, double keep_old)
-{
-  const double *restrict bh = trace->high + b, *restrict bl = trace->low + b;
-  double *restrict sh = trace->high + s, *restrict sl = trace->low + s;
-  for (int l = 0; l < L; l++) {
-    MULTIPLY(ph, pl, th[l], tl[l], bh[l], bl[l]);
-    double before = keep_old != 0 ? sh[l] : 0.0, before_low = keep_old != 0 ? sl[l] : 0.0;
-    double sum = before - ph, part = sum - before;
-    double rest = (before - (sum - part)) - (ph + part);
-    rest += before_low - pl;
-    double high = sum + rest;
-    sl[l] = rest - (high - sum);
-    sh[l] = high;
-  }
-}
-
-FOR_EVERY_PROCESSOR
-void mho_program_forward_extended(const mho_program *program, const double *energy_ev,
-                                  double norm_ev, mho_program_trace *trace)
-{
-  const mho_program_load *load = program->load;
-  const int *slot = program->slot;
-  double *high = trace->high, *low = trace->low, *tape = trace->tape, smallest[L];
-  for (int l = 0; l < L; l++) smallest[l] = INFINITY;
-  for (size_t k = 0; k < program->steps; k++) {
-    const mho_program_step *step = &program->step[k];
-    for (int i = 0; i < step->loads; i++) load_extended(load++, energy_ev, trace);
-    const double *dh = high + (size_t)step->pivot * L, *dl = low + (size_t)step->pivot * L;
-    double *restrict w = tape, w_low[L];
-    for (int l = 0; l < L; l++) { /* a Newton step from 1/d; 1 - d w is nearly exact */
-      double size = fabs(dh[l]), first = 1.0 / dh[l];
-      double rest = first * (__builtin_fma(-dh[l], first, 1.0) - dl[l] * first);
-      smallest[l] = smallest[l] < size ? smallest[l] : size;
-      w[l] = first + rest;
-      w_low[l] = rest - (w[l] - first);
-    }
-    keep(tape + L, dh);
-    tape += 2 * L;
-    const int *target = slot + step->row;
-    for (int i = 0; i < step->row; i++, tape += L) keep(tape, high + (size_t)slot[i] * L);
-    for (int i = 0; i < step->row; i++) {
-      const double *restrict ah = high + (size_t)slot[i] * L, *restrict al = low + (size_t)slot[i] * L;
-      double th[L], tl[L];
-      for (int l = 0; l < L; l++) {
-        MULTIPLY(ph, pl, ah[l], al[l], w[l], w_low[l]);
-        th[l] = ph;
-        tl[l] = pl;
-      }
-      for (int j = i; j < step->row; j++, target++) {
-        bool fresh = *target < 0;
-        update_extended(trace, (size_t)slot[j] * L, th, tl,
-                        (size_t)(fresh ? ~*target : *target) * L, fresh ? 0.0 : 1.0);
-      }
-    }
-    slot = target;
-  }
-  for (int i = 0; i < program->tail_loads; i++) load_extended(load++, energy_ev, trace);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(smallest[l] > PIVOT_EXTENDED * norm_ev);
-}
-
-/* A number's birth: its share of kappa. */
-INLINED void unload(const mho_program_load *load, double *energy_ev, double *adjoint,
-                    double *total, double *kappa, double *error)
-{
-  double value = fabs(load->value);
-  for (int l = 0; l < L; l += V) {
-    vector hat = AT(adjoint, l), size = ABSOLUTE(hat);
-    AT(kappa, l) += size * value;
-    if (load->site < 0) continue;
-    AT(total, l) += hat;
-    AT(error, l) += size * (ABSOLUTE(AT(energy_ev, l)) + value);
-  }
-}
-
-/* Back over one step: the answer of its site from those of its row, then all pairs,
- * whose numbers go back to what they were.  target: of the pairs, row: slots of
- * the row. */
-INLINED void return_step(int kept, const mho_program_step *step, const int *row,
-                         const int *target, double *tape, double *form,
-                         mho_program_trace *trace, double *error)
-{
-  size_t each = 2 * (size_t)kept * L;
-  double *high = trace->high, *hat = trace->adjoint, *response = trace->response;
-  for (int l = 0; l < L; l += V) {
-    double *value = tape + 2 * L + l, *own = response + (size_t)step->pivot * each + l;
-    vector w = AT(tape, l), r[PROGRAM_KEPT_MAX] = {{0}}, u[PROGRAM_KEPT_MAX], sum = {0};
-    for (int i = 0, p = 0; i < step->row; p += step->row - i++) {
-      vector a = AT(value, i * L);
-      for (int c = 0; c < kept; c++)
-        r[c] -= a * AT(response + (size_t)target[p] * each + l, c * L);
-    }
-    for (int c = 0; c < kept; c++) AT(own, c * L) = r[c] = r[c] * w;
-    for (int c = 0; c < kept; c++) {
-      u[c] = AT(form + l, c * kept * L) * r[0];
-      for (int b = 1; b < kept; b++) u[c] += AT(form + l, (c * kept + b) * L) * r[b];
-      AT(own, (kept + c) * L) = u[c];
-      sum += u[c] * r[c];
-    }
-    AT(high + (size_t)step->pivot * L, l) = AT(tape, L + l);
-    AT(hat + (size_t)step->pivot * L, l) = 0.5 * sum;
-    vector errors = AT(error, l);
-    for (int i = 0, p = 0; i < step->row; i++) {
-      vector a = AT(value, i * L), aw = a * w;
-      double *from = response + (size_t)target[p] * each + l;
-      AT(high + (size_t)row[i] * L, l) = a;
-      if (step->loads) {
-        sum = u[0] * AT(from, 0);
-        for (int c = 1; c < kept; c++) sum += u[c] * AT(from, c * L);
-        AT(hat + (size_t)row[i] * L, l) = sum;
-      }
-      for (int j = i, diagonal = p; j < step->row; diagonal += step->row - j++, p++) {
-        size_t s = (size_t)(target[p] < 0 ? ~target[p] : target[p]) * L;
-        double *to = response + (size_t)target[diagonal] * each + l;
-        sum = AT(from, kept * L) * AT(to, 0);
-        for (int c = 1; c < kept; c++) sum += AT(from, (kept + c) * L) * AT(to, c * L);
-        if (i == j) sum *= 0.5;
-        vector product = aw * AT(value, j * L), after = AT(high + s, l);
-        AT(hat + s, l) = sum;
-        errors += ABSOLUTE(sum) * (3.0 * ABSOLUTE(product) + ABSOLUTE(after));
-        AT(high + s, l) = after + product;
-      }
-    }
-    AT(error, l) = errors;
-  }
-}
-
-/* kept is a constant where this is inlined for the usual case. */
-INLINED void backward(int kept, const mho_program *program, const double *at_ev,
-                      double roundoff, mho_program_trace *trace)
-{
-  const mho_program_load *load = program->load + program->loads;
-  const int *slot = program->slot + program->slots_listed;
-  double *tape = trace->tape + program->taped * L, energy_ev[L];
-  keep(energy_ev, at_ev);
-  double *hat = trace->adjoint, total[L] = {0}, kappa[L] = {0}, error[L] = {0};
+/* What the way back gathers of every lane. */
+typedef struct {
   double form[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L]; /* Q */
-  for (int a = 0; a < kept; a++)
+  double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L]; /* |Q| */
+  double total[L]; /* dlnT/dE: sum of the adjoints of the diagonal */
+  double kappa[L], error[L];
+} gathered;
+
+/* |x + i y| up to an eighth more. */
+INLINED vector modulus(vector x, vector y)
+{
+  vector a = ABSOLUTE(x), b = ABSOLUTE(y);
+  mho_vector_bits larger = a > b;
+  vector most = (vector)(((mho_vector_bits)a & larger) | ((mho_vector_bits)b & ~larger));
+  vector least = (vector)(((mho_vector_bits)b & larger) | ((mho_vector_bits)a & ~larger));
+  return most + 0.5 * least;
+}
+
+/* n of a site from its answer r. */
+INLINED void measure(int kept, bool pair, const mho_program_trace *trace, int v,
+                     const lanes *r, lanes *n)
+{
+  const mho_program_pair *p = &trace->pair;
+  for (int c = 0; c < kept && !pair; c++) n[c].of[v] = ABSOLUTE(r[c].of[v]);
+  if (!pair) return;
+  vector left = r[0].of[v], right = r[1].of[v], b = AT(p->b, v);
+  n[0].of[v] = modulus(left * AT(p->c_re, v) - right * b, left * p->c_im);
+  n[1].of[v] = modulus(right * AT(p->a_re, v) - left * b, right * p->a_im);
+}
+
+/* <x, y> but for the weight of a pair. */
+INLINED vector form(int kept, bool pair, const gathered *all, int v, const lanes *x,
+                    const lanes *y)
+{
+  if (pair) return x[0].of[v] * y[1].of[v] + x[1].of[v] * y[0].of[v];
+  vector sum = {0};
+  for (int c = 0; c < kept; c++)
+    for (int d = 0; d < kept; d++)
+      sum += AT(all->size + (c * kept + d) * L, v) * x[c].of[v] * y[d].of[v];
+  return sum;
+}
+
+/* The step's share of kappa, from r of its site. */
+INLINED void weigh_step(int row, int kept, const int *diagonal, const mho_program_member *member,
+                        const double *response, const lanes *r, gathered *all)
+{
+  lanes u[PROGRAM_KEPT_MAX];
+  EACH_VECTOR(v)
+  {
+    vector hat = {0};
+    for (int c = 0; c < kept; c++) {
+      u[c].of[v] = AT(all->form + c * kept * L, v) * r[0].of[v];
+      for (int d = 1; d < kept; d++)
+        u[c].of[v] += AT(all->form + (c * kept + d) * L, v) * r[d].of[v];
+      hat += u[c].of[v] * r[c].of[v];
+    }
+    AT(all->total, v) += 0.5 * hat;
+    AT(all->kappa, v) += ABSOLUTE(hat) * (0.5 * fabs(member[0].value_ev));
+  }
+  for (int i = 0; i < row; i++) {
+    double value_ev = fabs(member[1 + i].value_ev);
+    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
+    if (value_ev == 0) continue;
+    EACH_VECTOR(v)
+    {
+      vector hat = u[0].of[v] * AT(other, v);
+      for (int c = 1; c < kept; c++) hat += u[c].of[v] * AT(other + c * L, v);
+      AT(all->kappa, v) += ABSOLUTE(hat) * value_ev;
+    }
+  }
+}
+
+/* Back over one step: the answer of its site from those of its row.  `row`, `kept`
+ * and `pair` are constants where this is inlined for the usual cases. */
+INLINED void return_step(int row, int kept, bool pair, bool with_kappa,
+                         const mho_program_step *step, const int *diagonal,
+                         const mho_program_member *member, const double *tape,
+                         mho_program_trace *trace, gathered *all)
+{
+  double *response = trace->response, *own = response + (ptrdiff_t)step->pivot * 2 * kept * L;
+  lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
+  lanes size[PROGRAM_KEPT_MAX], weighted[PROGRAM_KEPT_MAX]; /* R */
+  for (int c = 0; c < kept; c++) r[c] = size[c] = weighted[c] = (lanes){{{0}}};
+  for (int i = 0; i < row; i++) {
+    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
+    double weight = member[1 + i].weight;
+    EACH_VECTOR(v)
+    {
+      vector a = AT(tape + (1 + i) * L, v), light = ABSOLUTE(a), heavy = light * weight;
+      for (int c = 0; c < kept; c++) {
+        vector moduli = AT(other + (kept + c) * L, v);
+        r[c].of[v] -= a * AT(other + c * L, v);
+        size[c].of[v] += light * moduli;
+        weighted[c].of[v] += heavy * moduli;
+      }
+    }
+  }
+  EACH_VECTOR(v)
+  {
+    vector w = AT(tape, v);
+    for (int c = 0; c < kept; c++) AT(own + c * L, v) = r[c].of[v] *= w;
+    measure(kept, pair, trace, v, r, n);
+    for (int c = 0; c < kept; c++) AT(own + (kept + c) * L, v) = n[c].of[v];
+    AT(all->error, v) += ABSOLUTE(w) * form(kept, pair, all, v, weighted, size) +
+                         member[0].weight * form(kept, pair, all, v, n, size);
+  }
+  if (with_kappa) weigh_step(row, kept, diagonal, member, response, r, all);
+}
+
+/* Q and the kept sites' answers to themselves alone. */
+INLINED void start_back(int kept, bool pair, const mho_program *program,
+                        const mho_program_trace *trace, gathered *all)
+{
+  *all = (gathered){.total = {0}};
+  for (int a = 0; a < kept; a++) {
+    double *own = trace->response + (size_t)program->kept_slot[a][a] * 2 * (size_t)kept * L;
+    lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
+    EACH_VECTOR(v)
+    {
+      for (int b = 0; b < kept; b++)
+        AT(own + b * L, v) = r[b].of[v] = (vector){0} + (a == b ? 1.0 : 0.0);
+      measure(kept, pair, trace, v, r, n);
+      for (int b = 0; b < kept; b++) AT(own + (kept + b) * L, v) = n[b].of[v];
+    }
     for (int b = 0; b < kept; b++) {
       int at = program->kept_slot[a][b];
-      for (int l = 0; l < L; l++)
-        form[(a * kept + b) * L + l] =
-            at < 0 ? 0 : (a == b ? 2 : 1) * hat[(size_t)at * L + (size_t)l];
-    }
-  for (int i = 0; i < program->tail_loads; i++, load--)
-    unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, total, kappa, error);
-  for (int a = 0; a < kept; a++) { /* a kept site answers to itself alone */
-    double *r = trace->response + (size_t)program->kept_slot[a][a] * 2 * (size_t)kept * L;
-    for (int b = 0; b < kept; b++)
+      const double *hat = trace->adjoint + (a < b ? b * kept + a : a * kept + b) * L;
       for (int l = 0; l < L; l++) {
-        r[b * L + l] = a == b;
-        r[(kept + b) * L + l] = form[(a * kept + b) * L + l];
+        double q = at < 0 ? 0 : (a == b ? 2 : 1) * hat[l];
+        all->form[(a * kept + b) * L + l] = q;
+        all->size[(a * kept + b) * L + l] = fabs(q);
       }
-  }
-  for (size_t k = program->steps; k-- > 0;) {
-    const mho_program_step *step = &program->step[k];
-    const int *target = slot - step->row * (step->row + 1) / 2, *row = target - step->row;
-    tape -= (size_t)(step->row + 2) * L;
-    return_step(kept, step, row, target, tape, form, trace, error);
-    for (int i = 0; i < step->loads; i++, load--)
-      unload(load - 1, energy_ev, hat + (size_t)load[-1].slot * L, total, kappa, error);
-    slot = row;
-  }
-  for (int l = 0; l < L; l++) {
-    trace->kappa[l] = kappa[l] + fabs(total[l] * energy_ev[l]);
-    trace->error[l] = roundoff * error[l];
+    }
   }
 }
 
-FOR_EVERY_PROCESSOR
-void mho_program_backward(const mho_program *program, const double *energy_ev,
-                          double roundoff, mho_program_trace *trace)
+/* What falls on the Schur complement itself, and the sums that make kappa. */
+INLINED void finish_back(int kept, bool pair, const mho_program *program,
+                         const double *energy_ev, double roundoff, mho_program_trace *trace,
+                         gathered *all)
 {
-  if (program->kept == 2) backward(2, program, energy_ev, roundoff, trace);
-  else backward(program->kept, program, energy_ev, roundoff, trace);
+  for (int l = 0; l < L; l++) {
+    double error = all->error[l] * (pair ? trace->pair.weight[l] : 1);
+    for (int a = 0; a < kept; a++)
+      for (int b = 0; b <= a; b++) {
+        int at = program->kept_slot[a][b];
+        if (at < 0) continue;
+        double hat = trace->adjoint[(a * kept + b) * L + l];
+        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * program->kept_roundings[a][b];
+        all->kappa[l] += fabs(hat * program->kept_value_ev[a][b]);
+        if (a == b) all->total[l] += hat;
+      }
+    trace->error[l] = roundoff * error;
+    trace->kappa[l] = all->kappa[l] + fabs(all->total[l] * energy_ev[l]);
+  }
+}
+
+INLINED void backward(int kept, bool pair, bool with_kappa, const mho_program *program,
+                      const double *energy_ev, double roundoff, mho_program_trace *trace)
+{
+  const int *slot = program->slot + program->slots_listed;
+  const mho_program_member *member = program->member + program->members;
+  const double *tape = trace->tape + program->taped * L;
+  gathered all;
+  start_back(kept, pair, program, trace, &all);
+  for (size_t k = program->steps; k-- > 0;) {
+    const mho_program_step *step = &program->step[k];
+    int row = step->row;
+    slot -= 2 * row + row * (row + 1) / 2;
+    tape -= (1 + row) * L;
+    member -= 1 + row;
+    const int *diagonal = slot + row;
+#define RETURN_STEP(row)                                                       \
+  return_step(row, kept, pair, with_kappa, step, diagonal, member, tape, trace, &all)
+    switch (row) {
+    case 1: RETURN_STEP(1); break;
+    case 2: RETURN_STEP(2); break;
+    case 3: RETURN_STEP(3); break;
+    default: RETURN_STEP(row);
+    }
+#undef RETURN_STEP
+  }
+  finish_back(kept, pair, program, energy_ev, roundoff, trace, &all);
+}
+
+FOR_EVERY_PROCESSOR
+void mho_program_backward(const mho_program *program, const double *energy_ev, bool pair,
+                          double roundoff, bool with_kappa, mho_program_trace *trace)
+{
+  int kept = program->kept;
+  if (pair && with_kappa) backward(2, true, true, program, energy_ev, roundoff, trace);
+  else if (pair) backward(2, true, false, program, energy_ev, roundoff, trace);
+  else backward(kept, false, with_kappa, program, energy_ev, roundoff, trace);
 }

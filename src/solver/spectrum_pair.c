@@ -15,7 +15,7 @@
 
 #include "solver/logarithm.h"
 #include "solver/plan.h"
-#include "solver/processor.h"
+#include "base/processor.h"
 #include "solver/spectrum.h"
 
 enum { L = SPECTRUM_LANES, V = 8 };

@@ -9,6 +9,7 @@
 #include "solver/logarithm.h"
 #include "solver/plan.h"
 #include "solver/program.h"
+#include "solver/repeat.h"
 #include "solver/spectrum.h"
 
 /* The accuracy contract: max(FLOOR, 64 u kappa), and beyond CEILING the point
@@ -17,19 +18,28 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
-/* Room for what a first-order bound leaves out. */
-#define SECOND_ORDER 1.5
+/* Room for what a first-order bound leaves out: with pivots above PIVOT_DOUBLE and
+ * a bound below CONTRACT_CEILING that is far less. */
+#define SECOND_ORDER 1.05
+
+/* From here on it is quicker to gather kappa at once. */
+enum { KAPPA_STEPS = 60 };
 
 enum { KEPT_SQUARE = PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX };
 
-/* What one thread needs besides the plan; all but the batch only on demand. */
+/* Energies that wait until all lanes of a method are taken. */
 typedef struct {
-  mho_elimination_double *plain, *reduced;
-  mho_elimination_quad *extended, *reduced_extended;
-  mho_program_trace trace;
   double energy_ev[PROGRAM_LANES];
   size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
   size_t lanes;
+} queue;
+
+/* What one thread needs besides the plan; all but the queues only on demand. */
+typedef struct {
+  mho_elimination_double *plain, *reduced;
+  mho_elimination_quad *extended, *reduced_extended, *repeated;
+  mho_program_trace trace;
+  queue queue[2]; /* for the program in double, and in double-double */
 } workspace;
 
 struct mho_spare {
@@ -43,6 +53,7 @@ static void workspace_free(workspace *work)
   mho_elimination_free_double(work->reduced);
   mho_elimination_free_quad(work->extended);
   mho_elimination_free_quad(work->reduced_extended);
+  mho_elimination_free_quad(work->repeated);
   mho_program_trace_clear(&work->trace);
   free(work);
 }
@@ -137,24 +148,21 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
     if (!work->reduced_extended) return MHO_ERR_MEMORY;
     mho_elimination_reduced_quad(plan->contacts, work->reduced_extended, exact, adjoint, estimate);
   }
-  for (size_t k = 0; k < n * n; k++) {
-    int slot = program->kept_slot[k / n][k % n];
-    if (slot >= 0 && k % n <= k / n)
-      work->trace.adjoint[(size_t)slot * PROGRAM_LANES + lane] = adjoint[k];
-  }
+  for (size_t k = 0; k < n * n; k++)
+    work->trace.adjoint[k * PROGRAM_LANES + lane] = adjoint[k];
   return MHO_OK;
 }
 
 /* T of all lanes and the adjoints of the Schur complements. */
-static mho_status finish_lanes(const mho_plan *plan, workspace *work, bool extended,
-                               mho_estimate *estimate)
+static mho_status finish_lanes(const mho_plan *plan, workspace *work, size_t lanes,
+                               bool extended, mho_estimate *estimate)
 {
   double transmission[PROGRAM_LANES], error[PROGRAM_LANES];
   bool pair = mho_program_is_pair(plan);
   if (pair) mho_program_finish_pair(plan, extended, &work->trace, transmission, error);
   for (size_t l = 0; l < PROGRAM_LANES; l++) {
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (l >= work->lanes || work->trace.broken[l]) continue;
+    if (l >= lanes || work->trace.broken[l]) continue;
     if (pair && transmission[l] > 1e-200 && (!extended || error[l] <= CONTRACT_FLOOR))
       estimate[l] = (mho_estimate){.transmission = transmission[l],
                                    .log10_transmission = log10_of_normal(transmission[l]),
@@ -168,44 +176,41 @@ static mho_status finish_lanes(const mho_plan *plan, workspace *work, bool exten
   return MHO_OK;
 }
 
-/* Runs the lanes that wait and settles those that keep the contract; the
- * others stay, moved together. */
-static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
-                              mho_point *point)
+/* Adds the errors of the elimination, and kappa where they exceed the floor of
+ * the contract, as they will where many roundings add up. */
+static void weigh_lanes(const mho_plan *plan, workspace *work, const queue *wait, bool extended,
+                        mho_estimate *estimate)
 {
   mho_program_trace *trace = &work->trace;
-  if (!work->lanes) return MHO_OK;
-  for (size_t l = work->lanes; l < PROGRAM_LANES; l++) work->energy_ev[l] = work->energy_ev[0];
-  if (!trace->high && mho_program_trace_create(plan->program, trace) != MHO_OK)
-    return MHO_ERR_MEMORY;
-  (extended ? mho_program_forward_extended : mho_program_forward_double)(
-      plan->program, work->energy_ev, plan->norm_ev, trace);
-  mho_estimate estimate[PROGRAM_LANES];
-  mho_status status = finish_lanes(plan, work, extended, estimate);
-  if (status != MHO_OK) return status;
-  mho_program_backward(plan->program, work->energy_ev,
-                       extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE, trace);
-  size_t left = 0;
-  for (size_t l = 0; l < work->lanes; l++) {
-    estimate[l].kappa = trace->kappa[l];
+  double roundoff = extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE;
+  bool pair = mho_program_is_pair(plan), wanted = false;
+  bool with_kappa = !extended && plan->program->steps > KAPPA_STEPS;
+  mho_program_backward(plan->program, wait->energy_ev, pair, roundoff, with_kappa, trace);
+  for (size_t l = 0; l < wait->lanes; l++) {
     estimate[l].relative_error += SECOND_ORDER * trace->error[l];
-    if (keeps_contract(&estimate[l])) {
-      set_point(plan, &estimate[l], extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
-                &point[work->at[l]]);
-    } else {
-      work->energy_ev[left] = work->energy_ev[l];
-      work->at[left++] = work->at[l];
-    }
+    double error = estimate[l].relative_error;
+    wanted |= error > CONTRACT_FLOOR && error <= CONTRACT_CEILING;
   }
-  work->lanes = left;
-  return MHO_OK;
+  if (wanted && !with_kappa)
+    mho_program_backward(plan->program, wait->energy_ev, pair, roundoff, true, trace);
+  for (size_t l = 0; l < wait->lanes; l++) estimate[l].kappa = trace->kappa[l];
 }
 
-/* One energy by pivoted elimination, in double and then in 113 bits. */
+/* One energy by doubling of units if there are any, then by pivoted elimination in
+ * double and in 113 bits. */
 static mho_status eliminate(const mho_plan *plan, workspace *work, double energy_ev,
                             mho_point *point)
 {
   mho_estimate estimate;
+  if (plan->repeat && plan->first <= MHO_METHOD_REPEAT) {
+    if (!work->repeated) work->repeated = mho_elimination_create_quad(plan->repeat->plan);
+    if (!work->repeated) return MHO_ERR_MEMORY;
+    mho_repeat_evaluate(plan->repeat, work->repeated, energy_ev, &estimate);
+    if (keeps_contract(&estimate)) {
+      set_point(plan, &estimate, MHO_METHOD_REPEAT, point);
+      return MHO_OK;
+    }
+  }
   if (plan->first <= MHO_METHOD_ELIMINATION) {
     if (!work->plain) work->plain = mho_elimination_create_double(plan);
     if (!work->plain) return MHO_ERR_MEMORY;
@@ -222,32 +227,65 @@ static mho_status eliminate(const mho_plan *plan, workspace *work, double energy
   return MHO_OK;
 }
 
-/* The lanes that wait, through all methods after the sum over levels. */
-static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point)
+static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
+                              mho_point *point);
+
+/* An energy that the methods before could not settle. */
+static mho_status pass_on(const mho_plan *plan, workspace *work, bool extended,
+                          double energy_ev, size_t index, mho_point *point)
 {
-  mho_status status = MHO_OK;
-  if (plan->program && plan->first <= MHO_METHOD_SPARSE)
-    status = run_program(plan, work, false, point);
-  if (status == MHO_OK && plan->program && plan->first <= MHO_METHOD_SPARSE_EXTENDED)
-    status = run_program(plan, work, true, point);
-  for (size_t l = 0; status == MHO_OK && l < work->lanes; l++)
-    status = eliminate(plan, work, work->energy_ev[l], &point[work->at[l]]);
-  work->lanes = 0;
+  mho_method method = extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE;
+  if (!plan->program || plan->first > MHO_METHOD_SPARSE_EXTENDED)
+    return eliminate(plan, work, energy_ev, &point[index]);
+  if (plan->first > method) return pass_on(plan, work, true, energy_ev, index, point);
+  queue *wait = &work->queue[extended];
+  wait->energy_ev[wait->lanes] = energy_ev;
+  wait->at[wait->lanes++] = index;
+  return wait->lanes == PROGRAM_LANES ? run_program(plan, work, extended, point) : MHO_OK;
+}
+
+/* Runs the program on what waits for it, settles the energies that keep the
+ * contract and passes on the others. */
+static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
+                              mho_point *point)
+{
+  mho_program_trace *trace = &work->trace;
+  queue wait = work->queue[extended];
+  work->queue[extended].lanes = 0;
+  if (!wait.lanes) return MHO_OK;
+  for (size_t l = wait.lanes; l < PROGRAM_LANES; l++) wait.energy_ev[l] = wait.energy_ev[0];
+  if (!trace->high && mho_program_trace_create(plan->program, trace) != MHO_OK)
+    return MHO_ERR_MEMORY;
+  (extended ? mho_program_forward_extended : mho_program_forward_double)(
+      plan->program, wait.energy_ev, plan->norm_ev, trace);
+  mho_estimate estimate[PROGRAM_LANES];
+  mho_status status = finish_lanes(plan, work, wait.lanes, extended, estimate);
+  if (status == MHO_OK) weigh_lanes(plan, work, &wait, extended, estimate);
+  for (size_t l = 0; status == MHO_OK && l < wait.lanes; l++) {
+    if (keeps_contract(&estimate[l]))
+      set_point(plan, &estimate[l], extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
+                &point[wait.at[l]]);
+    else if (extended)
+      status = eliminate(plan, work, wait.energy_ev[l], &point[wait.at[l]]);
+    else status = pass_on(plan, work, true, wait.energy_ev[l], wait.at[l], point);
+  }
   return status;
 }
 
-/* Takes an estimate of the sum over levels if it is good; else the energy waits
- * in a lane. */
-static mho_status take_or_wait(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
+/* All that still waits. */
+static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point)
+{
+  mho_status status = run_program(plan, work, false, point);
+  return status == MHO_OK ? run_program(plan, work, true, point) : status;
+}
+
+/* Takes an estimate of the sum over levels if it is good. */
+static mho_status take_or_pass(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
                                double energy_ev, size_t index, mho_point *point)
 {
-  if (keeps_contract(estimate)) {
-    set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
-    return MHO_OK;
-  }
-  work->energy_ev[work->lanes] = energy_ev;
-  work->at[work->lanes++] = index;
-  return work->lanes == PROGRAM_LANES ? settle(plan, work, point) : MHO_OK;
+  if (!keeps_contract(estimate)) return pass_on(plan, work, false, energy_ev, index, point);
+  set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
+  return MHO_OK;
 }
 
 /* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
@@ -256,7 +294,8 @@ static mho_status evaluate(const mho_plan *plan, workspace *work, const double *
 {
   mho_estimate estimate[SPECTRUM_LANES];
   double lane[SPECTRUM_LANES];
-  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM;
+  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
+                (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
   bool pair = plan->left == 1 && plan->right == 1;
   for (size_t l = 0; l < SPECTRUM_LANES; l++) {
     lane[l] = energy_ev[first + (l < count ? l : 0)];
@@ -266,7 +305,7 @@ static mho_status evaluate(const mho_plan *plan, workspace *work, const double *
   if (levels && pair) mho_spectrum_evaluate_pair(plan, lane, estimate);
   mho_status status = MHO_OK;
   for (size_t l = 0; status == MHO_OK && l < count; l++)
-    status = take_or_wait(plan, work, &estimate[l], lane[l], first + l, point);
+    status = take_or_pass(plan, work, &estimate[l], lane[l], first + l, point);
   return status;
 }
 
@@ -336,6 +375,7 @@ const char *mho_method_name(mho_method method)
       [MHO_METHOD_SPECTRUM] = "sum over levels",
       [MHO_METHOD_SPARSE] = "compiled sparse elimination",
       [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_ELIMINATION] = "pivoted elimination",
       [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};
   return method >= 0 && method < MHO_METHOD_COUNT ? name[method] : "unknown";

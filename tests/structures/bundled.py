@@ -93,6 +93,14 @@ ORDERS = {
     "photoswitch": "dithienylethene-closed dithienylethene-open",
 }
 
+# Measured ratios, met within a factor: values of one amine differ by about 3
+# between groups (common practice), ratios of one group by less.  Y. Geng et al.,
+# J. Am. Chem. Soc. 2015 (memory); oligophenyls as above.
+RATIOS = {"naphthalene-1-4 naphthalene-2-6": 5.1, "anthracene-9-10 anthracene-2-6": 10.2,
+          "benzene-1-4-diamine biphenyl-4-4-diamine": 6.4 / 1.16,
+          "biphenyl-4-4-diamine terphenyl-4-4-diamine": 1.16 / 0.18}
+RATIO_FACTOR = 2
+
 count, failures = 0, []
 
 
@@ -200,6 +208,10 @@ def main():
         for better, worse in zip(files, files[1:]):
             expect(f"{what}: {better} over {worse}",
                    results[better][0] > results[worse][0], True)
+    for pair, measured in RATIOS.items():
+        better, worse = (results[f][0] for f in pair.split())
+        expect(f"{pair}: ratio {better / worse:.3g} within {RATIO_FACTOR} of {measured:.3g}",
+               1 / RATIO_FACTOR < better / worse / measured < RATIO_FACTOR, True)
     expect("acetyl groups leave", results["ope3-thioacetate"], results["ope3-dithiol"])
     for f, smiles in BY_SITES.items():
         fermi = molecules[f].get("fermi", "0 eV")

@@ -10,6 +10,7 @@
 #include <mho/peaks.h>
 
 #include "measure/logbin.h"
+#include "measure/tally.h"
 #include "synthetic.h"
 
 #include <gsl/gsl_histogram.h>
@@ -84,6 +85,65 @@ static void bins_are_exact_at_their_edges(void **state)
     gsl_histogram_free(reference);
     mho_logbin_clear(&bins);
   }
+}
+
+/* Every kind of vector against the table, which the test above holds to GSL:
+ * edges and their neighbours in every place of a block, odd numbers, a floor. */
+static void slots_do_not_depend_on_the_processor(void **state)
+{
+  (void)state;
+  static const struct { double low, high; int per_decade; } grids[] = {
+      {-7, 1, 100}, {-30, 30, 333}, {-3.5, 2, 1}, {-6, -1, 1000}};
+  static const double odd[] = {0.0, -0.0, -1.0, 5e-324, -INFINITY, INFINITY, NAN,
+                               1.7976931348623157e308, 1e-310};
+  enum { N = 100000 };
+  double *value = malloc(N * sizeof *value);
+  int32_t *slot = malloc(N * sizeof *slot);
+  assert_true(value && slot);
+  for (int k = 0; k < 8; k++) {
+    mho_logbin bins;
+    assert_int_equal(mho_logbin_init(&bins, grids[k / 2].low, grids[k / 2].high, grids[k / 2].per_decade, NULL), MHO_OK);
+    double floor_g0 = k % 2 ? pow(10.0, 0.5 * (grids[k / 2].low + grids[k / 2].high)) : -INFINITY;
+    mho_random random = mho_random_stream(5, (uint64_t)k);
+    for (int i = 0; i < N; i++) {
+      double edge = bins.edge[mho_random_below(&random, (uint64_t)bins.bins + 1)];
+      double u = synthetic_uniform(&random), span = grids[k / 2].high - grids[k / 2].low;
+      value[i] = i % 97 == 0   ? odd[mho_random_below(&random, sizeof odd / sizeof *odd)]
+                 : i % 41 == 0 ? nextafter(edge, u < 0.4 ? 0.0 : u < 0.8 ? INFINITY : edge)
+                 : i % 43 == 0 ? edge * (1.0 + 4e-7 * (u - 0.5))
+                               : pow(10.0, grids[k / 2].low + span * (1.2 * u - 0.1));
+    }
+    for (int lanes = bins.lanes; lanes >= 1; lanes /= 2) {
+      bins.lanes = lanes > 4 ? 8 : lanes > 1 ? 4 : 1;
+      mho_logbin_slots(&bins, floor_g0, value, N, slot);
+      for (int i = 0; i < N; i++) {
+        int expected = value[i] >= floor_g0 ? mho_logbin_slot(&bins, value[i]) : 0;
+        if (slot[i] != expected)
+          fail_msg("%d lanes: %.17g in slot %d, not %d", bins.lanes, value[i], slot[i], expected);
+      }
+    }
+    mho_logbin_clear(&bins);
+  }
+  free(value);
+  free(slot);
+}
+
+static void no_count_is_lost(void **state)
+{
+  (void)state;
+  mho_tally tally = {0};
+  enum { N = 200003 }; /* three times what a part of a tally holds */
+  static int32_t slot[N];
+  assert_true(mho_tally_init(&tally, 5));
+  for (int i = 0; i < N; i++) slot[i] = i % 7 ? 4 : i % 4;
+  mho_tally_add(&tally, slot, 3);
+  mho_tally_reset(&tally);
+  uint64_t expected[5] = {0};
+  for (int i = 0; i < N; i++) expected[slot[i]]++;
+  mho_tally_add(&tally, slot, N);
+  mho_tally_join(&tally);
+  assert_memory_equal(tally.sum, expected, sizeof expected);
+  mho_tally_clear(&tally);
 }
 
 static void densities_are_per_trace_and_decade(void **state)
@@ -360,6 +420,8 @@ int main(int argc, char **argv)
 {
   const struct CMUnitTest tests[] = {
       cmocka_unit_test(bins_are_exact_at_their_edges),
+      cmocka_unit_test(slots_do_not_depend_on_the_processor),
+      cmocka_unit_test(no_count_is_lost),
       cmocka_unit_test(densities_are_per_trace_and_decade),
       cmocka_unit_test(displacement_zero_is_the_last_crossing),
       cmocka_unit_test(tunnelling_is_rejected_and_counted),

@@ -11,6 +11,8 @@
 #include <mho/molecule_file.h>
 #include <stdlib.h>
 
+#include "analysis/pairs.h"
+
 typedef struct {
   mho_molecule molecule;
   mho_junction junction;
@@ -157,6 +159,41 @@ static void magic_numbers_may_be_long(void **state)
     if (strlen(s.map.pair[p].magic) > digits) digits = strlen(s.map.pair[p].magic);
   assert_int_equal(digits, 16); /* ortho or para in one ring: K/2 = 2^50 */
   clear(&s);
+}
+
+/* Orbits of pairs by Burnside's lemma: the mean number of pairs that a symmetry
+ * of the drawn molecule (planar point groups D6h, D2h, C2v, C2h, Cs) keeps. */
+static void symmetry_unites_pairs(void **state)
+{
+  (void)state;
+  static const struct {
+    const char *smiles;
+    size_t orbits;
+  } known[] = {{"c1ccccc1", 3}, {"c1ccc2ccccc2c1", 15}, {"c1ccc2cc3ccccc3cc2c1", 28},
+               {"c1ccc2cccc2cc1", 25}, {"c1ccncc1", 9}, {"C=CC=CC=C", 9}, {"C=CC=CC=N", 15}};
+  for (size_t m = 0; m < sizeof known / sizeof *known; m++) {
+    mho_interference_options options = {.coupling_ev = 0.5, .every_site = true, .nodes = true};
+    subject s = mapped(known[m].smiles, 0.3, &options);
+    mho_pair_graph graph;
+    size_t *leader = malloc(s.map.count * sizeof *leader), orbits = 0;
+    assert_int_equal(mho_pair_graph_build(&s.junction, &graph), MHO_OK);
+    assert_int_equal(mho_pairs_orbits(&s.junction, &graph, &s.map, leader), MHO_OK);
+    for (size_t p = 0; p < s.map.count; p++) {
+      const mho_pair *pair = &s.map.pair[p], *first = &s.map.pair[leader[p]];
+      orbits += leader[p] == p;
+      assert_true(leader[p] <= p && leader[leader[p]] == leader[p]);
+      assert_int_equal(pair->kind, first->kind);
+      assert_near(pair->transmission, first->transmission, 0);
+      assert_near(pair->node_ev, first->node_ev, 0);
+      size_t n = (size_t)s.junction.sites; /* the same bonds apart, at least */
+      assert_int_equal(graph.distance[(size_t)pair->site[0] * n + (size_t)pair->site[1]],
+                       graph.distance[(size_t)first->site[0] * n + (size_t)first->site[1]]);
+    }
+    assert_int_equal(orbits, known[m].orbits);
+    mho_pair_graph_clear(&graph);
+    free(leader);
+    clear(&s);
+  }
 }
 
 static void meta_is_a_node_and_stays_one(void **state)
@@ -326,6 +363,7 @@ int main(void)
       cmocka_unit_test(every_pair_is_its_plan),
       cmocka_unit_test(magic_numbers_are_the_published_ones),
       cmocka_unit_test(magic_numbers_may_be_long),
+      cmocka_unit_test(symmetry_unites_pairs),
       cmocka_unit_test(meta_is_a_node_and_stays_one),
       cmocka_unit_test(azulene_breaks_the_rules),
       cmocka_unit_test(the_verdict_turns_where_it_says),

@@ -203,6 +203,32 @@ static void check_transmission(const mho_plan *plan, const mho_node *node, size_
     fail_msg("node %zu at %.17g: T falls by %g decades only", which, node->energy_ev, depth);
 }
 
+/* The same H by its entries alone, which are solved in 113 bits throughout. */
+static void check_extended(const graph *g, int right, const mho_nodes *nodes)
+{
+  mho_entry entry[SITES_MAX * 8];
+  size_t entries = 0;
+  for (int i = 0; i < g->sites; i++)
+    for (int j = i; j < g->sites; j++)
+      if (g->h[i * g->sites + j] != 0)
+        entry[entries++] = (mho_entry){i, j, g->h[i * g->sites + j]};
+  double gamma = 0.5, zero = 0, vector[2][SITES_MAX] = {{1}};
+  vector[1][right] = 1;
+  mho_lead left = {1, &gamma, &zero, vector[0], NULL}, other = {1, &gamma, &zero, vector[1], NULL};
+  mho_plan *plan;
+  assert_int_equal(mho_plan_create_sparse(g->sites, entry, entries, &left, &other, &plan, NULL), MHO_OK);
+  mho_nodes extended = find(plan);
+  assert_int_equal(nodes->count, extended.count);
+  assert_int_equal(nodes->unseen, extended.unseen);
+  for (size_t k = 0; k < nodes->count; k++) {
+    assert_int_equal(nodes->node[k].order, extended.node[k].order);
+    assert_near(nodes->node[k].energy_ev, extended.node[k].energy_ev, 2e-15);
+    assert_near(nodes->node[k].imaginary_ev, extended.node[k].imaginary_ev, 2e-15);
+  }
+  mho_nodes_clear(&extended);
+  mho_plan_free(plan);
+}
+
 /* P has degree N - 1 less the bonds between the contacts, less what neither
  * sees; its zeros are the same for every Gamma, and T vanishes there. */
 static void random_graphs_have_all_their_nodes(void **state)
@@ -218,6 +244,7 @@ static void random_graphs_have_all_their_nodes(void **state)
     assert_int_equal(nodes.zeros + nodes.unseen, g.sites - 1 - distance(&g, 0, right));
     assert_int_equal(total_order(&nodes), nodes.zeros);
     assert_int_equal(nodes.count, same.count);
+    check_extended(&g, right, &nodes);
     for (size_t k = 0; k < nodes.count; k++) {
       assert_near(nodes.node[k].energy_ev, same.node[k].energy_ev, 0);
       bool real = nodes.node[k].kind == MHO_NODE_EXACT;

@@ -5,7 +5,8 @@
 #include <mho/histogram.h>
 #include <mho/traces.h>
 
-#include "measure/decimal.h"
+#include "measure/number_shape.h"
+#include "measure/reader.h"
 #include "base/random.h"
 
 #include <stdlib.h>
@@ -334,6 +335,90 @@ static void other_files_go_on(void **state)
   mho_histogram_free(histogram);
 }
 
+static const char *const forms[] = {"%.6e", "%.4f", "%.3E", "%.0f", "%.9g", "%.17g", "%+.2f", "%.11f"};
+
+#ifdef MHO_HAS_NUMBER_SHAPES
+MHO_SHAPE_PROCESSOR static bool read_shape(const mho_number_shape *shape, const char *s,
+                                           const char **end, double *value)
+{
+  return mho_shape_read(shape, s, end, value);
+}
+#endif
+
+/* A number read by the form of another one is that of the general reader, bit
+ * for bit, also where a byte of it is wrong. */
+static void numbers_are_read_by_their_form(void **state)
+{
+  (void)state;
+#ifdef MHO_HAS_NUMBER_SHAPES
+  if (!__builtin_cpu_supports("x86-64-v3")) skip();
+  mho_random random = mho_random_stream(7, 2);
+  size_t by_form = 0, odd = 0;
+  for (int i = 0; i < 200000; i++) {
+    char text[2][128] = {{0}, {0}};
+    for (int j = 0; j < 2; j++)
+      snprintf(text[j], 64, forms[i % 8],
+               ((double)(mho_random_bits(&random) >> 11) * 0x1p-53 - 0.5) *
+                   pow(10.0, (double)mho_random_below(&random, 8) - 4.0));
+    mho_number_shape shape;
+    const char *end, *end_by_form;
+    double expected, got;
+    assert_true(mho_decimal_read(text[0], &end, &expected));
+    mho_shape_learn(&shape, text[0], end);
+    if (i % 3 == 0) /* a byte of the table, or the end of the number */
+      text[1][mho_random_below(&random, strlen(text[1]))] = "09.eE+-x, \n\0"[mho_random_below(&random, 12)];
+    if (!read_shape(&shape, text[1], &end_by_form, &got)) continue;
+    by_form++;
+    if (!mho_decimal_read(text[1], &end, &expected) || end != end_by_form) {
+      if (!strchr(".eE", *end_by_form)) fail_msg("%s read up to %s", text[1], end_by_form);
+      odd++; /* a longer number, which is no line end: the general reader takes it */
+    } else if (memcmp(&got, &expected, sizeof got) != 0) {
+      fail_msg("%s read as %.17g", text[1], got);
+    }
+  }
+  assert_true(by_form > 50000 && odd < 1000);
+#endif
+}
+
+/* Both ways of the text reader, over traces whose numbers change their form. */
+static void both_ways_of_reading_agree(void **state)
+{
+  (void)state;
+  enum { LINES = 20000 };
+  static double value[2][2 * LINES];
+  FILE *file = fopen(path, "wb");
+  assert_non_null(file);
+  mho_random random = mho_random_stream(7, 3);
+  for (int i = 0; i < LINES; i++) {
+    const char *form = forms[i / 700 % 9 < 8 ? i / 700 % 9 : (int)mho_random_below(&random, 8)];
+    double u = (double)(mho_random_bits(&random) >> 11) * 0x1p-53;
+    fprintf(file, i % 1000 == 999 ? "# a comment\n%.4f " : "%.4f ", -0.5 + i * 1e-4);
+    fprintf(file, form, pow(10.0, 2.0 - 6.0 * u));
+    fputs(i % 17 ? "\n" : " \r\n", file);
+  }
+  assert_int_equal(fclose(file), 0);
+  const char *const paths[] = {path};
+  mho_trace_options options = plain();
+  for (int way = 0; way < 2; way++) {
+    mho_trace_reader *reader;
+    mho_trace_chunk chunk;
+    bool more = true;
+    size_t count = 0;
+    assert_int_equal(mho_trace_reader_create(paths, 1, &options, MHO_ABSCISSA_DISTANCE, &reader, NULL), MHO_OK);
+    reader->shapes = reader->shapes && way == 0;
+    for (;;) {
+      assert_int_equal(mho_trace_reader_next(reader, &chunk, &more, NULL), MHO_OK);
+      if (!more) break;
+      memcpy(value[way] + count, chunk.g0, chunk.count * sizeof(double));
+      memcpy(value[way] + LINES + count, chunk.x, chunk.count * sizeof(double));
+      count += chunk.count;
+    }
+    assert_int_equal(count, LINES);
+    mho_trace_reader_free(reader);
+  }
+  assert_memory_equal(value[0], value[1], sizeof value[0]);
+}
+
 static bool stop_at_once(void *context, uint64_t bytes, uint64_t total)
 {
   (void)context;
@@ -362,6 +447,8 @@ int main(void)
       cmocka_unit_test(one_endless_line_and_a_million_columns),
       cmocka_unit_test(gzip_is_read_and_its_end_checked),
       cmocka_unit_test(other_files_go_on),
+      cmocka_unit_test(numbers_are_read_by_their_form),
+      cmocka_unit_test(both_ways_of_reading_agree),
       cmocka_unit_test(reading_can_be_cancelled),
   };
   return cmocka_run_group_tests(tests, make_folder, remove_folder);

@@ -3,8 +3,8 @@
  * A function compiled for several processors, the best chosen when the program
  * starts.  Without fast-math or contraction all of them round alike.
  */
-#ifndef MHOLECULE_SOLVER_PROCESSOR_H
-#define MHOLECULE_SOLVER_PROCESSOR_H
+#ifndef MHOLECULE_BASE_PROCESSOR_H
+#define MHOLECULE_BASE_PROCESSOR_H
 
 #if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__) &&             \
     !defined(__SANITIZE_ADDRESS__)

@@ -1,0 +1,27 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later
+ *
+ * g(z) = v_r^T (z - H)^-1 v_l of the bare molecule at a complex energy, exact
+ * to far more than its conditioning allows a double to be.
+ */
+#ifndef MHOLECULE_SOLVER_BARE_H
+#define MHOLECULE_SOLVER_BARE_H
+
+#include <complex.h>
+
+#include "solver/plan.h"
+
+typedef struct mho_bare mho_bare;
+
+typedef struct {
+  double complex value, slope; /* g, g' */
+  double noise, slope_noise;   /* what they may be wrong by */
+} mho_bare_green;
+
+/* For one channel a contact; NULL without memory. */
+mho_bare *mho_bare_create(const mho_plan *plan);
+void mho_bare_free(mho_bare *bare);
+
+/* False where z - H is singular to rounding. */
+bool mho_bare_evaluate(mho_bare *bare, double complex z, mho_bare_green *green);
+
+#endif
