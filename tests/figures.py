@@ -150,7 +150,7 @@ def check_orbitals():
 
 
 def check_sensitivity(scratch):
-    for name in ("biphenyl-4-4-diamine", "azulene-2-6-dithiol", "benzene-1-3-diamine"):
+    for name in ("biphenyl-4-4-diamine", "azulene-2-6-dithiol", "benzene-1-3-diamine", "ope3-dithiol"):
         rows, root = draw(scratch, "conductance", "--sensitivity", bundled(name))
         derivative = {row["parameter"]: float(row["derivative_log10_G0"]) for row in rows
                       if row["derivative_log10_G0"]}
