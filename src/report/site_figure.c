@@ -233,10 +233,15 @@ static bool is_site(const mho_sensitivity_row *row)
   return row->kind == MHO_PARAMETER_H || row->kind == MHO_PARAMETER_ONSITE;
 }
 
-/* Has the site room for a substituent, or is it a linker? */
+/* A contact, or a site with room for a substituent: with a hydrogen, or where
+ * there is no structure with at most two bonds. */
 static bool can_bear(const mho_molecule *m, int site)
 {
   int bonds = 0;
+  for (int side = 0; side < 2; side++)
+    for (int i = 0; i < m->contact[side].count; i++)
+      if (m->contact[side].site[i] == site) return true;
+  if (m->graph.atom_count > 0) return mho_graph_hydrogens(&m->graph, m->site_atom[site]) > 0;
   for (int b = 0; b < m->bond_count; b++)
     bonds += m->bond[b].site[0] == site || m->bond[b].site[1] == site;
   return bonds < 3;
