@@ -273,7 +273,7 @@ typedef struct {
   int free, level; /* members: zeros of g, and a level */
   double level_ev, size, gap;
   double complex center; /* of the zeros of g */
-  bool held;
+  bool held, mixed; /* beside a level that g lacks; two levels in it */
 } cluster;
 
 static cluster gather(const search *s, int number)
@@ -284,8 +284,10 @@ static cluster gather(const search *s, int number)
     const zero *z = &s->zero[k];
     if (z->cluster != number) continue;
     middle += z->z;
-    if (z->level) c.level_ev = creal(z->z);
-    else c.center += z->z;
+    if (z->level) {
+      c.mixed |= c.level && fabs(c.level_ev - creal(z->z)) > SAME_ENERGY * s->plan->norm_ev;
+      c.level_ev = creal(z->z);
+    } else c.center += z->z;
     *(z->level ? &c.level : &c.free) += 1;
     c.held |= z->held;
   }
@@ -345,6 +347,7 @@ static bool make_nodes(const search *s, int number, mho_nodes *result)
 {
   cluster c = gather(s, number);
   if (c.free + c.level == 0) return true;
+  if (c.mixed) return false;
   if (c.free > 0 && (c.free + c.level > 1 || c.held) && !count_inside(s, &c)) return false;
   bool one = c.level && (!c.free || cabs(c.center - c.level_ev) <= SAME_ENERGY * s->plan->norm_ev);
   if (one) add_node(s, c.level_ev, 0, c.free + c.level, result);
