@@ -177,7 +177,7 @@ void mho_figure_comparison(mho_buffer *script, const char *const *molecule, cons
                    "set offsets graph 0.04, graph 0.04, 0, 0\n"
                    "set grid xtics linecolor '" SHADE "' linetype 1\n"
                    "plot $computed using 1:2:3:4 with xerrorbars linewidth 2 pointtype 7 "
-                   "pointsize 1.1 linecolor '%s' title 'computed (bar: window)', "
+                   "pointsize 1.1 linecolor '%s' title 'computed (bar: error)', "
                    "$measured using 1:2:3:4 with xerrorbars linewidth 2 pointtype 12 "
                    "pointsize 1.4 linecolor '%s' title 'measured (bar: spread)'\n",
                    rows, ink[0], ink[1]);
