@@ -2,7 +2,7 @@
  *
  * Screening for screen.py: one SMILES a line on stdin, seconds as JSON on
  * stdout, one mho_screen_quantities a molecule in a file.
- * Usage: bench_screen THREADS VALUES < LIST
+ * Usage: bench_screen THREADS VALUES < LIST, or bench_screen --layout.
  */
 #include <mho/mho.h>
 
@@ -37,8 +37,24 @@ static mho_status measure(mho_screen_workspace *workspace, const char *smiles,
   return status;
 }
 
+/* Members of the struct and where they stand, for Python's struct module. */
+static int print_layout(void)
+{
+  const char *separator = "";
+  printf("{\"size\": %zu, \"members\": {", sizeof(mho_screen_quantities));
+#define PRINT(member, type, column, name, form, what)                                        \
+  printf("%s\"%s\": [%zu, \"%s\"]", separator, column,                                       \
+         offsetof(mho_screen_quantities, member), sizeof(type) == sizeof(int) ? "i" : "d");  \
+  separator = ", ";
+  MHO_SCREEN_QUANTITY_LIST(PRINT)
+#undef PRINT
+  printf("}}\n");
+  return 0;
+}
+
 int main(int argc, char **argv)
 {
+  if (argc == 2 && !strcmp(argv[1], "--layout")) return print_layout();
   if (argc != 3) return 2;
   static char *line[LINES_MAX];
   static char text[1 << 16];
@@ -63,7 +79,8 @@ int main(int argc, char **argv)
   if (!file || fwrite(value, sizeof *value, (size_t)count, file) != (size_t)count ||
       fclose(file) != 0)
     return 1;
-  printf("{\"seconds\": %.9g, \"building\": %.9g, \"count\": %d, \"bad\": %d}\n", spent, building, count, bad);
+  printf("{\"seconds\": %.9g, \"building\": %.9g, \"count\": %d, \"bad\": %d}\n", spent, building,
+         count, bad);
   for (int i = 0; i < count; i++) free(line[i]);
   free(value);
   return bad ? 1 : 0;

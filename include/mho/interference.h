@@ -82,6 +82,10 @@ mho_interference_defaults(const mho_molecule *molecule);
  * adjacency of the two halves and K = |det B| its Kekule structures, where all
  * sites share one energy, all bonds one hopping and all rings are hexagons
  * (Y. Geng et al., J. Am. Chem. Soc. 137, 4469 (2015)).
+ * Pairs that a symmetry of H turns into each other are computed once and have
+ * the same values.  Nodes are exact up to MHO_INTERFERENCE_NODES_MAX sites;
+ * above, they are changes of sign between samples in the gaps next to the Fermi
+ * level, 24 on either side, and `node_order` is 0.
  * The caller clears the result, also after a failure.
  * Errors: MHO_ERR_LIMIT (sites), MHO_ERR_RANGE (coupling), MHO_ERR_MEMORY,
  * MHO_ERR_LINEAR_ALGEBRA. */

@@ -41,7 +41,9 @@ MHO_API const mho_substituent *mho_substituents(size_t *count);
 /* Modifications at carbons with two bonds in the pi system that no contact
  * sits on.  A substituent whose rows the parameter set lacks is left out.  The
  * change is taken at each of 101 Fermi levels over +-window_ev before its
- * quantiles are.  The caller clears the result, also after a failure.
+ * quantiles are.  Each change is a change of H in one row and column, so that one
+ * Green's function an energy serves all of them; where that would miss 1e-8 of
+ * the conductance, the changed molecule is computed by itself.  The caller clears the result, also after a failure.
  * Errors: MHO_ERR_RANGE (window), MHO_ERR_CONTACTS, MHO_ERR_MEMORY,
  * MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_modify_rank(const mho_molecule *molecule,

@@ -156,7 +156,8 @@ typedef struct {
   const mho_screen_requirement *requirement; /* all must hold */
   size_t requirements;
   size_t top;     /* places that count */
-  int samples;    /* of the errors, 100 to 1000000 */
+  int samples;    /* of the errors, 100 to 1000000; fewer are drawn where more than
+                   * 1e8 / samples candidates may reach the top */
   uint64_t seed;
   mho_uncertainties sigma;
 } mho_screen_rank_options;

@@ -8,6 +8,7 @@
 #include <string.h>
 
 #include "analysis/perturb.h"
+#include "analysis/site_change.h"
 #include "analysis/thermal.h"
 
 enum { LEVELS = 101, MIDDLE = LEVELS / 2, GROWTH = 2 };
@@ -154,10 +155,87 @@ static int compare_rows(const void *a, const void *b)
   return p->substituent < q->substituent ? -1 : p->substituent > q->substituent;
 }
 
+/* What a substituent does to H; can_change sees to it that two bonds are all. */
+static void describe(const mho_molecule *from, const mho_molecule *to, int site,
+                     mho_site_change *c)
+{
+  *c = (mho_site_change){.site = site};
+  c->onsite_ev = mho_molecule_onsite_ev(to, site) - mho_molecule_onsite_ev(from, site);
+  for (int b = 0; b < from->bond_count; b++) {
+    const int *end = from->bond[b].site;
+    if (end[0] != site && end[1] != site) continue;
+    c->partner[c->bonds] = end[end[0] == site];
+    c->hopping_ev[c->bonds++] = mho_molecule_hopping_ev(to, b) - mho_molecule_hopping_ev(from, b);
+  }
+  for (int k = from->site_count; k < to->site_count; k++, c->chain++) {
+    c->chain_onsite_ev[c->chain] = mho_molecule_onsite_ev(to, k);
+    c->chain_hopping_ev[c->chain] =
+        mho_molecule_hopping_ev(to, from->bond_count + k - from->site_count);
+  }
+}
+
+/* The rows, not yet filled, and what each does to H. */
+static mho_status list_changes(const mho_molecule *molecule, mho_modifications *result,
+                               mho_site_change *change, mho_error *error)
+{
+  for (int site = 0; site < molecule->site_count; site++)
+    for (int k = 0; can_change(molecule, site) && k < SUBSTITUENTS; k++) {
+      mho_molecule changed = {0};
+      if (!is_known(molecule, &table[k])) continue;
+      mho_status status = substitute(molecule, site, &table[k], &changed, error);
+      if (status == MHO_OK) describe(molecule, &changed, site, &change[result->count]);
+      free(changed.site);
+      free(changed.bond);
+      if (status != MHO_OK) return status;
+      result->row[result->count++] = (mho_modification){.site = site, .substituent = &table[k]};
+    }
+  return MHO_OK;
+}
+
+/* As a molecule of its own, by its own plan. */
+static mho_status evaluate_drawn(const mho_molecule *molecule, const mho_modification *row,
+                                 const double *fermi, double *after, mho_error *error)
+{
+  mho_molecule changed = {0};
+  mho_status status = substitute(molecule, row->site, row->substituent, &changed, error);
+  if (status == MHO_OK) status = evaluate(&changed, fermi, after, error);
+  free(changed.site);
+  free(changed.bond);
+  return status;
+}
+
+static mho_status fill(const mho_molecule *molecule, const mho_junction *junction,
+                       const double *fermi, const double *before, mho_modifications *result,
+                       mho_error *error)
+{
+  size_t most = (size_t)molecule->site_count * SUBSTITUENTS + 1;
+  mho_site_change *change = malloc(most * sizeof *change);
+  double *after = malloc(most * LEVELS * sizeof *after);
+  bool *good = calloc(most, sizeof *good);
+  result->row = calloc(most, sizeof *result->row);
+  mho_status status = MHO_OK;
+  if (!change || !after || !good || !result->row)
+    status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
+  if (status == MHO_OK) status = list_changes(molecule, result, change, error);
+  if (status == MHO_OK)
+    status = mho_site_changes(junction, change, result->count, fermi, LEVELS,
+                              MHO_BOLTZMANN_EV_PER_K * molecule->temperature_k, after, good,
+                              error);
+  for (size_t k = 0; status == MHO_OK && k < result->count; k++) {
+    if (!good[k])
+      status = evaluate_drawn(molecule, &result->row[k], fermi, after + k * LEVELS, error);
+    if (status == MHO_OK) take_change(before, after + k * LEVELS, &result->row[k]);
+  }
+  free(change);
+  free(after);
+  free(good);
+  return status;
+}
+
 mho_status mho_modify_rank(const mho_molecule *molecule, const mho_junction *junction,
                            double window_ev, mho_modifications *result, mho_error *error)
 {
-  double fermi[LEVELS], before[LEVELS], after[LEVELS];
+  double fermi[LEVELS], before[LEVELS];
   *result = (mho_modifications){0};
   if (!(window_ev >= 0 && isfinite(window_ev)))
     return mho_fail(error, MHO_ERR_RANGE, "analysis", "window",
@@ -166,26 +244,9 @@ mho_status mho_modify_rank(const mho_molecule *molecule, const mho_junction *jun
     fermi[i] = junction->fermi_ev + window_ev * (i - MIDDLE) / MIDDLE;
   mho_status status = mho_junction_require_contacts(junction, molecule, error);
   if (status == MHO_OK) status = evaluate(molecule, fermi, before, error);
-  if (status != MHO_OK) return status;
-  size_t most = (size_t)molecule->site_count * SUBSTITUENTS;
-  result->row = calloc(most + 1, sizeof *result->row);
-  if (!result->row) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
-  for (int site = 0; site < molecule->site_count; site++)
-    for (int k = 0; can_change(molecule, site) && k < SUBSTITUENTS; k++) {
-      mho_molecule changed = {0};
-      mho_modification *row = &result->row[result->count];
-      if (!is_known(molecule, &table[k])) continue;
-      status = substitute(molecule, site, &table[k], &changed, error);
-      if (status == MHO_OK) status = evaluate(&changed, fermi, after, error);
-      free(changed.site);
-      free(changed.bond);
-      if (status != MHO_OK) return status;
-      *row = (mho_modification){.site = site, .substituent = &table[k]};
-      take_change(before, after, row);
-      result->count++;
-    }
-  qsort(result->row, result->count, sizeof *result->row, compare_rows);
-  return MHO_OK;
+  if (status == MHO_OK) status = fill(molecule, junction, fermi, before, result, error);
+  if (status == MHO_OK) qsort(result->row, result->count, sizeof *result->row, compare_rows);
+  return status;
 }
 
 void mho_modifications_clear(mho_modifications *result)

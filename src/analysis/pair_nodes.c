@@ -49,9 +49,10 @@ typedef struct {
   size_t count;
 } scan;
 
-static double total(vector v)
+INLINED double total(const vector *v)
 {
-  return ((v[0] + v[4]) + (v[2] + v[6])) + ((v[1] + v[5]) + (v[3] + v[7]));
+  const vector s = *v;
+  return ((s[0] + s[4]) + (s[2] + s[6])) + ((s[1] + s[5]) + (s[3] + s[7]));
 }
 
 FOR_EVERY_PROCESSOR
@@ -64,7 +65,8 @@ static double dot(size_t n, const double *a, const double *b)
     more += AT(a, k + V) * AT(b, k + V);
   }
   for (; k < n; k += V) sum += AT(a, k) * AT(b, k);
-  return total(sum + more);
+  sum += more;
+  return total(&sum);
 }
 
 /* sum a b/(E - level) and its slope. */
@@ -78,8 +80,8 @@ static void sum_levels(size_t n, const double *a, const double *b, const double 
     sum += term;
     steep -= term * inverse;
   }
-  *value = total(sum);
-  *slope = total(steep);
+  *value = total(&sum);
+  *slope = total(&steep);
 }
 
 /* Samples on one side of the Fermi level (direction +-1), outwards. */
@@ -247,24 +249,38 @@ static void scan_clear(scan *s)
   free(s->turned);
 }
 
-/* The nearest real node of a pair from the zeros of its Green's function. */
-static mho_status find_nearest(const mho_junction *j, double coupling_ev, mho_pair *pair,
-                               mho_error *error)
+static void take_nearest(const mho_junction *j, const mho_nodes *nodes, mho_pair *pair)
 {
-  mho_plan *plan;
-  mho_nodes nodes = {0};
-  mho_status status = mho_pair_plan(j, pair->site, coupling_ev, &plan, error);
-  if (status == MHO_OK) status = mho_nodes_find(plan, &nodes, error);
-  for (size_t k = 0; status == MHO_OK && k < nodes.count; k++) {
-    double distance = nodes.node[k].energy_ev - j->fermi_ev;
-    if (nodes.node[k].kind != MHO_NODE_EXACT) continue;
+  for (size_t k = 0; k < nodes->count; k++) {
+    double distance = nodes->node[k].energy_ev - j->fermi_ev;
+    if (nodes->node[k].kind != MHO_NODE_EXACT) continue;
     if (fabs(distance) < TIE) distance = 0;
     if (pair->has_node && !is_nearer(distance, pair->node_ev)) continue;
     pair->has_node = true;
     pair->node_ev = distance;
-    pair->node_order = nodes.node[k].order;
+    pair->node_order = nodes->node[k].order;
   }
-  mho_nodes_clear(&nodes);
+}
+
+/* The nearest real node of a pair from the zeros of its Green's function: as far
+ * as the next level to either side, then over some levels, then all. */
+static mho_status find_nearest(const mho_junction *j, double coupling_ev, mho_pair *pair,
+                               mho_error *error)
+{
+  enum { WIDER = 3, LOOKS = 2 };
+  mho_plan *plan;
+  mho_nodes nodes = {0};
+  double reach = INFINITY;
+  for (int k = 0; k < j->sites; k++) reach = fmin(reach, fabs(j->level_ev[k] - j->fermi_ev));
+  mho_status status = mho_pair_plan(j, pair->site, coupling_ev, &plan, error);
+  for (int look = 0; status == MHO_OK && !pair->has_node && look <= LOOKS; look++) {
+    status = look < LOOKS ? mho_nodes_between(plan, j->fermi_ev - reach, j->fermi_ev + reach,
+                                              &nodes, error)
+                          : mho_nodes_find(plan, &nodes, error);
+    if (status == MHO_OK) take_nearest(j, &nodes, pair);
+    mho_nodes_clear(&nodes);
+    reach *= WIDER;
+  }
   mho_plan_free(plan);
   return status;
 }

@@ -105,8 +105,10 @@ static void fill_unmoved(drawer *d, double *beta)
   }
   for (int c = 0; c < d->sampler.plan->channels; c++)
     for (int l = 0; l < L; l++) d->batch.coupling[c * L + l] = d->sampler.plan->coupling_ev[c];
-  for (int b = 0; b < m->bond_count; b++)
-    for (int l = 0; l < L; l++) d->cosine[b * L + l] = mho_cos_deg(m->bond[b].twist_deg);
+  for (int b = 0; b < m->bond_count; b++) {
+    double cosine = m->bond[b].twist_deg != 0 ? mho_cos_deg(m->bond[b].twist_deg) : 1;
+    for (int l = 0; l < L; l++) d->cosine[b * L + l] = cosine;
+  }
 }
 
 FOR_EVERY_PROCESSOR

@@ -20,7 +20,7 @@
 
 #include "base/processor.h"
 
-enum { GAUSS_POINTS = 16, HALVINGS_MAX = 60 };
+enum { GAUSS_POINTS = MHO_THERMAL_POINTS, HALVINGS_MAX = 60 };
 
 #define ELLIPSE 1.4
 #define PANEL_KT 4.0

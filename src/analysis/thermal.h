@@ -9,6 +9,9 @@
 #include <mho/sensitivity.h>
 #include <mho/transmission.h>
 
+/* Gauss points of a panel; a grid is one panel after another. */
+enum { MHO_THERMAL_POINTS = 16 };
+
 typedef struct {
   size_t count;
   double *energy_ev, *weight_ev, *value; /* value = T * 10^-scale */

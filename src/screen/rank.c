@@ -12,8 +12,8 @@
  * it is scaled to it.  Other quantities have no error.
  *
  * Who is sampled: a candidate below the nominal top reaches it only by passing
- * one of them, so sum_j P(i above j) over the top bounds its probability; those
- * below RARE keep 0.
+ * one of it, so sum_j P(i above j) over the top bounds its probability; those
+ * below RARE keep 0.  Where very many are left, samples become fewer.
  */
 #include <mho/screen.h>
 
@@ -36,6 +36,9 @@
 
 enum { SAMPLES_MIN = 100, SAMPLES_MAX = 1000000 };
 
+/* Draws of all samples together. */
+#define DRAWS_MAX 1e8
+
 typedef struct {
   size_t index;
   double score; /* larger is better */
@@ -51,6 +54,7 @@ typedef struct {
   const mho_screen_rank_options *options;
   double sigma[MHO_SHARED_COUNT];
   double unknown; /* error of a conductance that has none: the largest of all */
+  int active[MHO_SHARED_COUNT], actives; /* parameters that some candidate depends on */
   entry *entry;   /* those that meet all requirements, best first */
   size_t count, defined, top;
 } ranker;
@@ -111,11 +115,13 @@ static spread spread_of(const ranker *r, const entry *e)
   return s;
 }
 
-static double sigma_of_difference(const spread *a, const spread *b)
+static double sigma_of_difference(const ranker *r, const spread *a, const spread *b)
 {
   double square = a->own * a->own + b->own * b->own;
-  for (int p = 0; p < MHO_SHARED_COUNT; p++)
-    square += (a->shared[p] - b->shared[p]) * (a->shared[p] - b->shared[p]);
+  for (int k = 0; k < r->actives; k++) {
+    double difference = a->shared[r->active[k]] - b->shared[r->active[k]];
+    square += difference * difference;
+  }
   return sqrt(square);
 }
 
@@ -137,15 +143,19 @@ static bool meets_all(const ranker *r, const mho_screen_quantities *q)
 
 static void set_order(ranker *r, size_t n)
 {
+  bool used[MHO_SHARED_COUNT] = {false};
   for (size_t i = 0; i < n; i++) {
     double value, error;
     if (mho_screen_value(&r->candidate[i], MHO_SCREEN_error_decades, &error))
       r->unknown = fmax(r->unknown, error);
     if (!meets_all(r, &r->candidate[i])) continue;
+    for (int p = 0; p < MHO_SHARED_COUNT; p++) used[p] |= r->candidate[i].shared[p] != 0;
     bool defined = mho_screen_value(&r->candidate[i], r->options->goal.quantity, &value);
     r->entry[r->count++] = (entry){i, defined ? score_of(&r->options->goal, value) : -INFINITY};
     r->defined += defined;
   }
+  for (int p = 0; p < MHO_SHARED_COUNT; p++)
+    if (used[p]) r->active[r->actives++] = p;
   qsort(r->entry, r->count, sizeof *r->entry, compare_entries);
   r->top = r->options->top < r->count ? r->options->top : r->count;
 }
@@ -163,7 +173,7 @@ static double chance_to_pass(const ranker *r, double ahead, const spread *it, co
   }
   double sum = it->total + other->total;
   if (!(sum > 0) || erfc(ahead / sum / square_root_2) < RARE * 1e-3) return 0;
-  double sigma = sigma_of_difference(it, other);
+  double sigma = sigma_of_difference(r, it, other);
   return sigma > 0 ? 0.5 * erfc(ahead / sigma / square_root_2) : 0;
 }
 
@@ -173,7 +183,7 @@ typedef struct {
   size_t *at;      /* into ranker->entry */
   double *value;   /* nominal */
   double *own;
-  double *shared;  /* [count][MHO_SHARED_COUNT] */
+  double *shared;  /* [count][actives] */
 } contenders;
 
 static void clear_contenders(contenders *c)
@@ -195,7 +205,7 @@ static bool add_contender(const ranker *r, contenders *c, size_t at, const sprea
     if (value) c->value = value;
     double *own = realloc(c->own, *capacity * sizeof *own);
     if (own) c->own = own;
-    double *shared = realloc(c->shared, *capacity * MHO_SHARED_COUNT * sizeof *shared);
+    double *shared = realloc(c->shared, *capacity * (size_t)(r->actives + 1) * sizeof *shared);
     if (shared) c->shared = shared;
     if (!place || !value || !own || !shared) return false;
   }
@@ -203,7 +213,8 @@ static bool add_contender(const ranker *r, contenders *c, size_t at, const sprea
   c->at[k] = at;
   c->own[k] = s->own;
   mho_screen_value(&r->candidate[r->entry[at].index], r->options->goal.quantity, &c->value[k]);
-  memcpy(c->shared + k * MHO_SHARED_COUNT, s->shared, sizeof s->shared);
+  for (int p = 0; p < r->actives; p++)
+    c->shared[k * (size_t)r->actives + (size_t)p] = s->shared[r->active[p]];
   return true;
 }
 
@@ -271,13 +282,16 @@ static void draw_sample(const ranker *r, const contenders *c, uint64_t s, heap *
   const mho_screen_goal *goal = &r->options->goal;
   double z[MHO_SHARED_COUNT];
   mho_random random = mho_random_stream(r->options->seed, s);
-  for (int p = 0; p < MHO_SHARED_COUNT; p++) z[p] = mho_random_normal(&random);
+  for (int p = 0, k = 0; p < MHO_SHARED_COUNT; p++) { /* of all, whoever is in the list */
+    double draw = mho_random_normal(&random);
+    if (k < r->actives && r->active[k] == p) z[k++] = draw;
+  }
   uint64_t own_seed = mho_random_bits(&random);
   h->count = 0;
   for (size_t k = 0; k < c->count; k++) {
-    const double *a = c->shared + k * MHO_SHARED_COUNT;
+    const double *a = c->shared + k * (size_t)r->actives;
     double shift = 0;
-    for (int p = 0; p < MHO_SHARED_COUNT; p++) shift += a[p] * z[p];
+    for (int p = 0; p < r->actives; p++) shift += a[p] * z[p];
     double slope = slope_of(goal, c->value[k]), value = c->value[k] + slope * shift;
     bool hopeless = goal->aim != MHO_AIM_MATCH && h->count == h->capacity &&
                     slope * value + FAR_SIGMA * c->own[k] < h->item[0].score;
@@ -293,6 +307,8 @@ static mho_status sample(const ranker *r, const contenders *c, mho_screen_place 
 {
   size_t top = r->top < c->count ? r->top : c->count;
   int threads = omp_get_max_threads(), samples = r->options->samples;
+  double affordable = DRAWS_MAX / (double)(c->count ? c->count : 1);
+  if (samples > affordable) samples = affordable > SAMPLES_MIN ? (int)affordable : SAMPLES_MIN;
   uint32_t *hits = calloc((size_t)threads * c->count + 1, sizeof *hits);
   entry *item = malloc(((size_t)threads * top + 1) * sizeof *item);
   mho_status status = hits && item ? MHO_OK : MHO_ERR_MEMORY;
@@ -324,7 +340,7 @@ static size_t count_groups(const ranker *r)
   for (size_t k = 1; k < top; k++) {
     spread a = spread_of(r, &r->entry[first]), b = spread_of(r, &r->entry[k]);
     double ahead = r->entry[first].score - r->entry[k].score;
-    if (!(ahead > SIGMA_90 * sigma_of_difference(&a, &b))) continue;
+    if (!(ahead > SIGMA_90 * sigma_of_difference(r, &a, &b))) continue;
     groups++;
     first = k;
   }

@@ -37,7 +37,7 @@
 #define UNRESOLVED 1e-6
 
 /* Largest error of an energy that is good enough. */
-#define ENERGY_ERROR_EV 1e-12
+#define ENERGY_ERROR_EV 1e-11
 
 enum { PENDING_MAX = 256, NEWTON_MAX = 60 };
 

@@ -123,18 +123,19 @@ static void take_nearest(double complex *guess, size_t *count, double level_ev)
   if (*count) guess[best] = guess[--*count];
 }
 
-static mho_status guess(search *s, const mho_exact_counts *counts, mho_error *error)
+/* *sure is false where Z overflows or its eigenvalues do not converge. */
+static mho_status guess(search *s, const mho_exact_counts *counts, bool *sure)
 {
   size_t n = (size_t)s->plan->sites, m = 0;
   double *a = calloc(n * n + 2 * n, sizeof *a), *b = a + n * n;
   double complex *value = malloc(n * sizeof *value);
-  mho_status status = MHO_OK;
-  if (!a || !value) status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  mho_status status = a && value ? MHO_OK : MHO_ERR_MEMORY;
   if (status == MHO_OK) {
     closed_loop(s->plan, counts->first, a, b, b + n, &m);
     for (size_t j = 1; j < m; j++) memmove(a + j * m, a + j * n, m * sizeof *a);
-    if (m > 0) status = mho_eigenvalues_real((int)m, a, value, error);
+    if (m > 0) status = mho_eigenvalues_real((int)m, a, value, NULL);
   }
+  *sure = status == MHO_OK;
   for (int i = 0; status == MHO_OK && i < s->groups; i++)
     for (int k = s->group[i].weight != 0; k < s->group[i].states; k++)
       take_nearest(value, &m, s->group[i].level_ev);
@@ -142,10 +143,10 @@ static mho_status guess(search *s, const mho_exact_counts *counts, mho_error *er
     s->zero[k].z = k < m ? value[k] + 1e-15 * s->plan->norm_ev * (double)k : (double)k;
   free(a);
   free(value);
-  return status;
+  return status == MHO_ERR_MEMORY ? status : MHO_OK;
 }
 
-/* Step that takes zero k to one of u, the others divided out; *newton is u'/u. */
+/* Step that takes zero k to one of u, the others divided out; newton is u'/u. */
 static double complex correction(const search *s, int k, double complex newton)
 {
   double complex others = 0;
@@ -387,10 +388,8 @@ mho_status mho_zeros_find(const mho_plan *plan, const mho_exact_counts *counts, 
   s.group = malloc(n * sizeof *s.group);
   s.zero = calloc(n, sizeof *s.zero);
   s.bare = mho_bare_create(plan);
-  mho_status status = MHO_OK;
+  mho_status status = room && s.group && s.zero && s.bare ? MHO_OK : MHO_ERR_MEMORY;
   *sure = false;
-  if (!room || !s.group || !s.zero || !s.bare)
-    status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   if (status == MHO_OK) {
     s.groups = mho_levels_group(plan, s.group);
     bool settled = mho_levels_settle(s.group, s.groups, counts, plan->norm_ev, room);
@@ -403,11 +402,12 @@ mho_status mho_zeros_find(const mho_plan *plan, const mho_exact_counts *counts, 
     if (settled && s.free >= 0) {
       result->zeros = s.zeros;
       result->unseen = plan->sites - 1 - counts->first - s.zeros;
-      status = guess(&s, counts, error);
-      *sure = status == MHO_OK && finish(&s, result);
+      status = guess(&s, counts, sure);
+      *sure = *sure && finish(&s, result);
     }
   }
   if (!*sure) result->count = 0;
+  if (status != MHO_OK) mho_fail(error, status, "solver", NULL, "out of memory");
   mho_bare_free(s.bare);
   free(s.zero);
   free(s.group);

@@ -17,7 +17,7 @@ MHO_MUST_USE mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho
 /* Nodes for one channel a contact on a diagonalised plan, in no order, appended
  * to result->node (room for one a site).  *sure is false, and nothing is
  * appended, where doubles cannot tell one zero from another.
- * Errors: MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
+ * Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_zeros_find(const mho_plan *plan, const mho_exact_counts *counts,
                                        mho_nodes *result, bool *sure, mho_error *error);
 

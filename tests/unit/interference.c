@@ -12,6 +12,8 @@
 #include <stdlib.h>
 
 #include "analysis/pairs.h"
+#include "analysis/site_change.h"
+#include "analysis/thermal.h"
 
 typedef struct {
   mho_molecule molecule;
@@ -321,6 +323,78 @@ static double drawn_log10(const char *smiles, mho_alkyl alkyl)
   return g.log10_g0;
 }
 
+/* The junction with H' written out, sites of the chain behind the others. */
+static void changed_log10(const mho_junction *j, const mho_site_change *c, const double *fermi,
+                          size_t levels, double *log10_g0)
+{
+  size_t n = (size_t)j->sites, all = n + (size_t)c->chain, at = (size_t)c->site;
+  double *h = calloc(all * all, sizeof *h), *vector = calloc(2 * all, sizeof *vector);
+  mho_lead lead[2] = {j->lead[0], j->lead[1]};
+  mho_junction own;
+  mho_plan *plan;
+  for (size_t i = 0; i < n; i++)
+    for (size_t k = 0; k < n; k++) h[i * all + k] = j->hamiltonian_ev[i * n + k];
+  h[at * all + at] += c->onsite_ev;
+  for (int b = 0; b < c->bonds; b++) {
+    size_t other = (size_t)c->partner[b];
+    h[at * all + other] = h[other * all + at] += c->hopping_ev[b];
+  }
+  for (size_t k = 0; k < (size_t)c->chain; k++) {
+    size_t from = k ? n + k - 1 : at, to = n + k;
+    h[to * all + to] = c->chain_onsite_ev[k];
+    h[from * all + to] = h[to * all + from] = c->chain_hopping_ev[k];
+  }
+  for (size_t side = 0; side < 2; side++) {
+    memcpy(vector + side * all, j->lead[side].vector, n * sizeof *vector);
+    lead[side].vector = vector + side * all;
+  }
+  assert_int_equal(mho_junction_from_hamiltonian((int)all, h, 0, 0, &lead[0], &lead[1], &own, NULL), MHO_OK);
+  assert_int_equal(mho_plan_create(&own, &plan, NULL), MHO_OK);
+  assert_int_equal(mho_thermal_log10(plan, NULL, fermi, levels, 0.0259, log10_g0, NULL), MHO_OK);
+  mho_plan_free(plan);
+  mho_junction_clear(&own);
+  free(h);
+  free(vector);
+}
+
+static void changes_of_a_site_are_new_junctions(void **state)
+{
+  (void)state;
+  static const char *const smiles[] = {"Nc1ccc(cc1)-c1ccc(N)cc1", "Nc1cccc(N)c1",
+                                       "Sc1ccc2cc3cc(S)ccc3cc2c1", "Nc1ccc(C=Cc2ccc(N)cc2)cc1"};
+  double fermi[3] = {-0.4, 0, 0.5}, fast[12], slow[3];
+  int reached = 0, tried = 0;
+  for (size_t m = 0; m < sizeof smiles / sizeof *smiles; m++) {
+    subject s = mapped(smiles[m], 0, NULL);
+    for (int site = 0; site < s.junction.sites; site++) {
+      const double *row = s.junction.hamiltonian_ev + site * s.junction.sites;
+      mho_site_change change[4] = {{.site = site, .onsite_ev = -1.377},
+                                   {.site = site, .chain = 1, .chain_onsite_ev = {-4},
+                                    .chain_hopping_ev = {-2.2}},
+                                   {.site = site, .chain = 2, .chain_onsite_ev = {0.01, -1.4},
+                                    .chain_hopping_ev = {-2.7, -3.1}},
+                                   {.site = site, .onsite_ev = -1.377}};
+      for (int k = 0; k < s.junction.sites && change[3].bonds < 2; k++)
+        if (k != site && row[k] != 0) {
+          change[3].partner[change[3].bonds] = k;
+          change[3].hopping_ev[change[3].bonds++] = 0.1 * row[k];
+        }
+      bool good[4];
+      assert_int_equal(mho_site_changes(&s.junction, change, 4, fermi, 3, 0.0259, fast, good, NULL), MHO_OK);
+      for (int k = 0; k < 4; k++) {
+        tried++;
+        if (!good[k]) continue;
+        changed_log10(&s.junction, &change[k], fermi, 3, slow);
+        for (int l = 0; l < 3; l++) assert_near(fast[3 * k + l], slow[l], 1e-8);
+        reached++;
+      }
+    }
+    clear(&s);
+  }
+  print_message("%d of %d changes by the formula\n", reached, tried);
+  assert_true(reached > tried / 2);
+}
+
 /* A modified molecule is the one that a chemist would draw. */
 static void modifications_are_the_molecules_drawn(void **state)
 {
@@ -368,6 +442,7 @@ int main(void)
       cmocka_unit_test(azulene_breaks_the_rules),
       cmocka_unit_test(the_verdict_turns_where_it_says),
       cmocka_unit_test(sampled_nodes_are_the_exact_ones),
+      cmocka_unit_test(changes_of_a_site_are_new_junctions),
       cmocka_unit_test(modifications_are_the_molecules_drawn),
       cmocka_unit_test(what_cannot_be_mapped_is_refused),
   };
