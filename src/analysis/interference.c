@@ -162,10 +162,12 @@ static bool is_centred(const mho_junction *j)
 
 /* Near a level: each pair by its plan, without a bare Green's function. */
 static mho_status evaluate_by_plans(const mho_junction *j, double coupling_ev,
-                                    mho_interference *map, mho_error *error)
+                                    const size_t *leader, mho_interference *map,
+                                    mho_error *error)
 {
   mho_status status = MHO_OK;
   for (size_t p = 0; status == MHO_OK && p < map->count; p++) {
+    if (leader[p] != p) continue;
     mho_plan *plan;
     mho_point point = {0};
     status = mho_pair_plan(j, map->pair[p].site, coupling_ev, &plan, error);
@@ -263,30 +265,41 @@ static void copy_leaders(const size_t *leader, mho_interference *map)
   }
 }
 
-static mho_status evaluate(const mho_junction *j, double coupling_ev, const mho_pair_graph *graph,
-                           bool nodes, mho_interference *map, mho_error *error)
+/* By the bare Green's function, which serves every pair. */
+static mho_status evaluate_by_green(const mho_junction *j, double coupling_ev,
+                                    const mho_pair_graph *graph, const size_t *leader,
+                                    bool nodes, mho_interference *map, mho_error *error)
 {
   size_t n = (size_t)j->sites;
-  for (size_t k = 0; k < n; k++)
-    if (fabs(j->fermi_ev - j->level_ev[k]) < LEVEL_REACH_EV)
-      return evaluate_by_plans(j, coupling_ev, map, error);
   double *green = malloc(2 * n * n * sizeof *green), *reference = NULL;
-  size_t *leader = malloc((map->count + 1) * sizeof *leader);
-  mho_status status = green && leader ? mho_pairs_orbits(j, graph, map, leader) : MHO_ERR_MEMORY;
-  if (status == MHO_OK) status = mho_bare_green(j, j->fermi_ev, green + n * n, green, error);
+  mho_status status = green ? mho_bare_green(j, j->fermi_ev, green + n * n, green, error)
+                            : mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   for (size_t p = 0; status == MHO_OK && p < map->count; p++)
     if (leader[p] == p) evaluate_pair(j, coupling_ev, green, &map->pair[p]);
   if (status == MHO_OK) copy_leaders(leader, map);
   free(green);
-  if (status == MHO_OK && !(reference = references(graph, map))) status = MHO_ERR_MEMORY;
-  if (status == MHO_ERR_MEMORY)
+  if (status == MHO_OK && !(reference = references(graph, map)))
     status = mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   if (status == MHO_OK) classify(j, graph, reference, map);
   if (status == MHO_OK && nodes)
     status = mho_pairs_nodes(j, coupling_ev, reference, leader, map, error);
+  free(reference);
+  return status;
+}
+
+static mho_status evaluate(const mho_junction *j, double coupling_ev, const mho_pair_graph *graph,
+                           bool nodes, mho_interference *map, mho_error *error)
+{
+  double nearest = INFINITY;
+  for (int k = 0; k < j->sites; k++) nearest = fmin(nearest, fabs(j->fermi_ev - j->level_ev[k]));
+  size_t *leader = malloc((map->count + 1) * sizeof *leader);
+  mho_status status = leader ? mho_pairs_orbits(j, graph, map, leader) : MHO_ERR_MEMORY;
+  if (status != MHO_OK) mho_fail(error, status, "analysis", NULL, "out of memory");
+  else if (nearest < LEVEL_REACH_EV)
+    status = evaluate_by_plans(j, coupling_ev, leader, map, error);
+  else status = evaluate_by_green(j, coupling_ev, graph, leader, nodes, map, error);
   if (status == MHO_OK) copy_leaders(leader, map);
   free(leader);
-  free(reference);
   return status;
 }
 
