@@ -142,6 +142,7 @@ static mho_status add_twist(const work *w, mho_error *error)
                         plane ? "log10 of T at the Fermi level against the angles of two bonds."
                               : "log10 of T against angle and energy.", true, &script, error);
   const mho_table *table = mho_output_find(w->output, plane ? "twist_plane" : "twist_map");
+  if (status == MHO_OK) status = mho_output_check(w->output, error); /* cells may be missing */
   if (status == MHO_OK && table) mho_figure_twist_map(script, table, w->molecule->name);
   return status;
 }
@@ -261,7 +262,8 @@ mho_status mho_levers_finish(const mho_study *study, const mho_output *output, m
                              mho_error *error)
 {
   const mho_table *table = mho_output_find(output, "twist");
-  if (!table || study->twist.at.given) return MHO_OK;
+  mho_status status = mho_output_check(output, error);
+  if (status != MHO_OK || !table || study->twist.at.given) return status;
   for (int first = 0, drawn; ; first += drawn) {
     mho_buffer script = {0};
     drawn = mho_figure_twist(&script, table, first);
