@@ -215,7 +215,7 @@ def check_threads():
 
 def check_killed():
     """Killed at random moments and resumed: nothing lost, nothing twice."""
-    total, taken = busy("killed.smi", 0.3)
+    total, taken = busy("killed.smi", 0.8)
     command = [MHO, "screen", "killed.smi", "--store", "killed.db", "--resume", "--quiet", "--csv"]
     whole = subprocess.run(command, capture_output=True)
     reference = content("killed.db")
@@ -225,7 +225,7 @@ def check_killed():
     kills = middle = 0
     while kills < KILLS:
         process = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL)
-        time.sleep(draw.random() * 0.4 * taken)
+        time.sleep(draw.random() * 0.6 * taken)
         process.kill()
         kills += process.wait() != 0
         rows = content("killed.db")[1] if os.path.exists("killed.db") and \
@@ -237,7 +237,7 @@ def check_killed():
     done = subprocess.run(command, capture_output=True)
     expect(content("killed.db") == reference, "and so in the end")
     expect(done.stdout == whole.stdout, "and the same table")
-    expect(middle >= KILLS // 4, "it was killed amid its work", middle)
+    expect(middle >= KILLS // 10, "it was killed amid its work", middle)
     print(f"{kills} kills, {middle} with a part of the rows done")
 
 
