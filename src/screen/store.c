@@ -115,12 +115,10 @@ static mho_status add_meta(mho_screen_store *s, const mho_meta *meta, mho_error 
 static mho_status create(mho_screen_store *s, const mho_meta *meta, mho_error *error)
 {
   mho_buffer sql = {0};
-  mho_buffer_add(&sql, "BEGIN IMMEDIATE;");
   add_schema(&sql);
   mho_status status = mho_buffer_check(&sql, "screen", error);
   if (status == MHO_OK) status = execute(s, sql.data, error);
   if (status == MHO_OK) status = add_meta(s, meta, error);
-  if (status == MHO_OK) status = execute(s, "COMMIT", error);
   mho_buffer_clear(&sql);
   return status;
 }
@@ -236,7 +234,7 @@ mho_status mho_store_begin(const char *path, bool resume, const mho_meta *meta,
                            mho_screen_store **store, mho_error *error)
 {
   struct stat what;
-  bool exists = strcmp(path, MEMORY) && lstat(path, &what) == 0, empty = true;
+  bool exists = strcmp(path, MEMORY) && lstat(path, &what) == 0, empty = true, ours = false;
   *store = NULL;
   if (exists && !resume)
     return mho_fail_at(error, MHO_ERR_RANGE, "screen", path, 0, 0, "store",
@@ -246,14 +244,16 @@ mho_status mho_store_begin(const char *path, bool resume, const mho_meta *meta,
       connect(path, SQLITE_OPEN_READWRITE | SQLITE_OPEN_CREATE, store, error);
   mho_screen_store *s = *store;
   if (status == MHO_OK)
-    status = execute(s, "PRAGMA journal_mode=DELETE; PRAGMA synchronous=FULL", error);
+    status = execute(s, "PRAGMA journal_mode=DELETE; PRAGMA synchronous=FULL; BEGIN IMMEDIATE", error);
   if (status == MHO_OK) status = look_inside(s, &empty, error);
   if (status == MHO_OK && !empty) status = mho_meta_compare(&s->meta, meta, path, error);
   if (status == MHO_OK && empty) {
+    ours = !exists && strcmp(path, MEMORY);
     status = create(s, meta, error);
     if (status == MHO_OK) status = look_inside(s, &empty, error);
-    if (status != MHO_OK && !exists) unlink(path);
   }
+  if (status == MHO_OK) status = execute(s, "COMMIT", error);
+  if (status != MHO_OK && ours) unlink(path);
   if (status == MHO_OK) status = prepare_writing(s, error);
   if (status != MHO_OK) {
     mho_screen_store_close(s);
