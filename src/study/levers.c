@@ -83,8 +83,8 @@ static mho_status take_remarks(mho_output *words, const char *section, mho_lever
 {
   mho_remark *larger =
       realloc(levers->remark, (levers->remarks + words->notes + 1) * sizeof *larger);
+  if (larger) levers->remark = larger;
   if (!larger || words->failed) return fail_memory(error);
-  levers->remark = larger;
   for (size_t i = 0; i < words->notes; i++) {
     levers->remark[levers->remarks++] = (mho_remark){section, words->note[i]};
     words->note[i] = NULL;
