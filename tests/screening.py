@@ -320,7 +320,6 @@ def check_refusals():
             (["newer.db", "--show"], "version 99"), (["text.db", "--failed"], "not a store"),
             (["foreign.db", "--show"], "something else"), (["gone.db", "--show"], "cannot be opened"),
             (["r.db", "--show", "--fermi=midgap"], "belong to the screening"),
-            (["r.smi", "--dry-run", "--store", "x.db"], "--dry-run"),
             (["r.smi"], "--store"), (["r.smi", "other.smi", "--store", "x.db"], "one is allowed"),
             (["r.db", "--show", "--require", "gap > 2"], "unit"),
             (["r.db", "--show", "--require", "grap > 2 eV"], "gap")]:
@@ -375,6 +374,34 @@ def check_show():
            "a dry run counts and estimates", estimate.stdout)
 
 
+def check_study():
+    """The same screening as a question of a study."""
+    write("study.csv", ["name,smiles"] + [f"m{i},{m}" for i, m in enumerate(LINKED + BAD)])
+    aim = ["minimise length", "gap > 2 eV"]
+    write("study.yaml", ["study: which of them?", "molecules:", f"  - {{name: one, smiles: {LINKED[0]}}}",
+                         "questions:", f"  screen: {{list: study.csv, goal: {aim[0]}, require: [{aim[1]}]}}"])
+    done = mho("run", "study.yaml", "-o", "results", "--quiet")
+    expect(done.returncode == 0, "a study screens", done.stderr)
+    alone = mho("screen", "study.csv", "--store", "study.db", "--goal", aim[0], "--require", aim[1],
+                "--csv", "--quiet")
+    expect(open("results/screen.csv").read() == alone.stdout, "a study ranks as the command does")
+    expect(open("results/failures.csv").read() == mho("screen", "study.db", "--failed", "--csv").stdout,
+           "a study lists the bad rows")
+    expect(content("results/screening.db")[0][-10:] == content("study.db")[0][-10:],
+           "a study keeps the store")
+    report = open("results/report.html").read()
+    expect('id="screening"' in report and "Best of 7 candidates" in report, "the report says so")
+    for line, wrong in (("list: nothing.csv", "5:18: list: nothing.csv cannot be read"),
+                        ("list: study.csv, require: gap > 2 nm", "5:38: require: "),
+                        ("list: study.csv, goal: maximise gab", "5:35: goal: "),
+                        ("require: gap > 2 eV", "5:11: key 'list' is missing")):
+        write("bad.yaml", ["study: x", "molecules:", f"  - {{name: one, smiles: {LINKED[0]}}}",
+                           "questions:", f"  screen: {{{line}}}"])
+        said = mho("run", "bad.yaml", "-o", "none")
+        expect(said.returncode == 2 and wrong in said.stderr and not os.path.exists("none"),
+               f"refused: {line}", said.stderr)
+
+
 def check_memory():
     """Memory does not grow with the list."""
     peaks = []
@@ -391,8 +418,8 @@ def check_memory():
 
 
 def main():
-    checks = [check_lists, check_structures, check_numbers, check_threads, check_refusals, check_show,
-              check_two_writers, check_disk_full, check_interrupted, check_memory, check_killed]
+    checks = [check_lists, check_structures, check_numbers, check_threads, check_refusals,
+              check_show, check_study, check_two_writers, check_disk_full, check_interrupted, check_memory, check_killed]
     for check in checks:
         scratch = tempfile.mkdtemp()
         os.chdir(scratch)

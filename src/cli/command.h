@@ -10,6 +10,7 @@
 
 #include "report/table.h"
 #include "study/interference.h"
+#include "study/screening.h"
 #include "study/twist.h"
 
 enum { EXIT_DONE = 0, EXIT_RUNTIME = 1, EXIT_INPUT = 2 };
@@ -38,12 +39,8 @@ typedef struct {
 /* What options say about a screening. */
 typedef struct {
   const char *store; /* --store, or NULL */
-  bool resume, show, failed, dry_run, has_top;
-  long top;
-  bool has_goal;
-  mho_screen_goal goal;
-  int requirements;
-  mho_screen_requirement requirement[32];
+  bool resume, show, failed, dry_run;
+  mho_screening_question question;
 } screen_options;
 
 /* Everything that options can say; each verb uses its part. */

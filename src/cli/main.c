@@ -412,8 +412,8 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_GOAL: return read_goal(cmd, text);
   case OPT_REQUIRE: return read_require(cmd, text);
   case OPT_TOP:
-    cmd->screen.has_top = true;
-    return read_count(cmd->verb, "top", text, 1, 1000000000, &cmd->screen.top);
+    cmd->screen.question.has_top = true;
+    return read_count(cmd->verb, "top", text, 1, 1000000000, &cmd->screen.question.top);
   case OPT_SAMPLES:
     cmd->has_samples = true;
     return read_count(cmd->verb, "samples", text, 2, 1000000, &cmd->samples);

@@ -1,5 +1,4 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-#include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -7,15 +6,14 @@
 
 #include "base/text.h"
 #include "cli/command.h"
-#include "report/stages.h"
 
 #include <mho/screen_store.h>
 
 int read_goal(command *cmd, const char *text)
 {
   char reason[1000];
-  cmd->screen.has_goal = true;
-  if (mho_screen_goal_read(text, &cmd->screen.goal, reason, sizeof reason) == MHO_OK)
+  cmd->screen.question.has_goal = true;
+  if (mho_screen_goal_read(text, &cmd->screen.question.goal, reason, sizeof reason) == MHO_OK)
     return EXIT_DONE;
   return usage_error(cmd->verb, "--goal: %s", reason);
 }
@@ -23,10 +21,9 @@ int read_goal(command *cmd, const char *text)
 int read_require(command *cmd, const char *text)
 {
   char reason[1000];
-  screen_options *s = &cmd->screen;
-  const int most = sizeof s->requirement / sizeof *s->requirement;
-  if (s->requirements == most)
-    return usage_error(cmd->verb, "--require: at most %d are allowed", most);
+  mho_screening_question *s = &cmd->screen.question;
+  if (s->requirements == SCREENING_REQUIREMENTS_MAX)
+    return usage_error(cmd->verb, "--require: at most %d are allowed", SCREENING_REQUIREMENTS_MAX);
   if (mho_screen_require_read(text, &s->requirement[s->requirements++], reason, sizeof reason) ==
       MHO_OK)
     return EXIT_DONE;
@@ -35,148 +32,30 @@ int read_require(command *cmd, const char *text)
 
 /* --- looking at a store --------------------------------------------------- */
 
-/* What is wanted: options first, then what the store was made for. */
-typedef struct {
-  mho_screen_rank_options rank;
-  mho_screen_requirement requirement[32];
-} aims;
-
-static mho_status read_stored_requirements(const char *text, aims *a, char *reason, size_t size)
-{
-  mho_status status = MHO_OK;
-  const size_t most = sizeof a->requirement / sizeof *a->requirement;
-  while (status == MHO_OK && *text && a->rank.requirements < most) {
-    size_t length = strcspn(text, ";");
-    char *one = mho_print_text("%.*s", (int)length, text);
-    if (!one) return MHO_ERR_MEMORY;
-    status = mho_screen_require_read(one, &a->requirement[a->rank.requirements++], reason, size);
-    free(one);
-    text += length + (text[length] == ';');
-  }
-  return status;
-}
-
-static mho_status find_aims(const command *cmd, const mho_screen_store *store, const char *path,
-                            aims *a, mho_error *error)
-{
-  const screen_options *s = &cmd->screen;
-  char reason[1000] = "";
-  mho_status status = MHO_OK;
-  const char *goal = mho_screen_store_meta(store, "goal");
-  const char *require = mho_screen_store_meta(store, "require");
-  const char *seed = mho_screen_store_meta(store, "seed");
-  *a = (aims){.rank = mho_screen_rank_defaults()};
-  if (s->has_goal) a->rank.goal = s->goal;
-  else if (goal) status = mho_screen_goal_read(goal, &a->rank.goal, reason, sizeof reason);
-  if (s->requirements > 0) {
-    memcpy(a->requirement, s->requirement, sizeof a->requirement);
-    a->rank.requirements = (size_t)s->requirements;
-  } else if (status == MHO_OK && require) {
-    status = read_stored_requirements(require, a, reason, sizeof reason);
-  }
-  a->rank.requirement = a->requirement;
-  if (seed) a->rank.seed = strtoull(seed, NULL, 10);
-  if (s->has_top) a->rank.top = (size_t)s->top;
-  if (status == MHO_OK) return MHO_OK;
-  return mho_fail_at(error, MHO_ERR_RANGE, "cli", path, 0, 0, NULL, "is damaged: %s", reason);
-}
-
-/* Candidates by rank; those without one are left out. */
-static size_t *sort_places(const mho_screen_place *place, size_t count, size_t ranked)
-{
-  size_t *order = calloc(ranked + 1, sizeof *order);
-  for (size_t i = 0; order && i < count; i++)
-    if (place[i].rank >= 1 && place[i].rank <= ranked) order[place[i].rank - 1] = i;
-  return order;
-}
-
-typedef struct {
-  mho_screen_store *store;
-  aims aims;
-  mho_screen_quantities *quantities;
-  uint64_t *row;
-  mho_screen_place *place;
-  size_t count, *order;
-  mho_screen_ranking ranking;
-} shelf;
-
-static mho_status load(const command *cmd, const char *path, shelf *sh, mho_error *error)
-{
-  mho_status status = find_aims(cmd, sh->store, path, &sh->aims, error);
-  if (status == MHO_OK)
-    status = mho_screen_store_load(sh->store, &sh->quantities, &sh->row, &sh->count, error);
-  if (status != MHO_OK) return status;
-  sh->place = calloc(sh->count + 1, sizeof *sh->place);
-  if (!sh->place) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
-  status = mho_screen_rank(sh->quantities, sh->count, &sh->aims.rank, sh->place, &sh->ranking, error);
-  if (status != MHO_OK) return status;
-  sh->order = sort_places(sh->place, sh->count, sh->ranking.ranked);
-  return sh->order ? MHO_OK : mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
-}
-
-static mho_status list_places(const command *cmd, const shelf *sh, mho_output *output,
-                              mho_error *error)
-{
-  bool eye = format_of(cmd) == FORMAT_SCREEN;
-  int width = eye && !cmd->exact ? screen_width_of(cmd) : 0;
-  size_t shown = sh->ranking.ranked;
-  if (cmd->screen.has_top || eye)
-    shown = shown < sh->aims.rank.top ? shown : sh->aims.rank.top;
-  unsigned warnings = 0;
-  mho_status status = MHO_OK;
-  mho_table *table = mho_screening_table(output, width);
-  for (size_t i = 0; status == MHO_OK && i < shown; i++) {
-    size_t at = sh->order[i];
-    mho_screen_text text;
-    status = mho_screen_store_candidate(sh->store, sh->row[at], &text, error);
-    if (status != MHO_OK) break;
-    mho_screening_row(table, width, &text, &sh->place[at], &sh->quantities[at]);
-    if (!eye) mho_output_warn(output, text.name, (unsigned)sh->quantities[at].warnings);
-    warnings |= (unsigned)sh->quantities[at].warnings;
-  }
-  if (cmd->quiet || status != MHO_OK) return status;
-  if (shown < sh->ranking.ranked)
-    mho_output_note(output, "the first %zu of %zu; --top N lists more, --csv all", shown,
-                    sh->ranking.ranked);
-  mho_screening_note(output, &sh->aims.rank, &sh->ranking, eye ? warnings : 0);
-  mho_screening_state_note(output, mho_screen_store_counts(sh->store));
-  return MHO_OK;
-}
-
 static mho_status show(const command *cmd, const char *path, mho_error *error)
 {
-  shelf sh = {0};
+  bool eye = format_of(cmd) == FORMAT_SCREEN;
+  mho_screening_view view = {.all = !eye && !cmd->screen.question.has_top,
+                             .eye = eye,
+                             .width = eye && !cmd->exact ? screen_width_of(cmd) : 0,
+                             .remarks = !cmd->quiet};
   mho_output output = {0};
-  mho_status status = mho_screen_store_open(path, &sh.store, error);
-  if (status == MHO_OK) status = load(cmd, path, &sh, error);
-  if (status == MHO_OK) status = list_places(cmd, &sh, &output, error);
+  mho_status status =
+      mho_screening_list(&cmd->screen.question, path, &view, &output, NULL, error);
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
-  free(sh.quantities);
-  free(sh.row);
-  free(sh.place);
-  free(sh.order);
-  mho_screen_store_close(sh.store);
   return status;
 }
 
 static mho_status list_failed(const command *cmd, const char *path, mho_error *error)
 {
-  mho_screen_store *store;
   mho_output output = {0};
-  mho_screen_text text = {0};
-  mho_status status = mho_screen_store_open(path, &store, error);
-  mho_table *table = mho_failures_table(&output);
-  while (status == MHO_OK) {
-    status = mho_screen_store_failure(store, text.row, &text, error);
-    if (status != MHO_OK || !text.row) break;
-    mho_failures_row(table, &text);
-  }
-  if (status == MHO_OK && !cmd->quiet && mho_table_rows(table) == 0)
+  mho_status status = mho_screening_failures(path, &output, error);
+  const mho_table *table = mho_output_find(&output, "failures");
+  if (status == MHO_OK && !cmd->quiet && table && mho_table_rows(table) == 0)
     mho_output_note(&output, "no row is bad");
   if (status == MHO_OK) status = output_write(cmd, &output, error);
   mho_output_clear(&output);
-  mho_screen_store_close(store);
   return status;
 }
 
@@ -221,7 +100,7 @@ static void on_batch(const mho_screen_counts *counts, void *user)
 
 static mho_screen_job job_of(const command *cmd)
 {
-  const screen_options *s = &cmd->screen;
+  const mho_screening_question *s = &cmd->screen.question;
   mho_screen_job job = mho_screen_job_defaults();
   job.list = cmd->file[0];
   job.settings = &cmd->overrides;
@@ -307,7 +186,7 @@ static int check_looking(const command *cmd)
   if (changes_results(&cmd->overrides) || cmd->has_window)
     return usage_error(cmd->verb, "%s lists what was computed; options of the computation belong to "
                                   "the screening itself", what);
-  if (s->failed && (s->has_goal || s->requirements || s->has_top))
+  if (s->failed && (s->question.has_goal || s->question.requirements || s->question.has_top))
     return usage_error(cmd->verb, "--goal, --require and --top go with --show");
   return EXIT_DONE;
 }
@@ -315,8 +194,6 @@ static int check_looking(const command *cmd)
 static int check_computing(const command *cmd)
 {
   const screen_options *s = &cmd->screen;
-  if (s->dry_run && (s->store || s->resume))
-    return usage_error(cmd->verb, "--dry-run writes nothing; it excludes --store and --resume");
   if (!s->store && !s->dry_run)
     return usage_error(cmd->verb, "--store FILE.db is missing; results go there (or --show to look "
                                   "at a store, --dry-run to estimate)");

@@ -40,7 +40,8 @@ static const char style[] =
     "vertical-align:top}"
     "th{border-bottom:2px solid #5a6270;font-weight:600}"
     "td.number{white-space:nowrap}"
-    "th:first-child,td:first-child,td.text{text-align:left}"
+    "th:first-child,td:first-child,th.text,td.text{text-align:left}"
+    "td.text{overflow-wrap:anywhere}"
     "td.node{color:#5a6270;font-style:italic}"
     "figure{margin:1rem 0}figure img{width:100%;height:auto}"
     ".portraits{display:flex;flex-wrap:wrap;gap:1rem}.portraits figure{margin:0;max-width:100%}"
@@ -74,6 +75,9 @@ static const struct {
     {"ratio_measured", "ratio measured"},
     {"deviation_decades", "deviation (decades)"},
     {"width_decades", "width (decades)"},
+    {"gap_eV", "gap (eV)"},
+    {"length_nm", "length (nm)"},
+    {"top_probability", "top probability"},
     {"warnings", "warnings"},
     {"angle_deg", "angle (°)"},
     {"second_angle_deg", "second angle (°)"},
@@ -127,7 +131,8 @@ static void write_table(const mho_output *output, const char *name, mho_buffer *
   if (!table) return;
   mho_buffer_add(buffer, "<div class=\"wide\"><table><thead><tr>");
   for (size_t c = 0; c < table->columns; c++)
-    mho_buffer_print(buffer, "<th>%s</th>", heading_of(table->column[c]));
+    mho_buffer_print(buffer, "<th%s>%s</th>", c < 32 && table->left >> c & 1 ? " class=\"text\"" : "",
+                     heading_of(table->column[c]));
   mho_buffer_add(buffer, "</tr></thead><tbody>\n");
   for (size_t i = 0; i < table->cells; i++) {
     if (i % table->columns == 0) mho_buffer_add(buffer, "<tr>");
@@ -281,6 +286,23 @@ static void write_stage(const mho_report *report, const char *id, const char *ti
   mho_buffer_add(buffer, "</section>\n");
 }
 
+enum { SCREENING_ROWS_SHOWN = 30 };
+
+static void write_screening(const mho_report *report, mho_buffer *buffer)
+{
+  const mho_table *table = mho_output_find(report->output, "screen");
+  if (!table) return;
+  begin_section(buffer, "screening", "Which of the list to make");
+  mho_buffer_add(buffer,
+                 "<p>Candidates by rank. Low and high are one standard deviation of the "
+                 "parameters; the top probability is the chance to be among the first when all "
+                 "err together.</p>\n");
+  bool few = mho_table_rows(table) <= SCREENING_ROWS_SHOWN;
+  (few ? write_table : write_folded)(report->output, "screen", buffer);
+  write_folded(report->output, "failures", buffer);
+  mho_buffer_add(buffer, "</section>\n");
+}
+
 static void write_levers(const mho_report *report, mho_buffer *buffer)
 {
   static const char *const sensitivity[] = {"sensitivity", NULL};
@@ -296,6 +318,7 @@ static void write_levers(const mho_report *report, mho_buffer *buffer)
               "T between every two sites that a linker may sit on, at the Fermi level: which pairs "
               "conduct, which are nodes, and how far the Fermi level may move before that turns.",
               "interference", interference, buffer);
+  write_screening(report, buffer);
 }
 
 static void write_results(const mho_report *report, mho_buffer *buffer)

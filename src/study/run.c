@@ -566,6 +566,36 @@ static char *default_folder(const mho_study *study)
   return mho_print_text("%.*s-results", (int)length, path);
 }
 
+/* The list into a store of the results folder, and ranked. */
+static mho_status screen(run *r, mho_error *error)
+{
+  const mho_study *s = r->study;
+  if (!s->screen_list) return MHO_OK;
+  mho_screen_counts counts = {0};
+  mho_screen_job job = mho_screen_job_defaults();
+  job.list = s->screen_list;
+  job.settings = &s->screen_settings;
+  job.screen.window_ev = s->window_ev;
+  job.goal = s->screening.has_goal ? &s->screening.goal : NULL;
+  job.requirement = s->screening.requirement;
+  job.requirements = (size_t)s->screening.requirements;
+  job.cancel = r->options->cancel;
+  char *path = mho_folder_path(&r->folder, "screening.db"), *best = NULL;
+  mho_screening_view view = {.all = !s->screening.has_top, .remarks = true};
+  mho_status status = path ? step(r, "screening", error) : fail_memory(error);
+  if (status == MHO_OK) status = mho_screen_run(&job, path, false, &counts, error);
+  if (status == MHO_OK)
+    status = mho_screening_list(&s->screening, path, &view, &r->output, &best, error);
+  if (status == MHO_OK && counts.bad) status = mho_screening_failures(path, &r->output, error);
+  if (status == MHO_OK && best)
+    say(r, mho_print_text("Best of %llu candidates: %s.", (unsigned long long)counts.good, best));
+  else if (status == MHO_OK)
+    say(r, mho_copy_text("No candidate of the list meets what is required."));
+  free(best);
+  free(path);
+  return status;
+}
+
 static mho_status execute(run *r, mho_error *error)
 {
   const mho_study *s = r->study;
@@ -579,7 +609,8 @@ static mho_status execute(run *r, mho_error *error)
   status = compute_levers(r, error);
   if (status != MHO_OK) return status;
   answer(r);
-  status = draw_molecules(r, error);
+  status = screen(r, error);
+  if (status == MHO_OK) status = draw_molecules(r, error);
   if (status == MHO_OK) status = draw_figures(r, error);
   if (status == MHO_OK) status = step(r, "report", error);
   if (status == MHO_OK) status = mho_output_check(&r->output, error);
@@ -629,7 +660,7 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   run r = {.study = study, .options = options ? options : &nothing};
   r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
             study->traces_count + (mho_levers_asked(study) ? study->molecule_count : 0) +
-            (study->compare ? study->molecule_count : 0);
+            (study->compare ? study->molecule_count : 0) + (study->screen_list != NULL);
   r.outcome = calloc(n, sizeof *r.outcome);
   r.portrait = calloc(n, sizeof *r.portrait);
   r.conductance = calloc(n, sizeof *r.conductance);

@@ -11,6 +11,7 @@
 #include <mho/traces.h>
 
 #include "study/interference.h"
+#include "study/screening.h"
 #include "study/twist.h"
 
 typedef struct {
@@ -46,6 +47,9 @@ struct mho_study {
   mho_twist_question twist;
   mho_interference_question interference;
   bool *asks_twist, *asks_interference; /* [molecule_count] */
+  char *screen_list; /* NULL: no screening is asked for */
+  mho_settings screen_settings; /* defaults and options */
+  mho_screening_question screening;
   bool compare;
   int reference; /* index, or -1 */
 };

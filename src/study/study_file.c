@@ -2,9 +2,11 @@
  *
  * Reads a study file and the molecules it names.
  */
+#include <errno.h>
 #include <glob.h>
 #include <stdlib.h>
 #include <string.h>
+#include <sys/stat.h>
 #include <unistd.h>
 
 #include <mho/molecule_file.h>
@@ -436,10 +438,65 @@ static void read_interference_question(reader *r, const mho_yaml_node *node)
                     s->interference.from.text, s->molecule[i].name ? s->molecule[i].name : "");
 }
 
+static void read_requirement(reader *r, const mho_yaml_node *node)
+{
+  mho_screening_question *q = &r->study->screening;
+  const char *text;
+  char reason[1000];
+  if (!mho_yaml_get_text(&r->yaml, node, "require", &text)) return;
+  if (q->requirements == SCREENING_REQUIREMENTS_MAX)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_RANGE, "require", "require: at most %d are allowed",
+                  SCREENING_REQUIREMENTS_MAX);
+  else if (mho_screen_require_read(text, &q->requirement[q->requirements++], reason,
+                                   sizeof reason) != MHO_OK)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_RANGE, "require", "require: %s", reason);
+}
+
+/* A list is one of the inputs, and beside the study; of a folder the store says
+ * what was in it. */
+static void read_screen_list(reader *r, const mho_yaml_node *node)
+{
+  const char *name;
+  struct stat about;
+  if (!mho_yaml_get_text(&r->yaml, node, "list", &name)) return;
+  char *path = r->study->screen_list = mho_path_beside(r->yaml.file, name);
+  if (!path) fail_memory(r);
+  else if (stat(path, &about) != 0)
+    mho_yaml_fail(&r->yaml, node, MHO_ERR_FILE, "list", "list: %.300s cannot be read: %s", path,
+                  strerror(errno));
+  else if (!S_ISDIR(about.st_mode)) add_input(r, path, path);
+}
+
+static void read_screen_question(reader *r, const mho_yaml_node *node)
+{
+  static const char *const keys[] = {"list", "goal", "require", "top"};
+  mho_screening_question *q = &r->study->screening;
+  const char *text;
+  char reason[1000];
+  if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "screen")) return;
+  mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
+  if (mho_settings_merge(&r->study->screen_settings, &r->study->defaults) != MHO_OK ||
+      (r->overrides &&
+       mho_settings_merge(&r->study->screen_settings, r->overrides) != MHO_OK))
+    fail_memory(r);
+  read_screen_list(r, mho_yaml_require(&r->yaml, node, "list"));
+  const mho_yaml_node *goal = mho_yaml_find(node, "goal");
+  if (mho_yaml_get_text(&r->yaml, goal, "goal", &text)) {
+    q->has_goal = true;
+    if (mho_screen_goal_read(text, &q->goal, reason, sizeof reason) != MHO_OK)
+      mho_yaml_fail(&r->yaml, goal, MHO_ERR_RANGE, "goal", "goal: %s", reason);
+  }
+  const mho_yaml_node *require = mho_yaml_find(node, "require");
+  bool list = require && require->kind == MHO_YAML_LIST;
+  for (size_t i = 0; require && i < (list ? require->count : 1); i++)
+    read_requirement(r, list ? require->item[i] : require);
+  q->has_top = mho_yaml_get_integer(&r->yaml, mho_yaml_find(node, "top"), "top", 1, 1000000, &q->top);
+}
+
 static void read_questions(reader *r)
 {
   static const char *const keys[] = {"conductance", "transmission", "twist", "interference",
-                                     "compare"};
+                                     "screen", "compare"};
   static const char *const conductance_keys[] = {"window", "sensitivity"};
   static const char *const compare_keys[] = {"reference"};
   mho_study *s = r->study;
@@ -450,6 +507,7 @@ static void read_questions(reader *r)
   read_transmission_question(r, mho_yaml_find(node, "transmission"));
   read_twist_question(r, mho_yaml_find(node, "twist"));
   read_interference_question(r, mho_yaml_find(node, "interference"));
+  read_screen_question(r, mho_yaml_find(node, "screen"));
   const mho_yaml_node *conductance = mho_yaml_find(node, "conductance");
   if (mho_yaml_is(&r->yaml, conductance, MHO_YAML_MAPPING, "conductance")) {
     mho_yaml_check_keys(&r->yaml, conductance, conductance_keys, COUNT(conductance_keys));
@@ -536,6 +594,8 @@ void mho_study_free(mho_study *study)
     free((char *)(size_t)study->traces[t].options.columns);
   }
   free(study->traces);
+  free(study->screen_list);
+  mho_settings_clear(&study->screen_settings);
   free(study->asks_twist);
   free(study->asks_interference);
   free(study->molecule);
