@@ -67,7 +67,8 @@ def check_report(folder):
     reader.feed(text)
     expect(not reader.open, "every element is closed")
     expect(reader.sections == ["question", "molecules", "comparison", "predictions", "sensitivity",
-                               "twist", "interference", "transmission", "currents", "warnings",
+                               "twist", "interference", "screening", "transmission", "currents",
+                               "warnings",
                                "assumptions", "limits"], f"sections {reader.sections}")
     expect(all(link.startswith("data:") for link in reader.links), "nothing is loaded")
     plain = re.sub(r"data:[^\"]*", "", text).replace('xmlns="http://www.w3.org/2000/svg"', "")
