@@ -10,12 +10,23 @@
 
 #include "analysis/thermal.h"
 
-/* Contacts of one kind: the same element at both, coupled the same way. */
+/* The linker found at a site, or NULL. */
+static const char *kind_at(const mho_molecule *molecule, int site)
+{
+  for (int i = 0; i < molecule->linker_count; i++)
+    if (molecule->linker[i].site == site) return molecule->linker[i].kind;
+  return NULL;
+}
+
+/* One coupling, one row of the parameters and, where linkers were found, one kind. */
 static bool one_kind(const mho_molecule *molecule)
 {
   const mho_contact *left = &molecule->contact[MHO_LEFT], *right = &molecule->contact[MHO_RIGHT];
-  return left->count > 0 && right->count > 0 && left->coupling_ev == right->coupling_ev &&
-         molecule->site[left->site[0]].row == molecule->site[right->site[0]].row;
+  if (left->count == 0 || right->count == 0 || left->coupling_ev != right->coupling_ev ||
+      molecule->site[left->site[0]].row != molecule->site[right->site[0]].row)
+    return false;
+  const char *a = kind_at(molecule, left->site[0]), *b = kind_at(molecule, right->site[0]);
+  return !a || !b || !strcmp(a, b);
 }
 
 static bool can_turn(const mho_bond *bond)
