@@ -48,6 +48,8 @@ def content(store):
     try:
         expect(database.execute("PRAGMA integrity_check").fetchall() == [("ok",)],
                "a store is sound")
+        if not database.execute("SELECT name FROM sqlite_master").fetchall():
+            return [], 0  # killed before it was begun, and rolled back
         tables = [row for table in ("meta", "candidate", "failure")
                   for row in database.execute(f"SELECT * FROM {table} ORDER BY 1")]
         rows = sorted(row for table in ("candidate", "failure")
