@@ -32,7 +32,8 @@ static double run_twist(const mho_rotor *rotor, double fermi, double *cosine, do
   mho_twist_form form;
   bool good;
   need(mho_twist_form_find(rotor, fermi, &form, &good, NULL));
-  for (int i = 0; i < ANGLES; i++) cosine[i] = mho_cos_deg(90.0 * i / (ANGLES - 1));
+  for (int i = 0; i < ANGLES; i++) cosine[i] = 90.0 * i / (ANGLES - 1);
+  mho_cos_deg_many(ANGLES, cosine, cosine);
   mho_twist_form_evaluate(&form, ANGLES, cosine, value);
   return good ? now() - start : -1;
 }
@@ -40,7 +41,8 @@ static double run_twist(const mho_rotor *rotor, double fermi, double *cosine, do
 static double run_map(const mho_rotor *rotor, double fermi, double *cosine, double *value)
 {
   double start = now();
-  for (int i = 0; i < SIDE; i++) cosine[i] = mho_cos_deg(90.0 * i / (SIDE - 1));
+  for (int i = 0; i < SIDE; i++) cosine[i] = 90.0 * i / (SIDE - 1);
+  mho_cos_deg_many(SIDE, cosine, cosine);
   for (int e = 0; e < SIDE; e++) {
     mho_twist_form form;
     bool good;

@@ -152,6 +152,9 @@ MHO_API MHO_MUST_USE mho_status mho_molecule_warn_length(mho_molecule *molecule)
 /* cos of an angle in degrees, exact at multiples of 90 and 60 degrees. */
 MHO_API double mho_cos_deg(double angle_deg);
 
+/* The same of many angles, within 2e-16 of it; the arrays may be one. */
+MHO_API void mho_cos_deg_many(size_t count, const double *angle_deg, double *cosine);
+
 MHO_END_DECLARATIONS
 
 #endif

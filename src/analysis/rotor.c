@@ -12,6 +12,7 @@
 #include "analysis/perturb.h"
 #include "analysis/thermal.h"
 #include "base/lapack.h"
+#include "base/processor.h"
 
 /* Where the form is held against the plan, and to what. */
 static const double check_deg[ROTOR_CHECKS] = {0.0, 41.0, 79.0};
@@ -251,8 +252,9 @@ mho_status mho_twist_form_find(const mho_rotor *rotor, double energy_ev, mho_twi
   return status;
 }
 
-void mho_twist_form_evaluate(const mho_twist_form *form, size_t count, const double *cosine,
-                             double *transmission)
+FOR_EVERY_PROCESSOR
+static void evaluate(const mho_twist_form *form, size_t count, const double *cosine,
+                     double *transmission)
 {
   const double *a = form->numerator, *d = form->denominator, t = form->hopping_ev;
   if (a[1] == 0 && a[3] == 0 && d[1] == 0 && d[3] == 0) {
@@ -269,6 +271,12 @@ void mho_twist_form_evaluate(const mho_twist_form *form, size_t count, const dou
     transmission[i] = (a[0] + s * (a[1] + s * (a[2] + s * (a[3] + s * a[4])))) /
                       (d[0] + s * (d[1] + s * (d[2] + s * (d[3] + s * d[4]))));
   }
+}
+
+void mho_twist_form_evaluate(const mho_twist_form *form, size_t count, const double *cosine,
+                             double *transmission)
+{
+  evaluate(form, count, cosine, transmission);
 }
 
 /* Do the terms of a polynomial cancel at s? */

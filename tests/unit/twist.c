@@ -389,9 +389,30 @@ static void limits_are_those_of_the_curve(void **state)
   clear(&s);
 }
 
+/* Against long double, and exact where mho_cos_deg is. */
+static void cosines_of_many_angles(void **state)
+{
+  (void)state;
+  enum { COUNT = 20001 };
+  static double angle[COUNT], cosine[COUNT];
+  for (int i = 0; i < COUNT; i++) angle[i] = -1000 + 0.1 * i + (i % 3) * 1e-7;
+  mho_cos_deg_many(COUNT, angle, cosine);
+  for (int i = 0; i < COUNT; i++)
+    assert_true(fabsl(cosine[i] - cosl(angle[i] * (acosl(-1.0L) / 180))) < 2e-16L);
+  double whole[] = {0, 60, 90, 120, 180, 240, 270, 300, 360, -60, -90, 450, 45, 1e12 + 90};
+  enum { WHOLE = sizeof whole / sizeof *whole };
+  double expected[WHOLE];
+  for (int i = 0; i < WHOLE; i++) expected[i] = mho_cos_deg(whole[i]);
+  mho_cos_deg_many(WHOLE - 2, whole, cosine);
+  for (int i = 0; i < WHOLE - 2; i++) assert_true(cosine[i] == expected[i]);
+  mho_cos_deg_many(WHOLE, whole, whole); /* in place, with one that is too large */
+  for (int i = 0; i < WHOLE; i++) assert_true(whole[i] == expected[i]);
+}
+
 int main(void)
 {
   const struct CMUnitTest tests[] = {
+      cmocka_unit_test(cosines_of_many_angles),
       cmocka_unit_test(the_closed_form_is_the_plan),
       cmocka_unit_test(several_channels_turn_too),
       cmocka_unit_test(biphenyl_has_its_values),
