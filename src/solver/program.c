@@ -273,8 +273,9 @@ static void eliminate_all(compiler *c)
       p->kept_slot[a][b] = p->kept_slot[b][a] =
           i == j ? diagonal_slot(c, i) : pair_slot(c, i, j);
       const link *pair = find_link(&c->row[i], j);
-      p->kept_value_ev[a][b] = i == j ? c->diagonal[i] : pair ? pair->value : 0;
-      p->kept_roundings[a][b] = i == j ? c->diagonal_roundings[i] : pair && pair->roundings > 0 ? pair->roundings : 0;
+      int roundings = i == j ? c->diagonal_roundings[i] : pair ? pair->roundings : 0;
+      p->kept_member[a][b] = (mho_program_member){
+          i == j ? c->diagonal[i] : pair ? pair->value : 0, roundings > 0 ? roundings : 0};
     }
   p->tail_loads = (int)(p->loads - before);
 }

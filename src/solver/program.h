@@ -3,8 +3,8 @@
  * Elimination of a sparse H compiled once: every site that no contact touches
  * is eliminated in a fixed order, in real arithmetic, for many energies at a
  * time, without pivoting.  What is left is the Schur complement on the contacts'
- * sites.  Going back over the program gives the derivative of ln T to every
- * number that arose, and with it the condition of T and a bound on its error.
+ * sites.  Going back over the program gives the answers of all sites to them, and
+ * with these a bound on the error of ln T and, if wanted, its condition.
  */
 #ifndef MHOLECULE_SOLVER_PROGRAM_H
 #define MHOLECULE_SOLVER_PROGRAM_H
@@ -43,8 +43,7 @@ struct mho_program {
   int kept;  /* sites of the contacts */
   int kept_site[PROGRAM_KEPT_MAX];
   int kept_slot[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
-  int kept_roundings[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
-  double kept_value_ev[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
+  mho_program_member kept_member[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX];
   int tail_loads; /* that no pivot asked for */
   size_t taped;   /* numbers a lane puts on the tape */
 };

@@ -284,8 +284,9 @@ INLINED void finish_back(int kept, bool pair, const mho_program *program,
         int at = program->kept_slot[a][b];
         if (at < 0) continue;
         double hat = trace->adjoint[(a * kept + b) * L + l];
-        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * program->kept_roundings[a][b];
-        all->kappa[l] += fabs(hat * program->kept_value_ev[a][b]);
+        const mho_program_member *member = &program->kept_member[a][b];
+        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * member->weight;
+        all->kappa[l] += fabs(hat * member->value_ev);
         if (a == b) all->total[l] += hat;
       }
     trace->error[l] = roundoff * error;
