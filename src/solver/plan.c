@@ -12,6 +12,7 @@
 
 #include "solver/program.h"
 #include "solver/repeat.h"
+#include "solver/rows.h"
 
 /* Smaller molecules are as fast without a compiled elimination, and longer ones of
  * equal units faster. */
@@ -131,15 +132,34 @@ static mho_status find_connection(mho_plan *plan)
   return status;
 }
 
+static mho_status make_room_for_levels(mho_plan *plan)
+{
+  size_t n = (size_t)plan->sites, m = (size_t)plan->channels;
+  plan->level_ev = malloc(n * sizeof(double));
+  plan->amplitude = malloc(n * m * sizeof(double));
+  bool pair = plan->left == 1 && plan->right == 1;
+  if (pair) plan->pair = malloc(n * sizeof *plan->pair);
+  return plan->level_ev && plan->amplitude && (plan->pair || !pair) ? MHO_OK : MHO_ERR_MEMORY;
+}
+
+/* What follows from levels and amplitudes. */
+static void finish_levels(mho_plan *plan)
+{
+  int n = plan->sites;
+  plan->norm_ev = fmax(fabs(plan->level_ev[0]), fabs(plan->level_ev[n - 1]));
+  for (int k = 0; plan->pair && k < n; k++) {
+    double w0 = plan->amplitude[2 * k], w1 = plan->amplitude[2 * k + 1];
+    plan->pair[k] = (mho_pole_pair){plan->level_ev[k], w0 * w0, w0 * w1, w1 * w1};
+  }
+}
+
 /* <orbital k|v_c> for all levels and channels. */
 static mho_status project_orbitals(const mho_junction *junction, mho_plan *plan)
 {
   size_t n = (size_t)junction->sites, m = (size_t)plan->channels;
-  plan->level_ev = malloc(n * sizeof(double));
-  plan->amplitude = malloc(n * m * sizeof(double));
-  if (!plan->level_ev || !plan->amplitude) return MHO_ERR_MEMORY;
+  mho_status status = make_room_for_levels(plan);
+  if (status != MHO_OK) return status;
   memcpy(plan->level_ev, junction->level_ev, n * sizeof(double));
-  plan->norm_ev = fmax(fabs(plan->level_ev[0]), fabs(plan->level_ev[n - 1]));
   for (size_t k = 0; k < n; k++)
     for (size_t c = 0; c < m; c++) {
       double sum = 0;
@@ -149,12 +169,25 @@ static mho_status project_orbitals(const mho_junction *junction, mho_plan *plan)
       }
       plan->amplitude[k * m + c] = sum;
     }
-  if (plan->left != 1 || plan->right != 1) return MHO_OK;
-  plan->pair = malloc(n * sizeof *plan->pair);
-  if (!plan->pair) return MHO_ERR_MEMORY;
-  for (size_t k = 0; k < n; k++) {
-    double w0 = plan->amplitude[2 * k], w1 = plan->amplitude[2 * k + 1];
-    plan->pair[k] = (mho_pole_pair){plan->level_ev[k], w0 * w0, w0 * w1, w1 * w1};
+  finish_levels(plan);
+  return MHO_OK;
+}
+
+/* The same without a diagonalised junction, where that is worth it. */
+static mho_status find_levels(mho_plan *plan)
+{
+  bool pair = plan->left == 1 && plan->right == 1;
+  if (!pair || plan->sites > SPECTRUM_SITES_MAX) return MHO_OK;
+  mho_status status = make_room_for_levels(plan);
+  if (status != MHO_OK) return status;
+  if (mho_rows_diagonalise(plan, plan->level_ev, (double(*)[2])plan->amplitude)) {
+    finish_levels(plan);
+  } else {
+    free(plan->pair);
+    free(plan->amplitude);
+    free(plan->level_ev);
+    plan->pair = NULL;
+    plan->amplitude = plan->level_ev = NULL;
   }
   return MHO_OK;
 }
@@ -282,6 +315,7 @@ mho_status mho_plan_create_sparse(int sites, const mho_entry *entry, size_t entr
   if (entries) memcpy((*plan)->entry, entry, entries * sizeof *entry);
   status = prepare(left, right, *plan);
   if (status == MHO_OK) status = bound_norm(*plan);
+  if (status == MHO_OK) status = find_levels(*plan);
   return finish(status, plan, error);
 }
 

@@ -19,8 +19,13 @@ enum { SPECTRUM_LANES = 16 };
 void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
                            mho_estimate *estimate);
 
+typedef struct {
+  double transmission[SPECTRUM_LANES], log10_transmission[SPECTRUM_LANES];
+  double relative_error[SPECTRUM_LANES]; /* not finite where the sums cannot tell */
+} mho_spectrum_batch;
+
 /* At energy_ev[SPECTRUM_LANES] for one channel a contact. */
 void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
-                                mho_estimate *estimate);
+                                mho_spectrum_batch *batch);
 
 #endif

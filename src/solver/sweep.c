@@ -279,33 +279,35 @@ static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point
   return status == MHO_OK ? run_program(plan, work, true, point) : status;
 }
 
-/* Takes an estimate of the sum over levels if it is good. */
-static mho_status take_or_pass(const mho_plan *plan, workspace *work, const mho_estimate *estimate,
-                               double energy_ev, size_t index, mho_point *point)
+/* One energy by the sum over levels, for any number of channels. */
+static mho_status sum_levels(const mho_plan *plan, workspace *work, double energy_ev, size_t index,
+                             mho_point *point)
 {
-  if (!keeps_contract(estimate)) return pass_on(plan, work, false, energy_ev, index, point);
-  set_point(plan, estimate, MHO_METHOD_SPECTRUM, &point[index]);
+  mho_estimate estimate;
+  mho_spectrum_evaluate(plan, energy_ev, &estimate);
+  if (!keeps_contract(&estimate)) return pass_on(plan, work, false, energy_ev, index, point);
+  set_point(plan, &estimate, MHO_METHOD_SPECTRUM, &point[index]);
   return MHO_OK;
 }
 
-/* Energies first .. first + count - 1, at most SPECTRUM_LANES. */
-static mho_status evaluate(const mho_plan *plan, workspace *work, const double *energy_ev,
-                           size_t first, size_t count, mho_point *point)
+static double at_most(double x, double most) { return x < most ? x : most; }
+
+/* Up to SPECTRUM_LANES energies, the first of them point[first]'s. */
+static mho_status sum_levels_of_pair(const mho_plan *plan, workspace *work, const double *energy_ev,
+                                     size_t first, size_t count, mho_point *point)
 {
-  mho_estimate estimate[SPECTRUM_LANES];
+  mho_spectrum_batch batch;
   double lane[SPECTRUM_LANES];
-  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
-                (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
-  bool pair = plan->left == 1 && plan->right == 1;
-  for (size_t l = 0; l < SPECTRUM_LANES; l++) {
-    lane[l] = energy_ev[first + (l < count ? l : 0)];
-    estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (levels && !pair && l < count) mho_spectrum_evaluate(plan, lane[l], &estimate[l]);
-  }
-  if (levels && pair) mho_spectrum_evaluate_pair(plan, lane, estimate);
+  for (size_t l = 0; l < SPECTRUM_LANES; l++) lane[l] = energy_ev[l < count ? l : 0];
+  mho_spectrum_evaluate_pair(plan, lane, &batch);
   mho_status status = MHO_OK;
   for (size_t l = 0; status == MHO_OK && l < count; l++)
-    status = take_or_pass(plan, work, &estimate[l], lane[l], first + l, point);
+    if (batch.relative_error[l] <= CONTRACT_FLOOR)
+      point[first + l] = (mho_point){.transmission = at_most(batch.transmission[l], 1),
+                                     .log10_transmission = at_most(batch.log10_transmission[l], 0),
+                                     .relative_error = batch.relative_error[l],
+                                     .method = MHO_METHOD_SPECTRUM};
+    else status = pass_on(plan, work, false, lane[l], first + l, point);
   return status;
 }
 
@@ -316,9 +318,14 @@ static mho_status sweep_wide_band(const mho_plan *plan, workspace *work, size_t 
   for (size_t i = 0; !plan->connected && i < count; i++)
     point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
   if (!plan->connected) return MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < count; i += SPECTRUM_LANES)
-    status = evaluate(plan, work, energy_ev, i,
-                      count - i < SPECTRUM_LANES ? count - i : SPECTRUM_LANES, point);
+  bool levels = plan->level_ev && plan->first <= MHO_METHOD_SPECTRUM &&
+                (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
+  size_t lanes = levels && plan->pair ? SPECTRUM_LANES : 1;
+  for (size_t i = 0; status == MHO_OK && i < count; i += lanes)
+    if (!levels) status = pass_on(plan, work, false, energy_ev[i], i, point);
+    else if (!plan->pair) status = sum_levels(plan, work, energy_ev[i], i, point);
+    else status = sum_levels_of_pair(plan, work, energy_ev + i, i,
+                                     count - i < lanes ? count - i : lanes, point);
   return status == MHO_OK ? settle(plan, work, point) : status;
 }
 
