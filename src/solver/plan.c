@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * What the methods share: non-zeros of H, channels, a narrow order of the
- * sites, and the orbitals' amplitudes where the molecule was diagonalised.
+ * sites, and the orbitals' amplitudes on the contacts where that is worth it.
  */
 #include "solver/plan.h"
 
@@ -367,7 +367,7 @@ const char *mho_plan_describe(const mho_plan *plan, char *buffer, size_t size)
              plan->repeat->units, plan->repeat->unit);
   snprintf(buffer, size, "%s%s; %s; %s", repeat,
            plan->level_ev ? "sum over levels, as the molecule is diagonalised"
-                          : "no sum over levels, as only the non-zero entries are given",
+                          : "no sum over levels, as the molecule is not diagonalised",
            compiled, band);
   return buffer;
 }

@@ -53,7 +53,8 @@ struct mho_plan {
 #define UNIT_ROUNDOFF (0.5 * DBL_EPSILON)
 
 /* Up to here the sum over levels is worth its bookkeeping.  Of larger molecules
- * too few energies keep the contract that way, if there is a program instead. */
+ * too few energies keep the contract that way: rounding in levels and amplitudes
+ * grows against a T that falls with the length. */
 enum { SPECTRUM_CHANNELS_MAX = 8, SPECTRUM_SITES_MAX = 36 };
 
 /* A value with what is known of its error.  `kappa` is a lower bound of the

@@ -17,11 +17,15 @@
 
 enum { S = ROWS_SITES_MAX, SWEEPS_MAX = 60 };
 
-/* Off-diagonal elements below this part of the largest element count as zero. */
-#define NEGLIGIBLE (DBL_EPSILON / 8)
+/* Off-diagonal elements below this part of the norm count as zero; smaller ones than
+ * the last digit of a level may never shrink. */
+#define NEGLIGIBLE DBL_EPSILON
 
-/* A square below it has no use; elements are of the order of an eV. */
-#define VANISHING 1e-280
+/* A square below it counts as zero; so that squares and their ratios neither
+ * vanish nor overflow, the largest element of H has to be within these bounds. */
+#define VANISHING 1e-200
+#define LARGEST_MIN 1e-30
+#define LARGEST_MAX 1e30
 
 /* Reflects site k's neighbours below it onto site k + 1; v is normalised to
  * v^T v = 2 and starts at k + 1.  False: nothing to do. */
@@ -133,23 +137,25 @@ INLINED void rotate(int first, int last, const turns *turn, double (*amplitude)[
   amplitude[first][1] = b;
 }
 
-static void change_sign(double *amplitude)
+INLINED void change_sign(double *amplitude)
 {
   amplitude[0] = -amplitude[0];
   amplitude[1] = -amplitude[1];
 }
 
-/* Squares of the off-diagonals, made positive first; the largest element. */
-static double square(int sites, const double *d, double *e, double (*amplitude)[2])
+/* Squares of the off-diagonals, made positive first; the largest sum over a row. */
+INLINED double square(int sites, const double *d, double *e, double (*amplitude)[2])
 {
-  double largest = 0, sign = 1;
+  double norm = 0, sign = 1, before = 0;
   for (int i = 0; i < sites; i++) {
-    largest = fmax(largest, fmax(fabs(d[i]), fabs(e[i])));
+    double size = before + fabs(d[i]) + fabs(e[i]);
+    norm = size > norm ? size : norm;
+    before = fabs(e[i]);
     if (sign < 0) change_sign(amplitude[i]);
     if (e[i] < 0) sign = -sign;
     e[i] *= e[i];
   }
-  return largest;
+  return norm;
 }
 
 FOR_EVERY_PROCESSOR
@@ -185,17 +191,21 @@ static void sort(int sites, double *level, double (*amplitude)[2])
   }
 }
 
-/* H and both vectors in rows that end in zeros, so that they are whole vectors. */
-static void fill(const mho_plan *plan, int stride, double *h, double *row)
+/* H and both vectors in rows that end in zeros, so that they are whole vectors;
+ * the largest element of H. */
+static double fill(const mho_plan *plan, int stride, double *h, double *row)
 {
+  double largest = 0;
   for (size_t e = 0; e < plan->entries; e++) {
     int i = plan->entry[e].i, j = plan->entry[e].j;
-    h[i * stride + j] += plan->entry[e].value_ev;
-    if (i != j) h[j * stride + i] = h[i * stride + j];
+    double value = h[i * stride + j] += plan->entry[e].value_ev;
+    h[j * stride + i] = value;
+    largest = fmax(largest, fabs(value));
   }
   for (int side = 0; side < 2; side++)
     memcpy(row + side * stride, plan->vector + side * plan->sites,
            (size_t)plan->sites * sizeof *row);
+  return largest;
 }
 
 bool mho_rows_diagonalise(const mho_plan *plan, double *level_ev, double (*amplitude)[2])
@@ -203,7 +213,8 @@ bool mho_rows_diagonalise(const mho_plan *plan, double *level_ev, double (*ampli
   int n = plan->sites, stride = (n + 7) & ~7;
   double h[S * S], row[2 * S] = {0}, beside[S];
   memset(h, 0, (size_t)(n * stride) * sizeof *h);
-  fill(plan, stride, h, row);
+  double largest = fill(plan, stride, h, row);
+  if (!(largest >= LARGEST_MIN && largest <= LARGEST_MAX)) return false;
   tridiagonalise(n, stride, h, row, level_ev, beside);
   for (int i = 0; i < n; i++)
     for (int k = 0; k < 2; k++) amplitude[i][k] = row[k * stride + i];

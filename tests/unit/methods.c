@@ -83,6 +83,32 @@ static void compare(mho_plan *plan, double energy, tally *count)
   plan->band = band;
 }
 
+/* The same junction by its non-zero entries. */
+static mho_plan *sparse_plan_of(const raw *r)
+{
+  size_t n = (size_t)r->sites, count = 0;
+  mho_entry *entry = malloc(n * n * sizeof *entry);
+  mho_plan *plan = NULL;
+  for (size_t i = 0; i < n; i++)
+    for (size_t j = i; j < n; j++)
+      if (r->h[i * n + j] != 0) entry[count++] = (mho_entry){(int)i, (int)j, r->h[i * n + j]};
+  assert_int_equal(
+      mho_plan_create_sparse(r->sites, entry, count, &r->lead[0], &r->lead[1], &plan, NULL), MHO_OK);
+  free(entry);
+  return plan;
+}
+
+/* Zero pivots, a level, its flank, far away, a node. */
+static void compare_at_special_energies(mho_plan *plan, double level, double flank, tally *count)
+{
+  double special[] = {0.0, BETA, level, level + flank, -1e6};
+  for (size_t k = 0; k < sizeof special / sizeof *special; k++) compare(plan, special[k], count);
+  mho_nodes nodes;
+  assert_int_equal(mho_nodes_find(plan, &nodes, NULL), MHO_OK);
+  if (nodes.count) compare(plan, nodes.node[nodes.count / 2].energy_ev, count);
+  mho_nodes_clear(&nodes);
+}
+
 static void methods_agree_on_random_graphs(void **state)
 {
   (void)state;
@@ -91,18 +117,14 @@ static void methods_agree_on_random_graphs(void **state)
     int sites = trial < 60 ? 2 + trial / 2 + (trial % 2) * 9 : 60 + 70 * (trial - 60);
     double gamma[2], zero = 0, *vectors = malloc(2 * (size_t)sites * sizeof(double));
     raw r = random_junction(sites, gamma, &zero, vectors);
-    mho_plan *plan = plan_of(&r, false, false);
-    double level = plan->level_ev[(size_t)(uniform() * sites)];
-    compare(plan, 8 * uniform() - 4, &count);
-    if (sites < 100) { /* zero pivots, a level, its flank, far away, a node */
-      double special[] = {0.0, BETA, level, level + gamma[0] + gamma[1], -1e6};
-      for (size_t k = 0; k < sizeof special / sizeof *special; k++) compare(plan, special[k], &count);
-      mho_nodes nodes;
-      assert_int_equal(mho_nodes_find(plan, &nodes, NULL), MHO_OK);
-      if (nodes.count) compare(plan, nodes.node[nodes.count / 2].energy_ev, &count);
-      mho_nodes_clear(&nodes);
+    mho_plan *plan[2] = {plan_of(&r, false, false), sparse_plan_of(&r)};
+    double level = plan[0]->level_ev[(size_t)(uniform() * sites)], energy = 8 * uniform() - 4;
+    for (int given = 0; given < 2; given++) {
+      compare(plan[given], energy, &count);
+      if (sites < 100)
+        compare_at_special_energies(plan[given], level, gamma[0] + gamma[1], &count);
+      mho_plan_free(plan[given]);
     }
-    mho_plan_free(plan);
     free(r.h);
     free(vectors);
   }
