@@ -35,7 +35,7 @@ typedef struct {
 typedef struct {
   link *link;
   int count, capacity;
-} row;
+} links;
 
 typedef struct {
   int *item;
@@ -45,7 +45,7 @@ typedef struct {
 typedef struct {
   const mho_plan *plan;
   mho_program *program;
-  row *row; /* [sites], without the diagonal */
+  links *row; /* [sites], without the diagonal */
   link *shorts; /* [sites][ROW_SHORT] */
   bool *kept;
   number *number;
@@ -80,7 +80,7 @@ static void push(compiler *c, list *l, int item)
 
 /* --- rows --------------------------------------------------------------------------- */
 
-static const link *find_link(const row *r, int site)
+static const link *find_link(const links *r, int site)
 {
   for (int k = 0; k < r->count; k++)
     if (r->link[k].site == site) return &r->link[k];
@@ -89,7 +89,7 @@ static const link *find_link(const row *r, int site)
 
 static void add_link(compiler *c, int from, int to, int n)
 {
-  row *r = &c->row[from];
+  links *r = &c->row[from];
   if (r->count == r->capacity) {
     bool was_short = r->capacity == ROW_SHORT;
     link *moved = realloc(was_short ? NULL : r->link, 2 * (size_t)r->capacity * sizeof *moved);
@@ -104,7 +104,7 @@ static void add_link(compiler *c, int from, int to, int n)
   r->link[r->count++] = (link){to, n};
 }
 
-static void remove_link(row *r, int site)
+static void remove_link(links *r, int site)
 {
   for (int k = 0; k < r->count; k++)
     if (r->link[k].site == site) r->link[k--] = r->link[--r->count];
@@ -175,7 +175,7 @@ static int next_site(compiler *c)
 
 static void eliminate(compiler *c, int site)
 {
-  row *r = &c->row[site];
+  links *r = &c->row[site];
   int count = r->count;
   c->place[site] = (int)c->site.count;
   push(c, &c->site, site);
@@ -351,14 +351,14 @@ static bool start(compiler *c)
   c->queue = c->before + n;
   c->place = c->queue + n;
   for (size_t i = 0; i < n; i++) {
-    c->row[i] = (row){c->shorts + i * ROW_SHORT, 0, ROW_SHORT};
+    c->row[i] = (links){c->shorts + i * ROW_SHORT, 0, ROW_SHORT};
     add_number(c, 0);
   }
   for (size_t e = 0; e < plan->entries && !c->failed; e++) {
     int i = plan->entry[e].i, j = plan->entry[e].j;
     double value = plan->entry[e].value_ev;
-    int n = value != 0 ? joined(c, i, j, 0) : -1;
-    if (n >= 0) c->number[n].value += value;
+    int it = value != 0 ? joined(c, i, j, 0) : -1;
+    if (it >= 0) c->number[it].value += value;
   }
   return !c->failed;
 }

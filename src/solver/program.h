@@ -10,7 +10,7 @@
 
 #include "solver/plan.h"
 
-enum { PROGRAM_LANES = 16, PROGRAM_KEPT_MAX = 8, PROGRAM_BARE = -1, PROGRAM_BARE_ROW = 3 };
+enum { PROGRAM_LANES = 32, PROGRAM_KEPT_MAX = 8, PROGRAM_BARE = -1, PROGRAM_BARE_ROW = 3 };
 
 /* A number of H that comes alive: E - value on the diagonal, else -value. */
 typedef struct {
@@ -66,13 +66,13 @@ MHO_MUST_USE mho_status mho_program_trace_create(const mho_program *program,
                                                  mho_program_trace *trace);
 void mho_program_trace_clear(mho_program_trace *trace);
 
-/* Eliminates at energy_ev[PROGRAM_LANES]; the kept slots then hold the Schur
- * complement.  norm_ev is that of H. */
-void mho_program_forward(const mho_program *program, const double *energy_ev, double norm_ev,
-                         mho_program_trace *trace);
+/* Eliminates at energy_ev[PROGRAM_LANES], of which the first `count` matter; the kept
+ * slots then hold the Schur complement.  norm_ev is that of H. */
+void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
+                         double norm_ev, mho_program_trace *trace);
 
 /* From the adjoints of the Schur complement to the error. */
-void mho_program_backward(const mho_program *program, const double *energy_ev,
+void mho_program_backward(const mho_program *program, const double *energy_ev, size_t count,
                           mho_program_trace *trace);
 
 /* For contacts of one site each: T and the relative error of this last step at

@@ -52,7 +52,8 @@ enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
 #pragma GCC diagnostic ignored "-Wpsabi"
 
 /* Lanes in a register, loaded and stored by their address; and all lanes of a
- * number, kept in registers where loops over VECTORS are innermost. */
+ * number, kept in registers where loops over vectors are innermost.  How many of the
+ * vectors count is a constant where this is inlined: one for few energies, or all. */
 enum { VECTOR = 8, VECTORS = L / VECTOR };
 typedef double vector __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
 typedef long long bits __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
@@ -62,7 +63,7 @@ typedef struct {
 typedef struct {
   vector high, low;
 } pair;
-#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < VECTORS; v++)
+#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < vectors; v++)
 #define AT(array, v) (*(vector *)((array) + (v) * VECTOR))
 #define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
 
@@ -98,6 +99,11 @@ INLINED vector fused(vector a, vector b, vector c)
   return result;
 }
 
+INLINED vector splat(double value)
+{
+  return (vector){0} + value;
+}
+
 INLINED pair pair_at(const double *number, int v)
 {
   return (pair){AT(number, v), AT(number + L, v)};
@@ -127,7 +133,7 @@ INLINED pair times(vector a, pair b)
 /* -1/d by a Newton step. */
 INLINED pair inverse(pair d)
 {
-  vector first = -1.0 / d.high, rest = fused(d.high, first, (vector){0} + 1.0);
+  vector first = -1.0 / d.high, rest = fused(d.high, first, splat(1.0));
   return (pair){first, first * fused(d.low, first, rest)};
 }
 
@@ -145,21 +151,23 @@ INLINED void add(pair p, double *s, int v)
   store_normal(sum.high, sum.low + (AT(s + L, v) + p.low), s, v);
 }
 
-INLINED vector splat(double value)
+/* E - value; most sites have none. */
+INLINED pair diagonal(const double *energy_ev, double value_ev, int v)
 {
-  return (vector){0} + value;
+  if (value_ev == 0) return (pair){AT(energy_ev, v), splat(0)};
+  return sum_of(AT(energy_ev, v), splat(-value_ev));
 }
 
 /* --- forward ------------------------------------------------------------------------ */
 
-INLINED void load(const mho_program_step *step, const mho_program_load *next,
+INLINED void load(int vectors, const mho_program_step *step, const mho_program_load *next,
                   const double *energy_ev, mho_program_trace *trace)
 {
   for (int k = 0; k < step->diagonals; k++, next++) {
     double *s = PROGRAM_NUMBER(trace, next->slot);
     EACH_VECTOR(v)
     {
-      pair d = sum_of(AT(energy_ev, v), splat(-next->value_ev));
+      pair d = diagonal(energy_ev, next->value_ev, v);
       AT(s, v) = d.high;
       AT(s + L, v) = d.low;
     }
@@ -169,7 +177,7 @@ INLINED void load(const mho_program_step *step, const mho_program_load *next,
     EACH_VECTOR(v)
     {
       AT(s, v) = splat(-next->value_ev);
-      AT(s + L, v) = (vector){0};
+      AT(s + L, v) = splat(0);
     }
   }
 }
@@ -189,7 +197,7 @@ INLINED void eliminate(int row, int pivot, const int *slot, double *tape, int v,
   const int *target = slot + 2 * row;
   pair w = inverse(pair_at(PROGRAM_NUMBER(trace, pivot), v)), a[UNROLLED];
   AT(tape, v) = w.high;
-  *squares += w.high * w.high;
+  *squares = fused(w.high, w.high, *squares);
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     pair entry = pair_at(PROGRAM_NUMBER(trace, slot[i]), v);
@@ -213,8 +221,8 @@ INLINED void eliminate_bare(int row, const mho_program_load *bare, const int *sl
                             mho_program_trace *trace)
 {
   const int *target = slot + row;
-  pair w = inverse(sum_of(AT(energy_ev, v), splat(-bare[0].value_ev)));
-  *squares += w.high * w.high;
+  pair w = inverse(diagonal(energy_ev, bare[0].value_ev, v));
+  *squares = fused(w.high, w.high, *squares);
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     pair aw = times(splat(bare[1 + i].value_ev), w);
@@ -224,9 +232,8 @@ INLINED void eliminate_bare(int row, const mho_program_load *bare, const int *sl
   }
 }
 
-FOR_EVERY_PROCESSOR
-void mho_program_forward(const mho_program *program, const double *energy_ev, double norm_ev,
-                         mho_program_trace *trace)
+INLINED void forward(int vectors, const mho_program *program, const double *energy_ev,
+                     double norm_ev, mho_program_trace *trace)
 {
   const mho_program_load *next = program->load;
   const int *slot = program->slot;
@@ -237,7 +244,7 @@ void mho_program_forward(const mho_program *program, const double *energy_ev, do
     const mho_program_load *bare = next;
     int row = step->row, pairs = row * (row + 1) / 2;
     if (step->pivot == PROGRAM_BARE) next += 1 + row;
-    load(step, next, energy_ev, trace);
+    load(vectors, step, next, energy_ev, trace);
     next += step->diagonals + step->bonds;
     if (step->pivot == PROGRAM_BARE) {
 #define ELIMINATE(row)                                                               \
@@ -263,10 +270,18 @@ void mho_program_forward(const mho_program *program, const double *energy_ev, do
     tape += (1 + row) * L;
     slot += 2 * row + pairs;
   }
-  load(&program->last, next, energy_ev, trace);
+  load(vectors, &program->last, next, energy_ev, trace);
   double most = 1 / (PIVOT * norm_ev);
   for (int l = 0; l < L; l++)
     trace->broken[l] = !(squares.of[l / VECTOR][l % VECTOR] < most * most);
+}
+
+FOR_EVERY_PROCESSOR
+void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
+                         double norm_ev, mho_program_trace *trace)
+{
+  if (count <= VECTOR) forward(1, program, energy_ev, norm_ev, trace);
+  else forward(VECTORS, program, energy_ev, norm_ev, trace);
 }
 
 /* --- and back ----------------------------------------------------------------------- */
@@ -285,7 +300,7 @@ INLINED vector form(int kept, const double *size, int v, const lanes *x)
 
 /* Back over one step: the answer of its site from those of its row.  `row` and `kept`
  * are constants where this is inlined for the usual cases. */
-INLINED void return_step(int row, int kept, int pivot, const int *diagonal, const double *tape,
+INLINED void return_step(int vectors, int row, int kept, int pivot, const int *diagonal, const double *tape,
                          const double *size, double *response, lanes *error)
 {
   double *own = response + (ptrdiff_t)pivot * kept * L;
@@ -310,8 +325,8 @@ INLINED void return_step(int row, int kept, int pivot, const int *diagonal, cons
 }
 
 /* The same for a bare step, whose answer nobody needs. */
-INLINED void return_bare(int row, int kept, const mho_program_load *bare, const int *diagonal,
-                         const double *energy_ev, const double *size, const double *response,
+INLINED void return_bare(int vectors, int row, int kept, const mho_program_load *bare,
+                         const int *diagonal, const double *energy_ev, const double *size, const double *response,
                          lanes *error)
 {
   lanes moduli[PROGRAM_KEPT_MAX];
@@ -362,7 +377,7 @@ INLINED void finish_back(int kept, const mho_program *program, const lanes *erro
   for (int l = 0; l < L; l++) trace->error[l] *= UNIT;
 }
 
-INLINED void backward(int kept, const mho_program *program, const double *energy_ev,
+INLINED void backward(int vectors, int kept, const mho_program *program, const double *energy_ev,
                       mho_program_trace *trace)
 {
   const int *slot = program->slot + program->slots_listed;
@@ -379,7 +394,8 @@ INLINED void backward(int kept, const mho_program *program, const double *energy
     bare -= step->diagonals + step->bonds;
     if (step->pivot == PROGRAM_BARE) {
       bare -= 1 + row;
-#define RETURN_STEP(row) return_bare(row, kept, bare, slot, energy_ev, size, trace->response, &error)
+#define RETURN_STEP(row)                                                              \
+  return_bare(vectors, row, kept, bare, slot, energy_ev, size, trace->response, &error)
       switch (row) {
       case 1: RETURN_STEP(1); break;
       case 2: RETURN_STEP(2); break;
@@ -390,7 +406,7 @@ INLINED void backward(int kept, const mho_program *program, const double *energy
     }
     tape -= (1 + row) * L;
 #define RETURN_STEP(row)                                                             \
-  return_step(row, kept, step->pivot, slot, tape, size, trace->response, &error)
+  return_step(vectors, row, kept, step->pivot, slot, tape, size, trace->response, &error)
     switch (row) {
     case 1: RETURN_STEP(1); break;
     case 2: RETURN_STEP(2); break;
@@ -404,9 +420,11 @@ INLINED void backward(int kept, const mho_program *program, const double *energy
 }
 
 FOR_EVERY_PROCESSOR
-void mho_program_backward(const mho_program *program, const double *energy_ev,
+void mho_program_backward(const mho_program *program, const double *energy_ev, size_t count,
                           mho_program_trace *trace)
 {
-  if (program->kept == 2) backward(2, program, energy_ev, trace);
-  else backward(program->kept, program, energy_ev, trace);
+  int kept = program->kept;
+  if (kept == 2 && count <= VECTOR) backward(1, 2, program, energy_ev, trace);
+  else if (kept == 2) backward(VECTORS, 2, program, energy_ev, trace);
+  else backward(VECTORS, kept, program, energy_ev, trace);
 }

@@ -215,10 +215,10 @@ static mho_status run_program(const mho_plan *plan, workspace *work, mho_point *
   for (size_t l = lanes; l < PROGRAM_LANES; l++) wait->energy_ev[l] = wait->energy_ev[0];
   if (!trace->number && mho_program_trace_create(plan->program, trace) != MHO_OK)
     return MHO_ERR_MEMORY;
-  mho_program_forward(plan->program, wait->energy_ev, plan->norm_ev, trace);
+  mho_program_forward(plan->program, wait->energy_ev, lanes, plan->norm_ev, trace);
   mho_estimate estimate[PROGRAM_LANES];
   mho_status status = finish_lanes(plan, work, lanes, estimate);
-  if (status == MHO_OK) mho_program_backward(plan->program, wait->energy_ev, trace);
+  if (status == MHO_OK) mho_program_backward(plan->program, wait->energy_ev, lanes, trace);
   for (size_t l = 0; status == MHO_OK && l < lanes; l++) {
     estimate[l].relative_error += SECOND_ORDER * trace->error[l];
     if (keeps_contract(&estimate[l]))
