@@ -23,8 +23,7 @@ typedef struct {
 typedef enum {
   MHO_METHOD_NO_PATH,  /* no hopping joins the contacts: T = 0 */
   MHO_METHOD_SPECTRUM, /* sums over the levels of the bare molecule */
-  MHO_METHOD_SPARSE,   /* compiled sparse elimination in double precision */
-  MHO_METHOD_SPARSE_EXTENDED, /* the same in double-double */
+  MHO_METHOD_SPARSE,   /* compiled sparse elimination in double-double */
   MHO_METHOD_REPEAT, /* doubling of a run of equal units, in 113 bits */
   MHO_METHOD_ELIMINATION, /* pivoted Gaussian elimination in double precision */
   MHO_METHOD_EXTENDED,    /* the same in 113 bits */

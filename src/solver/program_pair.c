@@ -7,7 +7,7 @@
  *   T = Gamma_L Gamma_R b^2 / |D|^2,
  *   dlnT/da = -2 Re(C/D),  dlnT/dc = -2 Re(A/D),  dlnT/db = 2/b + 4 b Re(1/D).
  *
- * G v_L has (r_L C - r_R b) / D at a site that answers r_L, r_R to the contacts.
+ * Only the leading parts count; what the others would change is part of the error.
  */
 #include <math.h>
 
@@ -25,44 +25,33 @@ bool mho_program_is_pair(const mho_plan *plan)
 }
 
 FOR_EVERY_PROCESSOR
-void mho_program_finish_pair(const mho_plan *plan, bool extended, mho_program_trace *trace,
+void mho_program_finish_pair(const mho_plan *plan, mho_program_trace *trace,
                              double *transmission, double *relative_error)
 {
   const mho_program *program = plan->program;
-  size_t at_a = (size_t)program->kept_slot[0][0] * L, at_b = (size_t)program->kept_slot[0][1] * L;
-  size_t at_c = (size_t)program->kept_slot[1][1] * L;
-  const double *restrict a = trace->high + at_a, *restrict b = trace->high + at_b;
-  const double *restrict c = trace->high + at_c, *restrict a_low = trace->low + at_a;
-  const double *restrict b_low = trace->low + at_b, *restrict c_low = trace->low + at_c;
+  const double *restrict a = PROGRAM_NUMBER(trace, program->kept_slot[0][0]);
+  const double *restrict b = PROGRAM_NUMBER(trace, program->kept_slot[0][1]);
+  const double *restrict c = PROGRAM_NUMBER(trace, program->kept_slot[1][1]);
   double *restrict a_hat = trace->adjoint, *restrict b_hat = trace->adjoint + 2 * L;
   double *restrict c_hat = trace->adjoint + 3 * L;
   double v0 = plan->vector[plan->support[0]];
   double v1 = plan->vector[plan->sites + plan->support[1]];
   double x0 = plan->shift_ev[0] * v0 * v0, y0 = 0.5 * plan->coupling_ev[0] * v0 * v0;
   double x1 = plan->shift_ev[1] * v1 * v1, y1 = 0.5 * plan->coupling_ev[1] * v1 * v1;
-  mho_program_pair *pair = &trace->pair;
-  pair->a_im = y0;
-  pair->c_im = y1;
 #pragma GCC ivdep
   for (int l = 0; l < L; l++) {
     double p = a[l] - x0, q = c[l] - x1, square = b[l] * b[l];
     double re = p * q - y0 * y1 - square, im = p * y1 + q * y0; /* D */
     double inverse = 1.0 / (re * re + im * im), small = sqrt(inverse);
-    double t = 4 * y0 * y1 * square * inverse;
     double to_a = -2 * (q * re + y1 * im) * inverse, to_c = -2 * (p * re + y0 * im) * inverse;
     double to_b = 2 / b[l] + 4 * b[l] * re * inverse;
     double size = (fabs(a[l]) + fabs(x0) + y0) * (fabs(c[l]) + fabs(x1) + y1);
     double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
-    double low = extended ? fabs(to_a * a_low[l]) + fabs(to_b * b_low[l]) + fabs(to_c * c_low[l])
-                          : 0.0;
-    pair->a_re[l] = p;
-    pair->b[l] = b[l];
-    pair->c_re[l] = q;
-    pair->weight[l] = 2 * small / fabs(b[l]);
+    double low = fabs(to_a * a[L + l]) + fabs(to_b * b[L + l]) + fabs(to_c * c[L + l]);
     a_hat[l] = to_a;
     b_hat[l] = to_b;
     c_hat[l] = to_c;
-    transmission[l] = t;
+    transmission[l] = 4 * y0 * y1 * square * inverse;
     relative_error[l] = error + low;
   }
 }

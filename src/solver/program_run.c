@@ -3,314 +3,410 @@
  * A compiled elimination over a batch of energies, and back.  For every pivot d
  * and pair (i, j) of its row a,
  *
- *   w = 1/d,   s' = s - a_i w a_j,
+ *   w = -1/d,   s' = s + a_i w a_j,
  *
- * rounds s' by at most u (3 |a_i w a_j| + |s'|), and ln T changes by adjoint(s')
- * times that (first order; S. Linnainmaa, BIT 16, 146 (1976)).  Going back, the
- * answer r_k of site k to each kept site (the kept sites' own: one and zero)
- * follows by substitution, r_k = -w sum_i a_i r_i.  The Schur complement is the
- * quadratic form of M on the answers, so at every stage of m
+ * in double-double after T. J. Dekker, Numer. Math. 18, 224 (1971), with products by
+ * fused multiply-add; bounds of such operations are in M. Joldes, J.-M. Muller and
+ * V. Popescu, ACM Trans. Math. Softw. 44, 15 (2017).  With u = 2^-53 and every number
+ * normalised, w errs by at most 8 u^2, a_i w by 8 u^2 and (a_i w) a_j by 12 u^2 of
+ * their moduli, the sum by u^2 (4 |s'| + 21 |a_i w a_j|), cancellation included: in
+ * all by less than
+ *
+ *   UNIT (6.5 |a_i w a_j| + |s'|),   UNIT = 8 u^2 = 2^-103.
+ *
+ * ln T changes by adjoint(s') times that, to first order (S. Linnainmaa, BIT 16, 146
+ * (1976)).  Going back, the answer r_k of site k to each kept site (the kept sites'
+ * own: one and zero) follows by substitution, r_k = w sum_i a_i r_i.  The Schur
+ * complement is the quadratic form of M on the answers, so at every stage of m
  *
  *   adjoint(m_ij) = r_i^T Q r_j,   adjoint(m_ii) = r_i^T Q r_i / 2
  *
- * with Q_cd the adjoint of the Schur complement's (c, d), twice that for c = d,
- * and for contacts of one site each adjoint(m_ij) = -2 Re (y_i z_j + z_i y_j) / g_LR,
- * y and z columns of G.  So |adjoint(m_ij)| <= <n_i, n_j>, a form of moduli: with n
- * = |r| that of |Q|, or with n = (|y|, |z|) (y_i z_j + z_i y_j) 2 / |g|, which
- * cannot be far too large where answers are large and cancel, next to levels of
- * the inner sites.  With R = sum_i |a_i| n_i
- * the products of a step cost at most 3/2 u |w| <R, R>, so no pair need be
- * visited.  Of the numbers themselves, rounded m times each,
+ * with Q_cd the adjoint of the Schur complement's (c, d), twice that for c = d.
+ * Moduli bound it: with R = sum_i |a_i| |r_i|, and <x, y> the form of |Q|, the products
+ * of a step weigh |w| <R, R> / 2, so no pair need be visited.  Of a number rounded
+ * m times, as none is more than `roundings`,
  *
- *   |s_1| + .. + |s_m| <= m |s_m| + sum_l (l - 1) |a w a|_l:
+ *   |s_1| + .. + |s_m| <= m (|s_m| + sum_l |a w a|_l),
  *
- * a product counts once more for every rounding before it, which its two members
- * share (so 3/2 R becomes a sum with weights), and a last value m times, which is
- * <R, n> of the step that eliminates it.
+ * and the last values weigh <R, r> and d <r, r> / 2 in the step that eliminates them:
+ * with |r| <= |w| R, 3/2 |w| <R, R>.  Next to levels of the inner sites the answers
+ * are large and cancel, and this is too large by the square of the inverse distance;
+ * between 2^-103 and the contract is room for both.
  */
-#include "solver/program.h"
 #include "base/processor.h"
+#include "solver/program.h"
 
 #include <math.h>
 #include <stddef.h>
 #include <stdlib.h>
 #include <sys/mman.h>
 
-enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = 3 };
+enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
+
+/* A pivot below PIVOT (times the norm) leaves too few digits for first order. */
+#define PIVOT 1e-12
+
+#define UNIT 0x1p-103
 
 /* All functions with vectors as values are inlined. */
 #pragma GCC diagnostic ignored "-Wpsabi"
 
-typedef mho_vector vector;
-typedef mho_lanes lanes;
-#define AT VECTOR_AT
+/* Lanes in a register, loaded and stored by their address; and all lanes of a
+ * number, kept in registers where loops over vectors are innermost.  How many of the
+ * vectors count is a constant where this is inlined: one for few energies, or all. */
+enum { VECTOR = 8, VECTORS = L / VECTOR };
+typedef double vector __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
+typedef long long bits __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
+typedef struct {
+  vector of[VECTORS];
+} lanes;
+typedef struct {
+  vector high, low;
+} pair;
+#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < vectors; v++)
+#define AT(array, v) (*(vector *)((array) + (v) * VECTOR))
+#define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
 
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
-  size_t slots = ((size_t)program->slots + 1) * L;
-  size_t responses = 2 * slots * (size_t)program->kept;
+  size_t slots = ((size_t)program->slots + 1) * L, responses = slots * (size_t)program->kept;
   size_t bytes = (2 * slots + responses + program->taped * L) * sizeof(double);
   size_t page = bytes > LARGE_PAGE ? LARGE_PAGE : 64;
-  trace->high = aligned_alloc(page, (bytes + page - 1) / page * page);
-  if (!trace->high) return MHO_ERR_MEMORY;
+  trace->number = aligned_alloc(page, (bytes + page - 1) / page * page);
+  if (!trace->number) return MHO_ERR_MEMORY;
 #ifdef MADV_HUGEPAGE
-  if (page == LARGE_PAGE) (void)madvise(trace->high, bytes, MADV_HUGEPAGE); /* only a hint */
+  if (page == LARGE_PAGE) (void)madvise(trace->number, bytes, MADV_HUGEPAGE); /* only a hint */
 #endif
-  trace->low = trace->high + slots;
-  trace->response = trace->low + slots;
+  trace->response = trace->number + 2 * slots;
   trace->tape = trace->response + responses;
   return MHO_OK;
 }
 
 void mho_program_trace_clear(mho_program_trace *trace)
 {
-  free(trace->high);
+  free(trace->number);
   *trace = (mho_program_trace){0};
 }
 
-INLINED void load_double(const mho_program_load *load, const double *energy_ev, double *high)
+/* --- double-double ------------------------------------------------------------------ */
+
+/* Compiler vectors have no fused multiply-add of their own; of a loop over
+ * elements it makes one. */
+INLINED vector fused(vector a, vector b, vector c)
 {
-  double *s = high + (ptrdiff_t)load->slot * L;
-  double weight = load->site >= 0 ? 1.0 : 0.0;
-  EACH_VECTOR(v) AT(s, v) = weight * AT(energy_ev, v) - load->value;
+  vector result;
+  for (int k = 0; k < VECTOR; k++) result[k] = __builtin_fma(a[k], b[k], c[k]);
+  return result;
 }
 
-/* One pivot; `row` is a constant where this is inlined for a short row. */
-INLINED void eliminate(int row, int pivot, const int *slot, double *high, double *tape,
-                       lanes *squares)
+INLINED vector splat(double value)
 {
-  const int *target = slot + 2 * row;
-  lanes w, a[UNROLLED];
-  EACH_VECTOR(v)
-  {
-    AT(tape, v) = w.of[v] = 1.0 / AT(high + (ptrdiff_t)pivot * L, v);
-    squares->of[v] += w.of[v] * w.of[v];
-  }
-  for (int i = 0; i < row; i++)
+  return (vector){0} + value;
+}
+
+INLINED pair pair_at(const double *number, int v)
+{
+  return (pair){AT(number, v), AT(number + L, v)};
+}
+
+/* high + low once more as the nearest double and a rest; |low| <= |high|. */
+INLINED void store_normal(vector high, vector low, double *number, int v)
+{
+  vector sum = high + low;
+  AT(number, v) = sum;
+  AT(number + L, v) = low - (sum - high);
+}
+
+INLINED pair product(pair a, pair b)
+{
+  vector high = a.high * b.high, rest = fused(a.high, b.high, -high);
+  return (pair){high, fused(a.low, b.high, fused(a.high, b.low, rest))};
+}
+
+/* a b for a of one double. */
+INLINED pair times(vector a, pair b)
+{
+  vector high = a * b.high;
+  return (pair){high, fused(a, b.low, fused(a, b.high, -high))};
+}
+
+/* -1/d by a Newton step. */
+INLINED pair inverse(pair d)
+{
+  vector first = -1.0 / d.high, rest = fused(d.high, first, splat(1.0));
+  return (pair){first, first * fused(d.low, first, rest)};
+}
+
+/* x + y exactly: D. E. Knuth's two-sum. */
+INLINED pair sum_of(vector x, vector y)
+{
+  vector sum = x + y, part = sum - x;
+  return (pair){sum, (x - (sum - part)) + (y - part)};
+}
+
+/* s + p */
+INLINED void add(pair p, double *s, int v)
+{
+  pair sum = sum_of(AT(s, v), p.high);
+  store_normal(sum.high, sum.low + (AT(s + L, v) + p.low), s, v);
+}
+
+/* E - value; most sites have none. */
+INLINED pair diagonal(const double *energy_ev, double value_ev, int v)
+{
+  if (value_ev == 0) return (pair){AT(energy_ev, v), splat(0)};
+  return sum_of(AT(energy_ev, v), splat(-value_ev));
+}
+
+/* --- forward ------------------------------------------------------------------------ */
+
+INLINED void load(int vectors, const mho_program_step *step, const mho_program_load *next,
+                  const double *energy_ev, mho_program_trace *trace)
+{
+  for (int k = 0; k < step->diagonals; k++, next++) {
+    double *s = PROGRAM_NUMBER(trace, next->slot);
     EACH_VECTOR(v)
     {
-      vector entry = AT(high + (ptrdiff_t)slot[i] * L, v);
-      AT(tape + (1 + i) * L, v) = entry;
-      if (row <= UNROLLED) a[i].of[v] = entry;
+      pair d = diagonal(energy_ev, next->value_ev, v);
+      AT(s, v) = d.high;
+      AT(s + L, v) = d.low;
     }
-  for (int i = 0; i < row; i++) {
-    lanes aw;
+  }
+  for (int k = 0; k < step->bonds; k++, next++) {
+    double *s = PROGRAM_NUMBER(trace, next->slot);
     EACH_VECTOR(v)
-      aw.of[v] = w.of[v] * (row <= UNROLLED ? a[i].of[v] : AT(tape + (1 + i) * L, v));
-    for (int j = i; j < row; j++, target++) {
-      bool fresh = *target < 0;
-      double *s = high + (ptrdiff_t)(fresh ? ~*target : *target) * L;
-      EACH_VECTOR(v)
-      {
-        vector entry = row <= UNROLLED ? a[j].of[v] : AT(tape + (1 + j) * L, v);
-        vector before = fresh ? (vector){0} : AT(s, v);
-        AT(s, v) = before - aw.of[v] * entry;
-      }
+    {
+      AT(s, v) = splat(-next->value_ev);
+      AT(s + L, v) = splat(0);
     }
   }
 }
 
-FOR_EVERY_PROCESSOR
-void mho_program_forward_double(const mho_program *program, const double *energy_ev,
-                                double norm_ev, mho_program_trace *trace)
+/* The target of a pair, p more. */
+INLINED void update(pair p, int target, int v, mho_program_trace *trace)
 {
-  const mho_program_load *load = program->load;
+  if (target < 0) store_normal(p.high, p.low, PROGRAM_NUMBER(trace, ~target), v);
+  else add(p, PROGRAM_NUMBER(trace, target), v);
+}
+
+/* One pivot, one vector of lanes; `row` is a constant where this is inlined for a
+ * short row, whose numbers then stay in registers. */
+INLINED void eliminate(int row, int pivot, const int *slot, double *tape, int v, vector *squares,
+                       mho_program_trace *trace)
+{
+  const int *target = slot + 2 * row;
+  pair w = inverse(pair_at(PROGRAM_NUMBER(trace, pivot), v)), a[UNROLLED];
+  AT(tape, v) = w.high;
+  *squares = fused(w.high, w.high, *squares);
+#pragma GCC unroll 3
+  for (int i = 0; i < row; i++) {
+    pair entry = pair_at(PROGRAM_NUMBER(trace, slot[i]), v);
+    AT(tape + (1 + i) * L, v) = entry.high;
+    if (row <= UNROLLED) a[i] = entry;
+  }
+#pragma GCC unroll 3
+  for (int i = 0; i < row; i++) {
+    pair aw = product(row <= UNROLLED ? a[i] : pair_at(PROGRAM_NUMBER(trace, slot[i]), v), w);
+#pragma GCC unroll 3
+    for (int j = i; j < row; j++) {
+      pair other = row <= UNROLLED ? a[j] : pair_at(PROGRAM_NUMBER(trace, slot[j]), v);
+      update(product(aw, other), *target++, v, trace);
+    }
+  }
+}
+
+/* The same where pivot and row are bare[1 + row]; their signs cancel. */
+INLINED void eliminate_bare(int row, const mho_program_load *bare, const int *slot,
+                            const double *energy_ev, int v, vector *squares,
+                            mho_program_trace *trace)
+{
+  const int *target = slot + row;
+  pair w = inverse(diagonal(energy_ev, bare[0].value_ev, v));
+  *squares = fused(w.high, w.high, *squares);
+#pragma GCC unroll 3
+  for (int i = 0; i < row; i++) {
+    pair aw = times(splat(bare[1 + i].value_ev), w);
+#pragma GCC unroll 3
+    for (int j = i; j < row; j++)
+      update(times(splat(bare[1 + j].value_ev), aw), *target++, v, trace);
+  }
+}
+
+INLINED void forward(int vectors, const mho_program *program, const double *energy_ev,
+                     double norm_ev, mho_program_trace *trace)
+{
+  const mho_program_load *next = program->load;
   const int *slot = program->slot;
-  double *high = trace->high, *tape = trace->tape;
+  double *tape = trace->tape;
   lanes squares = {{{0}}}; /* of all 1/d */
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
-    int row = step->row;
-    for (int i = 0; i < step->loads; i++) load_double(load++, energy_ev, high);
-    switch (row) {
-    case 1: eliminate(1, step->pivot, slot, high, tape, &squares); break;
-    case 2: eliminate(2, step->pivot, slot, high, tape, &squares); break;
-    case 3: eliminate(3, step->pivot, slot, high, tape, &squares); break;
-    default: eliminate(row, step->pivot, slot, high, tape, &squares);
-    }
-    tape += (1 + row) * L;
-    slot += 2 * row + row * (row + 1) / 2;
-  }
-  for (int i = 0; i < program->tail_loads; i++) load_double(load++, energy_ev, high);
-  double most = 1 / (PIVOT_DOUBLE * norm_ev);
-  for (int l = 0; l < L; l++) trace->broken[l] = !(squares.of[l / PROGRAM_VECTOR][l % PROGRAM_VECTOR] < most * most);
-}
-
-/* What the way back gathers of every lane. */
-typedef struct {
-  double form[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L]; /* Q */
-  double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L]; /* |Q| */
-  double total[L]; /* dlnT/dE: sum of the adjoints of the diagonal */
-  double kappa[L], error[L];
-} gathered;
-
-/* |x + i y| up to an eighth more. */
-INLINED vector modulus(vector x, vector y)
-{
-  vector a = ABSOLUTE(x), b = ABSOLUTE(y);
-  mho_vector_bits larger = a > b;
-  vector most = (vector)(((mho_vector_bits)a & larger) | ((mho_vector_bits)b & ~larger));
-  vector least = (vector)(((mho_vector_bits)b & larger) | ((mho_vector_bits)a & ~larger));
-  return most + 0.5 * least;
-}
-
-/* n of a site from its answer r. */
-INLINED void measure(int kept, bool pair, const mho_program_trace *trace, int v,
-                     const lanes *r, lanes *n)
-{
-  const mho_program_pair *p = &trace->pair;
-  for (int c = 0; c < kept && !pair; c++) n[c].of[v] = ABSOLUTE(r[c].of[v]);
-  if (!pair) return;
-  vector left = r[0].of[v], right = r[1].of[v], b = AT(p->b, v);
-  n[0].of[v] = modulus(left * AT(p->c_re, v) - right * b, left * p->c_im);
-  n[1].of[v] = modulus(right * AT(p->a_re, v) - left * b, right * p->a_im);
-}
-
-/* <x, y> but for the weight of a pair. */
-INLINED vector form(int kept, bool pair, const gathered *all, int v, const lanes *x,
-                    const lanes *y)
-{
-  if (pair) return x[0].of[v] * y[1].of[v] + x[1].of[v] * y[0].of[v];
-  vector sum = {0};
-  for (int c = 0; c < kept; c++)
-    for (int d = 0; d < kept; d++)
-      sum += AT(all->size + (c * kept + d) * L, v) * x[c].of[v] * y[d].of[v];
-  return sum;
-}
-
-/* The step's share of kappa, from r of its site. */
-INLINED void weigh_step(int row, int kept, const int *diagonal, const mho_program_member *member,
-                        const double *response, const lanes *r, gathered *all)
-{
-  lanes u[PROGRAM_KEPT_MAX];
-  EACH_VECTOR(v)
-  {
-    vector hat = {0};
-    for (int c = 0; c < kept; c++) {
-      u[c].of[v] = AT(all->form + c * kept * L, v) * r[0].of[v];
-      for (int d = 1; d < kept; d++)
-        u[c].of[v] += AT(all->form + (c * kept + d) * L, v) * r[d].of[v];
-      hat += u[c].of[v] * r[c].of[v];
-    }
-    AT(all->total, v) += 0.5 * hat;
-    AT(all->kappa, v) += ABSOLUTE(hat) * (0.5 * fabs(member[0].value_ev));
-  }
-  for (int i = 0; i < row; i++) {
-    double value_ev = fabs(member[1 + i].value_ev);
-    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
-    if (value_ev == 0) continue;
-    EACH_VECTOR(v)
-    {
-      vector hat = u[0].of[v] * AT(other, v);
-      for (int c = 1; c < kept; c++) hat += u[c].of[v] * AT(other + c * L, v);
-      AT(all->kappa, v) += ABSOLUTE(hat) * value_ev;
-    }
-  }
-}
-
-/* Back over one step: the answer of its site from those of its row.  `row`, `kept`
- * and `pair` are constants where this is inlined for the usual cases. */
-INLINED void return_step(int row, int kept, bool pair, bool with_kappa,
-                         const mho_program_step *step, const int *diagonal,
-                         const mho_program_member *member, const double *tape,
-                         mho_program_trace *trace, gathered *all)
-{
-  double *response = trace->response, *own = response + (ptrdiff_t)step->pivot * 2 * kept * L;
-  lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
-  lanes size[PROGRAM_KEPT_MAX], weighted[PROGRAM_KEPT_MAX]; /* R */
-  for (int c = 0; c < kept; c++) r[c] = size[c] = weighted[c] = (lanes){{{0}}};
-  for (int i = 0; i < row; i++) {
-    const double *other = response + (ptrdiff_t)diagonal[i] * 2 * kept * L;
-    double weight = member[1 + i].weight;
-    EACH_VECTOR(v)
-    {
-      vector a = AT(tape + (1 + i) * L, v), light = ABSOLUTE(a), heavy = light * weight;
-      for (int c = 0; c < kept; c++) {
-        vector moduli = AT(other + (kept + c) * L, v);
-        r[c].of[v] -= a * AT(other + c * L, v);
-        size[c].of[v] += light * moduli;
-        weighted[c].of[v] += heavy * moduli;
+    const mho_program_load *bare = next;
+    int row = step->row, pairs = row * (row + 1) / 2;
+    if (step->pivot == PROGRAM_BARE) next += 1 + row;
+    load(vectors, step, next, energy_ev, trace);
+    next += step->diagonals + step->bonds;
+    if (step->pivot == PROGRAM_BARE) {
+#define ELIMINATE(row)                                                               \
+  EACH_VECTOR(v) eliminate_bare(row, bare, slot, energy_ev, v, &squares.of[v], trace)
+      switch (row) {
+      case 1: ELIMINATE(1); break;
+      case 2: ELIMINATE(2); break;
+      case 3: ELIMINATE(3); break;
       }
+#undef ELIMINATE
+      slot += row + pairs;
+      continue;
     }
+#define ELIMINATE(row)                                                               \
+  EACH_VECTOR(v) eliminate(row, step->pivot, slot, tape, v, &squares.of[v], trace)
+    switch (row) {
+    case 1: ELIMINATE(1); break;
+    case 2: ELIMINATE(2); break;
+    case 3: ELIMINATE(3); break;
+    default: ELIMINATE(row);
+    }
+#undef ELIMINATE
+    tape += (1 + row) * L;
+    slot += 2 * row + pairs;
+  }
+  load(vectors, &program->last, next, energy_ev, trace);
+  double most = 1 / (PIVOT * norm_ev);
+  for (int l = 0; l < L; l++)
+    trace->broken[l] = !(squares.of[l / VECTOR][l % VECTOR] < most * most);
+}
+
+FOR_EVERY_PROCESSOR
+void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
+                         double norm_ev, mho_program_trace *trace)
+{
+  if (count <= VECTOR) forward(1, program, energy_ev, norm_ev, trace);
+  else forward(VECTORS, program, energy_ev, norm_ev, trace);
+}
+
+/* --- and back ----------------------------------------------------------------------- */
+
+/* <x, x>; size[kept][kept][lanes] is |Q|. */
+INLINED vector form(int kept, const double *size, int v, const lanes *x)
+{
+  vector sum = {0};
+  for (int c = 0; c < kept; c++) {
+    vector part = 0.5 * AT(size + (c * kept + c) * L, v) * x[c].of[v];
+    for (int d = 0; d < c; d++) part += AT(size + (c * kept + d) * L, v) * x[d].of[v];
+    sum += part * x[c].of[v];
+  }
+  return 2 * sum;
+}
+
+/* Back over one step: the answer of its site from those of its row.  `row` and `kept`
+ * are constants where this is inlined for the usual cases. */
+INLINED void return_step(int vectors, int row, int kept, int pivot, const int *diagonal, const double *tape,
+                         const double *size, double *response, lanes *error)
+{
+  double *own = response + (ptrdiff_t)pivot * kept * L;
+  lanes answer[PROGRAM_KEPT_MAX], moduli[PROGRAM_KEPT_MAX]; /* r / w, R */
+  for (int c = 0; c < kept; c++) answer[c] = moduli[c] = (lanes){{{0}}};
+  for (int i = 0; i < row; i++) {
+    const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
+    for (int c = 0; c < kept; c++)
+      EACH_VECTOR(v)
+      {
+        vector part = AT(tape + (1 + i) * L, v) * AT(other + c * L, v);
+        answer[c].of[v] += part;
+        moduli[c].of[v] += ABSOLUTE(part);
+      }
   }
   EACH_VECTOR(v)
   {
     vector w = AT(tape, v);
-    for (int c = 0; c < kept; c++) AT(own + c * L, v) = r[c].of[v] *= w;
-    measure(kept, pair, trace, v, r, n);
-    for (int c = 0; c < kept; c++) AT(own + (kept + c) * L, v) = n[c].of[v];
-    AT(all->error, v) += ABSOLUTE(w) * form(kept, pair, all, v, weighted, size) +
-                         member[0].weight * form(kept, pair, all, v, n, size);
+    for (int c = 0; c < kept; c++) AT(own + c * L, v) = w * answer[c].of[v];
+    error->of[v] += ABSOLUTE(w) * form(kept, size, v, moduli);
   }
-  if (with_kappa) weigh_step(row, kept, diagonal, member, response, r, all);
 }
 
-/* Q and the kept sites' answers to themselves alone. */
-INLINED void start_back(int kept, bool pair, const mho_program *program,
-                        const mho_program_trace *trace, gathered *all)
+/* The same for a bare step, whose answer nobody needs. */
+INLINED void return_bare(int vectors, int row, int kept, const mho_program_load *bare,
+                         const int *diagonal, const double *energy_ev, const double *size, const double *response,
+                         lanes *error)
 {
-  *all = (gathered){.total = {0}};
-  for (int a = 0; a < kept; a++) {
-    double *own = trace->response + (size_t)program->kept_slot[a][a] * 2 * (size_t)kept * L;
-    lanes r[PROGRAM_KEPT_MAX], n[PROGRAM_KEPT_MAX];
-    EACH_VECTOR(v)
-    {
-      for (int b = 0; b < kept; b++)
-        AT(own + b * L, v) = r[b].of[v] = (vector){0} + (a == b ? 1.0 : 0.0);
-      measure(kept, pair, trace, v, r, n);
-      for (int b = 0; b < kept; b++) AT(own + (kept + b) * L, v) = n[b].of[v];
-    }
+  lanes moduli[PROGRAM_KEPT_MAX];
+  for (int c = 0; c < kept; c++) moduli[c] = (lanes){{{0}}};
+  for (int i = 0; i < row; i++) {
+    const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
+    double light = fabs(bare[1 + i].value_ev);
+    for (int c = 0; c < kept; c++)
+      EACH_VECTOR(v) moduli[c].of[v] += light * ABSOLUTE(AT(other + c * L, v));
+  }
+  EACH_VECTOR(v)
+  {
+    vector w = 1.0 / (AT(energy_ev, v) - bare[0].value_ev);
+    error->of[v] += ABSOLUTE(w) * form(kept, size, v, moduli);
+  }
+}
+
+/* |Q|, and the kept sites' answers. */
+INLINED void start_back(int kept, const mho_program *program, mho_program_trace *trace,
+                        double *size)
+{
+  for (int a = 0; a < kept; a++)
     for (int b = 0; b < kept; b++) {
-      int at = program->kept_slot[a][b];
+      double *own = trace->response + ((ptrdiff_t)program->kept_slot[a][a] * kept + b) * L;
       const double *hat = trace->adjoint + (a < b ? b * kept + a : a * kept + b) * L;
+      bool zero = program->kept_slot[a][b] < 0;
       for (int l = 0; l < L; l++) {
-        double q = at < 0 ? 0 : (a == b ? 2 : 1) * hat[l];
-        all->form[(a * kept + b) * L + l] = q;
-        all->size[(a * kept + b) * L + l] = fabs(q);
+        own[l] = a == b;
+        size[(a * kept + b) * L + l] = zero ? 0 : (a == b ? 2 : 1) * fabs(hat[l]);
       }
     }
-  }
 }
 
-/* What falls on the Schur complement itself, and the sums that make kappa. */
-INLINED void finish_back(int kept, bool pair, const mho_program *program,
-                         const double *energy_ev, double roundoff, mho_program_trace *trace,
-                         gathered *all)
+/* Adds what falls on the Schur complement itself. */
+INLINED void finish_back(int kept, const mho_program *program, const lanes *error,
+                         mho_program_trace *trace)
 {
-  for (int l = 0; l < L; l++) {
-    double error = all->error[l] * (pair ? trace->pair.weight[l] : 1);
-    for (int a = 0; a < kept; a++)
-      for (int b = 0; b <= a; b++) {
-        int at = program->kept_slot[a][b];
-        if (at < 0) continue;
-        double hat = trace->adjoint[(a * kept + b) * L + l];
-        const mho_program_member *member = &program->kept_member[a][b];
-        error += fabs(hat * trace->high[(size_t)at * L + (size_t)l]) * member->weight;
-        all->kappa[l] += fabs(hat * member->value_ev);
-        if (a == b) all->total[l] += hat;
-      }
-    trace->error[l] = roundoff * error;
-    trace->kappa[l] = all->kappa[l] + fabs(all->total[l] * energy_ev[l]);
-  }
+  double most = program->roundings;
+  for (int l = 0; l < L; l++)
+    trace->error[l] = (3.25 + 2 * most) * error->of[l / VECTOR][l % VECTOR];
+  for (int a = 0; a < kept; a++)
+    for (int b = 0; b <= a; b++) {
+      int slot = program->kept_slot[a][b];
+      for (int l = 0; slot >= 0 && l < L; l++)
+        trace->error[l] += most * fabs(trace->adjoint[(a * kept + b) * L + l] *
+                                       PROGRAM_NUMBER(trace, slot)[l]);
+    }
+  for (int l = 0; l < L; l++) trace->error[l] *= UNIT;
 }
 
-INLINED void backward(int kept, bool pair, bool with_kappa, const mho_program *program,
-                      const double *energy_ev, double roundoff, mho_program_trace *trace)
+INLINED void backward(int vectors, int kept, const mho_program *program, const double *energy_ev,
+                      mho_program_trace *trace)
 {
   const int *slot = program->slot + program->slots_listed;
-  const mho_program_member *member = program->member + program->members;
+  const mho_program_load *bare = program->load + program->loads;
   const double *tape = trace->tape + program->taped * L;
-  gathered all;
-  start_back(kept, pair, program, trace, &all);
+  double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L];
+  lanes error = {{{0}}};
+  bare -= program->last.diagonals + program->last.bonds;
+  start_back(kept, program, trace, size);
   for (size_t k = program->steps; k-- > 0;) {
     const mho_program_step *step = &program->step[k];
     int row = step->row;
-    slot -= 2 * row + row * (row + 1) / 2;
+    slot -= row * (row + 1) / 2 + row; /* at the diagonals */
+    bare -= step->diagonals + step->bonds;
+    if (step->pivot == PROGRAM_BARE) {
+      bare -= 1 + row;
+#define RETURN_STEP(row)                                                              \
+  return_bare(vectors, row, kept, bare, slot, energy_ev, size, trace->response, &error)
+      switch (row) {
+      case 1: RETURN_STEP(1); break;
+      case 2: RETURN_STEP(2); break;
+      case 3: RETURN_STEP(3); break;
+      }
+#undef RETURN_STEP
+      continue;
+    }
     tape -= (1 + row) * L;
-    member -= 1 + row;
-    const int *diagonal = slot + row;
-#define RETURN_STEP(row)                                                       \
-  return_step(row, kept, pair, with_kappa, step, diagonal, member, tape, trace, &all)
+#define RETURN_STEP(row)                                                             \
+  return_step(vectors, row, kept, step->pivot, slot, tape, size, trace->response, &error)
     switch (row) {
     case 1: RETURN_STEP(1); break;
     case 2: RETURN_STEP(2); break;
@@ -318,16 +414,17 @@ INLINED void backward(int kept, bool pair, bool with_kappa, const mho_program *p
     default: RETURN_STEP(row);
     }
 #undef RETURN_STEP
+    slot -= row;
   }
-  finish_back(kept, pair, program, energy_ev, roundoff, trace, &all);
+  finish_back(kept, program, &error, trace);
 }
 
 FOR_EVERY_PROCESSOR
-void mho_program_backward(const mho_program *program, const double *energy_ev, bool pair,
-                          double roundoff, bool with_kappa, mho_program_trace *trace)
+void mho_program_backward(const mho_program *program, const double *energy_ev, size_t count,
+                          mho_program_trace *trace)
 {
   int kept = program->kept;
-  if (pair && with_kappa) backward(2, true, true, program, energy_ev, roundoff, trace);
-  else if (pair) backward(2, true, false, program, energy_ev, roundoff, trace);
-  else backward(kept, false, with_kappa, program, energy_ev, roundoff, trace);
+  if (kept == 2 && count <= VECTOR) backward(1, 2, program, energy_ev, trace);
+  else if (kept == 2) backward(VECTORS, 2, program, energy_ev, trace);
+  else backward(VECTORS, kept, program, energy_ev, trace);
 }

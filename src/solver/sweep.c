@@ -18,28 +18,25 @@
 #define CONTRACT_CEILING 1e-10
 #define CONTRACT_KAPPA (64.0 * UNIT_ROUNDOFF)
 
-/* Room for what a first-order bound leaves out: with pivots above PIVOT_DOUBLE and
- * a bound below CONTRACT_CEILING that is far less. */
+/* Room for what a first-order bound leaves out: with the pivots that the program
+ * trusts and a bound below CONTRACT_CEILING that is far less. */
 #define SECOND_ORDER 1.05
-
-/* From here on it is quicker to gather kappa at once. */
-enum { KAPPA_STEPS = 60 };
 
 enum { KEPT_SQUARE = PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX };
 
-/* Energies that wait until all lanes of a method are taken. */
+/* Energies that wait until all lanes of the program are taken. */
 typedef struct {
   double energy_ev[PROGRAM_LANES];
   size_t at[PROGRAM_LANES]; /* which point a lane belongs to */
   size_t lanes;
 } queue;
 
-/* What one thread needs besides the plan; all but the queues only on demand. */
+/* What one thread needs besides the plan; all but the queue only on demand. */
 typedef struct {
   mho_elimination_double *plain, *reduced;
   mho_elimination_quad *extended, *reduced_extended, *repeated;
   mho_program_trace trace;
-  queue queue[2]; /* for the program in double, and in double-double */
+  queue queue; /* for the program */
 } workspace;
 
 struct mho_spare {
@@ -124,23 +121,23 @@ static void set_extended(const mho_plan *plan, const mho_estimate *estimate,
 /* T of one lane from its Schur complement: in double, where the low parts count
  * as error, and if that is not good enough in 113 bits; sets the adjoints. */
 static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t lane,
-                                bool extended, mho_estimate *estimate)
+                                mho_estimate *estimate)
 {
   const mho_program *program = plan->program;
   size_t n = (size_t)program->kept;
-  double value[KEPT_SQUARE], low[KEPT_SQUARE], adjoint[KEPT_SQUARE] = {0};
+  double value[KEPT_SQUARE] = {0}, low[KEPT_SQUARE] = {0}, adjoint[KEPT_SQUARE] = {0};
   for (size_t k = 0; k < n * n; k++) {
     int slot = program->kept_slot[k / n][k % n];
-    size_t at = (size_t)(slot < 0 ? 0 : slot) * PROGRAM_LANES + lane;
-    value[k] = slot < 0 ? 0 : work->trace.high[at];
-    low[k] = slot < 0 || !extended ? 0 : work->trace.low[at];
+    if (slot < 0) continue;
+    value[k] = PROGRAM_NUMBER(&work->trace, slot)[lane];
+    low[k] = PROGRAM_NUMBER(&work->trace, slot)[PROGRAM_LANES + lane];
   }
   if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
   if (!work->reduced) return MHO_ERR_MEMORY;
   mho_elimination_reduced_double(plan->contacts, work->reduced, value, adjoint, estimate);
   for (size_t k = 0; k < n * n; k++)
     if (k % n <= k / n) estimate->relative_error += fabs(adjoint[k] * low[k]);
-  if (extended && !keeps_contract(estimate)) {
+  if (!keeps_contract(estimate)) {
     mho_quad exact[KEPT_SQUARE];
     for (size_t k = 0; k < n * n; k++) exact[k] = (mho_quad)value[k] + low[k];
     if (!work->reduced_extended)
@@ -155,45 +152,25 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
 
 /* T of all lanes and the adjoints of the Schur complements. */
 static mho_status finish_lanes(const mho_plan *plan, workspace *work, size_t lanes,
-                               bool extended, mho_estimate *estimate)
+                               mho_estimate *estimate)
 {
   double transmission[PROGRAM_LANES], error[PROGRAM_LANES];
   bool pair = mho_program_is_pair(plan);
-  if (pair) mho_program_finish_pair(plan, extended, &work->trace, transmission, error);
+  if (pair) mho_program_finish_pair(plan, &work->trace, transmission, error);
   for (size_t l = 0; l < PROGRAM_LANES; l++) {
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
     if (l >= lanes || work->trace.broken[l]) continue;
-    if (pair && transmission[l] > 1e-200 && (!extended || error[l] <= CONTRACT_FLOOR))
+    if (pair && transmission[l] > 1e-200 && error[l] <= CONTRACT_FLOOR)
       estimate[l] = (mho_estimate){.transmission = transmission[l],
                                    .log10_transmission = log10_of_normal(transmission[l]),
                                    .relative_error = error[l],
                                    .first_order = true};
-    else if (!pair || extended) {
-      mho_status status = reduced_point(plan, work, l, extended, &estimate[l]);
+    else {
+      mho_status status = reduced_point(plan, work, l, &estimate[l]);
       if (status != MHO_OK) return status;
     }
   }
   return MHO_OK;
-}
-
-/* Adds the errors of the elimination, and kappa where they exceed the floor of
- * the contract, as they will where many roundings add up. */
-static void weigh_lanes(const mho_plan *plan, workspace *work, const queue *wait, bool extended,
-                        mho_estimate *estimate)
-{
-  mho_program_trace *trace = &work->trace;
-  double roundoff = extended ? ROUNDOFF_EXTENDED : ROUNDOFF_DOUBLE;
-  bool pair = mho_program_is_pair(plan), wanted = false;
-  bool with_kappa = !extended && plan->program->steps > KAPPA_STEPS;
-  mho_program_backward(plan->program, wait->energy_ev, pair, roundoff, with_kappa, trace);
-  for (size_t l = 0; l < wait->lanes; l++) {
-    estimate[l].relative_error += SECOND_ORDER * trace->error[l];
-    double error = estimate[l].relative_error;
-    wanted |= error > CONTRACT_FLOOR && error <= CONTRACT_CEILING;
-  }
-  if (wanted && !with_kappa)
-    mho_program_backward(plan->program, wait->energy_ev, pair, roundoff, true, trace);
-  for (size_t l = 0; l < wait->lanes; l++) estimate[l].kappa = trace->kappa[l];
 }
 
 /* One energy by doubling of units if there are any, then by pivoted elimination in
@@ -227,56 +204,40 @@ static mho_status eliminate(const mho_plan *plan, workspace *work, double energy
   return MHO_OK;
 }
 
-static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
-                              mho_point *point);
-
-/* An energy that the methods before could not settle. */
-static mho_status pass_on(const mho_plan *plan, workspace *work, bool extended,
-                          double energy_ev, size_t index, mho_point *point)
-{
-  mho_method method = extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE;
-  if (!plan->program || plan->first > MHO_METHOD_SPARSE_EXTENDED)
-    return eliminate(plan, work, energy_ev, &point[index]);
-  if (plan->first > method) return pass_on(plan, work, true, energy_ev, index, point);
-  queue *wait = &work->queue[extended];
-  wait->energy_ev[wait->lanes] = energy_ev;
-  wait->at[wait->lanes++] = index;
-  return wait->lanes == PROGRAM_LANES ? run_program(plan, work, extended, point) : MHO_OK;
-}
-
-/* Runs the program on what waits for it, settles the energies that keep the
- * contract and passes on the others. */
-static mho_status run_program(const mho_plan *plan, workspace *work, bool extended,
-                              mho_point *point)
+/* Runs the program on the energies that wait for it. */
+static mho_status run_program(const mho_plan *plan, workspace *work, mho_point *point)
 {
   mho_program_trace *trace = &work->trace;
-  queue wait = work->queue[extended];
-  work->queue[extended].lanes = 0;
-  if (!wait.lanes) return MHO_OK;
-  for (size_t l = wait.lanes; l < PROGRAM_LANES; l++) wait.energy_ev[l] = wait.energy_ev[0];
-  if (!trace->high && mho_program_trace_create(plan->program, trace) != MHO_OK)
+  queue *wait = &work->queue;
+  size_t lanes = wait->lanes;
+  wait->lanes = 0;
+  if (!lanes) return MHO_OK;
+  for (size_t l = lanes; l < PROGRAM_LANES; l++) wait->energy_ev[l] = wait->energy_ev[0];
+  if (!trace->number && mho_program_trace_create(plan->program, trace) != MHO_OK)
     return MHO_ERR_MEMORY;
-  (extended ? mho_program_forward_extended : mho_program_forward_double)(
-      plan->program, wait.energy_ev, plan->norm_ev, trace);
+  mho_program_forward(plan->program, wait->energy_ev, lanes, plan->norm_ev, trace);
   mho_estimate estimate[PROGRAM_LANES];
-  mho_status status = finish_lanes(plan, work, wait.lanes, extended, estimate);
-  if (status == MHO_OK) weigh_lanes(plan, work, &wait, extended, estimate);
-  for (size_t l = 0; status == MHO_OK && l < wait.lanes; l++) {
+  mho_status status = finish_lanes(plan, work, lanes, estimate);
+  if (status == MHO_OK) mho_program_backward(plan->program, wait->energy_ev, lanes, trace);
+  for (size_t l = 0; status == MHO_OK && l < lanes; l++) {
+    estimate[l].relative_error += SECOND_ORDER * trace->error[l];
     if (keeps_contract(&estimate[l]))
-      set_point(plan, &estimate[l], extended ? MHO_METHOD_SPARSE_EXTENDED : MHO_METHOD_SPARSE,
-                &point[wait.at[l]]);
-    else if (extended)
-      status = eliminate(plan, work, wait.energy_ev[l], &point[wait.at[l]]);
-    else status = pass_on(plan, work, true, wait.energy_ev[l], wait.at[l], point);
+      set_point(plan, &estimate[l], MHO_METHOD_SPARSE, &point[wait->at[l]]);
+    else status = eliminate(plan, work, wait->energy_ev[l], &point[wait->at[l]]);
   }
   return status;
 }
 
-/* All that still waits. */
-static mho_status settle(const mho_plan *plan, workspace *work, mho_point *point)
+/* An energy that the sum over levels could not settle. */
+static mho_status pass_on(const mho_plan *plan, workspace *work, double energy_ev, size_t index,
+                          mho_point *point)
 {
-  mho_status status = run_program(plan, work, false, point);
-  return status == MHO_OK ? run_program(plan, work, true, point) : status;
+  if (!plan->program || plan->first > MHO_METHOD_SPARSE)
+    return eliminate(plan, work, energy_ev, &point[index]);
+  queue *wait = &work->queue;
+  wait->energy_ev[wait->lanes] = energy_ev;
+  wait->at[wait->lanes++] = index;
+  return wait->lanes == PROGRAM_LANES ? run_program(plan, work, point) : MHO_OK;
 }
 
 /* One energy by the sum over levels, for any number of channels. */
@@ -285,7 +246,7 @@ static mho_status sum_levels(const mho_plan *plan, workspace *work, double energ
 {
   mho_estimate estimate;
   mho_spectrum_evaluate(plan, energy_ev, &estimate);
-  if (!keeps_contract(&estimate)) return pass_on(plan, work, false, energy_ev, index, point);
+  if (!keeps_contract(&estimate)) return pass_on(plan, work, energy_ev, index, point);
   set_point(plan, &estimate, MHO_METHOD_SPECTRUM, &point[index]);
   return MHO_OK;
 }
@@ -307,7 +268,7 @@ static mho_status sum_levels_of_pair(const mho_plan *plan, workspace *work, cons
                                      .log10_transmission = at_most(batch.log10_transmission[l], 0),
                                      .relative_error = batch.relative_error[l],
                                      .method = MHO_METHOD_SPECTRUM};
-    else status = pass_on(plan, work, false, lane[l], first + l, point);
+    else status = pass_on(plan, work, lane[l], first + l, point);
   return status;
 }
 
@@ -322,11 +283,11 @@ static mho_status sweep_wide_band(const mho_plan *plan, workspace *work, size_t 
                 (!plan->program || plan->sites <= SPECTRUM_SITES_MAX);
   size_t lanes = levels && plan->pair ? SPECTRUM_LANES : 1;
   for (size_t i = 0; status == MHO_OK && i < count; i += lanes)
-    if (!levels) status = pass_on(plan, work, false, energy_ev[i], i, point);
+    if (!levels) status = pass_on(plan, work, energy_ev[i], i, point);
     else if (!plan->pair) status = sum_levels(plan, work, energy_ev[i], i, point);
     else status = sum_levels_of_pair(plan, work, energy_ev + i, i,
                                      count - i < lanes ? count - i : lanes, point);
-  return status == MHO_OK ? settle(plan, work, point) : status;
+  return status == MHO_OK ? run_program(plan, work, point) : status;
 }
 
 /* With chains as electrodes every energy has its own Gamma and shift. */
@@ -380,8 +341,7 @@ const char *mho_method_name(mho_method method)
   static const char *const name[MHO_METHOD_COUNT] = {
       [MHO_METHOD_NO_PATH] = "no path joins the contacts",
       [MHO_METHOD_SPECTRUM] = "sum over levels",
-      [MHO_METHOD_SPARSE] = "compiled sparse elimination",
-      [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_SPARSE] = "compiled sparse elimination in double-double",
       [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_ELIMINATION] = "pivoted elimination",
       [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};

@@ -5,44 +5,13 @@
  *   T = Gamma^2 t^(2N-2) / |p_N + i Gamma p_(N-1) - Gamma^2/4 p_(N-2)|^2,
  *   p_k = t^k sin((k+1)q)/sin(q), E = 2t cos(q)   (sinh and cosh outside the band).
  */
-#include "junctions.h"
+#include "random_junction.h"
 
 #include <pthread.h>
 
 #include <mho/nodes.h>
 
 #define BETA (-2.7)
-
-static unsigned long long state_of_random = 7;
-
-static double uniform(void)
-{
-  state_of_random = state_of_random * 6364136223846793005ULL + 1442695040888963407ULL;
-  return (double)(state_of_random >> 11) * 0x1p-53;
-}
-
-/* A ladder of random bonds: rings, branches, sites of several kinds. */
-static raw random_junction(int sites, double gamma[2], double *zero, double *vectors)
-{
-  static const double onsite[] = {0, 0, 0, 0, 0.51, 1.37};
-  size_t n = (size_t)sites;
-  raw r = {.sites = sites, .h = calloc(n * n, sizeof(double))};
-  for (size_t i = 0; i < n; i++) r.h[i * n + i] = BETA * onsite[(size_t)(6 * uniform())];
-  for (size_t i = 1; i < n; i++)
-    for (int bond = 0; bond < 2; bond++) {
-      size_t back = 1 + (size_t)(4 * uniform());
-      if (back > i || (bond && uniform() < 0.6)) back = 1;
-      r.h[i * n + i - back] = r.h[(i - back) * n + i] = BETA * (uniform() < 0.5 ? 1 : 0.8 + 0.3 * uniform());
-    }
-  size_t left = (size_t)(uniform() * (double)n), right = (size_t)(uniform() * (double)n);
-  memset(vectors, 0, 2 * n * sizeof(double));
-  vectors[left] = vectors[n + right] = 1;
-  for (int side = 0; side < 2; side++) {
-    gamma[side] = pow(10, -9 + 10 * uniform());
-    r.lead[side] = (mho_lead){1, &gamma[side], zero, vectors + (side ? n : 0), NULL};
-  }
-  return r;
-}
 
 typedef struct {
   int points, settled[MHO_METHOD_COUNT];
