@@ -7,6 +7,7 @@
  * CASE holds doubles: n, left, right, gamma, energies, entries, then the
  * energies and (i, j, value) of every entry, i <= j.  RESULT gets log10 T of
  * every energy.  Times of the repeats, set-up and sweep, go to stdout as JSON;
+ * set-up is what a new plan costs more than one at hand, its end included;
  * `driver divide` gives the nanoseconds of one division in a loop of them.
  */
 #include <mho/transmission.h>
@@ -113,6 +114,40 @@ static int divide(void)
   return x[0] > 0 ? 0 : 1;
 }
 
+/* Asking for the time costs as much as some microseconds of work. */
+static int rounds_of(const work *w) { return w->n < 100 ? 16 : 1; }
+
+static void sweep(const work *w, const mho_plan *plan, mho_point *point)
+{
+  if (mho_transmission_sweep(plan, w->energies, w->energy, point, NULL) != MHO_OK) exit(1);
+}
+
+/* Seconds from the entries to T of all energies. */
+static double time_whole(const work *w, mho_point *point)
+{
+  int rounds = rounds_of(w);
+  double start = seconds();
+  for (int k = 0; k < rounds; k++) {
+    mho_plan *plan = make_plan(w);
+    sweep(w, plan, point);
+    mho_plan_free(plan);
+  }
+  return (seconds() - start) / rounds;
+}
+
+/* Seconds of a sweep with a plan that has been used before. */
+static double time_sweep(const work *w, mho_point *point)
+{
+  int rounds = rounds_of(w);
+  mho_plan *plan = make_plan(w);
+  sweep(w, plan, point);
+  double start = seconds();
+  for (int k = 0; k < rounds; k++) sweep(w, plan, point);
+  double spent = (seconds() - start) / rounds;
+  mho_plan_free(plan);
+  return spent;
+}
+
 int main(int argc, char **argv)
 {
   if (argc == 2 && !strcmp(argv[1], "divide")) return divide();
@@ -124,13 +159,8 @@ int main(int argc, char **argv)
   int repeats = atoi(argv[4]);
   printf("{\"times\": [");
   for (int r = 0; r < repeats; r++) {
-    double start = seconds();
-    mho_plan *plan = make_plan(&w);
-    double middle = seconds();
-    if (mho_transmission_sweep(plan, w.energies, w.energy, point, NULL) != MHO_OK) return 1;
-    double end = seconds();
-    mho_plan_free(plan);
-    printf("%s[%.9g, %.9g]", r ? ", " : "", middle - start, end - middle);
+    double whole = time_whole(&w, point), sweep = time_sweep(&w, point);
+    printf("%s[%.9g, %.9g]", r ? ", " : "", whole - sweep, sweep);
   }
   for (size_t i = 0; i < w.energies; i++) settled[point[i].method]++;
   printf("], \"methods\": {");
