@@ -51,9 +51,8 @@ enum { LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
 /* All functions with vectors as values are inlined. */
 #pragma GCC diagnostic ignored "-Wpsabi"
 
-/* Lanes in a register, loaded and stored by their address; and all lanes of a
- * number, kept in registers where loops over vectors are innermost.  How many of the
- * vectors count is a constant where this is inlined: one for few energies, or all. */
+/* Lanes in a register, loaded and stored by their address.  L, the lanes that run, is
+ * a constant wherever functions are inlined. */
 enum { VECTOR = 8, VECTORS = PROGRAM_LANES / VECTOR };
 typedef double vector __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
 typedef long long bits __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
@@ -152,7 +151,7 @@ INLINED void add(int L, pair p, double *s, int v)
 }
 
 /* E - value; most sites have none. */
-INLINED pair diagonal(const double *energy_ev, double value_ev, int v)
+INLINED pair diagonal_value(const double *energy_ev, double value_ev, int v)
 {
   if (value_ev == 0) return (pair){AT(energy_ev, v), splat(0)};
   return sum_of(AT(energy_ev, v), splat(-value_ev));
@@ -167,7 +166,7 @@ INLINED void load(int L, const mho_program_step *step, const mho_program_load *n
     double *s = PROGRAM_NUMBER(trace, next->slot);
     EACH_VECTOR(v)
     {
-      pair d = diagonal(energy_ev, next->value_ev, v);
+      pair d = diagonal_value(energy_ev, next->value_ev, v);
       AT(s, v) = d.high;
       AT(s + L, v) = d.low;
     }
@@ -221,7 +220,7 @@ INLINED void eliminate_bare(int L, int row, const mho_program_load *bare, const 
                             mho_program_trace *trace)
 {
   const int *target = slot + row;
-  pair w = inverse(diagonal(energy_ev, bare[0].value_ev, v));
+  pair w = inverse(diagonal_value(energy_ev, bare[0].value_ev, v));
   *squares = fused(w.high, w.high, *squares);
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
@@ -291,61 +290,56 @@ void mho_program_forward(const mho_program *program, const double *energy_ev, si
 /* --- and back ----------------------------------------------------------------------- */
 
 /* <x, x>; size[kept][kept][lanes] is |Q|. */
-INLINED vector form(int L, int kept, const double *size, int v, const lanes *x)
+INLINED vector form(int L, int kept, const double *size, int v, const vector *x)
 {
   vector sum = {0};
   for (int c = 0; c < kept; c++) {
-    vector part = 0.5 * AT(size + (c * kept + c) * L, v) * x[c].of[v];
-    for (int d = 0; d < c; d++) part += AT(size + (c * kept + d) * L, v) * x[d].of[v];
-    sum += part * x[c].of[v];
+    vector part = 0.5 * AT(size + (c * kept + c) * L, v) * x[c];
+    for (int d = 0; d < c; d++) part += AT(size + (c * kept + d) * L, v) * x[d];
+    sum += part * x[c];
   }
   return 2 * sum;
 }
 
-/* Back over one step: the answer of its site from those of its row.  `row` and `kept`
- * are constants where this is inlined for the usual cases. */
-INLINED void return_step(int L, int row, int kept, int pivot, const int *diagonal, const double *tape,
-                         const double *size, double *response, lanes *error)
+/* Back over one step, one vector of lanes: the answer of its site from those of its
+ * row.  `row` and `kept` are constants where this is inlined for the usual cases. */
+INLINED void return_step(int L, int row, int kept, int pivot, const int *diagonal,
+                         const double *tape, const double *size, double *response, int v,
+                         vector *error)
 {
   double *own = response + (ptrdiff_t)pivot * kept * L;
-  lanes answer[PROGRAM_KEPT_MAX], moduli[PROGRAM_KEPT_MAX]; /* r / w, R */
-  for (int c = 0; c < kept; c++) answer[c] = moduli[c] = (lanes){{{0}}};
+  vector answer[PROGRAM_KEPT_MAX], moduli[PROGRAM_KEPT_MAX]; /* r / w, R */
+  for (int c = 0; c < kept; c++) answer[c] = moduli[c] = splat(0);
+#pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
-    for (int c = 0; c < kept; c++)
-      EACH_VECTOR(v)
-      {
-        vector part = AT(tape + (1 + i) * L, v) * AT(other + c * L, v);
-        answer[c].of[v] += part;
-        moduli[c].of[v] += ABSOLUTE(part);
-      }
+    vector entry = AT(tape + (1 + i) * L, v);
+    for (int c = 0; c < kept; c++) {
+      vector part = entry * AT(other + c * L, v);
+      answer[c] += part;
+      moduli[c] += ABSOLUTE(part);
+    }
   }
-  EACH_VECTOR(v)
-  {
-    vector w = AT(tape, v);
-    for (int c = 0; c < kept; c++) AT(own + c * L, v) = w * answer[c].of[v];
-    error->of[v] += ABSOLUTE(w) * form(L, kept, size, v, moduli);
-  }
+  vector w = AT(tape, v);
+  for (int c = 0; c < kept; c++) AT(own + c * L, v) = w * answer[c];
+  *error += ABSOLUTE(w) * form(L, kept, size, v, moduli);
 }
 
 /* The same for a bare step, whose answer nobody needs. */
 INLINED void return_bare(int L, int row, int kept, const mho_program_load *bare,
-                         const int *diagonal, const double *energy_ev, const double *size, const double *response,
-                         lanes *error)
+                         const int *diagonal, const double *energy_ev, const double *size,
+                         const double *response, int v, vector *error)
 {
-  lanes moduli[PROGRAM_KEPT_MAX];
-  for (int c = 0; c < kept; c++) moduli[c] = (lanes){{{0}}};
+  vector moduli[PROGRAM_KEPT_MAX];
+  for (int c = 0; c < kept; c++) moduli[c] = splat(0);
+#pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
     double light = fabs(bare[1 + i].value_ev);
-    for (int c = 0; c < kept; c++)
-      EACH_VECTOR(v) moduli[c].of[v] += light * ABSOLUTE(AT(other + c * L, v));
+    for (int c = 0; c < kept; c++) moduli[c] += light * ABSOLUTE(AT(other + c * L, v));
   }
-  EACH_VECTOR(v)
-  {
-    vector w = 1.0 / (AT(energy_ev, v) - bare[0].value_ev);
-    error->of[v] += ABSOLUTE(w) * form(L, kept, size, v, moduli);
-  }
+  vector w = 1.0 / (AT(energy_ev, v) - bare[0].value_ev);
+  *error += ABSOLUTE(w) * form(L, kept, size, v, moduli);
 }
 
 /* |Q|, and the kept sites' answers. */
@@ -398,8 +392,9 @@ INLINED void backward(int L, int kept, const mho_program *program, const double 
     bare -= step->diagonals + step->bonds;
     if (step->pivot == PROGRAM_BARE) {
       bare -= 1 + row;
-#define RETURN_STEP(row)                                                              \
-  return_bare(L, row, kept, bare, slot, energy_ev, size, trace->response, &error)
+#define RETURN_STEP(row)                                                             \
+  EACH_VECTOR(v) return_bare(L, row, kept, bare, slot, energy_ev, size, trace->response, v, \
+                             &error.of[v])
       switch (row) {
       case 1: RETURN_STEP(1); break;
       case 2: RETURN_STEP(2); break;
@@ -410,7 +405,8 @@ INLINED void backward(int L, int kept, const mho_program *program, const double 
     }
     tape -= (1 + row) * L;
 #define RETURN_STEP(row)                                                             \
-  return_step(L, row, kept, step->pivot, slot, tape, size, trace->response, &error)
+  EACH_VECTOR(v) return_step(L, row, kept, step->pivot, slot, tape, size, trace->response, v, \
+                             &error.of[v])
     switch (row) {
     case 1: RETURN_STEP(1); break;
     case 2: RETURN_STEP(2); break;
