@@ -17,6 +17,9 @@
 /* More updates a site than this, and pivoting within the band is as good. */
 enum { UPDATES_A_SITE = 600 };
 
+/* The tape of a longer one does not stay in the caches, and half of it is quicker. */
+enum { TAPE_LONG = 5000 };
+
 /* Bonds of a site that need no room of their own; of as many neighbours or more,
  * sites are not told apart by their number. */
 enum { ROW_SHORT = 6, QUEUES = 64, ROOM_A_SITE = 4 };
@@ -332,6 +335,7 @@ static void emit_kept(compiler *c)
         if (n >= 0 && (pass || a == b)) enliven(c, n, &p->last);
         p->kept_slot[a][b] = p->kept_slot[b][a] = n < 0 ? -1 : c->number[n].slot;
       }
+  p->lanes = p->taped > TAPE_LONG ? PROGRAM_LANES / 2 : PROGRAM_LANES;
   for (size_t n = 0; n < c->numbers; n++)
     if (c->number[n].roundings > p->roundings) p->roundings = c->number[n].roundings;
 }

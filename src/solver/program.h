@@ -40,6 +40,7 @@ struct mho_program {
   int kept_site[PROGRAM_KEPT_MAX];
   int kept_slot[PROGRAM_KEPT_MAX][PROGRAM_KEPT_MAX]; /* -1: zero */
   size_t taped; /* numbers a lane puts on the tape */
+  int lanes;    /* to run at a time */
 };
 
 /* *program is NULL where elimination in sparse form does not pay.
@@ -47,32 +48,34 @@ struct mho_program {
 MHO_MUST_USE mho_status mho_program_create(const mho_plan *plan, mho_program **program);
 void mho_program_free(mho_program *program);
 
-/* A batch of energies in work.  number[slots][high, low][lanes]; a site's answers
+/* A batch of energies in work: number[slots][high, low][lanes]; a site's answers
  * stand at the slot of its diagonal, response[slots][kept][lanes]; adjoint holds
- * dlnT/dS of the Schur complement's entries, [kept][kept][lanes], an entry and its
+ * dlnT/dS of the Schur complement's entries, [kept][kept][PROGRAM_LANES], an entry and its
  * mirror being one number that stands at [a][b] for b <= a; the tape keeps what the
  * way back needs: of a step -1/d and the row. */
 typedef struct {
   double *number, *response, *tape;
+  int lanes; /* that run, and that all but adjoint, broken and error have room for */
   double adjoint[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * PROGRAM_LANES];
   bool broken[PROGRAM_LANES];  /* a pivot was too small for a bound of first order */
   double error[PROGRAM_LANES]; /* of ln T, from rounding in the elimination */
 } mho_program_trace;
 
-#define PROGRAM_NUMBER(trace, slot) ((trace)->number + (ptrdiff_t)(slot) * 2 * PROGRAM_LANES)
+/* High parts of a number's lanes; the low parts stand trace->lanes further on. */
+#define PROGRAM_NUMBER(trace, slot) ((trace)->number + (ptrdiff_t)(slot) * 2 * (trace)->lanes)
 
 /* All zero is a trace without room; create makes room.  Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_program_trace_create(const mho_program *program,
                                                  mho_program_trace *trace);
 void mho_program_trace_clear(mho_program_trace *trace);
 
-/* Eliminates at energy_ev[PROGRAM_LANES], of which the first `count` matter; the kept
- * slots then hold the Schur complement.  norm_ev is that of H. */
+/* Eliminates at energy_ev[PROGRAM_LANES], of which the first count <= program->lanes
+ * matter; the kept slots then hold the Schur complement.  norm_ev is that of H. */
 void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
                          double norm_ev, mho_program_trace *trace);
 
 /* From the adjoints of the Schur complement to the error. */
-void mho_program_backward(const mho_program *program, const double *energy_ev, size_t count,
+void mho_program_backward(const mho_program *program, const double *energy_ev,
                           mho_program_trace *trace);
 
 /* For contacts of one site each: T and the relative error of this last step at

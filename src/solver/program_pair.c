@@ -34,12 +34,13 @@ void mho_program_finish_pair(const mho_plan *plan, mho_program_trace *trace,
   const double *restrict c = PROGRAM_NUMBER(trace, program->kept_slot[1][1]);
   double *restrict a_hat = trace->adjoint, *restrict b_hat = trace->adjoint + 2 * L;
   double *restrict c_hat = trace->adjoint + 3 * L;
+  int to_low = trace->lanes;
   double v0 = plan->vector[plan->support[0]];
   double v1 = plan->vector[plan->sites + plan->support[1]];
   double x0 = plan->shift_ev[0] * v0 * v0, y0 = 0.5 * plan->coupling_ev[0] * v0 * v0;
   double x1 = plan->shift_ev[1] * v1 * v1, y1 = 0.5 * plan->coupling_ev[1] * v1 * v1;
 #pragma GCC ivdep
-  for (int l = 0; l < L; l++) {
+  for (int l = 0; l < to_low; l++) {
     double p = a[l] - x0, q = c[l] - x1, square = b[l] * b[l];
     double re = p * q - y0 * y1 - square, im = p * y1 + q * y0; /* D */
     double inverse = 1.0 / (re * re + im * im), small = sqrt(inverse);
@@ -47,7 +48,7 @@ void mho_program_finish_pair(const mho_plan *plan, mho_program_trace *trace,
     double to_b = 2 / b[l] + 4 * b[l] * re * inverse;
     double size = (fabs(a[l]) + fabs(x0) + y0) * (fabs(c[l]) + fabs(x1) + y1);
     double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
-    double low = fabs(to_a * a[L + l]) + fabs(to_b * b[L + l]) + fabs(to_c * c[L + l]);
+    double low = fabs(to_a * a[to_low + l]) + fabs(to_b * b[to_low + l]) + fabs(to_c * c[to_low + l]);
     a_hat[l] = to_a;
     b_hat[l] = to_b;
     c_hat[l] = to_c;

@@ -41,7 +41,7 @@
 #include <stdlib.h>
 #include <sys/mman.h>
 
-enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
+enum { LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
 
 /* A pivot below PIVOT (times the norm) leaves too few digits for first order. */
 #define PIVOT 1e-12
@@ -51,10 +51,9 @@ enum { L = PROGRAM_LANES, LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
 /* All functions with vectors as values are inlined. */
 #pragma GCC diagnostic ignored "-Wpsabi"
 
-/* Lanes in a register, loaded and stored by their address; and all lanes of a
- * number, kept in registers where loops over vectors are innermost.  How many of the
- * vectors count is a constant where this is inlined: one for few energies, or all. */
-enum { VECTOR = 8, VECTORS = L / VECTOR };
+/* Lanes in a register, loaded and stored by their address.  L, the lanes that run, is
+ * a constant wherever functions are inlined. */
+enum { VECTOR = 8, VECTORS = PROGRAM_LANES / VECTOR };
 typedef double vector __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
 typedef long long bits __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
 typedef struct {
@@ -63,13 +62,13 @@ typedef struct {
 typedef struct {
   vector high, low;
 } pair;
-#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < vectors; v++)
+#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < L / VECTOR; v++)
 #define AT(array, v) (*(vector *)((array) + (v) * VECTOR))
 #define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
 
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
-  size_t slots = ((size_t)program->slots + 1) * L, responses = slots * (size_t)program->kept;
+  size_t L = (size_t)program->lanes, slots = ((size_t)program->slots + 1) * L, responses = slots * (size_t)program->kept;
   size_t bytes = (2 * slots + responses + program->taped * L) * sizeof(double);
   size_t page = bytes > LARGE_PAGE ? LARGE_PAGE : 64;
   trace->number = aligned_alloc(page, (bytes + page - 1) / page * page);
@@ -104,13 +103,13 @@ INLINED vector splat(double value)
   return (vector){0} + value;
 }
 
-INLINED pair pair_at(const double *number, int v)
+INLINED pair pair_at(int L, const double *number, int v)
 {
   return (pair){AT(number, v), AT(number + L, v)};
 }
 
 /* high + low once more as the nearest double and a rest; |low| <= |high|. */
-INLINED void store_normal(vector high, vector low, double *number, int v)
+INLINED void store_normal(int L, vector high, vector low, double *number, int v)
 {
   vector sum = high + low;
   AT(number, v) = sum;
@@ -145,14 +144,14 @@ INLINED pair sum_of(vector x, vector y)
 }
 
 /* s + p */
-INLINED void add(pair p, double *s, int v)
+INLINED void add(int L, pair p, double *s, int v)
 {
   pair sum = sum_of(AT(s, v), p.high);
-  store_normal(sum.high, sum.low + (AT(s + L, v) + p.low), s, v);
+  store_normal(L, sum.high, sum.low + (AT(s + L, v) + p.low), s, v);
 }
 
 /* E - value; most sites have none. */
-INLINED pair diagonal(const double *energy_ev, double value_ev, int v)
+INLINED pair diagonal_value(const double *energy_ev, double value_ev, int v)
 {
   if (value_ev == 0) return (pair){AT(energy_ev, v), splat(0)};
   return sum_of(AT(energy_ev, v), splat(-value_ev));
@@ -160,14 +159,14 @@ INLINED pair diagonal(const double *energy_ev, double value_ev, int v)
 
 /* --- forward ------------------------------------------------------------------------ */
 
-INLINED void load(int vectors, const mho_program_step *step, const mho_program_load *next,
+INLINED void load(int L, const mho_program_step *step, const mho_program_load *next,
                   const double *energy_ev, mho_program_trace *trace)
 {
   for (int k = 0; k < step->diagonals; k++, next++) {
     double *s = PROGRAM_NUMBER(trace, next->slot);
     EACH_VECTOR(v)
     {
-      pair d = diagonal(energy_ev, next->value_ev, v);
+      pair d = diagonal_value(energy_ev, next->value_ev, v);
       AT(s, v) = d.high;
       AT(s + L, v) = d.low;
     }
@@ -183,56 +182,56 @@ INLINED void load(int vectors, const mho_program_step *step, const mho_program_l
 }
 
 /* The target of a pair, p more. */
-INLINED void update(pair p, int target, int v, mho_program_trace *trace)
+INLINED void update(int L, pair p, int target, int v, mho_program_trace *trace)
 {
-  if (target < 0) store_normal(p.high, p.low, PROGRAM_NUMBER(trace, ~target), v);
-  else add(p, PROGRAM_NUMBER(trace, target), v);
+  if (target < 0) store_normal(L, p.high, p.low, PROGRAM_NUMBER(trace, ~target), v);
+  else add(L, p, PROGRAM_NUMBER(trace, target), v);
 }
 
 /* One pivot, one vector of lanes; `row` is a constant where this is inlined for a
  * short row, whose numbers then stay in registers. */
-INLINED void eliminate(int row, int pivot, const int *slot, double *tape, int v, vector *squares,
+INLINED void eliminate(int L, int row, int pivot, const int *slot, double *tape, int v, vector *squares,
                        mho_program_trace *trace)
 {
   const int *target = slot + 2 * row;
-  pair w = inverse(pair_at(PROGRAM_NUMBER(trace, pivot), v)), a[UNROLLED];
+  pair w = inverse(pair_at(L, PROGRAM_NUMBER(trace, pivot), v)), a[UNROLLED];
   AT(tape, v) = w.high;
   *squares = fused(w.high, w.high, *squares);
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
-    pair entry = pair_at(PROGRAM_NUMBER(trace, slot[i]), v);
+    pair entry = pair_at(L, PROGRAM_NUMBER(trace, slot[i]), v);
     AT(tape + (1 + i) * L, v) = entry.high;
     if (row <= UNROLLED) a[i] = entry;
   }
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
-    pair aw = product(row <= UNROLLED ? a[i] : pair_at(PROGRAM_NUMBER(trace, slot[i]), v), w);
+    pair aw = product(row <= UNROLLED ? a[i] : pair_at(L, PROGRAM_NUMBER(trace, slot[i]), v), w);
 #pragma GCC unroll 3
     for (int j = i; j < row; j++) {
-      pair other = row <= UNROLLED ? a[j] : pair_at(PROGRAM_NUMBER(trace, slot[j]), v);
-      update(product(aw, other), *target++, v, trace);
+      pair other = row <= UNROLLED ? a[j] : pair_at(L, PROGRAM_NUMBER(trace, slot[j]), v);
+      update(L, product(aw, other), *target++, v, trace);
     }
   }
 }
 
 /* The same where pivot and row are bare[1 + row]; their signs cancel. */
-INLINED void eliminate_bare(int row, const mho_program_load *bare, const int *slot,
+INLINED void eliminate_bare(int L, int row, const mho_program_load *bare, const int *slot,
                             const double *energy_ev, int v, vector *squares,
                             mho_program_trace *trace)
 {
   const int *target = slot + row;
-  pair w = inverse(diagonal(energy_ev, bare[0].value_ev, v));
+  pair w = inverse(diagonal_value(energy_ev, bare[0].value_ev, v));
   *squares = fused(w.high, w.high, *squares);
 #pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     pair aw = times(splat(bare[1 + i].value_ev), w);
 #pragma GCC unroll 3
     for (int j = i; j < row; j++)
-      update(times(splat(bare[1 + j].value_ev), aw), *target++, v, trace);
+      update(L, times(splat(bare[1 + j].value_ev), aw), *target++, v, trace);
   }
 }
 
-INLINED void forward(int vectors, const mho_program *program, const double *energy_ev,
+INLINED void forward(int L, const mho_program *program, const double *energy_ev,
                      double norm_ev, mho_program_trace *trace)
 {
   const mho_program_load *next = program->load;
@@ -244,11 +243,11 @@ INLINED void forward(int vectors, const mho_program *program, const double *ener
     const mho_program_load *bare = next;
     int row = step->row, pairs = row * (row + 1) / 2;
     if (step->pivot == PROGRAM_BARE) next += 1 + row;
-    load(vectors, step, next, energy_ev, trace);
+    load(L, step, next, energy_ev, trace);
     next += step->diagonals + step->bonds;
     if (step->pivot == PROGRAM_BARE) {
 #define ELIMINATE(row)                                                               \
-  EACH_VECTOR(v) eliminate_bare(row, bare, slot, energy_ev, v, &squares.of[v], trace)
+  EACH_VECTOR(v) eliminate_bare(L, row, bare, slot, energy_ev, v, &squares.of[v], trace)
       switch (row) {
       case 1: ELIMINATE(1); break;
       case 2: ELIMINATE(2); break;
@@ -259,7 +258,7 @@ INLINED void forward(int vectors, const mho_program *program, const double *ener
       continue;
     }
 #define ELIMINATE(row)                                                               \
-  EACH_VECTOR(v) eliminate(row, step->pivot, slot, tape, v, &squares.of[v], trace)
+  EACH_VECTOR(v) eliminate(L, row, step->pivot, slot, tape, v, &squares.of[v], trace)
     switch (row) {
     case 1: ELIMINATE(1); break;
     case 2: ELIMINATE(2); break;
@@ -270,7 +269,7 @@ INLINED void forward(int vectors, const mho_program *program, const double *ener
     tape += (1 + row) * L;
     slot += 2 * row + pairs;
   }
-  load(vectors, &program->last, next, energy_ev, trace);
+  load(L, &program->last, next, energy_ev, trace);
   double most = 1 / (PIVOT * norm_ev);
   for (int l = 0; l < L; l++)
     trace->broken[l] = !(squares.of[l / VECTOR][l % VECTOR] < most * most);
@@ -280,78 +279,77 @@ FOR_EVERY_PROCESSOR
 void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
                          double norm_ev, mho_program_trace *trace)
 {
-  if (count <= VECTOR) forward(1, program, energy_ev, norm_ev, trace);
-  else forward(VECTORS, program, energy_ev, norm_ev, trace);
+  trace->lanes = count <= VECTOR ? VECTOR : program->lanes;
+  switch (trace->lanes) {
+  case VECTOR: forward(VECTOR, program, energy_ev, norm_ev, trace); break;
+  case PROGRAM_LANES / 2: forward(PROGRAM_LANES / 2, program, energy_ev, norm_ev, trace); break;
+  default: forward(PROGRAM_LANES, program, energy_ev, norm_ev, trace);
+  }
 }
 
 /* --- and back ----------------------------------------------------------------------- */
 
 /* <x, x>; size[kept][kept][lanes] is |Q|. */
-INLINED vector form(int kept, const double *size, int v, const lanes *x)
+INLINED vector form(int L, int kept, const double *size, int v, const vector *x)
 {
   vector sum = {0};
   for (int c = 0; c < kept; c++) {
-    vector part = 0.5 * AT(size + (c * kept + c) * L, v) * x[c].of[v];
-    for (int d = 0; d < c; d++) part += AT(size + (c * kept + d) * L, v) * x[d].of[v];
-    sum += part * x[c].of[v];
+    vector part = 0.5 * AT(size + (c * kept + c) * L, v) * x[c];
+    for (int d = 0; d < c; d++) part += AT(size + (c * kept + d) * L, v) * x[d];
+    sum += part * x[c];
   }
   return 2 * sum;
 }
 
-/* Back over one step: the answer of its site from those of its row.  `row` and `kept`
- * are constants where this is inlined for the usual cases. */
-INLINED void return_step(int vectors, int row, int kept, int pivot, const int *diagonal, const double *tape,
-                         const double *size, double *response, lanes *error)
+/* Back over one step, one vector of lanes: the answer of its site from those of its
+ * row.  `row` and `kept` are constants where this is inlined for the usual cases. */
+INLINED void return_step(int L, int row, int kept, int pivot, const int *diagonal,
+                         const double *tape, const double *size, double *response, int v,
+                         vector *error)
 {
   double *own = response + (ptrdiff_t)pivot * kept * L;
-  lanes answer[PROGRAM_KEPT_MAX], moduli[PROGRAM_KEPT_MAX]; /* r / w, R */
-  for (int c = 0; c < kept; c++) answer[c] = moduli[c] = (lanes){{{0}}};
+  vector answer[PROGRAM_KEPT_MAX], moduli[PROGRAM_KEPT_MAX]; /* r / w, R */
+  for (int c = 0; c < kept; c++) answer[c] = moduli[c] = splat(0);
+#pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
-    for (int c = 0; c < kept; c++)
-      EACH_VECTOR(v)
-      {
-        vector part = AT(tape + (1 + i) * L, v) * AT(other + c * L, v);
-        answer[c].of[v] += part;
-        moduli[c].of[v] += ABSOLUTE(part);
-      }
+    vector entry = AT(tape + (1 + i) * L, v);
+    for (int c = 0; c < kept; c++) {
+      vector part = entry * AT(other + c * L, v);
+      answer[c] += part;
+      moduli[c] += ABSOLUTE(part);
+    }
   }
-  EACH_VECTOR(v)
-  {
-    vector w = AT(tape, v);
-    for (int c = 0; c < kept; c++) AT(own + c * L, v) = w * answer[c].of[v];
-    error->of[v] += ABSOLUTE(w) * form(kept, size, v, moduli);
-  }
+  vector w = AT(tape, v);
+  for (int c = 0; c < kept; c++) AT(own + c * L, v) = w * answer[c];
+  *error += ABSOLUTE(w) * form(L, kept, size, v, moduli);
 }
 
 /* The same for a bare step, whose answer nobody needs. */
-INLINED void return_bare(int vectors, int row, int kept, const mho_program_load *bare,
-                         const int *diagonal, const double *energy_ev, const double *size, const double *response,
-                         lanes *error)
+INLINED void return_bare(int L, int row, int kept, const mho_program_load *bare,
+                         const int *diagonal, const double *energy_ev, const double *size,
+                         const double *response, int v, vector *error)
 {
-  lanes moduli[PROGRAM_KEPT_MAX];
-  for (int c = 0; c < kept; c++) moduli[c] = (lanes){{{0}}};
+  vector moduli[PROGRAM_KEPT_MAX];
+  for (int c = 0; c < kept; c++) moduli[c] = splat(0);
+#pragma GCC unroll 3
   for (int i = 0; i < row; i++) {
     const double *other = response + (ptrdiff_t)diagonal[i] * kept * L;
     double light = fabs(bare[1 + i].value_ev);
-    for (int c = 0; c < kept; c++)
-      EACH_VECTOR(v) moduli[c].of[v] += light * ABSOLUTE(AT(other + c * L, v));
+    for (int c = 0; c < kept; c++) moduli[c] += light * ABSOLUTE(AT(other + c * L, v));
   }
-  EACH_VECTOR(v)
-  {
-    vector w = 1.0 / (AT(energy_ev, v) - bare[0].value_ev);
-    error->of[v] += ABSOLUTE(w) * form(kept, size, v, moduli);
-  }
+  vector w = 1.0 / (AT(energy_ev, v) - bare[0].value_ev);
+  *error += ABSOLUTE(w) * form(L, kept, size, v, moduli);
 }
 
 /* |Q|, and the kept sites' answers. */
-INLINED void start_back(int kept, const mho_program *program, mho_program_trace *trace,
+INLINED void start_back(int L, int kept, const mho_program *program, mho_program_trace *trace,
                         double *size)
 {
   for (int a = 0; a < kept; a++)
     for (int b = 0; b < kept; b++) {
       double *own = trace->response + ((ptrdiff_t)program->kept_slot[a][a] * kept + b) * L;
-      const double *hat = trace->adjoint + (a < b ? b * kept + a : a * kept + b) * L;
+      const double *hat = trace->adjoint + (a < b ? b * kept + a : a * kept + b) * PROGRAM_LANES;
       bool zero = program->kept_slot[a][b] < 0;
       for (int l = 0; l < L; l++) {
         own[l] = a == b;
@@ -361,7 +359,7 @@ INLINED void start_back(int kept, const mho_program *program, mho_program_trace 
 }
 
 /* Adds what falls on the Schur complement itself. */
-INLINED void finish_back(int kept, const mho_program *program, const lanes *error,
+INLINED void finish_back(int L, int kept, const mho_program *program, const lanes *error,
                          mho_program_trace *trace)
 {
   double most = program->roundings;
@@ -371,22 +369,22 @@ INLINED void finish_back(int kept, const mho_program *program, const lanes *erro
     for (int b = 0; b <= a; b++) {
       int slot = program->kept_slot[a][b];
       for (int l = 0; slot >= 0 && l < L; l++)
-        trace->error[l] += most * fabs(trace->adjoint[(a * kept + b) * L + l] *
+        trace->error[l] += most * fabs(trace->adjoint[(a * kept + b) * PROGRAM_LANES + l] *
                                        PROGRAM_NUMBER(trace, slot)[l]);
     }
   for (int l = 0; l < L; l++) trace->error[l] *= UNIT;
 }
 
-INLINED void backward(int vectors, int kept, const mho_program *program, const double *energy_ev,
+INLINED void backward(int L, int kept, const mho_program *program, const double *energy_ev,
                       mho_program_trace *trace)
 {
   const int *slot = program->slot + program->slots_listed;
   const mho_program_load *bare = program->load + program->loads;
   const double *tape = trace->tape + program->taped * L;
-  double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * L];
+  double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * PROGRAM_LANES];
   lanes error = {{{0}}};
   bare -= program->last.diagonals + program->last.bonds;
-  start_back(kept, program, trace, size);
+  start_back(L, kept, program, trace, size);
   for (size_t k = program->steps; k-- > 0;) {
     const mho_program_step *step = &program->step[k];
     int row = step->row;
@@ -394,8 +392,9 @@ INLINED void backward(int vectors, int kept, const mho_program *program, const d
     bare -= step->diagonals + step->bonds;
     if (step->pivot == PROGRAM_BARE) {
       bare -= 1 + row;
-#define RETURN_STEP(row)                                                              \
-  return_bare(vectors, row, kept, bare, slot, energy_ev, size, trace->response, &error)
+#define RETURN_STEP(row)                                                             \
+  EACH_VECTOR(v) return_bare(L, row, kept, bare, slot, energy_ev, size, trace->response, v, \
+                             &error.of[v])
       switch (row) {
       case 1: RETURN_STEP(1); break;
       case 2: RETURN_STEP(2); break;
@@ -406,7 +405,8 @@ INLINED void backward(int vectors, int kept, const mho_program *program, const d
     }
     tape -= (1 + row) * L;
 #define RETURN_STEP(row)                                                             \
-  return_step(vectors, row, kept, step->pivot, slot, tape, size, trace->response, &error)
+  EACH_VECTOR(v) return_step(L, row, kept, step->pivot, slot, tape, size, trace->response, v, \
+                             &error.of[v])
     switch (row) {
     case 1: RETURN_STEP(1); break;
     case 2: RETURN_STEP(2); break;
@@ -416,15 +416,19 @@ INLINED void backward(int vectors, int kept, const mho_program *program, const d
 #undef RETURN_STEP
     slot -= row;
   }
-  finish_back(kept, program, &error, trace);
+  finish_back(L, kept, program, &error, trace);
 }
 
 FOR_EVERY_PROCESSOR
-void mho_program_backward(const mho_program *program, const double *energy_ev, size_t count,
+void mho_program_backward(const mho_program *program, const double *energy_ev,
                           mho_program_trace *trace)
 {
-  int kept = program->kept;
-  if (kept == 2 && count <= VECTOR) backward(1, 2, program, energy_ev, trace);
-  else if (kept == 2) backward(VECTORS, 2, program, energy_ev, trace);
-  else backward(VECTORS, kept, program, energy_ev, trace);
+#define BACKWARD(kept)                                                               \
+  switch (trace->lanes) {                                                            \
+  case VECTOR: backward(VECTOR, kept, program, energy_ev, trace); break;             \
+  case PROGRAM_LANES / 2: backward(PROGRAM_LANES / 2, kept, program, energy_ev, trace); break; \
+  default: backward(PROGRAM_LANES, kept, program, energy_ev, trace);                 \
+  }
+  if (program->kept == 2) BACKWARD(2) else BACKWARD(program->kept)
+#undef BACKWARD
 }

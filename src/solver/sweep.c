@@ -130,7 +130,7 @@ static mho_status reduced_point(const mho_plan *plan, workspace *work, size_t la
     int slot = program->kept_slot[k / n][k % n];
     if (slot < 0) continue;
     value[k] = PROGRAM_NUMBER(&work->trace, slot)[lane];
-    low[k] = PROGRAM_NUMBER(&work->trace, slot)[PROGRAM_LANES + lane];
+    low[k] = PROGRAM_NUMBER(&work->trace, slot)[work->trace.lanes + (int)lane];
   }
   if (!work->reduced) work->reduced = mho_elimination_create_double(plan->contacts);
   if (!work->reduced) return MHO_ERR_MEMORY;
@@ -157,9 +157,9 @@ static mho_status finish_lanes(const mho_plan *plan, workspace *work, size_t lan
   double transmission[PROGRAM_LANES], error[PROGRAM_LANES];
   bool pair = mho_program_is_pair(plan);
   if (pair) mho_program_finish_pair(plan, &work->trace, transmission, error);
-  for (size_t l = 0; l < PROGRAM_LANES; l++) {
+  for (size_t l = 0; l < lanes; l++) {
     estimate[l] = (mho_estimate){.relative_error = INFINITY};
-    if (l >= lanes || work->trace.broken[l]) continue;
+    if (work->trace.broken[l]) continue;
     if (pair && transmission[l] > 1e-200 && error[l] <= CONTRACT_FLOOR)
       estimate[l] = (mho_estimate){.transmission = transmission[l],
                                    .log10_transmission = log10_of_normal(transmission[l]),
@@ -218,7 +218,7 @@ static mho_status run_program(const mho_plan *plan, workspace *work, mho_point *
   mho_program_forward(plan->program, wait->energy_ev, lanes, plan->norm_ev, trace);
   mho_estimate estimate[PROGRAM_LANES];
   mho_status status = finish_lanes(plan, work, lanes, estimate);
-  if (status == MHO_OK) mho_program_backward(plan->program, wait->energy_ev, lanes, trace);
+  if (status == MHO_OK) mho_program_backward(plan->program, wait->energy_ev, trace);
   for (size_t l = 0; status == MHO_OK && l < lanes; l++) {
     estimate[l].relative_error += SECOND_ORDER * trace->error[l];
     if (keeps_contract(&estimate[l]))
@@ -237,7 +237,7 @@ static mho_status pass_on(const mho_plan *plan, workspace *work, double energy_e
   queue *wait = &work->queue;
   wait->energy_ev[wait->lanes] = energy_ev;
   wait->at[wait->lanes++] = index;
-  return wait->lanes == PROGRAM_LANES ? run_program(plan, work, point) : MHO_OK;
+  return wait->lanes == (size_t)plan->program->lanes ? run_program(plan, work, point) : MHO_OK;
 }
 
 /* One energy by the sum over levels, for any number of channels. */

@@ -114,7 +114,7 @@ static void check_batch(const raw *r, const mho_plan *plan, const double gamma[2
   double value[PROGRAM_LANES], relative[PROGRAM_LANES];
   mho_program_forward(program, energy, PROGRAM_LANES, plan->norm_ev, trace);
   mho_program_finish_pair(plan, trace, value, relative);
-  mho_program_backward(program, energy, PROGRAM_LANES, trace);
+  mho_program_backward(program, energy, trace);
   for (int l = 0; l < PROGRAM_LANES; l++) {
     count->points++;
     count->broken += trace->broken[l];
@@ -122,7 +122,7 @@ static void check_batch(const raw *r, const mho_plan *plan, const double gamma[2
     mho_quad ours[3], exact[3];
     for (int k = 0; k < 3; k++) {
       const double *number = PROGRAM_NUMBER(trace, program->kept_slot[k / 2][(k + 1) / 2]);
-      ours[k] = (mho_quad)number[l] + number[PROGRAM_LANES + l];
+      ours[k] = (mho_quad)number[l] + number[trace->lanes + l];
     }
     schur(r, kept, energy[l], exact);
     mho_quad t = transmission(exact, gamma);
