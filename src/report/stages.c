@@ -93,20 +93,6 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
   mho_table_optional(table, !point->node, point->log10_transmission);
 }
 
-mho_table *mho_poles_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "energy_eV", "width_eV"};
-  return mho_output_table(output, "poles", columns, COUNT(columns));
-}
-
-void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
-                   const mho_pole *pole)
-{
-  mho_table_text(table, molecule);
-  mho_table_number(table, pole->energy_ev - fermi_ev);
-  mho_table_number(table, pole->width_ev);
-}
-
 mho_table *mho_compare_table(mho_output *output)
 {
   static const char *const columns[] = {
@@ -148,44 +134,6 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
   if (zero) mho_table_integer(table, node->order);
   else mho_table_empty(table);
   mho_table_text(table, kind[node->kind]);
-}
-
-mho_table *mho_currents_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "from", "to", "current"};
-  return mho_output_table(output, "currents", columns, COUNT(columns));
-}
-
-void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside)
-{
-  for (size_t i = 0; i < inside->bonds; i++) {
-    const mho_bond_current *current = &inside->bond[i];
-    bool back = inside->flows && current->flow < 0;
-    mho_table_text(table, molecule->name);
-    mho_table_text(table, molecule->site[back ? current->to : current->from].id);
-    mho_table_text(table, molecule->site[back ? current->from : current->to].id);
-    mho_table_optional(table, inside->flows,
-                       inside->flows ? fabs(current->flow) / inside->transmission : 0);
-  }
-}
-
-mho_table *mho_orbitals_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "level", "energy_eV", "diagonal",
-                                        "interference"};
-  return mho_output_table(output, "orbitals", columns, COUNT(columns));
-}
-
-void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
-                       const mho_inside *inside)
-{
-  for (size_t k = 0; k < inside->orbitals; k++) {
-    mho_table_text(table, molecule);
-    mho_table_integer(table, (long)k + 1);
-    mho_table_number(table, inside->orbital[k].level_ev - fermi_ev);
-    mho_table_number(table, inside->orbital[k].alone);
-    mho_table_number(table, inside->orbital[k].interference);
-  }
 }
 
 /* 10^log10 with two digits, in a buffer. */

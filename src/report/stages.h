@@ -36,9 +36,15 @@ mho_table *mho_transmission_table(mho_output *output);
 void mho_transmission_row(mho_table *table, const char *molecule, double relative_energy_ev,
                           const mho_point *point);
 
-mho_table *mho_poles_table(mho_output *output);
+/* With `widths` also what each contact adds to the width. */
+mho_table *mho_poles_table(mho_output *output, bool widths);
 void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
-                   const mho_pole *pole);
+                   const mho_pole *pole, bool widths);
+
+/* Which of pole[sites], ascending, belong to HOMO and LUMO: the k-th to the k-th
+ * level, or where no contact sees that one, the next that one sees. */
+void mho_frontier_note(mho_output *output, const char *molecule, const mho_junction *junction,
+                       const mho_pole *pole);
 
 mho_table *mho_nodes_table(mho_output *output);
 void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
@@ -52,6 +58,12 @@ void mho_currents_rows(mho_table *table, const mho_molecule *molecule,
 mho_table *mho_orbitals_table(mho_output *output);
 void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
                        const mho_inside *inside);
+
+/* Eigenchannels; with `parts` a row for each site of the contacts. */
+mho_table *mho_channels_table(mho_output *output, bool parts);
+void mho_channels_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside,
+                       bool parts);
+void mho_channels_note(mho_output *output, const mho_molecule *molecule, const mho_inside *inside);
 
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);

@@ -9,6 +9,9 @@
 
 #define LEAST_FLOWING 1e-20
 
+/* Singular values below this part of the largest are rounding. */
+#define SINGULAR_ROUNDING (32 * DBL_EPSILON)
+
 typedef struct {
   const mho_junction *junction;
   const mho_plan *plan;
@@ -80,33 +83,30 @@ static void find_orbitals(const view *v, mho_inside *result)
   }
 }
 
-static int descending(const void *a, const void *b)
-{
-  double x = *(const double *)a, y = *(const double *)b;
-  return (x < y) - (x > y);
-}
-
-/* Eigenvalues of t^+ t, or of t t^+ where that is smaller. */
+/* t_ba = sqrt(Gamma_a Gamma_b) tau_ba by singular values: t^+ t itself would lose the
+ * small ones to rounding of the largest. */
 static mho_status find_channels(const view *v, mho_inside *result, mho_error *error)
 {
   const mho_plan *plan = v->plan;
   size_t l = (size_t)plan->left, r = (size_t)plan->right, n = result->eigenchannels;
-  double complex *product = calloc(n * n + n, sizeof *product), *value = product + n * n;
-  if (!product) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  for (size_t p = 0; p < n; p++)
-    for (size_t q = 0; q < n; q++)
-      for (size_t k = 0; k < (l <= r ? r : l); k++) {
-        size_t first = l <= r ? p * r + k : k * r + p, second = l <= r ? q * r + k : k * r + q;
-        size_t a = l <= r ? p : k, b = l <= r ? k : p, c = l <= r ? q : k, d = l <= r ? k : q;
-        product[p * n + q] += sqrt(plan->coupling_ev[a] * plan->coupling_ev[l + b]) *
-                              sqrt(plan->coupling_ev[c] * plan->coupling_ev[l + d]) *
-                              v->tau[first] * conj(v->tau[second]);
-      }
-  mho_status status = mho_eigenvalues_complex((int)n, product, value, error);
-  for (size_t k = 0; status == MHO_OK && k < n; k++)
-    result->eigenchannel[k] = fmin(1.0, fmax(0.0, creal(value[k])));
-  if (status == MHO_OK) qsort(result->eigenchannel, n, sizeof(double), descending);
-  free(product);
+  double complex *t = malloc((l * r + n * (l + r)) * sizeof *t);
+  if (!t) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  double complex *left = t + l * r, *right = left + n * l;
+  double *singular = result->eigenchannel;
+  for (size_t a = 0; a < l; a++)
+    for (size_t b = 0; b < r; b++)
+      t[b * l + a] = sqrt(plan->coupling_ev[a]) * sqrt(plan->coupling_ev[l + b]) * v->tau[a * r + b];
+  mho_status status = mho_singular_complex((int)l, (int)r, t, singular, left, right, error);
+  double least = SINGULAR_ROUNDING * singular[0];
+  for (size_t k = 0; status == MHO_OK && k < n; k++) {
+    double value = singular[k] > least ? singular[k] : 0;
+    result->eigenchannel[k] = fmin(1.0, value * value);
+    for (size_t a = 0; a < l; a++)
+      result->left_part[k * l + a] = creal(left[k * l + a] * conj(left[k * l + a]));
+    for (size_t b = 0; b < r; b++)
+      result->right_part[k * r + b] = creal(right[b * n + k] * conj(right[b * n + k]));
+  }
+  free(t);
   return status;
 }
 
@@ -116,7 +116,10 @@ static mho_status allocate(const mho_plan *plan, mho_inside *result, mho_error *
   result->bond = malloc((plan->entries + 1) * sizeof *result->bond);
   result->orbital = malloc((size_t)plan->sites * sizeof *result->orbital);
   result->eigenchannel = calloc(result->eigenchannels, sizeof(double));
-  if (!result->bond || !result->orbital || !result->eigenchannel)
+  result->left_part = calloc(result->eigenchannels * (size_t)plan->left, sizeof(double));
+  result->right_part = calloc(result->eigenchannels * (size_t)plan->right, sizeof(double));
+  if (!result->bond || !result->orbital || !result->eigenchannel || !result->left_part ||
+      !result->right_part)
     return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   return MHO_OK;
 }
@@ -163,5 +166,7 @@ void mho_inside_clear(mho_inside *result)
   free(result->bond);
   free(result->orbital);
   free(result->eigenchannel);
+  free(result->left_part);
+  free(result->right_part);
   *result = (mho_inside){0};
 }
