@@ -23,6 +23,7 @@ typedef struct {
 typedef struct {
   double transmission;
   bool flows; /* T > 1e-20; else the currents are rounding */
+  bool outside_band; /* of an electrode: nothing flows, all values are 0 */
   size_t bonds, orbitals, eigenchannels;
   mho_bond_current *bond;   /* every non-zero hopping */
   mho_orbital_share *orbital; /* by ascending level */

@@ -86,6 +86,7 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
   for (size_t i = 0; status == MHO_OK && i < count; i++) {
     mho_transmission_row(table, s->molecule.name, relative[i], &point[i]);
     if (point[i].method == MHO_METHOD_NO_PATH) *warnings |= MHO_WARN_NO_PI_PATH;
+    else if (point[i].method == MHO_METHOD_NO_BAND) *warnings |= MHO_WARN_OUTSIDE_BAND;
     else if (point[i].node) *warnings |= MHO_WARN_NEAR_NODE;
   }
   if (status == MHO_OK && cmd->verbose)
@@ -104,7 +105,8 @@ static mho_status add_poles(const command *cmd, const subject *s, const mho_plan
   int count = mho_plan_sites(plan);
   mho_pole *pole = malloc((size_t)count * sizeof *pole);
   if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
-  mho_status status = mho_poles(plan, pole, error);
+  mho_status status = mho_molecule_require_wide_band(&s->molecule, "--poles", error);
+  if (status == MHO_OK) status = mho_poles(plan, pole, error);
   for (int k = 0; status == MHO_OK && k < count; k++)
     mho_poles_row(table, s->molecule.name, s->junction.fermi_ev, &pole[k], cmd->widths);
   if (status == MHO_OK && !cmd->quiet)
@@ -135,7 +137,8 @@ static mho_status add_inside(const command *cmd, const subject *s, const mho_pla
   mho_inside inside;
   mho_buffer svg = {0};
   mho_status status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
-  if (status == MHO_OK && !inside.flows) *warnings |= MHO_WARN_NEAR_NODE;
+  if (status == MHO_OK && !inside.flows)
+    *warnings |= inside.outside_band ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NEAR_NODE;
   if (status == MHO_OK && cmd->orbitals)
     mho_orbitals_rows(table, m->name, s->junction.fermi_ev, &inside);
   if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside);
@@ -143,7 +146,9 @@ static mho_status add_inside(const command *cmd, const subject *s, const mho_pla
   if (status == MHO_OK && cmd->channels && !cmd->quiet) mho_channels_note(output, m, &inside);
   if (status == MHO_OK && cmd->measured.figure && !inside.flows)
     status = mho_fail(error, MHO_ERR_NOT_FINITE, "cli", "figure",
-                      "--figure: nothing flows, T has a node at this energy");
+                      inside.outside_band
+                          ? "--figure: nothing flows, the energy lies outside the band of an electrode"
+                          : "--figure: nothing flows, T has a node at this energy");
   if (status == MHO_OK && cmd->measured.figure) {
     status = mho_drawing_write_currents(m, &inside, &svg, error);
     if (status == MHO_OK) status = mho_buffer_save(&svg, cmd->measured.figure, "cli", error);

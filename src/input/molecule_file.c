@@ -4,6 +4,7 @@
  */
 #include <mho/molecule_file.h>
 
+#include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -13,10 +14,12 @@
 #include "input/molecule_node.h"
 #include "input/yaml.h"
 #include "molecule/records.h"
+#include "molecule/texts.h"
 
 #define ENERGY_LIMIT_EV 100.0
 #define COUPLING_LOW_EV 1e-9
 #define COUPLING_HIGH_EV 10.0
+#define CHAIN_LOW_EV 1e-6 /* of its hoppings */
 
 enum { CHARGE_LIMIT = 20, RECORD_LIMIT = 1000000000 };
 
@@ -334,10 +337,48 @@ static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *c
                   "amplitude: all are zero, so the contact touches nothing");
 }
 
+/* An energy that must not vanish. */
+static void read_hopping(reader *r, const mho_yaml_node *mapping, const char *key,
+                         const char *without, double *value)
+{
+  const mho_yaml_node *node = mho_yaml_require(r->yaml, mapping, key);
+  if (!mho_yaml_get_quantity(r->yaml, node, key, MHO_ENERGY, -ENERGY_LIMIT_EV, ENERGY_LIMIT_EV,
+                             value) ||
+      fabs(*value) >= CHAIN_LOW_EV)
+    return;
+  mho_yaml_fail(r->yaml, node, MHO_ERR_RANGE, key,
+                "%s: with '%.40s' %s; allowed are sizes of %g eV to %g eV", key, node->text, without,
+                CHAIN_LOW_EV, ENERGY_LIMIT_EV);
+}
+
+static void read_chain(reader *r, const mho_yaml_node *contact_node, mho_contact *contact)
+{
+  static const char *const keys[] = {"centre", "hopping", "joint"};
+  static const char *const excluded[] = {"coupling", "shift"};
+  const mho_yaml_node *node = mho_yaml_find(contact_node, "chain");
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "chain")) return;
+  mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
+  for (int i = 0; i < 2; i++) {
+    const mho_yaml_node *other = mho_yaml_find(contact_node, excluded[i]);
+    if (other)
+      mho_yaml_fail(r->yaml, other, MHO_ERR_KEY, excluded[i],
+                    "%s: it is of a wide band and does not go with 'chain', which has its own",
+                    excluded[i]);
+  }
+  contact->has_chain = true;
+  contact->line = node->line;
+  contact->column = node->column;
+  mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "centre"), "centre", MHO_ENERGY,
+                        -ENERGY_LIMIT_EV, ENERGY_LIMIT_EV, &contact->chain.center_ev);
+  read_hopping(r, node, "hopping", "the chain has no band", &contact->chain.hopping_ev);
+  read_hopping(r, node, "joint", "nothing joins chain and molecule", &contact->chain.joint_ev);
+}
+
 static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
                          mho_contact *contact)
 {
-  static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift"};
+  static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift",
+                                     "chain"};
   static const char *const channels[] = {"independent", "one"};
   if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
   mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
@@ -351,6 +392,7 @@ static void read_contact(reader *r, const mho_yaml_node *node, const char *field
                           &choice))
     contact->channels = choice == 1 ? MHO_CHANNELS_ONE : MHO_CHANNELS_INDEPENDENT;
   read_amplitudes(r, node, contact);
+  read_chain(r, node, contact);
 }
 
 static void read_electrodes(reader *r)
@@ -362,6 +404,11 @@ static void read_electrodes(reader *r)
   for (int side = 0; side < 2; side++)
     read_contact(r, mho_yaml_require(r->yaml, node, keys[side]), keys[side],
                  &r->molecule->contact[side]);
+  const mho_yaml_node *coupling = mho_yaml_find(r->node, "coupling");
+  if (coupling && r->molecule->contact[MHO_LEFT].has_chain &&
+      r->molecule->contact[MHO_RIGHT].has_chain)
+    mho_yaml_fail(r->yaml, coupling, MHO_ERR_KEY, "coupling",
+                  "coupling: both electrodes are chains, so no contact has it");
 }
 
 /* The sites themselves. */
@@ -376,6 +423,11 @@ static void read_explicit(reader *r, const mho_settings *overrides)
   read_electrodes(r);
   if (r->yaml->error->count) return; /* sites may be missing */
   mho_settings above = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
+  bool chains = r->molecule->contact[MHO_LEFT].has_chain || r->molecule->contact[MHO_RIGHT].has_chain;
+  if (overrides && overrides->has_coupling && chains &&
+      mho_texts_add(&r->molecule->notes, "the coupling that is asked for puts wide bands in the "
+                                         "place of the file's chains") != MHO_OK)
+    fail_memory(r);
   if (overrides) {
     above.has_coupling = overrides->has_coupling;
     above.coupling_ev = overrides->coupling_ev;

@@ -110,7 +110,8 @@ static void begin_channel(mho_table *table, const char *molecule, const mho_insi
 {
   mho_table_text(table, molecule);
   mho_table_integer(table, (long)channel + 1);
-  if (inside->flows) mho_table_number(table, inside->eigenchannel[channel]);
+  if (inside->flows || inside->outside_band)
+    mho_table_number(table, inside->eigenchannel[channel]);
   else mho_table_node(table);
 }
 

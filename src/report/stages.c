@@ -21,6 +21,13 @@ static void add_warning_words(mho_table *table, unsigned warnings)
   mho_buffer_clear(&words);
 }
 
+/* A node is no prediction; outside a band the model does say zero. */
+static void add_transmission(mho_table *table, const mho_point *point)
+{
+  if (point->node && point->method != MHO_METHOD_NO_BAND) mho_table_node(table);
+  else mho_table_number(table, point->transmission);
+}
+
 mho_table *mho_conductance_table(mho_output *output)
 {
   static const char *const columns[] = {
@@ -34,9 +41,8 @@ void mho_conductance_row(mho_table *table, const char *molecule,
 {
   mho_table_text(table, molecule);
   mho_table_number(table, g->fermi_ev);
-  if (g->at_fermi.node) mho_table_node(table);
-  else mho_table_number(table, g->at_fermi.transmission);
-  if (g->has_log) {
+  add_transmission(table, &g->at_fermi);
+  if (g->has_log || g->warnings & MHO_WARN_OUTSIDE_BAND) {
     mho_table_number(table, g->conductance_g0);
     mho_table_number(table, g->conductance_s);
   } else {
@@ -88,8 +94,7 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
 {
   mho_table_text(table, molecule);
   mho_table_number(table, relative_energy_ev);
-  if (point->node) mho_table_node(table);
-  else mho_table_number(table, point->transmission);
+  add_transmission(table, point);
   mho_table_optional(table, !point->node, point->log10_transmission);
 }
 
@@ -151,6 +156,11 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
   if (g->warnings & MHO_WARN_NO_PI_PATH) {
     mho_output_note(output, "%s: no pi path joins the contacts, so the model predicts nothing",
                     molecule);
+  } else if (g->warnings & MHO_WARN_OUTSIDE_BAND) {
+    mho_output_note(output,
+                    "%s: the Fermi level lies outside the band of an electrode, where no state "
+                    "brings electrons; what conducts comes by the thermal tail",
+                    molecule);
   } else if (g->warnings & MHO_WARN_NEAR_NODE || !g->has_log) {
     mho_output_note(output,
                     "%s: a node at the Fermi level; the pi system conducts poorly there, and how "
@@ -166,12 +176,6 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
                                        : "0",
                     window);
   }
-}
-
-static void add_transmission(mho_table *table, const mho_point *point)
-{
-  if (point->node) mho_table_node(table);
-  else mho_table_number(table, point->transmission);
 }
 
 static void add_conductance(mho_table *table, double log10_g0)
@@ -488,23 +492,41 @@ void mho_rules_note(mho_output *output, const mho_molecule *molecule,
   }
 }
 
+/* `coupling 0.3 and 0.5 eV`, or in more words where a chain is among them. */
+static void write_electrodes(const mho_molecule *molecule, mho_buffer *words)
+{
+  const mho_contact *left = &molecule->contact[MHO_LEFT], *right = &molecule->contact[MHO_RIGHT];
+  if (left->has_chain || right->has_chain) {
+    mho_buffer_add(words, "left electrode ");
+    mho_write_electrode(left, 6, words);
+    mho_buffer_add(words, ", right electrode ");
+    mho_write_electrode(right, 6, words);
+    return;
+  }
+  mho_buffer_add(words, "coupling ");
+  mho_buffer_number(words, 6, left->coupling_ev);
+  mho_buffer_add(words, " and ");
+  mho_buffer_number(words, 6, right->coupling_ev);
+  mho_buffer_add(words, " eV");
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {
-  char fermi[64], beta[32], temperature[32], at[32], left[32], right[32];
+  char fermi[64], beta[32], temperature[32], at[32];
+  mho_buffer electrodes = {0};
   mho_number_write(beta, sizeof beta, 6, molecule->beta_ev);
   mho_number_write(temperature, sizeof temperature, 6, molecule->temperature_k);
   mho_number_write(at, sizeof at, 6, junction->fermi_ev);
-  mho_number_write(left, sizeof left, 6, molecule->contact[MHO_LEFT].coupling_ev);
-  mho_number_write(right, sizeof right, 6, molecule->contact[MHO_RIGHT].coupling_ev);
+  write_electrodes(molecule, &electrodes);
+  output->failed |= electrodes.failed;
   mho_fermi_write(&molecule->fermi, fermi, sizeof fermi);
   bool relative = molecule->fermi.kind != MHO_FERMI_ENERGY;
-  mho_output_note(output,
-                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s%s%s%s, "
-                  "%s K",
-                  molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
-                  fermi, relative ? " = " : "", relative ? at : "", relative ? " eV" : "",
-                  temperature);
+  mho_output_note(output, "%s: beta %s eV, parameters %s, %s, Fermi level %s%s%s%s, %s K",
+                  molecule->name, beta, mho_parameters_name(molecule->parameters),
+                  electrodes.failed ? "" : electrodes.data, fermi, relative ? " = " : "",
+                  relative ? at : "", relative ? " eV" : "", temperature);
+  mho_buffer_clear(&electrodes);
   for (int i = 0; i < molecule->notes.count; i++)
     mho_output_note(output, "%s: %s", molecule->name, molecule->notes.text[i]);
 }

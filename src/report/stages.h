@@ -68,6 +68,9 @@ void mho_channels_note(mho_output *output, const mho_molecule *molecule, const m
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
 
+/* `coupling 0.3 eV`, `chain of hopping -5 eV, joint -1.1 eV, band -10 to 10 eV`. */
+void mho_write_electrode(const mho_contact *contact, int digits, mho_buffer *buffer);
+
 /* The result in one sentence. */
 void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,
                       double window_ev);

@@ -133,19 +133,13 @@ static bool is_finite(const mho_inside *result)
   return isfinite(sum);
 }
 
-mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan,
-                              double energy_ev, mho_inside *result, mho_error *error)
+/* plan: of wide bands. */
+static mho_status compute(const mho_junction *junction, const mho_plan *plan, double energy_ev,
+                          mho_inside *result, mho_error *error)
 {
-  *result = (mho_inside){0};
-  if (junction->sites != plan->sites || !plan->level_ev)
-    return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
-                    "the plan was not made of this junction");
-  mho_status status = mho_plan_require_wide_band(plan, "inside views", error);
-  if (status != MHO_OK) return status;
   view v = {junction, plan, NULL, NULL};
   mho_point point;
-  status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
-  if (status == MHO_OK) status = allocate(plan, result, error);
+  mho_status status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
   if (status == MHO_OK) status = solve(&v, energy_ev, result, error);
   if (status == MHO_OK) {
     result->transmission = point.transmission;
@@ -159,6 +153,44 @@ mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan
   free(v.y);
   free(v.tau);
   return status;
+}
+
+/* Outside the band of an electrode nothing flows. */
+static void fill_closed(const mho_plan *plan, mho_inside *result)
+{
+  result->outside_band = true;
+  for (size_t e = 0; e < plan->entries; e++)
+    if (plan->entry[e].i != plan->entry[e].j)
+      result->bond[result->bonds++] = (mho_bond_current){plan->entry[e].i, plan->entry[e].j, 0};
+  for (int k = 0; k < plan->sites; k++)
+    result->orbital[result->orbitals++] = (mho_orbital_share){.level_ev = plan->level_ev[k]};
+}
+
+/* Every view is of one energy, and so of one Sigma. */
+static mho_status compute_frozen(const mho_junction *junction, const mho_plan *plan,
+                                 double energy_ev, mho_inside *result, mho_error *error)
+{
+  mho_frozen frozen;
+  mho_status status = mho_frozen_create(plan, &frozen);
+  if (status != MHO_OK) mho_fail(error, status, "solver", NULL, "out of memory");
+  else if (mho_frozen_set(plan, energy_ev, &frozen))
+    status = compute(junction, &frozen.plan, energy_ev, result, error);
+  else fill_closed(plan, result);
+  mho_frozen_clear(&frozen);
+  return status;
+}
+
+mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan,
+                              double energy_ev, mho_inside *result, mho_error *error)
+{
+  *result = (mho_inside){0};
+  if (junction->sites != plan->sites || !plan->level_ev)
+    return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
+                    "the plan was not made of this junction");
+  mho_status status = allocate(plan, result, error);
+  if (status != MHO_OK) return status;
+  return (mho_plan_has_chain(plan) ? compute_frozen : compute)(junction, plan, energy_ev, result,
+                                                               error);
 }
 
 void mho_inside_clear(mho_inside *result)
