@@ -38,7 +38,7 @@ typedef struct {
   const mho_pole *pole;
   size_t poles;
   double smallest_width;
-  double band_low_ev, band_high_ev; /* T is zero outside */
+  double band_ev[2]; /* T is zero outside */
   const gsl_integration_glfixed_table *rule;
   mho_thermal_grid *grid;
   size_t capacity;
@@ -73,7 +73,7 @@ static mho_status reserve(builder *b)
 
 static mho_status add_panel(builder *b, double low, double high, int halvings)
 {
-  bool at_edge = halvings < EDGE_HALVINGS && (low == b->band_low_ev || high == b->band_high_ev);
+  bool at_edge = halvings < EDGE_HALVINGS && (low == b->band_ev[0] || high == b->band_ev[1]);
   if (at_edge || (halvings < HALVINGS_MAX && !is_smooth(b, low, high))) {
     double middle = 0.5 * (low + high);
     mho_status status = add_panel(b, low, middle, halvings + 1);
@@ -90,17 +90,25 @@ static mho_status add_panel(builder *b, double low, double high, int halvings)
   return MHO_OK;
 }
 
-/* Panels over the union of [center - reach, center + reach]. */
+/* A Fermi level outside the band sees the edge first. */
+static double clamp(double fermi_ev, const double band_ev[2])
+{
+  return fmin(fmax(fermi_ev, band_ev[0]), band_ev[1]);
+}
+
+/* Panels over the union of [center - reach, center + reach] within the band. */
 static mho_status add_intervals(builder *b, const double *center, size_t centers,
                                 double kt)
 {
+  const double *band = b->band_ev;
   size_t i = 0;
   while (i < centers) {
-    double low = center[i] - REACH_KT * kt, high = center[i] + REACH_KT * kt;
-    while (++i < centers && center[i] - REACH_KT * kt <= high)
-      high = center[i] + REACH_KT * kt;
-    low = fmax(low, b->band_low_ev);
-    high = fmin(high, b->band_high_ev);
+    double low = clamp(center[i], band) - REACH_KT * kt;
+    double high = clamp(center[i], band) + REACH_KT * kt;
+    while (++i < centers && clamp(center[i], band) - REACH_KT * kt <= high)
+      high = clamp(center[i], band) + REACH_KT * kt;
+    low = fmax(low, band[0]);
+    high = fmin(high, band[1]);
     if (!(low < high)) continue;
     size_t panels = (size_t)ceil((high - low) / (PANEL_KT * kt));
     double width = (high - low) / (double)panels;
@@ -147,15 +155,18 @@ mho_status mho_thermal_grid_build(const mho_plan *plan, const mho_pole *pole,
   gsl_set_error_handler_off(); /* its default aborts the program */
   gsl_integration_glfixed_table *rule = gsl_integration_glfixed_table_alloc(GAUSS_POINTS);
   mho_status status = rule ? MHO_OK : MHO_ERR_MEMORY;
+  builder b = {.rule = rule, .grid = grid};
+  mho_plan_band(plan, &b.band_ev[0], &b.band_ev[1]);
   if (status == MHO_OK && !pole)
-    status = mho_plan_resonances(plan, center_ev[0] - REACH_KT * kt_ev,
-                                 center_ev[centers - 1] + REACH_KT * kt_ev, &own, &n, error);
+    status = mho_plan_resonances(plan, clamp(center_ev[0], b.band_ev) - REACH_KT * kt_ev,
+                                 clamp(center_ev[centers - 1], b.band_ev) + REACH_KT * kt_ev, &own,
+                                 &n, error);
   if (status == MHO_OK) {
     if (own) pole = own;
     double scale = n ? fmax(fabs(pole[0].energy_ev), fabs(pole[n - 1].energy_ev)) : 0;
-    builder b = {.pole = pole, .poles = n, .smallest_width = WIDTH_RELATIVE * scale,
-                 .rule = rule, .grid = grid};
-    mho_plan_band(plan, &b.band_low_ev, &b.band_high_ev);
+    b.pole = pole;
+    b.poles = n;
+    b.smallest_width = WIDTH_RELATIVE * scale;
     status = add_intervals(&b, center_ev, centers, kt_ev);
   }
   if (status == MHO_OK && grid->count) status = evaluate(plan, grid, error);

@@ -86,8 +86,8 @@ void mho_frozen_clear(mho_frozen *frozen);
 bool mho_frozen_set(const mho_plan *plan, double energy_ev, mho_frozen *frozen);
 
 /* Poles for whoever needs to know where T changes: mho_poles, or with chains those
- * within the band and [low, high], near enough to draw and integrate by: each by
- * a Sigma frozen within a sixty-fourth of the band from it; resonances.c.  The
+ * within the band and half an eV of [low, high], near enough to draw and integrate
+ * by (some twice, a hundredth of their width apart); resonances.c.  The
  * caller frees *pole, *count of them by ascending energy, also after a failure. */
 MHO_MUST_USE mho_status mho_plan_resonances(const mho_plan *plan, double low_ev, double high_ev,
                                             mho_pole **pole, size_t *count, mho_error *error);

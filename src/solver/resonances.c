@@ -2,19 +2,23 @@
  *
  * Resonances of chains as electrodes, for grids and quadratures.
  *
- * Poles of E - H - Sigma(E) with Sigma frozen at the centre of each of CELLS equal
- * cells of the band.  A state with the part w on a contact site has the width
- * w 2 V^2/|t| s, s = sqrt(1 - x^2), and freezing displaces it by at most
- * w V^2/(2 t^2) times the distance d from the centre of the cell: the part
- * d/(4 |t| s) of its width, a hundredth at most of it save next to an edge.
+ * Poles of E - H - Sigma(E) with Sigma frozen in the middle of each of CELLS cells
+ * that are equal in q, E = centre + half cos q.  A state with the part w on a
+ * contact site has the width w 2 V^2/|t| sin q, and freezing displaces it by at
+ * most w V^2/(2 t^2) times the distance |2 t sin q| dq/2 from the middle of the
+ * cell: the part dq/4 of its width, or 0.012, also next to an edge.
  */
 #include <math.h>
 #include <stdlib.h>
-#include <string.h>
 
 #include "solver/plan.h"
 
 enum { CELLS = 64 };
+
+#define PI 3.14159265358979323846
+
+/* A resonance that far away is seen yet. */
+#define REACH_EV 0.5
 
 typedef struct {
   mho_pole *pole;
@@ -40,34 +44,37 @@ static int compare(const void *a, const void *b)
   return (p->energy_ev > q->energy_ev) - (p->energy_ev < q->energy_ev);
 }
 
-/* A pole near a border of cells may lie a little beyond it for both: each cell
- * reaches a quarter of itself into the next. */
-static mho_status search_cell(const mho_plan *plan, double center, double half, mho_frozen *frozen,
-                              mho_pole *all, collection *found, mho_error *error)
+static mho_status search_cell(const mho_plan *plan, double middle, double low, double high,
+                              mho_frozen *frozen, mho_pole *all, collection *found,
+                              mho_error *error)
 {
-  if (!mho_frozen_set(plan, center, frozen)) return MHO_OK;
+  if (!mho_frozen_set(plan, middle, frozen)) return MHO_OK;
   mho_status status = mho_poles(&frozen->plan, all, error);
   for (int k = 0; status == MHO_OK && k < plan->sites; k++)
-    if (fabs(all[k].energy_ev - center) <= 1.5 * half && keep(found, &all[k]) != MHO_OK)
+    if (all[k].energy_ev >= low && all[k].energy_ev <= high && keep(found, &all[k]) != MHO_OK)
       status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   return status;
 }
 
+/* A pole near a border of cells may lie a little beyond it for both: each cell
+ * reaches a quarter of itself into the next. */
 static mho_status search_cells(const mho_plan *plan, double low_ev, double high_ev, mho_pole *all,
                                collection *found, mho_error *error)
 {
   double low, high;
   mho_plan_band(plan, &low, &high);
-  double width = (high - low) / CELLS;
+  double center = 0.5 * (low + high), half = 0.5 * (high - low);
   mho_frozen frozen;
   if (!(low < high)) return MHO_OK;
   if (mho_frozen_create(plan, &frozen) != MHO_OK)
     return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   mho_status status = MHO_OK;
   for (int c = 0; status == MHO_OK && c < CELLS; c++) {
-    double center = low + (c + 0.5) * width;
-    if (center + width < low_ev || center - width > high_ev) continue;
-    status = search_cell(plan, center, 0.5 * width, &frozen, all, found, error);
+    double from = c > 0 ? center - half * cos(PI * (c - 0.25) / CELLS) : low;
+    double to = c + 1 < CELLS ? center - half * cos(PI * (c + 1.25) / CELLS) : high;
+    double middle = center - half * cos(PI * (c + 0.5) / CELLS);
+    if (to >= low_ev - REACH_EV && from <= high_ev + REACH_EV)
+      status = search_cell(plan, middle, from, to, &frozen, all, found, error);
   }
   mho_frozen_clear(&frozen);
   return status;
