@@ -408,7 +408,7 @@ static void read_electrodes(reader *r)
   if (coupling && r->molecule->contact[MHO_LEFT].has_chain &&
       r->molecule->contact[MHO_RIGHT].has_chain)
     mho_yaml_fail(r->yaml, coupling, MHO_ERR_KEY, "coupling",
-                  "coupling: both electrodes are chains, so no contact has it");
+                  "coupling: both electrodes are chains, which have none; leave it out");
 }
 
 /* The sites themselves. */

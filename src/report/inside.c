@@ -137,7 +137,8 @@ static void add_parts(mho_table *table, const mho_molecule *molecule, const mho_
       begin_channel(table, molecule->name, inside, channel);
       mho_table_text(table, name[side]);
       mho_table_text(table, molecule->site[contact->site[k]].id);
-      mho_table_optional(table, inside->flows, part_of_site(contact, k, part));
+      mho_table_optional(table, inside->flows && inside->eigenchannel[channel] > 0,
+                         part_of_site(contact, k, part)); /* of a closed one any would do */
     }
   }
 }

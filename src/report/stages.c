@@ -159,7 +159,7 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
   } else if (g->warnings & MHO_WARN_OUTSIDE_BAND) {
     mho_output_note(output,
                     "%s: the Fermi level lies outside the band of an electrode, where no state "
-                    "brings electrons; what conducts comes by the thermal tail",
+                    "brings electrons; only the tail of warmer ones conducts",
                     molecule);
   } else if (g->warnings & MHO_WARN_NEAR_NODE || !g->has_log) {
     mho_output_note(output,
@@ -535,14 +535,19 @@ void mho_method_note(mho_output *output, const char *molecule, const mho_plan *p
                      const mho_point *point, size_t count)
 {
   char description[512];
+  mho_buffer used = {0};
   size_t settled[MHO_METHOD_COUNT] = {0};
   for (size_t i = 0; i < count; i++) settled[point[i].method]++;
-  mho_output_note(output, "%s: methods at hand: %s", molecule,
-                  mho_plan_describe(plan, description, sizeof description));
   for (int m = 0; m < MHO_METHOD_COUNT; m++)
     if (settled[m])
-      mho_output_note(output,
-                      "%s: %zu of %zu energies by %s, the first whose error bound keeps the "
-                      "accuracy contract",
-                      molecule, settled[m], count, mho_method_name((mho_method)m));
+      mho_buffer_print(&used, "%s %zu by %s", used.size ? "," : "", settled[m],
+                       mho_method_name((mho_method)m));
+  output->failed |= used.failed;
+  mho_output_note(output, "%s: methods, quickest first: %s", molecule,
+                  mho_plan_describe(plan, description, sizeof description));
+  if (used.size && !used.failed)
+    mho_output_note(output, "%s: of %zu energ%s%s; each by the first whose bound on its own error is "
+                            "below 1e-12, or what the condition of T allows",
+                    molecule, count, count == 1 ? "y" : "ies", used.data);
+  mho_buffer_clear(&used);
 }
