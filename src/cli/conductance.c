@@ -39,6 +39,7 @@ static mho_status add_sensitivity(const command *cmd, const subject *s, mho_outp
     unsigned node = result.has_derivatives ? 0u : MHO_WARN_NEAR_NODE;
     mho_sensitivity_rows(table, &s->molecule, &result);
     mho_output_warn(output, s->molecule.name, s->warnings | node);
+    if (!cmd->quiet) mho_sensitivity_note(output, &s->molecule, &result);
     if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
   }
   mho_buffer svg = {0};

@@ -39,7 +39,9 @@ static const verb verbs[] = {
      command_conductance},
     {TRANSMISSION, "transmission", "MOLECULE...", "transmission T(E), its resonances and nodes",
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
-     "follow resonances and nodes, so that none is missed.",
+     "follow resonances and nodes, so that none is missed.  --poles, --nodes, --currents,\n"
+     "--orbitals and --channels list something else; the last three look at one energy\n"
+     "(--at, default the Fermi level).",
      command_transmission},
     {TWIST, "twist", "MOLECULE...", "how flat a bond must be, and its thermal average",
      "T and thermal conductance against the angle of a bond, the Fermi level held\n"
@@ -162,7 +164,7 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_FERMI] = {SETTINGS, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {SETTINGS, "temperature", 0, "KELVIN", "such as '300 K'"},
-    [OPT_COUPLING] = {SETTINGS, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
+    [OPT_COUPLING] = {SETTINGS, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV', also in place of chains"},
     [OPT_BETA] = {SETTINGS, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
     [OPT_PARAMETERS] = {SETTINGS, "parameters", 0, "SET", "van-catledge (default), streitwieser, or a file"},
     [OPT_TWIST] = {ALL, "twist", 0, "'BOND = ANGLE'", "such as 'C5-C8 = 38 deg'; may be repeated"},

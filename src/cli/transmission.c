@@ -127,6 +127,18 @@ static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *t
   return status;
 }
 
+static void add_view(const command *cmd, const subject *s, const mho_inside *inside,
+                     mho_output *output, mho_table *table)
+{
+  const mho_molecule *m = &s->molecule;
+  if (!cmd->quiet) mho_inside_note(output, m->name, cmd->has_at ? cmd->at_ev : 0, inside);
+  if (cmd->currents) mho_currents_rows(table, m, inside);
+  if (cmd->orbitals) mho_orbitals_rows(table, m->name, s->junction.fermi_ev, inside);
+  if (cmd->orbitals && !cmd->quiet) mho_orbitals_note(output, m->name, &s->junction);
+  if (cmd->channels) mho_channels_rows(table, m, inside, cmd->parts);
+  if (cmd->channels && !cmd->quiet) mho_channels_note(output, m, inside);
+}
+
 /* Currents, orbitals or eigenchannels at one energy. */
 static mho_status add_inside(const command *cmd, const subject *s, const mho_plan *plan,
                              mho_output *output, mho_table *table, unsigned *warnings,
@@ -139,11 +151,7 @@ static mho_status add_inside(const command *cmd, const subject *s, const mho_pla
   mho_status status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
   if (status == MHO_OK && !inside.flows)
     *warnings |= inside.outside_band ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NEAR_NODE;
-  if (status == MHO_OK && cmd->orbitals)
-    mho_orbitals_rows(table, m->name, s->junction.fermi_ev, &inside);
-  if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside);
-  if (status == MHO_OK && cmd->channels) mho_channels_rows(table, m, &inside, cmd->parts);
-  if (status == MHO_OK && cmd->channels && !cmd->quiet) mho_channels_note(output, m, &inside);
+  if (status == MHO_OK) add_view(cmd, s, &inside, output, table);
   if (status == MHO_OK && cmd->measured.figure && !inside.flows)
     status = mho_fail(error, MHO_ERR_NOT_FINITE, "cli", "figure",
                       inside.outside_band

@@ -60,6 +60,17 @@ void mho_frontier_note(mho_output *output, const char *molecule, const mho_junct
   }
 }
 
+void mho_inside_note(mho_output *output, const char *molecule, double relative_energy_ev,
+                     const mho_inside *inside)
+{
+  char at[64] = "at the Fermi level";
+  if (relative_energy_ev != 0)
+    snprintf(at, sizeof at, "at %g eV %s the Fermi level", fabs(relative_energy_ev),
+             relative_energy_ev > 0 ? "above" : "below");
+  if (inside->flows)
+    mho_output_note(output, "%s: T is %.3g %s", molecule, inside->transmission, at);
+}
+
 mho_table *mho_currents_table(mho_output *output)
 {
   static const char *const columns[] = {"molecule", "from", "to", "current"};
@@ -96,6 +107,15 @@ void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
     mho_table_number(table, inside->orbital[k].alone);
     mho_table_number(table, inside->orbital[k].interference);
   }
+}
+
+void mho_orbitals_note(mho_output *output, const char *molecule, const mho_junction *junction)
+{
+  int pairs = junction->electrons / 2;
+  if (junction->electrons % 2)
+    mho_output_note(output, "%s: level %d is the SOMO, with one electron", molecule, pairs + 1);
+  else if (pairs > 0 && pairs < junction->sites)
+    mho_output_note(output, "%s: level %d is the HOMO, level %d the LUMO", molecule, pairs, pairs + 1);
 }
 
 mho_table *mho_channels_table(mho_output *output, bool parts)
@@ -156,8 +176,8 @@ void mho_channels_note(mho_output *output, const mho_molecule *molecule, const m
   static const char *const name[] = {"left", "right"};
   double t = inside->transmission, first = inside->eigenchannel[0];
   if (inside->eigenchannels > 1 && inside->flows) {
-    mho_output_note(output, "%s: T %.3g in all, %.3g %% of it by the first of %zu eigenchannels",
-                    molecule->name, t, fmin(100, 100 * first / t), inside->eigenchannels);
+    mho_output_note(output, "%s: %.3g %% of it by the first of %zu eigenchannels", molecule->name,
+                    fmin(100, 100 * first / t), inside->eigenchannels);
     return;
   }
   for (int side = 0; side < 2; side++) {

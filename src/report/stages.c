@@ -12,6 +12,8 @@
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
 
+#define LEAST_CONTRIBUTION 1e-11 /* decades */
+
 static void add_warning_words(mho_table *table, unsigned warnings)
 {
   mho_buffer words = {0};
@@ -68,11 +70,13 @@ void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
   char name[2 * MHO_ID_SIZE + 32];
   for (size_t p = 0; p < sensitivity->count; p++) {
     const mho_sensitivity_row *row = &sensitivity->row[p];
+    bool counts = row->contribution_decades > LEAST_CONTRIBUTION; /* else it is rounding */
     mho_table_text(table, molecule->name);
     mho_table_text(table, mho_sensitivity_name(row, molecule, name, sizeof name));
-    mho_table_optional(table, sensitivity->has_derivatives, row->derivative_log10_g0);
+    mho_table_optional(table, sensitivity->has_derivatives, counts ? row->derivative_log10_g0 : 0);
     mho_table_number(table, row->sigma);
-    mho_table_optional(table, sensitivity->has_derivatives, row->contribution_decades);
+    mho_table_optional(table, sensitivity->has_derivatives,
+                       counts ? row->contribution_decades : 0);
   }
   bool linear = sensitivity->rule == MHO_RULE_LINEAR;
   mho_table_text(table, molecule->name);
@@ -80,6 +84,23 @@ void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
   mho_table_empty(table);
   mho_table_empty(table);
   mho_table_optional(table, sensitivity->has_error, sensitivity->error_decades);
+}
+
+void mho_sensitivity_note(mho_output *output, const mho_molecule *molecule,
+                          const mho_sensitivity *s)
+{
+  enum { NAMED = 2 };
+  char name[NAMED][2 * MHO_ID_SIZE + 32];
+  if (!s->has_error || s->count < NAMED) return;
+  for (int p = 0; p < NAMED; p++)
+    mho_sensitivity_name(&s->row[p], molecule, name[p], sizeof name[p]);
+  bool linear = s->rule == MHO_RULE_LINEAR;
+  mho_output_note(output, "%s: the conductance is uncertain by a factor of %.2g (%.2g decades, one "
+                          "sigma, %s)%s%s%s%s",
+                  molecule->name, pow(10, s->error_decades), s->error_decades,
+                  linear ? "linear rule" : "Monte Carlo, as the linear rule fails here",
+                  s->has_derivatives ? ", most by " : "", s->has_derivatives ? name[0] : "",
+                  s->has_derivatives ? " and " : "", s->has_derivatives ? name[1] : "");
 }
 
 mho_table *mho_transmission_table(mho_output *output)

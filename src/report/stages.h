@@ -30,6 +30,9 @@ void mho_conductance_row(mho_table *table, const char *molecule,
 mho_table *mho_sensitivity_table(mho_output *output);
 void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
                           const mho_sensitivity *sensitivity);
+/* How uncertain the conductance is, and by what. */
+void mho_sensitivity_note(mho_output *output, const mho_molecule *molecule,
+                          const mho_sensitivity *sensitivity);
 
 /* energy_ev is absolute; the table has it relative to fermi_ev. */
 mho_table *mho_transmission_table(mho_output *output);
@@ -50,6 +53,10 @@ mho_table *mho_nodes_table(mho_output *output);
 void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_node *node);
 
+/* T of a view of the inside, and where. */
+void mho_inside_note(mho_output *output, const char *molecule, double relative_energy_ev,
+                     const mho_inside *inside);
+
 /* Currents relative to T, each from where it comes to where it goes, without a
  * value where nothing flows.  What each orbital adds to T. */
 mho_table *mho_currents_table(mho_output *output);
@@ -58,6 +65,9 @@ void mho_currents_rows(mho_table *table, const mho_molecule *molecule,
 mho_table *mho_orbitals_table(mho_output *output);
 void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
                        const mho_inside *inside);
+
+/* Which levels are HOMO and LUMO. */
+void mho_orbitals_note(mho_output *output, const char *molecule, const mho_junction *junction);
 
 /* Eigenchannels; with `parts` a row for each site of the contacts. */
 mho_table *mho_channels_table(mho_output *output, bool parts);

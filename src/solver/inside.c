@@ -57,6 +57,14 @@ static mho_status solve(view *v, double energy_ev, mho_inside *result, mho_error
   return status;
 }
 
+/* An amplitude on a contact below this is rounding of a state that it does not see. */
+#define AMPLITUDE_ROUNDING 1e-13
+
+static double seen(double amplitude)
+{
+  return fabs(amplitude) > AMPLITUDE_ROUNDING ? amplitude : 0;
+}
+
 /* Orbital k's part of tau, and its shares of T. */
 static void find_orbitals(const view *v, mho_inside *result)
 {
@@ -73,7 +81,7 @@ static void find_orbitals(const view *v, mho_inside *result)
           in_a += orbital[i] * v->y[a * n + i];
           in_b += orbital[i] * v->y[b * n + i];
         }
-        double complex part = 0.5 * (on_contact[b] * in_a + on_contact[a] * in_b);
+        double complex part = 0.5 * (seen(on_contact[b]) * in_a + seen(on_contact[a]) * in_b);
         double complex tau = v->tau[a * (size_t)plan->right + b - (size_t)plan->left];
         double weight = plan->coupling_ev[a] * plan->coupling_ev[b];
         double alone = weight * creal(part * conj(part));
