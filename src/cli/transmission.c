@@ -120,7 +120,11 @@ static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *t
 {
   mho_nodes nodes;
   mho_status status = mho_nodes_find(plan, &nodes, error);
-  if (status == MHO_OK && nodes.everywhere) *warnings |= MHO_WARN_NO_PI_PATH;
+  mho_point at_fermi = {0};
+  if (status == MHO_OK && nodes.everywhere)
+    status = mho_transmission_sweep(plan, 1, &s->junction.fermi_ev, &at_fermi, error);
+  if (nodes.everywhere) /* no path, or bands that do not meet */
+    *warnings |= at_fermi.method == MHO_METHOD_NO_BAND ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NO_PI_PATH;
   for (size_t k = 0; status == MHO_OK && k < nodes.count; k++)
     mho_nodes_row(table, s->molecule.name, s->junction.fermi_ev, &nodes.node[k]);
   mho_nodes_clear(&nodes);

@@ -11,6 +11,8 @@
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
 
+#define LEAST_FLOW 1e-12 /* of T; less is rounding */
+
 mho_table *mho_poles_table(mho_output *output, bool widths)
 {
   static const char *const columns[] = {"molecule", "energy_eV", "width_eV", "left_width_eV",
@@ -81,12 +83,13 @@ void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho
 {
   for (size_t i = 0; i < inside->bonds; i++) {
     const mho_bond_current *current = &inside->bond[i];
-    bool back = inside->flows && current->flow < 0;
+    double flow = inside->flows ? current->flow / inside->transmission : 0;
+    if (fabs(flow) < LEAST_FLOW) flow = 0;
+    bool back = flow < 0;
     mho_table_text(table, molecule->name);
     mho_table_text(table, molecule->site[back ? current->to : current->from].id);
     mho_table_text(table, molecule->site[back ? current->from : current->to].id);
-    mho_table_optional(table, inside->flows,
-                       inside->flows ? fabs(current->flow) / inside->transmission : 0);
+    mho_table_optional(table, inside->flows, fabs(flow));
   }
 }
 

@@ -561,7 +561,8 @@ void mho_method_note(mho_output *output, const char *molecule, const mho_plan *p
   for (size_t i = 0; i < count; i++) settled[point[i].method]++;
   for (int m = 0; m < MHO_METHOD_COUNT; m++)
     if (settled[m])
-      mho_buffer_print(&used, "%s %zu by %s", used.size ? "," : "", settled[m],
+      mho_buffer_print(&used, "%s %zu %s%s", used.size ? "," : "", settled[m],
+                       m < MHO_METHOD_SPECTRUM ? "without work: " : "by ",
                        mho_method_name((mho_method)m));
   output->failed |= used.failed;
   mho_output_note(output, "%s: methods, quickest first: %s", molecule,

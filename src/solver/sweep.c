@@ -360,8 +360,8 @@ mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
 const char *mho_method_name(mho_method method)
 {
   static const char *const name[MHO_METHOD_COUNT] = {
-      [MHO_METHOD_NO_PATH] = "none, as no path joins the contacts",
-      [MHO_METHOD_NO_BAND] = "none, as they lie outside the band of an electrode",
+      [MHO_METHOD_NO_PATH] = "no path joins the contacts",
+      [MHO_METHOD_NO_BAND] = "outside the band of an electrode",
       [MHO_METHOD_SPECTRUM] = "sum over levels",
       [MHO_METHOD_SPARSE] = "compiled sparse elimination",
       [MHO_METHOD_SPARSE_EXTENDED] = "compiled sparse elimination in 106 bits",

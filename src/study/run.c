@@ -188,7 +188,10 @@ static mho_status find_errors(run *r, mho_error *error)
     const mho_molecule *molecule = &r->study->molecule[i];
     mho_sensitivity s = {0};
     status = step(r, molecule->name, error);
-    if (status == MHO_OK && !has_chain(molecule))
+    if (has_chain(molecule))
+      mho_output_note(&r->output, "%s: no error of the parameters is told, which needs electrodes of "
+                                  "a wide band", molecule->name);
+    else if (status == MHO_OK)
       status = mho_sensitivity_compute(molecule, &r->outcome[i].junction, &options, &s, error);
     r->error_decades[i] = s.has_error ? s.error_decades : -1;
     mho_sensitivity_clear(&s);

@@ -31,7 +31,7 @@ def main():
     for arguments in (["check", "--json", MOLECULE], ["conductance", MOLECULE],
                       ["conductance", "--json", MOLECULE],
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
-                      ["conductance", "--verbose", CHAIN], ["transmission", "--csv", CHAIN],
+                      ["conductance", "--verbose", CHAIN],
                       ["transmission", "--channels", "--parts", ACID],
                       ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
                       ["blink", "--levels=2", "blink.txt"],

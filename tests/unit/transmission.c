@@ -152,11 +152,12 @@ static void check_junctions(bool banded)
   json_decref(root);
   print_message("%d points: spectrum %d, sparse %d and %d, elimination %d, extended %d; %d nodes, %d with kappa "
                 "> 1e20; worst %.2g of what is allowed\n",
-                count.points, count.method[1], count.method[2], count.method[3], count.method[4],
-                count.method[5], count.nodes,
-                count.beyond, count.worst_fraction);
+                count.points, count.method[MHO_METHOD_SPECTRUM], count.method[MHO_METHOD_SPARSE],
+                count.method[MHO_METHOD_SPARSE_EXTENDED], count.method[MHO_METHOD_ELIMINATION],
+                count.method[MHO_METHOD_EXTENDED], count.nodes, count.beyond, count.worst_fraction);
   assert_true(count.points > 1000 && count.beyond * 20 < count.points);
-  for (int method = 1; method < 4; method++) assert_true(count.method[method] > 20);
+  for (int method = MHO_METHOD_SPECTRUM; method <= MHO_METHOD_SPARSE_EXTENDED; method++)
+    assert_true(count.method[method] > 20);
 }
 
 /* A chain with random cross-links, onsite 0 or h*beta: like a large molecule. */
