@@ -28,6 +28,7 @@ typedef struct {
   const mho_yaml_node *node; /* the mapping of the molecule */
   mho_molecule *molecule;
   mho_settings settings; /* of defaults, this mapping and overrides together */
+  bool drawn;           /* a SMILES or a structure, not the sites themselves */
   bool explicit_energy; /* some site has an explicit onsite only */
 } reader;
 
@@ -374,25 +375,39 @@ static void read_chain(reader *r, const mho_yaml_node *contact_node, mho_contact
   read_hopping(r, node, "joint", "nothing joins chain and molecule", &contact->chain.joint_ev);
 }
 
-static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
-                         mho_contact *contact)
+/* What stands behind a contact: a wide band or a chain. */
+static void read_electrode(reader *r, const mho_yaml_node *node, mho_contact *contact)
 {
-  static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift",
-                                     "chain"};
-  static const char *const channels[] = {"independent", "one"};
-  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
-  mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
-  read_contact_sites(r, node, contact);
   mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "coupling"), "coupling", MHO_ENERGY,
                         COUPLING_LOW_EV, COUPLING_HIGH_EV, &contact->coupling_ev);
   mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "shift"), "shift", MHO_ENERGY, -10.0,
                         10.0, &contact->shift_ev);
+  read_chain(r, node, contact);
+}
+
+static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
+                         mho_contact *contact)
+{
+  static const char *const keys[] = {"coupling", "shift", "chain", "sites", "channels",
+                                     "amplitude"};
+  static const char *const channels[] = {"independent", "one"};
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
+  mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
+  for (size_t i = 3; r->drawn && i < sizeof keys / sizeof *keys; i++) {
+    const mho_yaml_node *own = mho_yaml_find(node, keys[i]);
+    if (own)
+      mho_yaml_fail(r->yaml, own, MHO_ERR_KEY, keys[i],
+                    "%s: a drawn structure has its contacts at linkers or at atoms of class 1 and 2; "
+                    "allowed here: coupling, shift, chain", keys[i]);
+  }
+  read_electrode(r, node, contact);
+  if (r->drawn) return;
+  read_contact_sites(r, node, contact);
   size_t choice = 0;
   if (mho_yaml_get_choice(r->yaml, mho_yaml_find(node, "channels"), "channels", channels, 2,
                           &choice))
     contact->channels = choice == 1 ? MHO_CHANNELS_ONE : MHO_CHANNELS_INDEPENDENT;
   read_amplitudes(r, node, contact);
-  read_chain(r, node, contact);
 }
 
 static void read_electrodes(reader *r)
@@ -402,13 +417,28 @@ static void read_electrodes(reader *r)
   if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "electrodes")) return;
   mho_yaml_check_keys(r->yaml, node, keys, 2);
   for (int side = 0; side < 2; side++)
-    read_contact(r, mho_yaml_require(r->yaml, node, keys[side]), keys[side],
-                 &r->molecule->contact[side]);
+    read_contact(r, (r->drawn ? mho_yaml_find(node, keys[side])
+                              : mho_yaml_require(r->yaml, node, keys[side])),
+                 keys[side], &r->molecule->contact[side]);
   const mho_yaml_node *coupling = mho_yaml_find(r->node, "coupling");
   if (coupling && r->molecule->contact[MHO_LEFT].has_chain &&
       r->molecule->contact[MHO_RIGHT].has_chain)
     mho_yaml_fail(r->yaml, coupling, MHO_ERR_KEY, "coupling",
                   "coupling: both electrodes are chains, which have none; leave it out");
+}
+
+/* A coupling from outside counts more than the file's electrodes. */
+static void override_electrodes(reader *r, const mho_settings *overrides)
+{
+  mho_contact *contact = r->molecule->contact;
+  if (!overrides || !overrides->has_coupling) return;
+  if ((contact[MHO_LEFT].has_chain || contact[MHO_RIGHT].has_chain) &&
+      mho_texts_add(&r->molecule->notes, "the coupling that is asked for puts wide bands in the "
+                                         "place of the file's chains") != MHO_OK)
+    fail_memory(r);
+  mho_settings above = {.has_coupling = true, .coupling_ev = overrides->coupling_ev};
+  mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
+  (void)status; /* a coupling always fits */
 }
 
 /* The sites themselves. */
@@ -422,17 +452,9 @@ static void read_explicit(reader *r, const mho_settings *overrides)
   if (mho_settings_apply(&below, r->molecule, r->yaml->error) != MHO_OK) return;
   read_electrodes(r);
   if (r->yaml->error->count) return; /* sites may be missing */
-  mho_settings above = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
-  bool chains = r->molecule->contact[MHO_LEFT].has_chain || r->molecule->contact[MHO_RIGHT].has_chain;
-  if (overrides && overrides->has_coupling && chains &&
-      mho_texts_add(&r->molecule->notes, "the coupling that is asked for puts wide bands in the "
-                                         "place of the file's chains") != MHO_OK)
-    fail_memory(r);
-  if (overrides) {
-    above.has_coupling = overrides->has_coupling;
-    above.coupling_ev = overrides->coupling_ev;
-  }
-  mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
+  override_electrodes(r, overrides);
+  mho_settings twists = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
+  mho_status status = mho_settings_apply(&twists, r->molecule, r->yaml->error);
   (void)status; /* the cause is in the document's error */
   if (mho_molecule_warn_length(r->molecule) != MHO_OK) fail_memory(r);
 }
@@ -480,8 +502,8 @@ static void read_structure(reader *r, const mho_yaml_node *structure)
 
 static void refuse_mixture(reader *r, const char *with)
 {
-  static const char *const keys[] = {"sites", "bonds", "electrons", "electrodes", "smiles"};
-  for (int i = 0; i < 5; i++) {
+  static const char *const keys[] = {"sites", "bonds", "electrons", "smiles"};
+  for (int i = 0; i < 4; i++) {
     const mho_yaml_node *node = mho_yaml_find(r->node, keys[i]);
     if (node && strcmp(keys[i], with))
       mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, keys[i],
@@ -507,9 +529,12 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   if (record && !structure)
     mho_yaml_fail(r->yaml, record, MHO_ERR_KEY, "record", "record: it belongs to a 'structure'");
   if (structure || smiles) refuse_mixture(r, structure ? "structure" : "smiles");
+  r->drawn = structure || smiles;
   if (structure) read_structure(r, structure);
   else if (smiles) read_drawn(r, smiles);
   else read_explicit(r, overrides);
+  if (r->drawn) read_electrodes(r);
+  if (r->drawn) override_electrodes(r, overrides);
   if (r->yaml->error->count == before)
     mho_yaml_get_torsions(r->yaml, mho_yaml_find(r->node, "torsion"), r->molecule);
 }

@@ -315,6 +315,18 @@ def bundled(checks, program):
                 'benzene-para-chains: T at the centre of the band')
 
 
+def drawn(checks, program):
+    """A SMILES with a coupling on one side and a chain on the other."""
+    file = program.write({'name': 'drawn', 'smiles': 'Nc1ccc(-c2ccc(S)cc2)cc1', 'electrodes': {
+        'left': {'coupling': '0.7 eV'},
+        'right': {'chain': {'hopping': '-2 eV', 'joint': '1 eV', 'centre': '0.3 eV'}}}})
+    j = Junction(program, file)
+    checks.near(j.contact[0]['coupling_eV'], 0.7, 0, 'drawn: coupling')
+    for energy in (-1.5, 0.1, 2.0):
+        want = j.transmission(energy)
+        checks.near(program.at(file, energy), want, 1e-7 * want, 'drawn: T at %g eV' % energy)
+
+
 def refused(checks, program):
     """What knows no chains says so with its place, and leaves with 2."""
     file = program.write(naphthalene({'left': wide('c1', 0.3),
@@ -340,7 +352,7 @@ def main():
     checks, program = Checks(), Program()
     for group in (widths, eigenchannels, transmission_of_chains,
                   no_resonance_is_missed, thermal, twist_of_chains, round_trip,
-                  bundled, refused):
+                  bundled, drawn, refused):
         try:
             group(checks, program)
         except Refused as refusal:
