@@ -31,7 +31,7 @@ typedef struct {
   double log10_g0;
   bool has_window_low, has_window_high;
   double window_low_log10_g0, window_high_log10_g0;
-  unsigned warnings;      /* near-pole, near-node, no-pi-path */
+  unsigned warnings;      /* near-pole, near-node, no-pi-path, outside-band */
 } mho_conductance;
 
 MHO_BEGIN_DECLARATIONS
@@ -40,7 +40,8 @@ MHO_API mho_conductance_options mho_conductance_defaults(void);
 
 /* T is rational, and its poles say where a quadrature must be fine: panels are
  * halved until every pole and the Fermi function's own lie outside an ellipse
- * on which 16 Gauss points give 12 digits.  Quantiles are over an even grid of
+ * on which 16 Gauss points give 12 digits.  With chains as electrodes T is not, and
+ * panels grow finer towards the edges of the band.  Quantiles are over an even grid of
  * 401 Fermi levels.  At 0 K the conductance is T(E_F).
  * Errors: MHO_ERR_RANGE (window), MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_conductance_compute(

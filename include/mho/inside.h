@@ -23,10 +23,14 @@ typedef struct {
 typedef struct {
   double transmission;
   bool flows; /* T > 1e-20; else the currents are rounding */
+  bool outside_band; /* of an electrode: nothing flows, all values are 0 */
   size_t bonds, orbitals, eigenchannels;
   mho_bond_current *bond;   /* every non-zero hopping */
   mho_orbital_share *orbital; /* by ascending level */
-  double *eigenchannel;     /* transmissions of the eigenchannels, largest first */
+  double *eigenchannel;     /* of each its T, largest first; 0 what is rounding of the first */
+  /* |.|^2 of an eigenchannel in the channels of a contact, whose sum is 1:
+   * [eigenchannels][channels of the left, of the right contact]. */
+  double *left_part, *right_part;
 } mho_inside;
 
 MHO_BEGIN_DECLARATIONS
@@ -37,8 +41,8 @@ MHO_BEGIN_DECLARATIONS
  * the contacts sums to T, and what flows into a site off the contacts flows
  * out of it.  Orbital k adds to tau_ba
  *   c_k = [ (v_b.k)(k.y_a) + (y_b.k)(k.v_a) ] / 2,
- * `alone` is sum Gamma_a Gamma_b |c_k|^2.  Eigenchannels are the eigenvalues of
- * t^+ t with t_ba = sqrt(Gamma_a Gamma_b) tau_ba.
+ * `alone` is sum Gamma_a Gamma_b |c_k|^2.  Eigenchannels are the squared singular
+ * values of t_ba = sqrt(Gamma_a Gamma_b) tau_ba, their parts its singular vectors.
  * These laws hold to 1e-10 of the largest while T > 1e-20; below, what is left
  * is rounding.  The caller clears the result, also after a
  * failure.  Errors: MHO_ERR_SIZE (plan and junction differ),

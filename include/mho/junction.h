@@ -14,23 +14,13 @@
 #include <mho/molecule.h>
 #include <mho/status.h>
 
-/* A semi-infinite chain as electrode, joined by a hopping V to the end of a
- * chain of hoppings t about the energy e: a semi-elliptic band,
- *   Sigma(E) = V^2 (x - sqrt(x^2 - 4t^2)) / (2t^2),  x = E - e,
- * so inside the band Gamma = V^2/t^2 sqrt(4t^2 - x^2) and shift = V^2 x/(2t^2);
- * outside it nothing is transmitted. */
-typedef struct {
-  double center_ev, hopping_ev; /* e, t != 0 */
-  double joint_ev;              /* V */
-} mho_chain_electrode;
-
 typedef struct {
   int channels;        /* 0 where the molecule has no such contact */
   double *coupling_ev; /* Gamma_c [channels] */
   double *shift_ev;    /* [channels] */
   double *vector;      /* v_c, [channels][sites] */
   /* NULL: wide band.  Else every channel has such a chain, and coupling_ev and
-   * shift_ev are not used. */
+   * shift_ev are not used.  A junction has a copy of its own. */
   const mho_chain_electrode *chain;
 } mho_lead;
 
@@ -75,6 +65,11 @@ MHO_API void mho_junction_clear(mho_junction *junction);
 MHO_API MHO_MUST_USE mho_status mho_junction_require_contacts(
     const mho_junction *junction, const mho_molecule *molecule,
     mho_error *error);
+
+/* MHO_ERR_RANGE where a contact of the molecule is a chain and `what` (`--poles`,
+ * `a screening` ...) needs a wide band; the message says where the file gives it. */
+MHO_API MHO_MUST_USE mho_status mho_molecule_require_wide_band(
+    const mho_molecule *molecule, const char *what, mho_error *error);
 
 /* *connected is true if some chain of non-zero hoppings joins the contacts.
  * Errors: MHO_ERR_MEMORY. */

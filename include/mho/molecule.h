@@ -47,7 +47,17 @@ typedef enum {
   MHO_CHANNELS_ONE          /* Gamma = coupling * v v^T, v = amplitudes */
 } mho_channels;
 
-/* Wide-band contact: Sigma = (shift - i/2) Gamma-shaped on its sites. */
+/* A semi-infinite chain as electrode, joined by a hopping V to the end of a
+ * chain of hoppings t about the energy e: a semi-elliptic band,
+ *   Sigma(E) = V^2 (x - sqrt(x^2 - 4t^2)) / (2t^2),  x = E - e,
+ * so inside the band Gamma = V^2/t^2 sqrt(4t^2 - x^2) and shift = V^2 x/(2t^2);
+ * outside it nothing is transmitted. */
+typedef struct {
+  double center_ev, hopping_ev; /* e, t != 0 */
+  double joint_ev;              /* V */
+} mho_chain_electrode;
+
+/* A contact: Sigma = shift - i Gamma/2 on its sites, or a chain. */
 typedef struct {
   int count;         /* sites; 0 while the molecule has no such contact */
   int *site;         /* [count] */
@@ -55,6 +65,9 @@ typedef struct {
   double coupling_ev; /* Gamma, the full width */
   double shift_ev;    /* real part of the self-energy */
   mho_channels channels;
+  bool has_chain; /* each channel has such a chain instead of coupling and shift */
+  mho_chain_electrode chain;
+  long line, column; /* where the file gives the chain; 0 elsewhere */
 } mho_contact;
 
 typedef enum {

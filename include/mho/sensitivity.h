@@ -77,8 +77,8 @@ MHO_API mho_sensitivity_options mho_sensitivity_defaults(void);
 
 /* The Fermi level stays where the junction of the molecule has it.  Sample i
  * draws from (seed, i).  The caller clears the result, also after a failure.
- * Errors: MHO_ERR_RANGE (options), MHO_ERR_CONTACTS, MHO_ERR_MEMORY,
- * MHO_ERR_LINEAR_ALGEBRA, MHO_ERR_NOT_FINITE. */
+ * Errors: MHO_ERR_RANGE (options, or a chain as electrode), MHO_ERR_CONTACTS,
+ * MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA, MHO_ERR_NOT_FINITE. */
 MHO_API MHO_MUST_USE mho_status mho_sensitivity_compute(
     const mho_molecule *molecule, const mho_junction *junction,
     const mho_sensitivity_options *options, mho_sensitivity *result,

@@ -77,8 +77,9 @@ MHO_API const char *mho_fermi_write(const mho_fermi *fermi, char *buffer,
                                     size_t size);
 
 /* Puts what is set into a molecule: beta, temperature, Fermi level, the
- * coupling of both contacts, twists.  The parameter set, alternation, alkyl
- * groups and hopping have their effect while a molecule is built and are not touched.
+ * coupling of both contacts (wide bands, also in the place of chains), twists.
+ * The parameter set, alternation, alkyl groups and hopping have their effect while
+ * a molecule is built and are not touched.
  * Errors: MHO_ERR_REFERENCE (a twist's bond does not exist). */
 MHO_API MHO_MUST_USE mho_status mho_settings_apply(const mho_settings *settings,
                                                    mho_molecule *molecule,

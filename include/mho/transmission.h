@@ -22,6 +22,7 @@ typedef struct {
 /* How a value was found; later methods are slower and more exact. */
 typedef enum {
   MHO_METHOD_NO_PATH,  /* no hopping joins the contacts: T = 0 */
+  MHO_METHOD_NO_BAND,  /* outside the band of a chain as electrode: T = 0 */
   MHO_METHOD_SPECTRUM, /* sums over the levels of the bare molecule */
   MHO_METHOD_SPARSE,   /* compiled sparse elimination in double-double */
   MHO_METHOD_REPEAT, /* doubling of a run of equal units, in 113 bits */

@@ -43,7 +43,10 @@
     "an atom has no parameters of its own")                                    \
   X(MHO_WARN_NOT_CONVERGED, "not-converged", "an iteration did not converge")  \
   X(MHO_WARN_OUTSIDE_CALIBRATION, "outside-calibration",                       \
-    "the molecule lies outside what the calibration rests on")
+    "the molecule lies outside what the calibration rests on")                 \
+  X(MHO_WARN_OUTSIDE_BAND, "outside-band",                                     \
+    "an energy in question lies outside the band of an electrode, where "      \
+    "nothing is transmitted")
 
 enum {
 #define MHO_WARNING_INDEX(code, word, sentence) code##_INDEX,

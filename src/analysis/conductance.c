@@ -7,6 +7,7 @@
 #include <stdlib.h>
 
 #include "analysis/thermal.h"
+#include "solver/plan.h"
 
 enum { WINDOW_SAMPLES = 401 };
 
@@ -41,24 +42,42 @@ static double quantile(const double *value, size_t count, double p)
   return value[below] + fraction * (value[below + 1] - value[below]);
 }
 
+/* pole: of the plan, or NULL. */
+static mho_status is_near_pole(const mho_plan *plan, const mho_pole *pole, double fermi_ev,
+                               double kt_ev, bool *near, mho_error *error)
+{
+  size_t count = (size_t)mho_plan_sites(plan);
+  mho_pole *own = NULL;
+  mho_status status = MHO_OK;
+  *near = false;
+  if (!pole) status = mho_plan_resonances(plan, fermi_ev, fermi_ev, &own, &count, error);
+  if (!pole) pole = own;
+  for (size_t k = 0; status == MHO_OK && k < count; k++) {
+    double reach = 0.5 * pole[k].width_ev + NEAR_POLE_KT * kt_ev;
+    bool seen = pole[k].width_ev > 1e-12;
+    *near |= seen && fabs(pole[k].energy_ev - fermi_ev) <= reach;
+  }
+  free(own);
+  return status;
+}
+
 static mho_status fermi_warnings(const mho_plan *plan, const mho_pole *pole, double kt_ev,
                                  mho_conductance *result, mho_error *error)
 {
   double fermi = result->fermi_ev;
-  if (result->at_fermi.method == MHO_METHOD_NO_PATH) {
-    result->warnings |= MHO_WARN_NO_PI_PATH;
+  mho_method method = result->at_fermi.method;
+  if (method == MHO_METHOD_NO_PATH || method == MHO_METHOD_NO_BAND) {
+    result->warnings |= method == MHO_METHOD_NO_PATH ? MHO_WARN_NO_PI_PATH : MHO_WARN_OUTSIDE_BAND;
     return MHO_OK;
   }
-  for (int k = 0; k < mho_plan_sites(plan); k++) {
-    double reach = 0.5 * pole[k].width_ev + NEAR_POLE_KT * kt_ev;
-    bool seen = pole[k].width_ev > 1e-12;
-    if (seen && fabs(pole[k].energy_ev - fermi) <= reach)
-      result->warnings |= MHO_WARN_NEAR_POLE;
-  }
+  bool near;
+  mho_status status = is_near_pole(plan, pole, fermi, kt_ev, &near, error);
+  if (status != MHO_OK) return status;
+  if (near) result->warnings |= MHO_WARN_NEAR_POLE;
   double beside = fmax(NEAR_NODE_KT * kt_ev, 1e-6);
   double energy[2] = {fermi - beside, fermi + beside};
   mho_point point[2];
-  mho_status status = mho_transmission_sweep(plan, 2, energy, point, error);
+  status = mho_transmission_sweep(plan, 2, energy, point, error);
   if (status != MHO_OK) return status;
   double rise = log10(NEAR_NODE_RISE) + result->at_fermi.log10_transmission;
   bool rises = !point[0].node && !point[1].node &&
@@ -117,6 +136,8 @@ mho_status mho_conductance_compute(const mho_plan *plan, double fermi_ev,
                                    mho_conductance *result, mho_error *error)
 {
   *result = (mho_conductance){.fermi_ev = fermi_ev};
+  if (mho_plan_has_chain(plan)) /* poles are only near ones, and belong to an interval */
+    return mho_conductance_with_poles(plan, NULL, fermi_ev, temperature_k, options, result, error);
   mho_pole *pole = malloc((size_t)mho_plan_sites(plan) * sizeof *pole);
   if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "analysis", NULL, "out of memory");
   mho_status status = mho_poles(plan, pole, error);

@@ -10,6 +10,7 @@
 #include "analysis/samples.h"
 #include "analysis/thermal.h"
 #include "solver/gradient_sum.h"
+#include "solver/plan.h"
 
 #define LN_10 2.302585092994045684
 #define RADIANS_PER_DEGREE 0.017453292519943295769
@@ -247,6 +248,7 @@ mho_status mho_sensitivity_with_poles(const mho_molecule *molecule, const mho_pl
   mho_sensitivity_options defaults = mho_sensitivity_defaults();
   if (!options) options = &defaults;
   mho_status status = check_options(options, error);
+  if (status == MHO_OK) status = mho_plan_require_wide_band(plan, "sensitivities", error);
   if (status == MHO_OK)
     status = mho_parameter_list(molecule, &options->sigma, &result->row, &result->count, error);
   if (status == MHO_OK) status = differentiate(plan, pole, molecule, fermi_ev, result, error);

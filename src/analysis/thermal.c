@@ -8,7 +8,9 @@
  * (rho + 1/rho)/2 = (|z - a| + |z - b|)/(b - a).  A panel is halved until that
  * is at least 1.4 (rho = 2.4, 16 points: 12 digits) for every pole of T, and
  * panels start 4 kT wide, which puts the poles of the Fermi function, pi kT
- * off the axis, at rho > 3.4.
+ * off the axis, at rho > 3.4.  With chains as electrodes panels end at the edges of
+ * the band, where T begins as a square root: towards them they are halved until
+ * what is left is rounding.
  */
 #include "analysis/thermal.h"
 
@@ -19,8 +21,9 @@
 #include <gsl/gsl_integration.h>
 
 #include "base/processor.h"
+#include "solver/plan.h"
 
-enum { GAUSS_POINTS = MHO_THERMAL_POINTS, HALVINGS_MAX = 60 };
+enum { GAUSS_POINTS = MHO_THERMAL_POINTS, HALVINGS_MAX = 60, EDGE_HALVINGS = 30 };
 
 #define ELLIPSE 1.4
 #define PANEL_KT 4.0
@@ -35,6 +38,7 @@ typedef struct {
   const mho_pole *pole;
   size_t poles;
   double smallest_width;
+  double band_ev[2]; /* T is zero outside */
   const gsl_integration_glfixed_table *rule;
   mho_thermal_grid *grid;
   size_t capacity;
@@ -69,7 +73,8 @@ static mho_status reserve(builder *b)
 
 static mho_status add_panel(builder *b, double low, double high, int halvings)
 {
-  if (halvings < HALVINGS_MAX && !is_smooth(b, low, high)) {
+  bool at_edge = halvings < EDGE_HALVINGS && (low == b->band_ev[0] || high == b->band_ev[1]);
+  if (at_edge || (halvings < HALVINGS_MAX && !is_smooth(b, low, high))) {
     double middle = 0.5 * (low + high);
     mho_status status = add_panel(b, low, middle, halvings + 1);
     return status == MHO_OK ? add_panel(b, middle, high, halvings + 1) : status;
@@ -85,20 +90,31 @@ static mho_status add_panel(builder *b, double low, double high, int halvings)
   return MHO_OK;
 }
 
-/* Panels over the union of [center - reach, center + reach]. */
+/* A Fermi level outside the band sees the edge first. */
+static double clamp(double fermi_ev, const double band_ev[2])
+{
+  return fmin(fmax(fermi_ev, band_ev[0]), band_ev[1]);
+}
+
+/* Panels over the union of [center - reach, center + reach] within the band. */
 static mho_status add_intervals(builder *b, const double *center, size_t centers,
                                 double kt)
 {
+  const double *band = b->band_ev;
   size_t i = 0;
   while (i < centers) {
-    double low = center[i] - REACH_KT * kt, high = center[i] + REACH_KT * kt;
-    while (++i < centers && center[i] - REACH_KT * kt <= high)
-      high = center[i] + REACH_KT * kt;
+    double low = clamp(center[i], band) - REACH_KT * kt;
+    double high = clamp(center[i], band) + REACH_KT * kt;
+    while (++i < centers && clamp(center[i], band) - REACH_KT * kt <= high)
+      high = clamp(center[i], band) + REACH_KT * kt;
+    low = fmax(low, band[0]);
+    high = fmin(high, band[1]);
+    if (!(low < high)) continue;
     size_t panels = (size_t)ceil((high - low) / (PANEL_KT * kt));
     double width = (high - low) / (double)panels;
     for (size_t p = 0; p < panels; p++) {
-      mho_status status = add_panel(b, low + (double)p * width,
-                                    low + (double)(p + 1) * width, 0);
+      double end = p + 1 == panels ? high : low + (double)(p + 1) * width;
+      mho_status status = add_panel(b, low + (double)p * width, end, 0);
       if (status != MHO_OK) return status;
     }
   }
@@ -135,18 +151,25 @@ mho_status mho_thermal_grid_build(const mho_plan *plan, const mho_pole *pole,
 {
   *grid = (mho_thermal_grid){0};
   size_t n = (size_t)mho_plan_sites(plan);
-  mho_pole *own = pole ? NULL : malloc(n * sizeof *own);
+  mho_pole *own = NULL;
   gsl_set_error_handler_off(); /* its default aborts the program */
   gsl_integration_glfixed_table *rule = gsl_integration_glfixed_table_alloc(GAUSS_POINTS);
-  mho_status status = (pole || own) && rule ? MHO_OK : MHO_ERR_MEMORY;
-  if (status == MHO_OK && own) status = mho_poles(plan, own, error);
+  mho_status status = rule ? MHO_OK : MHO_ERR_MEMORY;
+  builder b = {.rule = rule, .grid = grid};
+  mho_plan_band(plan, &b.band_ev[0], &b.band_ev[1]);
+  if (status == MHO_OK && !pole)
+    status = mho_plan_resonances(plan, clamp(center_ev[0], b.band_ev) - REACH_KT * kt_ev,
+                                 clamp(center_ev[centers - 1], b.band_ev) + REACH_KT * kt_ev, &own,
+                                 &n, error);
   if (status == MHO_OK) {
     if (own) pole = own;
-    double scale = fmax(fabs(pole[0].energy_ev), fabs(pole[n - 1].energy_ev));
-    builder b = {pole, n, WIDTH_RELATIVE * scale, rule, grid, 0};
+    double scale = n ? fmax(fabs(pole[0].energy_ev), fabs(pole[n - 1].energy_ev)) : 0;
+    b.pole = pole;
+    b.poles = n;
+    b.smallest_width = WIDTH_RELATIVE * scale;
     status = add_intervals(&b, center_ev, centers, kt_ev);
   }
-  if (status == MHO_OK) status = evaluate(plan, grid, error);
+  if (status == MHO_OK && grid->count) status = evaluate(plan, grid, error);
   free(own);
   if (rule) gsl_integration_glfixed_table_free(rule);
   if (status == MHO_ERR_MEMORY && error && error->count == 0)

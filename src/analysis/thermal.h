@@ -18,8 +18,9 @@ typedef struct {
   double scale_log10;                    /* 0 unless T is near underflow */
 } mho_thermal_grid;
 
-/* Points that serve every Fermi level in center_ev[centers] (ascending) at kT.
- * pole[sites] are the plan's if the caller has them, else NULL. */
+/* Points that serve every Fermi level in center_ev[centers] (ascending) at kT; none
+ * where all lie outside the band.  pole[sites] are the plan's if the caller has
+ * them, else NULL, as for chains as electrodes. */
 MHO_MUST_USE mho_status mho_thermal_grid_build(const mho_plan *plan, const mho_pole *pole,
                                                const double *center_ev,
                                                size_t centers, double kt_ev,

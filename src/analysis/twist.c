@@ -9,6 +9,7 @@
 #include <mho/constants.h>
 
 #include "analysis/rotor.h"
+#include "solver/plan.h"
 
 enum { LAW_LAST_DEG = 80, FIT_LAST_DEG = 85, POINTS_MIN = 8, EVALUATIONS_MAX = 40000, SERIES = 2048 };
 
@@ -48,14 +49,15 @@ static void fit_line(size_t count, const double *x, const double *y, mho_twist_l
 
 static mho_status near_pole(const mho_rotor *rotor, double energy_ev, bool *near, mho_error *error)
 {
+  double reach = POLE_REACH * fabs(rotor->hopping_ev);
   *near = false;
   for (int k = 0; k < ROTOR_CHECKS; k++) {
-    int n = mho_plan_sites(rotor->check[k]);
-    mho_pole *pole = malloc((size_t)n * sizeof *pole);
-    mho_status status = pole ? mho_poles(rotor->check[k], pole, error) : fail_memory(error);
-    for (int i = 0; status == MHO_OK && i < n; i++)
-      *near |= pole[i].width_ev > 0 &&
-               fabs(pole[i].energy_ev - energy_ev) < POLE_REACH * fabs(rotor->hopping_ev);
+    mho_pole *pole;
+    size_t count;
+    mho_status status = mho_plan_resonances(rotor->check[k], energy_ev - reach, energy_ev + reach,
+                                            &pole, &count, error);
+    for (size_t i = 0; status == MHO_OK && i < count; i++)
+      *near |= pole[i].width_ev > 0 && fabs(pole[i].energy_ev - energy_ev) < reach;
     free(pole);
     if (status != MHO_OK) return status;
   }

@@ -109,6 +109,27 @@ mho_status mho_eigenvalues_real(int n, double *matrix, double complex *eigenvalu
   return status;
 }
 
+mho_status mho_singular_complex(int rows, int columns, double complex *matrix, double *values,
+                                double complex *left, double complex *right_transposed,
+                                mho_error *error)
+{
+  mho_status status = mho_lapack_check(error);
+  int n = rows < columns ? rows : columns;
+  double *work = malloc((size_t)n * sizeof *work);
+  if (status == MHO_OK && !work)
+    status = mho_fail(error, MHO_ERR_MEMORY, "base", NULL, "out of memory");
+  if (status == MHO_OK)
+    status = finish("zgesvd", LAPACKE_zgesvd(LAPACK_COL_MAJOR, 'S', 'S', rows, columns, matrix,
+                                             rows, values, left, rows, right_transposed, n, work),
+                    error);
+  for (int i = 0; status == MHO_OK && i < n; i++)
+    if (!isfinite(values[i]))
+      status = mho_fail(error, MHO_ERR_NOT_FINITE, "base", NULL,
+                        "zgesvd gave a value that is not finite");
+  free(work);
+  return status;
+}
+
 bool mho_band_factor(int n, int band, double complex *matrix, int *pivot)
 {
   int rows = 3 * band + 1, info;

@@ -39,6 +39,13 @@ MHO_MUST_USE mho_status mho_eigen_complex(int n, double complex *matrix,
                                           double complex *eigenvectors,
                                           mho_error *error);
 
+/* Singular values (descending) of a complex matrix[rows*columns], column-major, which is
+ * destroyed: matrix = left diag(values) right^+.  With n = min(rows, columns),
+ * left[rows*n] has its vectors as columns, right_transposed[n*columns] as rows. */
+MHO_MUST_USE mho_status mho_singular_complex(int rows, int columns, double complex *matrix,
+                                             double *values, double complex *left,
+                                             double complex *right_transposed, mho_error *error);
+
 /* Solves matrix[n*n] x = column for `columns` right-hand sides, which become the
  * solutions; matrix is destroyed.  *singular, and MHO_OK, where a pivot is
  * exactly zero or a result overflows: then the columns hold nothing. */

@@ -55,7 +55,8 @@ typedef struct {
   bool has_energies, has_samples, has_at;
   double energy_low_ev, energy_high_ev, at_ev;
   long samples;
-  bool currents, orbitals;
+  bool currents, orbitals, channels; /* views at one energy */
+  bool widths, parts;               /* of poles, of channels */
   mho_twist_question twist;
   mho_interference_question interference;
   double window_ev;

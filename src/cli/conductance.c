@@ -32,12 +32,14 @@ static mho_status add_sensitivity(const command *cmd, const subject *s, mho_outp
   mho_sensitivity result;
   mho_sensitivity_options options = mho_sensitivity_defaults();
   options.seed = cmd->seed;
-  mho_status status =
-      mho_sensitivity_compute(&s->molecule, &s->junction, &options, &result, error);
+  mho_status status = mho_molecule_require_wide_band(&s->molecule, "--sensitivity", error);
+  if (status != MHO_OK) return status;
+  status = mho_sensitivity_compute(&s->molecule, &s->junction, &options, &result, error);
   if (status == MHO_OK) {
     unsigned node = result.has_derivatives ? 0u : MHO_WARN_NEAR_NODE;
     mho_sensitivity_rows(table, &s->molecule, &result);
     mho_output_warn(output, s->molecule.name, s->warnings | node);
+    if (!cmd->quiet) mho_sensitivity_note(output, &s->molecule, &result);
     if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
   }
   mho_buffer svg = {0};

@@ -25,7 +25,9 @@ static mho_status add_pairs(const command *cmd, const subject *s, mho_output *ou
   const mho_interference_question *q = &cmd->interference;
   mho_interference map;
   int from;
-  mho_status status = mho_interference_find(q, &s->molecule, &s->junction, !q->rules, &map, &from,
+  mho_status status = mho_molecule_require_wide_band(&s->molecule, "a map of all pairs", error);
+  if (status != MHO_OK) return status;
+  status = mho_interference_find(q, &s->molecule, &s->junction, !q->rules, &map, &from,
                                             error);
   if (status == MHO_OK && cmd->measured.figure)
     status = draw(cmd, &s->molecule, &map, from, error);

@@ -39,7 +39,9 @@ static const verb verbs[] = {
      command_conductance},
     {TRANSMISSION, "transmission", "MOLECULE...", "transmission T(E), its resonances and nodes",
      "T(E) against the energy above the Fermi level.  Without --samples the energies\n"
-     "follow resonances and nodes, so that none is missed.",
+     "follow resonances and nodes, so that none is missed.  --poles, --nodes, --currents,\n"
+     "--orbitals and --channels list something else; the last three look at one energy\n"
+     "(--at, default the Fermi level).",
      command_transmission},
     {TWIST, "twist", "MOLECULE...", "how flat a bond must be, and its thermal average",
      "T and thermal conductance against the angle of a bond, the Fermi level held\n"
@@ -91,8 +93,8 @@ typedef struct {
 enum {
   OPT_STORE, OPT_RESUME, OPT_SHOW, OPT_FAILED, OPT_DRY_RUN, OPT_GOAL, OPT_REQUIRE, OPT_TOP,
   OPT_BOND, OPT_ANGLES, OPT_ENERGIES, OPT_TWIST_MAP, OPT_AVERAGE, OPT_TORSION, OPT_RULES,
-  OPT_MODIFY, OPT_FROM, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_CURRENTS,
-  OPT_ORBITALS, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
+  OPT_MODIFY, OPT_FROM, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WIDTHS, OPT_NODES,
+  OPT_CURRENTS, OPT_ORBITALS, OPT_CHANNELS, OPT_PARTS, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
   OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
@@ -141,12 +143,18 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_AT] = {TRANSMISSION | TWIST, "at", 0, "QUANTITY",
                 "one row: an energy above the Fermi level, or an angle for twist"},
     [OPT_POLES] = {TRANSMISSION, "poles", 0, NULL, "list the resonances instead of T(E)"},
+    [OPT_WIDTHS] = {TRANSMISSION, "widths", 0, NULL,
+                    "with --poles: what each contact adds to the width of a resonance"},
     [OPT_NODES] = {TRANSMISSION, "nodes", 0, NULL,
                    "list where T vanishes or dips, from the zeros of the Green's function"},
     [OPT_CURRENTS] = {TRANSMISSION, "currents", 0, NULL,
                       "list the currents through bonds at one energy, as parts of T"},
     [OPT_ORBITALS] = {TRANSMISSION, "orbitals", 0, NULL,
                       "list what each molecular orbital adds to T at one energy"},
+    [OPT_CHANNELS] = {TRANSMISSION, "channels", 0, NULL,
+                      "list the eigenchannels of contacts with several sites at one energy"},
+    [OPT_PARTS] = {TRANSMISSION, "parts", 0, NULL,
+                   "with --channels: the part of each contact site in each of them"},
     [OPT_DRAW] = {CHECK, "draw", 0, "FILE.svg", "draw the molecules there; - draws to the screen"},
     [OPT_WINDOW] = {CONDUCTANCE | INTERFERENCE | SCREEN, "window", 0, "ENERGY",
                     "half width of the alignment window (default '0.5 eV')"},
@@ -156,7 +164,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_FERMI] = {SETTINGS, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {SETTINGS, "temperature", 0, "KELVIN", "such as '300 K'"},
-    [OPT_COUPLING] = {SETTINGS, "coupling", 0, "ENERGY", "Gamma of both contacts, such as '0.3 eV'"},
+    [OPT_COUPLING] = {SETTINGS, "coupling", 0, "ENERGY",
+                      "Gamma of both contacts, such as '0.3 eV', also in place of chains"},
     [OPT_BETA] = {SETTINGS, "beta", 0, "ENERGY", "resonance integral, negative (default '-2.7 eV')"},
     [OPT_PARAMETERS] = {SETTINGS, "parameters", 0, "SET", "van-catledge (default), streitwieser, or a file"},
     [OPT_TWIST] = {ALL, "twist", 0, "'BOND = ANGLE'", "such as 'C5-C8 = 38 deg'; may be repeated"},
@@ -429,6 +438,9 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_NODES: cmd->nodes = true; return EXIT_DONE;
   case OPT_CURRENTS: cmd->currents = true; return EXIT_DONE;
   case OPT_ORBITALS: cmd->orbitals = true; return EXIT_DONE;
+  case OPT_CHANNELS: cmd->channels = true; return EXIT_DONE;
+  case OPT_WIDTHS: cmd->widths = true; return EXIT_DONE;
+  case OPT_PARTS: cmd->parts = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
   case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;

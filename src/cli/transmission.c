@@ -86,6 +86,7 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
   for (size_t i = 0; status == MHO_OK && i < count; i++) {
     mho_transmission_row(table, s->molecule.name, relative[i], &point[i]);
     if (point[i].method == MHO_METHOD_NO_PATH) *warnings |= MHO_WARN_NO_PI_PATH;
+    else if (point[i].method == MHO_METHOD_NO_BAND) *warnings |= MHO_WARN_OUTSIDE_BAND;
     else if (point[i].node) *warnings |= MHO_WARN_NEAR_NODE;
   }
   if (status == MHO_OK && cmd->verbose)
@@ -98,15 +99,18 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
   return status;
 }
 
-static mho_status add_poles(const subject *s, const mho_plan *plan, mho_table *table,
-                            mho_error *error)
+static mho_status add_poles(const command *cmd, const subject *s, const mho_plan *plan,
+                            mho_output *output, mho_table *table, mho_error *error)
 {
   int count = mho_plan_sites(plan);
   mho_pole *pole = malloc((size_t)count * sizeof *pole);
   if (!pole) return mho_fail(error, MHO_ERR_MEMORY, "cli", NULL, "out of memory");
-  mho_status status = mho_poles(plan, pole, error);
+  mho_status status = mho_molecule_require_wide_band(&s->molecule, "--poles", error);
+  if (status == MHO_OK) status = mho_poles(plan, pole, error);
   for (int k = 0; status == MHO_OK && k < count; k++)
-    mho_poles_row(table, s->molecule.name, s->junction.fermi_ev, &pole[k]);
+    mho_poles_row(table, s->molecule.name, s->junction.fermi_ev, &pole[k], cmd->widths);
+  if (status == MHO_OK && !cmd->quiet)
+    mho_frontier_note(output, s->molecule.name, &s->junction, pole);
   free(pole);
   return status;
 }
@@ -116,29 +120,47 @@ static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *t
 {
   mho_nodes nodes;
   mho_status status = mho_nodes_find(plan, &nodes, error);
-  if (status == MHO_OK && nodes.everywhere) *warnings |= MHO_WARN_NO_PI_PATH;
+  mho_point at_fermi = {0};
+  if (status == MHO_OK && nodes.everywhere)
+    status = mho_transmission_sweep(plan, 1, &s->junction.fermi_ev, &at_fermi, error);
+  if (nodes.everywhere) /* no path, or bands that do not meet */
+    *warnings |= at_fermi.method == MHO_METHOD_NO_BAND ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NO_PI_PATH;
   for (size_t k = 0; status == MHO_OK && k < nodes.count; k++)
     mho_nodes_row(table, s->molecule.name, s->junction.fermi_ev, &nodes.node[k]);
   mho_nodes_clear(&nodes);
   return status;
 }
 
-/* Currents or orbitals at one energy. */
+static void add_view(const command *cmd, const subject *s, const mho_inside *inside,
+                     mho_output *output, mho_table *table)
+{
+  const mho_molecule *m = &s->molecule;
+  if (!cmd->quiet) mho_inside_note(output, m->name, cmd->has_at ? cmd->at_ev : 0, inside);
+  if (cmd->currents) mho_currents_rows(table, m, inside);
+  if (cmd->orbitals) mho_orbitals_rows(table, m->name, s->junction.fermi_ev, inside);
+  if (cmd->orbitals && !cmd->quiet) mho_orbitals_note(output, m->name, &s->junction);
+  if (cmd->channels) mho_channels_rows(table, m, inside, cmd->parts);
+  if (cmd->channels && !cmd->quiet) mho_channels_note(output, m, inside);
+}
+
+/* Currents, orbitals or eigenchannels at one energy. */
 static mho_status add_inside(const command *cmd, const subject *s, const mho_plan *plan,
-                             mho_table *table, unsigned *warnings, mho_error *error)
+                             mho_output *output, mho_table *table, unsigned *warnings,
+                             mho_error *error)
 {
   double energy = s->junction.fermi_ev + (cmd->has_at ? cmd->at_ev : 0);
   const mho_molecule *m = &s->molecule;
   mho_inside inside;
   mho_buffer svg = {0};
   mho_status status = mho_inside_compute(&s->junction, plan, energy, &inside, error);
-  if (status == MHO_OK && !inside.flows) *warnings |= MHO_WARN_NEAR_NODE;
-  if (status == MHO_OK && cmd->orbitals)
-    mho_orbitals_rows(table, m->name, s->junction.fermi_ev, &inside);
-  if (status == MHO_OK && cmd->currents) mho_currents_rows(table, m, &inside);
+  if (status == MHO_OK && !inside.flows)
+    *warnings |= inside.outside_band ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NEAR_NODE;
+  if (status == MHO_OK) add_view(cmd, s, &inside, output, table);
   if (status == MHO_OK && cmd->measured.figure && !inside.flows)
     status = mho_fail(error, MHO_ERR_NOT_FINITE, "cli", "figure",
-                      "--figure: nothing flows, T has a node at this energy");
+                      inside.outside_band
+                          ? "--figure: nothing flows, the energy lies outside the band of an electrode"
+                          : "--figure: nothing flows, T has a node at this energy");
   if (status == MHO_OK && cmd->measured.figure) {
     status = mho_drawing_write_currents(m, &inside, &svg, error);
     if (status == MHO_OK) status = mho_buffer_save(&svg, cmd->measured.figure, "cli", error);
@@ -148,6 +170,9 @@ static mho_status add_inside(const command *cmd, const subject *s, const mho_pla
   return status;
 }
 
+/* Asks for a view of the inside, at one energy. */
+static bool is_view(const command *cmd) { return cmd->currents || cmd->orbitals || cmd->channels; }
+
 static mho_status add_molecule(const command *cmd, const subject *s, curves *kept,
                                mho_output *output, mho_table *table, mho_error *error)
 {
@@ -155,10 +180,10 @@ static mho_status add_molecule(const command *cmd, const subject *s, curves *kep
   unsigned warnings = s->warnings;
   mho_status status = mho_plan_create(&s->junction, &plan, error);
   if (status == MHO_OK)
-    status = cmd->poles   ? add_poles(s, plan, table, error)
-             : cmd->nodes ? add_nodes(s, plan, table, &warnings, error)
-             : cmd->currents || cmd->orbitals ? add_inside(cmd, s, plan, table, &warnings, error)
-                          : add_sweep(cmd, s, plan, kept, output, table, &warnings, error);
+    status = cmd->poles      ? add_poles(cmd, s, plan, output, table, error)
+             : cmd->nodes    ? add_nodes(s, plan, table, &warnings, error)
+             : is_view(cmd)  ? add_inside(cmd, s, plan, output, table, &warnings, error)
+                             : add_sweep(cmd, s, plan, kept, output, table, &warnings, error);
   mho_plan_free(plan);
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);
@@ -169,15 +194,21 @@ static int check_options(const command *cmd)
 {
   if (cmd->has_at && (cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb, "--at gives one row; it excludes --energies and --samples");
-  if (cmd->poles + cmd->nodes + cmd->currents + cmd->orbitals > 1)
-    return usage_error(cmd->verb, "--poles, --nodes, --currents and --orbitals exclude each other; "
-                                  "one table a call");
-  if ((cmd->currents || cmd->orbitals) && (cmd->has_samples || cmd->has_energies))
+  if (cmd->poles + cmd->nodes + cmd->currents + cmd->orbitals + cmd->channels > 1)
+    return usage_error(cmd->verb, "--poles, --nodes, --currents, --orbitals and --channels exclude "
+                                  "each other; one table a call");
+  if (cmd->widths && !cmd->poles)
+    return usage_error(cmd->verb, "--widths are those of --poles; give both");
+  if (cmd->parts && !cmd->channels)
+    return usage_error(cmd->verb, "--parts are those of --channels; give both");
+  if (is_view(cmd) && (cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb, "--%s looks at one energy (--at, default the Fermi level); it "
                                   "excludes --energies and --samples",
-                       cmd->currents ? "currents" : "orbitals");
-  if (cmd->measured.figure && (cmd->poles || cmd->nodes || cmd->orbitals || cmd->has_at) &&
-      !cmd->currents)
+                       cmd->currents   ? "currents"
+                       : cmd->orbitals ? "orbitals"
+                                       : "channels");
+  if (cmd->measured.figure && !cmd->currents &&
+      (cmd->poles || cmd->nodes || is_view(cmd) || cmd->has_at))
     return usage_error(cmd->verb, "--figure draws T(E) with its nodes, or --currents");
   if ((cmd->poles || cmd->nodes) && (cmd->has_at || cmd->has_samples || cmd->has_energies))
     return usage_error(cmd->verb,
@@ -209,11 +240,12 @@ int command_transmission(const command *cmd, mho_error *error)
     status = mho_fail(error, MHO_ERR_USAGE, "cli", "figure", "--figure draws at most %d molecule%s",
                       most, most > 1 ? "s" : "");
   mho_table *table =
-      cmd->poles   ? mho_poles_table(&output)
-      : cmd->nodes ? mho_nodes_table(&output)
+      cmd->poles      ? mho_poles_table(&output, cmd->widths)
+      : cmd->nodes    ? mho_nodes_table(&output)
       : cmd->currents ? mho_currents_table(&output)
       : cmd->orbitals ? mho_orbitals_table(&output)
-                   : mho_transmission_table(&output);
+      : cmd->channels ? mho_channels_table(&output, cmd->parts)
+                      : mho_transmission_table(&output);
   for (int i = 0; status == MHO_OK && table && i < list.count; i++)
     status = add_molecule(cmd, &list.item[i], &kept, &output, table, error);
   if (cmd->orbitals && !cmd->quiet)

@@ -4,6 +4,7 @@
  */
 #include <mho/molecule_file.h>
 
+#include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -13,10 +14,12 @@
 #include "input/molecule_node.h"
 #include "input/yaml.h"
 #include "molecule/records.h"
+#include "molecule/texts.h"
 
 #define ENERGY_LIMIT_EV 100.0
 #define COUPLING_LOW_EV 1e-9
 #define COUPLING_HIGH_EV 10.0
+#define CHAIN_LOW_EV 1e-6 /* of its hoppings */
 
 enum { CHARGE_LIMIT = 20, RECORD_LIMIT = 1000000000 };
 
@@ -25,6 +28,7 @@ typedef struct {
   const mho_yaml_node *node; /* the mapping of the molecule */
   mho_molecule *molecule;
   mho_settings settings; /* of defaults, this mapping and overrides together */
+  bool drawn;           /* a SMILES or a structure, not the sites themselves */
   bool explicit_energy; /* some site has an explicit onsite only */
 } reader;
 
@@ -334,18 +338,71 @@ static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *c
                   "amplitude: all are zero, so the contact touches nothing");
 }
 
-static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
-                         mho_contact *contact)
+/* An energy that must not vanish. */
+static void read_hopping(reader *r, const mho_yaml_node *mapping, const char *key,
+                         const char *without, double *value)
 {
-  static const char *const keys[] = {"sites", "coupling", "channels", "amplitude", "shift"};
-  static const char *const channels[] = {"independent", "one"};
-  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
+  const mho_yaml_node *node = mho_yaml_require(r->yaml, mapping, key);
+  if (!mho_yaml_get_quantity(r->yaml, node, key, MHO_ENERGY, -ENERGY_LIMIT_EV, ENERGY_LIMIT_EV,
+                             value) ||
+      fabs(*value) >= CHAIN_LOW_EV)
+    return;
+  mho_yaml_fail(r->yaml, node, MHO_ERR_RANGE, key,
+                "%s: with '%.40s' %s; allowed are sizes of %g eV to %g eV", key, node->text, without,
+                CHAIN_LOW_EV, ENERGY_LIMIT_EV);
+}
+
+static void read_chain(reader *r, const mho_yaml_node *contact_node, mho_contact *contact)
+{
+  static const char *const keys[] = {"centre", "hopping", "joint"};
+  static const char *const excluded[] = {"coupling", "shift"};
+  const mho_yaml_node *node = mho_yaml_find(contact_node, "chain");
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "chain")) return;
   mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
-  read_contact_sites(r, node, contact);
+  for (int i = 0; i < 2; i++) {
+    const mho_yaml_node *other = mho_yaml_find(contact_node, excluded[i]);
+    if (other)
+      mho_yaml_fail(r->yaml, other, MHO_ERR_KEY, excluded[i],
+                    "%s: it is of a wide band and does not go with 'chain', which has its own",
+                    excluded[i]);
+  }
+  contact->has_chain = true;
+  contact->line = node->line;
+  contact->column = node->column;
+  mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "centre"), "centre", MHO_ENERGY,
+                        -ENERGY_LIMIT_EV, ENERGY_LIMIT_EV, &contact->chain.center_ev);
+  read_hopping(r, node, "hopping", "the chain has no band", &contact->chain.hopping_ev);
+  read_hopping(r, node, "joint", "nothing joins chain and molecule", &contact->chain.joint_ev);
+}
+
+/* What stands behind a contact: a wide band or a chain. */
+static void read_electrode(reader *r, const mho_yaml_node *node, mho_contact *contact)
+{
   mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "coupling"), "coupling", MHO_ENERGY,
                         COUPLING_LOW_EV, COUPLING_HIGH_EV, &contact->coupling_ev);
   mho_yaml_get_quantity(r->yaml, mho_yaml_find(node, "shift"), "shift", MHO_ENERGY, -10.0,
                         10.0, &contact->shift_ev);
+  read_chain(r, node, contact);
+}
+
+static void read_contact(reader *r, const mho_yaml_node *node, const char *field,
+                         mho_contact *contact)
+{
+  static const char *const keys[] = {"coupling", "shift", "chain", "sites", "channels",
+                                     "amplitude"};
+  static const char *const channels[] = {"independent", "one"};
+  if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, field)) return;
+  mho_yaml_check_keys(r->yaml, node, keys, sizeof keys / sizeof *keys);
+  for (size_t i = 3; r->drawn && i < sizeof keys / sizeof *keys; i++) {
+    const mho_yaml_node *own = mho_yaml_find(node, keys[i]);
+    if (own)
+      mho_yaml_fail(r->yaml, own, MHO_ERR_KEY, keys[i],
+                    "%s: a drawn structure has its contacts at linkers or at atoms of class 1 and 2; "
+                    "allowed here: coupling, shift, chain", keys[i]);
+  }
+  read_electrode(r, node, contact);
+  if (r->drawn) return;
+  read_contact_sites(r, node, contact);
   size_t choice = 0;
   if (mho_yaml_get_choice(r->yaml, mho_yaml_find(node, "channels"), "channels", channels, 2,
                           &choice))
@@ -360,8 +417,28 @@ static void read_electrodes(reader *r)
   if (!mho_yaml_is(r->yaml, node, MHO_YAML_MAPPING, "electrodes")) return;
   mho_yaml_check_keys(r->yaml, node, keys, 2);
   for (int side = 0; side < 2; side++)
-    read_contact(r, mho_yaml_require(r->yaml, node, keys[side]), keys[side],
-                 &r->molecule->contact[side]);
+    read_contact(r, (r->drawn ? mho_yaml_find(node, keys[side])
+                              : mho_yaml_require(r->yaml, node, keys[side])),
+                 keys[side], &r->molecule->contact[side]);
+  const mho_yaml_node *coupling = mho_yaml_find(r->node, "coupling");
+  if (coupling && r->molecule->contact[MHO_LEFT].has_chain &&
+      r->molecule->contact[MHO_RIGHT].has_chain)
+    mho_yaml_fail(r->yaml, coupling, MHO_ERR_KEY, "coupling",
+                  "coupling: both electrodes are chains, which have none; leave it out");
+}
+
+/* A coupling from outside counts more than the file's electrodes. */
+static void override_electrodes(reader *r, const mho_settings *overrides)
+{
+  mho_contact *contact = r->molecule->contact;
+  if (!overrides || !overrides->has_coupling) return;
+  if ((contact[MHO_LEFT].has_chain || contact[MHO_RIGHT].has_chain) &&
+      mho_texts_add(&r->molecule->notes, "the coupling that is asked for puts wide bands in the "
+                                         "place of the file's chains") != MHO_OK)
+    fail_memory(r);
+  mho_settings above = {.has_coupling = true, .coupling_ev = overrides->coupling_ev};
+  mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
+  (void)status; /* a coupling always fits */
 }
 
 /* The sites themselves. */
@@ -375,12 +452,9 @@ static void read_explicit(reader *r, const mho_settings *overrides)
   if (mho_settings_apply(&below, r->molecule, r->yaml->error) != MHO_OK) return;
   read_electrodes(r);
   if (r->yaml->error->count) return; /* sites may be missing */
-  mho_settings above = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
-  if (overrides) {
-    above.has_coupling = overrides->has_coupling;
-    above.coupling_ev = overrides->coupling_ev;
-  }
-  mho_status status = mho_settings_apply(&above, r->molecule, r->yaml->error);
+  override_electrodes(r, overrides);
+  mho_settings twists = {.twist = r->settings.twist, .twist_count = r->settings.twist_count};
+  mho_status status = mho_settings_apply(&twists, r->molecule, r->yaml->error);
   (void)status; /* the cause is in the document's error */
   if (mho_molecule_warn_length(r->molecule) != MHO_OK) fail_memory(r);
 }
@@ -428,8 +502,8 @@ static void read_structure(reader *r, const mho_yaml_node *structure)
 
 static void refuse_mixture(reader *r, const char *with)
 {
-  static const char *const keys[] = {"sites", "bonds", "electrons", "electrodes", "smiles"};
-  for (int i = 0; i < 5; i++) {
+  static const char *const keys[] = {"sites", "bonds", "electrons", "smiles"};
+  for (int i = 0; i < 4; i++) {
     const mho_yaml_node *node = mho_yaml_find(r->node, keys[i]);
     if (node && strcmp(keys[i], with))
       mho_yaml_fail(r->yaml, node, MHO_ERR_KEY, keys[i],
@@ -455,9 +529,12 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   if (record && !structure)
     mho_yaml_fail(r->yaml, record, MHO_ERR_KEY, "record", "record: it belongs to a 'structure'");
   if (structure || smiles) refuse_mixture(r, structure ? "structure" : "smiles");
+  r->drawn = structure || smiles;
   if (structure) read_structure(r, structure);
   else if (smiles) read_drawn(r, smiles);
   else read_explicit(r, overrides);
+  if (r->drawn) read_electrodes(r);
+  if (r->drawn) override_electrodes(r, overrides);
   if (r->yaml->error->count == before)
     mho_yaml_get_torsions(r->yaml, mho_yaml_find(r->node, "torsion"), r->molecule);
 }

@@ -325,8 +325,10 @@ mho_status mho_settings_apply(const mho_settings *settings, mho_molecule *molecu
   if (settings->has_beta) molecule->beta_ev = settings->beta_ev;
   if (settings->has_temperature) molecule->temperature_k = settings->temperature_k;
   if (settings->has_fermi) molecule->fermi = settings->fermi;
-  for (int side = 0; settings->has_coupling && side < 2; side++)
+  for (int side = 0; settings->has_coupling && side < 2; side++) {
     molecule->contact[side].coupling_ev = settings->coupling_ev;
+    molecule->contact[side].has_chain = false;
+  }
   for (int i = 0; i < settings->twist_count; i++) {
     mho_status status = apply_twist(&settings->twist[i], molecule, error);
     if (status != MHO_OK) return status;

@@ -29,6 +29,15 @@ static void build_hamiltonian(const mho_molecule *molecule, double *h)
   }
 }
 
+static mho_status copy_chain(const mho_chain_electrode *from, mho_lead *to, mho_error *error)
+{
+  mho_chain_electrode *chain = malloc(sizeof *chain);
+  if (!chain) return fail_memory(error);
+  *chain = *from;
+  to->chain = chain;
+  return MHO_OK;
+}
+
 static mho_status build_lead(const mho_contact *contact, int sites,
                              mho_lead *lead, mho_error *error)
 {
@@ -50,7 +59,7 @@ static mho_status build_lead(const mho_contact *contact, int sites,
     lead->vector[channel * (size_t)sites + (size_t)contact->site[k]] =
         one ? contact->amplitude[k] : 1.0;
   }
-  return MHO_OK;
+  return contact->has_chain ? copy_chain(&contact->chain, lead, error) : MHO_OK;
 }
 
 /* Aufbau: two electrons a level from below. */
@@ -168,11 +177,10 @@ static mho_status copy_lead(const mho_lead *from, int sites, mho_lead *to,
   to->vector = malloc(m * n * sizeof(double));
   if (!to->coupling_ev || !to->shift_ev || !to->vector) return fail_memory(error);
   to->channels = from->channels;
-  to->chain = from->chain;
   memcpy(to->coupling_ev, from->coupling_ev, m * sizeof(double));
   memcpy(to->shift_ev, from->shift_ev, m * sizeof(double));
   memcpy(to->vector, from->vector, m * n * sizeof(double));
-  return MHO_OK;
+  return from->chain ? copy_chain(from->chain, to, error) : MHO_OK;
 }
 
 mho_status mho_junction_from_hamiltonian(int sites, const double *hamiltonian_ev,
@@ -214,6 +222,7 @@ void mho_junction_clear(mho_junction *junction)
     free(junction->lead[side].coupling_ev);
     free(junction->lead[side].shift_ev);
     free(junction->lead[side].vector);
+    free((void *)junction->lead[side].chain);
   }
   memset(junction, 0, sizeof *junction);
 }
@@ -231,6 +240,21 @@ mho_status mho_junction_require_contacts(const mho_junction *junction,
                          "molecule '%s' has no %s contact; give "
                          "electrodes: {left: ..., right: ...}",
                          molecule->name ? molecule->name : "", side_name[side]);
+  return MHO_OK;
+}
+
+mho_status mho_molecule_require_wide_band(const mho_molecule *molecule, const char *what,
+                                          mho_error *error)
+{
+  for (int side = 0; side < 2; side++) {
+    const mho_contact *contact = &molecule->contact[side];
+    if (contact->has_chain)
+      return mho_fail_at(error, MHO_ERR_RANGE, "model", molecule->source ? molecule->source : "",
+                         contact->line, contact->column, "chain",
+                         "chain: %s needs electrodes of a wide band; --coupling '0.5 eV' puts "
+                         "them in the place of chains",
+                         what);
+  }
   return MHO_OK;
 }
 

@@ -16,6 +16,11 @@ static const char *const side_name[] = {"left", "right"};
 static const char *const length_origin[] = {
     [MHO_LENGTH_COORDINATES] = "coordinates", [MHO_LENGTH_IDEALISED] = "idealised"};
 
+static json_t *json_optional(bool present, double value)
+{
+  return present ? json_real(value) : json_null();
+}
+
 static json_t *json_id_list(const mho_molecule *molecule, const int *site, int count)
 {
   json_t *list = json_array();
@@ -51,6 +56,13 @@ static json_t *json_bond(const mho_molecule *molecule, int index)
   return object;
 }
 
+json_t *mho_json_chain(const mho_chain_electrode *chain)
+{
+  json_t *object = mho_json_with(json_object(), "centre_eV", json_real(chain->center_ev));
+  object = mho_json_with(object, "hopping_eV", json_real(chain->hopping_ev));
+  return mho_json_with(object, "joint_eV", json_real(chain->joint_ev));
+}
+
 static json_t *json_contacts(const mho_molecule *molecule)
 {
   json_t *contacts = json_object();
@@ -62,8 +74,10 @@ static json_t *json_contacts(const mho_molecule *molecule)
     for (int i = 0; i < contact->count; i++)
       amplitude = mho_json_append(amplitude, json_real(one ? contact->amplitude[i] : 1.0));
     object = mho_json_with(object, "sites", json_id_list(molecule, contact->site, contact->count));
-    object = mho_json_with(object, "coupling_eV", json_real(contact->coupling_ev));
-    object = mho_json_with(object, "shift_eV", json_real(contact->shift_ev));
+    bool wide = !contact->has_chain;
+    object = mho_json_with(object, "coupling_eV", json_optional(wide, contact->coupling_ev));
+    object = mho_json_with(object, "shift_eV", json_optional(wide, contact->shift_ev));
+    if (!wide) object = mho_json_with(object, "chain", mho_json_chain(&contact->chain));
     object = mho_json_with(object, "channels", mho_json_text(one ? "one" : "independent"));
     object = mho_json_with(object, "amplitude", amplitude);
     contacts = mho_json_with(contacts, side_name[side], object);
@@ -88,11 +102,6 @@ static json_t *json_notes(const mho_molecule *molecule)
   for (int i = 0; i < molecule->notes.count; i++)
     list = mho_json_append(list, mho_json_text(molecule->notes.text[i]));
   return list;
-}
-
-static json_t *json_optional(bool present, double value)
-{
-  return present ? json_real(value) : json_null();
 }
 
 static json_t *json_molecule(const mho_checked *checked)
@@ -165,6 +174,27 @@ static void write_level(mho_buffer *buffer, const char *name, bool present, doub
   }
 }
 
+static void write_energy(mho_buffer *buffer, const char *before, int digits, double energy_ev)
+{
+  mho_buffer_add(buffer, before);
+  mho_buffer_number(buffer, digits, energy_ev);
+}
+
+void mho_write_electrode(const mho_contact *contact, int digits, mho_buffer *buffer)
+{
+  const mho_chain_electrode *chain = &contact->chain;
+  double half = 2 * fabs(chain->hopping_ev);
+  if (!contact->has_chain) {
+    write_energy(buffer, "coupling ", digits, contact->coupling_ev);
+  } else {
+    write_energy(buffer, "chain of hopping ", digits, chain->hopping_ev);
+    write_energy(buffer, " eV, joint ", digits, chain->joint_ev);
+    write_energy(buffer, " eV, band ", digits, chain->center_ev - half);
+    write_energy(buffer, " to ", digits, chain->center_ev + half);
+  }
+  mho_buffer_add(buffer, " eV");
+}
+
 static void write_contact(const mho_molecule *molecule, int side, int digits,
                           mho_buffer *buffer)
 {
@@ -182,9 +212,9 @@ static void write_contact(const mho_molecule *molecule, int side, int digits,
       mho_buffer_number(buffer, digits, contact->amplitude[i]);
     }
   }
-  mho_buffer_add(buffer, ", coupling ");
-  mho_buffer_number(buffer, digits, contact->coupling_ev);
-  mho_buffer_print(buffer, " eV%s\n",
+  mho_buffer_add(buffer, ", ");
+  mho_write_electrode(contact, digits, buffer);
+  mho_buffer_print(buffer, "%s\n",
                    contact->count > 1 ? one ? ", one channel" : ", independent channels" : "");
 }
 

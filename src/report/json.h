@@ -27,6 +27,9 @@ json_t *mho_json_warnings(const mho_output *output);
 json_t *mho_json_warning_words(unsigned warnings);
 json_t *mho_json_notes(const mho_output *output);
 
+/* {centre_eV, hopping_eV, joint_eV} */
+json_t *mho_json_chain(const mho_chain_electrode *chain);
+
 /* What was understood of molecules, as in `mho check --json`. */
 json_t *mho_json_molecules(const mho_checked *checked, size_t count);
 

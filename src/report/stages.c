@@ -12,6 +12,8 @@
 
 #define COUNT(array) (sizeof(array) / sizeof *(array))
 
+#define LEAST_CONTRIBUTION 1e-11 /* decades */
+
 static void add_warning_words(mho_table *table, unsigned warnings)
 {
   mho_buffer words = {0};
@@ -19,6 +21,13 @@ static void add_warning_words(mho_table *table, unsigned warnings)
   if (table && words.failed) table->failed = MHO_ERR_MEMORY;
   mho_table_text(table, words.data);
   mho_buffer_clear(&words);
+}
+
+/* A node is no prediction; outside a band the model does say zero. */
+static void add_transmission(mho_table *table, const mho_point *point)
+{
+  if (point->node && point->method != MHO_METHOD_NO_BAND) mho_table_node(table);
+  else mho_table_number(table, point->transmission);
 }
 
 mho_table *mho_conductance_table(mho_output *output)
@@ -34,9 +43,8 @@ void mho_conductance_row(mho_table *table, const char *molecule,
 {
   mho_table_text(table, molecule);
   mho_table_number(table, g->fermi_ev);
-  if (g->at_fermi.node) mho_table_node(table);
-  else mho_table_number(table, g->at_fermi.transmission);
-  if (g->has_log) {
+  add_transmission(table, &g->at_fermi);
+  if (g->has_log || g->warnings & MHO_WARN_OUTSIDE_BAND) {
     mho_table_number(table, g->conductance_g0);
     mho_table_number(table, g->conductance_s);
   } else {
@@ -62,11 +70,13 @@ void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
   char name[2 * MHO_ID_SIZE + 32];
   for (size_t p = 0; p < sensitivity->count; p++) {
     const mho_sensitivity_row *row = &sensitivity->row[p];
+    bool counts = row->contribution_decades > LEAST_CONTRIBUTION; /* else it is rounding */
     mho_table_text(table, molecule->name);
     mho_table_text(table, mho_sensitivity_name(row, molecule, name, sizeof name));
-    mho_table_optional(table, sensitivity->has_derivatives, row->derivative_log10_g0);
+    mho_table_optional(table, sensitivity->has_derivatives, counts ? row->derivative_log10_g0 : 0);
     mho_table_number(table, row->sigma);
-    mho_table_optional(table, sensitivity->has_derivatives, row->contribution_decades);
+    mho_table_optional(table, sensitivity->has_derivatives,
+                       counts ? row->contribution_decades : 0);
   }
   bool linear = sensitivity->rule == MHO_RULE_LINEAR;
   mho_table_text(table, molecule->name);
@@ -74,6 +84,23 @@ void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
   mho_table_empty(table);
   mho_table_empty(table);
   mho_table_optional(table, sensitivity->has_error, sensitivity->error_decades);
+}
+
+void mho_sensitivity_note(mho_output *output, const mho_molecule *molecule,
+                          const mho_sensitivity *s)
+{
+  enum { NAMED = 2 };
+  char name[NAMED][2 * MHO_ID_SIZE + 32];
+  if (!s->has_error || s->count < NAMED) return;
+  for (int p = 0; p < NAMED; p++)
+    mho_sensitivity_name(&s->row[p], molecule, name[p], sizeof name[p]);
+  bool linear = s->rule == MHO_RULE_LINEAR;
+  mho_output_note(output, "%s: the conductance is uncertain by a factor of %.2g (%.2g decades, one "
+                          "sigma, %s)%s%s%s%s",
+                  molecule->name, pow(10, s->error_decades), s->error_decades,
+                  linear ? "linear rule" : "Monte Carlo, as the linear rule fails here",
+                  s->has_derivatives ? ", most by " : "", s->has_derivatives ? name[0] : "",
+                  s->has_derivatives ? " and " : "", s->has_derivatives ? name[1] : "");
 }
 
 mho_table *mho_transmission_table(mho_output *output)
@@ -88,23 +115,8 @@ void mho_transmission_row(mho_table *table, const char *molecule, double relativ
 {
   mho_table_text(table, molecule);
   mho_table_number(table, relative_energy_ev);
-  if (point->node) mho_table_node(table);
-  else mho_table_number(table, point->transmission);
+  add_transmission(table, point);
   mho_table_optional(table, !point->node, point->log10_transmission);
-}
-
-mho_table *mho_poles_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "energy_eV", "width_eV"};
-  return mho_output_table(output, "poles", columns, COUNT(columns));
-}
-
-void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
-                   const mho_pole *pole)
-{
-  mho_table_text(table, molecule);
-  mho_table_number(table, pole->energy_ev - fermi_ev);
-  mho_table_number(table, pole->width_ev);
 }
 
 mho_table *mho_compare_table(mho_output *output)
@@ -150,44 +162,6 @@ void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
   mho_table_text(table, kind[node->kind]);
 }
 
-mho_table *mho_currents_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "from", "to", "current"};
-  return mho_output_table(output, "currents", columns, COUNT(columns));
-}
-
-void mho_currents_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside)
-{
-  for (size_t i = 0; i < inside->bonds; i++) {
-    const mho_bond_current *current = &inside->bond[i];
-    bool back = inside->flows && current->flow < 0;
-    mho_table_text(table, molecule->name);
-    mho_table_text(table, molecule->site[back ? current->to : current->from].id);
-    mho_table_text(table, molecule->site[back ? current->from : current->to].id);
-    mho_table_optional(table, inside->flows,
-                       inside->flows ? fabs(current->flow) / inside->transmission : 0);
-  }
-}
-
-mho_table *mho_orbitals_table(mho_output *output)
-{
-  static const char *const columns[] = {"molecule", "level", "energy_eV", "diagonal",
-                                        "interference"};
-  return mho_output_table(output, "orbitals", columns, COUNT(columns));
-}
-
-void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
-                       const mho_inside *inside)
-{
-  for (size_t k = 0; k < inside->orbitals; k++) {
-    mho_table_text(table, molecule);
-    mho_table_integer(table, (long)k + 1);
-    mho_table_number(table, inside->orbital[k].level_ev - fermi_ev);
-    mho_table_number(table, inside->orbital[k].alone);
-    mho_table_number(table, inside->orbital[k].interference);
-  }
-}
-
 /* 10^log10 with two digits, in a buffer. */
 static const char *two_digits(double log10_value, char *buffer, size_t size)
 {
@@ -202,6 +176,11 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
   mho_number_write(window, sizeof window, 3, window_ev);
   if (g->warnings & MHO_WARN_NO_PI_PATH) {
     mho_output_note(output, "%s: no pi path joins the contacts, so the model predicts nothing",
+                    molecule);
+  } else if (g->warnings & MHO_WARN_OUTSIDE_BAND) {
+    mho_output_note(output,
+                    "%s: the Fermi level lies outside the band of an electrode, where no state "
+                    "brings electrons; only the tail of warmer ones conducts",
                     molecule);
   } else if (g->warnings & MHO_WARN_NEAR_NODE || !g->has_log) {
     mho_output_note(output,
@@ -218,12 +197,6 @@ void mho_verdict_note(mho_output *output, const char *molecule, const mho_conduc
                                        : "0",
                     window);
   }
-}
-
-static void add_transmission(mho_table *table, const mho_point *point)
-{
-  if (point->node) mho_table_node(table);
-  else mho_table_number(table, point->transmission);
 }
 
 static void add_conductance(mho_table *table, double log10_g0)
@@ -540,23 +513,41 @@ void mho_rules_note(mho_output *output, const mho_molecule *molecule,
   }
 }
 
+/* `coupling 0.3 and 0.5 eV`, or in more words where a chain is among them. */
+static void write_electrodes(const mho_molecule *molecule, mho_buffer *words)
+{
+  const mho_contact *left = &molecule->contact[MHO_LEFT], *right = &molecule->contact[MHO_RIGHT];
+  if (left->has_chain || right->has_chain) {
+    mho_buffer_add(words, "left electrode ");
+    mho_write_electrode(left, 6, words);
+    mho_buffer_add(words, ", right electrode ");
+    mho_write_electrode(right, 6, words);
+    return;
+  }
+  mho_buffer_add(words, "coupling ");
+  mho_buffer_number(words, 6, left->coupling_ev);
+  mho_buffer_add(words, " and ");
+  mho_buffer_number(words, 6, right->coupling_ev);
+  mho_buffer_add(words, " eV");
+}
+
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,
                          const mho_junction *junction)
 {
-  char fermi[64], beta[32], temperature[32], at[32], left[32], right[32];
+  char fermi[64], beta[32], temperature[32], at[32];
+  mho_buffer electrodes = {0};
   mho_number_write(beta, sizeof beta, 6, molecule->beta_ev);
   mho_number_write(temperature, sizeof temperature, 6, molecule->temperature_k);
   mho_number_write(at, sizeof at, 6, junction->fermi_ev);
-  mho_number_write(left, sizeof left, 6, molecule->contact[MHO_LEFT].coupling_ev);
-  mho_number_write(right, sizeof right, 6, molecule->contact[MHO_RIGHT].coupling_ev);
+  write_electrodes(molecule, &electrodes);
+  output->failed |= electrodes.failed;
   mho_fermi_write(&molecule->fermi, fermi, sizeof fermi);
   bool relative = molecule->fermi.kind != MHO_FERMI_ENERGY;
-  mho_output_note(output,
-                  "%s: beta %s eV, parameters %s, coupling %s and %s eV, Fermi level %s%s%s%s, "
-                  "%s K",
-                  molecule->name, beta, mho_parameters_name(molecule->parameters), left, right,
-                  fermi, relative ? " = " : "", relative ? at : "", relative ? " eV" : "",
-                  temperature);
+  mho_output_note(output, "%s: beta %s eV, parameters %s, %s, Fermi level %s%s%s%s, %s K",
+                  molecule->name, beta, mho_parameters_name(molecule->parameters),
+                  electrodes.failed ? "" : electrodes.data, fermi, relative ? " = " : "",
+                  relative ? at : "", relative ? " eV" : "", temperature);
+  mho_buffer_clear(&electrodes);
   for (int i = 0; i < molecule->notes.count; i++)
     mho_output_note(output, "%s: %s", molecule->name, molecule->notes.text[i]);
 }
@@ -565,14 +556,20 @@ void mho_method_note(mho_output *output, const char *molecule, const mho_plan *p
                      const mho_point *point, size_t count)
 {
   char description[512];
+  mho_buffer used = {0};
   size_t settled[MHO_METHOD_COUNT] = {0};
   for (size_t i = 0; i < count; i++) settled[point[i].method]++;
-  mho_output_note(output, "%s: methods at hand: %s", molecule,
-                  mho_plan_describe(plan, description, sizeof description));
   for (int m = 0; m < MHO_METHOD_COUNT; m++)
     if (settled[m])
-      mho_output_note(output,
-                      "%s: %zu of %zu energies by %s, the first whose error bound keeps the "
-                      "accuracy contract",
-                      molecule, settled[m], count, mho_method_name((mho_method)m));
+      mho_buffer_print(&used, "%s %zu %s%s", used.size ? "," : "", settled[m],
+                       m < MHO_METHOD_SPECTRUM ? "without work: " : "by ",
+                       mho_method_name((mho_method)m));
+  output->failed |= used.failed;
+  mho_output_note(output, "%s: methods, quickest first: %s", molecule,
+                  mho_plan_describe(plan, description, sizeof description));
+  if (used.size && !used.failed)
+    mho_output_note(output, "%s: of %zu energ%s%s; each by the first whose bound on its own error is "
+                            "below 1e-12, or what the condition of T allows",
+                    molecule, count, count == 1 ? "y" : "ies", used.data);
+  mho_buffer_clear(&used);
 }

@@ -30,19 +30,32 @@ void mho_conductance_row(mho_table *table, const char *molecule,
 mho_table *mho_sensitivity_table(mho_output *output);
 void mho_sensitivity_rows(mho_table *table, const mho_molecule *molecule,
                           const mho_sensitivity *sensitivity);
+/* How uncertain the conductance is, and by what. */
+void mho_sensitivity_note(mho_output *output, const mho_molecule *molecule,
+                          const mho_sensitivity *sensitivity);
 
 /* energy_ev is absolute; the table has it relative to fermi_ev. */
 mho_table *mho_transmission_table(mho_output *output);
 void mho_transmission_row(mho_table *table, const char *molecule, double relative_energy_ev,
                           const mho_point *point);
 
-mho_table *mho_poles_table(mho_output *output);
+/* With `widths` also what each contact adds to the width. */
+mho_table *mho_poles_table(mho_output *output, bool widths);
 void mho_poles_row(mho_table *table, const char *molecule, double fermi_ev,
-                   const mho_pole *pole);
+                   const mho_pole *pole, bool widths);
+
+/* Which of pole[sites], ascending, belong to HOMO and LUMO: the k-th to the k-th
+ * level, or where no contact sees that one, the next that one sees. */
+void mho_frontier_note(mho_output *output, const char *molecule, const mho_junction *junction,
+                       const mho_pole *pole);
 
 mho_table *mho_nodes_table(mho_output *output);
 void mho_nodes_row(mho_table *table, const char *molecule, double fermi_ev,
                    const mho_node *node);
+
+/* T of a view of the inside, and where. */
+void mho_inside_note(mho_output *output, const char *molecule, double relative_energy_ev,
+                     const mho_inside *inside);
 
 /* Currents relative to T, each from where it comes to where it goes, without a
  * value where nothing flows.  What each orbital adds to T. */
@@ -53,8 +66,20 @@ mho_table *mho_orbitals_table(mho_output *output);
 void mho_orbitals_rows(mho_table *table, const char *molecule, double fermi_ev,
                        const mho_inside *inside);
 
+/* Which levels are HOMO and LUMO. */
+void mho_orbitals_note(mho_output *output, const char *molecule, const mho_junction *junction);
+
+/* Eigenchannels; with `parts` a row for each site of the contacts. */
+mho_table *mho_channels_table(mho_output *output, bool parts);
+void mho_channels_rows(mho_table *table, const mho_molecule *molecule, const mho_inside *inside,
+                       bool parts);
+void mho_channels_note(mho_output *output, const mho_molecule *molecule, const mho_inside *inside);
+
 mho_table *mho_compare_table(mho_output *output);
 void mho_compare_row(mho_table *table, const char *molecule, const mho_comparison *comparison);
+
+/* `coupling 0.3 eV`, `chain of hopping -5 eV, joint -1.1 eV, band -10 to 10 eV`. */
+void mho_write_electrode(const mho_contact *contact, int digits, mho_buffer *buffer);
 
 /* The result in one sentence. */
 void mho_verdict_note(mho_output *output, const char *molecule, const mho_conductance *g,

@@ -128,7 +128,9 @@ mho_status mho_screen_measure(mho_screen_workspace *workspace, const mho_molecul
   if (!settings) settings = &defaults;
   mho_junction junction;
   mho_plan *plan = NULL;
-  mho_status status = mho_junction_build(molecule, &junction, error);
+  mho_status status = mho_molecule_require_wide_band(molecule, "a screening", error);
+  if (status != MHO_OK) return status;
+  status = mho_junction_build(molecule, &junction, error);
   if (status == MHO_OK) status = mho_junction_require_contacts(&junction, molecule, error);
   if (status == MHO_OK) status = mho_plan_create(&junction, &plan, error);
   if (status == MHO_OK) status = measure_structure(molecule, &junction, out, error);

@@ -14,6 +14,9 @@ static const double offset[] = {0,   0.05, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.65,
                                 40,  80,   160, 320,  640, 1280};
 enum { OFFSETS = sizeof offset / sizeof *offset };
 
+/* T rises as the root of the distance from the edge of a band. */
+#define EDGE_WIDTH_EV 0.01
+
 /* Molecules above this many sites are plotted without their nodes, or without
  * those that are hard to tell apart, which would take longer than the plot. */
 enum { NODE_SITES = MHO_NODES_STATES_MAX, PATIENT_SITES = 60 };
@@ -50,18 +53,21 @@ mho_status mho_feature_grid(const mho_feature *feature, size_t features, double 
   return MHO_OK;
 }
 
-mho_status mho_pole_features(const mho_plan *plan, size_t room, mho_feature **feature,
-                             mho_error *error)
+mho_status mho_pole_features(const mho_plan *plan, double low_ev, double high_ev, size_t room,
+                             mho_feature **feature, size_t *count, mho_error *error)
 {
-  size_t n = (size_t)plan->sites;
-  mho_pole *pole = malloc(n * sizeof *pole);
-  *feature = malloc((n + room) * sizeof **feature);
-  mho_status status = MHO_OK;
-  if (!pole || !*feature)
+  enum { EDGES = 2 };
+  mho_pole *pole;
+  double edge[EDGES];
+  mho_status status = mho_plan_resonances(plan, low_ev, high_ev, &pole, count, error);
+  *feature = malloc((*count + EDGES + room) * sizeof **feature);
+  if (status == MHO_OK && !*feature)
     status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  if (status == MHO_OK) status = mho_poles(plan, pole, error);
-  for (size_t k = 0; status == MHO_OK && k < n; k++)
+  for (size_t k = 0; status == MHO_OK && k < *count; k++)
     (*feature)[k] = (mho_feature){pole[k].energy_ev, pole[k].width_ev};
+  mho_plan_band(plan, &edge[0], &edge[1]);
+  for (int k = 0; status == MHO_OK && edge[0] < edge[1] && k < EDGES; k++)
+    if (isfinite(edge[k])) (*feature)[(*count)++] = (mho_feature){edge[k], EDGE_WIDTH_EV};
   free(pole);
   return status;
 }
@@ -85,16 +91,18 @@ mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev, 
                     "the lower energy must be below the upper one");
   mho_nodes nodes = {0};
   mho_feature *feature = NULL;
+  size_t features = 0;
   mho_status status = MHO_OK;
   if (plan->sites <= NODE_SITES) {
     status = mho_nodes_search(plan, plan->sites <= PATIENT_SITES, &nodes, error);
     if (status == MHO_ERR_NOT_CONVERGED) status = MHO_OK; /* a plot can do without */
   }
-  if (status == MHO_OK) status = mho_pole_features(plan, nodes.count, &feature, error);
+  if (status == MHO_OK)
+    status = mho_pole_features(plan, low_ev, high_ev, nodes.count, &feature, &features, error);
   if (status == MHO_OK) {
-    add_nodes(&nodes, (high_ev - low_ev) / (even - 1), feature + plan->sites);
-    status = mho_feature_grid(feature, (size_t)plan->sites + nodes.count, low_ev, high_ev, even,
-                              energy_ev, count, error);
+    add_nodes(&nodes, (high_ev - low_ev) / (even - 1), feature + features);
+    status = mho_feature_grid(feature, features + nodes.count, low_ev, high_ev, even, energy_ev,
+                              count, error);
   }
   mho_nodes_clear(&nodes);
   free(feature);

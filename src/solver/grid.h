@@ -14,9 +14,11 @@ typedef struct {
   double energy_ev, width_ev;
 } mho_feature;
 
-/* The poles, with room for more behind them; the caller frees *feature. */
-MHO_MUST_USE mho_status mho_pole_features(const mho_plan *plan, size_t room,
-                                          mho_feature **feature, mho_error *error);
+/* The poles (those within [low, high] are enough) and the edges of a band, with
+ * room for more behind them: *count of them.  The caller frees *feature. */
+MHO_MUST_USE mho_status mho_pole_features(const mho_plan *plan, double low_ev, double high_ev,
+                                          size_t room, mho_feature **feature, size_t *count,
+                                          mho_error *error);
 
 /* `even` points from low to high and more around every feature. */
 MHO_MUST_USE mho_status mho_feature_grid(const mho_feature *feature, size_t features,

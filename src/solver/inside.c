@@ -9,6 +9,9 @@
 
 #define LEAST_FLOWING 1e-20
 
+/* Singular values below this part of the largest are rounding. */
+#define SINGULAR_ROUNDING (32 * DBL_EPSILON)
+
 typedef struct {
   const mho_junction *junction;
   const mho_plan *plan;
@@ -54,6 +57,14 @@ static mho_status solve(view *v, double energy_ev, mho_inside *result, mho_error
   return status;
 }
 
+/* An amplitude on a contact below this is rounding of a state that it does not see. */
+#define AMPLITUDE_ROUNDING 1e-13
+
+static double seen(double amplitude)
+{
+  return fabs(amplitude) > AMPLITUDE_ROUNDING ? amplitude : 0;
+}
+
 /* Orbital k's part of tau, and its shares of T. */
 static void find_orbitals(const view *v, mho_inside *result)
 {
@@ -70,7 +81,7 @@ static void find_orbitals(const view *v, mho_inside *result)
           in_a += orbital[i] * v->y[a * n + i];
           in_b += orbital[i] * v->y[b * n + i];
         }
-        double complex part = 0.5 * (on_contact[b] * in_a + on_contact[a] * in_b);
+        double complex part = 0.5 * (seen(on_contact[b]) * in_a + seen(on_contact[a]) * in_b);
         double complex tau = v->tau[a * (size_t)plan->right + b - (size_t)plan->left];
         double weight = plan->coupling_ev[a] * plan->coupling_ev[b];
         double alone = weight * creal(part * conj(part));
@@ -80,33 +91,30 @@ static void find_orbitals(const view *v, mho_inside *result)
   }
 }
 
-static int descending(const void *a, const void *b)
-{
-  double x = *(const double *)a, y = *(const double *)b;
-  return (x < y) - (x > y);
-}
-
-/* Eigenvalues of t^+ t, or of t t^+ where that is smaller. */
+/* t_ba = sqrt(Gamma_a Gamma_b) tau_ba by singular values: t^+ t itself would lose the
+ * small ones to rounding of the largest. */
 static mho_status find_channels(const view *v, mho_inside *result, mho_error *error)
 {
   const mho_plan *plan = v->plan;
   size_t l = (size_t)plan->left, r = (size_t)plan->right, n = result->eigenchannels;
-  double complex *product = calloc(n * n + n, sizeof *product), *value = product + n * n;
-  if (!product) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  for (size_t p = 0; p < n; p++)
-    for (size_t q = 0; q < n; q++)
-      for (size_t k = 0; k < (l <= r ? r : l); k++) {
-        size_t first = l <= r ? p * r + k : k * r + p, second = l <= r ? q * r + k : k * r + q;
-        size_t a = l <= r ? p : k, b = l <= r ? k : p, c = l <= r ? q : k, d = l <= r ? k : q;
-        product[p * n + q] += sqrt(plan->coupling_ev[a] * plan->coupling_ev[l + b]) *
-                              sqrt(plan->coupling_ev[c] * plan->coupling_ev[l + d]) *
-                              v->tau[first] * conj(v->tau[second]);
-      }
-  mho_status status = mho_eigenvalues_complex((int)n, product, value, error);
-  for (size_t k = 0; status == MHO_OK && k < n; k++)
-    result->eigenchannel[k] = fmin(1.0, fmax(0.0, creal(value[k])));
-  if (status == MHO_OK) qsort(result->eigenchannel, n, sizeof(double), descending);
-  free(product);
+  double complex *t = malloc((l * r + n * (l + r)) * sizeof *t);
+  if (!t) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  double complex *left = t + l * r, *right = left + n * l;
+  double *singular = result->eigenchannel;
+  for (size_t a = 0; a < l; a++)
+    for (size_t b = 0; b < r; b++)
+      t[b * l + a] = sqrt(plan->coupling_ev[a]) * sqrt(plan->coupling_ev[l + b]) * v->tau[a * r + b];
+  mho_status status = mho_singular_complex((int)l, (int)r, t, singular, left, right, error);
+  double least = SINGULAR_ROUNDING * singular[0];
+  for (size_t k = 0; status == MHO_OK && k < n; k++) {
+    double value = singular[k] > least ? singular[k] : 0;
+    result->eigenchannel[k] = fmin(1.0, value * value);
+    for (size_t a = 0; a < l; a++)
+      result->left_part[k * l + a] = creal(left[k * l + a] * conj(left[k * l + a]));
+    for (size_t b = 0; b < r; b++)
+      result->right_part[k * r + b] = creal(right[b * n + k] * conj(right[b * n + k]));
+  }
+  free(t);
   return status;
 }
 
@@ -116,7 +124,10 @@ static mho_status allocate(const mho_plan *plan, mho_inside *result, mho_error *
   result->bond = malloc((plan->entries + 1) * sizeof *result->bond);
   result->orbital = malloc((size_t)plan->sites * sizeof *result->orbital);
   result->eigenchannel = calloc(result->eigenchannels, sizeof(double));
-  if (!result->bond || !result->orbital || !result->eigenchannel)
+  result->left_part = calloc(result->eigenchannels * (size_t)plan->left, sizeof(double));
+  result->right_part = calloc(result->eigenchannels * (size_t)plan->right, sizeof(double));
+  if (!result->bond || !result->orbital || !result->eigenchannel || !result->left_part ||
+      !result->right_part)
     return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   return MHO_OK;
 }
@@ -130,19 +141,13 @@ static bool is_finite(const mho_inside *result)
   return isfinite(sum);
 }
 
-mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan,
-                              double energy_ev, mho_inside *result, mho_error *error)
+/* plan: of wide bands. */
+static mho_status compute(const mho_junction *junction, const mho_plan *plan, double energy_ev,
+                          mho_inside *result, mho_error *error)
 {
-  *result = (mho_inside){0};
-  if (junction->sites != plan->sites || !plan->level_ev)
-    return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
-                    "the plan was not made of this junction");
-  mho_status status = mho_plan_require_wide_band(plan, "inside views", error);
-  if (status != MHO_OK) return status;
   view v = {junction, plan, NULL, NULL};
   mho_point point;
-  status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
-  if (status == MHO_OK) status = allocate(plan, result, error);
+  mho_status status = mho_transmission_sweep(plan, 1, &energy_ev, &point, error);
   if (status == MHO_OK) status = solve(&v, energy_ev, result, error);
   if (status == MHO_OK) {
     result->transmission = point.transmission;
@@ -158,10 +163,50 @@ mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan
   return status;
 }
 
+/* Outside the band of an electrode nothing flows. */
+static void fill_closed(const mho_plan *plan, mho_inside *result)
+{
+  result->outside_band = true;
+  for (size_t e = 0; e < plan->entries; e++)
+    if (plan->entry[e].i != plan->entry[e].j)
+      result->bond[result->bonds++] = (mho_bond_current){plan->entry[e].i, plan->entry[e].j, 0};
+  for (int k = 0; k < plan->sites; k++)
+    result->orbital[result->orbitals++] = (mho_orbital_share){.level_ev = plan->level_ev[k]};
+}
+
+/* Every view is of one energy, and so of one Sigma. */
+static mho_status compute_frozen(const mho_junction *junction, const mho_plan *plan,
+                                 double energy_ev, mho_inside *result, mho_error *error)
+{
+  mho_frozen frozen;
+  mho_status status = mho_frozen_create(plan, &frozen);
+  if (status != MHO_OK) mho_fail(error, status, "solver", NULL, "out of memory");
+  else if (mho_frozen_set(plan, energy_ev, &frozen))
+    status = compute(junction, &frozen.plan, energy_ev, result, error);
+  else fill_closed(plan, result);
+  mho_frozen_clear(&frozen);
+  return status;
+}
+
+mho_status mho_inside_compute(const mho_junction *junction, const mho_plan *plan,
+                              double energy_ev, mho_inside *result, mho_error *error)
+{
+  *result = (mho_inside){0};
+  if (junction->sites != plan->sites || !plan->level_ev)
+    return mho_fail(error, MHO_ERR_SIZE, "solver", "junction",
+                    "the plan was not made of this junction");
+  mho_status status = allocate(plan, result, error);
+  if (status != MHO_OK) return status;
+  return (mho_plan_has_chain(plan) ? compute_frozen : compute)(junction, plan, energy_ev, result,
+                                                               error);
+}
+
 void mho_inside_clear(mho_inside *result)
 {
   free(result->bond);
   free(result->orbital);
   free(result->eigenchannel);
+  free(result->left_part);
+  free(result->right_part);
   *result = (mho_inside){0};
 }

@@ -65,15 +65,26 @@ static mho_status search(const mho_plan *plan, const double *grid, const mho_poi
 
 mho_status mho_minima_find(const mho_plan *plan, mho_nodes *result, mho_error *error)
 {
-  size_t n = (size_t)plan->sites, count = 0;
-  double *grid = NULL;
+  size_t features, count = 0;
+  double *grid = NULL, band[2];
   mho_point *point = NULL;
   mho_feature *feature;
-  mho_status status = mho_pole_features(plan, 0, &feature, error);
-  if (status == MHO_OK)
-    status = mho_feature_grid(feature, n, feature[0].energy_ev - MARGIN_EV,
-                              feature[n - 1].energy_ev + MARGIN_EV, EVEN_POINTS, &grid, &count,
-                              error);
+  mho_plan_band(plan, &band[0], &band[1]);
+  mho_status status = mho_pole_features(plan, -INFINITY, INFINITY, 0, &feature, &features, error);
+  if (status == MHO_OK && features == 0) { /* no energy is in both bands */
+    free(feature);
+    result->everywhere = true;
+    return MHO_OK;
+  }
+  if (status == MHO_OK) {
+    double low = INFINITY, high = -INFINITY;
+    for (size_t k = 0; k < features; k++) {
+      low = fmin(low, feature[k].energy_ev - MARGIN_EV);
+      high = fmax(high, feature[k].energy_ev + MARGIN_EV);
+    }
+    status = mho_feature_grid(feature, features, fmax(low, band[0]), fmin(high, band[1]),
+                              EVEN_POINTS, &grid, &count, error);
+  }
   if (status == MHO_OK) {
     point = malloc(count * sizeof *point);
     result->node = malloc(count * sizeof *result->node);

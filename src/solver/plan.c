@@ -349,25 +349,36 @@ int mho_plan_channels(const mho_plan *plan)
   return plan->left < plan->right ? plan->left : plan->right;
 }
 
+static const char *describe_program(const mho_plan *plan, char *buffer, size_t size)
+{
+  if (plan->program)
+    snprintf(buffer, size, "compiled sparse elimination of %zu of %d sites", plan->program->steps,
+             plan->sites);
+  else
+    snprintf(buffer, size, "no compiled elimination, as %s",
+             plan->sites < PROGRAM_SITES_MIN ? "so few sites do not need it"
+             : plan->repeat                  ? "equal units are quicker"
+                                             : "it would fill the matrix");
+  return buffer;
+}
+
 const char *mho_plan_describe(const mho_plan *plan, char *buffer, size_t size)
 {
-  char compiled[160] = "no compiled elimination, which would fill in";
-  if (plan->program)
-    snprintf(compiled, sizeof compiled,
-             "compiled elimination of %zu sites with %d numbers alive at once",
-             plan->program->steps, plan->program->slots);
-  char band[160];
-  if (plan->band)
-    snprintf(band, sizeof band, "pivoting within a band of %zu, of %d sites", plan->band,
+  char levels[120] = "no sum over levels, as the molecule was not diagonalised";
+  char program[120], repeat[80] = "", band[80] = "pivoted elimination of the full matrix";
+  if (plan->level_ev)
+    snprintf(levels, sizeof levels, "sum over %d levels", plan->sites);
+  if (plan->level_ev && plan->program && plan->sites > SPECTRUM_SITES_MAX)
+    snprintf(levels, sizeof levels, "no sum over levels, as few energies of %d would be exact enough",
              plan->sites);
-  else snprintf(band, sizeof band, "full pivoting, as the matrix is small or has no narrow band");
-  char repeat[80] = "";
   if (plan->repeat)
-    snprintf(repeat, sizeof repeat, "doubling of %d equal units of %d sites; ",
-             plan->repeat->units, plan->repeat->unit);
-  snprintf(buffer, size, "%s%s; %s; %s", repeat,
-           plan->level_ev ? "sum over levels, as the molecule is diagonalised"
-                          : "no sum over levels, as the molecule is not diagonalised",
-           compiled, band);
+    snprintf(repeat, sizeof repeat, "; doubling of %d equal units of %d sites", plan->repeat->units,
+             plan->repeat->unit);
+  if (plan->band)
+    snprintf(band, sizeof band, "pivoted elimination within a band of %zu of %d sites", plan->band,
+             plan->sites);
+  snprintf(buffer, size, "%s; %s%s; %s%s", levels, describe_program(plan, program, sizeof program),
+           repeat, band,
+           mho_plan_has_chain(plan) ? "; Gamma and shift of the chains anew at every energy" : "");
   return buffer;
 }

@@ -66,10 +66,32 @@ typedef struct {
   double kappa;
 } mho_estimate;
 
-/* Sigma of every channel at an energy into coupling_ev and shift_ev, both
- * [channels]; false outside the band of a chain.  electrode.c. */
-bool mho_plan_electrodes(const mho_plan *plan, double energy_ev, double *coupling_ev,
-                         double *shift_ev);
+/* Is an electrode a chain, so that Sigma depends on the energy? */
+bool mho_plan_has_chain(const mho_plan *plan);
+
+/* Where both electrodes have states: -INFINITY to INFINITY for wide bands, from
+ * low to high for chains, empty where low >= high; electrode.c. */
+void mho_plan_band(const mho_plan *plan, double *low_ev, double *high_ev);
+
+/* A plan of wide bands that has the Sigma of chains at one energy.  It borrows all
+ * else of its plan, and its own struct must not move between set and use. */
+typedef struct {
+  mho_plan plan, contacts;
+  double *sigma;
+} mho_frozen;
+
+MHO_MUST_USE mho_status mho_frozen_create(const mho_plan *plan, mho_frozen *frozen);
+void mho_frozen_clear(mho_frozen *frozen);
+
+/* False outside the band of a chain: nothing is transmitted there. */
+bool mho_frozen_set(const mho_plan *plan, double energy_ev, mho_frozen *frozen);
+
+/* Poles for whoever needs to know where T changes: mho_poles, or with chains those
+ * within the band and half an eV of [low, high], near enough to draw and integrate
+ * by (some twice, a hundredth of their width apart); resonances.c.  The
+ * caller frees *pole, *count of them by ascending energy, also after a failure. */
+MHO_MUST_USE mho_status mho_plan_resonances(const mho_plan *plan, double low_ev, double high_ev,
+                                            mho_pole **pole, size_t *count, mho_error *error);
 
 /* MHO_ERR_RANGE where Sigma depends on the energy and `what` needs it not to. */
 MHO_MUST_USE mho_status mho_plan_require_wide_band(const mho_plan *plan, const char *what,

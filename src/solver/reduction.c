@@ -128,8 +128,7 @@ mho_status mho_reduction_create(const mho_plan *plan, mho_reduction **reduction)
 {
   *reduction = NULL;
   size_t n = (size_t)plan->sites;
-  if (!plan->connected || plan->sites > SITES_MAX || plan->has_chain[MHO_LEFT] ||
-      plan->has_chain[MHO_RIGHT])
+  if (!plan->connected || plan->sites > SITES_MAX || mho_plan_has_chain(plan))
     return MHO_OK;
   orderer o = {.r = calloc(1, sizeof *o.r),
                .slot = malloc(n * n * sizeof(int)),

@@ -207,8 +207,7 @@ static mho_status build(const pattern *p, const run *r, mho_repeat **repeat)
 mho_status mho_repeat_create(const mho_plan *plan, mho_repeat **repeat)
 {
   *repeat = NULL;
-  if (plan->sites < 2 * UNITS_MIN || !plan->connected || plan->has_chain[MHO_LEFT] ||
-      plan->has_chain[MHO_RIGHT])
+  if (plan->sites < 2 * UNITS_MIN || !plan->connected || mho_plan_has_chain(plan))
     return MHO_OK;
   pattern p;
   mho_status status = find_pattern(plan, &p) ? MHO_OK : MHO_ERR_MEMORY;

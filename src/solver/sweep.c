@@ -294,32 +294,21 @@ static mho_status sweep_wide_band(const mho_plan *plan, workspace *work, size_t 
 static mho_status sweep_chains(const mho_plan *plan, workspace *work, size_t count,
                                const double *energy_ev, mho_point *point)
 {
-  size_t m = (size_t)plan->channels;
-  double *sigma = malloc(2 * m * sizeof *sigma);
-  if (!sigma) return MHO_ERR_MEMORY;
-  mho_plan at_energy = *plan, contacts;
-  at_energy.coupling_ev = sigma;
-  at_energy.shift_ev = sigma + m;
-  if (plan->contacts) {
-    contacts = *plan->contacts;
-    contacts.coupling_ev = sigma;
-    contacts.shift_ev = sigma + m;
-    at_energy.contacts = &contacts;
-  }
-  mho_status status = MHO_OK;
+  mho_frozen frozen;
+  mho_status status = mho_frozen_create(plan, &frozen);
   for (size_t i = 0; status == MHO_OK && i < count; i++)
-    if (mho_plan_electrodes(plan, energy_ev[i], sigma, sigma + m))
-      status = sweep_wide_band(&at_energy, work, 1, energy_ev + i, point + i);
-    else point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_PATH};
-  free(sigma);
+    if (mho_frozen_set(plan, energy_ev[i], &frozen))
+      status = sweep_wide_band(&frozen.plan, work, 1, energy_ev + i, point + i);
+    else point[i] = (mho_point){.node = true, .method = MHO_METHOD_NO_BAND};
+  mho_frozen_clear(&frozen);
   return status;
 }
 
 static mho_status sweep(const mho_plan *plan, workspace *work, size_t count,
                         const double *energy_ev, mho_point *point)
 {
-  bool chains = plan->has_chain[MHO_LEFT] || plan->has_chain[MHO_RIGHT];
-  return (chains ? sweep_chains : sweep_wide_band)(plan, work, count, energy_ev, point);
+  return (mho_plan_has_chain(plan) ? sweep_chains : sweep_wide_band)(plan, work, count, energy_ev,
+                                                                     point);
 }
 
 mho_status mho_transmission_sweep(const mho_plan *plan, size_t count,
@@ -340,8 +329,9 @@ const char *mho_method_name(mho_method method)
 {
   static const char *const name[MHO_METHOD_COUNT] = {
       [MHO_METHOD_NO_PATH] = "no path joins the contacts",
+      [MHO_METHOD_NO_BAND] = "outside the band of an electrode",
       [MHO_METHOD_SPECTRUM] = "sum over levels",
-      [MHO_METHOD_SPARSE] = "compiled sparse elimination in double-double",
+      [MHO_METHOD_SPARSE] = "compiled sparse elimination in 106 bits",
       [MHO_METHOD_REPEAT] = "doubling of equal units in 113 bits",
       [MHO_METHOD_ELIMINATION] = "pivoted elimination",
       [MHO_METHOD_EXTENDED] = "pivoted elimination in 113 bits"};

@@ -219,8 +219,9 @@ static mho_status draw_currents(const work *w, const mho_inside *inside, mho_err
                           error);
     return status == MHO_OK ? mho_drawing_write_currents(w->molecule, inside, svg, error) : status;
   }
-  mho_output_note(&words, "%s: T has a node at the Fermi level, so no current is told",
-                  w->molecule->name);
+  mho_output_note(&words, "%s: %s, so no current is told", w->molecule->name,
+                  inside->outside_band ? "the Fermi level lies outside the band of an electrode"
+                                       : "T has a node at the Fermi level");
   status = take_remarks(&words, "currents", w->levers, error);
   mho_output_clear(&words);
   return status;

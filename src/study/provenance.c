@@ -39,10 +39,14 @@ static json_t *molecule_parameters(const mho_molecule *molecule)
                       mho_json_text(mho_parameters_source(molecule->parameters)));
   object = mho_json_with(object, "beta_eV", json_real(molecule->beta_ev));
   object = mho_json_with(object, "temperature_K", json_real(molecule->temperature_k));
-  object = mho_json_with(object, "coupling_left_eV",
-                      json_real(molecule->contact[MHO_LEFT].coupling_ev));
-  object = mho_json_with(object, "coupling_right_eV",
-                      json_real(molecule->contact[MHO_RIGHT].coupling_ev));
+  for (int side = 0; side < 2; side++) {
+    const mho_contact *contact = &molecule->contact[side];
+    object = mho_json_with(object, side ? "coupling_right_eV" : "coupling_left_eV",
+                           contact->has_chain ? json_null() : json_real(contact->coupling_ev));
+    if (contact->has_chain)
+      object = mho_json_with(object, side ? "chain_right" : "chain_left",
+                             mho_json_chain(&contact->chain));
+  }
   object = mho_json_with(object, "fermi",
                       mho_json_text(mho_fermi_write(&molecule->fermi, fermi, sizeof fermi)));
   return object;

@@ -132,6 +132,17 @@ static mho_status compute_molecule(run *r, int index, mho_error *error)
   return status;
 }
 
+/* Some questions know no chains as electrodes. */
+static mho_status require_wide_band(const mho_study *s, int index, mho_error *error)
+{
+  bool pairs = s->asks_interference && s->asks_interference[index];
+  if (!s->sensitivity && !pairs) return MHO_OK;
+  return mho_molecule_require_wide_band(&s->molecule[index],
+                                        pairs ? "the question 'interference'"
+                                              : "'sensitivity' of the question 'conductance'",
+                                        error);
+}
+
 /* Every junction is built before any work, so that all mistakes come at once. */
 static mho_status build_junctions(run *r, mho_error *error)
 {
@@ -141,6 +152,7 @@ static mho_status build_junctions(run *r, mho_error *error)
     mho_status status = mho_junction_build(molecule, &r->outcome[i].junction, error);
     if (status == MHO_OK)
       status = mho_junction_require_contacts(&r->outcome[i].junction, molecule, error);
+    if (status == MHO_OK) status = require_wide_band(r->study, i, error);
     if (result == MHO_OK) result = status;
   }
   return result;
@@ -161,7 +173,13 @@ static mho_status read_traces(run *r, mho_error *error)
   return MHO_OK;
 }
 
-/* What the parameters' own errors make of each conductance. */
+static bool has_chain(const mho_molecule *m)
+{
+  return m->contact[MHO_LEFT].has_chain || m->contact[MHO_RIGHT].has_chain;
+}
+
+/* What the parameters' own errors make of each conductance; with chains as
+ * electrodes that is not known. */
 static mho_status find_errors(run *r, mho_error *error)
 {
   mho_sensitivity_options options = mho_sensitivity_defaults();
@@ -170,7 +188,10 @@ static mho_status find_errors(run *r, mho_error *error)
     const mho_molecule *molecule = &r->study->molecule[i];
     mho_sensitivity s = {0};
     status = step(r, molecule->name, error);
-    if (status == MHO_OK)
+    if (has_chain(molecule))
+      mho_output_note(&r->output, "%s: no error of the parameters is told, which needs electrodes of "
+                                  "a wide band", molecule->name);
+    else if (status == MHO_OK)
       status = mho_sensitivity_compute(molecule, &r->outcome[i].junction, &options, &s, error);
     r->error_decades[i] = s.has_error ? s.error_decades : -1;
     mho_sensitivity_clear(&s);

@@ -13,6 +13,8 @@ ROOT = os.environ["MHO_SOURCE"]
 PRELOAD = sys.argv[1]
 STRIDE_LIMIT = 80  # at most that many runs a command
 MOLECULE = os.path.join(ROOT, "molecules/benzene-1-3-diamine.yaml")
+CHAIN = os.path.join(ROOT, "molecules/benzene-para-chains.yaml")
+ACID = os.path.join(ROOT, "molecules/terephthalic-acid.yaml")
 GOLDEN = os.path.join(ROOT, "tests/golden/files")
 PULLS = os.path.join(GOLDEN, "pulls.csv")
 STUDY = os.path.join(GOLDEN, "levers-small.yaml")
@@ -29,6 +31,8 @@ def main():
     for arguments in (["check", "--json", MOLECULE], ["conductance", MOLECULE],
                       ["conductance", "--json", MOLECULE],
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
+                      ["conductance", "--verbose", CHAIN],
+                      ["transmission", "--channels", "--parts", ACID],
                       ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
                       ["blink", "--levels=2", "blink.txt"],
                       ["screen", "list.smi", "--store", "r.db", "--threads=1", "--csv"],

@@ -14,6 +14,7 @@
 
 #include <complex.h>
 
+#include <mho/inside.h>
 #include <mho/nodes.h>
 
 enum { SITES_MAX = 10 };
@@ -86,7 +87,8 @@ static void a_perfect_chain_transmits_everything(void **state)
   mho_plan *plan = chain_plan(6, h, 0, 5, same);
   for (double energy = -5.35; energy < 5.4; energy += 0.17)
     assert_close(at(plan, energy).transmission, 1.0, 1e-12);
-  assert_true(at(plan, 5.41).node && at(plan, -7).node); /* outside the band */
+  assert_int_equal(at(plan, 5.41).method, MHO_METHOD_NO_BAND);
+  assert_true(at(plan, 5.41).node && at(plan, -7).node);
   mho_pole pole[6];
   assert_int_equal(mho_poles(plan, pole, NULL), MHO_ERR_RANGE);
   mho_nodes nodes; /* do not depend on electrodes */
@@ -115,6 +117,45 @@ static void source_and_sink_agree(void **state)
   }
 }
 
+/* Views at one energy are those of the Gamma and shift there: against a wide band
+ * that has them.  The junction owns its chain. */
+static void views_are_those_of_the_wide_band_at_that_energy(void **state)
+{
+  (void)state;
+  double h[36] = {0}, left[6] = {1}, right[6] = {0, 0, 0, 1}, energy = 0.9;
+  for (int i = 0; i < 6; i++) h[i * 6 + (i + 1) % 6] = h[(i + 1) % 6 * 6 + i] = -2.7;
+  mho_chain_electrode chain = {0.2, -1.5, 0.8};
+  double x = (energy - chain.center_ev) / 2, strength = 0.8 * 0.8 / (1.5 * 1.5);
+  double gamma = 2 * strength * sqrt(1.5 * 1.5 - x * x), shift = strength * x, none = 0, half = 0.5;
+  mho_lead wide[2] = {{1, &gamma, &shift, left, NULL}, {1, &half, &none, right, NULL}};
+  mho_lead narrow[2] = {{1, &none, &none, left, &chain}, wide[1]};
+  mho_inside view[2], outside;
+  for (int k = 0; k < 2; k++) {
+    mho_lead *lead = k ? narrow : wide;
+    mho_junction junction;
+    mho_plan *plan;
+    assert_int_equal(mho_junction_from_hamiltonian(6, h, 6, 0, &lead[0], &lead[1], &junction, NULL),
+                     MHO_OK);
+    if (k) chain.joint_ev = 99;
+    assert_int_equal(mho_plan_create(&junction, &plan, NULL), MHO_OK);
+    assert_int_equal(mho_inside_compute(&junction, plan, energy, &view[k], NULL), MHO_OK);
+    if (k) assert_int_equal(mho_inside_compute(&junction, plan, 3.3, &outside, NULL), MHO_OK);
+    mho_plan_free(plan);
+    mho_junction_clear(&junction);
+  }
+  assert_false(view[1].outside_band);
+  assert_close(view[1].transmission, view[0].transmission, 1e-12);
+  assert_close(view[1].eigenchannel[0], view[0].transmission, 1e-12);
+  for (size_t i = 0; i < view[0].bonds; i++)
+    assert_near(view[1].bond[i].flow, view[0].bond[i].flow, 1e-13);
+  for (size_t k = 0; k < view[0].orbitals; k++)
+    assert_near(view[1].orbital[k].alone, view[0].orbital[k].alone, 1e-13);
+  assert_true(outside.outside_band && !outside.flows && outside.transmission == 0);
+  assert_true(outside.bonds == 6 && outside.bond[0].flow == 0 && outside.orbitals == 6);
+  for (int k = 0; k < 2; k++) mho_inside_clear(&view[k]);
+  mho_inside_clear(&outside);
+}
+
 static void a_chain_without_hopping_is_refused(void **state)
 {
   (void)state;
@@ -134,6 +175,7 @@ int main(void)
   const struct CMUnitTest tests[] = {
       cmocka_unit_test(a_perfect_chain_transmits_everything),
       cmocka_unit_test(source_and_sink_agree),
+      cmocka_unit_test(views_are_those_of_the_wide_band_at_that_energy),
       cmocka_unit_test(a_chain_without_hopping_is_refused),
   };
   return cmocka_run_group_tests(tests, NULL, NULL);
