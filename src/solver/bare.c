@@ -132,12 +132,17 @@ bool mho_bare_evaluate(mho_bare *b, double complex z, mho_bare_green *green)
   mho_band_solve((int)n, (int)b->band, b->factor, b->pivot, 2, dx);
   double size = 0, change = 0, doubt = 0, rounding = 0;
   double y_size = 0, y_change = 0, product = 0, x_doubt = 0, y_doubt = 0;
-  double complex value = 0, more = 0, slope = 0;
+  double complex value = 0, more = 0, slope = 0, own[2] = {0}, own_slope[2] = {0};
   for (size_t k = 0; k < n; k++) {
     double v = right[plan->order[k]];
+    double complex better_x = x[k] + dx[k], better_y = y[k] + dy[k];
     value += v * x[k];
     more += v * dx[k];
-    slope -= (x[k] + dx[k]) * (y[k] + dy[k]);
+    slope -= better_x * better_y;
+    own[0] += left[plan->order[k]] * better_x;
+    own[1] += v * better_y;
+    own_slope[0] -= better_x * better_x;
+    own_slope[1] -= better_y * better_y;
     if (several) rounding += fabs(v) * cabs(x[k]);
     doubt += fabs(v) * cabs(dx[k]);
     size = fmax(size, cabs(x[k]));
@@ -151,6 +156,8 @@ bool mho_bare_evaluate(mho_bare *b, double complex z, mho_bare_green *green)
   double x_part = change / size, y_part = y_change / y_size;
   green->value = value + more;
   green->slope = slope;
+  memcpy(green->own, own, sizeof own);
+  memcpy(green->own_slope, own_slope, sizeof own_slope);
   green->noise = UNIT_ROUNDOFF * (4 * (cabs(green->value) + rounding) + doubt) +
                  4 * doubt * x_part;
   green->slope_noise = 4 * (UNIT_ROUNDOFF * product + x_doubt * x_part + y_doubt * y_part);

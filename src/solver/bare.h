@@ -14,6 +14,7 @@ typedef struct mho_bare mho_bare;
 
 typedef struct {
   double complex value, slope; /* g, g' */
+  double complex own[2], own_slope[2]; /* v_c^T (z - H)^-1 v_c and slope, each contact */
   double noise, slope_noise;   /* what they may be wrong by */
 } mho_bare_green;
 

@@ -11,6 +11,7 @@
 #include <string.h>
 
 #include "base/lapack.h"
+#include "solver/factors.h"
 #include "solver/minima.h"
 #include "solver/pencil.h"
 #include "solver/zeros.h"
@@ -261,6 +262,22 @@ static mho_status find_extended(const mho_plan *plan, mho_nodes *result, mho_err
   return status;
 }
 
+mho_status mho_nodes_of_block(const mho_plan *plan, const mho_exact_counts *counts, bool patient,
+                              mho_nodes *result, mho_error *error)
+{
+  bool sure;
+  *result = (mho_nodes){.everywhere = counts->poles == 0, .unseen = plan->sites - counts->visible};
+  if (result->everywhere) return MHO_OK;
+  result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
+  if (!result->node) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  mho_status status = mho_zeros_find(plan, counts, result, &sure, error);
+  if (status != MHO_OK || sure) return status;
+  mho_nodes_clear(result);
+  if (patient) return find_extended(plan, result, error);
+  return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
+                  "doubles do not tell the nodes apart");
+}
+
 mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result, mho_error *error)
 {
   *result = (mho_nodes){0};
@@ -273,21 +290,13 @@ mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *resul
   if (!plan->pair) return find_extended(plan, result, error);
   mho_exact_counts counts;
   mho_status status = mho_exact_count(plan, &counts);
-  result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
-  if (status != MHO_OK || !result->node)
-    return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  result->everywhere = counts.poles == 0;
-  result->unseen = plan->sites - counts.visible;
-  if (result->everywhere) return MHO_OK;
-  status = mho_zeros_find(plan, &counts, result, &sure, error);
-  if (status != MHO_OK || sure) {
+  if (status != MHO_OK) return mho_fail(error, status, "solver", NULL, "out of memory");
+  if (counts.poles > 0) status = mho_factors_find(plan, &counts, patient, result, &sure, error);
+  if (status == MHO_OK && !sure)
+    status = mho_nodes_of_block(plan, &counts, patient, result, error);
+  if (status == MHO_OK && result->count > 0)
     qsort(result->node, result->count, sizeof(mho_node), compare_nodes);
-    return status;
-  }
-  mho_nodes_clear(result);
-  if (patient) return find_extended(plan, result, error);
-  return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
-                  "doubles do not tell the nodes apart");
+  return status;
 }
 
 mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *error)

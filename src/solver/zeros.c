@@ -44,6 +44,9 @@ enum { SUM_STEPS = 40, BARE_STEPS = 60, KICKS = 4, CIRCLE_POINTS = 48 };
 #define SAME_ENERGY 1e-13
 #define TINY 1e-16
 
+/* Where a level is looked at from, times ||H||. */
+#define ASIDE 1e-9
+
 /* Largest circle, times ||H||; one around m zeros has a radius of CIRCLE_DECADES/m
  * decades, so that g on it is well above rounding; largest cluster on a circle
  * that is one zero. */
@@ -358,14 +361,34 @@ static bool make_nodes(const search *s, int number, mho_nodes *result)
   return true;
 }
 
+/* A level to the last digit, from z beside it: g_c = v_c^T (z - H)^-1 v_c is
+ * a^2/(z - eps) + r there, so that eps = z + g_c/g_c' but for r (z - eps)^2/a^2. */
+static double sharpen(const search *s, int i)
+{
+  const mho_level_group *g = &s->group[i];
+  double norm = s->plan->norm_ev, aside = ASIDE * norm, gap = norm;
+  int c = g->right > g->left;
+  for (int k = i > 0 ? i - 1 : i + 1; k <= i + 1 && k < s->groups; k += 2)
+    gap = fmin(gap, fabs(s->group[k].level_ev - g->level_ev));
+  mho_bare_green green;
+  double z = g->level_ev + aside;
+  bool good = aside * aside <= TINY * norm * gap * (c ? g->right : g->left);
+  if (!good || !mho_bare_evaluate(s->bare, z, &green)) return g->level_ev;
+  double better = z + creal(green.own[c] / green.own_slope[c]);
+  return fabs(better - g->level_ev) <= SAME_ENERGY * norm ? better : g->level_ev;
+}
+
 /* Levels that are zeros by themselves, behind those of g. */
 static void add_levels(search *s)
 {
   int count = s->free;
-  for (int i = 0; i < s->groups; i++)
-    for (int k = s->group[i].weight != 0; k < s->group[i].seen; k++)
+  for (int i = 0; i < s->groups; i++) {
+    int first = s->group[i].weight != 0;
+    if (first < s->group[i].seen) s->group[i].level_ev = sharpen(s, i);
+    for (int k = first; k < s->group[i].seen; k++)
       s->zero[count++] = (zero){.z = s->group[i].level_ev - s->group[i].faint, .level = true,
                                 .radius = 8 * UNIT_ROUNDOFF * s->plan->norm_ev};
+  }
 }
 
 static bool finish(search *s, mho_nodes *result)
