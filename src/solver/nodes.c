@@ -28,6 +28,9 @@ enum { CIRCLE_POINTS = 8, CLUSTER_POINTS = 48 };
 /* Steps below this (times the norm) that do not shrink fourfold are rounding. */
 #define STANDS ((mho_quad)1e-20)
 
+/* Zeros so near (times the norm) are one. */
+#define SAME_ENERGY ((mho_quad)1e-13)
+
 /* Radius of the circle around a node that stands alone, times the norm. */
 #define CIRCLE ((mho_quad)1e-7)
 
@@ -122,7 +125,8 @@ static void polish_block(const search *s, int block)
   for (size_t k = first; k < end; k++) set_radius(s, block, &s->zero[k]);
 }
 
-/* Zeros whose discs meet get one cluster number, that of the first. */
+/* Zeros whose discs meet, or as near as rounding makes them, get one cluster
+ * number, that of the first. */
 static void join(const search *s)
 {
   int n = s->pencil->size;
@@ -131,7 +135,9 @@ static void join(const search *s)
     for (int j = 0; j < i; j++) {
       mho_quad distance = mho_quad_size(s->zero[i].z - s->zero[j].z);
       int from = s->zero[i].cluster, to = s->zero[j].cluster;
-      if (from == to || distance > s->zero[i].radius + s->zero[j].radius) continue;
+      bool apart = distance > s->zero[i].radius + s->zero[j].radius &&
+                   distance > SAME_ENERGY * s->pencil->norm;
+      if (from == to || apart) continue;
       for (int k = 0; k < n; k++)
         if (s->zero[k].cluster == from) s->zero[k].cluster = to;
     }
