@@ -17,6 +17,11 @@
 #include <string.h>
 
 #include "base/lapack.h"
+#include "solver/quad.h"
+
+/* The fine way: steps, and the part of x below which a correction is rounding. */
+enum { FINE_STEPS = 24 };
+#define FINE 1e-31
 
 /* A correction larger than this part of x: no digit is right. */
 #define CORRECTION_MAX 1e-2
@@ -28,6 +33,7 @@ struct mho_bare {
   double complex *column; /* [4][n]: x, y, dx, dy, in that order of sites */
   double *low;            /* [2][n]: what the sums of the residual have lost */
   int *pivot;
+  mho_quad_complex *fine; /* [3][n]: x, y and a residual; NULL until it is needed */
 };
 
 mho_bare *mho_bare_create(const mho_plan *plan)
@@ -53,6 +59,7 @@ void mho_bare_free(mho_bare *b)
   free(b->factor);
   free(b->low);
   free(b->pivot);
+  free(b->fine);
   free(b);
 }
 
@@ -162,4 +169,76 @@ bool mho_bare_evaluate(mho_bare *b, double complex z, mho_bare_green *green)
                  4 * doubt * x_part;
   green->slope_noise = 4 * (UNIT_ROUNDOFF * product + x_doubt * x_part + y_doubt * y_part);
   return isfinite(size) && isfinite(green->noise) && fmax(x_part, y_part) <= CORRECTION_MAX;
+}
+
+/* r = v - (z - H) x in 113 bits. */
+static void residual_fine(const mho_bare *b, double complex z, const double *v,
+                          const mho_quad_complex *x, mho_quad_complex *r)
+{
+  const mho_plan *plan = b->plan;
+  for (size_t k = 0; k < b->n; k++) {
+    mho_quad re = creal(z), im = cimag(z), x_re = __real__ x[k], x_im = __imag__ x[k];
+    __real__ r[k] = v[plan->order[k]] - (re * x_re - im * x_im);
+    __imag__ r[k] = -(re * x_im + im * x_re);
+  }
+  for (size_t e = 0; e < plan->entries; e++) {
+    size_t i = (size_t)plan->place[plan->entry[e].i], j = (size_t)plan->place[plan->entry[e].j];
+    mho_quad h = plan->entry[e].value_ev;
+    __real__ r[i] += h * __real__ x[j];
+    __imag__ r[i] += h * __imag__ x[j];
+    if (i == j) continue;
+    __real__ r[j] += h * __real__ x[i];
+    __imag__ r[j] += h * __imag__ x[i];
+  }
+}
+
+/* Refines x until the correction dx is rounding; what is left of it, as a part of x. */
+static double solve_fine(mho_bare *b, double complex z, const double *v, mho_quad_complex *x,
+                         double complex *dx)
+{
+  mho_quad_complex *r = b->fine + 2 * b->n;
+  double part = INFINITY;
+  for (size_t k = 0; k < b->n; k++) x[k] = 0;
+  for (int step = 0; step < FINE_STEPS && part > FINE; step++) {
+    residual_fine(b, z, v, x, r);
+    for (size_t k = 0; k < b->n; k++)
+      dx[k] = CMPLX((double)__real__ r[k], (double)__imag__ r[k]);
+    mho_band_solve((int)b->n, (int)b->band, b->factor, b->pivot, 1, dx);
+    double size = 0, change = 0;
+    for (size_t k = 0; k < b->n; k++) {
+      __real__ x[k] += creal(dx[k]);
+      __imag__ x[k] += cimag(dx[k]);
+      size = fmax(size, (double)mho_quad_size(x[k]));
+      change = fmax(change, cabs(dx[k]));
+    }
+    double now = change / size;
+    if (!isfinite(now) || (step > 1 && now > part / 2)) break;
+    part = step > 0 ? now : part;
+  }
+  return part;
+}
+
+bool mho_bare_evaluate_fine(mho_bare *b, double complex z, mho_bare_green *green)
+{
+  const double *left = b->plan->vector, *right = left + b->n;
+  if (!b->fine) b->fine = malloc(3 * b->n * sizeof *b->fine);
+  assemble(b, z);
+  if (!b->fine || !mho_band_factor((int)b->n, (int)b->band, b->factor, b->pivot)) return false;
+  mho_quad_complex *x = b->fine, *y = x + b->n, value = 0, slope = 0;
+  double complex *dx = b->column, *dy = dx + b->n;
+  double x_part = solve_fine(b, z, left, x, dx), y_part = solve_fine(b, z, right, y, dy);
+  double doubt = 0, slope_doubt = 0;
+  for (size_t k = 0; k < b->n; k++) {
+    double v = right[b->plan->order[k]];
+    double x_size = (double)mho_quad_size(x[k]), y_size = (double)mho_quad_size(y[k]);
+    value += (mho_quad)v * x[k];
+    slope -= x[k] * y[k];
+    doubt += fabs(v) * (cabs(dx[k]) + FINE * x_size);
+    slope_doubt += cabs(dx[k]) * y_size + x_size * cabs(dy[k]) + FINE * x_size * y_size;
+  }
+  green->value = CMPLX((double)__real__ value, (double)__imag__ value);
+  green->slope = CMPLX((double)__real__ slope, (double)__imag__ slope);
+  green->noise = 4 * (UNIT_ROUNDOFF * cabs(green->value) + doubt);
+  green->slope_noise = 4 * (UNIT_ROUNDOFF * cabs(green->slope) + slope_doubt);
+  return fmax(x_part, y_part) <= CORRECTION_MAX && isfinite(green->noise);
 }

@@ -25,4 +25,8 @@ void mho_bare_free(mho_bare *bare);
 /* False where z - H is singular to rounding. */
 bool mho_bare_evaluate(mho_bare *bare, double complex z, mho_bare_green *green);
 
+/* The same to some 30 digits less those that its conditioning takes, in ten times
+ * the time: beside levels that no contact sees.  `own` is not filled. */
+bool mho_bare_evaluate_fine(mho_bare *bare, double complex z, mho_bare_green *green);
+
 #endif

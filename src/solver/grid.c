@@ -14,9 +14,9 @@ static const double offset[] = {0,   0.05, 0.1, 0.15, 0.2, 0.3, 0.4, 0.5, 0.65,
                                 40,  80,   160, 320,  640, 1280};
 enum { OFFSETS = sizeof offset / sizeof *offset };
 
-/* Molecules above this many sites are plotted without their nodes, or without
- * those that are hard to tell apart, which would take longer than the plot. */
-enum { NODE_SITES = MHO_NODES_STATES_MAX, PATIENT_SITES = 60 };
+/* Molecules above this many sites are plotted without the nodes that are hard to
+ * tell apart, or without minima, which would take longer than the plot. */
+enum { PATIENT_SITES = 60, MINIMA_SITES = 200 };
 
 static int compare_doubles(const void *a, const void *b)
 {
@@ -86,7 +86,8 @@ mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev, 
   mho_nodes nodes = {0};
   mho_feature *feature = NULL;
   mho_status status = MHO_OK;
-  if (plan->sites <= NODE_SITES) {
+  bool single = plan->left == 1 && plan->right == 1;
+  if (single || plan->sites <= MINIMA_SITES) {
     status = mho_nodes_search(plan, plan->sites <= PATIENT_SITES, &nodes, error);
     if (status == MHO_ERR_NOT_CONVERGED) status = MHO_OK; /* a plot can do without */
   }

@@ -271,29 +271,25 @@ static mho_status find_extended(const mho_plan *plan, mho_nodes *result, mho_err
 mho_status mho_nodes_of_block(const mho_plan *plan, const mho_exact_counts *counts, bool patient,
                               mho_nodes *result, mho_error *error)
 {
-  bool sure;
+  bool sure = false;
   *result = (mho_nodes){.everywhere = counts->poles == 0, .unseen = plan->sites - counts->visible};
   if (result->everywhere) return MHO_OK;
   result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
   if (!result->node) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  mho_status status = mho_zeros_find(plan, counts, result, &sure, error);
+  mho_status status = MHO_OK;
+  if (plan->sites <= MHO_NODES_STATES_MAX)
+    status = mho_zeros_find(plan, counts, result, &sure, error);
   if (status != MHO_OK || sure) return status;
   mho_nodes_clear(result);
-  if (patient) return find_extended(plan, result, error);
+  if (patient && plan->sites <= MHO_NODES_EXTENDED_MAX) return find_extended(plan, result, error);
   return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
                   "doubles do not tell the nodes apart");
 }
 
-mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result, mho_error *error)
+static mho_status search_levels(const mho_plan *plan, bool patient, mho_nodes *result,
+                                mho_error *error)
 {
-  *result = (mho_nodes){0};
-  bool single = plan->left == 1 && plan->right == 1, sure = false;
-  if (!plan->connected) {
-    result->everywhere = true;
-    return MHO_OK;
-  }
-  if (!single || plan->sites > MHO_NODES_STATES_MAX) return mho_minima_find(plan, result, error);
-  if (!plan->pair) return find_extended(plan, result, error);
+  bool sure = false;
   mho_exact_counts counts;
   mho_status status = mho_exact_count(plan, &counts);
   if (status != MHO_OK) return mho_fail(error, status, "solver", NULL, "out of memory");
@@ -303,6 +299,25 @@ mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *resul
   if (status == MHO_OK && result->count > 0)
     qsort(result->node, result->count, sizeof(mho_node), compare_nodes);
   return status;
+}
+
+mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result, mho_error *error)
+{
+  *result = (mho_nodes){0};
+  bool single = plan->left == 1 && plan->right == 1;
+  if (!plan->connected) {
+    result->everywhere = true;
+    return MHO_OK;
+  }
+  if (single && !plan->pair && plan->sites <= MHO_NODES_EXTENDED_MAX)
+    return find_extended(plan, result, error);
+  mho_status status = MHO_ERR_NOT_CONVERGED;
+  if (single && plan->pair) status = search_levels(plan, patient, result, error);
+  bool minima = !single || (patient && plan->sites > MHO_NODES_EXTENDED_MAX);
+  if (status != MHO_ERR_NOT_CONVERGED || !minima) return status;
+  if (error) mho_error_init(error);
+  mho_nodes_clear(result);
+  return mho_minima_find(plan, result, error);
 }
 
 mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *error)
