@@ -8,7 +8,8 @@
  *   and y, dy from v_r alike:   g' = -(y + dy)^T (x + dx).
  *
  * With x wrong by the part q = |dx|/|x|, x + dx is wrong by q^2: twice the
- * digits, where elimination keeps the zeros that structure makes.
+ * digits, where elimination keeps the zeros that structure makes.  In the fine way
+ * x is held in 113 bits and refined until it has them.
  */
 #include "solver/bare.h"
 
@@ -33,7 +34,8 @@ struct mho_bare {
   double complex *column; /* [4][n]: x, y, dx, dy, in that order of sites */
   double *low;            /* [2][n]: what the sums of the residual have lost */
   int *pivot;
-  mho_quad_complex *fine; /* [3][n]: x, y and a residual; NULL until it is needed */
+  double complex sigma[2]; /* taken from z on the site of a contact, if it has but one */
+  mho_quad_complex *fine;  /* [3][n]: x, y and a residual; NULL until it is needed */
 };
 
 mho_bare *mho_bare_create(const mho_plan *plan)
@@ -63,12 +65,20 @@ void mho_bare_free(mho_bare *b)
   free(b);
 }
 
+/* Place of a contact's first site. */
+static size_t contact_place(const mho_bare *b, int c)
+{
+  return (size_t)b->plan->place[b->plan->support[b->plan->support_start[c]]];
+}
+
 static void assemble(mho_bare *b, double complex z)
 {
   const mho_plan *plan = b->plan;
   size_t diagonal = 2 * b->band;
   memset(b->factor, 0, b->n * b->rows * sizeof *b->factor);
   for (size_t i = 0; i < b->n; i++) b->factor[i * b->rows + diagonal] = z;
+  for (int c = 0; c < 2; c++)
+    if (b->sigma[c] != 0) b->factor[contact_place(b, c) * b->rows + diagonal] -= b->sigma[c];
   for (size_t e = 0; e < plan->entries; e++) {
     size_t i = (size_t)plan->place[plan->entry[e].i], j = (size_t)plan->place[plan->entry[e].j];
     b->factor[j * b->rows + diagonal + i - j] -= plan->entry[e].value_ev;
@@ -171,16 +181,22 @@ bool mho_bare_evaluate(mho_bare *b, double complex z, mho_bare_green *green)
   return isfinite(size) && isfinite(green->noise) && fmax(x_part, y_part) <= CORRECTION_MAX;
 }
 
-/* r = v - (z - H) x in 113 bits. */
+static mho_quad_complex widen(double complex z)
+{
+  mho_quad_complex wide;
+  __real__ wide = creal(z);
+  __imag__ wide = cimag(z);
+  return wide;
+}
+
+/* r = v - (z - H - Sigma) x in 113 bits. */
 static void residual_fine(const mho_bare *b, double complex z, const double *v,
                           const mho_quad_complex *x, mho_quad_complex *r)
 {
   const mho_plan *plan = b->plan;
-  for (size_t k = 0; k < b->n; k++) {
-    mho_quad re = creal(z), im = cimag(z), x_re = __real__ x[k], x_im = __imag__ x[k];
-    __real__ r[k] = v[plan->order[k]] - (re * x_re - im * x_im);
-    __imag__ r[k] = -(re * x_im + im * x_re);
-  }
+  for (size_t k = 0; k < b->n; k++) r[k] = v[plan->order[k]] - widen(z) * x[k];
+  for (int c = 0; c < 2; c++)
+    if (b->sigma[c] != 0) r[contact_place(b, c)] += widen(b->sigma[c]) * x[contact_place(b, c)];
   for (size_t e = 0; e < plan->entries; e++) {
     size_t i = (size_t)plan->place[plan->entry[e].i], j = (size_t)plan->place[plan->entry[e].j];
     mho_quad h = plan->entry[e].value_ev;
@@ -192,7 +208,8 @@ static void residual_fine(const mho_bare *b, double complex z, const double *v,
   }
 }
 
-/* Refines x until the correction dx is rounding; what is left of it, as a part of x. */
+/* Refines x until the correction dx is rounding; what is left of it, as a part of
+ * x.  The residual is that of the x before. */
 static double solve_fine(mho_bare *b, double complex z, const double *v, mho_quad_complex *x,
                          double complex *dx)
 {
@@ -206,8 +223,7 @@ static double solve_fine(mho_bare *b, double complex z, const double *v, mho_qua
     mho_band_solve((int)b->n, (int)b->band, b->factor, b->pivot, 1, dx);
     double size = 0, change = 0;
     for (size_t k = 0; k < b->n; k++) {
-      __real__ x[k] += creal(dx[k]);
-      __imag__ x[k] += cimag(dx[k]);
+      x[k] += widen(dx[k]);
       size = fmax(size, (double)mho_quad_size(x[k]));
       change = fmax(change, cabs(dx[k]));
     }
@@ -216,6 +232,29 @@ static double solve_fine(mho_bare *b, double complex z, const double *v, mho_qua
     part = step > 0 ? now : part;
   }
   return part;
+}
+
+/* What g may be wrong by: sum_k |y_k| (|r_k| + rounding of r_k), with the residual
+ * r of x and y the row of the inverse that g comes from. */
+static double doubt_fine(mho_bare *b, double complex z, const mho_quad_complex *x,
+                         const mho_quad_complex *y)
+{
+  const mho_plan *plan = b->plan;
+  mho_quad_complex *r = b->fine + 2 * b->n;
+  double rounding = 4 * (double)QUAD_ROUNDOFF, doubt = 0;
+  residual_fine(b, z, plan->vector, x, r);
+  double shift = cabs(z) + cabs(b->sigma[0]) + cabs(b->sigma[1]);
+  for (size_t k = 0; k < b->n; k++) {
+    double left = (double)mho_quad_size(r[k]) + rounding * shift * (double)mho_quad_size(x[k]);
+    doubt += (double)mho_quad_size(y[k]) * left;
+  }
+  for (size_t e = 0; e < plan->entries; e++) {
+    size_t i = (size_t)plan->place[plan->entry[e].i], j = (size_t)plan->place[plan->entry[e].j];
+    double h = rounding * fabs(plan->entry[e].value_ev);
+    doubt += h * ((double)mho_quad_size(y[i]) * (double)mho_quad_size(x[j]) +
+                  (double)mho_quad_size(y[j]) * (double)mho_quad_size(x[i]));
+  }
+  return doubt;
 }
 
 bool mho_bare_evaluate_fine(mho_bare *b, double complex z, mho_bare_green *green)
@@ -227,18 +266,34 @@ bool mho_bare_evaluate_fine(mho_bare *b, double complex z, mho_bare_green *green
   mho_quad_complex *x = b->fine, *y = x + b->n, value = 0, slope = 0;
   double complex *dx = b->column, *dy = dx + b->n;
   double x_part = solve_fine(b, z, left, x, dx), y_part = solve_fine(b, z, right, y, dy);
-  double doubt = 0, slope_doubt = 0;
+  double slope_doubt = 0;
   for (size_t k = 0; k < b->n; k++) {
-    double v = right[b->plan->order[k]];
     double x_size = (double)mho_quad_size(x[k]), y_size = (double)mho_quad_size(y[k]);
-    value += (mho_quad)v * x[k];
+    value += (mho_quad)right[b->plan->order[k]] * x[k];
     slope -= x[k] * y[k];
-    doubt += fabs(v) * (cabs(dx[k]) + FINE * x_size);
     slope_doubt += cabs(dx[k]) * y_size + x_size * cabs(dy[k]) + FINE * x_size * y_size;
   }
   green->value = CMPLX((double)__real__ value, (double)__imag__ value);
   green->slope = CMPLX((double)__real__ slope, (double)__imag__ slope);
-  green->noise = 4 * (UNIT_ROUNDOFF * cabs(green->value) + doubt);
+  green->noise = 4 * (UNIT_ROUNDOFF * cabs(green->value) + doubt_fine(b, z, x, y));
   green->slope_noise = 4 * (UNIT_ROUNDOFF * cabs(green->slope) + slope_doubt);
   return fmax(x_part, y_part) <= CORRECTION_MAX && isfinite(green->noise);
+}
+
+/* T = Gamma_l Gamma_r |G_lr|^2. */
+void mho_bare_transmission(mho_bare *b, const mho_plan *plan, double energy_ev,
+                           mho_estimate *estimate)
+{
+  mho_bare_green green;
+  b->plan = plan;
+  *estimate = (mho_estimate){.relative_error = INFINITY};
+  for (int c = 0; c < 2; c++)
+    b->sigma[c] = CMPLX(plan->shift_ev[c], -0.5 * plan->coupling_ev[c]);
+  if (!mho_bare_evaluate_fine(b, energy_ev, &green)) return;
+  double size = cabs(green.value), gamma = sqrt(plan->coupling_ev[0] * plan->coupling_ev[1]);
+  if (!(size > 1e-140)) return;
+  estimate->transmission = gamma * size * gamma * size;
+  estimate->log10_transmission = 2 * log10(gamma * size);
+  estimate->relative_error = 2 * green.noise / size + 8 * UNIT_ROUNDOFF;
+  estimate->first_order = estimate->relative_error < 1e-2;
 }

@@ -29,4 +29,9 @@ bool mho_bare_evaluate(mho_bare *bare, double complex z, mho_bare_green *green);
  * the time: beside levels that no contact sees.  `own` is not filled. */
 bool mho_bare_evaluate_fine(mho_bare *bare, double complex z, mho_bare_green *green);
 
+/* T of a plan like that of creation but for Gamma and shift, with contacts of one
+ * site each and v = 1 there: the same of z - H - Sigma. */
+void mho_bare_transmission(mho_bare *bare, const mho_plan *plan, double energy_ev,
+                           mho_estimate *estimate);
+
 #endif

@@ -89,7 +89,10 @@ mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev, 
   bool single = plan->left == 1 && plan->right == 1;
   if (single || plan->sites <= MINIMA_SITES) {
     status = mho_nodes_search(plan, plan->sites <= PATIENT_SITES, &nodes, error);
-    if (status == MHO_ERR_NOT_CONVERGED) status = MHO_OK; /* a plot can do without */
+    if (status == MHO_ERR_NOT_CONVERGED) { /* a plot can do without */
+      status = MHO_OK;
+      if (error) mho_error_init(error);
+    }
   }
   if (status == MHO_OK) status = mho_pole_features(plan, nodes.count, &feature, error);
   if (status == MHO_OK) {
