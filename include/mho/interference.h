@@ -64,7 +64,7 @@ typedef struct {
 
 /* Nodes from the Green's function's zeros up to here; above, from changes of
  * sign on a grid about the Fermi level. */
-enum { MHO_INTERFERENCE_NODES_MAX = 40, MHO_INTERFERENCE_SITES_MAX = 2000 };
+enum { MHO_INTERFERENCE_NODES_MAX = 80, MHO_INTERFERENCE_SITES_MAX = 2000 };
 
 MHO_BEGIN_DECLARATIONS
 

@@ -31,8 +31,10 @@ typedef struct {
   int zeros;       /* zeros with multiplicity, a dip counting twice */
 } mho_nodes;
 
-/* More sites than this, and minima are searched. */
-enum { MHO_NODES_STATES_MAX = 200 };
+/* Minima are searched in place of nodes where more sites than the first hang
+ * together without a site that all ways from contact to contact pass, or more
+ * than the second and doubles do not tell their zeros apart. */
+enum { MHO_NODES_STATES_MAX = 1000, MHO_NODES_EXTENDED_MAX = 200 };
 
 MHO_BEGIN_DECLARATIONS
 

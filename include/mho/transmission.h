@@ -27,7 +27,8 @@ typedef enum {
   MHO_METHOD_SPARSE,   /* compiled sparse elimination in double-double */
   MHO_METHOD_REPEAT, /* doubling of a run of equal units, in 113 bits */
   MHO_METHOD_ELIMINATION, /* pivoted Gaussian elimination in double precision */
-  MHO_METHOD_EXTENDED,    /* the same in 113 bits */
+  MHO_METHOD_REFINED, /* its solution refined in 113 bits */
+  MHO_METHOD_EXTENDED, /* elimination in 113 bits */
   MHO_METHOD_COUNT
 } mho_method;
 

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <stdlib.h>
+#include <unistd.h>
 
 #include "cli/command.h"
 #include "report/drawing.h"
@@ -9,6 +10,10 @@
 #define DEFAULT_REACH_EV 3.0
 
 enum { EVEN_POINTS = 601 };
+
+/* Energies between two looks at the clock; molecules whose poles and nodes alone may
+ * take a second. */
+enum { PORTION = 128, LONG_SITES = 300 };
 
 /* Energies above the Fermi level; the caller frees them. */
 static mho_status choose_energies(const command *cmd, const subject *s, const mho_plan *plan,
@@ -66,6 +71,35 @@ static mho_status keep_curve(curves *c, const subject *s, const mho_plan *plan, 
   return status;
 }
 
+/* All energies, with a bar on a terminal once they have taken a second. */
+static mho_status sweep(const command *cmd, const subject *s, const mho_plan *plan, size_t count,
+                        const double *energy, mho_point *point, mho_error *error)
+{
+  mho_status status = MHO_OK;
+  double start = seconds_now();
+  bool bar = !cmd->quiet && isatty(STDERR_FILENO), shown = false;
+  for (size_t i = 0; status == MHO_OK && i < count; i += PORTION) {
+    size_t portion = count - i < PORTION ? count - i : PORTION;
+    status = mho_transmission_sweep(plan, portion, energy + i, point + i, error);
+    if (!bar || seconds_now() - start < 1.0) continue;
+    shown = true;
+    draw_bar((double)(i + portion) / (double)count, "%zu of %zu energies of %.40s", i + portion,
+             count, s->molecule.name);
+  }
+  if (shown) clear_bar();
+  return status;
+}
+
+static bool announce(const command *cmd, const subject *s)
+{
+  if (cmd->quiet || !isatty(STDERR_FILENO) || s->junction.sites < LONG_SITES) return false;
+  draw_bar(0, "%s of %.40s, %d sites",
+           cmd->poles   ? "poles"
+           : cmd->nodes ? "nodes"
+                        : "poles and nodes", s->molecule.name, s->junction.sites);
+  return true;
+}
+
 static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan *plan, curves *kept,
                             mho_output *output, mho_table *table, unsigned *warnings, mho_error *error)
 {
@@ -81,7 +115,7 @@ static mho_status add_sweep(const command *cmd, const subject *s, const mho_plan
   }
   if (status == MHO_OK) {
     for (size_t i = 0; i < count; i++) energy[i] = s->junction.fermi_ev + relative[i];
-    status = mho_transmission_sweep(plan, count, energy, point, error);
+    status = sweep(cmd, s, plan, count, energy, point, error);
   }
   for (size_t i = 0; status == MHO_OK && i < count; i++) {
     mho_transmission_row(table, s->molecule.name, relative[i], &point[i]);
@@ -115,8 +149,9 @@ static mho_status add_poles(const command *cmd, const subject *s, const mho_plan
   return status;
 }
 
-static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *table,
-                            unsigned *warnings, mho_error *error)
+static mho_status add_nodes(const command *cmd, const subject *s, const mho_plan *plan,
+                            mho_output *output, mho_table *table, unsigned *warnings,
+                            mho_error *error)
 {
   mho_nodes nodes;
   mho_status status = mho_nodes_find(plan, &nodes, error);
@@ -125,6 +160,12 @@ static mho_status add_nodes(const subject *s, const mho_plan *plan, mho_table *t
     status = mho_transmission_sweep(plan, 1, &s->junction.fermi_ev, &at_fermi, error);
   if (nodes.everywhere) /* no path, or bands that do not meet */
     *warnings |= at_fermi.method == MHO_METHOD_NO_BAND ? MHO_WARN_OUTSIDE_BAND : MHO_WARN_NO_PI_PATH;
+  bool minima = nodes.count > 0 && nodes.node[0].kind == MHO_NODE_MINIMUM;
+  if (status == MHO_OK && minima && !cmd->quiet)
+    mho_output_note(output, "%s: minima of T, %s", s->molecule.name,
+                    s->junction.lead[MHO_LEFT].channels + s->junction.lead[MHO_RIGHT].channels > 2
+                        ? "as contacts of several channels have no exact nodes"
+                        : "as nodes of so many sites are not told apart");
   for (size_t k = 0; status == MHO_OK && k < nodes.count; k++)
     mho_nodes_row(table, s->molecule.name, s->junction.fermi_ev, &nodes.node[k]);
   mho_nodes_clear(&nodes);
@@ -178,12 +219,14 @@ static mho_status add_molecule(const command *cmd, const subject *s, curves *kep
 {
   mho_plan *plan = NULL;
   unsigned warnings = s->warnings;
+  bool announced = announce(cmd, s);
   mho_status status = mho_plan_create(&s->junction, &plan, error);
   if (status == MHO_OK)
-    status = cmd->poles      ? add_poles(cmd, s, plan, output, table, error)
-             : cmd->nodes    ? add_nodes(s, plan, table, &warnings, error)
-             : is_view(cmd)  ? add_inside(cmd, s, plan, output, table, &warnings, error)
-                             : add_sweep(cmd, s, plan, kept, output, table, &warnings, error);
+    status = cmd->poles     ? add_poles(cmd, s, plan, output, table, error)
+             : cmd->nodes   ? add_nodes(cmd, s, plan, output, table, &warnings, error)
+             : is_view(cmd) ? add_inside(cmd, s, plan, output, table, &warnings, error)
+                            : add_sweep(cmd, s, plan, kept, output, table, &warnings, error);
+  if (announced) clear_bar();
   mho_plan_free(plan);
   mho_output_warn(output, s->molecule.name, warnings);
   if (!cmd->quiet) mho_assumption_note(output, &s->molecule, &s->junction);

@@ -6,9 +6,12 @@
  * one of 1e13 matrices (bits of the determinant over bits of the prime, against
  * the number of primes of that size).
  *
- *   visible   dimension of the smallest space with v_l and v_r that H keeps,
  *   poles     length of the shortest recurrence of mu_j = v_r^T H^j v_l
- *             (J. L. Massey, IEEE Trans. Inf. Theory 15, 122 (1969)).
+ *             (J. L. Massey, IEEE Trans. Inf. Theory 15, 122 (1969)),
+ *   visible   dimension of the smallest space with V = (v_l, v_r) that H keeps.
+ *             H + V S V^T keeps the same one, and there its levels are single, as S
+ *             splits equal ones, and seen by w = V s, for all S and s but those on
+ *             some surface: length of the recurrence of w^T (H + V S V^T)^j w.
  */
 #include "solver/exact.h"
 
@@ -96,49 +99,53 @@ static void apply(const field *f, const residue *x, residue *y)
   }
 }
 
-/* Takes the rows out of x and, if something is left, makes it the next row. */
-static int extend(const field *f, residue *rows, size_t *pivot, int count, residue *x)
+/* Coefficients that nothing in a molecule knows: of the vector w, and of S. */
+typedef struct {
+  residue w[2], s[2][2];
+} feedback;
+
+static feedback draw(void)
 {
-  for (int k = 0; k < count; k++) {
-    const residue *row = rows + (size_t)k * f->n;
-    residue factor = x[pivot[k]];
-    for (size_t i = 0; factor && i < f->n; i++)
-      if (row[i]) x[i] = subtract(x[i], multiply(factor, row[i], f->inverse));
+  residue r[5];
+  uint64_t state = 0x9e3779b97f4a7c15ULL;
+  for (int k = 0; k < 5; k++) { /* G. L. Steele et al., OOPSLA 2014: splitmix64 */
+    uint64_t x = state += 0x9e3779b97f4a7c15ULL;
+    x = (x ^ x >> 30) * 0xbf58476d1ce4e5b9ULL;
+    x = (x ^ x >> 27) * 0x94d049bb133111ebULL;
+    r[k] = (x ^ x >> 31) % PRIME;
   }
-  size_t first = 0;
-  while (first < f->n && !x[first]) first++;
-  if (first == f->n) return count;
-  residue scale = invert(x[first], f->inverse), *row = rows + (size_t)count * f->n;
-  for (size_t i = 0; i < f->n; i++) row[i] = multiply(x[i], scale, f->inverse);
-  pivot[count] = first;
-  return count + 1;
+  return (feedback){{r[0], r[1]}, {{r[2], r[3]}, {r[3], r[4]}}};
 }
 
-static int count_visible(const field *f, const residue *ends, residue *rows, residue *x,
-                         size_t *pivot)
+static residue overlap(const field *f, const residue *v, const residue *x)
 {
-  int count = 0;
-  for (size_t c = 0; c < 2; c++) {
-    memcpy(x, ends + c * f->n, f->n * sizeof *x);
-    count = extend(f, rows, pivot, count, x);
-  }
-  for (int next = 0; next < count && (size_t)count < f->n; next++) {
-    apply(f, rows + (size_t)next * f->n, x);
-    count = extend(f, rows, pivot, count, x);
-  }
-  return count;
+  residue sum = 0;
+  for (size_t i = 0; i < f->n; i++)
+    if (v[i]) sum = add(sum, multiply(v[i], x[i], f->inverse));
+  return sum;
 }
 
-/* mu_j, j < 2 n. */
-static void moments(const field *f, const residue *ends, residue *x, residue *y, residue *moment)
+static void add_scaled(const field *f, residue factor, const residue *v, residue *x)
 {
-  memcpy(x, ends, f->n * sizeof *x);
+  for (size_t i = 0; factor && i < f->n; i++)
+    if (v[i]) x[i] = add(x[i], multiply(factor, v[i], f->inverse));
+}
+
+/* moment[j] = b^T (H + V S V^T)^j a, j < 2 n; no S: b^T H^j a.  V has both ends. */
+static void moments(const field *f, const residue *a, const residue *b, const residue *ends,
+                    const feedback *by, residue *x, residue *y, residue *moment)
+{
+  memcpy(x, a, f->n * sizeof *x);
   for (size_t j = 0; j < 2 * f->n; j++) {
-    residue sum = 0;
-    for (size_t i = 0; i < f->n; i++)
-      if (ends[f->n + i]) sum = add(sum, multiply(ends[f->n + i], x[i], f->inverse));
-    moment[j] = sum;
+    moment[j] = overlap(f, b, x);
     apply(f, x, y);
+    residue seen[2];
+    for (size_t c = 0; by && c < 2; c++) seen[c] = overlap(f, ends + c * f->n, x);
+    for (size_t c = 0; by && c < 2; c++) {
+      residue sum = add(multiply(by->s[c][0], seen[0], f->inverse),
+                        multiply(by->s[c][1], seen[1], f->inverse));
+      add_scaled(f, sum, ends + c * f->n, y);
+    }
     memcpy(x, y, f->n * sizeof *x);
   }
 }
@@ -175,22 +182,22 @@ static int recurrence(const field *f, const residue *moment, size_t count, resid
 mho_status mho_exact_count(const mho_plan *plan, mho_exact_counts *counts)
 {
   size_t n = (size_t)plan->sites, m = 2 * n;
-  residue *entry = malloc((plan->entries + n * n + m + 2 * n + m + 3 * (m + 1)) * sizeof *entry);
-  size_t *pivot = malloc(n * sizeof *pivot);
-  mho_status status = entry && pivot ? MHO_OK : MHO_ERR_MEMORY;
-  if (status == MHO_OK) {
-    field f = {plan, n, negative_inverse(), entry};
-    residue *rows = entry + plan->entries, *ends = rows + n * n, *x = ends + m, *y = x + n;
-    residue *moment = y + n, *room = moment + m;
-    for (size_t e = 0; e < plan->entries; e++)
-      entry[e] = from_double(plan->entry[e].value_ev, f.inverse);
-    for (size_t k = 0; k < m; k++) ends[k] = from_double(plan->vector[k], f.inverse);
-    counts->visible = count_visible(&f, ends, rows, x, pivot);
-    moments(&f, ends, x, y, moment);
-    counts->poles = recurrence(&f, moment, m, room, room + m + 1, room + 2 * (m + 1));
-    for (counts->first = 0; (size_t)counts->first < m && !moment[counts->first];) counts->first++;
-  }
+  residue *entry = malloc((plan->entries + 7 * m + 3) * sizeof *entry);
+  if (!entry) return MHO_ERR_MEMORY;
+  field f = {plan, n, negative_inverse(), entry};
+  residue *ends = entry + plan->entries, *x = ends + m, *y = x + n, *w = y + n;
+  residue *moment = w + n, *room = moment + m;
+  feedback by = draw();
+  for (size_t e = 0; e < plan->entries; e++)
+    entry[e] = from_double(plan->entry[e].value_ev, f.inverse);
+  for (size_t k = 0; k < m; k++) ends[k] = from_double(plan->vector[k], f.inverse);
+  memset(w, 0, n * sizeof *w);
+  for (size_t c = 0; c < 2; c++) add_scaled(&f, by.w[c], ends + c * n, w);
+  moments(&f, w, w, ends, &by, x, y, moment);
+  counts->visible = recurrence(&f, moment, m, room, room + m + 1, room + 2 * (m + 1));
+  moments(&f, ends, ends + n, ends, NULL, x, y, moment);
+  counts->poles = recurrence(&f, moment, m, room, room + m + 1, room + 2 * (m + 1));
+  for (counts->first = 0; (size_t)counts->first < m && !moment[counts->first];) counts->first++;
   free(entry);
-  free(pivot);
-  return status;
+  return MHO_OK;
 }

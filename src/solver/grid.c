@@ -17,9 +17,9 @@ enum { OFFSETS = sizeof offset / sizeof *offset };
 /* T rises as the root of the distance from the edge of a band. */
 #define EDGE_WIDTH_EV 0.01
 
-/* Molecules above this many sites are plotted without their nodes, or without
- * those that are hard to tell apart, which would take longer than the plot. */
-enum { NODE_SITES = MHO_NODES_STATES_MAX, PATIENT_SITES = 60 };
+/* Molecules above this many sites are plotted without the nodes that are hard to
+ * tell apart, or without minima, which would take longer than the plot. */
+enum { PATIENT_SITES = 60, MINIMA_SITES = 200 };
 
 static int compare_doubles(const void *a, const void *b)
 {
@@ -93,9 +93,13 @@ mho_status mho_energy_grid(const mho_plan *plan, double low_ev, double high_ev, 
   mho_feature *feature = NULL;
   size_t features = 0;
   mho_status status = MHO_OK;
-  if (plan->sites <= NODE_SITES) {
+  bool single = plan->left == 1 && plan->right == 1;
+  if (single || plan->sites <= MINIMA_SITES) {
     status = mho_nodes_search(plan, plan->sites <= PATIENT_SITES, &nodes, error);
-    if (status == MHO_ERR_NOT_CONVERGED) status = MHO_OK; /* a plot can do without */
+    if (status == MHO_ERR_NOT_CONVERGED) { /* a plot can do without */
+      status = MHO_OK;
+      if (error) mho_error_init(error);
+    }
   }
   if (status == MHO_OK)
     status = mho_pole_features(plan, low_ev, high_ev, nodes.count, &feature, &features, error);

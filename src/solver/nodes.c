@@ -11,6 +11,7 @@
 #include <string.h>
 
 #include "base/lapack.h"
+#include "solver/factors.h"
 #include "solver/minima.h"
 #include "solver/pencil.h"
 #include "solver/zeros.h"
@@ -26,6 +27,9 @@ enum { CIRCLE_POINTS = 8, CLUSTER_POINTS = 48 };
 
 /* Steps below this (times the norm) that do not shrink fourfold are rounding. */
 #define STANDS ((mho_quad)1e-20)
+
+/* Zeros so near (times the norm) are one. */
+#define SAME_ENERGY ((mho_quad)1e-13)
 
 /* Radius of the circle around a node that stands alone, times the norm. */
 #define CIRCLE ((mho_quad)1e-7)
@@ -121,7 +125,8 @@ static void polish_block(const search *s, int block)
   for (size_t k = first; k < end; k++) set_radius(s, block, &s->zero[k]);
 }
 
-/* Zeros whose discs meet get one cluster number, that of the first. */
+/* Zeros whose discs meet, or as near as rounding makes them, get one cluster
+ * number, that of the first. */
 static void join(const search *s)
 {
   int n = s->pencil->size;
@@ -130,7 +135,9 @@ static void join(const search *s)
     for (int j = 0; j < i; j++) {
       mho_quad distance = mho_quad_size(s->zero[i].z - s->zero[j].z);
       int from = s->zero[i].cluster, to = s->zero[j].cluster;
-      if (from == to || distance > s->zero[i].radius + s->zero[j].radius) continue;
+      bool apart = distance > s->zero[i].radius + s->zero[j].radius &&
+                   distance > SAME_ENERGY * s->pencil->norm;
+      if (from == to || apart) continue;
       for (int k = 0; k < n; k++)
         if (s->zero[k].cluster == from) s->zero[k].cluster = to;
     }
@@ -261,33 +268,56 @@ static mho_status find_extended(const mho_plan *plan, mho_nodes *result, mho_err
   return status;
 }
 
+mho_status mho_nodes_of_block(const mho_plan *plan, const mho_exact_counts *counts, bool patient,
+                              mho_nodes *result, mho_error *error)
+{
+  bool sure = false;
+  *result = (mho_nodes){.everywhere = counts->poles == 0, .unseen = plan->sites - counts->visible};
+  if (result->everywhere) return MHO_OK;
+  result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
+  if (!result->node) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
+  mho_status status = MHO_OK;
+  if (plan->sites <= MHO_NODES_STATES_MAX)
+    status = mho_zeros_find(plan, counts, result, &sure, error);
+  if (status != MHO_OK || sure) return status;
+  mho_nodes_clear(result);
+  if (patient && plan->sites <= MHO_NODES_EXTENDED_MAX) return find_extended(plan, result, error);
+  return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
+                  "doubles do not tell the nodes apart");
+}
+
+static mho_status search_levels(const mho_plan *plan, bool patient, mho_nodes *result,
+                                mho_error *error)
+{
+  bool sure = false;
+  mho_exact_counts counts;
+  mho_status status = mho_exact_count(plan, &counts);
+  if (status != MHO_OK) return mho_fail(error, status, "solver", NULL, "out of memory");
+  if (counts.poles > 0) status = mho_factors_find(plan, &counts, patient, result, &sure, error);
+  if (status == MHO_OK && !sure)
+    status = mho_nodes_of_block(plan, &counts, patient, result, error);
+  if (status == MHO_OK && result->count > 0)
+    qsort(result->node, result->count, sizeof(mho_node), compare_nodes);
+  return status;
+}
+
 mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result, mho_error *error)
 {
   *result = (mho_nodes){0};
-  bool single = plan->left == 1 && plan->right == 1, sure = false;
+  bool single = plan->left == 1 && plan->right == 1;
   if (!plan->connected) {
     result->everywhere = true;
     return MHO_OK;
   }
-  if (!single || plan->sites > MHO_NODES_STATES_MAX) return mho_minima_find(plan, result, error);
-  if (!plan->pair) return find_extended(plan, result, error);
-  mho_exact_counts counts;
-  mho_status status = mho_exact_count(plan, &counts);
-  result->node = malloc(((size_t)plan->sites + 1) * sizeof *result->node);
-  if (status != MHO_OK || !result->node)
-    return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
-  result->everywhere = counts.poles == 0;
-  result->unseen = plan->sites - counts.visible;
-  if (result->everywhere) return MHO_OK;
-  status = mho_zeros_find(plan, &counts, result, &sure, error);
-  if (status != MHO_OK || sure) {
-    qsort(result->node, result->count, sizeof(mho_node), compare_nodes);
-    return status;
-  }
+  if (single && !plan->pair && plan->sites <= MHO_NODES_EXTENDED_MAX)
+    return find_extended(plan, result, error);
+  mho_status status = MHO_ERR_NOT_CONVERGED;
+  if (single && plan->pair) status = search_levels(plan, patient, result, error);
+  bool minima = !single || (patient && plan->sites > MHO_NODES_EXTENDED_MAX);
+  if (status != MHO_ERR_NOT_CONVERGED || !minima) return status;
+  if (error) mho_error_init(error);
   mho_nodes_clear(result);
-  if (patient) return find_extended(plan, result, error);
-  return mho_fail(error, MHO_ERR_NOT_CONVERGED, "solver", "nodes",
-                  "doubles do not tell the nodes apart");
+  return mho_minima_find(plan, result, error);
 }
 
 mho_status mho_nodes_find(const mho_plan *plan, mho_nodes *result, mho_error *error)

@@ -12,6 +12,9 @@
 /* Smaller than this against what it came from is zero; rounding leaves 1e-32. */
 #define ZERO ((mho_quad)1e-26)
 
+/* Roundings of its largest entry that a reduced matrix carries. */
+#define REDUCTION 16
+
 typedef struct {
   size_t n;
   mho_quad *a; /* [n][stride] */
@@ -232,7 +235,8 @@ void mho_pencil_evaluate(const mho_pencil *pencil, int block, mho_quad_complex z
 }
 
 /* Row i of the recurrence is wrong by u sum_j |m_ij x_j|; what that does to the
- * value is the adjoint a_i: a_0 = 1, a_i = -sum_r<i a_r m_r,i-1 / m_i,i-1. */
+ * value is the adjoint a_i: a_0 = 1, a_i = -sum_r<i a_r m_r,i-1 / m_i,i-1.  The
+ * matrix itself is wrong everywhere by what its reduction has rounded. */
 mho_quad mho_pencil_noise(const mho_pencil *pencil, int block, mho_quad_complex z,
                           mho_quad_complex *work)
 {
@@ -241,14 +245,20 @@ mho_quad mho_pencil_noise(const mho_pencil *pencil, int block, mho_quad_complex 
   const mho_quad *m = pencil->matrix + first * stride + first;
   mho_quad_complex *x = work, *adjoint = work + 2 * n, value, derivative;
   mho_pencil_evaluate(pencil, block, z, work, &value, &derivative);
-  mho_quad noise = 0;
+  mho_quad noise = 0, adjoints = 0, entries = 0, largest = 0;
   for (size_t i = 0; i < n; i++) {
     mho_quad_complex sum = i ? -z * adjoint[i - 1] : 0;
     for (size_t r = 0; r < i; r++) sum += m[r * stride + i - 1] * adjoint[r];
     adjoint[i] = i ? -sum / m[i * stride + i - 1] : 1;
     mho_quad size = mho_quad_size(z) * mho_quad_size(x[i]);
-    for (size_t j = i; j < n; j++) size += mho_quad_abs(m[i * stride + j]) * mho_quad_size(x[j]);
+    for (size_t j = i; j < n; j++) {
+      mho_quad entry = mho_quad_abs(m[i * stride + j]);
+      size += entry * mho_quad_size(x[j]);
+      if (entry > largest) largest = entry;
+    }
     noise += size * mho_quad_size(adjoint[i]);
+    adjoints += mho_quad_size(adjoint[i]);
+    entries += mho_quad_size(x[i]);
   }
-  return 4 * QUAD_ROUNDOFF * noise;
+  return QUAD_ROUNDOFF * (4 * noise + REDUCTION * largest * adjoints * entries);
 }

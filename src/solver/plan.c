@@ -227,14 +227,20 @@ static mho_status start(int sites, const mho_lead *left, const mho_lead *right,
   return MHO_OK;
 }
 
+static mho_status arrange(const mho_lead *left, const mho_lead *right, mho_plan *plan)
+{
+  mho_status status = collect_channels((const mho_lead *const[]){left, right}, plan);
+  if (status == MHO_OK) status = collect_neighbours(plan);
+  if (status == MHO_OK) status = find_connection(plan);
+  if (status == MHO_OK) status = mho_plan_order(plan);
+  return status;
+}
+
 /* Everything that follows from entries and leads. */
 static mho_status prepare(const mho_lead *left, const mho_lead *right, mho_plan *plan)
 {
   mho_status status = mho_spare_create(plan);
-  if (status == MHO_OK) status = collect_channels((const mho_lead *const[]){left, right}, plan);
-  if (status == MHO_OK) status = collect_neighbours(plan);
-  if (status == MHO_OK) status = find_connection(plan);
-  if (status == MHO_OK) status = mho_plan_order(plan);
+  if (status == MHO_OK) status = arrange(left, right, plan);
   if (status == MHO_OK) status = mho_repeat_create(plan, &plan->repeat);
   bool compile = plan->sites >= PROGRAM_SITES_MIN &&
                  !(plan->repeat && plan->sites > REPEAT_ALONE);
@@ -275,15 +281,27 @@ static mho_status finish(mho_status status, mho_plan **plan, mho_error *error)
   return mho_fail(error, status, "solver", NULL, "out of memory");
 }
 
-mho_status mho_plan_create(const mho_junction *junction, mho_plan **plan, mho_error *error)
+static mho_status create(const mho_junction *junction, bool sweeps, mho_plan **plan,
+                         mho_error *error)
 {
   const mho_lead *left = &junction->lead[MHO_LEFT], *right = &junction->lead[MHO_RIGHT];
   mho_status status = start(junction->sites, left, right, plan, error);
   if (status != MHO_OK) return status;
   status = collect_entries(junction, *plan);
-  if (status == MHO_OK) status = prepare(left, right, *plan);
+  if (status == MHO_OK)
+    status = sweeps ? prepare(left, right, *plan) : arrange(left, right, *plan);
   if (status == MHO_OK) status = project_orbitals(junction, *plan);
   return finish(status, plan, error);
+}
+
+mho_status mho_plan_create(const mho_junction *junction, mho_plan **plan, mho_error *error)
+{
+  return create(junction, true, plan, error);
+}
+
+mho_status mho_plan_create_bare(const mho_junction *junction, mho_plan **plan, mho_error *error)
+{
+  return create(junction, false, plan, error);
 }
 
 static mho_status check_entries(int sites, const mho_entry *entry, size_t entries,

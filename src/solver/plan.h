@@ -100,6 +100,10 @@ MHO_MUST_USE mho_status mho_plan_require_wide_band(const mho_plan *plan, const c
 /* Order that makes the band narrow, over plan->neighbour; order.c. */
 MHO_MUST_USE mho_status mho_plan_order(mho_plan *plan);
 
+/* As mho_plan_create, for levels and nodes: no sweep, no derivative. */
+MHO_MUST_USE mho_status mho_plan_create_bare(const mho_junction *junction, mho_plan **plan,
+                                             mho_error *error);
+
 /* A plan of the contacts' sites alone, site[count] of this one. */
 MHO_MUST_USE mho_status mho_plan_contacts(const mho_plan *plan, const int *site, int count,
                                           mho_plan **contacts);

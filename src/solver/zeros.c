@@ -33,6 +33,10 @@ enum { SUM_STEPS = 40, BARE_STEPS = 60, KICKS = 4, CIRCLE_POINTS = 48 };
 #define HELD 1e-4
 #define HELD_LEAST 1e-9
 
+/* The same where g is known to 30 digits. */
+#define HELD_FINE 1e-10
+#define HELD_LEAST_FINE 1e-13
+
 /* Steps below this (times ||H||) that no longer shrink are rounding, after so many
  * kicks off the line that two near zeros are mirror images in. */
 #define STANDS 1e-9
@@ -43,6 +47,9 @@ enum { SUM_STEPS = 40, BARE_STEPS = 60, KICKS = 4, CIRCLE_POINTS = 48 };
 /* Energies this near (times ||H||) are one; what counts as alpha. */
 #define SAME_ENERGY 1e-13
 #define TINY 1e-16
+
+/* Where a level is looked at from, times ||H||. */
+#define ASIDE 1e-9
 
 /* Largest circle, times ||H||; one around m zeros has a radius of CIRCLE_DECADES/m
  * decades, so that g on it is well above rounding; largest cluster on a circle
@@ -65,7 +72,20 @@ typedef struct {
   int groups, zeros, free; /* zero[0 .. free - 1] are those of g */
   zero *zero;
   mho_bare *bare;
+  bool fine; /* what doubles did not tell apart once more, with g to 30 digits */
 } search;
+
+static bool evaluate(const search *s, double complex z, mho_bare_green *green)
+{
+  return s->fine ? mho_bare_evaluate_fine(s->bare, z, green) : mho_bare_evaluate(s->bare, z, green);
+}
+
+static double held(const search *s) { return (s->fine ? HELD_FINE : HELD) * s->plan->norm_ev; }
+
+static double held_least(const search *s)
+{
+  return (s->fine ? HELD_LEAST_FINE : HELD_LEAST) * s->plan->norm_ev;
+}
 
 /* x -= u (u.x) 2/|u|^2 for x[0], x[step], ... */
 static void reflect(const double *u, double scale, double *x, size_t step, size_t n)
@@ -196,10 +216,21 @@ static double blank_distance(const search *s, double complex z)
  * may be met exactly: then a circle finds it. */
 static bool hold(const search *s, zero *z)
 {
-  double norm = s->plan->norm_ev, distance = blank_distance(s, z->z);
+  double distance = blank_distance(s, z->z);
   z->held = true;
   z->step = 0;
-  z->radius = 3 * fmax(distance < HELD * norm ? distance : 0, HELD_LEAST * norm);
+  z->radius = 3 * fmax(distance < held(s) ? distance : 0, held_least(s));
+  return true;
+}
+
+/* So far out that g is nothing: a guess that rounding made.  Elsewhere, then. */
+static bool bring_back(const search *s, int k)
+{
+  zero *z = &s->zero[k];
+  if (cabs(z->z) < 2 * s->plan->norm_ev || z->kicks++ >= KICKS) return false;
+  z->z = 0.6 * s->plan->norm_ev * cexp(I * (1 + 2.4 * k + z->kicks));
+  z->step = s->plan->norm_ev;
+  z->radius = INFINITY;
   return true;
 }
 
@@ -210,12 +241,12 @@ static bool polish(search *s, int k)
   double norm = s->plan->norm_ev, degree = s->free, least = 8 * UNIT_ROUNDOFF * norm;
   double blank = blank_distance(s, z->z);
   mho_bare_green g;
-  if (blank < HELD_LEAST * norm) return hold(s, z);
-  if (!mho_bare_evaluate(s->bare, z->z, &g)) return blank < HELD * norm && hold(s, z);
+  if (blank < held_least(s)) return hold(s, z);
+  if (!evaluate(s, z->z, &g)) return bring_back(s, k) || (blank < held(s) && hold(s, z));
   double complex poles = mho_levels_sum(s->group, s->groups, norm, z->z).poles;
   double complex slope = g.slope + g.value * poles; /* u'/D */
   double size = cabs(g.value) + g.noise, doubt = g.slope_noise + g.noise * cabs(poles);
-  if (!(cabs(slope) > 2 * doubt)) return hold(s, z);
+  if (!(cabs(slope) > 2 * doubt)) return bring_back(s, k) || hold(s, z);
   z->radius = 4 * degree * size / cabs(slope) + least;
   if (!(cabs(g.value) > g.noise)) {
     z->step = 0;
@@ -240,10 +271,10 @@ static bool is_settled(const search *s, int k)
   return s->zero[k].radius <= fmin(ENOUGH * s->plan->norm_ev, nearest / 8);
 }
 
+/* All whose step is not 0. */
 static bool polish_all(search *s)
 {
   double largest = INFINITY;
-  for (int k = 0; k < s->free; k++) s->zero[k].step = s->plan->norm_ev;
   for (int step = 0; step < BARE_STEPS && largest > 0; step++) {
     largest = 0;
     for (int k = 0; k < s->free; k++) {
@@ -311,7 +342,7 @@ static cluster gather(const search *s, int number)
 static bool count_inside(const search *s, cluster *c)
 {
   double points = CIRCLE_POINTS, small = pow(10, CIRCLE_DECADES / c->free);
-  small = s->plan->norm_ev * fmax(small, c->held ? HELD : 0);
+  small = fmax(small * s->plan->norm_ev, c->held ? held(s) : 0);
   double radius = fmin(c->gap / 3, fmax(small, 2.5 * c->size));
   double complex count = 0, moment = 0, second = 0;
   if (!(radius > 1.5 * c->size)) return false;
@@ -319,7 +350,7 @@ static bool count_inside(const search *s, cluster *c)
     double complex z = c->center + radius * cexp(2 * M_PI * I * (k + 0.5) / points);
     double complex arm = z - c->center; /* as rounded */
     mho_bare_green g;
-    if (!mho_bare_evaluate(s->bare, z, &g) || !(cabs(g.value) > g.noise)) return false;
+    if (!evaluate(s, z, &g) || !(cabs(g.value) > g.noise)) return false;
     double complex term = arm * g.slope / g.value / points;
     count += term;
     moment += arm * term;
@@ -327,7 +358,8 @@ static bool count_inside(const search *s, cluster *c)
   }
   if (cabs(count - c->free) > 0.01) return false;
   double complex mean = moment / c->free;
-  if (cabs(csqrt(second / c->free - mean * mean)) > SPREAD * radius) return false;
+  double spread = cabs(csqrt(second / c->free - mean * mean));
+  if (c->free > 1 && spread > SPREAD * radius) return false;
   c->center += mean;
   c->size = c->held || c->free > 1 ? SAME_ENERGY * s->plan->norm_ev : c->size;
   return true;
@@ -358,28 +390,68 @@ static bool make_nodes(const search *s, int number, mho_nodes *result)
   return true;
 }
 
+/* A level to the last digit, from z beside it: g_c = v_c^T (z - H)^-1 v_c is
+ * a^2/(z - eps) + r there, so that eps = z + g_c/g_c' but for r (z - eps)^2/a^2. */
+static double sharpen(const search *s, int i)
+{
+  const mho_level_group *g = &s->group[i];
+  double norm = s->plan->norm_ev, aside = ASIDE * norm, gap = norm;
+  int c = g->right > g->left;
+  for (int k = i > 0 ? i - 1 : i + 1; k <= i + 1 && k < s->groups; k += 2)
+    gap = fmin(gap, fabs(s->group[k].level_ev - g->level_ev));
+  mho_bare_green green;
+  double z = g->level_ev + aside;
+  bool good = aside * aside <= TINY * norm * gap * (c ? g->right : g->left);
+  if (!good || !mho_bare_evaluate(s->bare, z, &green)) return g->level_ev;
+  double better = z + creal(green.own[c] / green.own_slope[c]);
+  return fabs(better - g->level_ev) <= SAME_ENERGY * norm ? better : g->level_ev;
+}
+
 /* Levels that are zeros by themselves, behind those of g. */
 static void add_levels(search *s)
 {
   int count = s->free;
-  for (int i = 0; i < s->groups; i++)
-    for (int k = s->group[i].weight != 0; k < s->group[i].seen; k++)
+  for (int i = 0; i < s->groups; i++) {
+    int first = s->group[i].weight != 0;
+    if (first < s->group[i].seen) s->group[i].level_ev = sharpen(s, i);
+    for (int k = first; k < s->group[i].seen; k++)
       s->zero[count++] = (zero){.z = s->group[i].level_ev - s->group[i].faint, .level = true,
                                 .radius = 8 * UNIT_ROUNDOFF * s->plan->norm_ev};
+  }
+}
+
+/* Nodes of all clusters; those that are none yet have their step set. */
+static bool conclude(search *s, mho_nodes *result)
+{
+  bool good = true;
+  int order = 0;
+  result->count = 0;
+  join(s);
+  for (int number = 0; number < s->zeros; number++) {
+    if (make_nodes(s, number, result)) continue;
+    good = false;
+    for (int k = 0; k < s->free; k++)
+      if (s->zero[k].cluster == number) s->zero[k].step = s->plan->norm_ev;
+  }
+  for (size_t k = 0; good && k < result->count; k++)
+    order += result->node[k].order * (result->node[k].kind == MHO_NODE_DIP ? 2 : 1);
+  return good && order == s->zeros;
 }
 
 static bool finish(search *s, mho_nodes *result)
 {
-  int order = 0;
   polish_on_levels(s);
+  for (int k = 0; k < s->free; k++) s->zero[k].step = s->plan->norm_ev;
   if (!polish_all(s)) return false;
   add_levels(s);
-  join(s);
-  for (int k = 0; k < s->zeros; k++)
-    if (!make_nodes(s, k, result)) return false;
-  for (size_t k = 0; k < result->count; k++)
-    order += result->node[k].order * (result->node[k].kind == MHO_NODE_DIP ? 2 : 1);
-  return order == s->zeros;
+  if (conclude(s, result)) return true;
+  s->fine = true;
+  for (int k = 0; k < s->free; k++)
+    if (s->zero[k].step > 0) {
+      s->zero[k].kicks = 0;
+      s->zero[k].held = false;
+    }
+  return polish_all(s) && conclude(s, result);
 }
 
 mho_status mho_zeros_find(const mho_plan *plan, const mho_exact_counts *counts, mho_nodes *result,

@@ -14,6 +14,10 @@
 MHO_MUST_USE mho_status mho_nodes_search(const mho_plan *plan, bool patient, mho_nodes *result,
                                          mho_error *error);
 
+/* The same for a plan with one channel a contact and levels, as one, in no order. */
+MHO_MUST_USE mho_status mho_nodes_of_block(const mho_plan *plan, const mho_exact_counts *counts,
+                                           bool patient, mho_nodes *result, mho_error *error);
+
 /* Nodes for one channel a contact on a diagonalised plan, in no order, appended
  * to result->node (room for one a site).  *sure is false, and nothing is
  * appended, where doubles cannot tell one zero from another.
