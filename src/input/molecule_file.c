@@ -394,6 +394,8 @@ static void read_drawn(reader *r, const mho_yaml_node *smiles)
   mho_status status = mho_molecule_read_smiles(text, &place, &r->settings, charge, r->molecule,
                                                r->yaml->error);
   (void)status; /* the cause is in the document's error */
+  r->molecule->smiles = mho_copy_text(text);
+  if (!r->molecule->smiles) fail_memory(r);
 }
 
 /* A molfile, an SDF or an XYZ file beside this one. */

@@ -475,10 +475,7 @@ static void read_screen_question(reader *r, const mho_yaml_node *node)
   char reason[1000];
   if (!mho_yaml_is(&r->yaml, node, MHO_YAML_MAPPING, "screen")) return;
   mho_yaml_check_keys(&r->yaml, node, keys, COUNT(keys));
-  if (mho_settings_merge(&r->study->screen_settings, &r->study->defaults) != MHO_OK ||
-      (r->overrides &&
-       mho_settings_merge(&r->study->screen_settings, r->overrides) != MHO_OK))
-    fail_memory(r);
+  if (mho_settings_merge(&r->study->screen_settings, r->overrides) != MHO_OK) fail_memory(r);
   read_screen_list(r, mho_yaml_require(&r->yaml, node, "list"));
   const mho_yaml_node *goal = mho_yaml_find(node, "goal");
   if (mho_yaml_get_text(&r->yaml, goal, "goal", &text)) {
