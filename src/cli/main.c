@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <errno.h>
 #include <getopt.h>
+#include <signal.h>
 #include <sqlite3.h>
 #include <stdarg.h>
 #include <stdio.h>
@@ -152,7 +153,7 @@ static const option_row options[OPTION_COUNT] = {
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
-    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM | SCREEN, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
+    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM | SCREEN, "seed", 0, "N", "where random draws begin, 0 to 4294967295 (default 1)"},
     [OPT_FERMI] = {SETTINGS, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {SETTINGS, "temperature", 0, "KELVIN", "such as '300 K'"},
@@ -350,6 +351,8 @@ static int read_seed(command *cmd, const char *text)
   if (errno || *end || end == text || *text == '-' || cmd->seed > most)
     return usage_error(cmd->verb, "--seed: '%s' is not allowed; a whole number from 0 to %lu is",
                        text, most);
+  cmd->screen.question.has_seed = true;
+  cmd->screen.question.seed = cmd->seed;
   return EXIT_DONE;
 }
 
@@ -565,4 +568,8 @@ static int dispatch(int argc, char **argv)
                      mho_join_words(names, VERB_COUNT, list, sizeof list));
 }
 
-int main(int argc, char **argv) { return close_stdout(dispatch(argc, argv)); }
+int main(int argc, char **argv)
+{
+  signal(SIGXFSZ, SIG_IGN); /* a limit of file size is a failed write, and told */
+  return close_stdout(dispatch(argc, argv));
+}

@@ -48,7 +48,8 @@ static mho_status find_aims(const mho_screening_question *s, const mho_screen_st
     status = read_stored_requirements(require, a, reason, sizeof reason);
   }
   a->rank.requirement = a->requirement;
-  if (seed) a->rank.seed = strtoull(seed, NULL, 10);
+  if (s->has_seed) a->rank.seed = s->seed;
+  else if (seed) a->rank.seed = strtoull(seed, NULL, 10);
   if (s->has_top) a->rank.top = (size_t)s->top;
   if (status == MHO_OK) return MHO_OK;
   return mho_fail_at(error, MHO_ERR_RANGE, "study", path, 0, 0, NULL, "is damaged: %s", reason);

@@ -13,11 +13,12 @@ enum { SCREENING_REQUIREMENTS_MAX = 32 };
 
 /* What is wanted; what is not said follows from the store. */
 typedef struct {
-  bool has_goal, has_top;
+  bool has_goal, has_top, has_seed;
   mho_screen_goal goal;
   int requirements;
   mho_screen_requirement requirement[SCREENING_REQUIREMENTS_MAX];
   long top;
+  uint64_t seed; /* of the draws by which ranks are judged */
 } mho_screening_question;
 
 /* How it is listed. */
