@@ -448,6 +448,12 @@ static void read_molecule(reader *r, const mho_settings *defaults,
       "fermi", "twist", "parameters", "alternation", "alkyl",     "beta", "temperature",
       "coupling", "structure", "record", "hopping", "torsion"};
   int before = r->yaml->error->count;
+  const mho_yaml_node *study = mho_yaml_find(r->node, "study");
+  if (study && mho_yaml_find(r->node, "molecules")) {
+    mho_yaml_fail(r->yaml, study, MHO_ERR_KEY, "study",
+                  "this is a study, not a molecule; mho run takes it");
+    return;
+  }
   mho_yaml_check_keys(r->yaml, r->node, keys, sizeof keys / sizeof *keys);
   if (!read_settings(r, defaults, overrides)) return;
   read_name(r);
@@ -459,7 +465,11 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   if (structure || smiles) refuse_mixture(r, structure ? "structure" : "smiles");
   if (structure) read_structure(r, structure);
   else if (smiles) read_drawn(r, smiles);
-  else read_explicit(r, overrides);
+  else if (mho_yaml_find(r->node, "sites") || mho_yaml_find(r->node, "bonds"))
+    read_explicit(r, overrides);
+  else
+    mho_yaml_fail(r->yaml, r->node, MHO_ERR_KEY, "smiles",
+                  "one of the keys 'smiles', 'structure' or 'sites' is missing here");
   if (r->yaml->error->count == before)
     mho_yaml_get_torsions(r->yaml, mho_yaml_find(r->node, "torsion"), r->molecule);
 }

@@ -530,10 +530,23 @@ static void read_questions(reader *r)
                   reference->text);
 }
 
+/* A molecule file in place of a study is one mistake, not one for each key. */
+static bool is_molecule(const mho_yaml_node *root)
+{
+  return !mho_yaml_find(root, "study") && !mho_yaml_find(root, "molecules") &&
+         (mho_yaml_find(root, "smiles") || mho_yaml_find(root, "structure") ||
+          mho_yaml_find(root, "sites"));
+}
+
 static void read_study(reader *r)
 {
   static const char *const keys[] = {"study", "defaults", "molecules", "measured", "questions"};
   const char *title;
+  if (is_molecule(r->yaml.root)) {
+    mho_yaml_fail(&r->yaml, r->yaml.root, MHO_ERR_KEY, "study",
+                  "this is a molecule, not a study; a study lists it under 'molecules'");
+    return;
+  }
   mho_yaml_check_keys(&r->yaml, r->yaml.root, keys, COUNT(keys));
   const mho_yaml_node *node = mho_yaml_require(&r->yaml, r->yaml.root, "study");
   if (mho_yaml_get_text(&r->yaml, node, "study", &title)) {
