@@ -95,7 +95,7 @@ enum {
   OPT_MODIFY, OPT_FROM, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_NODES, OPT_CURRENTS,
   OPT_ORBITALS, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
-  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT, OPT_FOLDER,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
   OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
   OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
@@ -170,7 +170,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_CSV] = {TABLES | MEASURED | SCREEN, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES | MEASURED | SCREEN, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES | MEASURED | SCREEN, "exact", 0, NULL, "17 digits instead of 6"},
-    [OPT_OUTPUT] = {EVERY, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_OUTPUT] = {EVERY & ~RUN, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_FOLDER] = {RUN, "output", 'o', "FOLDER", "the results folder (default STUDY-results beside the study)"},
     [OPT_PEAKS] = {HISTOGRAM, "peaks", 0, NULL, "list the peaks of the log histogram"},
     [OPT_COMB] = {HISTOGRAM, "comb", 0, NULL, "list whole multiples of one conductance"},
     [OPT_LINEAR] = {HISTOGRAM, "linear", 0, NULL, "the linear histogram"},
@@ -342,6 +343,15 @@ int read_count(const char *verb_name, const char *option, const char *text, long
   return EXIT_DONE;
 }
 
+int read_svg_name(const command *cmd, const char *option, const char *text, const char **name)
+{
+  size_t length = strlen(text);
+  if (length < 5 || strcmp(text + length - 4, ".svg"))
+    return usage_error(cmd->verb, "--%s: '%s' is not allowed; the name ends in .svg", option, text);
+  *name = text;
+  return EXIT_DONE;
+}
+
 static int read_seed(command *cmd, const char *text)
 {
   const unsigned long most = 4294967295ul;
@@ -433,10 +443,16 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_CURRENTS: cmd->currents = true; return EXIT_DONE;
   case OPT_ORBITALS: cmd->orbitals = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
-  case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
+  case OPT_DRAW:
+    cmd->drawing = text;
+    return strcmp(text, "-") ? read_svg_name(cmd, "draw", text, &cmd->drawing) : EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_VERBOSE: cmd->verbose = true; return EXIT_DONE;
-  case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
+  case OPT_OUTPUT:
+  case OPT_FOLDER:
+    if (!*text) return usage_error(cmd->verb, "--output: a path is missing");
+    cmd->output = text;
+    return EXIT_DONE;
   case OPT_CSV:
   case OPT_JSON:
     if (cmd->format != FORMAT_SCREEN && cmd->format != (which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON))
@@ -548,7 +564,8 @@ static int dispatch(int argc, char **argv)
     print_help();
     return EXIT_INPUT;
   }
-  if (!strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help")) {
+  bool help = !strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help");
+  if (help && argc == 2) {
     print_help();
     return EXIT_DONE;
   }
@@ -556,10 +573,14 @@ static int dispatch(int argc, char **argv)
     print_version();
     return EXIT_DONE;
   }
+  if (help) word = argv[2];
   const char *names[VERB_COUNT];
   for (int i = 0; i < VERB_COUNT; i++) {
     names[i] = verbs[i].name;
-    if (!strcmp(verbs[i].name, word)) return run_verb(&verbs[i], argc - 1, argv + 1);
+    if (strcmp(verbs[i].name, word)) continue;
+    if (!help) return run_verb(&verbs[i], argc - 1, argv + 1);
+    print_verb_help(&verbs[i]);
+    return EXIT_DONE;
   }
   const char *nearest = mho_nearest_word(word, names, VERB_COUNT);
   char list[200];
