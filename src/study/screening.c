@@ -124,9 +124,10 @@ static mho_status list_places(const mho_screening_view *view, const shelf *sh, m
   }
   if (!view->remarks || status != MHO_OK) return status;
   if (shown < ranked)
-    mho_output_note(output, "the first %zu of %zu; --top N lists more, --csv all", shown, ranked);
+    mho_output_note(output, "the first %zu of %zu%s", shown, ranked,
+                    view->eye ? "; --top N lists more, --csv all" : "");
   mho_screening_note(output, &sh->aims.rank, &sh->ranking, view->eye ? warnings : 0);
-  mho_screening_state_note(output, mho_screen_store_counts(sh->store));
+  mho_screening_state_note(output, mho_screen_store_counts(sh->store), view->eye);
   return MHO_OK;
 }
 
