@@ -77,7 +77,8 @@ static const verb verbs[] = {
      "Reads a study file and writes a results folder: report.html, results.json,\n"
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
      "STUDY-results beside the study unless -o says otherwise; an earlier results\n"
-     "folder is replaced only by a complete new one.",
+     "folder is replaced only by a complete new one, and only where nobody has put\n"
+     "files of their own into it.",
      command_run},
 };
 

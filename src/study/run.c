@@ -425,7 +425,8 @@ static mho_status write_report(run *r, mho_error *error)
   if (status == MHO_OK) status = mho_folder_write(&r->folder, "report.html", &buffer, error);
   mho_buffer_clear(&buffer);
   if (status != MHO_OK) return status;
-  status = mho_write_provenance(r->study, r->options->command, &buffer, error);
+  status = mho_write_provenance(r->study, r->options->command, mho_folder_list(&r->folder), &buffer,
+                                error);
   if (status == MHO_OK) status = mho_folder_write(&r->folder, "provenance.json", &buffer, error);
   mho_buffer_clear(&buffer);
   return status;
