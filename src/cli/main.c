@@ -2,15 +2,13 @@
 #include <errno.h>
 #include <getopt.h>
 #include <signal.h>
-#include <sqlite3.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
-#include "base/lapack.h"
 #include "base/text.h"
-#include "cli/command.h"
+#include "cli/help.h"
 
 enum {
   CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32, TWIST = 64,
@@ -21,12 +19,6 @@ enum {
   ALL = MOLECULES | RUN, SETTINGS = ALL | SCREEN
 };
 enum { MEASURED = HISTOGRAM | BLINK, EVERY = SETTINGS | MEASURED };
-
-typedef struct {
-  int bit;
-  const char *name, *arguments, *summary, *details;
-  verb_function *run;
-} verb;
 
 static const verb verbs[] = {
     {CHECK, "check", "MOLECULE...", "say what was understood of a molecule",
@@ -81,14 +73,6 @@ static const verb verbs[] = {
      "files of their own into it.",
      command_run},
 };
-
-typedef struct {
-  int verbs;
-  const char *name;
-  char letter; /* of a short form, or 0 */
-  const char *argument; /* NULL for a flag */
-  const char *help;
-} option_row;
 
 enum {
   OPT_STORE, OPT_RESUME, OPT_SHOW, OPT_FAILED, OPT_DRY_RUN, OPT_GOAL, OPT_REQUIRE, OPT_TOP,
@@ -266,38 +250,6 @@ void print_causes(const command *cmd, mho_error *error)
   }
   if (error->suppressed)
     fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
-}
-
-static void print_help(void)
-{
-  printf("mho - conductance of single-molecule junctions from a tight-binding model\n\n"
-         "usage: mho VERB [options] MOLECULE... | FILE...\n\n");
-  for (int i = 0; i < VERB_COUNT; i++)
-    printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
-  printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
-         "\nA MOLECULE is a molecule file, a list (.smi, .csv), a file of structures\n"
-         "(.mol, .sdf, .xyz) or a SMILES such as 'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
-         "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
-}
-
-static void print_verb_help(const verb *v)
-{
-  printf("usage: mho %s [options] %s\n\n%s\n\n", v->name, v->arguments, v->details);
-  for (int i = 0; i < OPTION_COUNT; i++) {
-    if (!(options[i].verbs & v->bit)) continue;
-    char left[48];
-    const char *argument = options[i].argument;
-    snprintf(left, sizeof left, "%s--%s%s%s", options[i].letter == 'o' ? "-o, " : options[i].letter == 'h' ? "-h, " : "    ",
-             options[i].name, argument ? " " : "", argument ? argument : "");
-    printf("  %-28s %s\n", left, options[i].help);
-  }
-}
-
-static void print_version(void)
-{
-  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\nstores: SQLite %s\n"
-         "licence: GPL-3.0-or-later\n",
-         mho_version(), mho_lapack_description(), sqlite3_libversion());
 }
 
 int read_quantity(const char *verb_name, const char *option, const char *text,
@@ -536,7 +488,7 @@ static int run_verb(const verb *v, int argc, char **argv)
   mho_buffer line = {0};
   join_arguments(argc, argv, &line); /* before getopt reorders them */
   int code = parse(v, argc, argv, &cmd, &help);
-  if (help) print_verb_help(v);
+  if (help) print_verb_help(v, options, OPTION_COUNT);
   else if (code == EXIT_DONE) {
     mho_error error;
     mho_error_init(&error);
@@ -562,12 +514,16 @@ static int dispatch(int argc, char **argv)
 {
   const char *word = argc > 1 ? argv[1] : NULL;
   if (!word) {
-    print_help();
+    print_help(verbs, VERB_COUNT);
     return EXIT_INPUT;
   }
   bool help = !strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help");
   if (help && argc == 2) {
-    print_help();
+    print_help(verbs, VERB_COUNT);
+    return EXIT_DONE;
+  }
+  if (!strcmp(word, "--manual")) {
+    print_manual(verbs, VERB_COUNT, options, OPTION_COUNT);
     return EXIT_DONE;
   }
   if (!strcmp(word, "--version")) {
@@ -580,7 +536,7 @@ static int dispatch(int argc, char **argv)
     names[i] = verbs[i].name;
     if (strcmp(verbs[i].name, word)) continue;
     if (!help) return run_verb(&verbs[i], argc - 1, argv + 1);
-    print_verb_help(&verbs[i]);
+    print_verb_help(&verbs[i], options, OPTION_COUNT);
     return EXIT_DONE;
   }
   const char *nearest = mho_nearest_word(word, names, VERB_COUNT);
