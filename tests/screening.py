@@ -396,7 +396,9 @@ def check_study():
     expect(content("results/screening.db")[0][-10:] == content("study.db")[0][-10:],
            "a study keeps the store")
     report = open("results/report.html").read()
-    expect('id="screening"' in report and "Best of 7 candidates" in report, "the report says so")
+    ranked = len(alone.stdout.splitlines()) - 1
+    expect('id="screening"' in report and f"Best of the {ranked} of 7 candidates that meet" in report,
+           "the report says so", ranked)
     for line, wrong in (("list: nothing.csv", "5:18: list: nothing.csv cannot be read"),
                         ("list: study.csv, require: gap > 2 nm", "5:38: require: "),
                         ("list: study.csv, goal: maximise gab", "5:35: goal: "),

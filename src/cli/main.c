@@ -70,7 +70,7 @@ static const verb verbs[] = {
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
      "STUDY-results beside the study unless -o says otherwise; an earlier results\n"
      "folder is replaced only by a complete new one, and only where nobody has put\n"
-     "files of their own into it.",
+     "files of their own into it.  What was found is told in a few sentences.",
      command_run},
 };
 

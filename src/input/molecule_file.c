@@ -318,7 +318,7 @@ static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *c
     return;
   }
   if (list->count != (size_t)contact->count) {
-    mho_yaml_fail(r->yaml, list, MHO_ERR_SIZE, "amplitude",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_RANGE, "amplitude",
                   "amplitude: %zu values for %d sites; one a site is needed", list->count,
                   contact->count);
     return;

@@ -456,19 +456,15 @@ static mho_status screen(run *r, mho_error *error)
   job.requirement = s->screening.requirement;
   job.requirements = (size_t)s->screening.requirements;
   job.cancel = r->options->cancel;
-  char *path = mho_folder_path(&r->folder, "screening.db"), *best = NULL;
+  char *path = mho_folder_path(&r->folder, "screening.db"), *sentence = NULL;
   mho_screening_view view = {.all = !s->screening.has_top, .remarks = true};
   mho_status status = path ? step(r, "screening", error) : fail_memory(error);
   if (status == MHO_OK) status = mho_screen_run(&job, path, false, &counts, error);
   if (status == MHO_OK)
-    status = mho_screening_list(&s->screening, path, &view, &r->output, &best, error);
+    status = mho_screening_list(&s->screening, path, &view, &r->output, &sentence, error);
   if (status == MHO_OK && counts.bad) status = mho_screening_failures(path, &r->output, error);
-  if (status == MHO_OK && best)
-    mho_answers_add(&r->answers, mho_print_text("Best of %llu candidates: %s.",
-                                                (unsigned long long)counts.good, best));
-  else if (status == MHO_OK)
-    mho_answers_add(&r->answers, mho_copy_text("No candidate of the list meets what is required."));
-  free(best);
+  if (status == MHO_OK) mho_answers_add(&r->answers, sentence);
+  else free(sentence);
   free(path);
   return status;
 }
@@ -506,7 +502,10 @@ static mho_status execute(run *r, mho_error *error)
   if (status == MHO_OK) status = write_results(r, error);
   if (status == MHO_OK) status = write_report(r, error);
   if (status == MHO_OK) status = step(r, "done", error);
-  return status == MHO_OK ? mho_folder_commit(&r->folder, error) : status;
+  if (status == MHO_OK) status = mho_folder_commit(&r->folder, error);
+  for (size_t i = 0; status == MHO_OK && r->options->answer && i < r->answers.count; i++)
+    r->options->answer(r->answers.sentence[i], r->options->user);
+  return status;
 }
 
 static void run_clear(run *r)
