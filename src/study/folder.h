@@ -21,8 +21,8 @@ typedef struct {
 } mho_folder;
 
 /* Refuses a target that is neither absent, nor empty, nor an earlier results
- * folder (one with provenance.json and nothing that it does not list); removes what killed runs left; creates
- * the temporary folder.  Errors: MHO_ERR_RANGE, MHO_ERR_WRITE. */
+ * folder (one with provenance.json and nothing that it does not list); removes
+ * what killed runs left; creates the temporary folder.  Errors: MHO_ERR_RANGE, MHO_ERR_WRITE. */
 MHO_MUST_USE mho_status mho_folder_open(const char *target, mho_folder *folder,
                                         mho_error *error);
 MHO_MUST_USE mho_status mho_folder_write(const mho_folder *folder, const char *name,
