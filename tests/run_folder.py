@@ -159,6 +159,15 @@ def check_same_bytes(scratch):
     expect(digest(one) == before, "with the same bytes, provenance included")
     check_report(one)
     check_tables(one)
+    listed = json.load(open(os.path.join(one, "provenance.json")))["files"]
+    expect(sorted(listed + ["provenance.json"]) == sorted(os.listdir(one)), "provenance lists the files")
+    open(os.path.join(two, "notes.txt"), "w").write("mine")
+    done = mho("run", STUDY, "-o", two)
+    expect(done.returncode == 2 and "'notes.txt'" in done.stderr and
+           os.path.exists(os.path.join(two, "notes.txt")), "a file of somebody else is not thrown away")
+    os.remove(os.path.join(two, "notes.txt"))
+    open(os.path.join(two, ".hidden"), "w").close()
+    expect(mho("run", STUDY, "-o", two).returncode == 0, "hidden files of a desktop do not matter")
 
 
 def check_no_gnuplot(scratch):

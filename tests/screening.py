@@ -282,9 +282,9 @@ def check_disk_full():
     for blocks in (16, 120):  # of 512 bytes
         shutil.rmtree("full", ignore_errors=True)
         os.mkdir("full")
-        done = subprocess.run(["sh", "-c", f"ulimit -f {blocks}; trap '' XFSZ; '{MHO}' screen full.smi "
+        done = subprocess.run(["sh", "-c", f"ulimit -f {blocks}; '{MHO}' screen full.smi "
                                "--store full/r.db"], capture_output=True, text=True)
-        expect(done.returncode == 1 and "full/r.db: cannot be written" in done.stderr,
+        expect(done.returncode == 1 and "full/r.db: cannot be written: File too large" in done.stderr,
                "a full disk ends the work", done.stderr)
         if os.path.exists("full/r.db"):
             rows = content("full/r.db")[1]
@@ -365,6 +365,10 @@ def check_show():
     gaps = [float(row["gap_eV"] or 99) for row in listed("show.db", "--goal=minimise gap")]
     expect(gaps == sorted(gaps), "--goal ranks")
     expect(len(listed("show.db", "--top=3")) == 3, "--top limits")
+    first, again, other = (listed("show.db", "--top=3", f"--seed={seed}") for seed in (1, 1, 2))
+    expect(first == again and [r["top_probability"] for r in first] != [r["top_probability"] for r in other]
+           and [r["candidate"] for r in first] == [r["candidate"] for r in other],
+           "--seed draws the probabilities anew, and changes no place", (first, other))
     names = json.loads(mho("screen", "show.db", "--show", "--json").stdout)["tables"]["screen"]
     expect(names["columns"] == "rank,candidate,smiles,log10_G0,low,high,gap_eV,length_nm,"
            "top_probability,warnings".split(","), "columns are as documented")
@@ -392,7 +396,9 @@ def check_study():
     expect(content("results/screening.db")[0][-10:] == content("study.db")[0][-10:],
            "a study keeps the store")
     report = open("results/report.html").read()
-    expect('id="screening"' in report and "Best of 7 candidates" in report, "the report says so")
+    ranked = len(alone.stdout.splitlines()) - 1
+    expect('id="screening"' in report and f"Best of the {ranked} of 7 candidates that meet" in report,
+           "the report says so", ranked)
     for line, wrong in (("list: nothing.csv", "5:18: list: nothing.csv cannot be read"),
                         ("list: study.csv, require: gap > 2 nm", "5:38: require: "),
                         ("list: study.csv, goal: maximise gab", "5:35: goal: "),
@@ -402,6 +408,28 @@ def check_study():
         said = mho("run", "bad.yaml", "-o", "none")
         expect(said.returncode == 2 and wrong in said.stderr and not os.path.exists("none"),
                f"refused: {line}", said.stderr)
+
+
+def check_precedence():
+    """Command option > molecule file > study defaults, for candidates too."""
+    os.makedirs("own")
+    write("own/own.yaml", ["name: own", "smiles: Nc1ccc(N)cc1", "beta: -2.4 eV"])
+    write("own/plain.yaml", ["name: plain", "smiles: Sc1ccc(S)cc1"])
+    write("own.yaml", ["study: which of them?", "defaults: {beta: -3 eV}", "molecules:",
+                       "  - {file: own/*.yaml}", "questions: {screen: {list: own}}"])
+    for option in ([], ["--beta=-2 eV"]):
+        done = mho("run", "own.yaml", "-o", "own-results", "--quiet", *option)
+        expect(done.returncode == 0, "a study of molecule files screens them", done.stderr)
+        alone = {row["molecule"]: row["log10_G0"] for row in rows_of("own-results/conductance.csv")}
+        ranked = {row["candidate"]: row for row in rows_of("own-results/screen.csv")}
+        expect(len(ranked) == 2 and all(row["log10_G0"] == alone[name] for name, row in ranked.items()),
+               "a candidate has the settings of its molecule", (ranked, alone))
+        expect(ranked["own"]["smiles"] == "Nc1ccc(N)cc1", "a molecule file's SMILES is listed", ranked)
+
+
+def rows_of(path):
+    with open(path, newline="") as file:
+        return list(csv.DictReader(file))
 
 
 def check_memory():
@@ -421,7 +449,7 @@ def check_memory():
 
 def main():
     checks = [check_lists, check_structures, check_numbers, check_threads, check_refusals,
-              check_show, check_study, check_two_writers, check_disk_full, check_interrupted, check_memory, check_killed]
+              check_show, check_study, check_precedence, check_two_writers, check_disk_full, check_interrupted, check_memory, check_killed]
     for check in checks:
         scratch = tempfile.mkdtemp()
         os.chdir(scratch)

@@ -94,6 +94,7 @@ enum { MHO_LEFT, MHO_RIGHT };
 typedef struct {
   char *name;
   char *source; /* file it was read from, or NULL */
+  char *smiles; /* that a molecule file gives, or NULL */
   const mho_parameter_set *parameters;
   double beta_ev;
   double temperature_k;

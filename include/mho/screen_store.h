@@ -32,6 +32,7 @@ typedef struct {
 typedef struct {
   const char *list;             /* .smi, .csv, .tsv, .sdf, .mol, .xyz or a folder */
   const mho_settings *settings; /* NULL: none; above what molecule files say */
+  const mho_settings *defaults; /* NULL: none; below what molecule files say */
   mho_screen_settings screen;
   /* Kept in the store for those who look at it; goal NULL: the default one. */
   const mho_screen_goal *goal;

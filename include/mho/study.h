@@ -15,6 +15,8 @@ typedef struct {
   const char *command; /* for provenance.json; NULL for none */
   /* Called before each step; may be NULL. */
   void (*progress)(int done, int total, const char *step, void *user);
+  /* Called in the end with each sentence that the report begins with; may be NULL. */
+  void (*answer)(const char *sentence, void *user);
   void *user;
   /* The run ends cleanly, leaving nothing, soon after this becomes non-zero. */
   const volatile int *cancel;

@@ -105,6 +105,8 @@ int read_require(command *cmd, const char *text);
 int read_goal(command *cmd, const char *text);
 
 /* An option of `histogram` or `blink`. */
+/* The name of a picture; it ends in .svg. */
+int read_svg_name(const command *cmd, const char *option, const char *text, const char **name);
 int read_measured_option(command *cmd, const char *name, const char *text);
 
 /* A bar over the bytes that were read, on a terminal after a second. */

@@ -1,15 +1,14 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include <errno.h>
 #include <getopt.h>
-#include <sqlite3.h>
+#include <signal.h>
 #include <stdarg.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
-#include "base/lapack.h"
 #include "base/text.h"
-#include "cli/command.h"
+#include "cli/help.h"
 
 enum {
   CHECK = 1, CONDUCTANCE = 2, TRANSMISSION = 4, RUN = 8, HISTOGRAM = 16, BLINK = 32, TWIST = 64,
@@ -20,12 +19,6 @@ enum {
   ALL = MOLECULES | RUN, SETTINGS = ALL | SCREEN
 };
 enum { MEASURED = HISTOGRAM | BLINK, EVERY = SETTINGS | MEASURED };
-
-typedef struct {
-  int bit;
-  const char *name, *arguments, *summary, *details;
-  verb_function *run;
-} verb;
 
 static const verb verbs[] = {
     {CHECK, "check", "MOLECULE...", "say what was understood of a molecule",
@@ -78,17 +71,10 @@ static const verb verbs[] = {
      "Reads a study file and writes a results folder: report.html, results.json,\n"
      "provenance.json, one CSV a table and one SVG a figure.  The folder is\n"
      "STUDY-results beside the study unless -o says otherwise; an earlier results\n"
-     "folder is replaced only by a complete new one.",
+     "folder is replaced only by a complete new one, and only where nobody has put\n"
+     "files of their own into it.  What was found is told in a few sentences.",
      command_run},
 };
-
-typedef struct {
-  int verbs;
-  const char *name;
-  char letter; /* of a short form, or 0 */
-  const char *argument; /* NULL for a flag */
-  const char *help;
-} option_row;
 
 enum {
   OPT_STORE, OPT_RESUME, OPT_SHOW, OPT_FAILED, OPT_DRY_RUN, OPT_GOAL, OPT_REQUIRE, OPT_TOP,
@@ -96,7 +82,7 @@ enum {
   OPT_MODIFY, OPT_FROM, OPT_EVERY_SITE, OPT_SAMPLES, OPT_AT, OPT_POLES, OPT_WIDTHS, OPT_NODES,
   OPT_CURRENTS, OPT_ORBITALS, OPT_CHANNELS, OPT_PARTS, OPT_DRAW, OPT_WINDOW, OPT_SENSITIVITY,
   OPT_SEED, OPT_FERMI, OPT_TEMPERATURE, OPT_COUPLING, OPT_BETA, OPT_PARAMETERS, OPT_TWIST,
-  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT,
+  OPT_ALTERNATION, OPT_ALKYL, OPT_HOPPING, OPT_CSV, OPT_JSON, OPT_EXACT, OPT_OUTPUT, OPT_FOLDER,
   OPT_PEAKS, OPT_COMB, OPT_LINEAR, OPT_MAP, OPT_PLATEAUS, OPT_CLUSTERS, OPT_CORRELATION, OPT_FLICKER,
   OPT_BINS, OPT_CONDUCTANCES, OPT_DISTANCES, OPT_SEARCH, OPT_CROSSING, OPT_SNAP_BACK, OPT_PLATEAU_LENGTH,
   OPT_ALL_TRACES, OPT_STEPS, OPT_DWELLS, OPT_LEVELS, OPT_BANDWIDTH, OPT_DEAD_TIME, OPT_NO_DRIFT,
@@ -160,7 +146,7 @@ static const option_row options[OPTION_COUNT] = {
                     "half width of the alignment window (default '0.5 eV')"},
     [OPT_SENSITIVITY] = {CONDUCTANCE, "sensitivity", 0, NULL,
                          "list the parameters that matter most, and the error they make"},
-    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM | SCREEN, "seed", 0, "N", "of random draws, 0 to 4294967295 (default 1)"},
+    [OPT_SEED] = {CONDUCTANCE | HISTOGRAM | SCREEN, "seed", 0, "N", "where random draws begin, 0 to 4294967295 (default 1)"},
     [OPT_FERMI] = {SETTINGS, "fermi", 0, "LEVEL",
                    "'0.2 eV', midgap, 'homo + 1.2 eV' or 'lumo - 0.3 eV'"},
     [OPT_TEMPERATURE] = {SETTINGS, "temperature", 0, "KELVIN", "such as '300 K'"},
@@ -178,7 +164,8 @@ static const option_row options[OPTION_COUNT] = {
     [OPT_CSV] = {TABLES | MEASURED | SCREEN, "csv", 0, NULL, "write CSV"},
     [OPT_JSON] = {MOLECULES | MEASURED | SCREEN, "json", 0, NULL, "write JSON"},
     [OPT_EXACT] = {MOLECULES | MEASURED | SCREEN, "exact", 0, NULL, "17 digits instead of 6"},
-    [OPT_OUTPUT] = {EVERY, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_OUTPUT] = {EVERY & ~RUN, "output", 'o', "PATH", "write there instead of to the screen"},
+    [OPT_FOLDER] = {RUN, "output", 'o', "FOLDER", "the results folder (default STUDY-results beside the study)"},
     [OPT_PEAKS] = {HISTOGRAM, "peaks", 0, NULL, "list the peaks of the log histogram"},
     [OPT_COMB] = {HISTOGRAM, "comb", 0, NULL, "list whole multiples of one conductance"},
     [OPT_LINEAR] = {HISTOGRAM, "linear", 0, NULL, "the linear histogram"},
@@ -274,38 +261,6 @@ void print_causes(const command *cmd, mho_error *error)
     fprintf(stderr, "mho %s: %d further mistakes are not shown\n", cmd->verb, error->suppressed);
 }
 
-static void print_help(void)
-{
-  printf("mho - conductance of single-molecule junctions from a tight-binding model\n\n"
-         "usage: mho VERB [options] MOLECULE... | FILE...\n\n");
-  for (int i = 0; i < VERB_COUNT; i++)
-    printf("  %-13s %s\n", verbs[i].name, verbs[i].summary);
-  printf("\n  mho VERB --help tells the options of a verb, mho --version the build.\n"
-         "\nA MOLECULE is a molecule file, a list (.smi, .csv), a file of structures\n"
-         "(.mol, .sdf, .xyz) or a SMILES such as 'Nc1ccc(N)cc1'.\nQuantities carry their unit: '0.3 eV', '300 K', '38 deg', '0.2 V'.\n"
-         "Exit status: 0 done, 1 failed while running, 2 bad usage or input.\n");
-}
-
-static void print_verb_help(const verb *v)
-{
-  printf("usage: mho %s [options] %s\n\n%s\n\n", v->name, v->arguments, v->details);
-  for (int i = 0; i < OPTION_COUNT; i++) {
-    if (!(options[i].verbs & v->bit)) continue;
-    char left[48];
-    const char *argument = options[i].argument;
-    snprintf(left, sizeof left, "%s--%s%s%s", options[i].letter == 'o' ? "-o, " : options[i].letter == 'h' ? "-h, " : "    ",
-             options[i].name, argument ? " " : "", argument ? argument : "");
-    printf("  %-28s %s\n", left, options[i].help);
-  }
-}
-
-static void print_version(void)
-{
-  printf("mho %s\nlinear algebra: %s\nextended precision: 113 bits\nstores: SQLite %s\n"
-         "licence: GPL-3.0-or-later\n",
-         mho_version(), mho_lapack_description(), sqlite3_libversion());
-}
-
 int read_quantity(const char *verb_name, const char *option, const char *text,
                   mho_dimension dimension, double low, double high, double *value)
 {
@@ -350,6 +305,15 @@ int read_count(const char *verb_name, const char *option, const char *text, long
   return EXIT_DONE;
 }
 
+int read_svg_name(const command *cmd, const char *option, const char *text, const char **name)
+{
+  size_t length = strlen(text);
+  if (length < 5 || strcmp(text + length - 4, ".svg"))
+    return usage_error(cmd->verb, "--%s: '%s' is not allowed; the name ends in .svg", option, text);
+  *name = text;
+  return EXIT_DONE;
+}
+
 static int read_seed(command *cmd, const char *text)
 {
   const unsigned long most = 4294967295ul;
@@ -359,6 +323,8 @@ static int read_seed(command *cmd, const char *text)
   if (errno || *end || end == text || *text == '-' || cmd->seed > most)
     return usage_error(cmd->verb, "--seed: '%s' is not allowed; a whole number from 0 to %lu is",
                        text, most);
+  cmd->screen.question.has_seed = true;
+  cmd->screen.question.seed = cmd->seed;
   return EXIT_DONE;
 }
 
@@ -442,10 +408,16 @@ static int read_option(command *cmd, int which, const char *text)
   case OPT_WIDTHS: cmd->widths = true; return EXIT_DONE;
   case OPT_PARTS: cmd->parts = true; return EXIT_DONE;
   case OPT_EXACT: cmd->exact = true; return EXIT_DONE;
-  case OPT_DRAW: cmd->drawing = text; return EXIT_DONE;
+  case OPT_DRAW:
+    cmd->drawing = text;
+    return strcmp(text, "-") ? read_svg_name(cmd, "draw", text, &cmd->drawing) : EXIT_DONE;
   case OPT_QUIET: cmd->quiet = true; return EXIT_DONE;
   case OPT_VERBOSE: cmd->verbose = true; return EXIT_DONE;
-  case OPT_OUTPUT: cmd->output = text; return EXIT_DONE;
+  case OPT_OUTPUT:
+  case OPT_FOLDER:
+    if (!*text) return usage_error(cmd->verb, "--output: a path is missing");
+    cmd->output = text;
+    return EXIT_DONE;
   case OPT_CSV:
   case OPT_JSON:
     if (cmd->format != FORMAT_SCREEN && cmd->format != (which == OPT_CSV ? FORMAT_CSV : FORMAT_JSON))
@@ -528,7 +500,7 @@ static int run_verb(const verb *v, int argc, char **argv)
   mho_buffer line = {0};
   join_arguments(argc, argv, &line); /* before getopt reorders them */
   int code = parse(v, argc, argv, &cmd, &help);
-  if (help) print_verb_help(v);
+  if (help) print_verb_help(v, options, OPTION_COUNT);
   else if (code == EXIT_DONE) {
     mho_error error;
     mho_error_init(&error);
@@ -554,21 +526,30 @@ static int dispatch(int argc, char **argv)
 {
   const char *word = argc > 1 ? argv[1] : NULL;
   if (!word) {
-    print_help();
+    print_help(verbs, VERB_COUNT);
     return EXIT_INPUT;
   }
-  if (!strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help")) {
-    print_help();
+  bool help = !strcmp(word, "--help") || !strcmp(word, "-h") || !strcmp(word, "help");
+  if (help && argc == 2) {
+    print_help(verbs, VERB_COUNT);
+    return EXIT_DONE;
+  }
+  if (!strcmp(word, "--manual")) {
+    print_manual(verbs, VERB_COUNT, options, OPTION_COUNT);
     return EXIT_DONE;
   }
   if (!strcmp(word, "--version")) {
     print_version();
     return EXIT_DONE;
   }
+  if (help) word = argv[2];
   const char *names[VERB_COUNT];
   for (int i = 0; i < VERB_COUNT; i++) {
     names[i] = verbs[i].name;
-    if (!strcmp(verbs[i].name, word)) return run_verb(&verbs[i], argc - 1, argv + 1);
+    if (strcmp(verbs[i].name, word)) continue;
+    if (!help) return run_verb(&verbs[i], argc - 1, argv + 1);
+    print_verb_help(&verbs[i], options, OPTION_COUNT);
+    return EXIT_DONE;
   }
   const char *nearest = mho_nearest_word(word, names, VERB_COUNT);
   char list[200];
@@ -577,4 +558,8 @@ static int dispatch(int argc, char **argv)
                      mho_join_words(names, VERB_COUNT, list, sizeof list));
 }
 
-int main(int argc, char **argv) { return close_stdout(dispatch(argc, argv)); }
+int main(int argc, char **argv)
+{
+  signal(SIGXFSZ, SIG_IGN); /* a limit of file size is a failed write, and told */
+  return close_stdout(dispatch(argc, argv));
+}

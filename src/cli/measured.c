@@ -137,15 +137,6 @@ static int read_number(command *cmd, const char *name, const char *text)
   return code;
 }
 
-static int read_figure(command *cmd, const char *text)
-{
-  size_t length = strlen(text);
-  if (length < 5 || strcmp(text + length - 4, ".svg"))
-    return usage_error(cmd->verb, "--figure: '%s' is not allowed; the name ends in .svg", text);
-  cmd->measured.figure = text;
-  return EXIT_DONE;
-}
-
 int read_measured_option(command *cmd, const char *name, const char *text)
 {
   measured_options *m = &cmd->measured;
@@ -165,7 +156,7 @@ int read_measured_option(command *cmd, const char *name, const char *text)
                       &m->search_low_g0, &m->search_high_g0);
   }
   if (!strcmp(name, "quantity")) return read_trace_quantity(cmd, text);
-  if (!strcmp(name, "figure")) return read_figure(cmd, text);
+  if (!strcmp(name, "figure")) return read_svg_name(cmd, name, text, &cmd->measured.figure);
   if (strcmp(name, "columns")) return read_number(cmd, name, text);
   m->traces.columns = text;
   return EXIT_DONE;

@@ -186,8 +186,9 @@ static int check_looking(const command *cmd)
   if (changes_results(&cmd->overrides) || cmd->has_window)
     return usage_error(cmd->verb, "%s lists what was computed; options of the computation belong to "
                                   "the screening itself", what);
-  if (s->failed && (s->question.has_goal || s->question.requirements || s->question.has_top))
-    return usage_error(cmd->verb, "--goal, --require and --top go with --show");
+  if (s->failed && (s->question.has_goal || s->question.requirements || s->question.has_top ||
+                    s->question.has_seed))
+    return usage_error(cmd->verb, "--goal, --require, --top and --seed go with --show");
   return EXIT_DONE;
 }
 

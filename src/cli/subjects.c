@@ -204,13 +204,29 @@ static mho_status read_records(const command *cmd, const char *file, bool need_c
   return status;
 }
 
+/* Its causes name the argument; what is no SMILES may be a file's name mistyped. */
+static mho_status read_smiles(const command *cmd, const char *argument, mho_molecule *molecule,
+                              mho_error *error)
+{
+  mho_place place = {"SMILES", 0, 0, false};
+  int before = error->count;
+  mho_status status =
+      mho_molecule_read_smiles(argument, &place, &cmd->overrides, 0, molecule, error);
+  for (int i = before; i < error->count; i++) {
+    mho_cause *cause = &error->cause[i];
+    if (!strcmp(cause->file, place.file))
+      snprintf(cause->file, sizeof cause->file,
+               status == MHO_ERR_SYNTAX ? "'%.100s' is no file, and as a SMILES" : "SMILES '%.100s'",
+               argument);
+  }
+  return status;
+}
+
 /* A file with one molecule, or a SMILES. */
 static mho_status read_molecule(const command *cmd, const char *argument, bool is_file,
                                 mho_molecule *molecule, mho_error *error)
 {
-  mho_place place = {"SMILES", 0, 0, false};
-  if (!is_file)
-    return mho_molecule_read_smiles(argument, &place, &cmd->overrides, 0, molecule, error);
+  if (!is_file) return read_smiles(cmd, argument, molecule, error);
   if (!mho_records_is_file_name(argument))
     return mho_molecule_read(argument, NULL, &cmd->overrides, molecule, error);
   molecule->source = mho_copy_text(argument);

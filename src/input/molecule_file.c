@@ -322,7 +322,7 @@ static void read_amplitudes(reader *r, const mho_yaml_node *node, mho_contact *c
     return;
   }
   if (list->count != (size_t)contact->count) {
-    mho_yaml_fail(r->yaml, list, MHO_ERR_SIZE, "amplitude",
+    mho_yaml_fail(r->yaml, list, MHO_ERR_RANGE, "amplitude",
                   "amplitude: %zu values for %d sites; one a site is needed", list->count,
                   contact->count);
     return;
@@ -468,6 +468,8 @@ static void read_drawn(reader *r, const mho_yaml_node *smiles)
   mho_status status = mho_molecule_read_smiles(text, &place, &r->settings, charge, r->molecule,
                                                r->yaml->error);
   (void)status; /* the cause is in the document's error */
+  r->molecule->smiles = mho_copy_text(text);
+  if (!r->molecule->smiles) fail_memory(r);
 }
 
 /* A molfile, an SDF or an XYZ file beside this one. */
@@ -520,6 +522,12 @@ static void read_molecule(reader *r, const mho_settings *defaults,
       "fermi", "twist", "parameters", "alternation", "alkyl",     "beta", "temperature",
       "coupling", "structure", "record", "hopping", "torsion"};
   int before = r->yaml->error->count;
+  const mho_yaml_node *study = mho_yaml_find(r->node, "study");
+  if (study && mho_yaml_find(r->node, "molecules")) {
+    mho_yaml_fail(r->yaml, study, MHO_ERR_KEY, "study",
+                  "this is a study, not a molecule; mho run takes it");
+    return;
+  }
   mho_yaml_check_keys(r->yaml, r->node, keys, sizeof keys / sizeof *keys);
   if (!read_settings(r, defaults, overrides)) return;
   read_name(r);
@@ -532,7 +540,11 @@ static void read_molecule(reader *r, const mho_settings *defaults,
   r->drawn = structure || smiles;
   if (structure) read_structure(r, structure);
   else if (smiles) read_drawn(r, smiles);
-  else read_explicit(r, overrides);
+  else if (mho_yaml_find(r->node, "sites") || mho_yaml_find(r->node, "bonds"))
+    read_explicit(r, overrides);
+  else
+    mho_yaml_fail(r->yaml, r->node, MHO_ERR_KEY, "smiles",
+                  "one of the keys 'smiles', 'structure' or 'sites' is missing here");
   if (r->drawn) read_electrodes(r);
   if (r->drawn) override_electrodes(r, overrides);
   if (r->yaml->error->count == before)

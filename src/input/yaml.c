@@ -18,6 +18,7 @@ enum {
 
 typedef struct {
   mho_yaml *document;
+  const char *input; /* the text of the file */
   yaml_parser_t parser;
   yaml_event_t event;
   size_t nodes;
@@ -57,6 +58,27 @@ static mho_status fail_memory(const walker *w)
                      NULL, "out of memory");
 }
 
+/* What libyaml stumbles over most, in words: a tab, and a SMILES without the
+ * quotes that its brackets need.  NULL: nothing of the kind in this line. */
+static const char *find_habit(const walker *w, size_t number)
+{
+  const char *line = w->input;
+  for (; line && number > 0; number--) {
+    line = strchr(line, '\n');
+    if (line) line++;
+  }
+  if (!line) return NULL;
+  size_t length = strcspn(line, "\r\n"), blanks = strspn(line, " \t");
+  if (memchr(line, '\t', blanks < length ? blanks : length))
+    return "a tab stands before the first word; YAML is indented with blanks";
+  const char *smiles = strstr(line, "smiles:");
+  if (!smiles || smiles >= line + length) return NULL;
+  smiles += strlen("smiles:");
+  smiles += strspn(smiles, " ");
+  return *smiles == '"' || *smiles == '\'' ? NULL
+                                          : "write the SMILES in quotes, smiles: \"[SH:1]c1...\"";
+}
+
 static mho_status next_event(walker *w)
 {
   yaml_event_delete(&w->event);
@@ -64,6 +86,8 @@ static mho_status next_event(walker *w)
   memset(&w->event, 0, sizeof w->event);
   if (w->parser.error == YAML_MEMORY_ERROR) return fail_memory(w);
   yaml_mark_t mark = w->parser.problem_mark;
+  const char *habit = find_habit(w, mark.line);
+  if (habit) return fail_mark(w, mark, MHO_ERR_SYNTAX, habit);
   return mho_fail_at(w->document->error, MHO_ERR_SYNTAX, "input", w->document->file,
                      (long)mark.line + 1, (long)mark.column + 1, NULL,
                      "this is not valid YAML: %s%s%s",
@@ -260,7 +284,9 @@ mho_status mho_yaml_read(const char *path, mho_yaml *document, mho_error *error)
   if (status == MHO_OK && !yaml_parser_initialize(&w.parser)) status = fail_memory(&w);
   else if (status == MHO_OK) {
     yaml_parser_set_encoding(&w.parser, YAML_UTF8_ENCODING);
-    yaml_parser_set_input_string(&w.parser, (const unsigned char *)text, size);
+    size_t mark = !strncmp(text, "\xEF\xBB\xBF", 3) ? 3 : 0; /* some editors begin with it */
+    w.input = text + mark;
+    yaml_parser_set_input_string(&w.parser, (const unsigned char *)w.input, size - mark);
     status = read_document(&w);
     yaml_event_delete(&w.event);
     yaml_parser_delete(&w.parser);

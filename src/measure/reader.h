@@ -57,6 +57,7 @@ struct mho_trace_reader {
   size_t count;      /* filled */
   bool in_trace;     /* a piece of the current trace has been handed out */
   uint64_t trace, trace_point;
+  uint64_t points_at_open;            /* of the report, where the file began */
   uint64_t bytes_before, total_bytes; /* of the files that are done; of all */
   mho_trace_report report;
 };

@@ -157,6 +157,7 @@ static mho_status open_file(mho_trace_reader *reader, mho_error *error)
 {
   reader->report.files++;
   reader->text = (mho_text_state){0};
+  reader->points_at_open = reader->report.points;
   reader->count = 0;
   start_trace(reader);
   mho_status status =
@@ -318,7 +319,7 @@ mho_status mho_trace_reader_next(mho_trace_reader *reader, mho_trace_chunk *chun
     mho_status status = reader->open ? MHO_OK : open_file(reader, error);
     uint64_t points_before = reader->report.points;
     if (status == MHO_OK) status = next_piece(reader, chunk, &file_done, error);
-    if (status == MHO_OK && file_done && !reader->npy && !reader->text.started)
+    if (status == MHO_OK && file_done && reader->report.points == reader->points_at_open)
       status = mho_fail_at(error, MHO_ERR_SYNTAX, "measure", reader->source.path,
                            reader->text.line, 1, NULL, "the file holds no numbers; a trace is needed");
     if (status != MHO_OK) {

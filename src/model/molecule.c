@@ -23,6 +23,7 @@ void mho_molecule_clear(mho_molecule *molecule)
 {
   free(molecule->name);
   free(molecule->source);
+  free(molecule->smiles);
   free(molecule->site);
   free(molecule->bond);
   free(molecule->linker);

@@ -352,7 +352,11 @@ static mho_status count_electrons(conversion *c)
 
 static mho_status fill_contacts(conversion *c)
 {
-  if (!c->contact[0].count) return NOTE(c, "no contacts: there are not exactly two linkers");
+  if (!c->contact[0].count) {
+    int found = c->linkers.count;
+    return found ? NOTE(c, "no contacts: two linkers are needed, %d found", found)
+                 : NOTE(c, "no contacts: two linkers are needed, none is found");
+  }
   for (int side = 0; side < 2; side++) {
     mho_status status = fill_contact(c, side);
     if (status != MHO_OK) return status;

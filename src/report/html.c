@@ -253,13 +253,13 @@ static void write_folded(const mho_output *output, const char *name, mho_buffer 
 {
   const mho_table *table = mho_output_find(output, name);
   if (!table) return;
-  if (mho_table_rows(table) > FOLDED_MAX) {
-    mho_buffer_print(buffer, "<p class=\"of\">%zu rows are in <code>%s.csv</code>.</p>\n",
-                     mho_table_rows(table), name);
+  size_t rows = mho_table_rows(table);
+  if (rows > FOLDED_MAX) {
+    mho_buffer_print(buffer, "<p class=\"of\">%zu rows are in <code>%s.csv</code>.</p>\n", rows, name);
     return;
   }
-  mho_buffer_print(buffer, "<details><summary>%zu rows, as in <code>%s.csv</code></summary>\n",
-                   mho_table_rows(table), name);
+  mho_buffer_print(buffer, "<details><summary>%zu row%s, as in <code>%s.csv</code></summary>\n", rows,
+                   rows == 1 ? "" : "s", name);
   write_table(output, name, buffer);
   mho_buffer_add(buffer, "</details>\n");
 }

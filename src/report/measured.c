@@ -230,10 +230,12 @@ const mho_peak *mho_main_peak(const mho_peaks *peaks)
   return main;
 }
 
+static const char *plural(uint64_t count) { return count == 1 ? "" : "s"; }
+
 void mho_reading_note(mho_output *output, const mho_trace_report *r, double floor_g0)
 {
-  mho_output_note(output, "%llu traces, %llu points, %llu files", BIG(r->traces), BIG(r->points),
-                  BIG(r->files));
+  mho_output_note(output, "%llu trace%s, %llu points, %llu file%s", BIG(r->traces), plural(r->traces),
+                  BIG(r->points), BIG(r->files), plural(r->files));
   if (floor_g0 > 0.0)
     mho_output_note(output,
                     "points that do not count as they are: %llu not a number, %llu zero or negative "
@@ -245,6 +247,8 @@ void mho_reading_note(mho_output *output, const mho_trace_report *r, double floo
                     "points that do not count as they are: %llu not a number, %llu zero or "
                     "negative, %llu saturated; no floor is given, so none is below it",
                     BIG(r->not_finite), BIG(r->not_positive), BIG(r->saturated));
+  if (r->not_positive > r->points - r->points / 4)
+    mho_output_note(output, "most points are zero or negative: a bias has the sign of its current");
   if (r->failed_files > 0)
     mho_output_note(output,
                     "%llu of %llu files could not be read to their end (%llu cut off); %llu "

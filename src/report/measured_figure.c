@@ -239,7 +239,7 @@ void mho_figure_comb(mho_buffer *script, const mho_histogram *h, const mho_trace
   set_range(script, "xrange", low, high);
   set_range(script, "yrange", 0.0, 1.15 * top);
   mho_buffer_add(script, "set xlabel 'conductance (G_0)'\nset ylabel 'points per trace and G_0'\n"
-                         "set format y '%.1s%c'\nset format x '%.3g'\n"
+                         "set format y '%.1s%c'\nset format x '%.3g'\nset key maxcols 2\n"
                          "plot $counts with fillsteps fillstyle solid linecolor '" AREA
                          "' title 'linear histogram'");
   if (comb->count > 0)

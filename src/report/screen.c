@@ -145,13 +145,13 @@ void mho_screening_note(mho_output *output, const mho_screen_rank_options *optio
   note_warnings(output, warnings);
 }
 
-void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts)
+void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts, bool eye)
 {
   unsigned long long done = counts->good + counts->bad, rows = counts->rows;
   if (done < rows)
     mho_output_note(output, "unfinished: %llu of %llu rows are done; mho screen LIST --store "
                             "... --resume goes on", done, rows);
   if (counts->bad)
-    mho_output_note(output, "%llu of %llu rows are bad; --failed lists them",
-                    (unsigned long long)counts->bad, done);
+    mho_output_note(output, "%llu of %llu rows are bad%s", (unsigned long long)counts->bad, done,
+                    eye ? "; --failed lists them" : "");
 }

@@ -298,9 +298,9 @@ void mho_twist_note(mho_output *output, const char *molecule, const char *bond,
                   molecule, bond, limit_deg[0], limit_deg[1]);
   mho_output_note(output,
                   "%s, %s: T at the Fermi level goes as (cos^2 angle)^%.2f, residual %.3f decades; "
-                  "cos^2 itself %s %g deg%s",
+                  "a plain cos^2 law holds within 5 %% %s %g deg%s",
                   molecule, bond, law->exponent, law->residual_decades,
-                  law->reason ? "keeps 5 % only to" : "keeps 5 % to", law->holds_to_deg,
+                  law->reason ? "only up to" : "up to", law->holds_to_deg,
                   reason[law->reason]);
 }
 

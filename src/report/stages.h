@@ -180,7 +180,7 @@ void mho_failures_row(mho_table *table, const mho_screen_text *text);
  * words; how far the screening has come. */
 void mho_screening_note(mho_output *output, const mho_screen_rank_options *options,
                         const mho_screen_ranking *ranking, unsigned warnings);
-void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts);
+void mho_screening_state_note(mho_output *output, const mho_screen_counts *counts, bool eye);
 
 /* What was assumed for a molecule: beta, parameters, couplings, Fermi level. */
 void mho_assumption_note(mho_output *output, const mho_molecule *molecule,

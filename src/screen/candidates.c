@@ -17,7 +17,8 @@
 
 struct mho_candidates {
   char *path;
-  const mho_settings *settings; /* or NULL */
+  const mho_settings *defaults, *settings; /* or NULL */
+  mho_settings both;                       /* one on top of the other */
   const char *format;
   uint64_t row; /* of the candidate before */
   mho_list *list;
@@ -137,16 +138,20 @@ static mho_status open_source(mho_candidates *c, mho_error *error)
   return mho_list_open(c->path, &c->list, error);
 }
 
-mho_status mho_candidates_open(const char *path, const mho_settings *settings,
-                               mho_candidates **candidates, mho_error *error)
+mho_status mho_candidates_open(const char *path, const mho_settings *defaults,
+                               const mho_settings *settings, mho_candidates **candidates,
+                               mho_error *error)
 {
   *candidates = NULL;
   mho_candidates *c = calloc(1, sizeof *c);
   if (!c) return no_memory(error);
+  c->defaults = defaults;
   c->settings = settings;
   c->path = mho_copy_text(path);
   for (size_t n = c->path ? strlen(c->path) : 0; n > 1 && c->path[n - 1] == '/';) c->path[--n] = '\0';
-  mho_status status = c->path ? open_source(c, error) : no_memory(error);
+  bool good = c->path && mho_settings_merge(&c->both, defaults) == MHO_OK &&
+              mho_settings_merge(&c->both, settings) == MHO_OK;
+  mho_status status = good ? open_source(c, error) : no_memory(error);
   if (status == MHO_OK) *candidates = c;
   else mho_candidates_close(c);
   return status;
@@ -160,8 +165,11 @@ void mho_candidates_close(mho_candidates *c)
   for (size_t i = 0; i < c->files; i++) free(c->file[i]);
   free(c->file);
   free(c->path);
+  mho_settings_clear(&c->both);
   free(c);
 }
+
+const mho_settings *mho_candidates_settings(const mho_candidates *c) { return &c->both; }
 
 const char *mho_candidates_format(const mho_candidates *c) { return c->format; }
 size_t mho_candidates_ignored(const mho_candidates *c) { return c->ignored; }
@@ -215,7 +223,7 @@ static mho_status next_record(mho_candidates *c, mho_candidate *candidate, mho_r
   mho_status status = MHO_OK;
   if (c->passing) mho_records_skip(c->records, record);
   else
-    status = mho_molecule_read_record(c->records, c->settings, 0, &candidate->molecule, record,
+    status = mho_molecule_read_record(c->records, &c->both, 0, &candidate->molecule, record,
                                       &own);
   if (status == MHO_ERR_FILE)
     return mho_fail_at(error, status, "screen", c->path, 0, 0, NULL, "%s", own.cause[0].message);
@@ -240,7 +248,7 @@ static mho_status read_yaml(mho_candidates *c, const char *path, mho_candidate *
   candidate->row = ++c->row;
   c->at++;
   if (c->passing) return MHO_OK;
-  mho_status status = mho_molecule_read(path, NULL, c->settings, &candidate->molecule, &own);
+  mho_status status = mho_molecule_read(path, c->defaults, c->settings, &candidate->molecule, &own);
   if (status == MHO_OK) candidate->name = mho_copy_text(candidate->molecule.name);
   return judge(candidate, status, &own, error);
 }

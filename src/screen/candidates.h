@@ -20,7 +20,7 @@ typedef struct {
   long line;       /* of the list; 0 in a folder */
   mho_place place; /* of the SMILES; the file's name belongs to the list */
   char *name;
-  char *smiles;          /* NULL where the list has none; not read yet */
+  char *smiles;          /* of a list, not read yet; else NULL */
   mho_molecule molecule; /* where the list has no SMILES */
   char *fault;           /* NULL, or why the row is bad */
 } mho_candidate;
@@ -31,12 +31,16 @@ void mho_candidate_clear(mho_candidate *candidate);
 /* Gives a candidate its fault, after a cause.  Errors: MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_candidate_fail(mho_candidate *candidate, const mho_error *cause);
 
-/* Settings go above what molecule files say; NULL for none, else they outlive
- * the candidates.  Errors: MHO_ERR_FILE (also: an ending that is no list's),
- * MHO_ERR_SYNTAX, MHO_ERR_KEY, MHO_ERR_MEMORY. */
-MHO_MUST_USE mho_status mho_candidates_open(const char *path, const mho_settings *settings,
+/* Defaults go below what molecule files say, settings above it; NULL for none,
+ * else they outlive the candidates.  Errors: MHO_ERR_FILE (also: an ending that
+ * is no list's), MHO_ERR_SYNTAX, MHO_ERR_KEY, MHO_ERR_MEMORY. */
+MHO_MUST_USE mho_status mho_candidates_open(const char *path, const mho_settings *defaults,
+                                            const mho_settings *settings,
                                             mho_candidates **candidates, mho_error *error);
 void mho_candidates_close(mho_candidates *candidates);
+
+/* Of a candidate that says nothing itself: the settings on top of the defaults. */
+const mho_settings *mho_candidates_settings(const mho_candidates *candidates);
 
 /* The next one into an initialised candidate.  A bad row is MHO_OK with its
  * fault.  Errors: MHO_ERR_FILE (the list cannot be read further), MHO_ERR_MEMORY. */

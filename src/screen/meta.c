@@ -147,7 +147,6 @@ static void add_shared_names(mho_meta *meta)
 mho_status mho_meta_of_job(const mho_screen_job *job, const mho_candidates *list, uint64_t rows,
                            mho_meta *meta, mho_error *error)
 {
-  static const mho_settings nothing = {0};
   char digest[MHO_DIGEST_SIZE];
   *meta = (mho_meta){0};
   mho_status status = mho_candidates_digest(list, digest, error);
@@ -158,7 +157,7 @@ mho_status mho_meta_of_job(const mho_screen_job *job, const mho_candidates *list
   mho_meta_add(meta, "list_format", "%s", mho_candidates_format(list));
   mho_meta_add(meta, "list_sha256", "%s", digest);
   mho_meta_add(meta, "rows", "%llu", (unsigned long long)rows);
-  add_settings(meta, job->settings ? job->settings : &nothing);
+  add_settings(meta, mho_candidates_settings(list));
   add_number(meta, "window", true, job->screen.window_ev, " eV");
   mho_meta_add(meta, "samples", "%d", job->screen.sensitivity.samples);
   mho_meta_add(meta, "seed", "%llu", (unsigned long long)job->screen.sensitivity.seed);

@@ -75,21 +75,26 @@ static mho_status crew_create(const mho_screen_job *job, crew *c, mho_error *err
   for (int i = 0; good && i < c->threads; i++)
     good = (c->workspace[i] = mho_screen_workspace_create()) != NULL;
   if (!good) return no_memory(error);
-  return mho_candidates_open(job->list, job->settings, &c->list, error);
+  return mho_candidates_open(job->list, job->defaults, job->settings, &c->list, error);
 }
 
 /* The structure, if the list has it as text; then the quantities.  What fails
- * is the fault of the row, but for memory. */
-static void compute(const mho_screen_job *job, mho_screen_workspace *workspace, task *t)
+ * is the fault of the row, but for memory.  Of a molecule file its SMILES stays. */
+static void compute(const crew *all, mho_screen_workspace *workspace, task *t)
 {
   mho_candidate *c = &t->candidate;
+  const mho_settings *settings = mho_candidates_settings(all->list);
   mho_error own;
   mho_status status = MHO_OK;
   mho_error_init(&own);
   if (!c->fault && c->smiles)
-    status = mho_molecule_read_smiles(c->smiles, &c->place, job->settings, 0, &c->molecule, &own);
+    status = mho_molecule_read_smiles(c->smiles, &c->place, settings, 0, &c->molecule, &own);
   if (!c->fault && status == MHO_OK)
-    status = mho_screen_measure(workspace, &c->molecule, &job->screen, &t->quantities, &own);
+    status = mho_screen_measure(workspace, &c->molecule, &all->job->screen, &t->quantities, &own);
+  if (!c->smiles) {
+    c->smiles = c->molecule.smiles;
+    c->molecule.smiles = NULL;
+  }
   mho_molecule_clear(&c->molecule);
   mho_molecule_init(&c->molecule);
   t->status = status == MHO_ERR_MEMORY ? status : MHO_OK;
@@ -101,7 +106,7 @@ static void compute_batch(crew *c)
 {
 #pragma omp parallel for schedule(dynamic, 1) num_threads(c->threads)
   for (int i = 0; i < c->count; i++)
-    if (!cancelled(c->job)) compute(c->job, c->workspace[omp_get_thread_num()], &c->task[i]);
+    if (!cancelled(c->job)) compute(c, c->workspace[omp_get_thread_num()], &c->task[i]);
 }
 
 static mho_status fail_changed(const crew *c, mho_error *error)
@@ -173,7 +178,7 @@ static mho_status run_batches(crew *c, mho_screen_store *store, mho_screen_count
 static mho_status count_rows(const mho_screen_job *job, uint64_t *rows, mho_error *error)
 {
   mho_candidates *list;
-  mho_status status = mho_candidates_open(job->list, job->settings, &list, error);
+  mho_status status = mho_candidates_open(job->list, job->defaults, job->settings, &list, error);
   if (status == MHO_OK) status = mho_candidates_skip(list, UINT64_MAX, job->cancel, rows, error);
   mho_candidates_close(list);
   if (status == MHO_OK && *rows == 0)

@@ -24,6 +24,7 @@ static mho_status no_memory(mho_error *error)
 static mho_status fail_database(const mho_screen_store *s, mho_error *error)
 {
   sqlite3 *db = s->database;
+  int written = errno; /* SQLite does not keep it where a write fails */
   int code = db ? sqlite3_errcode(db) : SQLITE_NOMEM;
   if (code == SQLITE_NOMEM || sqlite3_extended_errcode(db) == SQLITE_IOERR_NOMEM)
     return no_memory(error);
@@ -34,6 +35,7 @@ static mho_status fail_database(const mho_screen_store *s, mho_error *error)
     return mho_fail_at(error, MHO_ERR_WRITE, "screen", s->path, 0, 0, NULL,
                        "is in use by another program");
   int cause = sqlite3_system_errno(db);
+  if (!cause && (written == EFBIG || written == EDQUOT)) cause = written;
   return mho_fail_at(error, MHO_ERR_WRITE, "screen", s->path, 0, 0, NULL, "cannot be written: %s",
                      code == SQLITE_FULL ? strerror(ENOSPC)
                      : code == SQLITE_IOERR && cause ? strerror(cause) : sqlite3_errmsg(db));

@@ -12,9 +12,14 @@
 #include <sys/stat.h>
 #include <unistd.h>
 
+#include <jansson.h>
+
 #include "base/text.h"
+#include "report/json.h"
 
 enum { OPEN_FOLDERS = 16 };
+
+static const char MARK[] = "provenance.json";
 
 static mho_status fail(const char *path, mho_status status, const char *what, mho_error *error)
 {
@@ -47,6 +52,43 @@ static int is_empty(const char *path)
   return empty;
 }
 
+/* The files that the run of an earlier provenance.json has written; NULL where it
+ * does not say, as the first versions do not. */
+static json_t *read_list(const char *mark)
+{
+  json_t *provenance = json_load_file(mark, 0, NULL);
+  json_t *files = json_incref(json_object_get(provenance, "files"));
+  json_decref(provenance);
+  return files;
+}
+
+static bool is_listed(const json_t *files, const char *name)
+{
+  if (name[0] == '.' || !strcmp(name, MARK)) return true; /* hidden: of desktops and editors */
+  for (size_t i = 0; i < json_array_size(files); i++) {
+    const char *known = json_string_value(json_array_get(files, i));
+    if (known && !strcmp(known, name)) return true;
+  }
+  return false;
+}
+
+/* What somebody else has put into a results folder is not thrown away with it. */
+static mho_status check_strangers(const char *target, const char *mark, mho_error *error)
+{
+  json_t *files = read_list(mark);
+  DIR *folder = files ? opendir(target) : NULL;
+  mho_status status = MHO_OK;
+  const struct dirent *entry;
+  while (folder && status == MHO_OK && (entry = readdir(folder)))
+    if (!is_listed(files, entry->d_name))
+      status = mho_fail_at(error, MHO_ERR_RANGE, "study", target, 0, 0, "output",
+                           "holds '%.100s', which no run has written, and is left alone; move that "
+                           "file, or choose another place with -o", entry->d_name);
+  if (folder) closedir(folder);
+  json_decref(files);
+  return status;
+}
+
 static mho_status check_target(const char *target, mho_error *error)
 {
   struct stat status;
@@ -57,11 +99,12 @@ static mho_status check_target(const char *target, mho_error *error)
   if (!S_ISDIR(status.st_mode))
     return mho_fail_at(error, MHO_ERR_RANGE, "study", target, 0, 0, "output",
                        "exists and is not a folder; choose another place with -o");
-  char *mark = mho_print_text("%s/provenance.json", target);
+  char *mark = mho_print_text("%s/%s", target, MARK);
   if (!mark) return mho_fail(error, MHO_ERR_MEMORY, "study", NULL, "out of memory");
   bool results = access(mark, F_OK) == 0;
+  mho_status strangers = results ? check_strangers(target, mark, error) : MHO_OK;
   free(mark);
-  if (results || is_empty(target) == 1) return MHO_OK;
+  if (results || is_empty(target) == 1) return strangers;
   return mho_fail_at(error, MHO_ERR_RANGE, "study", target, 0, 0, "output",
                      "holds other files and no provenance.json, so it is not a results folder "
                      "and is left alone; choose another place with -o");
@@ -141,6 +184,28 @@ mho_status mho_folder_write(const mho_folder *folder, const char *name,
   mho_status status = mho_buffer_save(content, path, "study", error);
   free(path);
   return status;
+}
+
+static int compare_entries(const struct dirent **a, const struct dirent **b)
+{
+  return strcmp((*a)->d_name, (*b)->d_name);
+}
+
+static int is_visible(const struct dirent *entry) { return entry->d_name[0] != '.'; }
+
+json_t *mho_folder_list(const mho_folder *folder)
+{
+  struct dirent **entry = NULL;
+  json_t *files = json_array();
+  int count = scandir(folder->temporary, &entry, is_visible, compare_entries);
+  for (int i = 0; i < count; i++) {
+    files = mho_json_append(files, mho_json_text(entry[i]->d_name));
+    free(entry[i]);
+  }
+  free(entry);
+  if (count >= 0) return files;
+  json_decref(files);
+  return NULL;
 }
 
 mho_status mho_folder_commit(mho_folder *folder, mho_error *error)

@@ -8,6 +8,8 @@
 
 #include <dirent.h>
 
+#include <jansson.h>
+
 #include <mho/status.h>
 
 #include "base/buffer.h"
@@ -19,8 +21,8 @@ typedef struct {
 } mho_folder;
 
 /* Refuses a target that is neither absent, nor empty, nor an earlier results
- * folder (one with provenance.json); removes what killed runs left; creates
- * the temporary folder.  Errors: MHO_ERR_RANGE, MHO_ERR_WRITE. */
+ * folder (one with provenance.json and nothing that it does not list); removes
+ * what killed runs left; creates the temporary folder.  Errors: MHO_ERR_RANGE, MHO_ERR_WRITE. */
 MHO_MUST_USE mho_status mho_folder_open(const char *target, mho_folder *folder,
                                         mho_error *error);
 MHO_MUST_USE mho_status mho_folder_write(const mho_folder *folder, const char *name,
@@ -28,6 +30,8 @@ MHO_MUST_USE mho_status mho_folder_write(const mho_folder *folder, const char *n
 
 /* Path of a file inside the temporary folder; the caller frees it. */
 char *mho_folder_path(const mho_folder *folder, const char *name);
+/* The names of the files that are in it, sorted; NULL without memory. */
+json_t *mho_folder_list(const mho_folder *folder);
 MHO_MUST_USE mho_status mho_folder_commit(mho_folder *folder, mho_error *error);
 
 /* Removes what is not committed, and frees. */

@@ -53,7 +53,7 @@ mho_status mho_interference_find(const mho_interference_question *q, const mho_m
   *from = q->from.text[0] ? mho_molecule_find_site(m, q->from.text) : -1;
   if (q->from.text[0] && *from < 0)
     return mho_fail_at(error, MHO_ERR_REFERENCE, "study", m->source ? m->source : m->name, 0, 0,
-                       "from", "from: there is no site '%.60s' in the pi system", q->from.text);
+                       "from", "--from: there is no site '%.60s' in the pi system", q->from.text);
   mho_status status = mho_interference_map(m, junction, &options, map, error);
   if (status == MHO_OK && *from >= 0) keep_from(map, *from);
   return status;

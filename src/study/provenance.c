@@ -52,7 +52,7 @@ static json_t *molecule_parameters(const mho_molecule *molecule)
   return object;
 }
 
-mho_status mho_write_provenance(const mho_study *study, const char *command,
+mho_status mho_write_provenance(const mho_study *study, const char *command, json_t *files,
                                 mho_buffer *buffer, mho_error *error)
 {
   mho_status status = MHO_OK;
@@ -65,6 +65,7 @@ mho_status mho_write_provenance(const mho_study *study, const char *command,
   object = mho_json_with(object, "inputs", input_hashes(study, &status, error));
   object = mho_json_with(object, "molecules", molecules);
   object = mho_json_with(object, "window_eV", json_real(study->window_ev));
+  object = mho_json_with(object, "files", files);
   /* Only the bootstrap over traces is random. */
   object = mho_json_with(object, "seed",
                          study->traces_count > 0 ? json_integer(MHO_STUDY_SEED) : json_null());

@@ -6,8 +6,6 @@
 #include <mho/study.h>
 #include <mho/warning.h>
 
-#include <math.h>
-#include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -17,13 +15,15 @@
 #include "report/html.h"
 #include "report/json.h"
 #include "report/stages.h"
+#include "study/answers.h"
 #include "study/folder.h"
+#include "study/gallery.h"
 #include "study/levers.h"
 #include "study/measured.h"
 #include "study/provenance.h"
 #include "study/study.h"
 
-enum { EVEN_POINTS = 401, EXACT_DIGITS = 17, TABLE_DIGITS = 6, ANSWERS_MAX = 40, SCREEN_NAME = 80 };
+enum { EVEN_POINTS = 401, TABLE_DIGITS = 6 };
 
 /* What was computed for one molecule. */
 typedef struct {
@@ -50,13 +50,10 @@ typedef struct {
   int peak_count;
   bool compare;
   mho_output output;
-  char *answer[ANSWERS_MAX];
-  size_t answers;
+  mho_answers answers;
   mho_levers levers;
   mho_portrait *portrait; /* [molecule_count] */
-  mho_figure *figure;
-  size_t figures;
-  bool without_gnuplot;
+  mho_gallery gallery;
   int steps_done, steps;
 } run;
 
@@ -244,115 +241,6 @@ static void fill_tables(run *r)
       mho_compare_row(table, s->molecule[i].name, &r->comparison[i]);
 }
 
-static void say(run *r, char *sentence)
-{
-  if (!sentence) r->output.failed = true;
-  else if (r->answers < ANSWERS_MAX) r->answer[r->answers++] = sentence;
-  else free(sentence);
-}
-
-static void answer_comparison(run *r)
-{
-  const mho_agreement *a = &r->agreement;
-  const mho_molecule *molecule = r->study->molecule;
-  if (a->compared > 0)
-    say(r, mho_print_text("Relative to %.*s, computed and measured ratios of %d molecule%s differ "
-                          "by %.2f decades (root mean square), a factor of %.1f; most for %.*s "
-                          "(%.2f decades).",
-                          SCREEN_NAME, molecule[a->reference].name, a->compared,
-                          a->compared > 1 ? "s" : "", a->rms_decades, pow(10, a->rms_decades),
-                          SCREEN_NAME, molecule[a->largest].name, a->largest_decades));
-  if (a->pairs > 0)
-    say(r, mho_print_text("Of %d pair%s that the measurement tells apart, the model puts %d in the "
-                          "measured order.",
-                          a->pairs, a->pairs == 1 ? "" : "s", a->ordered));
-}
-
-/* The first sentence of each question of each molecule. */
-static void say_levers(run *r)
-{
-  for (size_t i = 0; i < r->levers.remarks; i++) {
-    const mho_remark *remark = &r->levers.remark[i];
-    const char *colon = strchr(remark->text, ':');
-    size_t name = colon ? (size_t)(colon - remark->text) : 0;
-    bool first = i == 0 || strcmp(remark->section, remark[-1].section) ||
-                 strncmp(remark->text, remark[-1].text, name + 1);
-    if (first && strcmp(remark->section, "currents")) say(r, mho_print_text("%s.", remark->text));
-  }
-}
-
-static void answer(run *r)
-{
-  const mho_study *s = r->study;
-  int best = -1, worst = -1, nodes = 0;
-  for (int i = 0; i < s->molecule_count; i++) {
-    const mho_conductance *g = &r->conductance[i];
-    if (!g->has_log || g->warnings & (MHO_WARN_NEAR_NODE | MHO_WARN_NO_PI_PATH)) {
-      nodes++;
-      continue;
-    }
-    if (best < 0 || g->log10_g0 > r->conductance[best].log10_g0) best = i;
-    if (worst < 0 || g->log10_g0 < r->conductance[worst].log10_g0) worst = i;
-  }
-  if (best >= 0)
-    say(r, mho_print_text("Best conductor by the model: %.*s, %.2g G0.%s%.*s%s", SCREEN_NAME,
-                          s->molecule[best].name, r->conductance[best].conductance_g0,
-                          worst != best ? " Least: " : "", SCREEN_NAME,
-                          worst != best ? s->molecule[worst].name : "",
-                          worst != best ? "." : ""));
-  if (nodes > 0)
-    say(r, mho_print_text("%d of %d molecules have a node or no pi path at the Fermi level: no "
-                          "value is predicted for %s.",
-                          nodes, s->molecule_count, nodes > 1 ? "them" : "it"));
-  if (r->compare) answer_comparison(r);
-  say_levers(r);
-  for (int i = 0; i < s->traces_count; i++)
-    say(r, mho_measured_sentence(s, &s->traces[i], &r->measured[i]));
-}
-
-static mho_status add_figure(run *r, const char *section, char *file, char *caption,
-                             mho_figure **figure, mho_error *error)
-{
-  mho_figure *larger = realloc(r->figure, (r->figures + 1) * sizeof *larger);
-  if (larger) r->figure = larger;
-  if (!larger || !file || !caption) {
-    free(file);
-    free(caption);
-    return fail_memory(error);
-  }
-  *figure = &r->figure[r->figures++];
-  **figure = (mho_figure){.section = section, .file = file, .caption = caption};
-  return MHO_OK;
-}
-
-/* Draws a script; the figure is dropped where gnuplot is missing. */
-static mho_status draw(run *r, const mho_buffer *script, mho_figure *figure, mho_error *error)
-{
-  static const char script_name[] = ".figure.gp";
-  bool available = false;
-  char *script_path = mho_folder_path(&r->folder, script_name);
-  char *path = mho_folder_path(&r->folder, figure->file), *text = NULL;
-  size_t size = 0;
-  mho_status status = script_path && path ? MHO_OK : fail_memory(error);
-  if (status == MHO_OK) status = mho_folder_write(&r->folder, script_name, script, error);
-  if (status == MHO_OK) status = mho_figure_render(script_path, path, &available, error);
-  if (status == MHO_OK && available)
-    status = mho_read_file(path, 64 << 20, "study", &text, &size, error);
-  if (status == MHO_OK && available) mho_buffer_add_bytes(&figure->svg, text, size);
-  if (script_path) remove(script_path);
-  if (path && !available) remove(path);
-  if (status == MHO_OK && !available) {
-    r->without_gnuplot = true;
-    free(figure->file);
-    free(figure->caption);
-    r->figures--;
-  }
-  free(text);
-  free(path);
-  free(script_path);
-  return status;
-}
-
 /* Curves first .. first+count-1 in one figure. */
 static mho_status draw_transmission(run *r, int first, int count, mho_error *error)
 {
@@ -373,17 +261,14 @@ static mho_status draw_transmission(run *r, int first, int count, mho_error *err
     curve[c].measured_low = m->has_spread ? m->measured_low : m->measured_log10_g0;
     curve[c].measured_high = m->has_spread ? m->measured_high : m->measured_log10_g0;
   }
-  mho_figure *figure = NULL;
-  mho_status status = add_figure(
-      r, "transmission", mho_print_text("transmission-%d.svg", first / MHO_CURVES_MAX + 1),
+  mho_buffer script = {0};
+  mho_figure_transmission(&script, curve, count, r->study->window_ev);
+  mho_status status = mho_gallery_draw(
+      &r->gallery, "transmission", mho_print_text("transmission-%d.svg", first / MHO_CURVES_MAX + 1),
       mho_print_text("Transmission against energy above the Fermi level; the shaded band is the "
                      "alignment window%s.",
                      measured ? ", diamonds are measured conductances in units of G0" : ""),
-      &figure, error);
-  if (status != MHO_OK) return status;
-  mho_buffer script = {0};
-  mho_figure_transmission(&script, curve, count, r->study->window_ev);
-  status = draw(r, &script, figure, error);
+      &script, error);
   mho_buffer_clear(&script);
   return status;
 }
@@ -392,19 +277,15 @@ static mho_status draw_comparison(run *r, mho_error *error)
 {
   int count = r->study->molecule_count;
   const char **name = calloc((size_t)count, sizeof *name);
-  mho_figure *figure = NULL;
-  mho_status status = name ? MHO_OK : fail_memory(error);
-  if (status == MHO_OK)
-    status = add_figure(r, "comparison", mho_copy_text("compare.svg"),
-                        mho_copy_text("Computed and measured conductance of each molecule; bars are the error "
-                                      "of the parameters and the spread of the measurement."),
-                        &figure, error);
+  if (!name) return fail_memory(error);
+  for (int i = 0; i < count; i++) name[i] = r->study->molecule[i].name;
   mho_buffer script = {0};
-  if (status == MHO_OK) {
-    for (int i = 0; i < count; i++) name[i] = r->study->molecule[i].name;
-    mho_figure_comparison(&script, name, r->comparison, count);
-    status = draw(r, &script, figure, error);
-  }
+  mho_figure_comparison(&script, name, r->comparison, count);
+  mho_status status = mho_gallery_draw(
+      &r->gallery, "comparison", mho_copy_text("compare.svg"),
+      mho_copy_text("Computed and measured conductance of each molecule; bars are the error of the "
+                    "parameters and the spread of the measurement."),
+      &script, error);
   mho_buffer_clear(&script);
   free(name);
   return status;
@@ -413,13 +294,11 @@ static mho_status draw_comparison(run *r, mho_error *error)
 static mho_status draw_traces(run *r, int index, mho_error *error)
 {
   const mho_study *s = r->study;
-  mho_figure *figure = NULL;
-  mho_status status = add_figure(
-      r, "traces", mho_print_text("traces-%d.svg", index + 1),
+  return mho_gallery_draw(
+      &r->gallery, "traces", mho_print_text("traces-%d.svg", index + 1),
       mho_print_text("Log histogram of the traces of %.*s that show more than tunnelling.",
-                     SCREEN_NAME, s->molecule[s->traces[index].molecule].name),
-      &figure, error);
-  return status == MHO_OK ? draw(r, &r->measured[index].figure, figure, error) : status;
+                     ANSWER_NAME, s->molecule[s->traces[index].molecule].name),
+      &r->measured[index].figure, error);
 }
 
 static mho_status compute_levers(run *r, mho_error *error)
@@ -440,19 +319,14 @@ static mho_status draw_levers(run *r, mho_error *error)
   mho_status status = MHO_OK;
   for (size_t i = 0; status == MHO_OK && i < r->levers.pictures; i++) {
     mho_lever_picture *from = &r->levers.picture[i];
-    mho_figure *figure = NULL;
-    if (from->script && r->without_gnuplot) continue;
-    status = mho_buffer_check(&from->figure.svg, "study", error);
-    if (status == MHO_OK)
-      status = add_figure(r, from->figure.section, mho_copy_text(from->figure.file),
-                          mho_copy_text(from->figure.caption), &figure, error);
-    if (status == MHO_OK) figure->drawn = !from->script;
-    if (status == MHO_OK && from->script) status = draw(r, &from->figure.svg, figure, error);
-    else if (status == MHO_OK) {
-      status = mho_folder_write(&r->folder, figure->file, &from->figure.svg, error);
-      figure->svg = from->figure.svg;
-      from->figure.svg = (mho_buffer){0};
-    }
+    mho_figure *f = &from->figure;
+    if (from->script && r->gallery.without_gnuplot) continue;
+    status = mho_buffer_check(&f->svg, "study", error);
+    if (status != MHO_OK) break;
+    char *file = mho_copy_text(f->file), *caption = mho_copy_text(f->caption);
+    status = from->script
+                 ? mho_gallery_draw(&r->gallery, f->section, file, caption, &f->svg, error)
+                 : mho_gallery_hang(&r->gallery, f->section, file, caption, &f->svg, error);
   }
   return status;
 }
@@ -461,16 +335,16 @@ static mho_status draw_figures(run *r, mho_error *error)
 {
   mho_status status = MHO_OK;
   if (r->compare) status = draw_comparison(r, error);
-  for (int i = 0; status == MHO_OK && i < r->study->traces_count && !r->without_gnuplot; i++)
+  for (int i = 0; status == MHO_OK && i < r->study->traces_count && !r->gallery.without_gnuplot; i++)
     status = draw_traces(r, i, error);
   int count = r->study->molecule_count;
-  for (int i = 0; status == MHO_OK && i < count && !r->without_gnuplot; i += MHO_CURVES_MAX) {
+  for (int i = 0; status == MHO_OK && i < count && !r->gallery.without_gnuplot; i += MHO_CURVES_MAX) {
     status = step(r, "figures", error);
     int in_figure = count - i < MHO_CURVES_MAX ? count - i : MHO_CURVES_MAX;
     if (status == MHO_OK) status = draw_transmission(r, i, in_figure, error);
   }
   if (status == MHO_OK) status = draw_levers(r, error);
-  if (status == MHO_OK && r->without_gnuplot)
+  if (status == MHO_OK && r->gallery.without_gnuplot)
     mho_output_note(&r->output, "gnuplot was not found: figures are left out");
   return status;
 }
@@ -518,8 +392,8 @@ static mho_status write_tables(run *r, mho_error *error)
 static json_t *json_results(const run *r)
 {
   json_t *object = json_object(), *answers = json_array(), *limits = json_array();
-  for (size_t i = 0; i < r->answers; i++)
-    answers = mho_json_append(answers, mho_json_text(r->answer[i]));
+  for (size_t i = 0; i < r->answers.count; i++)
+    answers = mho_json_append(answers, mho_json_text(r->answers.sentence[i]));
   size_t count;
   const char *const *limit = mho_limits(&count);
   for (size_t i = 0; i < count; i++) limits = mho_json_append(limits, mho_json_text(limit[i]));
@@ -560,19 +434,20 @@ static mho_status write_report(run *r, mho_error *error)
                        .portrait = r->portrait,
                        .portraits = (size_t)r->study->molecule_count,
                        .output = &r->output,
-                       .answer = r->answer,
-                       .answers = r->answers,
-                       .figure = r->figure,
-                       .figures = r->figures,
+                       .answer = r->answers.sentence,
+                       .answers = r->answers.count,
+                       .figure = r->gallery.figure,
+                       .figures = r->gallery.figures,
                        .remark = r->levers.remark,
                        .remarks = r->levers.remarks,
-                       .without_gnuplot = r->without_gnuplot};
+                       .without_gnuplot = r->gallery.without_gnuplot};
   mho_buffer buffer = {0};
   mho_status status = mho_write_html(&report, &buffer, error);
   if (status == MHO_OK) status = mho_folder_write(&r->folder, "report.html", &buffer, error);
   mho_buffer_clear(&buffer);
   if (status != MHO_OK) return status;
-  status = mho_write_provenance(r->study, r->options->command, &buffer, error);
+  status = mho_write_provenance(r->study, r->options->command, mho_folder_list(&r->folder), &buffer,
+                                error);
   if (status == MHO_OK) status = mho_folder_write(&r->folder, "provenance.json", &buffer, error);
   mho_buffer_clear(&buffer);
   return status;
@@ -596,25 +471,33 @@ static mho_status screen(run *r, mho_error *error)
   mho_screen_job job = mho_screen_job_defaults();
   job.list = s->screen_list;
   job.settings = &s->screen_settings;
+  job.defaults = &s->defaults;
   job.screen.window_ev = s->window_ev;
   job.goal = s->screening.has_goal ? &s->screening.goal : NULL;
   job.requirement = s->screening.requirement;
   job.requirements = (size_t)s->screening.requirements;
   job.cancel = r->options->cancel;
-  char *path = mho_folder_path(&r->folder, "screening.db"), *best = NULL;
+  char *path = mho_folder_path(&r->folder, "screening.db"), *sentence = NULL;
   mho_screening_view view = {.all = !s->screening.has_top, .remarks = true};
   mho_status status = path ? step(r, "screening", error) : fail_memory(error);
   if (status == MHO_OK) status = mho_screen_run(&job, path, false, &counts, error);
   if (status == MHO_OK)
-    status = mho_screening_list(&s->screening, path, &view, &r->output, &best, error);
+    status = mho_screening_list(&s->screening, path, &view, &r->output, &sentence, error);
   if (status == MHO_OK && counts.bad) status = mho_screening_failures(path, &r->output, error);
-  if (status == MHO_OK && best)
-    say(r, mho_print_text("Best of %llu candidates: %s.", (unsigned long long)counts.good, best));
-  else if (status == MHO_OK)
-    say(r, mho_copy_text("No candidate of the list meets what is required."));
-  free(best);
+  if (status == MHO_OK) mho_answers_add(&r->answers, sentence);
+  else free(sentence);
   free(path);
   return status;
+}
+
+static void answer(run *r)
+{
+  const mho_study *s = r->study;
+  mho_answers_conductance(&r->answers, s, r->conductance);
+  if (r->compare) mho_answers_agreement(&r->answers, s, &r->agreement);
+  mho_answers_levers(&r->answers, &r->levers);
+  for (int i = 0; i < s->traces_count; i++)
+    mho_answers_add(&r->answers, mho_measured_sentence(s, &s->traces[i], &r->measured[i]));
 }
 
 static mho_status execute(run *r, mho_error *error)
@@ -634,12 +517,16 @@ static mho_status execute(run *r, mho_error *error)
   if (status == MHO_OK) status = draw_molecules(r, error);
   if (status == MHO_OK) status = draw_figures(r, error);
   if (status == MHO_OK) status = step(r, "report", error);
+  if (status == MHO_OK && r->answers.failed) status = fail_memory(error);
   if (status == MHO_OK) status = mho_output_check(&r->output, error);
   if (status == MHO_OK) status = write_tables(r, error);
   if (status == MHO_OK) status = write_results(r, error);
   if (status == MHO_OK) status = write_report(r, error);
   if (status == MHO_OK) status = step(r, "done", error);
-  return status == MHO_OK ? mho_folder_commit(&r->folder, error) : status;
+  if (status == MHO_OK) status = mho_folder_commit(&r->folder, error);
+  for (size_t i = 0; status == MHO_OK && r->options->answer && i < r->answers.count; i++)
+    r->options->answer(r->answers.sentence[i], r->options->user);
+  return status;
 }
 
 static void run_clear(run *r)
@@ -652,17 +539,12 @@ static void run_clear(run *r)
   }
   for (int i = 0; r->measured && i < r->study->traces_count; i++)
     mho_measured_clear(&r->measured[i]);
-  for (size_t i = 0; i < r->answers; i++) free(r->answer[i]);
-  for (size_t i = 0; i < r->figures; i++) {
-    free(r->figure[i].file);
-    free(r->figure[i].caption);
-    mho_buffer_clear(&r->figure[i].svg);
-  }
+  mho_answers_clear(&r->answers);
+  mho_gallery_clear(&r->gallery);
   for (int i = 0; r->portrait && i < r->study->molecule_count; i++)
     mho_buffer_clear(&r->portrait[i].svg);
   mho_levers_clear(&r->levers);
   free(r->portrait);
-  free(r->figure);
   free(r->outcome);
   free(r->conductance);
   free(r->comparison);
@@ -682,6 +564,7 @@ mho_status mho_study_run(const mho_study *study, const mho_run_options *options,
   r.steps = study->molecule_count + (study->molecule_count + MHO_CURVES_MAX - 1) / MHO_CURVES_MAX + 2 +
             study->traces_count + (mho_levers_asked(study) ? study->molecule_count : 0) +
             (study->compare ? study->molecule_count : 0) + (study->screen_list != NULL);
+  r.gallery.folder = &r.folder;
   r.outcome = calloc(n, sizeof *r.outcome);
   r.portrait = calloc(n, sizeof *r.portrait);
   r.conductance = calloc(n, sizeof *r.conductance);

@@ -48,7 +48,8 @@ static mho_status find_aims(const mho_screening_question *s, const mho_screen_st
     status = read_stored_requirements(require, a, reason, sizeof reason);
   }
   a->rank.requirement = a->requirement;
-  if (seed) a->rank.seed = strtoull(seed, NULL, 10);
+  if (s->has_seed) a->rank.seed = s->seed;
+  else if (seed) a->rank.seed = strtoull(seed, NULL, 10);
   if (s->has_top) a->rank.top = (size_t)s->top;
   if (status == MHO_OK) return MHO_OK;
   return mho_fail_at(error, MHO_ERR_RANGE, "study", path, 0, 0, NULL, "is damaged: %s", reason);
@@ -88,18 +89,26 @@ static mho_status load(const mho_screening_question *question, const char *path,
   return sh->order ? MHO_OK : mho_fail(error, MHO_ERR_MEMORY, "study", NULL, "out of memory");
 }
 
-/* The first three names, as a sentence has them. */
-static mho_status name_best(const shelf *sh, char **best, mho_error *error)
+/* The first three names. */
+static mho_status answer_in_words(const shelf *sh, char **answer, mho_error *error)
 {
   mho_buffer words = {0};
   mho_status status = MHO_OK;
-  for (size_t i = 0; status == MHO_OK && i < 3 && i < sh->ranking.ranked; i++) {
+  size_t ranked = sh->ranking.ranked;
+  uint64_t good = mho_screen_store_counts(sh->store)->good;
+  if (ranked == 0) mho_buffer_add(&words, "No candidate of the list meets what is required");
+  else if (ranked < good)
+    mho_buffer_print(&words, "Best of the %zu of %llu candidates that meet what is required: ", ranked,
+                     (unsigned long long)good);
+  else mho_buffer_print(&words, "Best of %zu candidates: ", ranked);
+  for (size_t i = 0; status == MHO_OK && i < 3 && i < ranked; i++) {
     mho_screen_text text;
     status = mho_screen_store_candidate(sh->store, sh->row[sh->order[i]], &text, error);
     if (status == MHO_OK) mho_buffer_print(&words, "%s%.60s", i ? ", " : "", text.name);
   }
+  mho_buffer_add(&words, ".");
   if (status == MHO_OK) status = mho_buffer_check(&words, "study", error);
-  if (status == MHO_OK) *best = words.data;
+  if (status == MHO_OK) *answer = words.data;
   else mho_buffer_clear(&words);
   return status;
 }
@@ -123,22 +132,23 @@ static mho_status list_places(const mho_screening_view *view, const shelf *sh, m
   }
   if (!view->remarks || status != MHO_OK) return status;
   if (shown < ranked)
-    mho_output_note(output, "the first %zu of %zu; --top N lists more, --csv all", shown, ranked);
+    mho_output_note(output, "the first %zu of %zu%s", shown, ranked,
+                    view->eye ? "; --top N lists more, --csv all" : "");
   mho_screening_note(output, &sh->aims.rank, &sh->ranking, view->eye ? warnings : 0);
-  mho_screening_state_note(output, mho_screen_store_counts(sh->store));
+  mho_screening_state_note(output, mho_screen_store_counts(sh->store), view->eye);
   return MHO_OK;
 }
 
 mho_status mho_screening_list(const mho_screening_question *question, const char *path,
-                              const mho_screening_view *view, mho_output *output, char **best,
+                              const mho_screening_view *view, mho_output *output, char **answer,
                               mho_error *error)
 {
   shelf sh = {0};
   mho_status status = mho_screen_store_open(path, &sh.store, error);
   if (status == MHO_OK) status = load(question, path, &sh, error);
   if (status == MHO_OK) status = list_places(view, &sh, output, error);
-  if (best) *best = NULL;
-  if (status == MHO_OK && best && sh.ranking.ranked > 0) status = name_best(&sh, best, error);
+  if (answer) *answer = NULL;
+  if (status == MHO_OK && answer) status = answer_in_words(&sh, answer, error);
   free(sh.quantities);
   free(sh.row);
   free(sh.place);

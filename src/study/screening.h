@@ -13,11 +13,12 @@ enum { SCREENING_REQUIREMENTS_MAX = 32 };
 
 /* What is wanted; what is not said follows from the store. */
 typedef struct {
-  bool has_goal, has_top;
+  bool has_goal, has_top, has_seed;
   mho_screen_goal goal;
   int requirements;
   mho_screen_requirement requirement[SCREENING_REQUIREMENTS_MAX];
   long top;
+  uint64_t seed; /* of the draws by which ranks are judged */
 } mho_screening_question;
 
 /* How it is listed. */
@@ -28,12 +29,12 @@ typedef struct {
   bool remarks; /* how it was ranked, and how far the list has come */
 } mho_screening_view;
 
-/* Table `screening` of the store at `path`; *best is the ranking's first few names
- * in words, or NULL where nothing is ranked, and the caller's (best may be NULL).
+/* Table `screening` of the store at `path`; *answer (may be NULL) is a sentence
+ * with the first few names, and the caller's.
  * Errors: those of mho_screen_store_open and _load, MHO_ERR_RANGE, MHO_ERR_MEMORY. */
 MHO_MUST_USE mho_status mho_screening_list(const mho_screening_question *question,
                                            const char *path, const mho_screening_view *view,
-                                           mho_output *output, char **best, mho_error *error);
+                                           mho_output *output, char **answer, mho_error *error);
 
 /* Table `failures` of the bad rows. */
 MHO_MUST_USE mho_status mho_screening_failures(const char *path, mho_output *output,

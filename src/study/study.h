@@ -48,7 +48,7 @@ struct mho_study {
   mho_interference_question interference;
   bool *asks_twist, *asks_interference; /* [molecule_count] */
   char *screen_list; /* NULL: no screening is asked for */
-  mho_settings screen_settings; /* defaults and options */
+  mho_settings screen_settings; /* what goes above molecule files */
   mho_screening_question screening;
   bool compare;
   int reference; /* index, or -1 */

@@ -28,12 +28,33 @@ def library_folder(prefix):
     sys.exit("libmho.so is not installed")
 
 
+def check_documents(prefix):
+    """The manual and the completion speak of every verb and option of the help."""
+    mho = os.path.join(prefix, "bin/mho")
+    manual = open(os.path.join(prefix, "share/man/man1/mho.1"), encoding="utf-8").read()
+    completion = os.path.join(prefix, "share/bash-completion/completions/mho")
+    verbs = re.findall(r"^  ([a-z]+)  ", run(mho, "--help"), re.M)
+    assert len(verbs) >= 9, verbs
+    for verb in verbs:
+        options = re.findall(r"^ *(?:-., )?(--[a-z-]+)", run(mho, "help", verb), re.M)
+        assert options, verb
+        page = manual.split(f"\n.SH MHO {verb}\n")[1].split("\n.SH ")[0].replace("\\-", "-")
+        missing = [o for o in options if f"\\fB{o}\\fR" not in page]
+        words = ['%s' % mho, verb, "--"]
+        completed = run("bash", "-c", f". '{completion}'; COMP_WORDS=(\"$@\"); COMP_CWORD=2; _mho \"$1\"; "
+                        "echo ${COMPREPLY[@]}", "bash", *words).split()
+        if missing or sorted(completed) != sorted(options):
+            print(f"mho {verb}: missing in the manual {missing}; completed {completed} for {options}")
+            sys.exit(1)
+
+
 def main():
     scratch = tempfile.mkdtemp()
     prefix = os.path.join(scratch, "prefix")
     run("cmake", "--install", BUILD, "--prefix", prefix)
     folder = library_folder(prefix)
     run(os.path.join(prefix, "bin/mho"), "--version")
+    check_documents(prefix)
 
     environment = dict(os.environ, PKG_CONFIG_PATH=os.path.join(folder, "pkgconfig"),
                        LD_LIBRARY_PATH=folder)
