@@ -200,14 +200,17 @@ static void claimed_errors_hold_for_larger_molecules(void **unused)
       /* Half of the energies next to a level. */
       double energy = -6 + 0.012 * random_below(&state, 1000);
       if (k % 2) energy = plan->level_ev[random_below(&state, r.sites)] * (1 + 1e-9 * (k - 3));
-      mho_estimate reference, estimate[3], lane[SPECTRUM_LANES];
+      mho_estimate reference, estimate[3];
+      mho_spectrum_batch batch;
       double energies[SPECTRUM_LANES];
       mho_elimination_evaluate_quad(plan, exact, energy, &reference);
       mho_elimination_evaluate_double(plan, plain, energy, &estimate[0]);
       mho_spectrum_evaluate(plan, energy, &estimate[1]);
       for (int l = 0; l < SPECTRUM_LANES; l++) energies[l] = l == k ? energy : 0.1 * l;
-      mho_spectrum_evaluate_pair(plan, energies, lane);
-      estimate[2] = lane[k];
+      mho_spectrum_evaluate_pair(plan, energies, &batch);
+      estimate[2] = (mho_estimate){.transmission = batch.transmission[k],
+                                   .relative_error = batch.relative_error[k],
+                                   .first_order = true};
       if (!(reference.relative_error < 1e-14) || !reference.first_order) continue;
       for (int m = 0; m < 3; m++) {
         if (!(estimate[m].relative_error < 0.1) || !estimate[m].first_order) continue;
