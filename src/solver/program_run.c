@@ -372,9 +372,9 @@ INLINED void backward(int kept, const mho_program *program, const double *energy
 {
   const int *slot = program->slot + program->slots_listed;
   const mho_program_load *bare = program->load + program->loads;
-  const double *tape = trace->tape + program->taped * L;
   double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * PROGRAM_LANES];
   const int L = trace->lanes;
+  const double *tape = trace->tape + program->taped * (size_t)L;
   lanes error = {{{0}}};
   bare -= program->last.diagonals + program->last.bonds;
   start_back(L, kept, program, trace, size);
