@@ -77,8 +77,8 @@ static bool grow(compiler *c, void **array, size_t *room, size_t needed, size_t 
 
 static void push(compiler *c, list *l, int item)
 {
-  if (grow(c, (void **)&l->item, &l->room, l->count + 1, sizeof *l->item)) l->item[l->count++] = item;
-  else c->failed = true;
+  if (!grow(c, (void **)&l->item, &l->room, l->count + 1, sizeof *l->item)) c->failed = true;
+  else l->item[l->count++] = item;
 }
 
 /* --- rows --------------------------------------------------------------------------- */
@@ -260,7 +260,8 @@ static int take_slot(compiler *c)
 static void emit_load(compiler *c, int slot, double value_ev)
 {
   mho_program *p = c->program;
-  if (!grow(c, (void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load)) c->failed = true;
+  if (!grow(c, (void **)&p->load, &c->load_room, p->loads + 1, sizeof *p->load))
+    c->failed = true;
   else p->load[p->loads++] = (mho_program_load){slot, value_ev};
 }
 
@@ -315,7 +316,8 @@ static void emit_step(compiler *c, int k)
     if (fresh) target->slot = take_slot(c);
     emit_slot(c, fresh ? ~target->slot : target->slot);
   }
-  if (!grow(c, (void **)&p->step, &c->step_room, p->steps + 1, sizeof *p->step)) c->failed = true;
+  if (!grow(c, (void **)&p->step, &c->step_room, p->steps + 1, sizeof *p->step))
+    c->failed = true;
   if (c->failed) return;
   p->step[p->steps++] = step;
   if (bare) return;

@@ -8,6 +8,8 @@
 #ifndef MHOLECULE_SOLVER_PROGRAM_H
 #define MHOLECULE_SOLVER_PROGRAM_H
 
+#include <stddef.h>
+
 #include "solver/plan.h"
 
 enum { PROGRAM_LANES = 32, PROGRAM_KEPT_MAX = 8, PROGRAM_BARE = -1, PROGRAM_BARE_ROW = 3 };

@@ -48,7 +48,8 @@ void mho_program_finish_pair(const mho_plan *plan, mho_program_trace *trace,
     double to_b = 2 / b[l] + 4 * b[l] * re * inverse;
     double size = (fabs(a[l]) + fabs(x0) + y0) * (fabs(c[l]) + fabs(x1) + y1);
     double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
-    double low = fabs(to_a * a[to_low + l]) + fabs(to_b * b[to_low + l]) + fabs(to_c * c[to_low + l]);
+    double low = fabs(to_a * a[to_low + l]) + fabs(to_b * b[to_low + l]) +
+                 fabs(to_c * c[to_low + l]);
     a_hat[l] = to_a;
     b_hat[l] = to_b;
     c_hat[l] = to_c;

@@ -51,25 +51,27 @@ enum { LARGE_PAGE = 1 << 21, UNROLLED = PROGRAM_BARE_ROW };
 /* All functions with vectors as values are inlined. */
 #pragma GCC diagnostic ignored "-Wpsabi"
 
-/* Lanes in a register, loaded and stored by their address.  L, the lanes that run, is
- * a constant wherever functions are inlined. */
+/* Lanes in a register, loaded and stored by their address; L lanes run.  A step is done
+ * for one vector after the other, which are independent and overlap. */
 enum { VECTOR = 8, VECTORS = PROGRAM_LANES / VECTOR };
-typedef double vector __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
-typedef long long bits __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias));
+#define OF_LANES __attribute__((vector_size(VECTOR * sizeof(double)), aligned(8), may_alias))
+typedef double vector OF_LANES;
+typedef long long bits OF_LANES;
 typedef struct {
   vector of[VECTORS];
 } lanes;
 typedef struct {
   vector high, low;
 } pair;
-#define EACH_VECTOR(v) _Pragma("GCC unroll 4") for (int v = 0; v < L / VECTOR; v++)
+#define EACH_VECTOR(v) for (int v = 0; v < L / VECTOR; v++)
 #define AT(array, v) (*(vector *)((array) + (v) * VECTOR))
 #define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
 
 mho_status mho_program_trace_create(const mho_program *program, mho_program_trace *trace)
 {
-  size_t L = (size_t)program->lanes, slots = ((size_t)program->slots + 1) * L, responses = slots * (size_t)program->kept;
-  size_t bytes = (2 * slots + responses + program->taped * L) * sizeof(double);
+  size_t run = (size_t)program->lanes, slots = ((size_t)program->slots + 1) * run;
+  size_t responses = slots * (size_t)program->kept;
+  size_t bytes = (2 * slots + responses + program->taped * run) * sizeof(double);
   size_t page = bytes > LARGE_PAGE ? LARGE_PAGE : 64;
   trace->number = aligned_alloc(page, (bytes + page - 1) / page * page);
   if (!trace->number) return MHO_ERR_MEMORY;
@@ -190,8 +192,8 @@ INLINED void update(int L, pair p, int target, int v, mho_program_trace *trace)
 
 /* One pivot, one vector of lanes; `row` is a constant where this is inlined for a
  * short row, whose numbers then stay in registers. */
-INLINED void eliminate(int L, int row, int pivot, const int *slot, double *tape, int v, vector *squares,
-                       mho_program_trace *trace)
+INLINED void eliminate(int L, int row, int pivot, const int *slot, double *tape, int v,
+                       vector *squares, mho_program_trace *trace)
 {
   const int *target = slot + 2 * row;
   pair w = inverse(pair_at(L, PROGRAM_NUMBER(trace, pivot), v)), a[UNROLLED];
@@ -231,12 +233,14 @@ INLINED void eliminate_bare(int L, int row, const mho_program_load *bare, const 
   }
 }
 
-INLINED void forward(int L, const mho_program *program, const double *energy_ev,
-                     double norm_ev, mho_program_trace *trace)
+FOR_EVERY_PROCESSOR
+void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
+                         double norm_ev, mho_program_trace *trace)
 {
   const mho_program_load *next = program->load;
   const int *slot = program->slot;
   double *tape = trace->tape;
+  const int L = trace->lanes = count <= VECTOR ? VECTOR : program->lanes;
   lanes squares = {{{0}}}; /* of all 1/d */
   for (size_t k = 0; k < program->steps; k++) {
     const mho_program_step *step = &program->step[k];
@@ -273,18 +277,6 @@ INLINED void forward(int L, const mho_program *program, const double *energy_ev,
   double most = 1 / (PIVOT * norm_ev);
   for (int l = 0; l < L; l++)
     trace->broken[l] = !(squares.of[l / VECTOR][l % VECTOR] < most * most);
-}
-
-FOR_EVERY_PROCESSOR
-void mho_program_forward(const mho_program *program, const double *energy_ev, size_t count,
-                         double norm_ev, mho_program_trace *trace)
-{
-  trace->lanes = count <= VECTOR ? VECTOR : program->lanes;
-  switch (trace->lanes) {
-  case VECTOR: forward(VECTOR, program, energy_ev, norm_ev, trace); break;
-  case PROGRAM_LANES / 2: forward(PROGRAM_LANES / 2, program, energy_ev, norm_ev, trace); break;
-  default: forward(PROGRAM_LANES, program, energy_ev, norm_ev, trace);
-  }
 }
 
 /* --- and back ----------------------------------------------------------------------- */
@@ -375,13 +367,14 @@ INLINED void finish_back(int L, int kept, const mho_program *program, const lane
   for (int l = 0; l < L; l++) trace->error[l] *= UNIT;
 }
 
-INLINED void backward(int L, int kept, const mho_program *program, const double *energy_ev,
+INLINED void backward(int kept, const mho_program *program, const double *energy_ev,
                       mho_program_trace *trace)
 {
   const int *slot = program->slot + program->slots_listed;
   const mho_program_load *bare = program->load + program->loads;
-  const double *tape = trace->tape + program->taped * L;
   double size[PROGRAM_KEPT_MAX * PROGRAM_KEPT_MAX * PROGRAM_LANES];
+  const int L = trace->lanes;
+  const double *tape = trace->tape + program->taped * (size_t)L;
   lanes error = {{{0}}};
   bare -= program->last.diagonals + program->last.bonds;
   start_back(L, kept, program, trace, size);
@@ -423,12 +416,6 @@ FOR_EVERY_PROCESSOR
 void mho_program_backward(const mho_program *program, const double *energy_ev,
                           mho_program_trace *trace)
 {
-#define BACKWARD(kept)                                                               \
-  switch (trace->lanes) {                                                            \
-  case VECTOR: backward(VECTOR, kept, program, energy_ev, trace); break;             \
-  case PROGRAM_LANES / 2: backward(PROGRAM_LANES / 2, kept, program, energy_ev, trace); break; \
-  default: backward(PROGRAM_LANES, kept, program, energy_ev, trace);                 \
-  }
-  if (program->kept == 2) BACKWARD(2) else BACKWARD(program->kept)
-#undef BACKWARD
+  if (program->kept == 2) backward(2, program, energy_ev, trace);
+  else backward(program->kept, program, energy_ev, trace);
 }

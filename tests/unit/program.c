@@ -126,7 +126,8 @@ static void check_batch(const raw *r, const mho_plan *plan, const double gamma[2
     }
     schur(r, kept, energy[l], exact);
     mho_quad t = transmission(exact, gamma);
-    double off = (double)mho_quad_abs((transmission(ours, gamma) - t) / t), bound = trace->error[l];
+    double off = (double)mho_quad_abs((transmission(ours, gamma) - t) / t);
+    double bound = trace->error[l];
     if (!(bound < 1e-6)) continue; /* says that it knows nothing */
     count->worst = fmax(count->worst, off / bound);
     count->largest = fmax(count->largest, bound);
@@ -200,7 +201,7 @@ static void bounds_hold_against_113_bits(void **state)
   tally count = {0};
   for (int trial = 0; trial < 60; trial++) check_junction(4 + trial, &count);
   for (int trial = 0; trial < 3; trial++) check_junction(200 + 400 * trial, &count);
-  print_message("%d points, %d with a pivot too small; %.2g of the bound reached, which is up to %.2g\n",
+  print_message("%d points, %d with a pivot too small; %.2g of the bound reached, up to %.2g\n",
                 count.points, count.broken, count.worst, count.largest);
   assert_true(count.points > 1000 && count.broken < count.points / 2);
   assert_true(count.worst > 1e-4); /* and is not far from needed */
@@ -215,13 +216,15 @@ static void eliminations_are_balanced(void **state)
     mho_entry *entry = malloc((size_t)sites * sizeof *entry);
     for (int i = 0; i + 1 < sites; i++) entry[i] = (mho_entry){i, i + 1, BETA};
     vector[0] = vector[2 * sites - 1] = 1;
-    mho_lead left = {1, &gamma, &zero, vector, NULL}, right = {1, &gamma, &zero, vector + sites, NULL};
+    mho_lead left = {1, &gamma, &zero, vector, NULL};
+    mho_lead right = {1, &gamma, &zero, vector + sites, NULL};
     mho_plan *plan;
-    assert_int_equal(mho_plan_create_sparse(sites, entry, (size_t)sites - 1, &left, &right, &plan, NULL),
-                     MHO_OK);
-    assert_int_equal(plan->program->steps, sites - 2);
-    assert_true(plan->program->roundings <= 2 * ceil(log2(sites)));
-    assert_true(plan->program->slots <= 3 * ceil(log2(sites)) && plan->program->taped < 2 * (size_t)sites);
+    assert_int_equal(
+        mho_plan_create_sparse(sites, entry, (size_t)sites - 1, &left, &right, &plan, NULL), MHO_OK);
+    const mho_program *program = plan->program;
+    assert_int_equal(program->steps, sites - 2);
+    assert_true(program->roundings <= 2 * ceil(log2(sites)));
+    assert_true(program->slots <= 3 * ceil(log2(sites)) && program->taped < 2 * (size_t)sites);
     mho_plan_free(plan);
     free(vector);
     free(entry);
