@@ -28,10 +28,9 @@ def run(arguments, scratch, **variables):
 
 def main():
     failures = runs = 0
-    for arguments in (["check", "--json", MOLECULE], ["conductance", MOLECULE],
+    for arguments in (["check", "--json", MOLECULE], ["conductance", "--verbose", CHAIN],
                       ["conductance", "--json", MOLECULE],
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
-                      ["conductance", "--verbose", CHAIN],
                       ["transmission", "--channels", "--parts", ACID],
                       ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
                       ["blink", "--levels=2", "blink.txt"],

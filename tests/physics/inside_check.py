@@ -162,7 +162,7 @@ def eigenchannels(checks, program):
                          wide('c6 c7', 0.9))):
         file = program.write(naphthalene({'left': left, 'right': right}))
         j = Junction(program, file)
-        for energy in (-2.9, 0.07, 1.3):
+        for energy in (-2.9, 0.07):
             g, gamma = j.solve(energy)
             a = [np.sqrt(-2 * j.sigma(s, energy).imag) * j.vectors[s]
                  for s in (0, 1)]
