@@ -31,18 +31,21 @@ typedef struct {
   int zeros;       /* zeros with multiplicity, a dip counting twice */
 } mho_nodes;
 
-/* Minima are searched in place of nodes where more sites than the first hang
- * together without a site that all ways from contact to contact pass, or more
- * than the second and doubles do not tell their zeros apart. */
+/* Sites of a link (below) up to which nodes are searched, and up to which in 113
+ * bits where doubles do not tell them apart; beyond, minima are. */
 enum { MHO_NODES_STATES_MAX = 1000, MHO_NODES_EXTENDED_MAX = 200 };
 
 MHO_BEGIN_DECLARATIONS
 
 /* All nodes of a plan; the caller clears the result, also after a failure.
  *
- * How many zeros P has is counted in exact arithmetic modulo a prime (states
- * that neither contact sees cancel; amplitudes below 1e-13 at both are none).
- * They start from the closed-loop matrix of the bordered pencil
+ * P is the product of those of the links, the parts of the molecule between
+ * neighbours of the sites that every way from left to right passes, and of det(E - H)
+ * of the groups that hang on such a site (F. Harary, SIAM Rev. 4, 202 (1962)): equal
+ * links are solved once, and a node of six rings is six times that of one.  States
+ * that neither contact sees cancel, of a link or between links; how many there are
+ * in all is counted in exact arithmetic modulo a prime (amplitudes below 1e-13 at
+ * both are none).  Zeros of a link start from the closed-loop matrix of the bordered pencil
  * [[H, v_l], [v_r^T, 0]] - E diag(1, 0) without its infinite zeros (A.
  * Emami-Naeini and P. Van Dooren, Automatica 18, 415 (1982)), are polished on P
  * itself to twice the digits of a double, kept apart by discs that hold one

@@ -63,15 +63,16 @@ static mho_status plan_of(int sites, int ends, const double *h, mho_plan **plan,
   if (status == MHO_OK) status = mho_plan_create_bare(&junction, plan, error);
   mho_junction_clear(&junction);
   free(vector);
-  if (status == MHO_OK) status = mho_exact_count(*plan, counts);
-  return status;
+  if (status != MHO_OK) return status;
+  status = mho_exact_count(*plan, counts);
+  return status == MHO_OK ? status : mho_fail(error, status, "solver", NULL, "out of memory");
 }
 
 /* A side group of one site blocks at its energy. */
-static mho_status single_site(kind *k)
+static mho_status single_site(kind *k, mho_error *error)
 {
   k->nodes = (mho_nodes){.count = 1, .zeros = 1, .node = malloc(sizeof(mho_node))};
-  if (!k->nodes.node) return MHO_ERR_MEMORY;
+  if (!k->nodes.node) return mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   k->nodes.node[0] = (mho_node){.kind = MHO_NODE_EXACT, .energy_ev = k->h[3], .order = 1};
   return MHO_OK;
 }
@@ -100,7 +101,7 @@ static mho_status classify(factors *f, int number, bool patient, mho_error *erro
   *k = (kind){.sites = link->sites, .ends = ends, .times = 1, .h = h};
   mho_status status = plan_of(k->sites, ends, h, &k->plan, &k->counts, error);
   if (status == MHO_OK)
-    status = k->sites + ends == 3 ? single_site(k)
+    status = k->sites + ends == 3 ? single_site(k, error)
                                   : mho_nodes_of_block(k->plan, &k->counts, patient, &k->nodes, error);
   return status;
 }
@@ -151,8 +152,8 @@ static int unseen_at(const mho_plan *plan, const mho_exact_counts *counts, doubl
   return unseen;
 }
 
-/* Is there a state between two links next to each other among those with a zero at
- * this energy?  -1: it is not clear. */
+/* States between two links next to each other among those with a zero at this energy:
+ * what the piece of both has unseen, less what its links have.  -1: it is not clear. */
 static mho_status look_between(factors *f, int first, int last, double energy_ev, int *states,
                                mho_error *error)
 {
@@ -244,8 +245,8 @@ static mho_status find(factors *f, const mho_exact_counts *counts, bool patient,
     left -= k->times * k->nodes.unseen;
     zeros += k->times * k->nodes.zeros;
   }
-  if (status == MHO_OK) status = collect(f);
-  if (status == MHO_ERR_MEMORY) return mho_fail(error, status, "solver", NULL, "out of memory");
+  if (status == MHO_OK && collect(f) != MHO_OK)
+    status = mho_fail(error, MHO_ERR_MEMORY, "solver", NULL, "out of memory");
   if (status != MHO_OK) return status;
   result->unseen = f->plan->sites - counts->visible;
   result->zeros = zeros - left;

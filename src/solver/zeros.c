@@ -28,6 +28,10 @@
 
 enum { SUM_STEPS = 40, BARE_STEPS = 60, KICKS = 4, CIRCLE_POINTS = 48 };
 
+/* More guesses far off, and g is below the range of a double where its zeros are: the
+ * way between the contacts has hundreds of bonds. */
+enum { LOST_MAX = 8 };
+
 /* A zero this near (times ||H||) to a level that g does not have, where z - H is
  * near to singular, may be left to a circle; nearer than the second it is. */
 #define HELD 1e-4
@@ -72,6 +76,7 @@ typedef struct {
   int groups, zeros, free; /* zero[0 .. free - 1] are those of g */
   zero *zero;
   mho_bare *bare;
+  int lost;  /* zeros that were brought back */
   bool fine; /* what doubles did not tell apart once more, with g to 30 digits */
 } search;
 
@@ -224,10 +229,11 @@ static bool hold(const search *s, zero *z)
 }
 
 /* So far out that g is nothing: a guess that rounding made.  Elsewhere, then. */
-static bool bring_back(const search *s, int k)
+static bool bring_back(search *s, int k)
 {
   zero *z = &s->zero[k];
-  if (cabs(z->z) < 2 * s->plan->norm_ev || z->kicks++ >= KICKS) return false;
+  if (cabs(z->z) < 2 * s->plan->norm_ev || s->lost++ >= LOST_MAX) return false;
+  z->kicks++;
   z->z = 0.6 * s->plan->norm_ev * cexp(I * (1 + 2.4 * k + z->kicks));
   z->step = s->plan->norm_ev;
   z->radius = INFINITY;
@@ -246,7 +252,10 @@ static bool polish(search *s, int k)
   double complex poles = mho_levels_sum(s->group, s->groups, norm, z->z).poles;
   double complex slope = g.slope + g.value * poles; /* u'/D */
   double size = cabs(g.value) + g.noise, doubt = g.slope_noise + g.noise * cabs(poles);
-  if (!(cabs(slope) > 2 * doubt)) return bring_back(s, k) || hold(s, z);
+  if (!(cabs(slope) > 2 * doubt)) {
+    bool vanished = cabs(g.value) < DBL_MIN && cabs(z->z) > norm;
+    return bring_back(s, k) || (!vanished && hold(s, z));
+  }
   z->radius = 4 * degree * size / cabs(slope) + least;
   if (!(cabs(g.value) > g.noise)) {
     z->step = 0;

@@ -32,6 +32,7 @@ def main():
                       ["conductance", "--json", MOLECULE],
                       ["transmission", "--csv", MOLECULE], ["transmission", "--poles", MOLECULE],
                       ["transmission", "--channels", "--parts", ACID],
+                      ["transmission", "--nodes", "Nc1cccc(c1)-c1cccc(N)c1"],
                       ["histogram", "--plateaus", "--json", "--floor=1e-6G0", PULLS],
                       ["blink", "--levels=2", "blink.txt"],
                       ["screen", "list.smi", "--store", "r.db", "--threads=1", "--csv"],
