@@ -12,6 +12,7 @@ import os
 import re
 import shutil
 import signal
+import sqlite3
 import subprocess
 import sys
 import tempfile
@@ -152,6 +153,11 @@ def check_tables(folder):
 def check_same_bytes(scratch):
     one, two = os.path.join(scratch, "one"), os.path.join(scratch, "two")
     expect(mho("run", STUDY, "-o", one).returncode == 0, "the demo study runs")
+    store = sqlite3.connect(os.path.join(one, "screening.db"))
+    expect(store.execute("SELECT count(*) FROM candidate").fetchone()[0] > 100, "a store of candidates")
+    store.close()
+    counter = int.from_bytes(open(os.path.join(one, "screening.db"), "rb").read()[24:28], "big")
+    expect(counter == 2, f"whatever the time, the store is made in two transactions, not {counter}")
     expect(mho("run", STUDY, "-o", two).returncode == 0, "and again")
     expect(digest(one, ["provenance.json"]) == digest(two, ["provenance.json"]), "same bytes")
     before = digest(one)
