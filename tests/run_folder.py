@@ -197,6 +197,15 @@ def fake_gnuplot(scratch, body):
     return {"PATH": folder + ":/usr/bin:/bin"}
 
 
+def wait_for_work(scratch):
+    """Until a run fills its hidden folder, which a busy machine takes long to reach."""
+    for _ in range(300):
+        if any(".tmp-" in name for name in os.listdir(scratch)):
+            break
+        time.sleep(0.1)
+    time.sleep(0.3)
+
+
 def check_failures(scratch):
     folder = os.path.join(scratch, "kept")
     mho("run", STUDY, "-o", folder)
@@ -207,14 +216,14 @@ def check_failures(scratch):
     for number in (signal.SIGINT, signal.SIGTERM):
         run = subprocess.Popen([MHO, "run", STUDY, "-o", folder], stderr=subprocess.PIPE,
                                env=fake_gnuplot(scratch, "sleep 1\n"), start_new_session=True)
-        time.sleep(0.4)
+        wait_for_work(scratch)
         run.send_signal(number)
         _, errors = run.communicate(timeout=30)
         expect(run.returncode == 1 and b"interrupted" in errors, "an interrupted run says so")
         expect(digest(folder) == before, "an interrupted run keeps the earlier results")
     run = subprocess.Popen([MHO, "run", STUDY, "-o", folder],
                            env=fake_gnuplot(scratch, "sleep 5\n"), start_new_session=True)
-    time.sleep(0.4)
+    wait_for_work(scratch)
     os.killpg(run.pid, signal.SIGKILL)
     run.wait()
     expect(digest(folder) == before, "a killed run keeps the earlier results")
