@@ -12,6 +12,7 @@ import os
 import re
 import shutil
 import signal
+import sqlite3
 import subprocess
 import sys
 import tempfile
@@ -152,6 +153,11 @@ def check_tables(folder):
 def check_same_bytes(scratch):
     one, two = os.path.join(scratch, "one"), os.path.join(scratch, "two")
     expect(mho("run", STUDY, "-o", one).returncode == 0, "the demo study runs")
+    store = sqlite3.connect(os.path.join(one, "screening.db"))
+    expect(store.execute("SELECT count(*) FROM candidate").fetchone()[0] > 100, "a store of candidates")
+    store.close()
+    counter = int.from_bytes(open(os.path.join(one, "screening.db"), "rb").read()[24:28], "big")
+    expect(counter == 2, f"whatever the time, the store is made in two transactions, not {counter}")
     expect(mho("run", STUDY, "-o", two).returncode == 0, "and again")
     expect(digest(one, ["provenance.json"]) == digest(two, ["provenance.json"]), "same bytes")
     before = digest(one)
@@ -191,6 +197,15 @@ def fake_gnuplot(scratch, body):
     return {"PATH": folder + ":/usr/bin:/bin"}
 
 
+def wait_for_work(scratch):
+    """Until a run fills its hidden folder, which a busy machine takes long to reach."""
+    for _ in range(300):
+        if any(".tmp-" in name for name in os.listdir(scratch)):
+            break
+        time.sleep(0.1)
+    time.sleep(0.3)
+
+
 def check_failures(scratch):
     folder = os.path.join(scratch, "kept")
     mho("run", STUDY, "-o", folder)
@@ -201,14 +216,14 @@ def check_failures(scratch):
     for number in (signal.SIGINT, signal.SIGTERM):
         run = subprocess.Popen([MHO, "run", STUDY, "-o", folder], stderr=subprocess.PIPE,
                                env=fake_gnuplot(scratch, "sleep 1\n"), start_new_session=True)
-        time.sleep(0.4)
+        wait_for_work(scratch)
         run.send_signal(number)
         _, errors = run.communicate(timeout=30)
         expect(run.returncode == 1 and b"interrupted" in errors, "an interrupted run says so")
         expect(digest(folder) == before, "an interrupted run keeps the earlier results")
     run = subprocess.Popen([MHO, "run", STUDY, "-o", folder],
                            env=fake_gnuplot(scratch, "sleep 5\n"), start_new_session=True)
-    time.sleep(0.4)
+    wait_for_work(scratch)
     os.killpg(run.pid, signal.SIGKILL)
     run.wait()
     expect(digest(folder) == before, "a killed run keeps the earlier results")

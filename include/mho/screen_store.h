@@ -39,6 +39,9 @@ typedef struct {
   const mho_screen_requirement *requirement;
   size_t requirements;
   int threads; /* 0: as many as OpenMP has */
+  /* Batches of one size instead of one time: the store has the same bytes each
+   * time (SQLite counts transactions), but less of it is kept after a crash. */
+  bool even_batches;
   /* Called with the counts before the work begins and after every batch. */
   void (*progress)(const mho_screen_counts *counts, void *user);
   void *user;

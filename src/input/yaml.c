@@ -75,8 +75,9 @@ static const char *find_habit(const walker *w, size_t number)
   if (!smiles || smiles >= line + length) return NULL;
   smiles += strlen("smiles:");
   smiles += strspn(smiles, " ");
-  return *smiles == '"' || *smiles == '\'' ? NULL
-                                          : "write the SMILES in quotes, smiles: \"[SH:1]c1...\"";
+  bool quoted = *smiles == '"' || *smiles == '\'';
+  return quoted || !memchr(smiles, '[', strcspn(smiles, ",}\r\n"))
+             ? NULL : "write the SMILES in quotes, smiles: \"[SH:1]c1...\"";
 }
 
 static mho_status next_event(walker *w)

@@ -58,7 +58,7 @@ static mho_status read_header(mho_trace_reader *reader, const char *header, mho_
   const char *kind = find_key(header, "'descr'");
   if (!kind || *kind != '\'' || (kind[1] != '<' && kind[1] != '>') || kind[2] != 'f' ||
       (kind[3] != '4' && kind[3] != '8') || kind[4] != '\'')
-    return bad(reader, error, "the values are not of the kind f4 or f8");
+    return bad(reader, error, "the values are not of the kind f4 or f8 (array.astype(float) is)");
   const char *order = find_key(header, "'fortran_order'");
   if (!order) return bad(reader, error, "the header does not name the order");
   uint64_t shape[2] = {0, 1};
@@ -66,7 +66,7 @@ static mho_status read_header(mho_trace_reader *reader, const char *header, mho_
   if (!read_shape(find_key(header, "'shape'"), shape, &dimensions))
     return bad(reader, error, "the shape does not have one or two dimensions");
   if (strncmp(order, "False", 5) != 0 && dimensions == 2 && shape[0] > 1 && shape[1] > 1)
-    return bad(reader, error, "the array is in Fortran order");
+    return bad(reader, error, "the array is in Fortran order (numpy.ascontiguousarray(array) is not)");
   if (shape[1] > 0 && shape[0] > UINT64_MAX / 16 / shape[1])
     return bad(reader, error, "the shape is too large");
   array->swap = kind[1] == (__BYTE_ORDER__ == __ORDER_LITTLE_ENDIAN__ ? '>' : '<');

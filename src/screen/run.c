@@ -66,7 +66,7 @@ static void crew_free(crew *c)
 
 static mho_status crew_create(const mho_screen_job *job, crew *c, mho_error *error)
 {
-  *c = (crew){.job = job, .size = BATCH_FIRST,
+  *c = (crew){.job = job, .size = job->even_batches ? BATCH_MOST : BATCH_FIRST,
               .threads = job->threads > 0 ? job->threads : omp_get_max_threads()};
   c->workspace = calloc((size_t)c->threads, sizeof *c->workspace);
   c->task = calloc(BATCH_MOST, sizeof *c->task);
@@ -153,6 +153,12 @@ static void report(const mho_screen_job *job, const mho_screen_counts *counts)
   if (job->progress) job->progress(counts, job->user);
 }
 
+static void resize(crew *c, double taken)
+{
+  if (taken < BATCH_SHORT_S && 2 * c->size <= BATCH_MOST) c->size *= 2;
+  if (taken > BATCH_LONG_S && c->size > c->threads) c->size /= 2;
+}
+
 static mho_status run_batches(crew *c, mho_screen_store *store, mho_screen_counts *counts,
                               mho_error *error)
 {
@@ -164,8 +170,7 @@ static mho_status run_batches(crew *c, mho_screen_store *store, mho_screen_count
     compute_batch(c);
     status = write_batch(c, store, counts, error);
     double taken = now_s() - start;
-    if (taken < BATCH_SHORT_S && 2 * c->size <= BATCH_MOST) c->size *= 2;
-    if (taken > BATCH_LONG_S && c->size > c->threads) c->size /= 2;
+    if (!c->job->even_batches) resize(c, taken);
     if (status == MHO_OK) report(c->job, counts);
     bool complete = counts->good + counts->bad == c->rows;
     if (status == MHO_OK && !complete && cancelled(c->job)) status = fail_cancelled(error);

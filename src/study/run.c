@@ -472,6 +472,7 @@ static mho_status screen(run *r, mho_error *error)
   job.list = s->screen_list;
   job.settings = &s->screen_settings;
   job.defaults = &s->defaults;
+  job.even_batches = true;
   job.screen.window_ev = s->window_ev;
   job.goal = s->screening.has_goal ? &s->screening.goal : NULL;
   job.requirement = s->screening.requirement;
