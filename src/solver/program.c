@@ -113,13 +113,13 @@ static void remove_link(links *r, int site)
     if (r->link[k].site == site) r->link[k--] = r->link[--r->count];
 }
 
-static int add_number(compiler *c, double value)
+static int add_number(compiler *c)
 {
   if (!grow(c, (void **)&c->number, &c->number_room, c->numbers + 1, sizeof *c->number)) {
     c->failed = true;
     return 0;
   }
-  c->number[c->numbers] = (number){value, -1, 0};
+  c->number[c->numbers] = (number){0, -1, 0};
   return (int)c->numbers++;
 }
 
@@ -131,11 +131,12 @@ static int number_of(const compiler *c, int i, int j)
   return here ? here->number : -1;
 }
 
-static int joined(compiler *c, int i, int j, double value)
+/* The same, which from now on is not zero. */
+static int joined(compiler *c, int i, int j)
 {
   int n = number_of(c, i, j);
   if (n >= 0) return n;
-  n = add_number(c, value);
+  n = add_number(c);
   add_link(c, i, j, n);
   add_link(c, j, i, n);
   return n;
@@ -188,7 +189,7 @@ static void eliminate(compiler *c, int site)
   for (int a = 0; a < count; a++) remove_link(&c->row[r->link[a].site], site);
   for (int a = 0; a < count && !c->failed; a++)
     for (int b = a; b < count && !c->failed; b++) {
-      int target = joined(c, r->link[a].site, r->link[b].site, 0);
+      int target = joined(c, r->link[a].site, r->link[b].site);
       push(c, &c->record, target);
       c->number[target].roundings++;
       c->updates++;
@@ -358,12 +359,12 @@ static bool start(compiler *c)
   c->place = c->queue + n;
   for (size_t i = 0; i < n; i++) {
     c->row[i] = (links){c->shorts + i * ROW_SHORT, 0, ROW_SHORT};
-    add_number(c, 0);
+    add_number(c);
   }
   for (size_t e = 0; e < plan->entries && !c->failed; e++) {
     int i = plan->entry[e].i, j = plan->entry[e].j;
     double value = plan->entry[e].value_ev;
-    int it = value != 0 ? joined(c, i, j, 0) : -1;
+    int it = value != 0 ? joined(c, i, j) : -1;
     if (it >= 0) c->number[it].value += value;
   }
   return !c->failed;
