@@ -12,6 +12,7 @@
  */
 #include <mho/transmission.h>
 
+#include <malloc.h>
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -152,6 +153,9 @@ int main(int argc, char **argv)
 {
   if (argc == 2 && !strcmp(argv[1], "divide")) return divide();
   if (argc != 5) return 2;
+  /* Freed memory stays, as it does in a process that has freed larger arrays. */
+  mallopt(M_MMAP_THRESHOLD, 1 << 30);
+  mallopt(M_TRIM_THRESHOLD, 1 << 30);
   work w;
   read_work(argv[2], !strcmp(argv[1], "dense"), &w);
   mho_point *point = room(w.energies, sizeof *point);

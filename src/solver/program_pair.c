@@ -7,7 +7,7 @@
  *   T = Gamma_L Gamma_R b^2 / |D|^2,
  *   dlnT/da = -2 Re(C/D),  dlnT/dc = -2 Re(A/D),  dlnT/db = 2/b + 4 b Re(1/D).
  *
- * Only the leading parts count; what the others would change is part of the error.
+ * D in double-double, as its parts cancel at narrow resonances.
  */
 #include <math.h>
 
@@ -24,36 +24,68 @@ bool mho_program_is_pair(const mho_plan *plan)
          program->kept_slot[0][1] >= 0;
 }
 
+typedef struct {
+  double high, low;
+} pair;
+
+/* a + b and what rounding left out; D. E. Knuth, The Art of Computer Programming,
+ * volume 2, section 4.2.2. */
+INLINED pair sum(double a, double b)
+{
+  double high = a + b, part = high - a;
+  return (pair){high, (a - (high - part)) + (b - part)};
+}
+
+INLINED pair product(pair a, pair b)
+{
+  double high = a.high * b.high;
+  return (pair){high, __builtin_fma(a.high, b.high, -high) + (a.high * b.low + a.low * b.high)};
+}
+
+INLINED pair normal(double high, double low)
+{
+  double nearest = high + low;
+  return (pair){nearest, low - (nearest - high)};
+}
+
 FOR_EVERY_PROCESSOR
 void mho_program_finish_pair(const mho_plan *plan, mho_program_trace *trace,
                              double *transmission, double *relative_error)
 {
   const mho_program *program = plan->program;
+  const int lanes = trace->lanes;
   const double *restrict a = PROGRAM_NUMBER(trace, program->kept_slot[0][0]);
   const double *restrict b = PROGRAM_NUMBER(trace, program->kept_slot[0][1]);
   const double *restrict c = PROGRAM_NUMBER(trace, program->kept_slot[1][1]);
   double *restrict a_hat = trace->adjoint, *restrict b_hat = trace->adjoint + 2 * L;
   double *restrict c_hat = trace->adjoint + 3 * L;
-  int to_low = trace->lanes;
   double v0 = plan->vector[plan->support[0]];
   double v1 = plan->vector[plan->sites + plan->support[1]];
   double x0 = plan->shift_ev[0] * v0 * v0, y0 = 0.5 * plan->coupling_ev[0] * v0 * v0;
   double x1 = plan->shift_ev[1] * v1 * v1, y1 = 0.5 * plan->coupling_ev[1] * v1 * v1;
+  /* Of parts of D: in double-double, and what squares of v lose. */
+  double unit = 64 * UNIT_ROUNDOFF * UNIT_ROUNDOFF;
+  if (fabs(v0) != 1 || fabs(v1) != 1) unit += 8 * UNIT_ROUNDOFF;
+  pair both = product((pair){y0, 0}, (pair){y1, 0});
 #pragma GCC ivdep
-  for (int l = 0; l < to_low; l++) {
-    double p = a[l] - x0, q = c[l] - x1, square = b[l] * b[l];
-    double re = p * q - y0 * y1 - square, im = p * y1 + q * y0; /* D */
+  for (int l = 0; l < lanes; l++) {
+    pair p = sum(a[l], -x0), q = sum(c[l], -x1);
+    p = normal(p.high, p.low + a[lanes + l]);
+    q = normal(q.high, q.low + c[lanes + l]);
+    pair pq = product(p, q), square = product((pair){b[l], b[lanes + l]}, (pair){b[l], b[lanes + l]});
+    pair first = sum(pq.high, -square.high), second = sum(first.high, -both.high);
+    double re = second.high + (second.low + first.low + (pq.low - square.low - both.low));
+    pair left = product(p, (pair){y1, 0}), right = product(q, (pair){y0, 0});
+    pair side = sum(left.high, right.high);
+    double im = side.high + (side.low + (left.low + right.low));
     double inverse = 1.0 / (re * re + im * im), small = sqrt(inverse);
-    double to_a = -2 * (q * re + y1 * im) * inverse, to_c = -2 * (p * re + y0 * im) * inverse;
-    double to_b = 2 / b[l] + 4 * b[l] * re * inverse;
+    double to_a = -2 * (q.high * re + y1 * im) * inverse;
+    double to_c = -2 * (p.high * re + y0 * im) * inverse;
     double size = (fabs(a[l]) + fabs(x0) + y0) * (fabs(c[l]) + fabs(x1) + y1);
-    double error = UNIT_ROUNDOFF * (16 + 2 * (8 * size + 4 * square) * small);
-    double low = fabs(to_a * a[to_low + l]) + fabs(to_b * b[to_low + l]) +
-                 fabs(to_c * c[to_low + l]);
     a_hat[l] = to_a;
-    b_hat[l] = to_b;
+    b_hat[l] = 2 / b[l] + 4 * b[l] * re * inverse;
     c_hat[l] = to_c;
-    transmission[l] = 4 * y0 * y1 * square * inverse;
-    relative_error[l] = error + low;
+    transmission[l] = 4 * y0 * y1 * square.high * inverse;
+    relative_error[l] = 16 * UNIT_ROUNDOFF + 2 * unit * (size + square.high) * small;
   }
 }
