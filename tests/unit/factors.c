@@ -96,9 +96,12 @@ static mho_nodes nodes_of(const molecule *m, way how, double gamma)
   mho_plan *plan = NULL;
   raw r = {m->sites, h, {lead[0], lead[1]}};
   if (how != EXTENDED) plan = plan_of(&r, false, false);
-  else
+  else {
     assert_int_equal(mho_plan_create_sparse(m->sites, entry, entries, &lead[0], &lead[1], &plan, NULL),
                      MHO_OK);
+    free(plan->pair);
+    plan->pair = NULL; /* its levels are not to be used */
+  }
   mho_nodes nodes;
   mho_error error;
   mho_error_init(&error);
