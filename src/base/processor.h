@@ -1,13 +1,15 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later
  *
  * A function compiled for several processors, the best chosen when the program
- * starts.  Without fast-math or contraction all of them round alike.
+ * starts.  Without fast-math or contraction all of them round alike.  Code with
+ * vectors as values has widths.h instead.
  */
 #ifndef MHOLECULE_BASE_PROCESSOR_H
 #define MHOLECULE_BASE_PROCESSOR_H
 
 #if defined(__x86_64__) && defined(__GNUC__) && !defined(__clang__) &&             \
     !defined(__SANITIZE_ADDRESS__)
+#define SEVERAL_PROCESSORS
 #define FOR_EVERY_PROCESSOR                                                    \
   __attribute__((target_clones("arch=x86-64-v4", "arch=x86-64-v3", "default")))
 #else

@@ -12,7 +12,10 @@
 
 #include "solver/plan.h"
 
-enum { PROGRAM_LANES = 32, PROGRAM_KEPT_MAX = 8, PROGRAM_BARE = -1, PROGRAM_BARE_ROW = 3 };
+/* Lanes at most, and where at most so many energies wait. */
+enum { PROGRAM_LANES = 32, PROGRAM_FEW = 8 };
+
+enum { PROGRAM_KEPT_MAX = 8, PROGRAM_BARE = -1, PROGRAM_BARE_ROW = 3 };
 
 /* A number of H that comes alive: E - value on the diagonal, else -value. */
 typedef struct {
@@ -79,6 +82,17 @@ void mho_program_forward(const mho_program *program, const double *energy_ev, si
 /* From the adjoints of the Schur complement to the error. */
 void mho_program_backward(const mho_program *program, const double *energy_ev,
                           mho_program_trace *trace);
+
+/* Both for vectors of so many energies; program_lanes.inc. */
+#define PROGRAM_OF_WIDTH(width)                                                          \
+  void mho_program_forward_##width(const mho_program *program, const double *energy_ev,  \
+                                   size_t count, double norm_ev, mho_program_trace *trace); \
+  void mho_program_backward_##width(const mho_program *program, const double *energy_ev, \
+                                    mho_program_trace *trace);
+PROGRAM_OF_WIDTH(2)
+PROGRAM_OF_WIDTH(4)
+PROGRAM_OF_WIDTH(8)
+#undef PROGRAM_OF_WIDTH
 
 /* For contacts of one site each: T and the relative error of this last step at
  * every lane, adjoints set.  NaN or an infinite error where T is zero. */

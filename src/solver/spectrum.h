@@ -28,4 +28,21 @@ typedef struct {
 void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
                                 mho_spectrum_batch *batch);
 
+/* What that needs of the levels, w w^T of their amplitudes: sums over 1/(E - eps), over
+ * its square, and of the square alone, which tells how near a level is. */
+typedef struct {
+  double f00[SPECTRUM_LANES], f01[SPECTRUM_LANES], f11[SPECTRUM_LANES];
+  double s00[SPECTRUM_LANES], s01[SPECTRUM_LANES], s11[SPECTRUM_LANES];
+  double squares[SPECTRUM_LANES];
+} mho_spectrum_sums;
+
+/* For vectors of so many energies; spectrum_lanes.inc. */
+#define SPECTRUM_OF_WIDTH(width)                                                   \
+  void mho_spectrum_sum_##width(const mho_plan *plan, const double *energy_ev,     \
+                                mho_spectrum_sums *sums);
+SPECTRUM_OF_WIDTH(2)
+SPECTRUM_OF_WIDTH(4)
+SPECTRUM_OF_WIDTH(8)
+#undef SPECTRUM_OF_WIDTH
+
 #endif

@@ -12,55 +12,18 @@
  * |w|^2 = 1 and Cauchy's inequality: sum |w_a w_a / (E - eps)| <= sqrt(S_aa).
  */
 #include <math.h>
-#include <string.h>
 
-#include "solver/logarithm.h"
-#include "solver/plan.h"
 #include "base/processor.h"
+#include "solver/lanes.h"
+#include "solver/logarithm.h"
 #include "solver/spectrum.h"
 
-enum { L = SPECTRUM_LANES, V = 8 };
-
-typedef struct {
-  double f00[L], f01[L], f11[L]; /* F */
-  double s00[L], s01[L], s11[L]; /* sum w w^T / (E - eps)^2 */
-  double squares[L];             /* sum 1 / (E - eps)^2: how near a level is */
-} sums;
-
-typedef double vector __attribute__((vector_size(V * sizeof(double))));
-
-/* V energies at a time, so that with wide vectors all sums stay in registers. */
-FOR_EVERY_PROCESSOR
-static void sum_levels(const mho_plan *plan, const double *energy_ev, sums *t)
-{
-  for (int at = 0; at < L; at += V) {
-    vector e, f00 = {0}, f01 = {0}, f11 = {0}, s00 = {0}, s01 = {0}, s11 = {0}, squares = {0};
-    memcpy(&e, energy_ev + at, sizeof e);
-    for (const mho_pole_pair *k = plan->pair, *end = k + plan->sites; k < end; k++) {
-      vector inverse = 1.0 / (e - k->level_ev);
-      vector p = k->w00 * inverse, q = k->w01 * inverse, r = k->w11 * inverse;
-      f00 += p;
-      f01 += q;
-      f11 += r;
-      s00 += p * inverse;
-      s01 += q * inverse;
-      s11 += r * inverse;
-      squares += inverse * inverse;
-    }
-    memcpy(t->f00 + at, &f00, sizeof e);
-    memcpy(t->f01 + at, &f01, sizeof e);
-    memcpy(t->f11 + at, &f11, sizeof e);
-    memcpy(t->s00 + at, &s00, sizeof e);
-    memcpy(t->s01 + at, &s01, sizeof e);
-    memcpy(t->s11 + at, &s11, sizeof e);
-    memcpy(t->squares + at, &squares, sizeof e);
-  }
-}
+enum { L = SPECTRUM_LANES };
 
 /* T and its relative error from the sums, which is not a number or INFINITY next
  * to a level. */
 FOR_EVERY_PROCESSOR
-static void combine(const mho_plan *plan, const double *energy_ev, const sums *t,
+static void combine(const mho_plan *plan, const double *energy_ev, const mho_spectrum_sums *t,
                     mho_spectrum_batch *batch)
 {
   double nearest = 1 / (SPECTRUM_NEAREST * plan->norm_ev);
@@ -108,7 +71,7 @@ static void combine(const mho_plan *plan, const double *energy_ev, const sums *t
 void mho_spectrum_evaluate_pair(const mho_plan *plan, const double *energy_ev,
                                 mho_spectrum_batch *batch)
 {
-  sums t;
-  sum_levels(plan, energy_ev, &t);
+  mho_spectrum_sums t;
+  OF_WIDEST(mho_spectrum_sum)(plan, energy_ev, &t);
   combine(plan, energy_ev, &t, batch);
 }
