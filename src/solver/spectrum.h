@@ -21,7 +21,7 @@ void mho_spectrum_evaluate(const mho_plan *plan, double energy_ev,
 
 typedef struct {
   double transmission[SPECTRUM_LANES], log10_transmission[SPECTRUM_LANES];
-  double relative_error[SPECTRUM_LANES]; /* not finite where the sums cannot tell */
+  double relative_error[SPECTRUM_LANES]; /* huge or NaN where the sums cannot tell */
 } mho_spectrum_batch;
 
 /* At energy_ev[SPECTRUM_LANES] for one channel a contact. */

@@ -20,8 +20,8 @@
 
 enum { L = SPECTRUM_LANES };
 
-/* T and its relative error from the sums, which is not a number or INFINITY next
- * to a level. */
+/* T and its relative error from the sums; without a branch, so that it becomes
+ * vectors everywhere. */
 FOR_EVERY_PROCESSOR
 static void combine(const mho_plan *plan, const double *energy_ev, const mho_spectrum_sums *t,
                     mho_spectrum_batch *batch)
@@ -61,10 +61,10 @@ static void combine(const mho_plan *plan, const double *energy_ev, const mho_spe
     /* of g_10: error |1/D|^2 against |f / D| */
     double relative = 2 * error * sqrt(inverse) / size + 8 * UNIT_ROUNDOFF;
     double transmission = weight * square * inverse;
-    relative = t->squares[l] <= limit ? relative : INFINITY;
+    int unsure = (t->squares[l] > limit) | (transmission < 1e-280);
     batch->transmission[l] = transmission;
     batch->log10_transmission[l] = log10_of_normal(transmission);
-    batch->relative_error[l] = transmission > 1e-280 ? relative : INFINITY;
+    batch->relative_error[l] = relative + 1e300 * unsure;
   }
 }
 
