@@ -2,7 +2,7 @@
  *
  * A function compiled for several processors, the best chosen when the program
  * starts.  Without fast-math or contraction all of them round alike.  Code with
- * vectors as values has widths.h instead.
+ * vectors as values is compiled for each width instead (solver/lanes.h).
  */
 #ifndef MHOLECULE_BASE_PROCESSOR_H
 #define MHOLECULE_BASE_PROCESSOR_H

@@ -5,5 +5,6 @@
 #pragma GCC target("arch=x86-64-v4")
 #define WIDTH 8
 #include "solver/program_lanes.inc"
+#include "solver/reduction_lanes.inc"
 #include "solver/spectrum_lanes.inc"
 #endif

@@ -4,9 +4,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "base/processor.h"
+#include "solver/lanes.h"
 
-enum { W = REDUCTION_LANES, V = 8, SITES_MAX = 400, ROW_MAX = 24 };
+enum { W = REDUCTION_LANES, SITES_MAX = 400, ROW_MAX = 24 };
 
 /* --- order: the site of fewest neighbours next ---------------------------------- */
 
@@ -177,39 +177,8 @@ int mho_reduction_find(const mho_reduction *reduction, int i, int j)
 
 /* --- run ------------------------------------------------------------------------- */
 
-typedef double vector __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-typedef long long bits __attribute__((vector_size(V * sizeof(double)), aligned(8), may_alias));
-#define AT(array, l) (*(vector *)((array) + (l)))
-#define ABSOLUTE(x) ((vector)((bits)(x) & ((bits){0} + 0x7fffffffffffffffLL)))
-
-/* `vectors` of each half, so that their divisions overlap. */
-INLINED void run(const mho_reduction *r, int vectors, double *number, double *largest_inverse)
-{
-  const int *slot = r->list;
-  for (int k = 0; k < r->steps; k++) {
-    int row = r->step[k].row;
-    for (int v = 0; v < 2 * vectors; v++) {
-      double *lane = number + (v < vectors ? v : W / 2 / V + v - vectors) * V;
-      double *inverse = largest_inverse + (lane - number);
-      const int *target = slot + 2 * row;
-      vector w = 1.0 / AT(lane, (size_t)r->step[k].site * W), size = ABSOLUTE(w);
-      bits larger = size > AT(inverse, 0);
-      AT(inverse, 0) = (vector)(((bits)size & larger) | ((bits)AT(inverse, 0) & ~larger));
-      for (int i = 0; i < row; i++) {
-        vector aw = AT(lane, (size_t)slot[i] * W) * w;
-        for (int j = i; j < row; j++, target++)
-          AT(lane, (size_t)*target * W) -= aw * AT(lane, (size_t)slot[j] * W);
-      }
-    }
-    slot += 2 * row + row * (row + 1) / 2;
-  }
-}
-
-FOR_EVERY_PROCESSOR
 void mho_reduction_run(const mho_reduction *reduction, int lanes, double *number,
                        double *largest_inverse)
 {
-  for (int l = 0; l < W; l++) largest_inverse[l] = 0;
-  if (lanes <= V) run(reduction, 1, number, largest_inverse);
-  else run(reduction, W / 2 / V, number, largest_inverse);
+  OF_WIDEST(mho_reduction_run)(reduction, lanes, number, largest_inverse);
 }

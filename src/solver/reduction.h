@@ -11,7 +11,10 @@
 
 #include "solver/plan.h"
 
-enum { REDUCTION_LANES = 32, REDUCTION_KEPT_MAX = 8 };
+/* Lanes, and those of a half where at most so many are wanted. */
+enum { REDUCTION_LANES = 32, REDUCTION_FEW = 8 };
+
+enum { REDUCTION_KEPT_MAX = 8 };
 
 /* A pivot, which is the diagonal of its site. */
 typedef struct {
@@ -44,5 +47,14 @@ int mho_reduction_find(const mho_reduction *reduction, int i, int j);
  * pivots. */
 void mho_reduction_run(const mho_reduction *reduction, int lanes, double *number,
                        double *largest_inverse);
+
+/* The same for vectors of so many; reduction_lanes.inc. */
+#define REDUCTION_OF_WIDTH(width)                                                     \
+  void mho_reduction_run_##width(const mho_reduction *reduction, int lanes,           \
+                                 double *number, double *largest_inverse);
+REDUCTION_OF_WIDTH(2)
+REDUCTION_OF_WIDTH(4)
+REDUCTION_OF_WIDTH(8)
+#undef REDUCTION_OF_WIDTH
 
 #endif
