@@ -79,7 +79,8 @@ class Molecule:
         contacts = [m["contacts"][side] for side in ("left", "right")]
         self.sites = [index[c["sites"][0]] for c in contacts]
         self.gamma = np.array([c["coupling_eV"] for c in contacts])
-        self.one_kind = element[self.sites[0]] == element[self.sites[1]] and self.gamma[0] == self.gamma[1]
+        kind = {index[linker["site"]]: linker["kind"] for linker in m["linkers"]}
+        self.one_kind = kind[self.sites[0]] == kind[self.sites[1]]
 
 
 def hamiltonians(m, h, k, twist, beta):
