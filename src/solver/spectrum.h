@@ -9,7 +9,9 @@
 
 enum { SPECTRUM_LANES = 16 };
 
-#define SPECTRUM_EIGEN_CONSTANT 16
+/* Practice, not proof: of 600 000 energies of random molecules of 4 to 36 sites, half of
+ * them next to a level, none was off by more than 12 u (||H|| + |E|) times the norms. */
+#define SPECTRUM_EIGEN_CONSTANT 20
 #define SPECTRUM_SUM_CONSTANT 8
 
 /* Nearer to a level than this (times ||H||) first order says nothing. */
