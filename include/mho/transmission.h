@@ -59,15 +59,17 @@ MHO_API const char *mho_plan_describe(const mho_plan *plan, char *buffer,
 MHO_API const char *mho_method_name(mho_method method);
 
 /* Prepares a junction for many energies.  The junction may be cleared
- * afterwards (a chain electrode is copied).  The plan is not changed by its use: many threads may share it.
+ * afterwards (a chain electrode is copied).  The plan is not changed by its use:
+ * many threads may share it.
  * Errors: MHO_ERR_CONTACTS, MHO_ERR_MEMORY, MHO_ERR_LINEAR_ALGEBRA. */
 MHO_API MHO_MUST_USE mho_status mho_plan_create(const mho_junction *junction,
                                                 mho_plan **plan,
                                                 mho_error *error);
 
-/* The same from the non-zero entries of H alone, for molecules too long or
- * large to be diagonalised: memory O(sites) for a chain.  entry[entries] has
- * i <= j, entries of one pair add up; leads as in a junction (all copied).
+/* The same from the non-zero entries of H alone, without its orbitals: the quicker
+ * way to T(E) of small molecules, and the only one to long ones, with memory
+ * O(sites) for a chain.  entry[entries] has i <= j, entries of one pair add up;
+ * leads as in a junction (all copied).
  * Errors: MHO_ERR_SIZE (a site), MHO_ERR_NOT_FINITE, MHO_ERR_CONTACTS,
  * MHO_ERR_MEMORY. */
 MHO_API MHO_MUST_USE mho_status mho_plan_create_sparse(
@@ -80,8 +82,9 @@ MHO_API void mho_plan_free(mho_plan *plan);
  * Methods are tried in turn, each with a bound on its own error; the first that
  * keeps max(1e-12, 64 u kappa) <= 1e-10 is taken, where kappa is the relative
  * condition of T.  A plan keeps the workspace of a sweep for the next, so that
- * only the first allocates (and those that run at the same time).  No result depends on the other energies of the call.  States that no contact sees do not matter:
- * where E - H is singular through them alone, the finite limit is returned.
+ * only the first allocates (and those that run at the same time).  No result
+ * depends on the other energies of the call.  States that no contact sees do not
+ * matter: where E - H is singular through them alone, the finite limit is returned.
  * Errors: MHO_ERR_NOT_FINITE (an energy is not finite), MHO_ERR_MEMORY. */
 MHO_API MHO_MUST_USE mho_status mho_transmission_sweep(const mho_plan *plan,
                                                        size_t count,

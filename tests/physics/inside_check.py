@@ -13,13 +13,12 @@ integrals by the closed form, which has no broadening to smear the edges.
 """
 import os
 import subprocess
-import sys
 
 import numpy as np
 from scipy.integrate import quad
 
 import outside
-from outside import Checks, Program, Refused
+from outside import Refused
 
 BOLTZMANN = 8.617333262e-5  # eV/K
 ETA = 1e-10  # eV; what it leaves is of its order next to the band's 1 eV
@@ -348,17 +347,7 @@ def refused(checks, program):
             checks.that(False, str(refusal))
 
 
-def main():
-    checks, program = Checks(), Program()
-    for group in (widths, eigenchannels, transmission_of_chains,
-                  no_resonance_is_missed, thermal, twist_of_chains, round_trip,
-                  bundled, drawn, refused):
-        try:
-            group(checks, program)
-        except Refused as refusal:
-            checks.that(False, '%s: %s' % (group.__name__, refusal))
-    checks.finish()
-
-
 if __name__ == '__main__':
-    sys.exit(main())
+    outside.run_groups(widths, eigenchannels, transmission_of_chains,
+                       no_resonance_is_missed, thermal, twist_of_chains, round_trip,
+                       bundled, drawn, refused)

@@ -15,7 +15,7 @@ import os
 import numpy as np
 
 import outside
-from outside import Checks, Program, Refused, load
+from outside import load
 
 # Energies are x in E = alpha + x beta, total pi energy in beta.  Chains and
 # rings by the standard closed forms 2cos(k pi/(N+1)), 2cos(2 pi k/N); the
@@ -320,17 +320,7 @@ def oligophenyls(checks, program):
         checks.near(program.at(path), value, 0.01 * value, file + '-diamine')
 
 
-def main():
-    checks, program = Checks(), Program()
-    for group in (bundled, hueckel, rings_at_midgap, magic_numbers, chains,
-                  twisted_biphenyl, azulene_nodes, carboxylates, single_level,
-                  oligophenyls):
-        try:
-            group(checks, program)
-        except Refused as refusal:
-            checks.that(False, '%s: %s' % (group.__name__, refusal))
-    checks.finish()
-
-
 if __name__ == '__main__':
-    main()
+    outside.run_groups(bundled, hueckel, rings_at_midgap, magic_numbers, chains,
+                       twisted_biphenyl, azulene_nodes, carboxylates, single_level,
+                       oligophenyls)

@@ -183,3 +183,14 @@ def density(matrix, electrons):
     _, c = np.linalg.eigh(matrix)
     occupied = c[:, :electrons // 2]
     return 2 * occupied @ occupied.T
+
+
+def run_groups(*groups):
+    """Calls every group of checks, each of which may be refused, and ends the program."""
+    checks, program = Checks(), Program()
+    for group in groups:
+        try:
+            group(checks, program)
+        except Refused as refusal:
+            checks.that(False, '%s: %s' % (group.__name__, refusal))
+    checks.finish()
